@@ -1,0 +1,1 @@
+//! Acceptance tests of armilla against outside references.
