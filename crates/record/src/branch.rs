@@ -6,6 +6,7 @@ use crate::{Event, Point, Profile};
 
 /// Why a branch stops.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 #[serde(rename_all = "kebab-case")]
 pub enum EndReason {
     /// The end of the asked range.
@@ -33,8 +34,27 @@ pub enum EndReason {
     NotFinite,
 }
 
+impl EndReason {
+    /// The word in files and text.
+    pub fn word(&self) -> &'static str {
+        match self {
+            Self::Edge => "edge",
+            Self::Closed => "closed",
+            Self::Equilibrium { .. } => "equilibrium",
+            Self::PeriodBlowUp => "period-blow-up",
+            Self::ReturnsToParent => "returns-to-parent",
+            Self::ResolutionLost => "resolution-lost",
+            Self::Stuck => "stuck",
+            Self::Budget => "budget",
+            Self::Interrupted => "interrupted",
+            Self::NotFinite => "not-finite",
+        }
+    }
+}
+
 /// One end of a branch.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct End {
     /// Why.
     pub reason: EndReason,
@@ -46,6 +66,7 @@ pub struct End {
 
 /// What a figure or table needs to know of a state or a parameter.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Quantity {
     /// Name in the model file.
     pub name: String,
@@ -57,6 +78,7 @@ pub struct Quantity {
 
 /// A profile kept with the index of its point.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct StoredProfile {
     /// Index into [`Branch::points`].
     pub point: usize,
@@ -66,6 +88,7 @@ pub struct StoredProfile {
 
 /// A branch of cycles in one parameter.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Branch {
     /// Version of the file format; see `docs/files.md`.
     pub format: u32,

@@ -97,6 +97,7 @@ impl Criticality {
 
 /// A special point with the number it stands for.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Event {
     /// Full name, `<branch>/<kind><number>`.
     pub name: String,

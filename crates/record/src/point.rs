@@ -4,6 +4,7 @@ use serde::{Deserialize, Serialize};
 
 /// A Floquet multiplier as log-modulus and angle, so that 1e-200 and 1e+40 both survive.
 #[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Multiplier {
     /// Natural logarithm of the modulus; minus infinity is written for an exact zero.
     pub log_modulus: f64,
@@ -13,6 +14,7 @@ pub struct Multiplier {
 
 /// One cycle of a branch.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Point {
     /// Value of the followed parameter, in its unit.
     pub value: f64,

@@ -51,6 +51,7 @@ pub fn lagrange_at(nodes: &[f64], weights: &[f64], s: f64, out: &mut [f64]) {
 
 /// A cycle (or any piecewise polynomial over one period); see the module text for the layout.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Profile {
     /// Number of states n.
     pub n_states: usize,

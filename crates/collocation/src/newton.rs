@@ -1,0 +1,268 @@
+//! Newton's method on the bordered cycle problem.
+//!
+//! Unknowns (u, T, p); equations: collocation, closure u(1) = u(0), the integral phase condition relative to a
+//! reference on the same mesh, and one [`Closing`]. Full steps; the contraction of the first two corrections is
+//! reported, since stride control lives on it (Deuflhard 2004, Newton Methods for Nonlinear Problems, sec. 5.1).
+
+use armilla_linalg::{Bordered, Right};
+
+use crate::system::{Fault, Iterate, Row, System};
+
+/// The one equation that picks a point from a branch.
+pub trait Closing {
+    /// Writes the row of the equation's derivative at the linearised iterate and returns its residual.
+    ///
+    /// # Errors
+    /// [`Fault`] where the row cannot be formed.
+    fn fill(&mut self, system: &mut System, at: &Iterate, row: &mut Row) -> Result<f64, Fault>;
+}
+
+/// A closing with a constant row: `row . z = target`.
+#[derive(Clone, Debug)]
+pub struct LinearClosing {
+    /// The row.
+    pub row: Row,
+    /// What its product with the unknowns is to be.
+    pub target: f64,
+}
+
+impl Closing for LinearClosing {
+    fn fill(&mut self, _system: &mut System, at: &Iterate, row: &mut Row) -> Result<f64, Fault> {
+        row.clone_from(&self.row);
+        Ok(self.row.apply(at) - self.target)
+    }
+}
+
+/// Limits of the iteration.
+#[derive(Clone, Copy, Debug)]
+pub struct NewtonSettings {
+    /// Most iterations; default 10. Fewer make following timid, more waste work on lost points.
+    pub most: usize,
+    /// Scaled size of the error after the last correction at which the iteration is done; default 1e-13, about
+    /// the roundoff of a well-conditioned cycle.
+    pub tolerance: f64,
+    /// Scaled size of a correction below which stagnation is taken for the roundoff floor; default 1e-9.
+    pub floor: f64,
+    /// Largest accepted first correction, scaled; default 2: more than the size of the cycle is another cycle.
+    pub longest: f64,
+}
+
+impl Default for NewtonSettings {
+    fn default() -> Self {
+        Self { most: 10, tolerance: 1e-13, floor: 1e-9, longest: 2.0 }
+    }
+}
+
+/// How an iteration went.
+#[derive(Clone, Debug, Default)]
+pub struct Report {
+    /// Number of corrections applied.
+    pub iterations: usize,
+    /// Scaled sizes of the corrections.
+    pub corrections: Vec<f64>,
+    /// Residual of the closing before each correction.
+    pub closing_residuals: Vec<f64>,
+}
+
+impl Report {
+    /// |second correction| / |first|, 0 where one was enough.
+    pub fn contraction(&self) -> f64 {
+        match self.corrections[..] {
+            [first, second, ..] if first > 0.0 => second / first,
+            _ => 0.0,
+        }
+    }
+}
+
+/// Why no cycle was found.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Failure {
+    /// The corrections do not shrink.
+    Diverged {
+        /// Corrections made.
+        iterations: usize,
+        /// Scaled size of the last.
+        correction: f64,
+    },
+    /// The period became negative or zero.
+    NegativePeriod,
+    /// The system could not be set up.
+    Fault(Fault),
+}
+
+impl std::fmt::Display for Failure {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        match self {
+            Self::Diverged { iterations, correction } => {
+                write!(f, "newton's method does not converge: correction {iterations} has scaled size {correction:.1e}")
+            }
+            Self::NegativePeriod => write!(f, "newton's method left the region of positive periods"),
+            Self::Fault(fault) => fault.fmt(f),
+        }
+    }
+}
+
+impl std::error::Error for Failure {}
+
+impl From<Fault> for Failure {
+    fn from(fault: Fault) -> Self {
+        Self::Fault(fault)
+    }
+}
+
+/// Workspace of the iteration; sized on first use and whenever the mesh changes.
+#[derive(Default)]
+pub struct Workspace {
+    bordered: Option<Bordered>,
+    core: Vec<f64>,
+    step: Option<Row>,
+    row: Option<Row>,
+    phase: Vec<f64>,
+}
+
+/// Corrects `at` in place. `reference` are the node values of the phase condition, on the system's mesh.
+///
+/// # Errors
+/// [`Failure`]; `at` is then the last iterate.
+pub fn correct(
+    system: &mut System,
+    at: &mut Iterate,
+    reference: &[f64],
+    closing: &mut dyn Closing,
+    settings: NewtonSettings,
+) -> Result<Report, Failure> {
+    let mut workspace = Workspace::default();
+    correct_with(&mut workspace, system, at, Task { reference, closing, settings })
+}
+
+/// What [`correct_with`] is to do.
+pub struct Task<'a> {
+    /// Node values of the phase condition.
+    pub reference: &'a [f64],
+    /// The closing equation.
+    pub closing: &'a mut dyn Closing,
+    /// Limits.
+    pub settings: NewtonSettings,
+}
+
+/// [`correct`] with a workspace that is kept from call to call: no allocation once sized, but for the report.
+///
+/// # Errors
+/// [`Failure`]; `at` is then the last iterate.
+pub fn correct_with(workspace: &mut Workspace, system: &mut System, at: &mut Iterate, task: Task<'_>) -> Result<Report, Failure> {
+    let settings = task.settings;
+    workspace.fit(system);
+    system.phase_row(task.reference, &mut workspace.phase);
+    let mut report = Report::default();
+    report.corrections.reserve(settings.most);
+    report.closing_residuals.reserve(settings.most);
+    for iteration in 1..=settings.most {
+        let residual = workspace.step(system, at, task.reference, task.closing)?;
+        let step = workspace.step.as_ref().expect("fitted above");
+        let size = system.spec().metric.inner(system.tables(), system.mesh(), step, step).sqrt();
+        report.closing_residuals.push(residual);
+        report.corrections.push(size);
+        report.iterations = iteration;
+        let before = iteration.checked_sub(2).map(|k| report.corrections[k]);
+        match judge(size, before, settings) {
+            Verdict::Lost => return Err(Failure::Diverged { iterations: iteration, correction: size }),
+            Verdict::Floor => return Ok(report),
+            Verdict::Go | Verdict::Last => {}
+        }
+        at.add(1.0, step);
+        if !(at.period > 0.0) {
+            return Err(Failure::NegativePeriod);
+        }
+        if matches!(judge(size, before, settings), Verdict::Last) {
+            return Ok(report);
+        }
+    }
+    let correction = report.corrections.last().copied().unwrap_or(f64::NAN);
+    Err(Failure::Diverged { iterations: settings.most, correction })
+}
+
+enum Verdict {
+    /// Apply and go on.
+    Go,
+    /// Apply: the error left is below the tolerance.
+    Last,
+    /// Do not apply: the correction is roundoff.
+    Floor,
+    /// Give up.
+    Lost,
+}
+
+fn judge(size: f64, before: Option<f64>, settings: NewtonSettings) -> Verdict {
+    /// A correction that shrinks by less than this is no convergence.
+    const SLOWEST: f64 = 0.9;
+    if !size.is_finite() {
+        return Verdict::Lost;
+    }
+    if size <= settings.tolerance {
+        return Verdict::Last;
+    }
+    match before {
+        None if size > settings.longest => Verdict::Lost,
+        None => Verdict::Go,
+        Some(before) if size > SLOWEST * before => {
+            if size <= settings.floor { Verdict::Floor } else { Verdict::Lost }
+        }
+        // Quadratic convergence: the next correction would be about size^3 / before^2.
+        Some(before) if size * (size / before).powi(2) <= settings.tolerance => Verdict::Last,
+        Some(_) => Verdict::Go,
+    }
+}
+
+impl Workspace {
+    fn fit(&mut self, system: &System) {
+        let shape = system.shape();
+        let len = shape.nodes_len();
+        if self.phase.len() == len && self.core.len() == shape.core_len() && self.bordered.is_some() {
+            return;
+        }
+        self.bordered = Some(Bordered::new(shape, 2));
+        self.core = vec![0.0; shape.core_len()];
+        self.step = Some(Row::zero(len));
+        self.row = Some(Row::zero(len));
+        self.phase = vec![0.0; len];
+    }
+
+    /// Linearises at the iterate and leaves the Newton correction in `self.step`; returns the closing's residual.
+    fn step(&mut self, system: &mut System, at: &Iterate, reference: &[f64], closing: &mut dyn Closing) -> Result<f64, Fault> {
+        system.linearise(at)?;
+        let row = self.row.as_mut().expect("fitted before");
+        let residual = closing.fill(system, at, row)?;
+        let bordered = self.bordered.as_mut().expect("fitted before");
+        system.period_column(bordered.column_mut(0));
+        system.parameter_column(bordered.column_mut(1));
+        bordered.row_mut(0).copy_from_slice(&self.phase);
+        bordered.row_mut(1).copy_from_slice(&row.nodes);
+        bordered.corner_mut().copy_from_slice(&[0.0, 0.0, row.period, row.parameter]);
+        bordered.prepare(system.cyclic(), 1.0)?;
+        self.core.iter_mut().zip(system.residual()).for_each(|(c, r)| *c = -r);
+        let n = system.n();
+        let len = at.nodes.len();
+        let step = self.step.as_mut().expect("fitted before");
+        // The iterate closes exactly unless the caller's guess does not; then the step repairs it.
+        let mut gap = [0.0; SMALL_N];
+        let mut large_gap = Vec::new();
+        let gap: &mut [f64] = if n <= SMALL_N {
+            &mut gap[..n]
+        } else {
+            large_gap.resize(n, 0.0);
+            &mut large_gap
+        };
+        for (a, value) in gap.iter_mut().enumerate() {
+            *value = at.nodes[a] - at.nodes[len - n + a];
+        }
+        let phase: f64 = self.phase.iter().zip(at.nodes.iter().zip(reference)).map(|(p, (u, r))| p * (r - u)).sum();
+        let mut scalars = [0.0; 2];
+        let right = Right { core: &self.core, closing: gap, border: &[phase, -residual] };
+        bordered.solve(system.cyclic(), right, &mut step.nodes, &mut scalars);
+        (step.period, step.parameter) = (scalars[0], scalars[1]);
+        Ok(residual)
+    }
+}
+
+/// States up to which the closing gap lives on the stack.
+const SMALL_N: usize = 16;

@@ -1,0 +1,427 @@
+//! The discretised cycle problem at one iterate: residual, factored Jacobian, borders' raw material.
+//!
+//! Row (i, k, a) for interval i, Gauss point k, state a: `Sum_j L'_j(rho_k) u_(i,j) - h_i T f(u(t_ik), p)`,
+//! so a residual is an increment of the state over the interval. Blocks go to [`armilla_linalg::Cyclic`]; the
+//! columns of the period and of the parameter are `-h_i f` and `-h_i T f_p`.
+//! Batches run over all Gauss points at once, point i m + k, structure of arrays.
+
+use std::sync::Arc;
+
+use armilla_linalg::{Cyclic, Shape, Singular};
+use armilla_model::{Batch, Column, Direction, Evaluator, Gradient, Linearisation, VectorField};
+
+use crate::metric::Metric;
+use crate::tables::Tables;
+
+/// What a system is built from.
+#[derive(Clone)]
+pub struct SystemSpec {
+    /// The rates.
+    pub field: Arc<dyn VectorField>,
+    /// Values of all parameters; the free one is overwritten by the iterate.
+    pub parameters: Vec<f64>,
+    /// Index of the free parameter.
+    pub free: usize,
+    /// Sizes of everything, for scaled norms and the phase condition.
+    pub metric: Metric,
+}
+
+/// Values of all unknowns on a mesh.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Iterate {
+    /// Node values as in a profile, `(N m + 1) n`.
+    pub nodes: Vec<f64>,
+    /// The period.
+    pub period: f64,
+    /// The free parameter.
+    pub parameter: f64,
+}
+
+impl Iterate {
+    /// Adds `factor` times `step`.
+    pub fn add(&mut self, factor: f64, step: &Row) {
+        self.nodes.iter_mut().zip(&step.nodes).for_each(|(a, b)| *a += factor * b);
+        self.period += factor * step.period;
+        self.parameter += factor * step.parameter;
+    }
+}
+
+/// A vector or a linear functional on the unknowns, with the layout of [`Iterate`].
+#[derive(Clone, Debug, PartialEq)]
+pub struct Row {
+    /// Part over the nodes.
+    pub nodes: Vec<f64>,
+    /// Part over the period.
+    pub period: f64,
+    /// Part over the free parameter.
+    pub parameter: f64,
+}
+
+impl Row {
+    /// A zero row for `len` node values.
+    pub fn zero(len: usize) -> Self {
+        Self { nodes: vec![0.0; len], period: 0.0, parameter: 0.0 }
+    }
+
+    /// The functional applied to an iterate.
+    pub fn apply(&self, at: &Iterate) -> f64 {
+        dot(&self.nodes, &at.nodes) + self.period * at.period + self.parameter * at.parameter
+    }
+}
+
+fn dot(a: &[f64], b: &[f64]) -> f64 {
+    a.iter().zip(b).map(|(a, b)| a * b).sum()
+}
+
+/// Why a system cannot be set up at an iterate.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Fault {
+    /// A rate or a derivative is not finite there.
+    NotFinite {
+        /// Scaled time in `[0, 1]`.
+        time: f64,
+        /// Index of the state whose rate or derivative it is.
+        state: usize,
+        /// All states there.
+        states: Vec<f64>,
+    },
+    /// The linear system is singular.
+    Singular(Singular),
+}
+
+impl std::fmt::Display for Fault {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        match self {
+            Self::NotFinite { time, state, states } => {
+                write!(f, "rate {state} or one of its derivatives is not finite at scaled time {time}, states {states:?}")
+            }
+            Self::Singular(singular) => singular.fmt(f),
+        }
+    }
+}
+
+impl std::error::Error for Fault {}
+
+impl From<Singular> for Fault {
+    fn from(singular: Singular) -> Self {
+        Self::Singular(singular)
+    }
+}
+
+/// A variation (v, S) of a cycle and the multipliers psi of the rows: what the gradient of a test function needs.
+#[derive(Clone, Copy, Debug)]
+pub struct Variation<'a> {
+    /// Left vector over all interval rows, N R numbers.
+    pub psi: &'a [f64],
+    /// Variation of the nodes.
+    pub nodes: &'a [f64],
+    /// Variation of the period.
+    pub period: f64,
+}
+
+/// The discretised problem on one mesh. Life cycle: [`System::set_mesh`], then [`System::linearise`] at an
+/// iterate; everything else refers to the last linearisation.
+pub struct System {
+    spec: SystemSpec,
+    evaluator: Box<dyn Evaluator>,
+    tables: Tables,
+    mesh: Vec<f64>,
+    entries: Vec<(usize, usize)>,
+    cyclic: Cyclic,
+    states: Vec<f64>,
+    rates: Vec<f64>,
+    jacobian: Vec<f64>,
+    free_column: Vec<f64>,
+    residual: Vec<f64>,
+    psi_points: Vec<f64>,
+    variation_points: Vec<f64>,
+    gradient_states: Vec<f64>,
+    gradient_columns: Vec<f64>,
+    period: f64,
+}
+
+impl System {
+    /// A system for degree `degree` on `mesh` (N+1 points ascending from 0 to 1).
+    pub fn new(spec: SystemSpec, degree: usize, mesh: &[f64]) -> Self {
+        let evaluator = spec.field.evaluator(&[Column::Parameter(spec.free)]);
+        let pattern = spec.field.pattern();
+        let entries = pattern.entries().collect();
+        let shape = Shape { n: spec.field.n_states(), inner: 0, intervals: 1 };
+        let mut system = Self {
+            spec,
+            evaluator,
+            tables: Tables::new(degree),
+            mesh: Vec::new(),
+            entries,
+            cyclic: Cyclic::new(shape),
+            states: Vec::new(),
+            rates: Vec::new(),
+            jacobian: Vec::new(),
+            free_column: Vec::new(),
+            residual: Vec::new(),
+            psi_points: Vec::new(),
+            variation_points: Vec::new(),
+            gradient_states: Vec::new(),
+            gradient_columns: Vec::new(),
+            period: 0.0,
+        };
+        system.set_mesh(mesh);
+        system
+    }
+
+    /// Moves to another mesh, keeping the degree.
+    pub fn set_mesh(&mut self, mesh: &[f64]) {
+        let n = self.n();
+        let intervals = mesh.len() - 1;
+        let same_size = self.mesh.len() == mesh.len();
+        self.mesh.clear();
+        self.mesh.extend_from_slice(mesh);
+        if same_size {
+            return;
+        }
+        let shape = Shape { n, inner: (self.tables.degree - 1) * n, intervals };
+        self.cyclic = Cyclic::new(shape);
+        let points = intervals * self.tables.degree;
+        self.states.resize(n * points, 0.0);
+        self.rates.resize(n * points, 0.0);
+        self.jacobian.resize(self.entries.len() * points, 0.0);
+        self.free_column.resize(n * points, 0.0);
+        self.residual.resize(shape.core_len(), 0.0);
+        self.psi_points.resize(n * points, 0.0);
+        self.variation_points.resize(n * points, 0.0);
+        self.gradient_states.resize(n * points, 0.0);
+        self.gradient_columns.resize(points, 0.0);
+    }
+
+    /// Number of states.
+    pub fn n(&self) -> usize {
+        self.spec.field.n_states()
+    }
+    /// What the system was built from.
+    pub fn spec(&self) -> &SystemSpec {
+        &self.spec
+    }
+    /// Basis tables.
+    pub fn tables(&self) -> &Tables {
+        &self.tables
+    }
+    /// The mesh, N+1 points.
+    pub fn mesh(&self) -> &[f64] {
+        &self.mesh
+    }
+    /// Sizes of the linear system.
+    pub fn shape(&self) -> Shape {
+        self.cyclic.shape()
+    }
+    /// The factored core of the last linearisation.
+    pub fn cyclic(&self) -> &Cyclic {
+        &self.cyclic
+    }
+    /// Residual of the last linearisation, N R numbers.
+    pub fn residual(&self) -> &[f64] {
+        &self.residual
+    }
+
+    fn points(&self) -> usize {
+        (self.mesh.len() - 1) * self.tables.degree
+    }
+
+    fn h(&self, i: usize) -> f64 {
+        self.mesh[i + 1] - self.mesh[i]
+    }
+
+    /// Evaluates the field at the iterate, fills residual and blocks, and factors the core.
+    ///
+    /// # Errors
+    /// [`Fault`] where a rate is not finite or an interval's block is singular.
+    pub fn linearise(&mut self, at: &Iterate) -> Result<(), Fault> {
+        self.evaluate(at)?;
+        self.fill_residual(at);
+        for i in 0..self.mesh.len() - 1 {
+            self.fill_block(i);
+        }
+        self.cyclic.factor()?;
+        Ok(())
+    }
+
+    fn evaluate(&mut self, at: &Iterate) -> Result<(), Fault> {
+        let points = self.points();
+        self.spec.parameters[self.spec.free] = at.parameter;
+        self.period = at.period;
+        to_points(&self.tables, self.spec.metric.scales.len(), &at.nodes, &mut self.states);
+        let batch = Batch { len: points, time: &[], states: &self.states, parameters: &self.spec.parameters };
+        let out = Linearisation { rates: &mut self.rates, jacobian: &mut self.jacobian, columns: &mut self.free_column };
+        self.evaluator.linearise(batch, out);
+        self.find_not_finite()
+    }
+
+    fn find_not_finite(&self) -> Result<(), Fault> {
+        let points = self.points();
+        let bad = |values: &[f64]| values.iter().position(|value| !value.is_finite());
+        let found = bad(&self.rates)
+            .or_else(|| bad(&self.free_column))
+            .map(|place| (place / points, place % points))
+            .or_else(|| bad(&self.jacobian).map(|place| (self.entries[place / points].0, place % points)));
+        let Some((state, point)) = found else { return Ok(()) };
+        let (i, k) = (point / self.tables.degree, point % self.tables.degree);
+        let time = self.mesh[i] + self.h(i) * self.tables.points[k];
+        let states = (0..self.n()).map(|a| self.states[a * points + point]).collect();
+        Err(Fault::NotFinite { time, state, states })
+    }
+
+    fn fill_residual(&mut self, at: &Iterate) {
+        let (n, m, points) = (self.n(), self.tables.degree, self.points());
+        let size = m + 1;
+        for i in 0..self.mesh.len() - 1 {
+            let step = self.h(i) * at.period;
+            let nodes = &at.nodes[i * m * n..(i * m + size) * n];
+            for k in 0..m {
+                let row = &mut self.residual[(i * m + k) * n..(i * m + k + 1) * n];
+                row.fill(0.0);
+                for (node, &slope) in nodes.chunks_exact(n).zip(&self.tables.slope[k * size..(k + 1) * size]) {
+                    row.iter_mut().zip(node).for_each(|(r, u)| *r += slope * u);
+                }
+                for (a, r) in row.iter_mut().enumerate() {
+                    *r -= step * self.rates[a * points + i * m + k];
+                }
+            }
+        }
+    }
+
+    fn fill_block(&mut self, i: usize) {
+        let (n, m, points) = (self.n(), self.tables.degree, self.points());
+        let step = self.h(i) * self.period;
+        let (size, inner, width) = (m + 1, (m - 1) * n, (m + 1) * n);
+        // Column of node j in the block's order [w | u_left | u_right].
+        let column = |j: usize| match j {
+            0 => inner,
+            j if j == m => inner + n,
+            j => (j - 1) * n,
+        };
+        let block = self.cyclic.block_mut(i);
+        block.fill(0.0);
+        for k in 0..m {
+            let values = &self.tables.value[k * size..(k + 1) * size];
+            let slopes = &self.tables.slope[k * size..(k + 1) * size];
+            for (entry, &(a, b)) in self.entries.iter().enumerate() {
+                let factor = -step * self.jacobian[entry * points + i * m + k];
+                let row = &mut block[(k * n + a) * width..(k * n + a + 1) * width];
+                for (j, value) in values.iter().enumerate() {
+                    row[column(j) + b] += factor * value;
+                }
+            }
+            for a in 0..n {
+                let row = &mut block[(k * n + a) * width..(k * n + a + 1) * width];
+                for (j, slope) in slopes.iter().enumerate() {
+                    row[column(j) + a] += slope;
+                }
+            }
+        }
+    }
+
+    /// Writes the column of the period, `-h_i f`, over all interval rows.
+    pub fn period_column(&self, out: &mut [f64]) {
+        self.spread(&self.rates, 1.0, out);
+    }
+
+    /// Writes the column of the free parameter, `-h_i T f_p`.
+    pub fn parameter_column(&self, out: &mut [f64]) {
+        self.spread(&self.free_column, self.period, out);
+    }
+
+    /// `out[row (i,k,a)] = -h_i factor values[a][i m + k]`.
+    fn spread(&self, values: &[f64], factor: f64, out: &mut [f64]) {
+        let (n, m, points) = (self.n(), self.tables.degree, self.points());
+        for i in 0..self.mesh.len() - 1 {
+            let step = -self.h(i) * factor;
+            for point in i * m..(i + 1) * m {
+                for a in 0..n {
+                    out[point * n + a] = step * values[a * points + point];
+                }
+            }
+        }
+    }
+
+    /// The phase row `Int <u, W r'> dt` over the nodes, r the reference on the same mesh, W = 1/scale^2.
+    pub fn phase_row(&self, reference: &[f64], out: &mut [f64]) {
+        let (n, m) = (self.n(), self.tables.degree);
+        let size = m + 1;
+        out.fill(0.0);
+        let mut slope = vec![0.0; n];
+        for i in 0..self.mesh.len() - 1 {
+            let nodes = &reference[i * m * n..(i * m + size) * n];
+            for k in 0..m {
+                slope.fill(0.0);
+                for (node, &weight) in nodes.chunks_exact(n).zip(&self.tables.slope[k * size..(k + 1) * size]) {
+                    slope.iter_mut().zip(node).for_each(|(s, u)| *s += weight * u);
+                }
+                for j in 0..size {
+                    let factor = self.tables.weights[k] * self.tables.value[k * size + j];
+                    let target = &mut out[(i * m + j) * n..(i * m + j + 1) * n];
+                    for (a, target) in target.iter_mut().enumerate() {
+                        *target += factor * slope[a] / self.spec.metric.scales[a].powi(2);
+                    }
+                }
+            }
+        }
+    }
+
+    /// Row of `-d/dz (psi^T M_z (v, S))` at the last linearisation, M (v, S) being the rows
+    /// `Sum L'_j v_j - h T A v - h S f`: the exact derivative of a bordered test function (Govaerts 2000, SIAM,
+    /// sec. 4.3) by one reverse sweep of the field.
+    pub fn variation_gradient(&mut self, variation: Variation<'_>, out: &mut Row) {
+        let (n, m, points) = (self.n(), self.tables.degree, self.points());
+        to_points(&self.tables, n, variation.nodes, &mut self.variation_points);
+        for point in 0..points {
+            for a in 0..n {
+                self.psi_points[a * points + point] = variation.psi[point * n + a];
+            }
+        }
+        let batch = Batch { len: points, time: &[], states: &self.states, parameters: &self.spec.parameters };
+        let direction = Direction { states: &self.variation_points, columns: &[] };
+        let gradient = Gradient { states: &mut self.gradient_states, columns: &mut self.gradient_columns };
+        self.evaluator.second_gradient(batch, &self.psi_points, direction, gradient);
+        out.nodes.fill(0.0);
+        (out.period, out.parameter) = (0.0, 0.0);
+        let mut covector = vec![0.0; n];
+        let size = m + 1;
+        for point in 0..points {
+            let (i, k) = (point / m, point % m);
+            let h = self.h(i);
+            for (a, value) in covector.iter_mut().enumerate() {
+                *value = h * self.period * self.gradient_states[a * points + point];
+            }
+            out.parameter += h * self.period * self.gradient_columns[point];
+            for (entry, &(a, b)) in self.entries.iter().enumerate() {
+                let product = h * self.psi_points[a * points + point] * self.jacobian[entry * points + point];
+                covector[b] += variation.period * product;
+                out.period += product * self.variation_points[b * points + point];
+            }
+            for a in 0..n {
+                let psi = self.psi_points[a * points + point];
+                out.parameter += h * variation.period * psi * self.free_column[a * points + point];
+            }
+            for j in 0..size {
+                let value = self.tables.value[k * size + j];
+                let target = &mut out.nodes[(i * m + j) * n..(i * m + j + 1) * n];
+                target.iter_mut().zip(&covector).for_each(|(t, c)| *t += value * c);
+            }
+        }
+    }
+}
+
+/// Values of node data at all Gauss points, `out[a * points + i m + k]`.
+fn to_points(tables: &Tables, n: usize, nodes: &[f64], out: &mut [f64]) {
+    let (m, size) = (tables.degree, tables.degree + 1);
+    let points = out.len() / n;
+    for i in 0..points / m {
+        let local = &nodes[i * m * n..(i * m + size) * n];
+        for k in 0..m {
+            let values = &tables.value[k * size..(k + 1) * size];
+            for a in 0..n {
+                let sum: f64 = values.iter().enumerate().map(|(j, value)| value * local[j * n + a]).sum();
+                out[a * points + i * m + k] = sum;
+            }
+        }
+    }
+}

@@ -1,0 +1,127 @@
+//! Hand-written models for the tests, rates and Jacobian as plain functions.
+
+use armilla_model::{
+    Batch, Column, Direction, Evaluator, Gradient, Linearisation, NotProvided, SparsityPattern, VectorField,
+};
+
+/// Rates, and the dense Jacobian row by row.
+pub(crate) type Rates = fn(time: f64, x: &[f64], p: &[f64], rates: &mut [f64], jacobian: &mut [f64]);
+
+/// A field made of one function.
+pub(crate) struct TestField {
+    n: usize,
+    n_parameters: usize,
+    forced: bool,
+    rates: Rates,
+    pattern: SparsityPattern,
+}
+
+impl TestField {
+    pub(crate) fn new(n: usize, n_parameters: usize, rates: Rates) -> Self {
+        let offsets = (0..=n).map(|i| i * n).collect();
+        let columns = (0..n * n).map(|k| k % n).collect();
+        let pattern = SparsityPattern::try_from_offsets_and_indices(n, n, offsets, columns).expect("a full pattern");
+        Self { n, n_parameters, forced: false, rates, pattern }
+    }
+
+    pub(crate) fn forced(mut self) -> Self {
+        self.forced = true;
+        self
+    }
+}
+
+struct TestEvaluator {
+    n: usize,
+    rates: Rates,
+    jacobian: Vec<f64>,
+}
+
+impl VectorField for TestField {
+    fn n_states(&self) -> usize {
+        self.n
+    }
+    fn n_parameters(&self) -> usize {
+        self.n_parameters
+    }
+    fn is_forced(&self) -> bool {
+        self.forced
+    }
+    fn pattern(&self) -> &SparsityPattern {
+        &self.pattern
+    }
+    fn evaluator(&self, _columns: &[Column]) -> Box<dyn Evaluator> {
+        Box::new(TestEvaluator { n: self.n, rates: self.rates, jacobian: vec![0.0; self.n * self.n] })
+    }
+}
+
+impl Evaluator for TestEvaluator {
+    fn rates(&mut self, at: Batch<'_>, rates: &mut [f64]) {
+        assert_eq!((at.len, at.states.len()), (1, self.n));
+        (self.rates)(at.time[0], at.states, at.parameters, rates, &mut self.jacobian);
+    }
+    fn linearise(&mut self, at: Batch<'_>, out: Linearisation<'_>) {
+        (self.rates)(at.time[0], at.states, at.parameters, out.rates, out.jacobian);
+    }
+    fn second(&mut self, _: Batch<'_>, _: Direction<'_>, _: Direction<'_>, _: &mut [f64]) {
+        unreachable!("time integration needs no second derivatives")
+    }
+    fn third(&mut self, _: Batch<'_>, _: [Direction<'_>; 3], _: &mut [f64]) -> Result<(), NotProvided> {
+        Err(NotProvided)
+    }
+    fn second_gradient(&mut self, _: Batch<'_>, _: &[f64], _: Direction<'_>, _: Gradient<'_>) {
+        unreachable!("time integration needs no second derivatives")
+    }
+}
+
+/// x' = -w y, y' = w x.
+pub(crate) fn rotation(_w: f64) -> TestField {
+    TestField::new(2, 1, |_, x, p, f, j| {
+        f.copy_from_slice(&[-p[0] * x[1], p[0] * x[0]]);
+        j.copy_from_slice(&[0.0, -p[0], p[0], 0.0]);
+    })
+}
+
+/// x' = y, y' = mu (1 - x^2) y - x.
+pub(crate) fn van_der_pol() -> TestField {
+    TestField::new(2, 1, |_, x, p, f, j| {
+        let (mu, x, y) = (p[0], x[0], x[1]);
+        f.copy_from_slice(&[y, mu * (1.0 - x * x) * y - x]);
+        j.copy_from_slice(&[0.0, 1.0, -2.0 * mu * x * y - 1.0, mu * (1.0 - x * x)]);
+    })
+}
+
+/// x' = -y - z, y' = x + a y, z' = b + z (x - c), parameters a, b, c.
+pub(crate) fn roessler() -> TestField {
+    TestField::new(3, 3, |_, x, p, f, j| {
+        f.copy_from_slice(&[-x[1] - x[2], x[0] + p[0] * x[1], p[1] + x[2] * (x[0] - p[2])]);
+        j.copy_from_slice(&[0.0, -1.0, -1.0, 1.0, p[0], 0.0, x[2], 0.0, x[0] - p[2]]);
+    })
+}
+
+/// x' = x (mu - r2) - y (1 + k r2), y' = y (mu - r2) + x (1 + k r2), r2 = x^2 + y^2, parameters mu, k.
+pub(crate) fn hopf_with_shear() -> TestField {
+    TestField::new(2, 2, |_, s, p, f, j| {
+        let (x, y, mu, k) = (s[0], s[1], p[0], p[1]);
+        let r2 = x * x + y * y;
+        f.copy_from_slice(&[x * (mu - r2) - y * (1.0 + k * r2), y * (mu - r2) + x * (1.0 + k * r2)]);
+        j[0] = mu - r2 - 2.0 * x * x - 2.0 * k * x * y;
+        j[1] = -2.0 * x * y - (1.0 + k * r2) - 2.0 * k * y * y;
+        j[2] = -2.0 * x * y + 1.0 + k * r2 + 2.0 * k * x * x;
+        j[3] = mu - r2 - 2.0 * y * y + 2.0 * k * x * y;
+    })
+}
+
+/// The torus case: x' = (lam - b) x - c y + x (z + d (1 - z^2)), y' = c x + (lam - b) y + y (z + d (1 - z^2)),
+/// z' = lam z - (x^2 + y^2 + z^2) with b = 3, c = 0.25, d = 0.2; parameter lam.
+pub(crate) fn torus_case() -> TestField {
+    TestField::new(3, 1, |_, s, p, f, j| {
+        const B: f64 = 3.0;
+        const C: f64 = 0.25;
+        const D: f64 = 0.2;
+        let (x, y, z, lam) = (s[0], s[1], s[2], p[0]);
+        let g = lam - B + z + D * (1.0 - z * z);
+        let dg = 1.0 - 2.0 * D * z;
+        f.copy_from_slice(&[x * g - C * y, C * x + y * g, lam * z - x * x - y * y - z * z]);
+        j.copy_from_slice(&[g, -C, x * dg, C, g, y * dg, -2.0 * x, -2.0 * y, lam - 2.0 * z]);
+    })
+}

@@ -1,0 +1,93 @@
+//! The quotient `g(u) = u / (exp(u) - 1)` and its derivatives, safe at and near `u = 0`.
+//!
+//! Membrane models divide by `exp(u) - 1` with a numerator that vanishes at the same place. Written
+//! out, the value is 0/0 at u = 0 and each further derivative loses another factor 1/u of accuracy
+//! around it.
+//!
+//! Method. Near 0 the Taylor series `g(u) = sum B_n u^n / n!` (B_n the Bernoulli numbers, B_1 = -1/2;
+//! radius of convergence 2 pi), differentiated term by term. Elsewhere, differentiating
+//! `g (e^u - 1) = u` k times gives, with `q = 1 / (1 - e^-u)`,
+//!
+//! ```text
+//! g' = (1 - u q) / (e^u - 1),     g^(k) = -q sum_{j<k} binomial(k, j) g^(j)   for k >= 2,
+//! ```
+//!
+//! which neither overflows nor cancels for large |u|.
+//!
+//! Accuracy, measured against 60-digit arithmetic. The recurrence loses about `|u|^-k`: on
+//! 2 <= |u| <= 2.5 its relative error is 2e-16 at order 0, 1e-14 at order 3, 3e-13 at order 4. The
+//! series with 22 even terms has 5e-15 up to order 5 on |u| <= 2 and 7e-12 at order 4 on
+//! 2 <= |u| <= 2.5. They cross near [`CROSS_OVER`].
+
+use crate::scalar::Scalar;
+
+/// Orders of derivative that are evaluated safely.
+pub const HIGHEST_ORDER: u8 = 8;
+
+/// The series is used for `|u|` up to here; see the module text.
+const CROSS_OVER: f64 = 2.0;
+
+/// `B_n / n!` for n = 2, 4, 6, …: the even Taylor coefficients of g.
+///
+/// From the definition of the Bernoulli numbers (Abramowitz & Stegun 1964, 23.1.1), rounded once.
+#[rustfmt::skip]
+const EVEN_COEFFICIENTS: [f64; 22] = [
+    0.08333333333333333, -0.001388888888888889, 3.306878306878307e-05, -8.267195767195768e-07,
+    2.08767569878681e-08, -5.284190138687493e-10, 1.3382536530684679e-11, -3.3896802963225827e-13,
+    8.586062056277845e-15, -2.174868698558062e-16, 5.5090028283602295e-18, -1.3954464685812522e-19,
+    3.534707039629467e-21, -8.953517427037546e-23, 2.267952452337683e-24, -5.744790668872202e-26,
+    1.455172475614865e-27, -3.6859949406653103e-29, 9.336734257095045e-31, -2.36502241570063e-32,
+    5.990671762482134e-34, -1.5174548844682903e-35,
+];
+
+/// `g^(order)(u)` over any scalar, order at most [`HIGHEST_ORDER`].
+pub(crate) fn bernoulli<S: Scalar>(order: u8, u: S) -> S {
+    let order = usize::from(order.min(HIGHEST_ORDER));
+    if u.leading().abs() <= CROSS_OVER { series(order, u) } else { recurrence(order, u) }
+}
+
+/// Taylor series differentiated `order` times: powers `u^(n - order)` of one parity, by Horner's rule
+/// in `u^2`, and the two low terms 1 - u/2.
+fn series<S: Scalar>(order: usize, u: S) -> S {
+    let square = u.clone() * u.clone();
+    let first = order.div_ceil(2).max(1);
+    let mut sum = S::from_f64(0.0);
+    for half in (first..=EVEN_COEFFICIENTS.len()).rev() {
+        let scale = falling(2 * half, order);
+        sum = sum * square.clone() + S::from_f64(EVEN_COEFFICIENTS[half - 1] * scale);
+    }
+    // The lowest even n is 2 * first: its power of u is 2 for order 0, 1 for odd, 0 for even orders.
+    match order {
+        0 => sum * square - u * S::from_f64(0.5) + S::from_f64(1.0),
+        1 => sum * u - S::from_f64(0.5),
+        odd if odd % 2 == 1 => sum * u,
+        _ => sum,
+    }
+}
+
+/// `n (n-1) … (n-order+1)`.
+fn falling(n: usize, order: usize) -> f64 {
+    (0..order).map(|k| (n - k) as f64).product()
+}
+
+fn recurrence<S: Scalar>(order: usize, u: S) -> S {
+    let minus_one_plus_exp = u.clone().unary(crate::function::Unary::Expm1);
+    let mut slopes: Vec<S> = Vec::with_capacity(order + 1);
+    slopes.push(u.clone() / minus_one_plus_exp.clone());
+    if order == 0 {
+        return slopes.swap_remove(0);
+    }
+    let one = S::from_f64(1.0);
+    let q = -(one.clone() / (-u.clone()).unary(crate::function::Unary::Expm1));
+    slopes.push((one - u * q.clone()) / minus_one_plus_exp);
+    for k in 2..=order {
+        let mut sum = slopes[0].clone();
+        let mut binomial = 1.0;
+        for j in 1..k {
+            binomial *= (k + 1 - j) as f64 / j as f64;
+            sum = sum + slopes[j].clone() * S::from_f64(binomial);
+        }
+        slopes.push(-(q.clone() * sum));
+    }
+    slopes.swap_remove(order)
+}

@@ -1,0 +1,82 @@
+//! `branches/<branch>.csv`: one row per point, for other tools.
+//!
+//! RFC 4180 with one header row, lines ended by a line feed. Numbers read back to the same 64 bits.
+
+use std::io::{self, Write};
+use std::path::Path;
+
+use crate::atomic::write_atomic;
+use crate::{Branch, Point, RecordError};
+
+/// The columns before those of the states and multipliers.
+const FIRST_COLUMNS: [&str; 9] = [
+    "point",
+    "value",
+    "period",
+    "turns",
+    "stable",
+    "unstable_count",
+    "trivial_defect",
+    "liouville_defect",
+    "profile_error",
+];
+
+/// Writes the table of a branch, atomically.
+///
+/// # Errors
+/// What the machine refused.
+pub fn write_branch_table(path: &Path, branch: &Branch) -> Result<(), RecordError> {
+    write_atomic(path, |out| table(out, branch))
+}
+
+/// The header of a branch's table.
+pub fn branch_columns(branch: &Branch) -> Vec<String> {
+    let mut columns: Vec<String> = FIRST_COLUMNS.iter().map(ToString::to_string).collect();
+    for state in &branch.states {
+        columns.extend(["max", "min", "mean"].map(|measure| format!("{}_{measure}", state.name)));
+    }
+    for k in 1..=n_multipliers(branch) {
+        columns.extend(["log_modulus", "angle"].map(|part| format!("multiplier{k}_{part}")));
+    }
+    columns
+}
+
+/// The largest number of multipliers of any point; fewer leave cells empty.
+fn n_multipliers(branch: &Branch) -> usize {
+    branch.points.iter().map(|point| point.multipliers.len()).max().unwrap_or(0)
+}
+
+fn table(out: &mut dyn Write, branch: &Branch) -> io::Result<()> {
+    let mut writer = csv::Writer::from_writer(out);
+    writer.write_record(branch_columns(branch))?;
+    let (n_states, n_multipliers) = (branch.states.len(), n_multipliers(branch));
+    for (k, point) in branch.points.iter().enumerate() {
+        let cells = first_cells(k, point).into_iter();
+        let states = (0..n_states).flat_map(|i| [&point.maxima, &point.minima, &point.means].map(|all| all.get(i)));
+        let multipliers = (0..n_multipliers).flat_map(|i| {
+            let multiplier = point.multipliers.get(i);
+            [multiplier.map(|m| &m.log_modulus), multiplier.map(|m| &m.angle)]
+        });
+        writer.write_record(cells.chain(states.chain(multipliers).map(|value| cell(value.copied()))))?;
+    }
+    writer.flush()
+}
+
+fn first_cells(k: usize, point: &Point) -> [String; FIRST_COLUMNS.len()] {
+    [
+        k.to_string(),
+        cell(Some(point.value)),
+        cell(Some(point.period)),
+        point.turns.to_string(),
+        point.is_stable().to_string(),
+        point.unstable_count.to_string(),
+        cell(Some(point.trivial_defect)),
+        cell(Some(point.liouville_defect)),
+        cell(Some(point.profile_error)),
+    ]
+}
+
+/// The shortest decimal that reads back to the same bits; empty where nothing applies.
+pub(crate) fn cell(value: Option<f64>) -> String {
+    value.map_or_else(String::new, |value| format!("{value:?}"))
+}

@@ -1,0 +1,177 @@
+//! Location of an event from a bracket.
+//!
+//! Newton's method on the minimally augmented system, started from the bracket's secant point; where it fails or
+//! leaves the bracket, the bracket is halved along the branch and Newton tried again. The value reported comes from
+//! a mesh with every interval halved, its error from the difference (methods as in [`crate::TestFunction`]).
+
+use std::sync::Arc;
+
+use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, interpolate_nodes};
+use armilla_follow::{Closing, Failure, Orientation, Problem, Station};
+
+use crate::point::{CyclePoint, CycleTangent};
+use crate::problem::CycleProblem;
+use crate::test_function::{CriticalKind, NullVectors, TestFunction};
+
+/// A located event.
+#[derive(Clone, Debug)]
+pub struct Located {
+    /// The critical cycle on the refined mesh.
+    pub point: CyclePoint,
+    /// Estimated absolute error of the parameter.
+    pub error: f64,
+    /// Estimated absolute error of the period.
+    pub period_error: f64,
+    /// Critical vectors on the refined mesh.
+    pub vectors: NullVectors,
+    /// How Newton's method went from the bracket.
+    pub report: Report,
+    /// Where between the two stations the event lies, 0 to 1.
+    pub share: f64,
+    /// Halvings of the bracket before Newton's method converged.
+    pub halvings: usize,
+}
+
+/// Why an event was not located; the bracket stands for it then.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct LocateFault {
+    /// Parameter values of the narrowest bracket.
+    pub bracket: (f64, f64),
+}
+
+/// Halvings of the bracket: 40 take any stride to the shortest.
+const HALVINGS: usize = 40;
+
+type CycleStation = Station<CyclePoint, CycleTangent>;
+
+impl CycleProblem {
+    /// Locates the event of a kind between two stations where watched value `index` changes sign.
+    ///
+    /// # Errors
+    /// [`LocateFault`] with the narrowest bracket reached.
+    pub fn locate(&mut self, kind: CriticalKind, index: usize, before: &CycleStation, after: &CycleStation) -> Result<Located, LocateFault> {
+        let total = after.distance - before.distance;
+        let (mut low, mut high) = (before.clone(), after.clone());
+        for halvings in 0..HALVINGS {
+            let guess = self.secant_point(index, &low, &high);
+            if let Some((point, report)) = self.newton_event(kind, &guess, &low, &high)
+                && let Ok((point, error, period_error, vectors)) = self.refine_event(kind, &point)
+            {
+                let share = self.share(before, &point, total);
+                return Ok(Located { point, error, period_error, vectors, report, share, halvings });
+            }
+            let Some(middle) = self.middle(&low, &high) else { break };
+            let same = middle.watch.values[index].value * low.watch.values[index].value > 0.0;
+            if same { low = middle } else { high = middle }
+        }
+        Err(LocateFault { bracket: (low.point.unknowns.parameter, high.point.unknowns.parameter) })
+    }
+
+    fn share(&self, before: &CycleStation, point: &CyclePoint, total: f64) -> f64 {
+        if total > 0.0 { (self.distance(&before.point, point) / total).clamp(0.0, 1.0) } else { 0.0 }
+    }
+
+    /// Linear interpolation of the stations at the zero of the secant.
+    fn secant_point(&self, index: usize, low: &CycleStation, high: &CycleStation) -> CyclePoint {
+        let (a, b) = (low.watch.values[index].value, high.watch.values[index].value);
+        let share = if a == b { 0.5 } else { (a / (a - b)).clamp(0.05, 0.95) };
+        let first = low.point.on_mesh(self.system.tables(), &high.point.mesh);
+        let mix = |x: f64, y: f64| x + share * (y - x);
+        let nodes = first.unknowns.nodes.iter().zip(&high.point.unknowns.nodes).map(|(x, y)| mix(*x, *y)).collect();
+        let unknowns = Iterate {
+            nodes,
+            period: mix(first.unknowns.period, high.point.unknowns.period),
+            parameter: mix(first.unknowns.parameter, high.point.unknowns.parameter),
+        };
+        CyclePoint { mesh: high.point.mesh.clone(), unknowns }
+    }
+
+    /// Newton on the augmented system; accepted only inside the bracket's neighbourhood.
+    fn newton_event(&mut self, kind: CriticalKind, guess: &CyclePoint, low: &CycleStation, high: &CycleStation) -> Option<(CyclePoint, Report)> {
+        let mut point = guess.clone();
+        let report = self.augmented(kind, &mut point).ok()?.0;
+        let length = self.distance(&low.point, &high.point);
+        // A chord is shorter than the branch between its ends; twice its length still excludes anything else.
+        let inside = self.distance(&low.point, &point) <= 2.0 * length && self.distance(&high.point, &point) <= 2.0 * length;
+        inside.then_some((point, report))
+    }
+
+    /// Solves the augmented system in place on the point's mesh.
+    pub(crate) fn augmented(&mut self, kind: CriticalKind, point: &mut CyclePoint) -> Result<(Report, NullVectors), NewtonFailure> {
+        self.system.set_mesh(&point.mesh);
+        self.system.linearise(&point.unknowns)?;
+        let mut function = TestFunction::new(kind, &self.system, &point.unknowns)?;
+        let reference = point.unknowns.nodes.clone();
+        let report = self.newton(point, &reference, &mut function)?;
+        Ok((report, function.vectors().clone()))
+    }
+
+    /// The event again with every interval halved: the better value, and the difference as the error of it.
+    fn refine_event(&mut self, kind: CriticalKind, coarse: &CyclePoint) -> Result<(CyclePoint, f64, f64, NullVectors), NewtonFailure> {
+        let mesh: Arc<[f64]> = halved(&coarse.mesh).into();
+        let mut fine = coarse.on_mesh(self.system.tables(), &mesh);
+        let (_, vectors) = self.augmented(kind, &mut fine)?;
+        let error = |a: f64, b: f64, scale: f64| (a - b).abs() + ROUNDOFF * b.abs().max(scale);
+        let value_error = error(coarse.unknowns.parameter, fine.unknowns.parameter, self.metric.parameter_scale);
+        let period_error = error(coarse.unknowns.period, fine.unknowns.period, 0.0);
+        Ok((fine, value_error, period_error, vectors))
+    }
+
+    /// A station halfway along the branch between two stations.
+    fn middle(&mut self, low: &CycleStation, high: &CycleStation) -> Option<CycleStation> {
+        let stride = 0.5 * self.distance(&low.point, &high.point);
+        let prediction = self.advance(&low.point, &low.tangent, stride);
+        let closing = Closing::Arclength { from: &low.point, tangent: &low.tangent, stride };
+        let point = self.correct(&prediction, closing).ok()?.point;
+        let tangent = self.tangent(&point, Orientation::Along(&low.tangent)).ok()?;
+        let watch = self.watch(&point, &tangent).ok()?;
+        Some(Station { point, tangent, watch, distance: low.distance + stride })
+    }
+
+    /// Narrows a bracket over which `differs` tells its ends apart, for changes without a defining system: returns
+    /// the narrowest pair of stations.
+    pub fn narrow(&mut self, before: &CycleStation, after: &CycleStation, same_as_before: impl Fn(&CycleStation) -> bool) -> (CycleStation, CycleStation) {
+        let (mut low, mut high) = (before.clone(), after.clone());
+        for _ in 0..HALVINGS {
+            // Bisection along the chord: past this length the ends agree to the profile's accuracy.
+            if self.distance(&low.point, &high.point) < self.settings.mesh.accuracy.max(1e-10) {
+                break;
+            }
+            let Some(middle) = self.middle(&low, &high) else { break };
+            if same_as_before(&middle) { low = middle } else { high = middle }
+        }
+        (low, high)
+    }
+
+    /// The cycle re-solved on a mesh with every interval halved, at the same parameter: its period's error.
+    ///
+    /// # Errors
+    /// [`Failure`] where that does not converge.
+    pub fn refine(&mut self, point: &CyclePoint) -> Result<(CyclePoint, f64), Failure<armilla_collocation::Fault>> {
+        let mesh: Arc<[f64]> = halved(&point.mesh).into();
+        let nodes = interpolate_nodes(
+            (self.system.tables(), &point.mesh),
+            &point.unknowns.nodes,
+            (self.system.tables(), &mesh),
+            self.system.n(),
+        );
+        let mut fine = CyclePoint { mesh, unknowns: Iterate { nodes, ..point.unknowns.clone() } };
+        let value = point.unknowns.parameter;
+        self.correct_at(&mut fine, value).map_err(|_| Failure::NotConverged)?;
+        let error = (fine.unknowns.period - point.unknowns.period).abs() + ROUNDOFF * fine.unknowns.period;
+        Ok((fine, error))
+    }
+}
+
+/// Relative roundoff left in a value that Newton's method took to its floor: some tens of units in the last place, as
+/// the residual is a sum of that many terms.
+const ROUNDOFF: f64 = 64.0 * f64::EPSILON;
+
+fn halved(mesh: &[f64]) -> Vec<f64> {
+    let mut out = Vec::with_capacity(2 * mesh.len());
+    for pair in mesh.windows(2) {
+        out.extend([pair[0], 0.5 * (pair[0] + pair[1])]);
+    }
+    out.push(1.0);
+    out
+}

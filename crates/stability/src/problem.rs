@@ -1,0 +1,392 @@
+//! The cycle behind the seam of `follow`.
+
+use std::sync::Arc;
+
+use armilla_collocation::{
+    Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings, Report, Row, System, SystemSpec, Task,
+    Workspace, correct_with, estimate_error, remesh,
+};
+use armilla_follow::{Closing, Corrected, Failure, Orientation, Problem, Watch, Watched};
+use armilla_linalg::{Bordered, Right};
+use armilla_model::VectorField;
+use armilla_record::{Point, Profile};
+
+use crate::measure::Measures;
+use crate::point::{CyclePoint, CycleTangent};
+use crate::spectrum::{Spectrum, SpectrumSolver};
+
+/// Index of the fold function in the watch list: the parameter's component of the tangent.
+pub const WATCH_FOLD: usize = 0;
+/// Index of the doubling function: `Prod (mu + 1)`, scaled.
+pub const WATCH_DOUBLING: usize = 1;
+/// Index of the torus function: `Prod (|mu|^2 - 1)` over complex pairs, scaled.
+pub const WATCH_TORUS: usize = 2;
+
+/// The model as the cycle problem needs it.
+#[derive(Clone)]
+pub struct CycleSpec {
+    /// The rates.
+    pub field: Arc<dyn VectorField>,
+    /// Values of all parameters.
+    pub parameters: Vec<f64>,
+    /// Index of the followed parameter.
+    pub free: usize,
+    /// Size of the followed parameter in the metric: the width of the asked range.
+    pub parameter_scale: f64,
+}
+
+/// Numerical settings of cycles.
+#[derive(Clone, Copy, Debug)]
+pub struct CycleSettings {
+    /// Degree of the pieces.
+    pub degree: usize,
+    /// How the mesh is chosen.
+    pub mesh: MeshSettings,
+    /// Limits of Newton's method.
+    pub newton: NewtonSettings,
+}
+
+/// Degree used at every accuracy. Six carries 1e-6 and 1e-12 alike within a factor two of the best degree's cost,
+/// and its superconvergence (order 12) keeps thresholds at roundoff.
+pub const DEGREE: usize = 6;
+
+impl CycleSettings {
+    /// Defaults for an accuracy.
+    pub fn new(accuracy: f64) -> Self {
+        Self { degree: DEGREE, mesh: MeshSettings::new(accuracy), newton: NewtonSettings::default() }
+    }
+}
+
+/// Why a first cycle could not be made.
+#[derive(Clone, Debug, PartialEq)]
+pub enum StartFault {
+    /// Newton's method failed on the given profile.
+    Newton(NewtonFailure),
+    /// The profile has no extent: it is an equilibrium.
+    NoExtent,
+}
+
+impl std::fmt::Display for StartFault {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        match self {
+            Self::Newton(failure) => failure.fmt(f),
+            Self::NoExtent => write!(f, "the start does not move: it is an equilibrium, not a cycle"),
+        }
+    }
+}
+
+impl std::error::Error for StartFault {}
+
+/// Cycles of one model in one parameter.
+pub struct CycleProblem {
+    pub(crate) spec: CycleSpec,
+    pub(crate) settings: CycleSettings,
+    pub(crate) system: System,
+    pub(crate) metric: Metric,
+    newton: Workspace,
+    spectrum: SpectrumSolver,
+    last_spectrum: Option<Spectrum>,
+    last_error: f64,
+    bordered: Option<Bordered>,
+    work: Row,
+}
+
+impl CycleProblem {
+    /// A problem whose metric is that of `profile`, with the cycle itself corrected at the parameter value `parameter`
+    /// and on a mesh chosen for the accuracy.
+    ///
+    /// # Errors
+    /// [`StartFault`].
+    pub fn start(spec: CycleSpec, settings: CycleSettings, profile: &Profile, parameter: f64) -> Result<(Self, CyclePoint), StartFault> {
+        let metric = metric_of(profile, spec.parameter_scale).ok_or(StartFault::NoExtent)?;
+        let mut problem = Self::with_metric(spec, settings, metric, &profile.mesh);
+        let mut point = CyclePoint::from_profile(profile, parameter);
+        problem.correct_at(&mut point, parameter).map_err(StartFault::Newton)?;
+        // Each round the estimate comes from a better mesh; the choice settles in two or three.
+        const ROUNDS: usize = 8;
+        for _ in 0..ROUNDS {
+            let Some(mesh) = problem.better_mesh(&point) else { break };
+            point = point.on_mesh(problem.system.tables(), &mesh);
+            problem.correct_at(&mut point, parameter).map_err(StartFault::Newton)?;
+        }
+        Ok((problem, point))
+    }
+
+    /// A problem with a given metric, as a switched branch needs it.
+    pub(crate) fn with_metric(spec: CycleSpec, settings: CycleSettings, metric: Metric, mesh: &[f64]) -> Self {
+        let system_spec = SystemSpec {
+            field: spec.field.clone(),
+            parameters: spec.parameters.clone(),
+            free: spec.free,
+            metric: metric.clone(),
+        };
+        let system = System::new(system_spec, settings.degree, mesh);
+        let spectrum = SpectrumSolver::new(spec.field.as_ref(), settings.degree);
+        Self {
+            spec,
+            settings,
+            system,
+            metric,
+            newton: Workspace::default(),
+            spectrum,
+            last_spectrum: None,
+            last_error: f64::NAN,
+            bordered: None,
+            work: Row::zero(0),
+        }
+    }
+
+    /// The settings in force.
+    pub fn settings(&self) -> &CycleSettings {
+        &self.settings
+    }
+
+    /// The metric of the branch.
+    pub fn metric(&self) -> &Metric {
+        &self.metric
+    }
+
+    /// A cycle as a profile.
+    pub fn profile(&self, point: &CyclePoint) -> Profile {
+        point.profile(self.settings.degree)
+    }
+
+    /// Values of all parameters at a point.
+    pub fn parameters_at(&self, point: &CyclePoint) -> Vec<f64> {
+        let mut parameters = self.spec.parameters.clone();
+        parameters[self.spec.free] = point.unknowns.parameter;
+        parameters
+    }
+
+    /// Multipliers of a cycle.
+    ///
+    /// # Errors
+    /// [`crate::SpectrumFault`].
+    pub fn spectrum(&mut self, point: &CyclePoint) -> Result<Spectrum, crate::SpectrumFault> {
+        let parameters = self.parameters_at(point);
+        let profile = point.profile(self.settings.degree);
+        self.spectrum.spectrum(&profile, &parameters, &self.metric.scales)
+    }
+
+    /// Estimated error of a cycle's profile, relative to the range of each state.
+    pub fn profile_error(&self, point: &CyclePoint) -> f64 {
+        estimate_error(self.system.tables(), &point.mesh, &point.unknowns.nodes, self.system.n()).error
+    }
+
+    /// A point as a row of the branch table.
+    ///
+    /// # Errors
+    /// [`crate::SpectrumFault`] where the multipliers fail.
+    pub fn describe(&mut self, point: &CyclePoint, turns: usize, distance: f64) -> Result<Point, crate::SpectrumFault> {
+        let spectrum = self.spectrum(point)?;
+        let profile = self.profile(point);
+        let measures = Measures::of(&profile);
+        Ok(Point {
+            value: point.unknowns.parameter,
+            period: point.unknowns.period,
+            turns,
+            distance,
+            unstable_count: spectrum.unstable_count(),
+            trivial_defect: spectrum.trivial_defect,
+            liouville_defect: spectrum.liouville_defect,
+            profile_error: self.profile_error(point),
+            maxima: measures.maxima,
+            minima: measures.minima,
+            means: measures.means,
+            spreads: measures.spreads,
+            multipliers: spectrum.multipliers,
+            intervals: profile.intervals(),
+            degree: profile.degree,
+        })
+    }
+
+    /// Corrects with the parameter held; the phase refers to the guess itself.
+    pub(crate) fn correct_at(&mut self, point: &mut CyclePoint, parameter: f64) -> Result<Report, NewtonFailure> {
+        let mut row = Row::zero(point.unknowns.nodes.len());
+        row.parameter = 1.0;
+        let reference = point.unknowns.nodes.clone();
+        let mut closing = LinearClosing { row, target: parameter };
+        let report = self.newton(point, &reference, &mut closing)?;
+        // The linear row meets the value up to rounding; the user asked for the value.
+        point.unknowns.parameter = parameter;
+        Ok(report)
+    }
+
+    /// Newton's method on the mesh of `point`, in place.
+    pub(crate) fn newton(
+        &mut self,
+        point: &mut CyclePoint,
+        reference: &[f64],
+        closing: &mut dyn armilla_collocation::Closing,
+    ) -> Result<Report, NewtonFailure> {
+        self.system.set_mesh(&point.mesh);
+        let task = Task { reference, closing, settings: self.settings.newton };
+        correct_with(&mut self.newton, &mut self.system, &mut point.unknowns, task)
+    }
+
+    /// A mesh that suits the point, or none where the present one does: its error is within the accuracy and it has
+    /// not many more intervals than needed.
+    pub(crate) fn better_mesh(&mut self, point: &CyclePoint) -> Option<Arc<[f64]>> {
+        /// Share of intervals that must become superfluous before the mesh shrinks: less would swing to and fro.
+        const SHRINK_BELOW: f64 = 0.6;
+        let estimate = estimate_error(self.system.tables(), &point.mesh, &point.unknowns.nodes, self.system.n());
+        self.last_error = estimate.error;
+        let choice = remesh(self.system.tables(), &point.mesh, &estimate, self.settings.mesh);
+        let (now, wanted) = (point.mesh.len() - 1, choice.mesh.len() - 1);
+        let too_coarse = estimate.error > self.settings.mesh.accuracy && !(choice.limited && now == wanted);
+        let too_fine = (wanted as f64) < SHRINK_BELOW * now as f64;
+        let settled = self.settings.mesh.fixed == Some(now) && estimate.imbalance < 2.0;
+        ((too_coarse || too_fine) && !settled).then(|| choice.mesh.into())
+    }
+
+    fn arclength_row(&mut self, direction: &CycleTangent, mesh: &Arc<[f64]>) -> Row {
+        let direction = direction.on_mesh(self.system.tables(), mesh);
+        let mut row = Row::zero(direction.row.nodes.len());
+        self.metric.functional(self.system.tables(), mesh, &direction.row, &mut row);
+        row
+    }
+
+    fn follow_failure(failure: NewtonFailure) -> Failure<Fault> {
+        match failure {
+            NewtonFailure::Fault(fault @ Fault::NotFinite { .. }) => Failure::Outside(fault),
+            _ => Failure::NotConverged,
+        }
+    }
+}
+
+/// Scales of a profile: the range of each state; a state that does not move takes the largest range of the others
+/// relative to nothing better. None where nothing moves.
+pub(crate) fn metric_of(profile: &Profile, parameter_scale: f64) -> Option<Metric> {
+    /// A range below this share of the state's own size is roundoff, not motion.
+    const STILL: f64 = 1e-12;
+    let ranges: Vec<(f64, f64)> =
+        profile.extremes().into_iter().map(|(low, high)| (high - low, high.abs().max(low.abs()))).collect();
+    let moving = |&(range, size): &(f64, f64)| range > STILL * size;
+    let largest = ranges.iter().filter(|r| moving(r)).map(|r| r.0).fold(0.0, f64::max);
+    if !(largest > 0.0) {
+        return None;
+    }
+    let scale = |r: &(f64, f64)| if moving(r) { r.0 } else if r.1 > 0.0 { r.1 } else { largest };
+    Some(Metric { scales: ranges.iter().map(scale).collect(), period_scale: profile.period, parameter_scale })
+}
+
+impl Problem for CycleProblem {
+    type Point = CyclePoint;
+    type Tangent = CycleTangent;
+    type Error = Fault;
+
+    fn advance(&self, point: &CyclePoint, tangent: &CycleTangent, stride: f64) -> CyclePoint {
+        let mut ahead = point.clone();
+        let tangent = tangent.on_mesh(self.system.tables(), &point.mesh);
+        ahead.unknowns.add(stride, &tangent.row);
+        ahead
+    }
+
+    fn correct(
+        &mut self,
+        prediction: &CyclePoint,
+        closing: Closing<'_, CyclePoint, CycleTangent>,
+    ) -> Result<Corrected<CyclePoint>, Failure<Fault>> {
+        let mut point = prediction.clone();
+        let report = match closing {
+            Closing::Parameter(value) => self.correct_at(&mut point, value),
+            Closing::Arclength { from, tangent: direction, stride: amount } | Closing::Component { from, direction, amount } => {
+                let from = from.on_mesh(self.system.tables(), &prediction.mesh);
+                let row = self.arclength_row(direction, &prediction.mesh);
+                let target = row.apply(&from.unknowns) + amount;
+                let mut closing = LinearClosing { row, target };
+                self.newton(&mut point, &from.unknowns.nodes, &mut closing)
+            }
+        }
+        .map_err(Self::follow_failure)?;
+        if let Closing::Arclength { stride, .. } = closing {
+            // A correction longer than the step itself does not come from the neighbourhood of the prediction.
+            if !(self.distance(&point, prediction) <= stride) {
+                return Err(Failure::Jumped);
+            }
+        }
+        Ok(Corrected { point, contraction: report.contraction(), iterations: report.iterations })
+    }
+
+    fn tangent(&mut self, point: &CyclePoint, orientation: Orientation<'_, CycleTangent>) -> Result<CycleTangent, Failure<Fault>> {
+        let len = point.unknowns.nodes.len();
+        let row = match orientation {
+            Orientation::Along(old) => self.arclength_row(old, &point.mesh),
+            Orientation::Parameter(sign) => Row { parameter: sign, ..Row::zero(len) },
+        };
+        self.system.set_mesh(&point.mesh);
+        self.system.linearise(&point.unknowns).map_err(|fault| Self::follow_failure(fault.into()))?;
+        let shape = self.system.shape();
+        let fits = self.work.nodes.len() == len && self.bordered.is_some();
+        if !fits {
+            self.bordered = Some(Bordered::new(shape, 2));
+            self.work = Row::zero(len);
+        }
+        let bordered = self.bordered.as_mut().expect("made above");
+        self.system.period_column(bordered.column_mut(0));
+        self.system.parameter_column(bordered.column_mut(1));
+        self.system.phase_row(&point.unknowns.nodes, bordered.row_mut(0));
+        bordered.row_mut(1).copy_from_slice(&row.nodes);
+        bordered.corner_mut().copy_from_slice(&[0.0, 0.0, row.period, row.parameter]);
+        bordered.prepare(self.system.cyclic(), 1.0).map_err(|_| Failure::NotConverged)?;
+        let mut scalars = [0.0; 2];
+        let right = Right { core: &[], closing: &[], border: &[0.0, 1.0] };
+        bordered.solve(self.system.cyclic(), right, &mut self.work.nodes, &mut scalars);
+        let mut tangent = Row { nodes: self.work.nodes.clone(), period: scalars[0], parameter: scalars[1] };
+        let length = self.metric.inner(self.system.tables(), &point.mesh, &tangent, &tangent).sqrt();
+        if !(length > 0.0 && length.is_finite()) {
+            return Err(Failure::NotConverged);
+        }
+        tangent.nodes.iter_mut().for_each(|value| *value /= length);
+        tangent.period /= length;
+        tangent.parameter /= length;
+        Ok(CycleTangent { mesh: point.mesh.clone(), row: tangent })
+    }
+
+    fn inner(&self, a: &CycleTangent, b: &CycleTangent) -> f64 {
+        let b = b.on_mesh(self.system.tables(), &a.mesh);
+        self.metric.inner(self.system.tables(), &a.mesh, &a.row, &b.row)
+    }
+
+    fn distance(&self, a: &CyclePoint, b: &CyclePoint) -> f64 {
+        let b = b.on_mesh(self.system.tables(), &a.mesh);
+        let difference = Row {
+            nodes: a.unknowns.nodes.iter().zip(&b.unknowns.nodes).map(|(a, b)| a - b).collect(),
+            period: a.unknowns.period - b.unknowns.period,
+            parameter: a.unknowns.parameter - b.unknowns.parameter,
+        };
+        self.metric.inner(self.system.tables(), &a.mesh, &difference, &difference).sqrt()
+    }
+
+    fn parameter(&self, point: &CyclePoint) -> f64 {
+        point.unknowns.parameter
+    }
+
+    fn watch(&mut self, point: &CyclePoint, tangent: &CycleTangent) -> Result<Watch, Failure<Fault>> {
+        let spectrum = self.spectrum(point).map_err(|_| Failure::NotConverged)?;
+        let value = |value: f64| Watched { value, slope: None };
+        let watch = Watch {
+            values: vec![
+                value(tangent.row.parameter / self.metric.parameter_scale),
+                value(spectrum.doubling_product()),
+                value(spectrum.torus_product()),
+            ],
+            unstable_count: spectrum.unstable_count(),
+        };
+        self.last_spectrum = Some(spectrum);
+        Ok(watch)
+    }
+
+    fn renew(&mut self, point: &CyclePoint, tangents: &[&CycleTangent]) -> Option<(CyclePoint, Vec<CycleTangent>)> {
+        let mesh = self.better_mesh(point)?;
+        let mut renewed = point.on_mesh(self.system.tables(), &mesh);
+        let tangents: Vec<CycleTangent> = tangents.iter().map(|t| t.on_mesh(self.system.tables(), &mesh)).collect();
+        let direction = tangents.first()?;
+        let row = self.arclength_row(direction, &mesh);
+        let target = row.apply(&renewed.unknowns);
+        let reference = renewed.unknowns.nodes.clone();
+        // Where the new mesh does not converge the old point stands, with its larger error shown.
+        self.newton(&mut renewed, &reference, &mut LinearClosing { row, target }).ok()?;
+        Some((renewed, tangents))
+    }
+}

@@ -1,0 +1,116 @@
+//! From a located doubling onto the doubled branch.
+//!
+//! The doubled cycle near the threshold is the critical cycle told twice plus a small multiple of the critical
+//! vector v, antiperiodic over one turn: `u + xi v` on the first turn, `u - xi v` on the second. It is corrected with
+//! the amplitude along that direction held, the parameter free, so that the side on which the branch is born need
+//! not be known (Keller 1977, in Applications of Bifurcation Theory, 359; Kuznetsov, Govaerts, Doedel & Dhooge 2005,
+//! SIAM J. Numer. Anal. 43:1407, for the predictor).
+
+use armilla_collocation::Row;
+use armilla_follow::{Closing, Problem};
+
+use crate::locate::Located;
+use crate::point::{CyclePoint, CycleTangent};
+use crate::problem::{CycleProblem, metric_of};
+
+/// The start of a doubled branch.
+pub struct Doubled {
+    /// The problem of the doubled branch, with its own metric.
+    pub problem: CycleProblem,
+    /// The critical cycle told twice: where the branch is born.
+    pub birth: CyclePoint,
+    /// The first cycle with a split between its turns.
+    pub point: CyclePoint,
+    /// Unit direction from the birth to the first cycle: the way outwards.
+    pub outwards: CycleTangent,
+    /// Amplitude of the first cycle along it.
+    pub amplitude: f64,
+}
+
+/// Why no doubled cycle was found.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct SwitchFault;
+
+impl std::fmt::Display for SwitchFault {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        write!(f, "no doubled cycle was found near the doubling at any amplitude tried")
+    }
+}
+
+impl std::error::Error for SwitchFault {}
+
+/// First amplitude tried, in the branch's metric (1 is the size of the cycle): well above roundoff in xi^2, and small
+/// against the cycle.
+const AMPLITUDE: f64 = 0.02;
+/// Halvings of the amplitude before giving up.
+const HALVINGS: usize = 12;
+/// Largest |log mu| of the multiplier that is 1 at the birth: beyond, the first cycle is already far from it and a
+/// next event may have been passed.
+const NEAR_BIRTH: f64 = 0.3;
+
+impl CycleProblem {
+    /// Enters the branch born at a located doubling.
+    ///
+    /// # Errors
+    /// [`SwitchFault`].
+    pub fn double(&self, located: &Located) -> Result<Doubled, SwitchFault> {
+        let birth_profile = self.profile(&located.point).repeated(2);
+        let metric = metric_of(&birth_profile, self.spec.parameter_scale).ok_or(SwitchFault)?;
+        let mut spec = self.spec.clone();
+        spec.parameters[spec.free] = located.point.unknowns.parameter;
+        let mut problem = CycleProblem::with_metric(spec, self.settings, metric, &birth_profile.mesh);
+        let birth = CyclePoint::from_profile(&birth_profile, located.point.unknowns.parameter);
+        let outwards = direction(&problem, &birth, located);
+        let mut amplitude = AMPLITUDE;
+        for _ in 0..HALVINGS {
+            if let Some(point) = first_cycle(&mut problem, &birth, &outwards, amplitude) {
+                return Ok(Doubled { problem, birth, point, outwards, amplitude });
+            }
+            amplitude *= 0.5;
+        }
+        Err(SwitchFault)
+    }
+
+    /// Size of the part of a cycle that changes sign from one half of the period to the other, in the metric: 0 for a
+    /// cycle that is a shorter one told twice.
+    pub fn split(&self, point: &CyclePoint) -> f64 {
+        let profile = self.profile(point);
+        let mut evaluator = profile.evaluator();
+        let mut shifted = vec![0.0; profile.n_states];
+        let times = profile.node_times();
+        let mut nodes = Vec::with_capacity(profile.values.len());
+        for (node, time) in times.iter().enumerate() {
+            evaluator.at(time + 0.5, &mut shifted);
+            nodes.extend(profile.node(node).iter().zip(&shifted).map(|(a, b)| 0.5 * (a - b)));
+        }
+        self.metric.nodes_inner(self.system.tables(), &point.mesh, &nodes, &nodes).sqrt()
+    }
+}
+
+/// The critical vector over two turns, of unit length.
+fn direction(problem: &CycleProblem, birth: &CyclePoint, located: &Located) -> CycleTangent {
+    let n = problem.system.n();
+    let v = &located.vectors.nodes;
+    let mut nodes = v[..v.len() - n].to_vec();
+    nodes.extend(v.iter().map(|value| -value));
+    let mut row = Row { nodes, period: 0.0, parameter: 0.0 };
+    let length = problem.metric.inner(problem.system.tables(), &birth.mesh, &row, &row).sqrt();
+    row.nodes.iter_mut().for_each(|value| *value /= length);
+    CycleTangent { mesh: birth.mesh.clone(), row }
+}
+
+fn first_cycle(problem: &mut CycleProblem, birth: &CyclePoint, outwards: &CycleTangent, amplitude: f64) -> Option<CyclePoint> {
+    let prediction = problem.advance(birth, outwards, amplitude);
+    let closing = Closing::Component { from: birth, direction: outwards, amount: amplitude };
+    let mut point = problem.correct(&prediction, closing).ok()?.point;
+    if let Some((renewed, _)) = problem.renew(&point, &[outwards]) {
+        point = renewed;
+    }
+    // The split must be what was asked, or Newton's method fell back onto the undoubled cycle or off elsewhere.
+    let split = problem.split(&point);
+    if !(split > 0.5 * amplitude && split < 2.0 * amplitude) || problem.distance(birth, &point) > 10.0 * amplitude {
+        return None;
+    }
+    let near = problem.spectrum(&point).ok()?.nearest_to_one()?;
+    (near.abs() < NEAR_BIRTH).then_some(point)
+}
