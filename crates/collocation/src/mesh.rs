@@ -58,11 +58,12 @@ const GROWTH: f64 = 0.5;
 /// Predicted errors aim below the accuracy by this factor, since the estimate is asymptotic.
 const SAFETY: f64 = 0.5;
 
-/// Estimates the local error of node data on `mesh`; `ranges` are the ranges of the states (a state that does not
-/// move may have range 0 and is then judged by the largest modulus of its values, or not at all).
-pub fn estimate_error(tables: &Tables, mesh: &[f64], nodes: &[f64], n: usize) -> ErrorEstimate {
+/// Estimates the local error of node data on `mesh`, relative to the range of each state, or to `least` of that state
+/// where its range is smaller: a state that hardly moves carries only roundoff, which no mesh resolves.
+pub fn estimate_error(tables: &Tables, mesh: &[f64], nodes: &[f64], least: &[f64]) -> ErrorEstimate {
+    let n = least.len();
     let intervals = mesh.len() - 1;
-    let scales = scales_of(nodes, n);
+    let scales = scales_of(nodes, least);
     let highest = highest_derivatives(tables, mesh, nodes, &scales);
     let h = |i: usize| mesh[i + 1] - mesh[i];
     // Jump between piece i and its successor, over the distance of their middles.
@@ -82,17 +83,13 @@ pub fn estimate_error(tables: &Tables, mesh: &[f64], nodes: &[f64], n: usize) ->
     ErrorEstimate { error, derivative, imbalance: if mean > 0.0 { largest / mean } else { 1.0 } }
 }
 
-fn scales_of(nodes: &[f64], n: usize) -> Vec<f64> {
-    (0..n)
-        .map(|a| {
-            let values = || nodes.iter().skip(a).step_by(n);
-            let high = values().copied().fold(f64::NEG_INFINITY, f64::max);
-            let low = values().copied().fold(f64::INFINITY, f64::min);
-            let modulus = high.abs().max(low.abs());
-            // A state that only carries roundoff has no range to be accurate to.
-            if high - low > 1e3 * f64::EPSILON * modulus { high - low } else { f64::INFINITY }
-        })
-        .collect()
+fn scales_of(nodes: &[f64], least: &[f64]) -> Vec<f64> {
+    let n = least.len();
+    let range = |a: usize| {
+        let values = || nodes.iter().skip(a).step_by(n).copied();
+        values().fold(f64::NEG_INFINITY, f64::max) - values().fold(f64::INFINITY, f64::min)
+    };
+    least.iter().enumerate().map(|(a, least)| range(a).max(*least)).collect()
 }
 
 fn highest_derivatives(tables: &Tables, mesh: &[f64], nodes: &[f64], scales: &[f64]) -> Vec<f64> {
@@ -215,7 +212,7 @@ mod tests {
         for degree in 3..=6 {
             let tables = Tables::new(degree);
             let mesh: Vec<f64> = (0..=40).map(|i| i as f64 / 40.0).collect();
-            let found = estimate_error(&tables, &mesh, &sampled(&tables, &mesh, |t| (TAU * t).sin()), 1).error;
+            let found = estimate_error(&tables, &mesh, &sampled(&tables, &mesh, |t| (TAU * t).sin()), &[0.0]).error;
             let exact = tables.error_constant * (TAU / 40.0).powi(degree as i32 + 1) / 2.0;
             assert!((found / exact - 1.0).abs() < 0.05, "{degree}: {found} {exact}");
         }
@@ -229,14 +226,14 @@ mod tests {
         let mut mesh: Vec<f64> = (0..=60).map(|i| i as f64 / 60.0).collect();
         for _ in 0..3 {
             let nodes = sampled(&tables, &mesh, layer);
-            mesh = remesh(&tables, &mesh, &estimate_error(&tables, &mesh, &nodes, 1), MeshSettings::new(1e-8)).mesh;
+            mesh = remesh(&tables, &mesh, &estimate_error(&tables, &mesh, &nodes, &[0.0]), MeshSettings::new(1e-8)).mesh;
         }
-        let estimate = estimate_error(&tables, &mesh, &sampled(&tables, &mesh, layer), 1);
+        let estimate = estimate_error(&tables, &mesh, &sampled(&tables, &mesh, layer), &[0.0]);
         assert!(estimate.error < 1e-8 && estimate.error > 1e-10, "{}", estimate.error);
         let lengths: Vec<f64> = mesh.windows(2).map(|pair| pair[1] - pair[0]).collect();
         assert!(lengths.windows(2).all(|pair| pair[0] / pair[1] < 3.0 && pair[1] / pair[0] < 3.0), "{lengths:?}");
         let uniform: Vec<f64> = (0..mesh.len()).map(|i| i as f64 / (mesh.len() - 1) as f64).collect();
-        let plain = estimate_error(&tables, &uniform, &sampled(&tables, &uniform, layer), 1);
+        let plain = estimate_error(&tables, &uniform, &sampled(&tables, &uniform, layer), &[0.0]);
         assert!(plain.error > 30.0 * estimate.error, "{} {}", plain.error, estimate.error);
     }
 }

@@ -45,129 +45,71 @@ pub(crate) fn around(lo: f64, hi: f64) -> (f64, f64) {
         let room = MARGIN * (hi - lo);
         return (lo - room, hi + room);
     }
-    let room = if size > 1.0 / LARGEST {
-        0.05 * size
-    } else {
-        1.0
-    };
+    let room = if size > 1.0 / LARGEST { 0.05 * size } else { 1.0 };
     (0.5 * (lo + hi) - room, 0.5 * (lo + hi) + room)
 }
 
 impl Axis {
     /// A linear scale with at most `most` named ticks.
     pub(crate) fn linear(lo: f64, hi: f64, most: usize) -> Self {
-        let (multiple, power) = round_step((hi - lo) / most.max(1) as f64);
-        let places = multiples(lo, hi, multiple, power);
+        let (places, power) = round_places(lo, hi, most.max(1));
         Self::named(lo, hi, places, power)
     }
 
     /// A logarithmic scale from ten to the `lo` to ten to the `hi`.
     pub(crate) fn logarithmic(lo: f64, hi: f64, most: usize) -> Self {
         /// Below this many decades hardly two powers of ten show: round numbers are named instead.
-        const FEW_DECADES: f64 = 1.0;
+        const FEW_DECADES: f64 = 0.8;
         if hi - lo < FEW_DECADES && lo.abs().max(hi.abs()) < LARGEST.log10() {
             return Self::bent(lo, hi, most);
         }
         let stride = ((hi - lo) / most.max(1) as f64).ceil().max(1.0);
-        let first = (lo / stride).ceil() * stride;
-        let plain = lo > -3.5 && hi < 4.5;
-        let name = |at: f64| {
-            if plain {
-                decimal(10f64.powf(at), (-at).max(0.0) as usize)
-            } else {
-                power_of_ten(at as i32)
-            }
-        };
-        let count = ((hi - first) / stride).floor().max(-1.0) as i64;
-        let mut ticks: Vec<Tick> = (0..=count)
-            .map(|k| first + k as f64 * stride)
-            .map(|at| Tick {
-                at,
-                name: Some(name(at)),
-            })
-            .collect();
+        let (first, last) = ((lo / stride).ceil() as i64, (hi / stride).floor() as i64);
+        let decades: Vec<f64> = (first..=last).map(|k| k as f64 * stride).collect();
+        let few = 3 * decades.len() <= most;
+        let mut ticks: Vec<Tick> =
+            decades.iter().map(|&at| Tick { at, name: Some(power_name(1, at as i32)) }).collect();
         if stride == 1.0 {
-            let between = (lo.floor() as i64..=hi.floor() as i64)
-                .flat_map(|decade| (2..10).map(move |m| decade as f64 + f64::from(m).log10()))
-                .filter(|at| (lo..=hi).contains(at));
-            ticks.extend(between.map(|at| Tick { at, name: None }));
+            let between = (lo.floor() as i32..=hi.floor() as i32).flat_map(|decade| (2..10).map(move |m| (m, decade)));
+            ticks.extend(
+                between
+                    .map(|(m, decade)| Tick {
+                        at: f64::from(decade) + f64::from(m).log10(),
+                        name: (few && (m == 2 || m == 5)).then(|| power_name(m, decade)),
+                    })
+                    .filter(|tick| (lo..=hi).contains(&tick.at)),
+            );
         }
-        Self {
-            lo,
-            hi,
-            ticks,
-            exponent: 0,
-            offset: None,
-        }
+        Self { lo, hi, ticks, exponent: 0, offset: None }
     }
 
     /// A short logarithmic scale: the ticks of a linear one, moved to where they belong.
     fn bent(lo: f64, hi: f64, most: usize) -> Self {
         let mut axis = Self::linear(10f64.powf(lo), 10f64.powf(hi), most);
-        axis.ticks
-            .iter_mut()
-            .for_each(|tick| tick.at = tick.at.log10());
+        axis.ticks.iter_mut().for_each(|tick| tick.at = tick.at.log10());
         axis.ticks.retain(|tick| (lo..=hi).contains(&tick.at));
         Self { lo, hi, ..axis }
     }
 
     fn named(lo: f64, hi: f64, places: Vec<f64>, power: i32) -> Self {
-        let largest = places
-            .iter()
-            .fold(0.0f64, |most, place| most.max(place.abs()));
+        let largest = places.iter().fold(0.0f64, |most, place| most.max(place.abs()));
         let (exponent, digits) = scale_of(largest, power);
         if digits <= MOST_DIGITS {
-            let name = |at: f64| {
-                decimal(
-                    at / 10f64.powi(exponent),
-                    (exponent - power).max(0) as usize,
-                )
-            };
-            let ticks = places
-                .iter()
-                .map(|&at| Tick {
-                    at,
-                    name: Some(name(at)),
-                })
-                .collect();
-            return Self {
-                lo,
-                hi,
-                ticks,
-                exponent,
-                offset: None,
-            };
+            let name = |at: f64| decimal(at / 10f64.powi(exponent), (exponent - power).max(0) as usize);
+            let ticks = places.iter().map(|&at| Tick { at, name: Some(name(at)) }).collect();
+            return Self { lo, hi, ticks, exponent, offset: None };
         }
         // Only late digits differ: count from a round number below the range.
         let coarse = (hi - lo).log10().ceil() as i32;
         let base = (lo / 10f64.powi(coarse)).floor();
         let fine_per_coarse = 10f64.powi(coarse - power);
         let rest = |at: f64| (at / 10f64.powi(power)).round() - base * fine_per_coarse;
-        let largest = places.iter().fold(0.0f64, |most, &place| {
-            most.max(rest(place).abs() * 10f64.powi(power))
-        });
+        let largest = places.iter().fold(0.0f64, |most, &place| most.max(rest(place).abs() * 10f64.powi(power)));
         let (exponent, _) = scale_of(largest, power);
-        let name = |at: f64| {
-            decimal(
-                rest(at) * 10f64.powi(power - exponent),
-                (exponent - power).max(0) as usize,
-            )
-        };
-        let ticks = places
-            .iter()
-            .map(|&at| Tick {
-                at,
-                name: Some(name(at)),
-            })
-            .collect();
+        let name = |at: f64| decimal(rest(at) * 10f64.powi(power - exponent), (exponent - power).max(0) as usize);
+        let ticks = places.iter().map(|&at| Tick { at, name: Some(name(at)) }).collect();
         let offset = decimal(base * 10f64.powi(coarse), (-coarse).max(0) as usize);
-        Self {
-            lo,
-            hi,
-            ticks,
-            exponent,
-            offset: Some(offset),
-        }
+        Self { lo, hi, ticks, exponent, offset: Some(offset) }
     }
 
     /// Where a drawn number lies between the ends, 0 to 1.
@@ -177,9 +119,7 @@ impl Axis {
 
     /// Width of the widest tick name.
     pub(crate) fn widest(&self, size: f64) -> f64 {
-        self.names()
-            .map(|name| text::width(name, size))
-            .fold(0.0, f64::max)
+        self.names().map(|name| text::width(name, size)).fold(0.0, f64::max)
     }
 
     pub(crate) fn names(&self) -> impl Iterator<Item = &str> {
@@ -200,41 +140,46 @@ impl Axis {
             (0, true) => String::new(),
             (0, false) => format!("({unit})"),
             (exponent, true) => format!("({})", power_of_ten(exponent)),
-            (exponent, false) => format!("({} {unit})", power_of_ten(exponent)),
+            // A unit such as 1/s: the power of ten stands for the one.
+            (exponent, false) if unit.starts_with("1/") => format!("({}{})", power_of_ten(exponent), &unit[1..]),
+            // Not to be parted by a line break.
+            (exponent, false) => format!("({}\u{A0}{unit})", power_of_ten(exponent)),
         };
         (name, bracket)
     }
 }
 
-/// The step 1, 2 or 5 times a power of ten that is not smaller than `least`.
-fn round_step(least: f64) -> (f64, i32) {
-    let power = least.log10().floor() as i32;
-    let rest = least / 10f64.powi(power);
-    match rest {
-        rest if rest <= 1.0 + 1e-9 => (1.0, power),
-        rest if rest <= 2.0 + 1e-9 => (2.0, power),
-        rest if rest <= 5.0 + 1e-9 => (5.0, power),
-        _ => (1.0, power + 1),
+/// A whole multiple of a power of ten: in decimals where they are short.
+fn power_name(multiple: i32, decade: i32) -> String {
+    match (multiple, decade) {
+        (_, -3..=4) => decimal(f64::from(multiple) * 10f64.powi(decade), (-decade).max(0) as usize),
+        (1, _) => power_of_ten(decade),
+        _ => format!("{multiple}×{}", power_of_ten(decade)),
     }
+}
+
+/// The most multiples of 1, 2 or 5 times a power of ten in the range that are not more than `most`,
+/// and that power.
+fn round_places(lo: f64, hi: f64, most: usize) -> (Vec<f64>, i32) {
+    let finest = ((hi - lo) / (most + 1) as f64).log10().floor() as i32;
+    (finest..finest + 4)
+        .flat_map(|power| [1.0, 2.0, 5.0].map(|multiple| (multiple, power)))
+        .map(|(multiple, power)| (multiples(lo, hi, multiple, power), power))
+        .find(|(places, _)| places.len() <= most)
+        .unwrap_or((vec![lo], finest))
 }
 
 /// Multiples of `multiple` times ten to `power` from `lo` to `hi`, each rounded once only.
 fn multiples(lo: f64, hi: f64, multiple: f64, power: i32) -> Vec<f64> {
     let scaled = |k: f64| {
-        if power < 0 {
-            k * multiple / 10f64.powi(-power)
-        } else {
-            k * multiple * 10f64.powi(power)
-        }
+        if power < 0 { k * multiple / 10f64.powi(-power) } else { k * multiple * 10f64.powi(power) }
     };
     let step = multiple * 10f64.powi(power);
     // A range end that is itself a tick must not be lost to roundoff.
     let slack = 1e-9;
     let (first, last) = ((lo / step - slack).ceil(), (hi / step + slack).floor());
     let count = (last - first).clamp(-1.0, 1000.0) as i64;
-    (0..=count)
-        .map(|k| scaled(first + k as f64).clamp(lo, hi))
-        .collect()
+    (0..=count).map(|k| scaled(first + k as f64).clamp(lo, hi)).collect()
 }
 
 /// The common power of ten (a multiple of three) for numbers up to `largest` in steps of ten to
@@ -246,10 +191,7 @@ fn scale_of(largest: f64, power: i32) -> (i32, i32) {
     let order = largest.log10().floor() as i32;
     let plain = (SMALLEST_PLAIN..LARGEST_PLAIN).contains(&largest);
     let exponent = if plain { 0 } else { 3 * order.div_euclid(3) };
-    (
-        exponent,
-        (order - exponent).max(0) + 1 + (exponent - power).max(0),
-    )
+    (exponent, (order - exponent).max(0) + 1 + (exponent - power).max(0))
 }
 
 #[cfg(test)]
@@ -265,20 +207,14 @@ mod tests {
         let axis = Axis::linear(0.43, 2.07, 6);
         assert_eq!(names(&axis), ["0.5", "1.0", "1.5", "2.0"]);
         let axis = Axis::linear(-1.0, 1.0, 5);
-        assert_eq!(
-            names(&axis),
-            ["\u{2212}1.0", "\u{2212}0.5", "0.0", "0.5", "1.0"]
-        );
+        assert_eq!(names(&axis), ["\u{2212}1.0", "\u{2212}0.5", "0.0", "0.5", "1.0"]);
     }
 
     #[test]
     fn small_and_large_numbers_share_a_power_of_ten() {
         let axis = Axis::linear(0.0, 3.2e-9, 5);
         assert_eq!(names(&axis), ["0", "1", "2", "3"]);
-        assert_eq!(
-            axis.label("level", "m"),
-            ("level".into(), format!("({} m)", power_of_ten(-9)))
-        );
+        assert_eq!(axis.label("level", "m"), ("level".into(), format!("({}\u{A0}m)", power_of_ten(-9))));
         let axis = Axis::linear(1e9, 4e9, 5);
         assert_eq!(names(&axis), ["1", "2", "3", "4"]);
         assert_eq!(axis.label("level", "").1, format!("({})", power_of_ten(9)));
@@ -287,25 +223,21 @@ mod tests {
     #[test]
     fn numbers_that_differ_late_are_counted_from_a_round_one() {
         let axis = Axis::linear(5.187_812_31, 5.187_812_35, 5);
-        assert_eq!(names(&axis), ["20", "30", "40", "50"]);
-        assert_eq!(
-            axis.label("gain", "").0,
-            "gain \u{2212} 5.187\u{2009}812\u{2009}3"
-        );
+        assert_eq!(names(&axis), ["10", "20", "30", "40"]);
+        assert_eq!(axis.label("gain", "").0, "gain \u{2212} 5.187\u{2009}812\u{2009}3");
     }
 
     #[test]
     fn decades_are_named_and_thinned() {
-        assert_eq!(
-            names(&Axis::logarithmic(-2.1, 2.2, 6)),
-            ["0.01", "0.1", "1", "10", "100"]
-        );
+        assert_eq!(names(&Axis::logarithmic(-2.1, 2.2, 6)), ["0.01", "0.1", "1", "10", "100"]);
         let wide = Axis::logarithmic(-200.0, 40.0, 6);
-        assert!(
-            names(&wide).len() <= 7 && names(&wide)[0].starts_with("10"),
-            "{wide:?}"
-        );
+        assert!(names(&wide).len() <= 7 && names(&wide)[0].starts_with("10"), "{wide:?}");
         assert_eq!(names(&Axis::logarithmic(0.0, 0.5, 4)), ["1", "2", "3"]);
+        // One decade only: its halves and fifths are named too.
+        let mut few = names(&Axis::logarithmic(-0.6, 0.5, 6)).join(" ");
+        few.truncate(9);
+        assert_eq!(few, "1 0.5 2");
+        assert_eq!(power_name(2, -7), format!("2×{}", power_of_ten(-7)));
     }
 
     #[test]

@@ -9,9 +9,7 @@ use plotters::coord::Shift;
 use plotters::drawing::{DrawingArea, IntoDrawingArea};
 use plotters::element::{Circle, PathElement, Polygon, Text};
 use plotters::style::text_anchor::{HPos, Pos, VPos};
-use plotters::style::{
-    Color, FontDesc, FontFamily, FontStyle, FontTransform, RGBColor, ShapeStyle, TextStyle,
-};
+use plotters::style::{Color, FontDesc, FontFamily, FontStyle, FontTransform, RGBColor, ShapeStyle, TextStyle};
 
 use crate::geometry::Place;
 use crate::text::marked_up;
@@ -55,49 +53,26 @@ fn pixel((x, y): Place) -> (i32, i32) {
 
 impl Pen<'_, '_> {
     pub(crate) fn line(&self, line: &[Place], color: RGBColor, weight: f64) {
-        let style = ShapeStyle {
-            color: color.to_rgba(),
-            filled: false,
-            stroke_width: unit(weight) as u32,
-        };
+        let style = ShapeStyle { color: color.to_rgba(), filled: false, stroke_width: unit(weight) as u32 };
         let corners: Vec<(i32, i32)> = line.iter().copied().map(pixel).collect();
-        self.area
-            .draw(&PathElement::new(corners, style))
-            .expect(INFALLIBLE);
+        self.area.draw(&PathElement::new(corners, style)).expect(INFALLIBLE);
     }
 
     pub(crate) fn area(&self, corners: &[Place], color: RGBColor) {
         let corners: Vec<(i32, i32)> = corners.iter().copied().map(pixel).collect();
-        self.area
-            .draw(&Polygon::new(corners, color))
-            .expect(INFALLIBLE);
+        self.area.draw(&Polygon::new(corners, color)).expect(INFALLIBLE);
     }
 
     pub(crate) fn disc(&self, centre: Place, radius: f64, color: RGBColor) {
-        self.area
-            .draw(&Circle::new(pixel(centre), unit(radius), color.filled()))
-            .expect(INFALLIBLE);
+        self.area.draw(&Circle::new(pixel(centre), unit(radius), color.filled())).expect(INFALLIBLE);
     }
 
     pub(crate) fn ring(&self, centre: Place, radius: f64, color: RGBColor, weight: f64) {
-        let style = ShapeStyle {
-            color: color.to_rgba(),
-            filled: false,
-            stroke_width: unit(weight) as u32,
-        };
-        self.area
-            .draw(&Circle::new(pixel(centre), unit(radius), style))
-            .expect(INFALLIBLE);
+        let style = ShapeStyle { color: color.to_rgba(), filled: false, stroke_width: unit(weight) as u32 };
+        self.area.draw(&Circle::new(pixel(centre), unit(radius), style)).expect(INFALLIBLE);
     }
 
-    pub(crate) fn text(
-        &self,
-        text: &str,
-        (x, y): Place,
-        size: f64,
-        stands: Stands,
-        color: RGBColor,
-    ) {
+    pub(crate) fn text(&self, text: &str, (x, y): Place, size: f64, stands: Stands, color: RGBColor) {
         let (anchor, transform) = match stands {
             Stands::Behind => (HPos::Left, FontTransform::None),
             Stands::Centred => (HPos::Center, FontTransform::None),
@@ -108,18 +83,10 @@ impl Pen<'_, '_> {
             Stands::Upwards => (x - TOP_TO_BASELINE * size, y),
             _ => (x, y - TOP_TO_BASELINE * size),
         };
-        let font = FontDesc::new(
-            FontFamily::Name(FONTS),
-            FINE * size * FONT_DIVISOR,
-            FontStyle::Normal,
-        )
-        .transform(transform);
-        let style = TextStyle::from(font)
-            .color(&color)
-            .pos(Pos::new(anchor, VPos::Top));
-        self.area
-            .draw(&Text::new(text.to_string(), pixel(top), style))
-            .expect(INFALLIBLE);
+        let font =
+            FontDesc::new(FontFamily::Name(FONTS), FINE * size * FONT_DIVISOR, FontStyle::Normal).transform(transform);
+        let style = TextStyle::from(font).color(&color).pos(Pos::new(anchor, VPos::Top));
+        self.area.draw(&Text::new(text.to_string(), pixel(top), style)).expect(INFALLIBLE);
     }
 }
 
@@ -132,17 +99,11 @@ pub(crate) struct Canvas {
 impl Canvas {
     /// A page of this width and height in points.
     pub(crate) fn new(width: f64, height: f64) -> Self {
-        Self {
-            size: (width, height),
-            body: String::new(),
-        }
+        Self { size: (width, height), body: String::new() }
     }
 
     fn pixels(&self) -> (u32, u32) {
-        (
-            (self.size.0 * FINE).round() as u32,
-            (self.size.1 * FINE).round() as u32,
-        )
+        ((self.size.0 * FINE).round() as u32, (self.size.1 * FINE).round() as u32)
     }
 
     /// Adds a group; `attributes` are written as they stand.
@@ -153,21 +114,29 @@ impl Canvas {
             draw(&Pen { area: &area });
             area.present().expect(INFALLIBLE);
         }
-        self.body.push_str(&format!("<g {attributes}>\n"));
-        let mut lines = written
-            .lines()
-            .filter(|line| !line.starts_with("<svg") && *line != "</svg>");
+        let opening = format!("<g {attributes}>\n");
+        let empty = self.body.len() + opening.len();
+        self.body.push_str(&opening);
+        let mut lines = written.lines().filter(|line| !line.starts_with("<svg") && *line != "</svg>");
         while let Some(line) = lines.next() {
-            self.body.push_str(line);
             if line.starts_with("<text") {
                 // The words stand on their own line, escaped, so none of it begins with `<`.
-                self.body
-                    .push_str(&marked_up(lines.next().unwrap_or_default()));
+                let words = marked_up(lines.next().unwrap_or_default());
+                // Some readers drop a space between letters of two sizes unless told not to.
+                let kept = if words.contains('<') { "<text xml:space=\"preserve\"" } else { "<text" };
+                self.body.push_str(&line.replacen("<text", kept, 1));
+                self.body.push_str(&words);
                 self.body.push_str(lines.next().unwrap_or_default());
+            } else {
+                self.body.push_str(line);
             }
             self.body.push('\n');
         }
-        self.body.push_str("</g>\n");
+        if self.body.len() == empty {
+            self.body.truncate(empty - opening.len());
+        } else {
+            self.body.push_str("</g>\n");
+        }
     }
 
     /// The whole file.
@@ -189,7 +158,5 @@ impl Canvas {
 
 /// Text for the inside of an XML element.
 fn escaped(text: &str) -> String {
-    text.replace('&', "&amp;")
-        .replace('<', "&lt;")
-        .replace('>', "&gt;")
+    text.replace('&', "&amp;").replace('<', "&lt;").replace('>', "&gt;")
 }

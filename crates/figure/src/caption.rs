@@ -11,20 +11,10 @@ const LISTED: usize = 20;
 /// What the model and the computation say about every figure.
 pub(crate) fn setting(branches: &[Branch]) -> String {
     let first = &branches[0];
-    let fixed: Vec<String> = first
-        .fixed
-        .iter()
-        .map(|(name, value)| format!("{} = {}", text::clean(name), plain(*value)))
-        .collect();
-    let fixed = if fixed.is_empty() {
-        "none".to_string()
-    } else {
-        fixed.join(", ")
-    };
-    let accuracy = branches
-        .iter()
-        .map(|branch| branch.accuracy)
-        .fold(first.accuracy, f64::max);
+    let fixed: Vec<String> =
+        first.fixed.iter().map(|(name, value)| format!("{} = {}", text::clean(name), plain(*value))).collect();
+    let fixed = if fixed.is_empty() { "none".to_string() } else { fixed.join(", ") };
+    let accuracy = branches.iter().map(|branch| branch.accuracy).fold(first.accuracy, f64::max);
     format!(
         "Model: {}. Fixed parameters, in the units of the model: {fixed}. Asked accuracy: {}, relative.",
         text::clean(&first.model_title),
@@ -35,9 +25,8 @@ pub(crate) fn setting(branches: &[Branch]) -> String {
 /// What was not looked for.
 pub(crate) fn not_searched(branches: &[Branch]) -> String {
     let first = &branches[0];
-    let (lo, hi) = branches.iter().fold(first.range, |(lo, hi), branch| {
-        (lo.min(branch.range.0), hi.max(branch.range.1))
-    });
+    let (lo, hi) =
+        branches.iter().fold(first.range, |(lo, hi), branch| (lo.min(branch.range.0), hi.max(branch.range.1)));
     format!(
         "Only the branches {} were followed, for {} from {} to {}; cycles not connected to them, equilibria, tori and \
          anything outside this range were not searched.",
@@ -52,11 +41,7 @@ pub(crate) fn not_searched(branches: &[Branch]) -> String {
 pub(crate) fn quantity(quantity: &Quantity) -> String {
     let unit = text::clean(&quantity.unit);
     let label = text::clean(&quantity.label);
-    if unit.is_empty() {
-        label
-    } else {
-        format!("{label} ({unit})")
-    }
+    if unit.is_empty() { label } else { format!("{label} ({unit})") }
 }
 
 /// Names with the rest told by its number.

@@ -1,6 +1,6 @@
 //! A branch as smooth curves: points and located events, joined along the distance.
 
-use armilla_record::{Branch, Event};
+use armilla_record::{Branch, Event, EventKind};
 
 use crate::geometry::Place;
 use crate::interpolate::{hermite, slopes};
@@ -38,8 +38,7 @@ impl Curve {
     }
 
     fn spans(&self, s: f64) -> bool {
-        self.s.first().is_some_and(|first| s >= *first)
-            && self.s.last().is_some_and(|last| s <= *last)
+        self.s.first().is_some_and(|first| s >= *first) && self.s.last().is_some_and(|last| s <= *last)
     }
 
     /// The place at a distance.
@@ -47,21 +46,14 @@ impl Curve {
         if !self.spans(s) {
             return None;
         }
-        let k = self
-            .s
-            .partition_point(|knot| *knot <= s)
-            .clamp(1, self.s.len().max(2) - 1)
-            - 1;
+        let k = self.s.partition_point(|knot| *knot <= s).clamp(1, self.s.len().max(2) - 1) - 1;
         if k + 1 >= self.s.len() {
             return Some((self.x[k], self.y[k]));
         }
         let length = self.s[k + 1] - self.s[k];
         let u = (s - self.s[k]) / length;
         let along = |v: &[f64], m: &[f64]| hermite((v[k], v[k + 1]), (m[k], m[k + 1]), length, u);
-        Some((
-            along(&self.x, &self.slopes.0),
-            along(&self.y, &self.slopes.1),
-        ))
+        Some((along(&self.x, &self.slopes.0), along(&self.y, &self.slopes.1)))
     }
 
     /// The corners of the curve over the part of a stretch that it covers.
@@ -73,20 +65,13 @@ impl Curve {
         if from >= to {
             return Vec::new();
         }
-        let inner = self.s[self.s.partition_point(|s| *s <= from)..]
-            .iter()
-            .copied()
-            .take_while(|s| *s < to);
+        let inner = self.s[self.s.partition_point(|s| *s <= from)..].iter().copied().take_while(|s| *s < to);
         let knots: Vec<f64> = std::iter::once(from).chain(inner).chain([to]).collect();
         let parts = self.parts();
         let mut line: Vec<Place> = self.at(from).into_iter().collect();
         for pair in knots.windows(2) {
             let place = |k: usize| {
-                if k == parts {
-                    pair[1]
-                } else {
-                    pair[0] + (pair[1] - pair[0]) * k as f64 / parts as f64
-                }
+                if k == parts { pair[1] } else { pair[0] + (pair[1] - pair[0]) * k as f64 / parts as f64 }
             };
             line.extend((1..=parts).filter_map(|k| self.at(place(k))));
         }
@@ -113,10 +98,7 @@ impl Curve {
         }
         let at_begin = gap(vertices[0].1, place) <= gap(vertices[n - 1].1, place);
         let (end, next) = if at_begin { (0, 1) } else { (n - 1, n - 2) };
-        let (open, step) = (
-            gap(vertices[end].1, place),
-            gap(vertices[end].1, vertices[next].1),
-        );
+        let (open, step) = (gap(vertices[end].1, place), gap(vertices[end].1, vertices[next].1));
         // Closer than a hundredth of a percent of the frame nothing would show.
         if open > widest || open < 1e-4 || step == 0.0 {
             return self;
@@ -133,28 +115,17 @@ impl Curve {
 }
 
 /// The curves of one measure along a branch: more than one where numbers are missing between.
-pub(crate) fn curves(
-    branch: &Branch,
-    reader: &Reader,
-    component: usize,
-    stretches: &[Stretch],
-) -> Vec<Curve> {
+pub(crate) fn curves(branch: &Branch, reader: &Reader, component: usize, stretches: &[Stretch]) -> Vec<Curve> {
     let mut entries: Vec<(f64, Option<Place>)> = branch
         .points
         .iter()
         .filter(|point| point.distance.is_finite())
         .map(|point| {
             let y = reader.drawn(&Cycle::of_point(point), component);
-            (
-                point.distance,
-                y.filter(|_| sound(&point.value)).map(|y| (point.value, y)),
-            )
+            (point.distance, y.filter(|_| sound(&point.value)).map(|y| (point.value, y)))
         })
         .collect();
-    let events = branch
-        .events
-        .iter()
-        .filter(|event| event.kind.is_threshold() && event.distance.is_finite());
+    let events = branch.events.iter().filter(|event| event.kind.is_threshold() && event.distance.is_finite());
     // Only what lies between the points: an event at an open end has its own reason and no curve beyond.
     let at_events = events.filter_map(|event| {
         event_place(event, reader, component, stretches).map(|place| (event.distance, Some(place)))
@@ -173,20 +144,19 @@ pub(crate) fn curves(
             Some(place) => run.push((s, place)),
         }
     }
-    runs.iter()
-        .filter(|run| !run.is_empty())
-        .map(|run| Curve::new(run))
-        .collect()
+    runs.iter().filter(|run| !run.is_empty()).map(|run| Curve::new(run)).collect()
 }
 
 /// Where an event lies by its own numbers.
-pub(crate) fn event_place(
-    event: &Event,
-    reader: &Reader,
-    component: usize,
-    stretches: &[Stretch],
-) -> Option<Place> {
-    let critical = (least_count_at(stretches, event.distance) == Some(0)).then_some(0.0);
+pub(crate) fn event_place(event: &Event, reader: &Reader, component: usize, stretches: &[Stretch]) -> Option<Place> {
+    // The critical multiplier lies on the unit circle; it is the largest where none is outside.
+    let critical = (is_critical(event.kind) && least_count_at(stretches, event.distance) == Some(0)).then_some(0.0);
     let y = reader.drawn(&Cycle::of_event(event, critical), component)?;
     sound(&event.value).then_some((event.value, y))
+}
+
+/// Kinds at which a multiplier crosses the unit circle at this very place.
+fn is_critical(kind: EventKind) -> bool {
+    use EventKind::{Branching, Doubling, Fold, Pitchfork, Torus, Transcritical};
+    matches!(kind, Fold | Doubling | Torus | Pitchfork | Transcritical | Branching)
 }

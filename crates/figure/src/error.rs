@@ -66,30 +66,18 @@ impl fmt::Display for FigureError {
                 "branch `{branch}` does not have the same {what} as the first branch: draw only branches of one study"
             ),
             Self::UnknownState { asked, known } => {
-                write!(
-                    f,
-                    "the model has no state `{asked}`; it has {}",
-                    listed(known)
-                )?;
+                write!(f, "the model has no state `{asked}`; it has {}", listed(known))?;
                 suggest(f, asked, known)
             }
             Self::UnknownOrbit { asked, known } => {
-                write!(
-                    f,
-                    "no event `{asked}` keeps an orbit; these do: {}",
-                    listed(known)
-                )?;
+                write!(f, "no event `{asked}` keeps an orbit; these do: {}", listed(known))?;
                 suggest(f, asked, known)
             }
             Self::NoOrbits => write!(
                 f,
                 "no event on these branches keeps an orbit to draw: ask for `targets` in the study and trace again"
             ),
-            Self::Range {
-                field,
-                asked: (lo, hi),
-                logarithmic,
-            } => {
+            Self::Range { field, asked: (lo, hi), logarithmic } => {
                 let positive = if *logarithmic { " positive" } else { "" };
                 write!(
                     f,
@@ -97,27 +85,19 @@ impl fmt::Display for FigureError {
                 )
             }
             Self::Width { asked } => {
-                write!(
-                    f,
-                    "a figure cannot be {asked} mm wide: choose {} to {} mm",
-                    WIDTHS_MM.0, WIDTHS_MM.1
-                )
+                write!(f, "a figure cannot be {asked} mm wide: choose {} to {} mm", WIDTHS_MM.0, WIDTHS_MM.1)
             }
-            Self::NothingInside {
-                what,
-                x: Some(x),
-                y: Some(y),
-            } => write!(
+            Self::NothingInside { what, x: Some(x), y: Some(y) } => write!(
                 f,
                 "nothing of {what} lies inside the range: there is something from {} to {} along x and from {} to {} \
                  along y; change `x` and `y` of the figure or leave them out",
-                x.0, x.1, y.0, y.1
+                short(x.0),
+                short(x.1),
+                short(y.0),
+                short(y.1)
             ),
             Self::NothingInside { what, .. } => {
-                write!(
-                    f,
-                    "{what} has no finite value that can be drawn on this scale: choose another measure or scale"
-                )
+                write!(f, "{what} has no finite value that can be drawn on this scale: choose another measure or scale")
             }
         }
     }
@@ -129,15 +109,16 @@ impl std::error::Error for FigureError {}
 const LISTED: usize = 12;
 
 fn listed(known: &[String]) -> String {
-    let names: Vec<String> = known
-        .iter()
-        .take(LISTED)
-        .map(|name| format!("`{name}`"))
-        .collect();
+    let names: Vec<String> = known.iter().take(LISTED).map(|name| format!("`{name}`")).collect();
     match known.len().saturating_sub(LISTED) {
         0 => names.join(", "),
         more => format!("{} and {more} more", names.join(", ")),
     }
+}
+
+/// A number to six digits, enough to choose a range by.
+fn short(value: f64) -> f64 {
+    format!("{value:.5e}").parse().unwrap_or(value)
 }
 
 fn suggest(f: &mut fmt::Formatter<'_>, asked: &str, known: &[String]) -> fmt::Result {
@@ -176,20 +157,9 @@ mod tests {
     #[test]
     fn a_misspelt_state_is_told_with_the_known_and_the_nearest() {
         let known = vec!["level".to_string(), "flow".to_string()];
-        let told = FigureError::UnknownState {
-            asked: "levle".into(),
-            known: known.clone(),
-        }
-        .to_string();
-        assert_eq!(
-            told,
-            "the model has no state `levle`; it has `level`, `flow`"
-        );
-        let told = FigureError::UnknownState {
-            asked: "leve".into(),
-            known,
-        }
-        .to_string();
+        let told = FigureError::UnknownState { asked: "levle".into(), known: known.clone() }.to_string();
+        assert_eq!(told, "the model has no state `levle`; it has `level`, `flow`");
+        let told = FigureError::UnknownState { asked: "leve".into(), known }.to_string();
         assert!(told.ends_with("did you mean `level`?"), "{told}");
     }
 

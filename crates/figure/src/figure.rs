@@ -17,12 +17,7 @@ impl Figure {
     pub fn draw(&self, branches: &[Branch]) -> Result<String, FigureError> {
         let (first, others) = branches.split_first().ok_or(FigureError::NoBranches)?;
         for branch in others {
-            let mixed = |what| {
-                Err(FigureError::Mixed {
-                    branch: branch.name.clone(),
-                    what,
-                })
-            };
+            let mixed = |what| Err(FigureError::Mixed { branch: branch.name.clone(), what });
             if branch.parameter != first.parameter {
                 return mixed("parameter");
             }

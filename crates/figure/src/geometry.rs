@@ -14,12 +14,7 @@ pub(crate) struct Rect {
 
 impl Rect {
     pub(crate) fn around((x, y): Place, half_width: f64, half_height: f64) -> Self {
-        Self {
-            left: x - half_width,
-            top: y - half_height,
-            right: x + half_width,
-            bottom: y + half_height,
-        }
+        Self { left: x - half_width, top: y - half_height, right: x + half_width, bottom: y + half_height }
     }
 
     pub(crate) fn width(&self) -> f64 {
@@ -39,19 +34,11 @@ impl Rect {
     }
 
     pub(crate) fn meets(&self, other: &Rect) -> bool {
-        self.left < other.right
-            && other.left < self.right
-            && self.top < other.bottom
-            && other.top < self.bottom
+        self.left < other.right && other.left < self.right && self.top < other.bottom && other.top < self.bottom
     }
 
     pub(crate) fn grown(&self, by: f64) -> Self {
-        Self {
-            left: self.left - by,
-            top: self.top - by,
-            right: self.right + by,
-            bottom: self.bottom + by,
-        }
+        Self { left: self.left - by, top: self.top - by, right: self.right + by, bottom: self.bottom + by }
     }
 
     /// The part of a straight line inside (Liang & Barsky 1984, ACM Trans. Graph. 3:1).
@@ -72,19 +59,11 @@ impl Rect {
                 continue;
             }
             let at = room / towards;
-            if towards < 0.0 {
-                enter = enter.max(at)
-            } else {
-                leave = leave.min(at)
-            }
+            if towards < 0.0 { enter = enter.max(at) } else { leave = leave.min(at) }
         }
         let at = |t: f64| (from.0 + t * dx, from.1 + t * dy);
-        (enter <= leave).then(|| {
-            (
-                if enter == 0.0 { from } else { at(enter) },
-                if leave == 1.0 { to } else { at(leave) },
-            )
-        })
+        (enter <= leave)
+            .then(|| (if enter == 0.0 { from } else { at(enter) }, if leave == 1.0 { to } else { at(leave) }))
     }
 }
 
@@ -121,8 +100,7 @@ pub(crate) fn thinned(line: &[Place], tolerance: f64) -> Vec<Place> {
     for i in 1..line.len() {
         let straight = i + 1 < line.len()
             && i - last_kept < LOOK_BACK
-            && (last_kept + 1..=i)
-                .all(|k| off_line(line[last_kept], line[i + 1], line[k]) <= tolerance);
+            && (last_kept + 1..=i).all(|k| off_line(line[last_kept], line[i + 1], line[k]) <= tolerance);
         if !straight {
             kept.push(line[i]);
             last_kept = i;
@@ -145,9 +123,7 @@ fn off_line(from: Place, to: Place, place: Place) -> f64 {
 
 /// Length along a line of many corners.
 pub(crate) fn length(line: &[Place]) -> f64 {
-    line.windows(2)
-        .map(|pair| (pair[1].0 - pair[0].0).hypot(pair[1].1 - pair[0].1))
-        .sum()
+    line.windows(2).map(|pair| (pair[1].0 - pair[0].0).hypot(pair[1].1 - pair[0].1)).sum()
 }
 
 /// The place at `fraction` of the length, and the direction there as a unit vector.
@@ -158,13 +134,7 @@ pub(crate) fn at_fraction(line: &[Place], fraction: f64) -> Option<(Place, Place
         let piece = dx.hypot(dy);
         if piece > 0.0 && left <= piece {
             let direction = (dx / piece, dy / piece);
-            return Some((
-                (
-                    pair[0].0 + left * direction.0,
-                    pair[0].1 + left * direction.1,
-                ),
-                direction,
-            ));
+            return Some(((pair[0].0 + left * direction.0, pair[0].1 + left * direction.1), direction));
         }
         left -= piece;
     }
@@ -175,50 +145,24 @@ pub(crate) fn at_fraction(line: &[Place], fraction: f64) -> Option<(Place, Place
 mod tests {
     use super::*;
 
-    const FRAME: Rect = Rect {
-        left: 0.0,
-        top: 0.0,
-        right: 10.0,
-        bottom: 10.0,
-    };
+    const FRAME: Rect = Rect { left: 0.0, top: 0.0, right: 10.0, bottom: 10.0 };
 
     #[test]
     fn lines_are_cut_at_the_frame() {
-        let parts = cut_at(
-            &FRAME,
-            &[
-                (-5.0, 5.0),
-                (5.0, 5.0),
-                (5.0, 15.0),
-                (7.0, 15.0),
-                (7.0, 5.0),
-            ],
-        );
-        assert_eq!(
-            parts,
-            vec![
-                vec![(0.0, 5.0), (5.0, 5.0), (5.0, 10.0)],
-                vec![(7.0, 10.0), (7.0, 5.0)]
-            ]
-        );
+        let parts = cut_at(&FRAME, &[(-5.0, 5.0), (5.0, 5.0), (5.0, 15.0), (7.0, 15.0), (7.0, 5.0)]);
+        assert_eq!(parts, vec![vec![(0.0, 5.0), (5.0, 5.0), (5.0, 10.0)], vec![(7.0, 10.0), (7.0, 5.0)]]);
         assert!(cut_at(&FRAME, &[(-5.0, -1.0), (15.0, -1.0)]).is_empty());
         assert!(cut_at(&FRAME, &[(-5.0, 5.0), (5.0, -5.0)]).is_empty());
     }
 
     #[test]
     fn thinning_keeps_the_curve() {
-        let circle: Vec<Place> = (0..=1000)
-            .map(|k| (k as f64 * 0.00628).sin_cos())
-            .map(|(s, c)| (40.0 * c, 40.0 * s))
-            .collect();
+        let circle: Vec<Place> =
+            (0..=1000).map(|k| (k as f64 * 0.00628).sin_cos()).map(|(s, c)| (40.0 * c, 40.0 * s)).collect();
         let thin = thinned(&circle, 0.01);
         assert!(thin.len() < 250 && thin.len() > 40, "{}", thin.len());
         assert_eq!((thin[0], thin[thin.len() - 1]), (circle[0], circle[1000]));
-        let off = |p: &Place| {
-            thin.windows(2)
-                .map(|w| off_line(w[0], w[1], *p))
-                .fold(f64::MAX, f64::min)
-        };
+        let off = |p: &Place| thin.windows(2).map(|w| off_line(w[0], w[1], *p)).fold(f64::MAX, f64::min);
         assert!(circle.iter().all(|p| off(p) < 0.011));
     }
 }

@@ -12,9 +12,7 @@ pub(crate) fn slopes(s: &[f64], values: &[f64]) -> Vec<f64> {
     if n < 2 {
         return vec![0.0; n];
     }
-    let secants: Vec<f64> = (1..n)
-        .map(|i| (values[i] - values[i - 1]) / (s[i] - s[i - 1]))
-        .collect();
+    let secants: Vec<f64> = (1..n).map(|i| (values[i] - values[i - 1]) / (s[i] - s[i - 1])).collect();
     if n == 2 {
         return vec![secants[0]; 2];
     }
@@ -26,23 +24,14 @@ pub(crate) fn slopes(s: &[f64], values: &[f64]) -> Vec<f64> {
         let parabola = (after * secants[i - 1] + before * secants[i]) / (before + after);
         slopes.push(limited(parabola, secants[i - 1], secants[i]));
     }
-    slopes.push(end_slope(
-        step(n - 2),
-        step(n - 3),
-        secants[n - 2],
-        secants[n - 3],
-    ));
+    slopes.push(end_slope(step(n - 2), step(n - 3), secants[n - 2], secants[n - 3]));
     slopes
 }
 
 /// Slope at an end: of the parabola through the three last points, not against the last secant.
 fn end_slope(near: f64, far: f64, secant: f64, next: f64) -> f64 {
     let parabola = ((2.0 * near + far) * secant - near * next) / (near + far);
-    if parabola * secant <= 0.0 {
-        0.0
-    } else {
-        parabola.signum() * parabola.abs().min(STEEPEST * secant.abs())
-    }
+    if parabola * secant <= 0.0 { 0.0 } else { parabola.signum() * parabola.abs().min(STEEPEST * secant.abs()) }
 }
 
 /// A piece is monotone if both its slopes are within three times the secant (Fritsch & Carlson 1980).
@@ -56,12 +45,7 @@ fn limited(slope: f64, before: f64, after: f64) -> f64 {
 }
 
 /// The cubic with end values `from`, `to` and end slopes at `u` in `[0, 1]` of a piece `length` long.
-pub(crate) fn hermite(
-    (from, to): (f64, f64),
-    (slope_from, slope_to): (f64, f64),
-    length: f64,
-    u: f64,
-) -> f64 {
+pub(crate) fn hermite((from, to): (f64, f64), (slope_from, slope_to): (f64, f64), length: f64, u: f64) -> f64 {
     let v = 1.0 - u;
     from * v * v * (1.0 + 2.0 * u)
         + to * u * u * (1.0 + 2.0 * v)
@@ -84,10 +68,7 @@ mod tests {
         let x: Vec<f64> = s.iter().map(|s| 1.0 - s * s).collect();
         let m = slopes(&s, &x);
         assert_eq!(m[2], 0.0);
-        assert!(
-            (m[0] - 4.0).abs() < 1e-12 && (m[4] + 4.0).abs() < 1e-12,
-            "{m:?}"
-        );
+        assert!((m[0] - 4.0).abs() < 1e-12 && (m[4] + 4.0).abs() < 1e-12, "{m:?}");
         for u in [0.25, 0.5, 0.75] {
             let at = -1.2 + 1.2 * u;
             assert!((along(&s, &x, 1, u) - (1.0 - at * at)).abs() < 1e-12);
@@ -113,9 +94,8 @@ mod tests {
         let worst = |n: usize| {
             let s: Vec<f64> = (0..=n).map(|i| i as f64 / n as f64).collect();
             let y: Vec<f64> = s.iter().map(|s| s.exp()).collect();
-            (0..n).fold(0.0f64, |worst, k| {
-                worst.max((along(&s, &y, k, 0.5) - ((k as f64 + 0.5) / n as f64).exp()).abs())
-            })
+            (0..n)
+                .fold(0.0f64, |worst, k| worst.max((along(&s, &y, k, 0.5) - ((k as f64 + 0.5) / n as f64).exp()).abs()))
         };
         let order = (worst(20) / worst(40)).log2();
         assert!(order > 2.7, "{order}");

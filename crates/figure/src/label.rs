@@ -1,64 +1,75 @@
 //! Names of events, numbers of targets and names of branches, where there is room.
 
-use crate::canvas::{Canvas, Stands};
-use crate::diagram::Mark;
+use crate::canvas::Canvas;
+use crate::drawn::Mark;
 use crate::geometry::{Place, Rect};
-use crate::legend::{NUMBER_RADIUS, SMALL, numbered};
+use crate::legend::{NUMBER_RADIUS, numbered};
 use crate::marker::RADIUS;
 use crate::page::Page;
 use crate::palette::BLACK;
-use crate::place::Taken;
-use crate::stroke::{Stroke, baseline, name_curve, name_size};
+use crate::place::{Spot, Taken};
+use crate::stroke::{Stroke, name_curve, name_size, write_name};
 use crate::text;
 
-/// Writes everything that finds room: targets first, then events, then branches.
-///
-/// Without `branches` only the numbers of targets are written.
-pub(crate) fn draw(
-    canvas: &mut Canvas,
-    page: &Page,
-    strokes: &[Stroke],
-    marks: &[Mark],
-    branches: Option<&[(usize, String)]>,
-) {
-    let lines: Vec<Vec<Place>> = strokes
-        .iter()
-        .flat_map(|stroke| stroke.parts.iter().cloned())
-        .collect();
-    let mut taken = Taken::new(page.frame, &lines);
-    for place in marks.iter().flat_map(|mark| &mark.places) {
-        taken.take(Rect::around(page.place(*place), RADIUS, RADIUS));
-    }
-    for mark in marks {
-        let Some(number) = mark.number else { continue };
-        let size = (2.0 * NUMBER_RADIUS, 2.0 * NUMBER_RADIUS);
-        if let Some(rect) = first_free(&mut taken, page, mark, size) {
-            let centre = (
-                0.5 * (rect.left + rect.right),
-                0.5 * (rect.top + rect.bottom),
-            );
-            canvas.group("class=\"names\"", |pen| {
-                numbered(pen, number, centre, BLACK)
-            });
-        }
-    }
-    let Some(branches) = branches else { return };
-    for mark in marks.iter().filter(|mark| mark.number.is_none()) {
-        let name = text::clean(&mark.event.name);
-        if let Some(rect) = first_free(&mut taken, page, mark, name_size(&name)) {
-            canvas.group("class=\"names\"", |pen| {
-                pen.text(&name, baseline(&rect), SMALL, Stands::Behind, BLACK)
-            });
-        }
-    }
-    for (owner, name) in branches {
-        name_curve(canvas, &mut taken, strokes, (*owner, name));
-    }
+/// Names longer than this share of the frame would stand for the picture.
+const LONGEST: f64 = 0.45;
+
+/// Writes names into a page, whatever finds room first.
+pub(crate) struct Labels<'a, 'b> {
+    canvas: &'a mut Canvas,
+    page: &'a Page,
+    taken: Taken<'b>,
 }
 
-/// An event on two curves is named once.
-fn first_free(taken: &mut Taken, page: &Page, mark: &Mark, size: (f64, f64)) -> Option<Rect> {
-    mark.places
-        .iter()
-        .find_map(|place| taken.beside(page.place(*place), RADIUS, size))
+impl<'a, 'b> Labels<'a, 'b> {
+    /// Room is what lines and markers leave inside the frame.
+    pub(crate) fn new(canvas: &'a mut Canvas, page: &'a Page, lines: &'b [Vec<Place>], marks: &[Mark]) -> Self {
+        let mut taken = Taken::new(page.frame, lines);
+        for place in marks.iter().flat_map(|mark| &mark.places) {
+            taken.take(Rect::around(page.place(*place), RADIUS, RADIUS));
+        }
+        Self { canvas, page, taken }
+    }
+
+    /// Numbers in circles beside the targets.
+    pub(crate) fn number_targets(&mut self, marks: &[Mark]) {
+        for mark in marks {
+            let Some(number) = mark.number else { continue };
+            let size = (2.0 * NUMBER_RADIUS, 2.0 * NUMBER_RADIUS);
+            if let Some(spot) = self.first_free(mark, size) {
+                self.canvas.group("class=\"names\"", |pen| numbered(pen, number, spot.centre(), BLACK));
+            }
+        }
+    }
+
+    /// Full names beside the thresholds.
+    pub(crate) fn name_events(&mut self, marks: &[Mark]) {
+        for mark in marks.iter().filter(|mark| mark.number.is_none()) {
+            let name = text::clean(&mark.event.name);
+            if !self.fits(&name) {
+                continue;
+            }
+            if let Some(spot) = self.first_free(mark, name_size(&name)) {
+                write_name(self.canvas, &spot, &name, BLACK);
+            }
+        }
+    }
+
+    /// Names beside the branches.
+    pub(crate) fn name_branches(&mut self, strokes: &[Stroke], branches: &[(usize, String)]) {
+        for (owner, name) in branches {
+            if self.fits(name) {
+                name_curve(self.canvas, &mut self.taken, strokes, (*owner, name));
+            }
+        }
+    }
+
+    fn fits(&self, name: &str) -> bool {
+        name_size(name).0 <= LONGEST * self.page.frame.width()
+    }
+
+    /// An event on two curves is named once.
+    fn first_free(&mut self, mark: &Mark, size: (f64, f64)) -> Option<Spot> {
+        mark.places.iter().find_map(|place| self.taken.beside(self.page.place(*place), RADIUS, size))
+    }
 }

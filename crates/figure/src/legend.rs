@@ -17,8 +17,10 @@ pub(crate) const SMALL: f64 = 7.0;
 pub(crate) const ROW: f64 = 11.5;
 /// Length of a line sample: two dashes and a half of 4 and 2 pt.
 const SAMPLE: f64 = 16.0;
-/// From sample to words, and from column to column.
+/// From sample to words.
 const SPACE: f64 = 4.0;
+/// From column to column.
+const BETWEEN: f64 = 10.0;
 /// Dash and gap in points.
 const DASHES: (f64, f64) = (4.0, 2.0);
 /// Radius of the circle around a number.
@@ -38,6 +40,11 @@ pub(crate) enum Sample {
         number: usize,
     },
     Marker(EventKind),
+    /// A branch of one point.
+    Dot {
+        ink: Ink,
+        hollow: bool,
+    },
     Nothing,
 }
 
@@ -50,80 +57,73 @@ pub(crate) struct Entry {
 
 impl Entry {
     pub(crate) fn new(sample: Sample, words: impl Into<String>) -> Self {
-        Self {
-            sample,
-            words: words.into(),
-        }
+        Self { sample, words: words.into() }
     }
 
     fn width(&self) -> f64 {
-        SAMPLE + SPACE + text::width(&self.words, TEXT)
+        SAMPLE + SPACE + text::width(&self.words, TEXT) * text::STAND_IN
     }
 }
 
-/// Entries in columns.
+/// Entries in columns, filled from above.
 pub(crate) struct Legend {
     entries: Vec<Entry>,
-    columns: usize,
-    column_width: f64,
+    rows: usize,
 }
 
 impl Legend {
     /// One column no wider than `room`.
     pub(crate) fn beside(entries: Vec<Entry>, room: f64) -> Self {
-        Self::in_columns(entries, room, |_| 1)
+        let rows = entries.len();
+        Self { entries: fitted(entries, room), rows }
     }
 
-    /// As many columns as fit into `room`.
+    /// As few rows as fit into `room`.
     pub(crate) fn below(entries: Vec<Entry>, room: f64) -> Self {
-        Self::in_columns(entries, room, |width| {
-            (((room + 3.0 * SPACE) / (width + 3.0 * SPACE)) as usize).max(1)
-        })
-    }
-
-    fn in_columns(mut entries: Vec<Entry>, room: f64, columns: impl Fn(f64) -> usize) -> Self {
-        for entry in &mut entries {
-            entry.words = text::shortened(&entry.words, TEXT, room - SAMPLE - SPACE);
-        }
-        let column_width = entries.iter().map(Entry::width).fold(0.0, f64::max);
-        let columns = columns(column_width).min(entries.len().max(1));
-        Self {
-            entries,
-            columns,
-            column_width,
-        }
+        let all = entries.len();
+        let entries = fitted(entries, room);
+        let fits = |rows: &usize| total(&columns(&entries, *rows)) <= room;
+        let rows = (1..all.max(1)).find(fits).unwrap_or(all);
+        Self { entries, rows }
     }
 
     pub(crate) fn width(&self) -> f64 {
-        self.columns as f64 * (self.column_width + 3.0 * SPACE) - 3.0 * SPACE
-    }
-
-    fn rows(&self) -> usize {
-        self.entries.len().div_ceil(self.columns)
+        total(&columns(&self.entries, self.rows))
     }
 
     pub(crate) fn height(&self) -> f64 {
-        self.rows() as f64 * ROW
+        self.rows as f64 * ROW
     }
 
     /// Draws it with its upper left corner at a place.
     pub(crate) fn draw(&self, canvas: &mut Canvas, corner: Place) {
-        let rows = self.rows().max(1);
-        for (k, entry) in self.entries.iter().enumerate() {
-            let x = corner.0 + (k / rows) as f64 * (self.column_width + 3.0 * SPACE);
-            let middle = corner.1 + ((k % rows) as f64 + 0.5) * ROW;
-            canvas.group("class=\"legend\"", |pen| {
-                pen.text(
-                    &entry.words,
-                    (x + SAMPLE + SPACE, middle + 0.35 * TEXT),
-                    TEXT,
-                    Stands::Behind,
-                    BLACK,
-                );
-            });
-            draw_sample(canvas, entry.sample, (x, middle));
+        let mut x = corner.0;
+        for (column, width) in self.entries.chunks(self.rows.max(1)).zip(columns(&self.entries, self.rows)) {
+            for (row, entry) in column.iter().enumerate() {
+                let middle = corner.1 + (row as f64 + 0.5) * ROW;
+                let words = (x + SAMPLE + SPACE, middle + 0.35 * TEXT);
+                canvas.group("class=\"legend\"", |pen| pen.text(&entry.words, words, TEXT, Stands::Behind, BLACK));
+                draw_sample(canvas, entry.sample, (x, middle));
+            }
+            x += width + BETWEEN;
         }
     }
+}
+
+/// The entries with words short enough for a column that takes all the room.
+fn fitted(mut entries: Vec<Entry>, room: f64) -> Vec<Entry> {
+    for entry in &mut entries {
+        entry.words = text::shortened(&entry.words, TEXT, (room - SAMPLE - SPACE) / text::STAND_IN);
+    }
+    entries
+}
+
+fn columns(entries: &[Entry], rows: usize) -> Vec<f64> {
+    entries.chunks(rows.max(1)).map(|column| column.iter().map(Entry::width).fold(0.0, f64::max)).collect()
+}
+
+fn total(columns: &[f64]) -> f64 {
+    columns.iter().sum::<f64>() + BETWEEN * columns.len().saturating_sub(1) as f64
 }
 
 fn draw_sample(canvas: &mut Canvas, sample: Sample, (x, y): Place) {
@@ -131,25 +131,14 @@ fn draw_sample(canvas: &mut Canvas, sample: Sample, (x, y): Place) {
     let centre = (x + 0.5 * SAMPLE, y);
     match sample {
         Sample::Nothing => {}
-        Sample::Marker(kind) => {
-            canvas.group("class=\"legend\"", |pen| marker::draw(pen, kind, centre))
-        }
+        Sample::Dot { ink, hollow } => canvas.group("class=\"legend\"", |pen| dot(pen, ink, hollow, centre)),
+        Sample::Marker(kind) => canvas.group("class=\"legend\"", |pen| marker::draw(pen, kind, centre)),
         Sample::Line { ink, dashed } => {
-            canvas.group(&line_attributes("legend", dashed), |pen| {
-                pen.line(&line, ink.color, ink.weight)
-            });
+            canvas.group(&line_attributes("legend", dashed), |pen| pen.line(&line, ink.color, ink.weight));
         }
-        Sample::Numbered {
-            ink,
-            dashed,
-            number,
-        } => {
-            canvas.group(&line_attributes("legend", dashed), |pen| {
-                pen.line(&line, ink.color, ink.weight)
-            });
-            canvas.group("class=\"legend\"", |pen| {
-                numbered(pen, number, centre, BLACK)
-            });
+        Sample::Numbered { ink, dashed, number } => {
+            canvas.group(&line_attributes("legend", dashed), |pen| pen.line(&line, ink.color, ink.weight));
+            canvas.group("class=\"legend\"", |pen| numbered(pen, number, centre, BLACK));
         }
     }
 }
@@ -157,10 +146,7 @@ fn draw_sample(canvas: &mut Canvas, sample: Sample, (x, y): Place) {
 /// Attributes of a group of curves.
 pub(crate) fn line_attributes(class: &str, dashed: bool) -> String {
     let joins = "stroke-linejoin=\"round\"";
-    let (dash, gap) = (
-        DASHES.0 * crate::canvas::FINE,
-        DASHES.1 * crate::canvas::FINE,
-    );
+    let (dash, gap) = (DASHES.0 * crate::canvas::FINE, DASHES.1 * crate::canvas::FINE);
     if dashed {
         format!("class=\"{class} unstable\" {joins} stroke-dasharray=\"{dash} {gap}\"")
     } else {
@@ -168,16 +154,16 @@ pub(crate) fn line_attributes(class: &str, dashed: bool) -> String {
     }
 }
 
+/// A branch of one point: filled where it is stable, hollow where not.
+pub(crate) fn dot(pen: &Pen, ink: Ink, hollow: bool, centre: Place) {
+    const RADIUS: f64 = 1.7;
+    if hollow { pen.ring(centre, RADIUS, ink.color, ink.weight) } else { pen.disc(centre, RADIUS, ink.color) }
+}
+
 /// A number in a small circle.
 pub(crate) fn numbered(pen: &Pen, number: usize, centre: Place, color: RGBColor) {
     const OUTLINE: f64 = 0.5;
     pen.disc(centre, NUMBER_RADIUS, WHITE);
     pen.ring(centre, NUMBER_RADIUS - 0.5 * OUTLINE, color, OUTLINE);
-    pen.text(
-        &number.to_string(),
-        (centre.0, centre.1 + 0.36 * SMALL),
-        SMALL,
-        Stands::Centred,
-        color,
-    );
+    pen.text(&number.to_string(), (centre.0, centre.1 + 0.36 * SMALL), SMALL, Stands::Centred, color);
 }

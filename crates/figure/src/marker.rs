@@ -59,10 +59,7 @@ pub(crate) fn draw(pen: &Pen, kind: EventKind, centre: Place) {
 }
 
 fn placed(shape: &[Place], (x, y): Place, scale: f64) -> Vec<Place> {
-    shape
-        .iter()
-        .map(|(u, v)| (x + scale * u, y + scale * v))
-        .collect()
+    shape.iter().map(|(u, v)| (x + scale * u, y + scale * v)).collect()
 }
 
 /// Corners for a marker of radius about one, y downwards.
@@ -82,9 +79,7 @@ fn shape(kind: EventKind) -> Vec<Place> {
 fn cross() -> Vec<Place> {
     let (arm, half) = (1.25, 0.4);
     let quarter = [(half, -half), (half, -arm), (-half, -arm)];
-    (0..4)
-        .flat_map(|k| quarter.map(|place| quarter_turns(place, 4 - k)))
-        .collect()
+    (0..4).flat_map(|k| quarter.map(|place| quarter_turns(place, 4 - k))).collect()
 }
 
 fn quarter_turns((x, y): Place, turns: usize) -> Place {
@@ -93,10 +88,7 @@ fn quarter_turns((x, y): Place, turns: usize) -> Place {
 
 fn turned(shape: &[Place]) -> Vec<Place> {
     let half = std::f64::consts::FRAC_1_SQRT_2;
-    shape
-        .iter()
-        .map(|(x, y)| (half * (x - y), half * (x + y)))
-        .collect()
+    shape.iter().map(|(x, y)| (half * (x - y), half * (x + y))).collect()
 }
 
 /// A star of five points.

@@ -27,11 +27,7 @@ impl<'a> Cycle<'a> {
             means: &point.means,
             spreads: &point.spreads,
             period: point.period,
-            log_modulus: point
-                .multipliers
-                .iter()
-                .map(|multiplier| multiplier.log_modulus)
-                .reduce(f64::max),
+            log_modulus: point.multipliers.iter().map(|multiplier| multiplier.log_modulus).reduce(f64::max),
         }
     }
 
@@ -50,11 +46,7 @@ impl<'a> Cycle<'a> {
 
     /// The same cycle told as `times` of its rounds.
     pub(crate) fn repeated(self, times: f64) -> Self {
-        Self {
-            period: self.period * times,
-            log_modulus: self.log_modulus.map(|log| log * times),
-            ..self
-        }
+        Self { period: self.period * times, log_modulus: self.log_modulus.map(|log| log * times), ..self }
     }
 }
 
@@ -70,11 +62,7 @@ pub(crate) struct Reader<'a> {
 
 impl<'a> Reader<'a> {
     pub(crate) fn new(diagram: &'a Diagram, states: &'a [Quantity]) -> Result<Self, FigureError> {
-        let state = diagram
-            .measure
-            .state()
-            .map(|asked| find(states, asked))
-            .transpose()?;
+        let state = diagram.measure.state().map(|asked| find(states, asked)).transpose()?;
         Ok(Self {
             measure: &diagram.measure,
             state: state.unwrap_or(0),
@@ -85,11 +73,7 @@ impl<'a> Reader<'a> {
 
     /// Number of curves of a branch.
     pub(crate) fn curves(&self) -> usize {
-        if matches!(self.measure, Measure::Extremes(_)) {
-            2
-        } else {
-            1
-        }
+        if matches!(self.measure, Measure::Extremes(_)) { 2 } else { 1 }
     }
 
     /// The drawn number of the `curve`-th curve; none where it is missing, not finite, or has no logarithm.
@@ -97,34 +81,23 @@ impl<'a> Reader<'a> {
         let of = |values: &[f64]| values.get(self.state).copied();
         let value = match self.measure {
             Measure::LargestMultiplier => {
-                return cycle
-                    .log_modulus
-                    .map(|log| log / std::f64::consts::LN_10)
-                    .filter(sound);
+                return cycle.log_modulus.map(|log| log / std::f64::consts::LN_10).filter(sound);
             }
             Measure::Period => Some(cycle.period),
             Measure::Mean(_) => of(cycle.means),
             Measure::Spread(_) => of(cycle.spreads),
-            Measure::PeakToPeak(_) => of(cycle.maxima)
-                .zip(of(cycle.minima))
-                .map(|(max, min)| max - min),
+            Measure::PeakToPeak(_) => of(cycle.maxima).zip(of(cycle.minima)).map(|(max, min)| max - min),
             Measure::Min(_) => of(cycle.minima),
             Measure::Extremes(_) if curve == 1 => of(cycle.minima),
             Measure::Max(_) | Measure::Extremes(_) => of(cycle.maxima),
         }?;
-        let drawn = if self.logarithmic {
-            value.log10()
-        } else {
-            value
-        };
+        let drawn = if self.logarithmic { value.log10() } else { value };
         Some(drawn).filter(sound)
     }
 
     /// The measure as an axis is called.
     pub(crate) fn label(&self) -> String {
-        let state = self
-            .quantity
-            .map_or(String::new(), |quantity| text::quantity(&quantity.label));
+        let state = self.quantity.map_or(String::new(), |quantity| text::quantity(&quantity.label));
         match self.measure {
             Measure::Max(_) => format!("maximum of {state}"),
             Measure::Min(_) => format!("minimum of {state}"),
@@ -155,11 +128,8 @@ pub(crate) fn sound(value: &f64) -> bool {
 
 /// The index of a state.
 pub(crate) fn find(states: &[Quantity], asked: &str) -> Result<usize, FigureError> {
-    states
-        .iter()
-        .position(|state| state.name == asked)
-        .ok_or_else(|| FigureError::UnknownState {
-            asked: asked.to_string(),
-            known: states.iter().map(|state| state.name.clone()).collect(),
-        })
+    states.iter().position(|state| state.name == asked).ok_or_else(|| FigureError::UnknownState {
+        asked: asked.to_string(),
+        known: states.iter().map(|state| state.name.clone()).collect(),
+    })
 }

@@ -7,9 +7,7 @@ pub(crate) fn decimal(value: f64, decimals: usize) -> String {
     let plain = format!("{value:.decimals$}");
     let (sign, digits) = match plain.strip_prefix('-') {
         // Rounding may leave nothing but zeros of a small negative number.
-        Some(digits) if digits.chars().any(|digit| ('1'..='9').contains(&digit)) => {
-            ("\u{2212}", digits)
-        }
+        Some(digits) if digits.chars().any(|digit| ('1'..='9').contains(&digit)) => ("\u{2212}", digits),
         Some(digits) => ("", digits),
         None => ("", plain.as_str()),
     };
@@ -38,10 +36,7 @@ fn grouped(digits: &str, before_point: bool) -> String {
 
 /// Ten to a power.
 pub(crate) fn power_of_ten(exponent: i32) -> String {
-    format!(
-        "10{}",
-        raised(&exponent.to_string().replace('-', "\u{2212}"))
-    )
+    format!("10{}", raised(&exponent.to_string().replace('-', "\u{2212}")))
 }
 
 /// A number for running text: the shortest decimals that read back, a power of ten where those are long.

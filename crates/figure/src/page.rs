@@ -36,11 +36,7 @@ pub(crate) struct Scale {
 impl Scale {
     fn axis(&self, most: usize) -> Axis {
         let (lo, hi) = self.range;
-        if self.logarithmic {
-            Axis::logarithmic(lo, hi, most)
-        } else {
-            Axis::linear(lo, hi, most)
-        }
+        if self.logarithmic { Axis::logarithmic(lo, hi, most) } else { Axis::linear(lo, hi, most) }
     }
 
     /// The axis with as many names as stand beside each other along `room`.
@@ -57,10 +53,7 @@ impl Scale {
                     .map(|tick| axis.fraction(tick.at) * room)
                     .collect();
                 places.sort_by(f64::total_cmp);
-                let closest = places
-                    .windows(2)
-                    .map(|pair| pair[1] - pair[0])
-                    .fold(f64::MAX, f64::min);
+                let closest = places.windows(2).map(|pair| pair[1] - pair[0]).fold(f64::MAX, f64::min);
                 closest > axis.widest(TEXT) + CLEAR
             })
             .unwrap_or_else(|| self.axis(1))
@@ -96,71 +89,39 @@ pub(crate) fn legend_beside(width: f64) -> bool {
 
 /// Height of the frame on a page of this width.
 pub(crate) fn frame_height(width: f64) -> f64 {
-    if legend_beside(width) {
-        0.43 * width
-    } else {
-        0.62 * width
-    }
+    if legend_beside(width) { 0.43 * width } else { 0.62 * width }
 }
 
 impl Page {
     pub(crate) fn new(width: f64, x: &Scale, y: &Scale, entries: Vec<Entry>) -> Self {
         let beside = legend_beside(width);
         let mut height = frame_height(width);
-        let beside_legend = if beside {
-            Some(Legend::beside(entries.clone(), LEGEND_SHARE * width))
-        } else {
-            None
-        };
+        let beside_legend = if beside { Some(Legend::beside(entries.clone(), LEGEND_SHARE * width)) } else { None };
         if let Some(legend) = &beside_legend {
             height = height.max(legend.height());
         }
-        let y_axis = y.axis(((height / 26.0) as usize).max(2));
+        let y_axis = y.axis(((height / 24.0) as usize).max(2));
         let (y_name, y_unit) = y_axis.label(&y.quantity, &y.unit);
-        let y_label = text::two_lines(&y_name, &y_unit, TEXT, height);
+        let y_label = text::two_lines(&y_name, &y_unit, TEXT, height / text::STAND_IN);
         let left = SPACE + y_label.len() as f64 * LINE + SPACE + y_axis.widest(TEXT) + SPACE + TICK;
         let top = SPACE + 0.5 * TEXT;
-        let taken_right = beside_legend
-            .as_ref()
-            .map_or(0.0, |legend| legend.width() + 2.0 * SPACE);
+        let taken_right = beside_legend.as_ref().map_or(0.0, |legend| legend.width() + 2.0 * SPACE);
         let room = |margin: f64| width - left - margin - taken_right;
         // The last number may hang over the end of the axis by half its width.
         let guess = x.axis_across(room(10.0));
         let margin = (0.5 * guess.widest(TEXT)).max(SPACE) + SPACE;
         let x_axis = x.axis_across(room(margin));
-        let frame = Rect {
-            left,
-            top,
-            right: left + room(margin),
-            bottom: top + height,
-        };
+        let frame = Rect { left, top, right: left + room(margin), bottom: top + height };
         let (x_name, x_unit) = x_axis.label(&x.quantity, &x.unit);
-        let x_label = text::two_lines(&x_name, &x_unit, TEXT, frame.width());
+        let x_label = text::two_lines(&x_name, &x_unit, TEXT, frame.width() / text::STAND_IN);
         let below = frame.bottom + TICK + SPACE + LINE + x_label.len() as f64 * LINE + 2.0 * SPACE;
         let legend = match beside_legend {
             Some(legend) => legend,
             None => Legend::below(entries, width - left - SPACE),
         };
-        let legend_corner = if beside {
-            (frame.right + margin + SPACE, frame.top)
-        } else {
-            (left, below)
-        };
-        let bottom = if beside {
-            below
-        } else {
-            below + legend.height() + SPACE
-        };
-        Self {
-            frame,
-            x: x_axis,
-            y: y_axis,
-            x_label,
-            y_label,
-            size: (width, bottom),
-            legend,
-            legend_corner,
-        }
+        let legend_corner = if beside { (frame.right + margin + SPACE, frame.top) } else { (left, below) };
+        let bottom = if beside { below } else { below + legend.height() + SPACE };
+        Self { frame, x: x_axis, y: y_axis, x_label, y_label, size: (width, bottom), legend, legend_corner }
     }
 
     /// Where drawn numbers stand on the page.
@@ -177,38 +138,18 @@ impl Page {
 
     /// Frame, ticks, names and legend.
     pub(crate) fn draw(&self, canvas: &mut Canvas) {
-        let Rect {
-            left,
-            top,
-            right,
-            bottom,
-        } = self.frame;
+        let Rect { left, top, right, bottom } = self.frame;
         canvas.group("class=\"frame\" stroke-linejoin=\"miter\"", |pen| {
-            let corners = [
-                (left, top),
-                (right, top),
-                (right, bottom),
-                (left, bottom),
-                (left, top),
-                (right, top),
-            ];
+            let corners = [(left, top), (right, top), (right, bottom), (left, bottom), (left, top), (right, top)];
             pen.line(&corners, BLACK, FRAME);
             for tick in &self.x.ticks {
                 let x = left + self.x.fraction(tick.at) * self.frame.width();
-                let long = if tick.name.is_some() {
-                    TICK
-                } else {
-                    SHORT_TICK
-                };
+                let long = if tick.name.is_some() { TICK } else { SHORT_TICK };
                 pen.line(&[(x, bottom), (x, bottom + long)], BLACK, FRAME);
             }
             for tick in &self.y.ticks {
                 let y = bottom - self.y.fraction(tick.at) * self.frame.height();
-                let long = if tick.name.is_some() {
-                    TICK
-                } else {
-                    SHORT_TICK
-                };
+                let long = if tick.name.is_some() { TICK } else { SHORT_TICK };
                 pen.line(&[(left - long, y), (left, y)], BLACK, FRAME);
             }
         });
@@ -229,19 +170,10 @@ impl Page {
             for tick in &self.y.ticks {
                 let y = bottom - self.y.fraction(tick.at) * self.frame.height();
                 if let Some(name) = &tick.name {
-                    pen.text(
-                        name,
-                        (left - TICK - SPACE, y + 0.36 * TEXT),
-                        TEXT,
-                        Stands::Before,
-                        BLACK,
-                    );
+                    pen.text(name, (left - TICK - SPACE, y + 0.36 * TEXT), TEXT, Stands::Before, BLACK);
                 }
             }
-            let middle = (
-                0.5 * (left + self.frame.right),
-                0.5 * (self.frame.top + bottom),
-            );
+            let middle = (0.5 * (left + self.frame.right), 0.5 * (self.frame.top + bottom));
             for (k, line) in self.x_label.iter().enumerate() {
                 let baseline = x_baseline + DESCENT * TEXT + (k as f64 + 1.0) * LINE;
                 pen.text(line, (middle.0, baseline), TEXT, Stands::Centred, BLACK);

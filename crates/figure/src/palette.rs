@@ -32,10 +32,7 @@ pub(crate) struct Ink {
 }
 
 pub(crate) fn ink(index: usize) -> Ink {
-    Ink {
-        color: LINES[index % LINES.len()],
-        weight: WEIGHTS[index % WEIGHTS.len()],
-    }
+    Ink { color: LINES[index % LINES.len()], weight: WEIGHTS[index % WEIGHTS.len()] }
 }
 
 /// The same hue, dark enough for 7 pt letters on white.
@@ -47,4 +44,24 @@ pub(crate) fn lettering(color: RGBColor) -> RGBColor {
     let scale = (DARK / luma.max(1.0)).min(1.0);
     let darker = |part: u8| (f64::from(part) * scale).round() as u8;
     RGBColor(darker(r), darker(g), darker(b))
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// Rec. 601 luma of the colour, as a grey copier sees it.
+    fn luma(RGBColor(r, g, b): RGBColor) -> f64 {
+        0.299 * f64::from(r) + 0.587 * f64::from(g) + 0.114 * f64::from(b)
+    }
+
+    #[test]
+    fn neighbouring_lines_differ_in_grey_print() {
+        for index in 0..50 {
+            let (a, b) = (ink(index), ink(index + 1));
+            assert!((a.weight / b.weight).ln().abs() > 0.3, "{index}");
+            assert!((0..index).all(|earlier| index - earlier >= 21 || ink(earlier) != a));
+        }
+        assert!((0..7).all(|index| luma(lettering(ink(index).color)) <= 101.0));
+    }
 }

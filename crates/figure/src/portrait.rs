@@ -2,11 +2,11 @@
 
 use armilla_record::{Branch, Event, EventKind, Profile};
 
-use crate::canvas::{Canvas, Pen, Stands};
+use crate::canvas::{Canvas, Pen};
 use crate::caption;
 use crate::error::FigureError;
 use crate::geometry::{Place, at_fraction, length};
-use crate::legend::{Entry, NUMBER_RADIUS, SMALL, Sample, numbered};
+use crate::legend::{Entry, NUMBER_RADIUS, Sample, numbered};
 use crate::measure::{find, sound};
 use crate::page::{Page, Scale, points};
 use crate::palette::{Ink, ink, lettering};
@@ -14,7 +14,7 @@ use crate::place::Taken;
 use crate::range::{Asked, extent};
 use crate::spec::Portrait;
 use crate::stability::{least_count_at, stretches};
-use crate::stroke::{self, Line, Stroke, baseline, name_size};
+use crate::stroke::{self, Line, Stroke, name_size};
 use crate::text;
 
 /// More orbits than colours cannot be told apart.
@@ -38,19 +38,11 @@ pub(crate) fn draw(portrait: &Portrait, branches: &[Branch]) -> Result<String, F
     let asked = Asked::new(portrait.x, portrait.y, false)?;
     let width = points(portrait.width)?;
     let all = kept(branches);
-    let left_out = if portrait.orbits.is_empty() {
-        all.len().saturating_sub(MOST)
-    } else {
-        0
-    };
+    let left_out = if portrait.orbits.is_empty() { all.len().saturating_sub(MOST) } else { 0 };
     let mut orbits = chosen(all, &portrait.orbits)?;
-    orbits
-        .iter_mut()
-        .for_each(|orbit| orbit.line = line(orbit.profile, states));
+    orbits.iter_mut().for_each(|orbit| orbit.line = line(orbit.profile, states));
     let lines: Vec<Vec<Place>> = orbits.iter().map(|orbit| orbit.line.clone()).collect();
-    let window = asked
-        .window(&lines, &[])
-        .ok_or_else(|| nothing_inside(portrait, &lines))?;
+    let window = asked.window(&lines, &[]).ok_or_else(|| nothing_inside(portrait, &lines))?;
     let cut: Vec<Line> = orbits
         .iter()
         .enumerate()
@@ -62,20 +54,12 @@ pub(crate) fn draw(portrait: &Portrait, branches: &[Branch]) -> Result<String, F
         quantity: text::quantity(&first.states[state].label),
         unit: first.states[state].unit.clone(),
     };
-    let (x, y) = (
-        scale(states.0, (window.left, window.right)),
-        scale(states.1, (window.top, window.bottom)),
-    );
+    let (x, y) = (scale(states.0, (window.left, window.right)), scale(states.1, (window.top, window.bottom)));
     let page = Page::new(width, &x, &y, legend(&orbits, &cut, left_out));
     let mut canvas = page.canvas();
-    let strokes: Vec<Stroke> = cut
-        .iter()
-        .map(|line| line.on_page(&page, ink(line.owner)))
-        .collect();
+    let strokes: Vec<Stroke> = cut.iter().map(|line| line.on_page(&page, ink(line.owner))).collect();
     stroke::draw(&mut canvas, &strokes);
-    canvas.group("class=\"arrows\"", |pen| {
-        strokes.iter().for_each(|stroke| arrow(pen, stroke))
-    });
+    canvas.group("class=\"arrows\"", |pen| strokes.iter().for_each(|stroke| arrow(pen, stroke)));
     page.draw(&mut canvas);
     name_orbits(&mut canvas, &page, &strokes, &orbits);
     let title = format!(
@@ -98,11 +82,7 @@ fn kept(branches: &[Branch]) -> Vec<Orbit<'_>> {
                 targets += 1;
                 targets
             });
-            let Some(profile) = event
-                .profile
-                .as_ref()
-                .filter(|profile| profile.validate().is_ok())
-            else {
+            let Some(profile) = event.profile.as_ref().filter(|profile| profile.validate().is_ok()) else {
                 continue;
             };
             let count = least_count_at(&stretches, event.distance)
@@ -126,20 +106,11 @@ fn chosen<'a>(orbits: Vec<Orbit<'a>>, asked: &[String]) -> Result<Vec<Orbit<'a>>
     if asked.is_empty() {
         return Ok(orbits.into_iter().take(MOST).collect());
     }
-    let known: Vec<String> = orbits
-        .iter()
-        .map(|orbit| orbit.event.name.clone())
-        .collect();
+    let known: Vec<String> = orbits.iter().map(|orbit| orbit.event.name.clone()).collect();
     if let Some(name) = asked.iter().find(|name| !known.contains(name)) {
-        return Err(FigureError::UnknownOrbit {
-            asked: name.clone(),
-            known,
-        });
+        return Err(FigureError::UnknownOrbit { asked: name.clone(), known });
     }
-    Ok(orbits
-        .into_iter()
-        .filter(|orbit| asked.contains(&orbit.event.name))
-        .collect())
+    Ok(orbits.into_iter().filter(|orbit| asked.contains(&orbit.event.name)).collect())
 }
 
 /// The closed orbit as corners; numbers that are not finite are left out.
@@ -166,10 +137,7 @@ fn line(profile: &Profile, (right, up): (usize, usize)) -> Vec<Place> {
 }
 
 fn legend(orbits: &[Orbit], cut: &[Line], left_out: usize) -> Vec<Entry> {
-    let black = Ink {
-        color: crate::palette::BLACK,
-        weight: 1.0,
-    };
+    let black = Ink { color: crate::palette::BLACK, weight: 1.0 };
     let mut entries = Vec::new();
     for (dashed, words) in [(false, "stable, or at its limit"), (true, "unstable")] {
         if cut.iter().any(|line| line.dashed == dashed) {
@@ -180,20 +148,13 @@ fn legend(orbits: &[Orbit], cut: &[Line], left_out: usize) -> Vec<Entry> {
         let orbit = &orbits[line.owner];
         let (ink, dashed) = (ink(line.owner), line.dashed);
         let sample = match orbit.number {
-            Some(number) => Sample::Numbered {
-                ink,
-                dashed,
-                number,
-            },
+            Some(number) => Sample::Numbered { ink, dashed, number },
             None => Sample::Line { ink, dashed },
         };
         Entry::new(sample, text::clean(&orbit.event.name))
     }));
     if left_out > 0 {
-        entries.push(Entry::new(
-            Sample::Nothing,
-            format!("+{left_out} more orbits, not drawn"),
-        ));
+        entries.push(Entry::new(Sample::Nothing, format!("+{left_out} more orbits, not drawn")));
     }
     entries
 }
@@ -204,11 +165,7 @@ fn arrow(pen: &Pen, stroke: &Stroke) {
     const HALF_WIDTH: f64 = 1.9;
     /// Away from the start, where orbits of one family come closest.
     const WHERE: f64 = 0.15;
-    let Some(part) = stroke
-        .parts
-        .iter()
-        .max_by(|a, b| length(a).total_cmp(&length(b)))
-    else {
+    let Some(part) = stroke.parts.iter().max_by(|a, b| length(a).total_cmp(&length(b))) else {
         return;
     };
     if length(part) < 4.0 * LENGTH {
@@ -216,62 +173,29 @@ fn arrow(pen: &Pen, stroke: &Stroke) {
     }
     // The chord over the head's own length keeps its tip on a curved line.
     let whole = length(part);
-    let (Some((tail, _)), Some((tip, _))) = (
-        at_fraction(part, WHERE - 0.5 * LENGTH / whole),
-        at_fraction(part, WHERE + 0.5 * LENGTH / whole),
-    ) else {
+    let (Some((tail, _)), Some((tip, _))) =
+        (at_fraction(part, WHERE - 0.5 * LENGTH / whole), at_fraction(part, WHERE + 0.5 * LENGTH / whole))
+    else {
         return;
     };
     let (dx, dy) = (tip.0 - tail.0, tip.1 - tail.1);
     let size = dx.hypot(dy).max(f64::MIN_POSITIVE);
     let (across_x, across_y) = (-dy / size * HALF_WIDTH, dx / size * HALF_WIDTH);
-    pen.area(
-        &[
-            tip,
-            (tail.0 + across_x, tail.1 + across_y),
-            (tail.0 - across_x, tail.1 - across_y),
-        ],
-        stroke.ink.color,
-    );
+    pen.area(&[tip, (tail.0 + across_x, tail.1 + across_y), (tail.0 - across_x, tail.1 - across_y)], stroke.ink.color);
 }
 
 fn name_orbits(canvas: &mut Canvas, page: &Page, strokes: &[Stroke], orbits: &[Orbit]) {
-    let lines: Vec<Vec<Place>> = strokes
-        .iter()
-        .flat_map(|stroke| stroke.parts.iter().cloned())
-        .collect();
+    let lines: Vec<Vec<Place>> = strokes.iter().flat_map(|stroke| stroke.parts.iter().cloned()).collect();
     let mut taken = Taken::new(page.frame, &lines);
     for stroke in strokes {
         let orbit = &orbits[stroke.owner];
+        let name = text::clean(&orbit.event.name);
+        let size = orbit.number.map_or(name_size(&name), |_| (2.0 * NUMBER_RADIUS, 2.0 * NUMBER_RADIUS));
+        let Some(spot) = stroke::room_beside(&mut taken, stroke, size) else { continue };
+        let color = lettering(stroke.ink.color);
         match orbit.number {
-            Some(number) => {
-                let size = (2.0 * NUMBER_RADIUS, 2.0 * NUMBER_RADIUS);
-                let Some(rect) = stroke::room_beside(&mut taken, stroke, size) else {
-                    continue;
-                };
-                let centre = (
-                    0.5 * (rect.left + rect.right),
-                    0.5 * (rect.top + rect.bottom),
-                );
-                canvas.group("class=\"names\"", |pen| {
-                    numbered(pen, number, centre, lettering(stroke.ink.color))
-                });
-            }
-            None => {
-                let name = text::clean(&orbit.event.name);
-                let Some(rect) = stroke::room_beside(&mut taken, stroke, name_size(&name)) else {
-                    continue;
-                };
-                canvas.group("class=\"names\"", |pen| {
-                    pen.text(
-                        &name,
-                        baseline(&rect),
-                        SMALL,
-                        Stands::Behind,
-                        lettering(stroke.ink.color),
-                    );
-                });
-            }
+            Some(number) => canvas.group("class=\"names\"", |pen| numbered(pen, number, spot.centre(), color)),
+            None => stroke::write_name(canvas, &spot, &name, color),
         }
     }
 }
@@ -292,18 +216,10 @@ fn description(branches: &[Branch], orbits: &[Orbit], left_out: usize) -> String
         .iter()
         .map(|orbit| {
             let value = crate::number::plain(orbit.event.value);
-            format!(
-                "{} at {} = {value}",
-                text::clean(&orbit.event.name),
-                text::clean(&parameter.label)
-            )
+            format!("{} at {} = {value}", text::clean(&orbit.event.name), text::clean(&parameter.label))
         })
         .collect();
-    let rest = if left_out > 0 {
-        format!(" {left_out} more orbits are kept and not drawn.")
-    } else {
-        String::new()
-    };
+    let rest = if left_out > 0 { format!(" {left_out} more orbits are kept and not drawn.") } else { String::new() };
     format!(
         "Orbits of {} ({}); dashed: unstable; arrows point in the sense of time.{rest} {} {}",
         drawn.join(", "),

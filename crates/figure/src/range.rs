@@ -12,15 +12,9 @@ pub(crate) struct Asked {
 
 impl Asked {
     /// Checks the ranges of a figure; a logarithmic scale goes upwards only.
-    pub(crate) fn new(
-        x: Option<(f64, f64)>,
-        y: Option<(f64, f64)>,
-        logarithmic: bool,
-    ) -> Result<Self, FigureError> {
+    pub(crate) fn new(x: Option<(f64, f64)>, y: Option<(f64, f64)>, logarithmic: bool) -> Result<Self, FigureError> {
         let x = x.map(|range| checked("x", range, false)).transpose()?;
-        let y = y
-            .map(|range| checked("y", range, logarithmic))
-            .transpose()?;
+        let y = y.map(|range| checked("y", range, logarithmic)).transpose()?;
         Ok(Self { x, y })
     }
 
@@ -28,48 +22,21 @@ impl Asked {
     pub(crate) fn window(&self, lines: &[Vec<Place>], dots: &[Place]) -> Option<Rect> {
         let all = (f64::NEG_INFINITY, f64::INFINITY);
         let (x, y) = (self.x.unwrap_or(all), self.y.unwrap_or(all));
-        let asked = Rect {
-            left: x.0,
-            right: x.1,
-            top: y.0,
-            bottom: y.1,
-        };
+        let asked = Rect { left: x.0, right: x.1, top: y.0, bottom: y.1 };
         let parts = lines.iter().flat_map(|line| cut_at(&asked, line)).flatten();
-        let (x_seen, y_seen) =
-            extent(parts.chain(dots.iter().copied().filter(|dot| asked.contains(*dot))))?;
+        let (x_seen, y_seen) = extent(parts.chain(dots.iter().copied().filter(|dot| asked.contains(*dot))))?;
         let (left, right) = self.x.unwrap_or_else(|| around(x_seen.0, x_seen.1));
         let (top, bottom) = self.y.unwrap_or_else(|| around(y_seen.0, y_seen.1));
-        Some(Rect {
-            left,
-            right,
-            top,
-            bottom,
-        })
+        Some(Rect { left, right, top, bottom })
     }
 }
 
-fn checked(
-    field: &'static str,
-    asked: (f64, f64),
-    logarithmic: bool,
-) -> Result<(f64, f64), FigureError> {
-    let (lo, hi) = if logarithmic {
-        (asked.0.log10(), asked.1.log10())
-    } else {
-        asked
-    };
-    // Narrower than this the scale itself is lost in roundoff.
-    let wide = hi - lo > 1e-12 * lo.abs().max(hi.abs());
+fn checked(field: &'static str, asked: (f64, f64), logarithmic: bool) -> Result<(f64, f64), FigureError> {
+    let (lo, hi) = if logarithmic { (asked.0.log10(), asked.1.log10()) } else { asked };
+    // Narrower than this the scale itself is lost in roundoff, or below the smallest normal numbers.
+    let wide = hi - lo > (1e-12 * lo.abs().max(hi.abs())).max(1.0 / crate::axis::LARGEST);
     let sound = crate::measure::sound(&lo) && crate::measure::sound(&hi);
-    if sound && wide {
-        Ok((lo, hi))
-    } else {
-        Err(FigureError::Range {
-            field,
-            asked,
-            logarithmic,
-        })
-    }
+    if sound && wide { Ok((lo, hi)) } else { Err(FigureError::Range { field, asked, logarithmic }) }
 }
 
 /// Smallest and largest of both coordinates.

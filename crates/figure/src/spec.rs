@@ -127,27 +127,14 @@ impl Figure {
 impl Diagram {
     /// A diagram with every default.
     pub fn new(measure: Measure) -> Self {
-        Self {
-            measure,
-            width: Width::default(),
-            x: None,
-            y: None,
-            logarithmic: false,
-            names: true,
-        }
+        Self { measure, width: Width::default(), x: None, y: None, logarithmic: false, names: true }
     }
 }
 
 impl Portrait {
     /// A portrait with every default.
     pub fn new(right: &str, up: &str) -> Self {
-        Self {
-            axes: [right.into(), up.into()],
-            orbits: Vec::new(),
-            width: Width::default(),
-            x: None,
-            y: None,
-        }
+        Self { axes: [right.into(), up.into()], orbits: Vec::new(), width: Width::default(), x: None, y: None }
     }
 }
 
@@ -169,6 +156,7 @@ enum Written {
         names: bool,
     },
     Portrait {
+        #[serde(with = "pair")]
         axes: [String; 2],
         #[serde(default)]
         orbits: Vec<String>,
@@ -188,34 +176,10 @@ fn yes() -> bool {
 impl From<Written> for Figure {
     fn from(written: Written) -> Self {
         match written {
-            Written::Diagram {
-                measure,
-                width,
-                x,
-                y,
-                logarithmic,
-                names,
-            } => Self::Diagram(Diagram {
-                measure,
-                width,
-                x,
-                y,
-                logarithmic,
-                names,
-            }),
-            Written::Portrait {
-                axes,
-                orbits,
-                width,
-                x,
-                y,
-            } => Self::Portrait(Portrait {
-                axes,
-                orbits,
-                width,
-                x,
-                y,
-            }),
+            Written::Diagram { measure, width, x, y, logarithmic, names } => {
+                Self::Diagram(Diagram { measure, width, x, y, logarithmic, names })
+            }
+            Written::Portrait { axes, orbits, width, x, y } => Self::Portrait(Portrait { axes, orbits, width, x, y }),
         }
     }
 }
@@ -223,35 +187,26 @@ impl From<Written> for Figure {
 impl From<Figure> for Written {
     fn from(figure: Figure) -> Self {
         match figure {
-            Figure::Diagram(Diagram {
-                measure,
-                width,
-                x,
-                y,
-                logarithmic,
-                names,
-            }) => Self::Diagram {
-                measure,
-                width,
-                x,
-                y,
-                logarithmic,
-                names,
-            },
-            Figure::Portrait(Portrait {
-                axes,
-                orbits,
-                width,
-                x,
-                y,
-            }) => Self::Portrait {
-                axes,
-                orbits,
-                width,
-                x,
-                y,
-            },
+            Figure::Diagram(Diagram { measure, width, x, y, logarithmic, names }) => {
+                Self::Diagram { measure, width, x, y, logarithmic, names }
+            }
+            Figure::Portrait(Portrait { axes, orbits, width, x, y }) => Self::Portrait { axes, orbits, width, x, y },
         }
+    }
+}
+
+/// Writes and reads two names as a list; serde takes an array for a tuple, in parentheses.
+mod pair {
+    use serde::de::Error;
+    use serde::{Deserialize, Deserializer, Serialize, Serializer};
+
+    pub(super) fn serialize<S: Serializer>(axes: &[String; 2], to: S) -> Result<S::Ok, S::Error> {
+        axes.as_slice().serialize(to)
+    }
+
+    pub(super) fn deserialize<'de, D: Deserializer<'de>>(from: D) -> Result<[String; 2], D::Error> {
+        <[String; 2]>::try_from(Vec::<String>::deserialize(from)?)
+            .map_err(|names| D::Error::custom(format!("`axes` takes the names of two states, found {}", names.len())))
     }
 }
 
@@ -259,19 +214,14 @@ impl From<Figure> for Written {
 mod bare {
     use serde::{Deserialize, Deserializer, Serialize, Serializer};
 
-    pub(super) fn serialize<S: Serializer>(
-        range: &Option<(f64, f64)>,
-        to: S,
-    ) -> Result<S::Ok, S::Error> {
+    pub(super) fn serialize<S: Serializer>(range: &Option<(f64, f64)>, to: S) -> Result<S::Ok, S::Error> {
         match range {
             Some(range) => range.serialize(to),
             None => to.serialize_none(),
         }
     }
 
-    pub(super) fn deserialize<'de, D: Deserializer<'de>>(
-        from: D,
-    ) -> Result<Option<(f64, f64)>, D::Error> {
+    pub(super) fn deserialize<'de, D: Deserializer<'de>>(from: D) -> Result<Option<(f64, f64)>, D::Error> {
         <(f64, f64)>::deserialize(from).map(Some)
     }
 }
@@ -291,17 +241,11 @@ mod tests {
         ]"#;
         let figures: Vec<Figure> = ron::from_str(text).expect("the interface's own lines");
         assert_eq!(figures[0], Figure::diagram(Measure::Max("level".into())));
-        assert_eq!(
-            figures[1],
-            Figure::diagram(Measure::Extremes("level".into()))
-        );
-        let Figure::Diagram(period) = &figures[2] else {
-            panic!("{:?}", figures[2])
-        };
+        assert_eq!(figures[1], Figure::diagram(Measure::Extremes("level".into())));
+        let Figure::Diagram(period) = &figures[2] else { panic!("{:?}", figures[2]) };
         assert_eq!((period.x, period.y), (Some((0.5, 2.0)), Some((1e-3, 4.0))));
         assert!(period.logarithmic && !period.names && period.width.millimetres() == 178.0);
-        let again: Vec<Figure> =
-            ron::from_str(&ron::to_string(&figures).expect("writes")).expect("reads back");
+        let again: Vec<Figure> = ron::from_str(&ron::to_string(&figures).expect("writes")).expect("reads back");
         assert_eq!(again, figures);
     }
 
@@ -312,14 +256,11 @@ mod tests {
             r#"Diagram(measure: Most("x"))"#,
             "Diagram()",
             "Chart()",
+            r#"Portrait(axes: ["x"])"#,
         ] {
             assert!(ron::from_str::<Figure>(wrong).is_err(), "{wrong}");
         }
-        let told = ron::from_str::<Figure>(r#"Diagram(measure: Max("x"), colour: 1)"#)
-            .expect_err("refused");
-        assert!(
-            told.to_string().contains("colour") && told.to_string().contains("logarithmic"),
-            "{told}"
-        );
+        let told = ron::from_str::<Figure>(r#"Diagram(measure: Max("x"), colour: 1)"#).expect_err("refused");
+        assert!(told.to_string().contains("colour") && told.to_string().contains("logarithmic"), "{told}");
     }
 }

@@ -12,17 +12,10 @@ pub(crate) struct Stretch {
 
 /// The stretches of a branch in order of distance, each at most from one point to the next.
 pub(crate) fn stretches(branch: &Branch) -> Vec<Stretch> {
-    let mut points: Vec<&Point> = branch
-        .points
-        .iter()
-        .filter(|point| point.distance.is_finite())
-        .collect();
+    let mut points: Vec<&Point> = branch.points.iter().filter(|point| point.distance.is_finite()).collect();
     points.sort_by(|a, b| a.distance.total_cmp(&b.distance));
-    let mut events: Vec<&Event> = branch
-        .events
-        .iter()
-        .filter(|event| event.kind.is_threshold() && event.distance.is_finite())
-        .collect();
+    let mut events: Vec<&Event> =
+        branch.events.iter().filter(|event| event.kind.is_threshold() && event.distance.is_finite()).collect();
     events.sort_by(|a, b| a.distance.total_cmp(&b.distance));
     points
         .windows(2)
@@ -38,29 +31,19 @@ fn between(before: &Point, after: &Point, events: &[&Event]) -> Vec<Stretch> {
     let inside: Vec<&Event> = events
         .iter()
         .copied()
-        .filter(|event| {
-            event.distance > before.distance + slack && event.distance < after.distance - slack
-        })
+        .filter(|event| event.distance > before.distance + slack && event.distance < after.distance - slack)
         .collect();
     let (from, to) = (before.distance, after.distance);
     if inside.is_empty() {
-        let at_end = events
-            .iter()
-            .any(|event| (event.distance - to).abs() <= slack);
-        let at_begin = events
-            .iter()
-            .any(|event| (event.distance - from).abs() <= slack);
+        let at_end = events.iter().any(|event| (event.distance - to).abs() <= slack);
+        let at_begin = events.iter().any(|event| (event.distance - from).abs() <= slack);
         let unstable_count = match (at_begin, at_end) {
             (_, true) => before.unstable_count,
             (true, false) => after.unstable_count,
             // A change without an event: better drawn unstable than falsely stable.
             (false, false) => before.unstable_count.max(after.unstable_count),
         };
-        return vec![Stretch {
-            from,
-            to,
-            unstable_count,
-        }];
+        return vec![Stretch { from, to, unstable_count }];
     }
     let counts = counts_between(before.unstable_count, after.unstable_count, &inside);
     let mut places = vec![from];
@@ -69,11 +52,7 @@ fn between(before: &Point, after: &Point, events: &[&Event]) -> Vec<Stretch> {
     places
         .windows(2)
         .zip(counts)
-        .map(|(ends, unstable_count)| Stretch {
-            from: ends[0],
-            to: ends[1],
-            unstable_count,
-        })
+        .map(|(ends, unstable_count)| Stretch { from: ends[0], to: ends[1], unstable_count })
         .collect()
 }
 
@@ -123,9 +102,7 @@ pub(crate) fn least_count_at(stretches: &[Stretch], distance: f64) -> Option<usi
     let slack = |stretch: &Stretch| 1e-9 * (stretch.to - stretch.from);
     stretches
         .iter()
-        .filter(|stretch| {
-            distance >= stretch.from - slack(stretch) && distance <= stretch.to + slack(stretch)
-        })
+        .filter(|stretch| distance >= stretch.from - slack(stretch) && distance <= stretch.to + slack(stretch))
         .map(|stretch| stretch.unstable_count)
         .min()
 }

@@ -12,10 +12,12 @@ pub(crate) const LEVEL: char = '\u{E003}';
 /// Raised characters are this much smaller: 6 pt beside 8 pt, the least that publishers allow.
 pub(crate) const RAISED_SIZE: f64 = 0.75;
 
+/// Fonts that stand in for Arial may be this much wider; whatever must not be cut or touched reckons with it.
+pub(crate) const STAND_IN: f64 = 1.17;
+
 /// Widths of the characters from space to `~` in thousandths of the font size.
 const WIDTHS: [u16; 95] = [
-    278, 278, 355, 556, 556, 889, 667, 191, 333, 333, 389, 584, 278, 333, 278,
-    278, // space to /
+    278, 278, 355, 556, 556, 889, 667, 191, 333, 333, 389, 584, 278, 333, 278, 278, // space to /
     556, 556, 556, 556, 556, 556, 556, 556, 556, 556, 278, 278, 584, 584, 584, 556, // 0 to ?
     1015, 667, 667, 722, 722, 667, 611, 778, 722, 278, 500, 667, 556, 833, 722, 778, // @ to O
     667, 778, 722, 667, 611, 722, 667, 944, 667, 667, 611, 278, 278, 278, 469, 556, // P to _
@@ -53,21 +55,10 @@ fn letter_width(letter: char) -> u16 {
 /// A text of the user without characters that XML forbids and without our own marks.
 pub(crate) fn clean(text: &str) -> String {
     let forbidden = |letter: char| {
-        letter.is_control()
-            || matches!(
-                letter,
-                SLANTED..=LEVEL | '\u{FFFE}' | '\u{FFFF}' | '\u{2028}' | '\u{2029}'
-            )
+        letter.is_control() || matches!(letter, SLANTED..=LEVEL | '\u{FFFE}' | '\u{FFFF}' | '\u{2028}' | '\u{2029}')
     };
-    let spaced: String = text
-        .chars()
-        .map(|letter| if letter.is_whitespace() { ' ' } else { letter })
-        .collect();
-    spaced
-        .trim()
-        .chars()
-        .filter(|letter| !forbidden(*letter))
-        .collect()
+    let spaced: String = text.chars().map(|letter| if letter.is_whitespace() { ' ' } else { letter }).collect();
+    spaced.trim().chars().filter(|letter| !forbidden(*letter)).collect()
 }
 
 /// The name of a quantity: a single letter stands slanted (ISO 80000-2: variables), words upright.
@@ -83,25 +74,17 @@ pub(crate) fn quantity(label: &str) -> String {
 /// A unit with its powers raised and a centred dot for a product: `m^3*s^-1`.
 pub(crate) fn unit(unit: &str) -> String {
     let mut out = String::new();
-    let mut letters = clean(unit)
-        .chars()
-        .collect::<Vec<_>>()
-        .into_iter()
-        .peekable();
+    let mut letters = clean(unit).chars().collect::<Vec<_>>().into_iter().peekable();
     while let Some(letter) = letters.next() {
         match letter {
             '^' => {
                 let mut power = String::new();
-                while let Some(digit) = letters
-                    .next_if(|next| next.is_ascii_digit() || (*next == '-' && power.is_empty()))
+                while let Some(digit) =
+                    letters.next_if(|next| next.is_ascii_digit() || (*next == '-' && power.is_empty()))
                 {
                     power.push(if digit == '-' { '\u{2212}' } else { digit });
                 }
-                if power.is_empty() {
-                    out.push('^')
-                } else {
-                    out.push_str(&raised(&power))
-                }
+                if power.is_empty() { out.push('^') } else { out.push_str(&raised(&power)) }
             }
             '*' => out.push('\u{B7}'),
             letter => out.push(letter),
@@ -119,17 +102,11 @@ pub(crate) fn shortened(text: &str, size: f64, room: f64) -> String {
     if width(text, size) <= room {
         return text.to_string();
     }
-    let letters: Vec<char> = text
-        .chars()
-        .filter(|letter| !matches!(*letter, SLANTED..=LEVEL))
-        .collect();
+    let letters: Vec<char> = text.chars().filter(|letter| !matches!(*letter, SLANTED..=LEVEL)).collect();
     for kept in (1..letters.len()).rev() {
         let (head, tail) = (kept / 2, kept - kept / 2);
-        let short: String = letters[..head]
-            .iter()
-            .chain(&['\u{2026}'])
-            .chain(&letters[letters.len() - tail..])
-            .collect();
+        let short: String =
+            letters[..head].iter().chain(&['\u{2026}']).chain(&letters[letters.len() - tail..]).collect();
         if width(&short, size) <= room {
             return short;
         }
@@ -139,11 +116,7 @@ pub(crate) fn shortened(text: &str, size: f64, room: f64) -> String {
 
 /// Name and unit on at most two lines; the name is shortened where even two are not enough.
 pub(crate) fn two_lines(name: &str, unit: &str, size: f64, room: f64) -> Vec<String> {
-    let whole = if unit.is_empty() {
-        name.to_string()
-    } else {
-        format!("{name} {unit}")
-    };
+    let whole = if unit.is_empty() { name.to_string() } else { format!("{name} {unit}") };
     if width(&whole, size) <= room {
         return vec![whole];
     }
@@ -234,24 +207,15 @@ mod tests {
                 "<tspan dy=\"-0.45em\" font-size=\"75%\">−1</tspan>"
             )
         );
-        assert_eq!(
-            marked_up(&quantity("τ")),
-            "<tspan font-style=\"italic\">τ</tspan>"
-        );
+        assert_eq!(marked_up(&quantity("τ")), "<tspan font-style=\"italic\">τ</tspan>");
         assert_eq!(quantity("flow"), "flow");
         assert_eq!(clean("a\u{0}b\u{E000}\nc"), "ab c");
     }
 
     #[test]
     fn long_lines_are_broken_then_shortened() {
-        assert_eq!(
-            two_lines("maximum of level", "(m)", 8.0, 200.0),
-            ["maximum of level (m)"]
-        );
-        assert_eq!(
-            two_lines("maximum of level", "(m)", 8.0, 50.0),
-            ["maximum", "of level (m)"]
-        );
+        assert_eq!(two_lines("maximum of level", "(m)", 8.0, 200.0), ["maximum of level (m)"]);
+        assert_eq!(two_lines("maximum of level", "(m)", 8.0, 50.0), ["maximum", "of level (m)"]);
         let room = 40.0;
         for line in two_lines("aVeryLongNameWithoutAnySpaceAtAll", "(kg/m)", 8.0, room) {
             assert!(width(&line, 8.0) <= room, "{line}");

@@ -70,9 +70,7 @@ impl Cycle {
         let length = path_length(&self.orbit);
         let last = times.len() - 1;
         let total = if length[last] > 0.0 { length[last] } else { 1.0 };
-        let share = |k: usize| {
-            BY_LENGTH * length[k] / total + BY_STEPS * k as f64 / last as f64 + BY_TIME * times[k]
-        };
+        let share = |k: usize| BY_LENGTH * length[k] / total + BY_STEPS * k as f64 / last as f64 + BY_TIME * times[k];
         let whole = share(last);
         let mut mesh = vec![0.0];
         let mut k = 0;
@@ -138,13 +136,14 @@ impl Recorder {
     }
 }
 
-/// Simulates from `start` until the `returns`-th return to `section`.
+/// Simulates from `start` until the return to `section` of the number asked for; none where that takes longer
+/// than the time given with it.
 pub(crate) fn record(
     integrator: &mut Integrator<'_>,
     section: Section,
     start: &Return,
-    returns: usize,
-) -> Result<(Profile, Return), FlowError> {
+    (returns, longest): (usize, f64),
+) -> Result<Option<(Profile, Return)>, FlowError> {
     integrator.restart(start.time, &start.state)?;
     let mut recorder = Recorder::new(start);
     let mut found = Vec::new();
@@ -155,10 +154,13 @@ pub(crate) fn record(
             recorder.add(integrator, (end.time, &end.state));
             break;
         }
+        if integrator.time() - start.time > longest {
+            return Ok(None);
+        }
         recorder.add(integrator, (integrator.time(), integrator.state()));
     }
     let end = found.swap_remove(returns - 1);
-    Ok((closed_profile(recorder, start, &end), end))
+    Ok(Some((closed_profile(recorder, start, &end), end)))
 }
 
 /// The recorded orbit in scaled time, its gap spread linearly over the period.

@@ -102,13 +102,7 @@ impl Explicit {
     }
 
     /// Prepares the dense output of the step just computed; `slope_end` are the rates at its end.
-    pub(crate) fn prepare_dense(
-        &mut self,
-        rates: &mut Rates<'_>,
-        from: StepFrom<'_>,
-        end: &[f64],
-        slope_end: &[f64],
-    ) {
+    pub(crate) fn prepare_dense(&mut self, rates: &mut Rates<'_>, from: StepFrom<'_>, end: &[f64], slope_end: &[f64]) {
         let n = self.n;
         self.k[STAGES * n..(STAGES + 1) * n].copy_from_slice(slope_end);
         for j in STAGES + 1..DENSE_STAGES {

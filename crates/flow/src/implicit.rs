@@ -5,15 +5,14 @@
 //! Unknowns are the increments z_i = x(t + c_i h) - x of the s stages, stage after stage:
 //! `z = h (A (x) I) F(x + z)`. They are found by Newton's method with the exact Jacobian at the beginning of
 //! the step, the whole s n x s n matrix `I - h A (x) J` factored once a step. Inside the step the solution
-//! is the collocation polynomial of degree s through x and the stages. All numbers of the method are
-//! computed at start-up from the nodes, the zeros of P_s - P_(s-1) on [-1, 1] moved to [0, 1].
+//! is the collocation polynomial of degree s through x and the stages.
 //! Cost: (s n)^3 a step, so this is meant for models of up to some dozens of states.
 
 use crate::explicit::StepFrom;
 use crate::lu::Lu;
+use crate::radau::{RadauTable, STAGES};
 use crate::rates::Rates;
 
-const STAGES: usize = 5;
 /// Newton iterations allowed; a step that needs more is better shortened.
 pub(crate) const NEWTON_LIMIT: usize = 10;
 /// The iteration stops when the error that it leaves is this part of the error allowed in a step.
@@ -31,12 +30,7 @@ pub(crate) enum Attempt {
 /// Workspace of the implicit method.
 #[derive(Clone)]
 pub(crate) struct Implicit {
-    c: [f64; STAGES],
-    a: [[f64; STAGES]; STAGES],
-    /// Weight of the rates at the beginning in the error estimate.
-    gamma: f64,
-    /// Weights of the increments in the error estimate.
-    error_weights: [f64; STAGES],
+    table: RadauTable,
     /// Barycentric weights of 0, c_1 … c_s.
     barycentric: [f64; STAGES + 1],
     n: usize,
@@ -53,18 +47,14 @@ pub(crate) struct Implicit {
 
 impl Implicit {
     pub(crate) fn new(n: usize) -> Self {
-        let c = nodes();
-        let (a, gamma, error_weights) = coefficients(&c);
-        let all: Vec<f64> = std::iter::once(0.0).chain(c).collect();
+        let table = RadauTable::new();
+        let all: Vec<f64> = std::iter::once(0.0).chain(table.c).collect();
         let weight = |j: usize| {
             let product: f64 = (0..=STAGES).filter(|&l| l != j).map(|l| all[j] - all[l]).product();
             1.0 / product
         };
         Self {
-            c,
-            a,
-            gamma,
-            error_weights,
+            table,
             barycentric: std::array::from_fn(weight),
             n,
             z: vec![0.0; STAGES * n],
@@ -117,7 +107,7 @@ impl Implicit {
         let ratio = from.step / self.step;
         let mut values = std::mem::take(&mut self.correction);
         for (i, chunk) in values.chunks_exact_mut(self.n).enumerate() {
-            self.dense(1.0 + self.c[i] * ratio, chunk);
+            self.dense(1.0 + self.table.c[i] * ratio, chunk);
             chunk.iter_mut().zip(from.state).for_each(|(value, x)| *value -= x);
         }
         std::mem::swap(&mut self.z, &mut values);
@@ -129,10 +119,10 @@ impl Implicit {
         self.newton.entries.fill(0.0);
         self.filter.entries.fill(0.0);
         for (row, column, value) in rates.entries() {
-            self.filter.entries[row * n + column] -= h * self.gamma * value;
+            self.filter.entries[row * n + column] -= h * self.table.gamma * value;
             for i in 0..STAGES {
                 for j in 0..STAGES {
-                    self.newton.entries[(i * n + row) * size + j * n + column] -= h * self.a[i][j] * value;
+                    self.newton.entries[(i * n + row) * size + j * n + column] -= h * self.table.a[i][j] * value;
                 }
             }
         }
@@ -151,7 +141,7 @@ impl Implicit {
                 for (l, point) in self.point.iter_mut().enumerate() {
                     *point = from.state[l] + self.z[i * n + l];
                 }
-                rates.at(from.time + self.c[i] * from.step, &self.point, &mut self.slopes[range]);
+                rates.at(from.time + self.table.c[i] * from.step, &self.point, &mut self.slopes[range]);
             }
             self.residual(from.step);
             self.newton.solve_in_place(&mut self.correction);
@@ -184,7 +174,7 @@ impl Implicit {
         let n = self.n;
         for i in 0..STAGES {
             for l in 0..n {
-                let sum: f64 = (0..STAGES).map(|j| self.a[i][j] * self.slopes[j * n + l]).sum();
+                let sum: f64 = (0..STAGES).map(|j| self.table.a[i][j] * self.slopes[j * n + l]).sum();
                 self.correction[i * n + l] = h * sum - self.z[i * n + l];
             }
         }
@@ -194,24 +184,26 @@ impl Implicit {
     /// are not overestimated (Hairer & Wanner, IV.8, formulas 8.17 to 8.20); filtered twice where the first
     /// answer would reject the step.
     fn error(&mut self, rates: &mut Rates<'_>, from: StepFrom<'_>, weights: &[f64]) -> f64 {
-        let first = self.filtered_error(from.step, from.slope, weights);
+        self.point.copy_from_slice(from.slope);
+        let first = self.filtered_error(from.step, weights);
         if first < 1.0 {
             return first;
         }
         for (l, point) in self.point.iter_mut().enumerate() {
             *point = from.state[l] + self.correction[l];
         }
-        let (slope, _) = self.slopes.split_at_mut(self.n);
+        let slope = &mut self.slopes[..self.n];
         rates.at(from.time, &self.point, slope);
-        let slope = self.slopes[..self.n].to_vec();
-        self.filtered_error(from.step, &slope, weights)
+        self.point.copy_from_slice(slope);
+        self.filtered_error(from.step, weights)
     }
 
-    fn filtered_error(&mut self, h: f64, slope: &[f64], weights: &[f64]) -> f64 {
+    /// The filtered estimate with the rates at the beginning as they stand in `point`.
+    fn filtered_error(&mut self, h: f64, weights: &[f64]) -> f64 {
         let n = self.n;
-        for (l, slope) in slope.iter().enumerate() {
-            let sum: f64 = (0..STAGES).map(|i| self.error_weights[i] * self.z[i * n + l]).sum();
-            self.correction[l] = h * self.gamma * slope + sum;
+        for (l, slope) in self.point.iter().enumerate() {
+            let sum: f64 = (0..STAGES).map(|i| self.table.error_weights[i] * self.z[i * n + l]).sum();
+            self.correction[l] = h * self.table.gamma * slope + sum;
         }
         self.filter.solve_in_place(&mut self.correction[..n]);
         let squares = self.correction[..n].iter().zip(weights).map(|(value, weight)| (value / weight).powi(2));
@@ -225,14 +217,14 @@ impl Implicit {
         if theta == 0.0 {
             return;
         }
-        if let Some(i) = self.c.iter().position(|&c| c == theta) {
+        if let Some(i) = self.table.c.iter().position(|&c| c == theta) {
             out.iter_mut().zip(&self.z[i * n..]).for_each(|(value, z)| *value += z);
             return;
         }
         let mut weights = [0.0; STAGES + 1];
         weights[0] = self.barycentric[0] / theta;
         for i in 0..STAGES {
-            weights[i + 1] = self.barycentric[i + 1] / (theta - self.c[i]);
+            weights[i + 1] = self.barycentric[i + 1] / (theta - self.table.c[i]);
         }
         let total: f64 = weights.iter().sum();
         for i in 0..STAGES {
@@ -242,86 +234,11 @@ impl Implicit {
     }
 }
 
-/// The right Radau nodes on [0, 1], ascending, the last exactly 1.
-fn nodes() -> [f64; STAGES] {
-    // Value of P_s - P_(s-1) by the three-term recurrence.
-    let value = |x: f64| {
-        let (mut before, mut here) = (1.0, x);
-        for k in 2..=STAGES {
-            let next = ((2 * k - 1) as f64 * x * here - (k - 1) as f64 * before) / k as f64;
-            (before, here) = (here, next);
-        }
-        here - before
-    };
-    // Cells finer than the smallest gap between zeros; the zero at 1 is known and left out.
-    const CELLS: usize = 64;
-    let mut c = [1.0; STAGES];
-    let mut found = 0;
-    for cell in 0..CELLS {
-        let place = |k: usize| -1.0 + 1.99 * k as f64 / CELLS as f64;
-        let (mut low, mut high) = (place(cell), place(cell + 1));
-        if value(low) * value(high) > 0.0 || found == STAGES - 1 {
-            continue;
-        }
-        // Halving to the last bit.
-        for _ in 0..60 {
-            let middle = 0.5 * (low + high);
-            if value(low) * value(middle) <= 0.0 { high = middle } else { low = middle }
-        }
-        c[found] = 0.5 * (1.0 + 0.5 * (low + high));
-        found += 1;
-    }
-    c
-}
-
-/// The matrix A, gamma and the error weights that belong to the nodes.
-fn coefficients(c: &[f64; STAGES]) -> ([[f64; STAGES]; STAGES], f64, [f64; STAGES]) {
-    // Row q of the transposed Vandermonde matrix: Sum_j w_j c_j^q = right side q, for q = 0 … s-1.
-    let mut moments = Lu::new(STAGES);
-    for q in 0..STAGES {
-        for j in 0..STAGES {
-            moments.entries[q * STAGES + j] = c[j].powi(q as i32);
-        }
-    }
-    assert!(moments.factor(), "the nodes are distinct");
-    let a: [[f64; STAGES]; STAGES] = std::array::from_fn(|i| {
-        let mut row: [f64; STAGES] = std::array::from_fn(|q| c[i].powi(q as i32 + 1) / (q + 1) as f64);
-        moments.solve_in_place(&mut row);
-        row
-    });
-    let mut transposed = Lu::new(STAGES);
-    for i in 0..STAGES {
-        for j in 0..STAGES {
-            transposed.entries[j * STAGES + i] = a[i][j];
-        }
-    }
-    assert!(transposed.factor(), "the matrix of the method is regular");
-    // Any positive gamma gives order s; the mean size of the eigenvalues of A filters as the method does.
-    let gamma = transposed.mean_size();
-    // Weights of the embedded solution less those of the method: all moments agree but for gamma in the
-    // first, so the difference solves the moment equations with right side (-gamma, 0, …, 0).
-    let mut difference = [0.0; STAGES];
-    difference[0] = -gamma;
-    moments.solve_in_place(&mut difference);
-    // From slopes to increments: h k = A^-1 z.
-    transposed.solve_in_place(&mut difference);
-    (a, gamma, difference)
-}
-
 #[cfg(test)]
 mod tests {
-    use super::{Attempt, Implicit, StepFrom, nodes};
+    use super::{Attempt, Implicit, StepFrom};
     use crate::rates::Rates;
     use crate::test_models::rotation;
-
-    /// Nodes of the five-stage method by Hairer & Wanner's program, from memory; and exact: a Radau rule
-    /// of s nodes has Sum c_i = s^2 / (2 s - 1) (Vieta on the node polynomial).
-    #[test]
-    fn nodes_are_those_of_radau() {
-        let c = nodes();
-        assert!((c[0] - 0.057_104_196_114_518).abs() < 1e-14 && c[4] == 1.0, "{c:?}");
-        assert!((c.iter().sum::<f64>() - 25.0 / 9.0).abs() < 1e-14);
-    }
 
     /// Exact solution cos, sin. Local orders: 10 at the end, 6 inside, 6 of the error estimate.
     #[test]

@@ -298,9 +298,7 @@ impl<'a> Integrator<'a> {
 
     fn check_bound(&self) -> Result<(), FlowError> {
         match self.state.iter().position(|value| value.abs() > self.limits.bound) {
-            Some(state_index) => {
-                Err(FlowError::Diverges { state_index, time: self.time, state: self.state.clone() })
-            }
+            Some(state_index) => Err(FlowError::Diverges { state_index, time: self.time, state: self.state.clone() }),
             None => Ok(()),
         }
     }
@@ -325,7 +323,15 @@ impl<'a> Integrator<'a> {
                         // A slow iteration makes the next step shorter, as in the book of the method.
                         let limit = (2 * NEWTON_LIMIT) as f64;
                         let slow = (limit + iterations as f64) / (limit + 1.0);
-                        (error * if error <= 1.0 { slow.powf(IMPLICIT_ORDER).min(1.0 / error.max(1e-300)) } else { 1.0 }, IMPLICIT_ORDER)
+                        (
+                            error
+                                * if error <= 1.0 {
+                                    slow.powf(IMPLICIT_ORDER).min(1.0 / error.max(1e-300))
+                                } else {
+                                    1.0
+                                },
+                            IMPLICIT_ORDER,
+                        )
                     }
                     Attempt::NoConvergence => (f64::INFINITY, IMPLICIT_ORDER),
                 }
@@ -389,16 +395,12 @@ impl<'a> Integrator<'a> {
             *end = self.state[i] + trial * self.slope[i];
         }
         self.rates.at(self.time + trial, &self.end, &mut self.end_slope);
-        let change: f64 = (0..self.state.len())
-            .map(|i| ((self.end_slope[i] - self.slope[i]) / self.weights[i]).powi(2))
-            .sum::<f64>();
+        let change: f64 =
+            (0..self.state.len()).map(|i| ((self.end_slope[i] - self.slope[i]) / self.weights[i]).powi(2)).sum::<f64>();
         let curvature = (change / n).sqrt() / trial;
         let largest = slope_size.max(curvature);
-        let by_order = if largest > 1e-15 && largest.is_finite() {
-            (0.01 / largest).powf(1.0 / EXPLICIT_ORDER)
-        } else {
-            trial
-        };
+        let by_order =
+            if largest > 1e-15 && largest.is_finite() { (0.01 / largest).powf(1.0 / EXPLICIT_ORDER) } else { trial };
         (100.0 * trial).min(by_order)
     }
 }

@@ -42,8 +42,9 @@ const PATIENCE: f64 = 40.0;
 /// this parallel: it then lands within about a fifth of the distance that was left.
 const STEADY: f64 = 0.2;
 const PARALLEL: f64 = 0.99;
-/// A leap begins only this near (relative to the range), where the return map is nearly linear.
-const LEAP_WITHIN: f64 = 0.05;
+/// A leap goes no farther than this (relative to the range). The return map need not be linear over that
+/// distance: the next leap starts from much nearer.
+const LEAP_WITHIN: f64 = 0.3;
 
 /// The returns so far with the scale of each state.
 pub(crate) struct Sequence<'a> {
@@ -123,9 +124,8 @@ impl Sequence<'_> {
         let ratios = || (begin..=last - 2 * k).map(|i| self.ratio(i, k));
         let rho = self.ratio(last - 2 * k, k).0;
         let distance = self.distance(last - k, k);
-        let steady = ratios().all(|(ratio, cosine)| {
-            (ratio - rho).abs() <= STEADY * (1.0 - rho.abs()) && cosine.abs() >= PARALLEL
-        });
+        let steady = ratios()
+            .all(|(ratio, cosine)| (ratio - rho).abs() <= STEADY * (1.0 - rho.abs()) && cosine.abs() >= PARALLEL);
         let left = distance * rho.abs() / (1.0 - rho);
         let wait = (left / tolerance).ln() / -rho.abs().ln() * k as f64;
         if !steady || rho.abs() >= 1.0 || !(distance.max(left) <= LEAP_WITHIN) || wait <= PATIENCE {

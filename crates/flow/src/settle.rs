@@ -7,87 +7,28 @@
 //! period. Errors allowed in a step follow the range of each state over the last window, so that nothing
 //! depends on units. What is given as the transient is simulated first and looks at nothing but ranges.
 
-use std::sync::atomic::AtomicBool;
-
 use armilla_model::VectorField;
 
 use crate::cycle::{Cycle, record, turns};
 use crate::equilibrium::{Equilibrium, newton};
 use crate::error::FlowError;
-use crate::integrator::{Integrator, Limits, Stats, Tolerance, check_length};
+use crate::integrator::{Integrator, Limits, Tolerance, check_length};
+use crate::judge::{self, Kind};
 use crate::observe::Observation;
-use crate::returns::{Closing, NearReturn, Sequence};
+use crate::options::SettleOptions;
+use crate::returns::{Closing, Sequence};
 use crate::section::{Return, Section};
+use crate::verdict::{Evidence, Limit, Push, Settled, Verdict};
 
-/// How to settle.
-#[derive(Clone, Copy, Debug)]
-pub struct SettleOptions<'a> {
-    /// Time that is simulated before anything is judged; chosen by the run itself where absent.
-    pub transient: Option<f64>,
-    /// Distance, relative to the range of each state, within which returns count as closed. Default 1e-9.
-    pub tolerance: f64,
-    /// Longest time simulated in all; no limit but the others where absent.
-    pub longest_time: Option<f64>,
-    /// Steps allowed in all. Default 2 million, some seconds for a small model.
-    pub steps: usize,
-    /// Returns watched in all before the motion counts as not settled. Default 4000.
-    pub returns: usize,
-    /// Period of the forcing; needed where the rates use the time.
-    pub forcing_period: Option<f64>,
-    /// Stops the run when set.
-    pub abort: &'a AtomicBool,
-}
-
-static NEVER: AtomicBool = AtomicBool::new(false);
-
-impl Default for SettleOptions<'static> {
-    fn default() -> Self {
-        Self {
-            transient: None,
-            tolerance: 1e-9,
-            longest_time: None,
-            steps: 2_000_000,
-            returns: 4000,
-            forcing_period: None,
-            abort: &NEVER,
-        }
-    }
-}
-
-impl SettleOptions<'_> {
-    fn validate(&self, forced: bool) -> Result<(), FlowError> {
-        let positive = |name, value: Option<f64>| match value {
-            Some(value) if !(value.is_finite() && value > 0.0) => {
-                Err(FlowError::Setting { name, value, allowed: "finite and positive" })
-            }
-            _ => Ok(()),
-        };
-        positive("the longest time", self.longest_time)?;
-        positive("the forcing period", self.forcing_period)?;
-        if let Some(value) = self.transient.filter(|value| !(value.is_finite() && *value >= 0.0)) {
-            return Err(FlowError::Setting { name: "the transient", value, allowed: "finite and not negative" });
-        }
-        let value = self.tolerance;
-        if !(TIGHTEST..=LOOSEST).contains(&value) {
-            let allowed = "between 1e-11 and 1e-3";
-            return Err(FlowError::Setting { name: "the tolerance of settling", value, allowed });
-        }
-        if forced && self.forcing_period.is_none() {
-            return Err(FlowError::ForcingPeriodMissing);
-        }
-        Ok(())
-    }
-}
-
-/// Accepted tolerances: tighter ones drown in the roundoff of the steps, looser ones confuse motions.
-const TIGHTEST: f64 = 1e-11;
-const LOOSEST: f64 = 1e-3;
 /// Part of the tolerance of settling that a step may err by: errors of a whole turn then stay below it.
 const STEP_PART: f64 = 0.01;
 /// Least error allowed in a step relative to the state itself, some hundred units in the last place.
 const ROUNDOFF: f64 = 1e-13;
-/// A state that grows by this factor beyond all that was seen at the start is taken for divergent.
-const BOUND: f64 = 1e15;
+/// A state whose range is below this part of its size does not move: what is seen of it is roundoff.
+const MOVES: f64 = 1e-10;
+/// A state that grows by this factor beyond all states at the start is taken for divergent: far more than
+/// units can differ by, and reached soon where growth is exponential.
+const BOUND: f64 = 1e30;
 /// Steps in the first window; the windows then double.
 const FIRST_STEPS: usize = 20;
 /// A window with fewer returns than this is doubled; one with more than `MANY` ends early.
@@ -114,75 +55,6 @@ const LEAPS: usize = 12;
 /// Returns kept.
 const KEPT: usize = 1024;
 
-/// What a simulation settled on.
-#[derive(Clone, Debug)]
-#[non_exhaustive]
-pub enum Verdict {
-    /// A state of rest that attracts.
-    Equilibrium(Equilibrium),
-    /// A cycle.
-    Cycle(Box<Cycle>),
-    /// Neither, within the limits.
-    NotSettled(Evidence),
-}
-
-/// Which limit ended a run that did not settle.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-#[non_exhaustive]
-pub enum Limit {
-    /// The longest time.
-    Time,
-    /// The steps.
-    Steps,
-    /// The returns.
-    Returns,
-}
-
-/// What was seen of a motion that did not settle.
-#[derive(Clone, Debug, PartialEq)]
-pub struct Evidence {
-    /// The limit that was reached.
-    pub limit: Limit,
-    /// Time simulated.
-    pub time: f64,
-    /// Length of the last window, to which `ranges` belong.
-    pub window: f64,
-    /// Smallest and largest value of each state over the last window.
-    pub ranges: Vec<(f64, f64)>,
-    /// The section, where one was found.
-    pub section: Option<Section>,
-    /// Returns watched in all.
-    pub returns: usize,
-    /// Mean time between the returns watched last.
-    pub return_time: Option<f64>,
-    /// The nearest return among the last ones.
-    pub nearest: Option<NearReturn>,
-}
-
-/// An unstable state of rest that the motion sat on until it was pushed.
-#[derive(Clone, Debug, PartialEq)]
-pub struct Push {
-    /// When.
-    pub time: f64,
-    /// The state of rest.
-    pub equilibrium: Equilibrium,
-    /// Largest change made to a state.
-    pub size: f64,
-}
-
-/// The outcome of [`settle`].
-#[derive(Clone, Debug)]
-pub struct Settled {
-    /// What it settled on.
-    pub verdict: Verdict,
-    /// Pushes that were needed to leave unstable states of rest; a caller should say so.
-    pub pushes: Vec<Push>,
-    /// Time simulated.
-    pub time: f64,
-    /// What it cost.
-    pub stats: Stats,
-}
-
 /// Simulates `field` from `state` at time 0 until it settles.
 ///
 /// # Errors
@@ -199,9 +71,13 @@ pub fn settle(
     let largest = state.iter().fold(0.0, |largest: f64, x| largest.max(x.abs()));
     let size = if largest > 0.0 { largest } else { 1.0 };
     let limits = Limits { steps: options.steps, abort: options.abort, bound: BOUND * size };
-    let scale = size * STEP_PART * options.tolerance;
-    let tolerance = Tolerance::uniform(state.len(), STEP_PART * options.tolerance, scale);
-    let integrator = Integrator::new(field, parameters, (0.0, state), tolerance, limits)?;
+    let part = STEP_PART * options.tolerance;
+    let loose = Tolerance::uniform(state.len(), part, part * size);
+    let mut integrator = Integrator::new(field, parameters, (0.0, state), loose, limits)?;
+    let sizes = first_sizes(state, integrator.slope());
+    let absolute = sizes.iter().map(|size| part * size).collect();
+    integrator.set_tolerance(Tolerance { absolute, relative: vec![part; state.len()] })?;
+    integrator.restart(0.0, state)?;
     let mut settling = Settling::new(integrator, options);
     let verdict = settling.run()?;
     Ok(Settled {
@@ -210,6 +86,16 @@ pub fn settle(
         stats: settling.integrator.stats(),
         pushes: settling.pushes,
     })
+}
+
+/// Sizes of the states before anything was simulated: their values, and for a state that starts at zero what
+/// its rate makes of it in the shortest time in which another state changes.
+fn first_sizes(state: &[f64], slope: &[f64]) -> Vec<f64> {
+    let times = state.iter().zip(slope).filter(|(x, f)| **x != 0.0 && **f != 0.0).map(|(x, f)| (x / f).abs());
+    let time = times.fold(f64::INFINITY, f64::min);
+    let time = if time.is_finite() { time } else { 1.0 };
+    let size = |(x, f): (&f64, &f64)| if *x != 0.0 { x.abs() } else { f.abs() * time };
+    filled(state.iter().zip(slope).map(size).collect(), 1.0)
 }
 
 /// A run of settling between two windows.
@@ -272,7 +158,7 @@ impl<'a, 'b> Settling<'a, 'b> {
                 return Ok(Verdict::Cycle(Box::new(cycle)));
             }
             if let Some(limit) = self.limit() {
-                return Ok(Verdict::NotSettled(self.evidence(limit)));
+                return self.judge(limit);
             }
             self.renew()?;
             self.watch()?;
@@ -388,7 +274,7 @@ impl<'a, 'b> Settling<'a, 'b> {
     fn scale(&self) -> Vec<f64> {
         let one = |i: usize| {
             let range = self.seen.range(i);
-            if range > ROUNDOFF * self.seen.magnitude(i) { range } else { f64::INFINITY }
+            if range > MOVES * self.seen.magnitude(i) { range } else { f64::INFINITY }
         };
         (0..self.largest.len()).map(one).collect()
     }
@@ -396,6 +282,9 @@ impl<'a, 'b> Settling<'a, 'b> {
     fn cycle(&mut self) -> Result<Option<Cycle>, FlowError> {
         let Some(section) = self.section else { return Ok(None) };
         let scale = self.scale();
+        if matches!(section, Section::Level { state_index, .. } if scale[state_index].is_infinite()) {
+            return Ok(None);
+        }
         let sequence = Sequence { returns: &self.returns, scale: &scale };
         match sequence.closing(self.options.tolerance) {
             Closing::Closed { returns, contraction, .. } => {
@@ -431,7 +320,14 @@ impl<'a, 'b> Settling<'a, 'b> {
     ) -> Result<Option<Cycle>, FlowError> {
         /// A recorded period may miss by this many tolerances: it is simulated with steps of its own.
         const MISS: f64 = 10.0;
-        let (orbit, end) = record(&mut self.integrator, section, start, returns)?;
+        /// A period that lasts this many times longer than the one before it is none.
+        const LONGER: f64 = 2.0;
+        let before = &self.returns[self.returns.len() - 1 - returns];
+        let longest = LONGER * (start.time - before.time);
+        let Some((orbit, end)) = record(&mut self.integrator, section, start, (returns, longest))? else {
+            self.returns.clear();
+            return Ok(None);
+        };
         let ranges: Vec<f64> = orbit.extremes().iter().map(|(low, high)| high - low).collect();
         let miss = |i: usize| {
             let gap = (end.state[i] - start.state[i]).abs();
@@ -525,6 +421,27 @@ impl<'a, 'b> Settling<'a, 'b> {
         Ok(())
     }
 
+    /// The kind of a motion that has had all its returns without closing.
+    fn judge(&mut self, limit: Limit) -> Result<Verdict, FlowError> {
+        let (Some(section), Limit::Returns) = (self.section, limit) else {
+            return Ok(Verdict::NotSettled(self.evidence(limit)));
+        };
+        let scale = self.scale();
+        self.returns.clear();
+        let exponent = judge::exponent(&mut self.integrator, section, &scale, &mut self.returns)?;
+        self.all_returns += self.returns.len();
+        let mut evidence = self.evidence(limit);
+        evidence.exponent = exponent;
+        let (Some(exponent), Some(nearest)) = (exponent, evidence.nearest) else {
+            return Ok(Verdict::NotSettled(evidence));
+        };
+        Ok(match judge::kind(exponent, nearest.distance, &self.returns, &scale) {
+            Kind::QuasiPeriodic => Verdict::QuasiPeriodic(evidence),
+            Kind::Irregular => Verdict::Irregular(evidence),
+            Kind::Undecided => Verdict::NotSettled(evidence),
+        })
+    }
+
     fn evidence(&self, limit: Limit) -> Evidence {
         let scale = self.scale();
         let return_time = match self.returns.as_slice() {
@@ -540,6 +457,7 @@ impl<'a, 'b> Settling<'a, 'b> {
             returns: self.all_returns,
             return_time,
             nearest: Sequence { returns: &self.returns, scale: &scale }.nearest(),
+            exponent: None,
         }
     }
 }
@@ -554,125 +472,4 @@ fn filled(mut sizes: Vec<f64>, fallback: f64) -> Vec<f64> {
     let fill = if largest > 0.0 { largest } else { fallback };
     sizes.iter_mut().filter(|size| **size == 0.0).for_each(|size| *size = fill);
     sizes
-}
-
-#[cfg(test)]
-mod tests {
-    use super::*;
-    use crate::test_models::{TestField, hopf_with_shear, roessler, torus_case, van_der_pol};
-
-    fn run(field: &TestField, parameters: &[f64], state: &[f64]) -> Settled {
-        let begin = std::time::Instant::now();
-        let settled = settle(field, parameters, state, &SettleOptions::default()).expect("it can be simulated");
-        println!("{parameters:?}: {:?} time {} {:?}", begin.elapsed(), settled.time, settled.stats);
-        match &settled.verdict {
-            Verdict::Cycle(c) => println!("  cycle T {} turns {} distance {:e} contraction {:?} steps {}", c.period(), c.turns, c.distance, c.contraction, c.orbit.intervals()),
-            other => println!("  {other:?}"),
-        }
-        settled
-    }
-
-    fn cycle(field: &TestField, parameters: &[f64], state: &[f64]) -> Cycle {
-        match run(field, parameters, state).verdict {
-            Verdict::Cycle(cycle) => *cycle,
-            other => panic!("{parameters:?}: {other:?}"),
-        }
-    }
-
-    fn close(found: f64, exact: f64, tolerance: f64) {
-        assert!((found / exact - 1.0).abs() < tolerance, "{found} for {exact}");
-    }
-
-    /// Exact: period 2 pi/(1 + k mu), radius sqrt(mu).
-    #[test]
-    fn hopf_with_shear_settles_on_its_circle() {
-        let cycle = cycle(&hopf_with_shear(), &[0.25, 0.5], &[1.0, 0.3]);
-        close(cycle.period(), 5.585_053_606_381_854_6, 1e-10);
-        assert_eq!(cycle.turns, 1);
-        let profile = cycle.profile(4, 40);
-        profile.validate().expect("a valid profile");
-        let radius = |t: f64| profile.at(t).iter().map(|x| x * x).sum::<f64>().sqrt();
-        let worst = (0..100).map(|k| (radius(k as f64 / 100.0) - 0.5).abs()).fold(0.0, f64::max);
-        assert!(worst < 1e-6, "interpolation of degree 4 on 40 pieces is good to 1e-7: {worst}");
-    }
-
-    /// Periods computed independently with 113 bits by single shooting; from rest at 0 nearly, too.
-    #[test]
-    fn van_der_pol_periods() {
-        let field = van_der_pol();
-        for (mu, period) in
-            [(0.1, 6.287_111_272_288_726_8), (1.0, 6.663_286_859_323_130_2), (5.0, 11.612_230_667_719_57)]
-        {
-            let cycle = cycle(&field, &[mu], &[0.5, 0.0]);
-            close(cycle.period(), period, 1e-9);
-            assert_eq!(cycle.turns, 1);
-        }
-    }
-
-    /// The same source; large amplitude quotient of time scales, about mu^2 = 1e6.
-    #[test]
-    fn stiff_van_der_pol_periods() {
-        let field = van_der_pol();
-        for (mu, period) in [(100.0, 162.837_071_092_370_02), (1000.0, 1_614.401_125_808_334)] {
-            let cycle = cycle(&field, &[mu], &[2.0, 0.0]);
-            close(cycle.period(), period, 1e-9);
-            assert_eq!(cycle.turns, 1);
-        }
-    }
-
-    /// Period at c = 1 computed independently with 113 bits; numbers of turns: common knowledge of the
-    /// doubling sequence (first below 3, second below 4) and of the three-turn window above 5.
-    #[test]
-    fn roessler_turns() {
-        let field = roessler();
-        let start = [1.0, 1.0, 0.0];
-        close(cycle(&field, &[0.2, 0.2, 1.0], &start).period(), 5.541_660_322_289_143, 1e-9);
-        for (c, turns) in [(2.0, 1), (3.5, 2), (4.0, 4), (5.25, 3)] {
-            assert_eq!(cycle(&field, &[0.2, 0.2, c], &start).turns, turns, "c = {c}");
-        }
-    }
-
-    /// Roessler's first attractor (1976, Phys. Lett. 57A:397) at c = 5.7 is chaotic.
-    #[test]
-    fn chaos_does_not_settle() {
-        let Verdict::NotSettled(evidence) = run(&roessler(), &[0.2, 0.2, 5.7], &[1.0, 1.0, 0.0]).verdict else {
-            panic!("it must not settle")
-        };
-        assert_eq!(evidence.limit, Limit::Returns);
-        assert!(evidence.nearest.expect("there are returns").distance > 1e-7);
-    }
-
-    /// Exact: torus threshold at lam = 2; below it the cycle attracts with T = 8 pi, above a torus does.
-    #[test]
-    fn the_torus_case_on_both_sides() {
-        let field = torus_case();
-        let below = cycle(&field, &[1.95], &[0.6, 0.0, 1.2]);
-        close(below.period(), 8.0 * std::f64::consts::PI, 1e-9);
-        for lam in [2.003, 2.01] {
-            let settled = run(&field, &[lam], &[0.6, 0.0, 1.2]);
-            assert!(matches!(settled.verdict, Verdict::NotSettled(_)), "lam = {lam}");
-        }
-    }
-
-    /// Exact: eigenvalues mu ± i of the rest at 0; slow spirals included.
-    #[test]
-    fn spirals_go_to_rest() {
-        for mu in [-0.5, -1e-2, -1e-3] {
-            let settled = run(&hopf_with_shear(), &[mu, 0.5], &[0.3, 0.1]);
-            let Verdict::Equilibrium(rest) = settled.verdict else { panic!("mu = {mu}") };
-            assert!(rest.state.iter().all(|x| x.abs() < 1e-12), "{rest:?}");
-            assert!((rest.growth() - mu).abs() < 1e-12);
-            assert!(settled.pushes.is_empty());
-        }
-    }
-
-    /// A start exactly at the unstable rest of van der Pol's equation is pushed off it, and that is said.
-    #[test]
-    fn a_start_on_an_unstable_rest_is_pushed_and_reported() {
-        let settled = run(&van_der_pol(), &[1.0], &[0.0, 0.0]);
-        let Verdict::Cycle(cycle) = &settled.verdict else { panic!("it settles on the cycle") };
-        close(cycle.period(), 6.663_286_859_323_130_2, 1e-9);
-        assert_eq!(settled.pushes.len(), 1);
-        assert!((settled.pushes[0].equilibrium.growth() - 0.5).abs() < 1e-12);
-    }
 }

@@ -125,3 +125,89 @@ pub(crate) fn torus_case() -> TestField {
         j.copy_from_slice(&[g, -C, x * dg, C, g, y * dg, -2.0 * x, -2.0 * y, lam - 2.0 * z]);
     })
 }
+
+/// x' = y, y' = -delta y - x - beta x^3 + gamma cos(omega t), parameters delta, beta, gamma, omega.
+pub(crate) fn duffing() -> TestField {
+    TestField::new(2, 4, |t, x, p, f, j| {
+        f.copy_from_slice(&[x[1], -p[0] * x[1] - x[0] - p[1] * x[0].powi(3) + p[2] * (p[3] * t).cos()]);
+        j.copy_from_slice(&[0.0, 1.0, -1.0 - 3.0 * p[1] * x[0] * x[0], -p[0]]);
+    })
+    .forced()
+}
+
+/// van der Pol at mu = 1 with x = p2 + p0 u, y = p1 v.
+pub(crate) fn scaled_van_der_pol() -> TestField {
+    TestField::new(2, 3, |_, x, p, f, j| {
+        let (u, v) = ((x[0] - p[2]) / p[0], x[1] / p[1]);
+        f.copy_from_slice(&[p[0] * v, p[1] * ((1.0 - u * u) * v - u)]);
+        j.copy_from_slice(&[0.0, p[0] / p[1], p[1] / p[0] * (-2.0 * u * v - 1.0), 1.0 - u * u]);
+    })
+}
+
+/// Lorenz, parameters sigma, r, b.
+pub(crate) fn lorenz() -> TestField {
+    TestField::new(3, 3, |_, x, p, f, j| {
+        f.copy_from_slice(&[p[0] * (x[1] - x[0]), x[0] * (p[1] - x[2]) - x[1], x[0] * x[1] - p[2] * x[2]]);
+        j.copy_from_slice(&[-p[0], p[0], 0.0, p[1] - x[2], -1.0, -x[0], x[1], x[0], -p[2]]);
+    })
+}
+
+/// x' = A - (B + 1) x + x^2 y, y' = B x - x^2 y, parameters A, B.
+pub(crate) fn common_brusselator() -> TestField {
+    TestField::new(2, 2, |_, s, p, f, j| {
+        let (x, y) = (s[0], s[1]);
+        f.copy_from_slice(&[p[0] - (p[1] + 1.0) * x + x * x * y, p[1] * x - x * x * y]);
+        j.copy_from_slice(&[-(p[1] + 1.0) + 2.0 * x * y, x * x, p[1] - 2.0 * x * y, -x * x]);
+    })
+}
+
+/// u' = k4 (v - u)(al + u^2) - k6 u, v' = k1 - k6 u, parameters k1, k4, al, k6.
+pub(crate) fn tyson() -> TestField {
+    TestField::new(2, 4, |_, s, p, f, j| {
+        let (u, v) = (s[0], s[1]);
+        let autocatalysis = p[2] + u * u;
+        f.copy_from_slice(&[p[1] * (v - u) * autocatalysis - p[3] * u, p[0] - p[3] * u]);
+        j[0] = -p[1] * autocatalysis + 2.0 * p[1] * (v - u) * u - p[3];
+        j[1] = p[1] * autocatalysis;
+        j[2] = -p[3];
+        j[3] = 0.0;
+    })
+}
+
+/// Hx = x^3 - x, H = y^2/2 - x^2/2 + x^4/4, x' = y - eps Hx (H - h), y' = -Hx - eps y (H - h); parameters eps, h.
+pub(crate) fn saddle_loop() -> TestField {
+    TestField::new(2, 2, |_, s, p, f, j| {
+        let (x, y, eps) = (s[0], s[1], p[0]);
+        let (hx, hxx) = (x * x * x - x, 3.0 * x * x - 1.0);
+        let d = y * y / 2.0 - x * x / 2.0 + x.powi(4) / 4.0 - p[1];
+        f.copy_from_slice(&[y - eps * hx * d, -hx - eps * y * d]);
+        j[0] = -eps * (hxx * d + hx * hx);
+        j[1] = 1.0 - eps * hx * y;
+        j[2] = -hxx - eps * y * hx;
+        j[3] = -eps * (d + y * y);
+    })
+}
+
+/// x_i' = Sum a_ij x_j + Sum b_ijk x_j x_k - x_i |x|^2 with parameters a (n n numbers), then b (n n n numbers): the
+/// last term keeps every motion bounded.
+pub(crate) fn random_quadratic(n: usize) -> TestField {
+    TestField::new(n, n * n + n * n * n, |_, x, p, f, j| {
+        let n = x.len();
+        let square: f64 = x.iter().map(|x| x * x).sum();
+        for i in 0..n {
+            f[i] = -x[i] * square;
+            for l in 0..n {
+                j[i * n + l] = p[i * n + l] - 2.0 * x[i] * x[l];
+                f[i] += p[i * n + l] * x[l];
+                for k in 0..n {
+                    let b = p[n * n + (i * n + l) * n + k];
+                    f[i] += b * x[l] * x[k];
+                    j[i * n + l] += b * x[k];
+                    // The other factor's derivative is added where its index comes by.
+                    j[i * n + l] += p[n * n + (i * n + k) * n + l] * x[k];
+                }
+            }
+            j[i * n + i] -= square;
+        }
+    })
+}

@@ -21,10 +21,7 @@ const BUFFER: usize = 1 << 16;
 ///
 /// # Errors
 /// What the operating system refused; then the file is as it was before.
-pub fn write_atomic(
-    path: &Path,
-    fill: impl FnOnce(&mut dyn Write) -> io::Result<()>,
-) -> Result<(), RecordError> {
+pub fn write_atomic(path: &Path, fill: impl FnOnce(&mut dyn Write) -> io::Result<()>) -> Result<(), RecordError> {
     let fault = |source| RecordError::from_io(path, Attempt::Write, source);
     let folder = match path.parent() {
         Some(parent) if !parent.as_os_str().is_empty() => parent,

@@ -25,9 +25,7 @@ pub const BRANCH_FORMAT: u32 = 1;
 pub fn write_branch_file(path: &Path, branch: &Branch) -> Result<(), RecordError> {
     check_branch(branch).map_err(|what| RecordError::inconsistent(path, what))?;
     write_atomic(path, |out| {
-        write_sealed(out, &head(WHAT, BRANCH_FORMAT), |out| {
-            branch_text(&mut Pen::new(out, Layout::Lines), branch)
-        })
+        write_sealed(out, &head(WHAT, BRANCH_FORMAT), |out| branch_text(&mut Pen::new(out, Layout::Lines), branch))
     })
 }
 
@@ -221,12 +219,7 @@ fn point_text(pen: &mut Pen<'_>, point: &Point) -> io::Result<()> {
     )?;
     measures(
         pen,
-        [
-            ("maxima", &point.maxima),
-            ("minima", &point.minima),
-            ("means", &point.means),
-            ("spreads", &point.spreads),
-        ],
+        [("maxima", &point.maxima), ("minima", &point.minima), ("means", &point.means), ("spreads", &point.spreads)],
     )?;
     list(pen, "multipliers", &point.multipliers, multiplier_text)?;
     pen.line()?;
@@ -268,12 +261,7 @@ pub(crate) fn event_text(pen: &mut Pen<'_>, event: &Event) -> io::Result<()> {
     text_field(pen, "note", &event.note)?;
     measures(
         pen,
-        [
-            ("maxima", &event.maxima),
-            ("minima", &event.minima),
-            ("means", &event.means),
-            ("spreads", &event.spreads),
-        ],
+        [("maxima", &event.maxima), ("minima", &event.minima), ("means", &event.means), ("spreads", &event.spreads)],
     )?;
     pen.field("profile")?;
     match &event.profile {

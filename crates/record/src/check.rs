@@ -74,12 +74,9 @@ fn check_point(point: &Point, n: usize) -> Result<(), String> {
     not_nan("trivial_defect", point.trivial_defect)?;
     not_nan("liouville_defect", point.liouville_defect)?;
     not_nan("profile_error", point.profile_error)?;
-    for (name, values) in [
-        ("maxima", &point.maxima),
-        ("minima", &point.minima),
-        ("means", &point.means),
-        ("spreads", &point.spreads),
-    ] {
+    for (name, values) in
+        [("maxima", &point.maxima), ("minima", &point.minima), ("means", &point.means), ("spreads", &point.spreads)]
+    {
         measures(name, values, n)?;
         if values.is_empty() {
             return Err(format!("{name} are missing"));

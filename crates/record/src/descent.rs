@@ -23,10 +23,7 @@ pub(crate) fn split_event(name: &str) -> Option<(&str, EventKind, usize)> {
 /// Along the branch, then by kind, then by number.
 pub(crate) fn along_branch(a: &Event, b: &Event) -> Ordering {
     // Adding zero makes -0 and +0 one distance.
-    (a.distance + 0.0)
-        .total_cmp(&(b.distance + 0.0))
-        .then(a.kind.cmp(&b.kind))
-        .then_with(|| by_name(&a.name, &b.name))
+    (a.distance + 0.0).total_cmp(&(b.distance + 0.0)).then(a.kind.cmp(&b.kind)).then_with(|| by_name(&a.name, &b.name))
 }
 
 /// Names with the numbers in them counted: `a.doubling2` before `a.doubling10`.

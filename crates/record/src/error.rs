@@ -134,19 +134,14 @@ pub enum RecordError {
 impl RecordError {
     /// Whether the machine (disk, permission) is at fault rather than what was asked of it.
     pub fn is_machine_fault(&self) -> bool {
-        matches!(
-            self,
-            Self::Permission { .. } | Self::DiskFull { .. } | Self::NotAFolder { .. } | Self::Machine { .. }
-        )
+        matches!(self, Self::Permission { .. } | Self::DiskFull { .. } | Self::NotAFolder { .. } | Self::Machine { .. })
     }
 
     /// Sorts what the operating system said.
     pub(crate) fn from_io(path: &Path, attempt: Attempt, source: io::Error) -> Self {
         let path = path.to_path_buf();
         match source.kind() {
-            io::ErrorKind::PermissionDenied | io::ErrorKind::ReadOnlyFilesystem => {
-                Self::Permission { path, attempt }
-            }
+            io::ErrorKind::PermissionDenied | io::ErrorKind::ReadOnlyFilesystem => Self::Permission { path, attempt },
             io::ErrorKind::StorageFull | io::ErrorKind::QuotaExceeded => Self::DiskFull { path, attempt },
             io::ErrorKind::NotADirectory => Self::NotAFolder { path },
             _ => Self::Machine { path, attempt, source },
@@ -235,10 +230,7 @@ mod tests {
         let error = RecordError::from_io(Path::new("a.ron"), Attempt::Write, said);
         assert!(matches!(error, RecordError::DiskFull { .. }), "{error:?}");
         assert!(error.is_machine_fault());
-        assert_eq!(
-            error.to_string(),
-            "cannot write a.ron: the disk is full; make room or choose another folder"
-        );
+        assert_eq!(error.to_string(), "cannot write a.ron: the disk is full; make room or choose another folder");
     }
 
     #[test]

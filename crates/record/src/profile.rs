@@ -325,9 +325,9 @@ mod tests {
         for degree in 3..=6 {
             let worst = |n: usize| {
                 let profile = circle(n, degree);
-                (0..997).map(|k| k as f64 / 997.0).fold(0.0f64, |worst, t| {
-                    worst.max((profile.at(t)[0] - (2.0 * PI * t).cos()).abs())
-                })
+                (0..997)
+                    .map(|k| k as f64 / 997.0)
+                    .fold(0.0f64, |worst, t| worst.max((profile.at(t)[0] - (2.0 * PI * t).cos()).abs()))
             };
             let slope = (worst(16) / worst(32)).log2();
             assert!((slope - (degree as f64 + 1.0)).abs() < 0.3, "degree {degree}: {slope}");

@@ -215,8 +215,7 @@ impl Results {
     fn move_aside(&mut self) -> Result<(), RecordError> {
         Inventory::take(&self.folder)?;
         let aside = free_name(&self.folder);
-        fs::rename(&self.folder, &aside)
-            .map_err(|source| RecordError::from_io(&self.folder, Attempt::Move, source))?;
+        fs::rename(&self.folder, &aside).map_err(|source| RecordError::from_io(&self.folder, Attempt::Move, source))?;
         self.aside = Some(aside);
         Ok(())
     }

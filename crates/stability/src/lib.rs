@@ -9,6 +9,7 @@ mod locate;
 mod measure;
 mod point;
 mod problem;
+mod scale;
 mod spectrum;
 mod switch;
 mod test_function;

@@ -3,7 +3,7 @@
 use std::sync::Arc;
 
 use armilla_collocation::{
-    Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings, Report, Row, System, SystemSpec, Task,
+    ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings, Report, Row, System, SystemSpec, Task,
     Workspace, correct_with, estimate_error, remesh,
 };
 use armilla_follow::{Closing, Corrected, Failure, Orientation, Problem, Watch, Watched};
@@ -12,6 +12,7 @@ use armilla_model::VectorField;
 use armilla_record::{Point, Profile};
 
 use crate::measure::Measures;
+use crate::scale::{first_metric, natural_sizes};
 use crate::point::{CyclePoint, CycleTangent};
 use crate::spectrum::{Spectrum, SpectrumSolver};
 
@@ -57,6 +58,11 @@ impl CycleSettings {
     }
 }
 
+/// Share of a state's range at the start of the branch below which its accuracy is no longer relative to its own range.
+const LEAST_RANGE: f64 = 1e-3;
+/// A new mesh must bring the estimated error below this share of the old one, or the floor of roundoff is reached.
+const WORTH: f64 = 0.7;
+
 /// Why a first cycle could not be made.
 #[derive(Clone, Debug, PartialEq)]
 pub enum StartFault {
@@ -86,7 +92,6 @@ pub struct CycleProblem {
     newton: Workspace,
     spectrum: SpectrumSolver,
     last_spectrum: Option<Spectrum>,
-    last_error: f64,
     bordered: Option<Bordered>,
     work: Row,
 }
@@ -98,31 +103,50 @@ impl CycleProblem {
     /// # Errors
     /// [`StartFault`].
     pub fn start(spec: CycleSpec, settings: CycleSettings, profile: &Profile, parameter: f64) -> Result<(Self, CyclePoint), StartFault> {
-        let metric = metric_of(profile, spec.parameter_scale).ok_or(StartFault::NoExtent)?;
-        let mut problem = Self::with_metric(spec, settings, metric, &profile.mesh);
+        // The given profile carries the errors of its origin, the corrected one only roundoff: sizes are read twice.
+        let mut problem = Self::with_metric(spec, settings, None, profile, parameter)?;
         let mut point = CyclePoint::from_profile(profile, parameter);
         problem.correct_at(&mut point, parameter).map_err(StartFault::Newton)?;
+        let corrected = problem.profile(&point);
+        problem = Self::with_metric(problem.spec, settings, None, &corrected, parameter)?;
         // Each round the estimate comes from a better mesh; the choice settles in two or three.
         const ROUNDS: usize = 8;
         for _ in 0..ROUNDS {
             let Some(mesh) = problem.better_mesh(&point) else { break };
-            point = point.on_mesh(problem.system.tables(), &mesh);
-            problem.correct_at(&mut point, parameter).map_err(StartFault::Newton)?;
+            let mut next = point.on_mesh(problem.system.tables(), &mesh);
+            problem.correct_at(&mut next, parameter).map_err(StartFault::Newton)?;
+            if !problem.is_worth(&point, &next) {
+                break;
+            }
+            point = next;
         }
         Ok((problem, point))
     }
 
-    /// A problem with a given metric, as a switched branch needs it.
-    pub(crate) fn with_metric(spec: CycleSpec, settings: CycleSettings, metric: Metric, mesh: &[f64]) -> Self {
+    /// A problem with the metric of `profile`; `parent` are the sizes of the branch it springs from, if any.
+    pub(crate) fn with_metric(
+        spec: CycleSpec,
+        settings: CycleSettings,
+        parent: Option<&[f64]>,
+        profile: &Profile,
+        parameter: f64,
+    ) -> Result<Self, StartFault> {
+        let mut parameters = spec.parameters.clone();
+        parameters[spec.free] = parameter;
+        let sizes = match parent {
+            Some(sizes) => sizes.to_vec(),
+            None => natural_sizes(spec.field.as_ref(), &parameters, profile),
+        };
+        let metric = first_metric(profile, &sizes, spec.parameter_scale).ok_or(StartFault::NoExtent)?;
         let system_spec = SystemSpec {
             field: spec.field.clone(),
             parameters: spec.parameters.clone(),
             free: spec.free,
             metric: metric.clone(),
         };
-        let system = System::new(system_spec, settings.degree, mesh);
+        let system = System::new(system_spec, settings.degree, &profile.mesh);
         let spectrum = SpectrumSolver::new(spec.field.as_ref(), settings.degree);
-        Self {
+        Ok(Self {
             spec,
             settings,
             system,
@@ -130,10 +154,9 @@ impl CycleProblem {
             newton: Workspace::default(),
             spectrum,
             last_spectrum: None,
-            last_error: f64::NAN,
             bordered: None,
             work: Row::zero(0),
-        }
+        })
     }
 
     /// The settings in force.
@@ -170,7 +193,12 @@ impl CycleProblem {
 
     /// Estimated error of a cycle's profile, relative to the range of each state.
     pub fn profile_error(&self, point: &CyclePoint) -> f64 {
-        estimate_error(self.system.tables(), &point.mesh, &point.unknowns.nodes, self.system.n()).error
+        self.estimate(point).error
+    }
+
+    fn estimate(&self, point: &CyclePoint) -> ErrorEstimate {
+        let least: Vec<f64> = self.metric.scales.iter().map(|scale| LEAST_RANGE * scale).collect();
+        estimate_error(self.system.tables(), &point.mesh, &point.unknowns.nodes, &least)
     }
 
     /// A point as a row of the branch table.
@@ -226,17 +254,21 @@ impl CycleProblem {
 
     /// A mesh that suits the point, or none where the present one does: its error is within the accuracy and it has
     /// not many more intervals than needed.
-    pub(crate) fn better_mesh(&mut self, point: &CyclePoint) -> Option<Arc<[f64]>> {
+    pub(crate) fn better_mesh(&self, point: &CyclePoint) -> Option<Arc<[f64]>> {
         /// Share of intervals that must become superfluous before the mesh shrinks: less would swing to and fro.
         const SHRINK_BELOW: f64 = 0.6;
-        let estimate = estimate_error(self.system.tables(), &point.mesh, &point.unknowns.nodes, self.system.n());
-        self.last_error = estimate.error;
+        let estimate = self.estimate(point);
         let choice = remesh(self.system.tables(), &point.mesh, &estimate, self.settings.mesh);
         let (now, wanted) = (point.mesh.len() - 1, choice.mesh.len() - 1);
         let too_coarse = estimate.error > self.settings.mesh.accuracy && !(choice.limited && now == wanted);
         let too_fine = (wanted as f64) < SHRINK_BELOW * now as f64;
         let settled = self.settings.mesh.fixed == Some(now) && estimate.imbalance < 2.0;
         ((too_coarse || too_fine) && !settled).then(|| choice.mesh.into())
+    }
+
+    /// Whether a change of mesh helped: fewer intervals, or a smaller error.
+    fn is_worth(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
+        after.mesh.len() < before.mesh.len() || self.profile_error(after) < WORTH * self.profile_error(before)
     }
 
     fn arclength_row(&mut self, direction: &CycleTangent, mesh: &Arc<[f64]>) -> Row {
@@ -252,22 +284,6 @@ impl CycleProblem {
             _ => Failure::NotConverged,
         }
     }
-}
-
-/// Scales of a profile: the range of each state; a state that does not move takes the largest range of the others
-/// relative to nothing better. None where nothing moves.
-pub(crate) fn metric_of(profile: &Profile, parameter_scale: f64) -> Option<Metric> {
-    /// A range below this share of the state's own size is roundoff, not motion.
-    const STILL: f64 = 1e-12;
-    let ranges: Vec<(f64, f64)> =
-        profile.extremes().into_iter().map(|(low, high)| (high - low, high.abs().max(low.abs()))).collect();
-    let moving = |&(range, size): &(f64, f64)| range > STILL * size;
-    let largest = ranges.iter().filter(|r| moving(r)).map(|r| r.0).fold(0.0, f64::max);
-    if !(largest > 0.0) {
-        return None;
-    }
-    let scale = |r: &(f64, f64)| if moving(r) { r.0 } else if r.1 > 0.0 { r.1 } else { largest };
-    Some(Metric { scales: ranges.iter().map(scale).collect(), period_scale: profile.period, parameter_scale })
 }
 
 impl Problem for CycleProblem {
@@ -387,6 +403,6 @@ impl Problem for CycleProblem {
         let reference = renewed.unknowns.nodes.clone();
         // Where the new mesh does not converge the old point stands, with its larger error shown.
         self.newton(&mut renewed, &reference, &mut LinearClosing { row, target }).ok()?;
-        Some((renewed, tangents))
+        self.is_worth(point, &renewed).then_some((renewed, tangents))
     }
 }

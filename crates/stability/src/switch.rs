@@ -11,7 +11,7 @@ use armilla_follow::{Closing, Problem};
 
 use crate::locate::Located;
 use crate::point::{CyclePoint, CycleTangent};
-use crate::problem::{CycleProblem, metric_of};
+use crate::problem::CycleProblem;
 
 /// The start of a doubled branch.
 pub struct Doubled {
@@ -55,11 +55,10 @@ impl CycleProblem {
     /// [`SwitchFault`].
     pub fn double(&self, located: &Located) -> Result<Doubled, SwitchFault> {
         let birth_profile = self.profile(&located.point).repeated(2);
-        let metric = metric_of(&birth_profile, self.spec.parameter_scale).ok_or(SwitchFault)?;
-        let mut spec = self.spec.clone();
-        spec.parameters[spec.free] = located.point.unknowns.parameter;
-        let mut problem = CycleProblem::with_metric(spec, self.settings, metric, &birth_profile.mesh);
-        let birth = CyclePoint::from_profile(&birth_profile, located.point.unknowns.parameter);
+        let (value, sizes) = (located.point.unknowns.parameter, Some(&self.metric.scales[..]));
+        let mut problem = CycleProblem::with_metric(self.spec.clone(), self.settings, sizes, &birth_profile, value)
+            .map_err(|_| SwitchFault)?;
+        let birth = CyclePoint::from_profile(&birth_profile, value);
         let outwards = direction(&problem, &birth, located);
         let mut amplitude = AMPLITUDE;
         for _ in 0..HALVINGS {

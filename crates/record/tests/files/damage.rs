@@ -116,7 +116,7 @@ fn contradictions_are_neither_written_nor_read() {
         ("error is NaN", |b| b.events[0].error = Some(f64::NAN)),
         ("point 99", |b| b.profiles[0].point = 99),
         ("mesh must ascend", |b| b.profiles[0].profile.mesh[0] = 0.5),
-        ("node values", |b| drop(b.profiles[0].profile.values.pop())),
+        ("node values", |b| b.profiles[0].profile.values.push(0.0)),
         ("does not ascend", |b| b.range = (2.0, 1.0)),
         ("accuracy", |b| b.accuracy = 0.0),
         ("no name of a branch", |b| b.name = "../a".into()),

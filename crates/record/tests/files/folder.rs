@@ -203,7 +203,8 @@ fn empty_folders_and_leftovers_of_a_killed_run_may_be_replaced() {
     let folder = place.path().join("level.results");
     fs::create_dir_all(folder.join("branches")).expect("made");
     let mut results = Results::create(&folder, true).expect("nothing is lost");
-    results.write_event(&(0..).find_map(|seed| branch(seed, "a", 1).events.pop()).expect("one of the seeds"))
+    results
+        .write_event(&(0..).find_map(|seed| branch(seed, "a", 1).events.pop()).expect("one of the seeds"))
         .expect("written");
     drop(results);
     fs::remove_dir(place.path().join("level.results.replaced").join("branches")).expect("kept, empty");

@@ -139,8 +139,7 @@ pub fn branch(seed: u64, name: &str, n_points: usize) -> Branch {
     let n_events = bits.below(6);
     let distances = bits.ascending(n_events);
     let events = distances.iter().enumerate().map(|(k, &at)| event(bits, name, k + 1, n, at)).collect();
-    let profiles =
-        (0..n_points).step_by(3).map(|k| StoredProfile { point: k, profile: profile(bits, n) }).collect();
+    let profiles = (0..n_points).step_by(3).map(|k| StoredProfile { point: k, profile: profile(bits, n) }).collect();
     Branch {
         format: BRANCH_FORMAT,
         armilla: "0.1.0".into(),

@@ -89,7 +89,14 @@ fn rows_stand_in_order_of_descent_whatever_the_order_of_time() {
         with_events("b", &[("start1", 0.0)]),
         with_events(
             "a",
-            &[("doubling2", -4.0), ("start1", 0.0), ("edge1", -5.0), ("doubling1", 1.5), ("torus1", 1.5), ("fold1", 1.5)],
+            &[
+                ("doubling2", -4.0),
+                ("start1", 0.0),
+                ("edge1", -5.0),
+                ("doubling1", 1.5),
+                ("torus1", 1.5),
+                ("fold1", 1.5),
+            ],
         ),
         with_events("a.doubling1.doubling9", &[("target1", 0.1)]),
     ];

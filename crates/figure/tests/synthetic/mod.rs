@@ -1,8 +1,7 @@
 //! Branches made by formula, with the shapes that figures must show.
 
 use armilla_record::{
-    Branch, Criticality, End, EndReason, Event, EventKind, Multiplier, Point, Profile, Quantity,
-    nodes,
+    Branch, Criticality, End, EndReason, Event, EventKind, Multiplier, Point, Profile, Quantity, nodes,
 };
 
 /// What a synthetic cycle is at a distance along its branch.
@@ -13,27 +12,18 @@ pub struct Cycle {
     pub min: f64,
     pub period: f64,
     pub unstable_count: usize,
+    pub log_modulus: f64,
 }
 
 pub fn quantity(name: &str, label: &str, unit: &str) -> Quantity {
-    Quantity {
-        name: name.into(),
-        label: label.into(),
-        unit: unit.into(),
-    }
+    Quantity { name: name.into(), label: label.into(), unit: unit.into() }
 }
 
 /// A branch through `count` cycles at equal distances from 0 to `length`.
 pub fn branch(name: &str, length: f64, count: usize, cycle: impl Fn(f64) -> Cycle) -> Branch {
-    let end = |value| End {
-        reason: EndReason::Edge,
-        value,
-        words: "the edge of the range is reached".into(),
-    };
-    let points: Vec<Point> = (0..count)
-        .map(|k| length * k as f64 / (count.max(2) - 1) as f64)
-        .map(|s| point(s, &cycle(s)))
-        .collect();
+    let end = |value| End { reason: EndReason::Edge, value, words: "the edge of the range is reached".into() };
+    let points: Vec<Point> =
+        (0..count).map(|k| length * k as f64 / (count.max(2) - 1) as f64).map(|s| point(s, &cycle(s))).collect();
     Branch {
         format: 1,
         armilla: "0.1.0".into(),
@@ -41,10 +31,7 @@ pub fn branch(name: &str, length: f64, count: usize, cycle: impl Fn(f64) -> Cycl
         born_at: None,
         model_title: "Level control with a slow valve".into(),
         model_fingerprint: "0".into(),
-        states: vec![
-            quantity("level", "level", "m"),
-            quantity("flow", "q", "m^3/s"),
-        ],
+        states: vec![quantity("level", "level", "m"), quantity("flow", "q", "m^3/s")],
         parameter: quantity("gain", "gain", "1/s"),
         range: (0.0, 4.0),
         fixed: vec![("lag".into(), 2.5), ("leak".into(), 1e-7)],
@@ -57,7 +44,6 @@ pub fn branch(name: &str, length: f64, count: usize, cycle: impl Fn(f64) -> Cycl
 }
 
 fn point(s: f64, cycle: &Cycle) -> Point {
-    let modulus: f64 = if cycle.unstable_count > 0 { 0.5 } else { -0.5 };
     Point {
         value: cycle.value,
         period: cycle.period,
@@ -71,10 +57,7 @@ fn point(s: f64, cycle: &Cycle) -> Point {
         minima: vec![cycle.min, cycle.min - 1.0],
         means: vec![0.5 * (cycle.max + cycle.min), 0.1],
         spreads: vec![0.3 * (cycle.max - cycle.min), 0.2],
-        multipliers: vec![Multiplier {
-            log_modulus: modulus * s,
-            angle: 0.0,
-        }],
+        multipliers: vec![Multiplier { log_modulus: cycle.log_modulus, angle: std::f64::consts::PI }],
         intervals: 20,
         degree: 4,
     }
@@ -105,60 +88,32 @@ pub fn event(branch: &str, kind: EventKind, number: usize, s: f64, cycle: &Cycle
 /// An egg-shaped orbit between the extremes of a cycle.
 pub fn orbit(cycle: &Cycle) -> Profile {
     let (degree, intervals) = (4, 20);
-    let mesh: Vec<f64> = (0..=intervals)
-        .map(|i| i as f64 / intervals as f64)
-        .collect();
+    let mesh: Vec<f64> = (0..=intervals).map(|i| i as f64 / intervals as f64).collect();
     let local = nodes(degree);
     let mut values = Vec::new();
     let (middle, radius) = (0.5 * (cycle.max + cycle.min), 0.5 * (cycle.max - cycle.min));
     for k in 0..=intervals * degree {
-        let (i, j) = if k == intervals * degree {
-            (intervals - 1, degree)
-        } else {
-            (k / degree, k % degree)
-        };
+        let (i, j) = if k == intervals * degree { (intervals - 1, degree) } else { (k / degree, k % degree) };
         let t = std::f64::consts::TAU * (mesh[i] + (mesh[i + 1] - mesh[i]) * local[j]);
-        values.extend([
-            middle + radius * t.cos(),
-            radius * (t.sin() + 0.3 * (2.0 * t).sin()),
-        ]);
+        values.extend([middle + radius * t.cos(), radius * (t.sin() + 0.3 * (2.0 * t).sin())]);
     }
-    Profile {
-        n_states: 2,
-        degree,
-        period: cycle.period,
-        mesh,
-        values,
-    }
+    Profile { n_states: 2, degree, period: cycle.period, mesh, values }
 }
 
 /// A cascade: `a` loses stability at 2, its doubled branch at 2.9, that one's at 3.2.
 pub fn cascade() -> Vec<Branch> {
     let base = |x: f64| 1.0 + 0.35 * x;
     let births = [2.0, 2.9, 3.2, 3.3];
-    let names = [
-        "a",
-        "a.doubling1",
-        "a.doubling1.doubling1",
-        "a.doubling1.doubling1.doubling1",
-    ];
+    let names = ["a", "a.doubling1", "a.doubling1.doubling1", "a.doubling1.doubling1.doubling1"];
     let level = |depth: usize, x: f64| {
-        base(x)
-            + births[..depth]
-                .iter()
-                .map(|b| 0.42 * (x - b).max(0.0).sqrt() * (1.0 + 0.2 * (x - b)))
-                .sum::<f64>()
+        base(x) + births[..depth].iter().map(|b| 0.42 * (x - b).max(0.0).sqrt() * (1.0 + 0.2 * (x - b))).sum::<f64>()
     };
     (0..4)
         .map(|depth| {
             let from = if depth == 0 { 0.3 } else { births[depth - 1] };
             // Along a branch the parameter grows as the square of the distance from its birth.
             let value = move |s: f64| if depth == 0 { from + s } else { from + s * s };
-            let length = if depth == 0 {
-                4.0 - from
-            } else {
-                (4.0f64 - from).sqrt()
-            };
+            let length = if depth == 0 { 4.0 - from } else { (4.0f64 - from).sqrt() };
             let cycle = move |s: f64| {
                 let x = value(s);
                 let max = level(depth, x);
@@ -169,6 +124,8 @@ pub fn cascade() -> Vec<Branch> {
                     min: -0.6 * max,
                     period,
                     unstable_count: usize::from(x > births[depth]),
+                    log_modulus: (x - births[depth])
+                        * if depth == 0 { 0.6 } else { (x - from) / (births[depth] - from) },
                 }
             };
             let count = [12, 14, 12, 12][depth];
@@ -178,29 +135,16 @@ pub fn cascade() -> Vec<Branch> {
                 made.points.remove(0);
                 made.born_at = Some(format!("{}/doubling1", names[depth - 1]));
             }
-            made.points
-                .iter_mut()
-                .for_each(|point| point.turns = 1 << depth);
-            let s = if depth == 0 {
-                births[0] - from
-            } else {
-                (births[depth] - from).sqrt()
-            };
+            made.points.iter_mut().for_each(|point| point.turns = 1 << depth);
+            let s = if depth == 0 { births[0] - from } else { (births[depth] - from).sqrt() };
             let mut at = event(names[depth], EventKind::Doubling, 1, s, &cycle(s));
             at.turns = 1 << depth;
             made.events.push(at);
             if depth == 0 {
                 for (k, target) in [1.0, 3.5].into_iter().enumerate() {
-                    made.events.push(event(
-                        "a",
-                        EventKind::Target,
-                        k + 1,
-                        target - from,
-                        &cycle(target - from),
-                    ));
+                    made.events.push(event("a", EventKind::Target, k + 1, target - from, &cycle(target - from)));
                 }
-                made.events
-                    .sort_by(|a, b| a.distance.total_cmp(&b.distance));
+                made.events.sort_by(|a, b| a.distance.total_cmp(&b.distance));
             }
             made
         })
@@ -226,14 +170,11 @@ pub fn folded(scale: f64, count: usize) -> Branch {
             } else {
                 0
             },
+            log_modulus: (0.4 * (turn - u.abs())).max(1.2 * (u - 1.1)),
         }
     };
     let mut made = branch("a", 2.5, count, cycle);
-    for (kind, number, at) in [
-        (EventKind::Fold, 1, -turn),
-        (EventKind::Fold, 2, turn),
-        (EventKind::Torus, 1, 1.1),
-    ] {
+    for (kind, number, at) in [(EventKind::Fold, 1, -turn), (EventKind::Fold, 2, turn), (EventKind::Torus, 1, 1.1)] {
         let s = at + 1.25;
         made.events.push(event("a", kind, number, s, &cycle(s)));
     }
@@ -251,15 +192,11 @@ pub fn many(count: usize) -> Vec<Branch> {
                 min: -1.0 - 0.1 * shift,
                 period: 1.0 + 0.1 * shift,
                 unstable_count: usize::from((s > 2.0) ^ (k % 3 == 0)),
+                log_modulus: if k % 3 == 0 { 2.0 - s } else { s - 2.0 },
             };
-            let name = if k == 0 {
-                "a".to_string()
-            } else {
-                format!("a.doubling{k}")
-            };
+            let name = if k == 0 { "a".to_string() } else { format!("a.doubling{k}") };
             let mut made = branch(&name, 4.0, 25, cycle);
-            made.events
-                .push(event(&name, EventKind::ALL[1 + k % 8], 1, 2.0, &cycle(2.0)));
+            made.events.push(event(&name, EventKind::ALL[1 + k % 8], 1, 2.0, &cycle(2.0)));
             made
         })
         .collect()

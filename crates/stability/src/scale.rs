@@ -1,0 +1,57 @@
+//! Sizes of states, for scaled norms.
+//!
+//! A state's size is its range over the cycle. A state that does not move (a plane of symmetry, a variable at rest)
+//! has only roundoff for a range; its size is then what its rate could move it by over a period, `T Sum_b |df_a/dx_b|
+//! range_b`, which has the right unit.
+
+use armilla_collocation::Metric;
+use armilla_model::{Batch, Linearisation, VectorField};
+use armilla_record::Profile;
+
+/// A range below this share of the size is roundoff, not motion: Newton's method leaves about 1e-13.
+const STILL: f64 = 1e-9;
+
+/// What each rate could move its state by over one period, from the ranges of the states it depends on.
+pub(crate) fn natural_sizes(field: &dyn VectorField, parameters: &[f64], profile: &Profile) -> Vec<f64> {
+    let (n, points) = (profile.n_states, profile.n_nodes());
+    let ranges = ranges(profile);
+    let mut states = vec![0.0; n * points];
+    for (point, node) in profile.values.chunks_exact(n).enumerate() {
+        node.iter().enumerate().for_each(|(a, value)| states[a * points + point] = *value);
+    }
+    let (mut rates, mut jacobian) = (vec![0.0; n * points], vec![0.0; field.pattern().nnz() * points]);
+    let batch = Batch { len: points, time: &[], states: &states, parameters };
+    let out = Linearisation { rates: &mut rates, jacobian: &mut jacobian, columns: &mut [] };
+    field.evaluator(&[]).linearise(batch, out);
+    let mut sizes = vec![0.0; n];
+    for ((a, b), values) in field.pattern().entries().zip(jacobian.chunks_exact(points)) {
+        let largest = values.iter().fold(0.0f64, |largest, value| largest.max(value.abs()));
+        if a != b && largest.is_finite() {
+            sizes[a] += profile.period * largest * ranges[b];
+        }
+    }
+    sizes.iter_mut().zip(&ranges).for_each(|(size, range)| *size = size.max(*range));
+    sizes
+}
+
+fn ranges(profile: &Profile) -> Vec<f64> {
+    profile.extremes().into_iter().map(|(low, high)| high - low).collect()
+}
+
+/// The metric of a branch: ranges of `profile`, or `sizes` for states that do not move. None where nothing moves.
+pub(crate) fn first_metric(profile: &Profile, sizes: &[f64], parameter_scale: f64) -> Option<Metric> {
+    let ranges = ranges(profile);
+    let largest = ranges.iter().copied().fold(0.0, f64::max);
+    let modulus = profile.values.iter().fold(0.0f64, |largest, value| largest.max(value.abs()));
+    if !(largest > STILL * 1e-3 * modulus) {
+        return None;
+    }
+    let scale = |(range, size): (&f64, &f64)| match () {
+        () if *range > STILL * size => *range,
+        () if *size > 0.0 => *size,
+        // Nothing tells the unit of this state: the largest range stands in.
+        () => largest,
+    };
+    let scales = ranges.iter().zip(sizes).map(scale).collect();
+    Some(Metric { scales, period_scale: profile.period, parameter_scale })
+}
