@@ -1,2 +1,45 @@
-//! The binary.
-fn main() {}
+//! The armilla program.
+
+use std::process::ExitCode;
+
+use clap::Parser;
+
+mod check;
+mod draw;
+mod exit;
+mod progress;
+mod settle;
+mod table;
+mod trace;
+
+/// Follows the steady oscillations of a model through its parameters: says where a cycle is born, folds, doubles its
+/// period, and what replaces it, with errors, tables and figures.
+///
+/// The numbers describe the model, not the machine; local codes and licensed practice decide.
+#[derive(Parser)]
+#[command(name = "armilla", version, about, max_term_width = 100)]
+struct Arguments {
+    #[command(subcommand)]
+    command: Command,
+}
+
+#[derive(clap::Subcommand)]
+enum Command {
+    /// Reads and compiles a model or a study, and shows how it was understood.
+    Check(check::Args),
+    /// Simulates a model until it settles and says on what.
+    Settle(settle::Args),
+    /// The main job: start, follow, locate, switch, write branch files, thresholds and figures.
+    Trace(trace::Args),
+    /// Draws the figures of a results folder again, without computing.
+    Draw(draw::Args),
+}
+
+fn main() -> ExitCode {
+    match Arguments::parse().command {
+        Command::Check(args) => check::run(&args),
+        Command::Settle(args) => settle::run(&args),
+        Command::Trace(args) => trace::run(&args),
+        Command::Draw(args) => draw::run(&args),
+    }
+}

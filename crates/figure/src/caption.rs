@@ -28,8 +28,8 @@ pub(crate) fn not_searched(branches: &[Branch]) -> String {
     let (lo, hi) =
         branches.iter().fold(first.range, |(lo, hi), branch| (lo.min(branch.range.0), hi.max(branch.range.1)));
     format!(
-        "Only the branches {} were followed, for {} from {} to {}; cycles not connected to them, equilibria, tori and \
-         anything outside this range were not searched.",
+        "Followed: {}, for {} from {} to {}. Not searched: cycles not connected to these, equilibria, tori, and \
+         anything outside this range.",
         listed(branches.iter().map(|branch| branch.name.as_str())),
         quantity(&first.parameter),
         plain(lo),

@@ -44,7 +44,7 @@ pub(crate) fn draw(diagram: &Diagram, branches: &[Branch]) -> Result<String, Fig
         plain_label(&reader),
         caption::quantity(&first.parameter)
     );
-    Ok(canvas.finish(&title, &description(branches, &reader)))
+    Ok(canvas.finish(&title, &description(branches, &reader, &diagram.measure)))
 }
 
 fn scales(first: &Branch, reader: &Reader, window: &Rect) -> (Scale, Scale) {
@@ -80,14 +80,16 @@ fn plain_label(reader: &Reader) -> String {
     text::clean(&reader.label())
 }
 
-fn description(branches: &[Branch], reader: &Reader) -> String {
-    let spread = if matches!(reader.label().split(' ').next(), Some("spread")) {
-        " Spread is the root mean square about the mean."
-    } else {
-        ""
+fn description(branches: &[Branch], reader: &Reader, measure: &Measure) -> String {
+    let meaning = match measure {
+        Measure::Spread(_) => " Spread is the root mean square about the mean.",
+        Measure::Period => " The period counts all turns of the cycle.",
+        Measure::LargestMultiplier => " The trivial multiplier is left out.",
+        _ => "",
     };
     format!(
-        "{} of cycles against {}; solid: stable, dashed: unstable; thresholds carry one marker shape for each kind.{spread} {} {}",
+        "{} of cycles against {}; solid: stable, dashed: unstable; thresholds carry one marker shape for each kind.\
+         {meaning} {} {}",
         plain_label(reader),
         caption::quantity(&branches[0].parameter),
         caption::setting(branches),

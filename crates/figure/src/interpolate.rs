@@ -1,9 +1,9 @@
 //! Smooth curves through points that may lie far apart.
 //!
-//! Each coordinate is a cubic Hermite piece between neighbouring points, as a function of the distance along the branch. The
-//! slope at a point is that of the parabola through it and its neighbours, limited so that the piece
-//! stays monotone wherever the data are (Fritsch & Carlson 1980, SIAM J. Numer. Anal. 17:238): a turn
-//! of the coordinate happens only at a given point, with slope zero, so a fold that is given as a point is round
+//! Each coordinate is a cubic Hermite piece between neighbouring points, as a function of the distance along
+//! the branch. The slope at a point is that of the parabola through it and its neighbours, limited so that the
+//! piece stays monotone wherever the data are (Fritsch & Carlson 1980, SIAM J. Numer. Anal. 17:238): a turn of
+//! the coordinate happens only at a given point, with slope zero, so a fold that is given as a point is round
 //! and nothing overshoots. The error is third order away from turns, second order beside them.
 
 /// Slopes of a coordinate `values` at ascending places `s`.

@@ -72,10 +72,10 @@ pub(crate) struct Legend {
 }
 
 impl Legend {
-    /// One column no wider than `room`.
-    pub(crate) fn beside(entries: Vec<Entry>, room: f64) -> Self {
+    /// One column as wide as it needs.
+    pub(crate) fn beside(entries: Vec<Entry>) -> Self {
         let rows = entries.len();
-        Self { entries: fitted(entries, room), rows }
+        Self { entries, rows }
     }
 
     /// As few rows as fit into `room`.

@@ -5,13 +5,13 @@
 //! parameter, a [`Portrait`] shows orbits in the plane of two states.
 //!
 //! What every figure holds to: stable solid, unstable dashed, the change exactly at the located events; one
-//! marker shape for each kind of threshold, explained in whole words outside the frame; colours from a palette that the
-//! colour-blind can tell apart, with line weight and names besides, so that grey print survives; physical width in
-//! mm, 8 pt text (7 pt names) kept as text; a caption inside the file (`<title>` and `<desc>`) with the
-//! fixed parameters, the accuracy and what was not searched. The same data give the same bytes.
+//! marker shape for each kind of threshold, explained in whole words outside the frame; colours that the
+//! colour-blind can tell apart, with line weight and names besides, so that grey print survives; physical
+//! width in mm, 8 pt text (7 pt names) kept as text; a caption inside the file (`<title>` and `<desc>`) with
+//! the fixed parameters, the accuracy and what was not searched. The same data give the same bytes.
 //!
-//! This crate does not know how any number arose: no solver, no model, and no file, neither its name nor its place. Numbers that
-//! are missing or not finite are left out, never replaced.
+//! This crate does not know how any number arose: no solver, no model, and no file, neither its name nor its
+//! place. Numbers that are missing or not finite are left out, never replaced.
 //!
 //! ```
 //! use armilla_figure::{Figure, Measure};

@@ -94,18 +94,15 @@ pub(crate) fn frame_height(width: f64) -> f64 {
 
 impl Page {
     pub(crate) fn new(width: f64, x: &Scale, y: &Scale, entries: Vec<Entry>) -> Self {
-        let beside = legend_beside(width);
-        let mut height = frame_height(width);
-        let beside_legend = if beside { Some(Legend::beside(entries.clone(), LEGEND_SHARE * width)) } else { None };
-        if let Some(legend) = &beside_legend {
-            height = height.max(legend.height());
-        }
+        let beside = legend_beside(width).then(|| Legend::beside(entries.clone()));
+        let beside = beside.filter(|legend| legend.width() <= LEGEND_SHARE * width);
+        let height = beside.as_ref().map_or(0.0, Legend::height).max(frame_height(width));
         let y_axis = y.axis(((height / 24.0) as usize).max(2));
         let (y_name, y_unit) = y_axis.label(&y.quantity, &y.unit);
         let y_label = text::two_lines(&y_name, &y_unit, TEXT, height / text::STAND_IN);
         let left = SPACE + y_label.len() as f64 * LINE + SPACE + y_axis.widest(TEXT) + SPACE + TICK;
         let top = SPACE + 0.5 * TEXT;
-        let taken_right = beside_legend.as_ref().map_or(0.0, |legend| legend.width() + 2.0 * SPACE);
+        let taken_right = beside.as_ref().map_or(0.0, |legend| legend.width() + 2.0 * SPACE);
         let room = |margin: f64| width - left - margin - taken_right;
         // The last number may hang over the end of the axis by half its width.
         let guess = x.axis_across(room(10.0));
@@ -115,12 +112,16 @@ impl Page {
         let (x_name, x_unit) = x_axis.label(&x.quantity, &x.unit);
         let x_label = text::two_lines(&x_name, &x_unit, TEXT, frame.width() / text::STAND_IN);
         let below = frame.bottom + TICK + SPACE + LINE + x_label.len() as f64 * LINE + 2.0 * SPACE;
-        let legend = match beside_legend {
-            Some(legend) => legend,
-            None => Legend::below(entries, width - left - SPACE),
+        let (legend, legend_corner, bottom) = match beside {
+            Some(legend) => (legend, (frame.right + margin + SPACE, frame.top), below),
+            None => {
+                let legend = Legend::below(entries, width - 2.0 * SPACE);
+                // In line with the frame, or further left where it is wide.
+                let indent = left.min(width - SPACE - legend.width());
+                let bottom = below + legend.height() + SPACE;
+                (legend, (indent, below), bottom)
+            }
         };
-        let legend_corner = if beside { (frame.right + margin + SPACE, frame.top) } else { (left, below) };
-        let bottom = if beside { below } else { below + legend.height() + SPACE };
         Self { frame, x: x_axis, y: y_axis, x_label, y_label, size: (width, bottom), legend, legend_corner }
     }
 

@@ -77,7 +77,7 @@ impl Shown<'_> {
         }
         let listed = if owners.len() > most { most.saturating_sub(1).max(1) } else { owners.len() };
         let row = |owner: &usize| {
-            let name = format!("branch {}", text::clean(&self.branches[*owner].name));
+            let name = text::clean(&self.branches[*owner].name);
             Entry::new(Sample::Line { ink: ink(*owner), dashed: false }, name)
         };
         let mut entries: Vec<Entry> = owners[..listed].iter().map(row).collect();

@@ -213,7 +213,7 @@ fn curves_stay_in_the_frame_even_where_the_range_cuts_them() {
         [x - frame.left, x - frame.right, y - frame.top, y - frame.bottom].iter().any(|off| off.abs() < 1.5)
     };
     for line in groups(&document, "curve").into_iter().flat_map(lines_in) {
-        assert_eq!(line.iter().filter(|place| on_rim(**place)).count() <= 2, true, "a curve runs along the frame");
+        assert!(line.iter().filter(|place| on_rim(**place)).count() <= 2, "a curve runs along the frame");
     }
 }
 
@@ -259,6 +259,38 @@ fn a_branch_that_is_stable_throughout_has_no_dashes() {
     });
     let svg = Figure::Diagram(level(Measure::Max)).draw(&[steady]).expect("draws");
     assert!(!svg.contains("dasharray") && !svg.contains(">unstable<"));
+}
+
+/// Two events between neighbouring points: the branch is dashed between them only.
+#[test]
+fn events_inside_one_stride_each_change_the_style() {
+    let cycle = |s: f64| {
+        let unstable_count = usize::from(s > 1.3 && s < 1.7);
+        Cycle { value: s, max: s, min: -s, period: 1.0, unstable_count, log_modulus: -0.1 }
+    };
+    let mut coarse = branch("a", 4.0, 5, cycle);
+    for (kind, at) in [(EventKind::Doubling, 1.3), (EventKind::Pitchfork, 1.7)] {
+        let mut event = event("a", kind, 1, at, &cycle(at));
+        // Without measures of its own the event still says where the style changes.
+        event.maxima.clear();
+        coarse.events.push(event);
+    }
+    let fixed = Diagram { x: Some((0.0, 4.0)), names: false, ..level(Measure::Max) };
+    let svg = Figure::Diagram(fixed).draw(&[coarse]).expect("draws");
+    let document = Document::parse(&svg).expect("valid XML");
+    let frame = frame(&document);
+    let styles: Vec<(&str, f64)> = groups(&document, "curve")
+        .into_iter()
+        .map(|group| {
+            let end = lines_in(group)[0].last().expect("corners").0;
+            (group.attribute("class").expect("a class"), 4.0 * (end - frame.left) / (frame.right - frame.left))
+        })
+        .collect();
+    let wanted = [("curve stable", 1.3), ("curve unstable", 1.7), ("curve stable", 4.0)];
+    assert_eq!(styles.len(), 3, "{styles:?}");
+    for (found, wanted) in styles.iter().zip(wanted) {
+        assert!(found.0 == wanted.0 && (found.1 - wanted.1).abs() < 1e-3, "{styles:?}");
+    }
 }
 
 /// Exact: the synthetic fold is a cubic; drawn from ten points it must be round and turn at its fold.
@@ -358,13 +390,16 @@ fn labels_are_escaped_and_the_caption_is_inside() {
     assert!(text_of("title").starts_with("Tanks <A> & \"B\", with τ > 0: maximum of"), "{}", text_of("title"));
     let caption = text_of("desc");
     for part in
-        ["α<β = −3.5×10^−12", "n = 4", "10^−9", "solid: stable, dashed: unstable", "not searched", "a.doubling1"]
+        ["α<β = −3.5×10^−12", "n = 4", "10^−9", "solid: stable, dashed: unstable", "Not searched", "a.doubling1"]
     {
         assert!(caption.contains(part), "{part} not in {caption}");
     }
-    let svg = double(level(Measure::Max)).draw(&awkward()).expect("draws");
+    let mut named = awkward();
+    named.iter_mut().for_each(|branch| branch.states[0].label = "level <above> & \"brim\"".into());
+    let svg = double(level(Measure::Max)).draw(&named).expect("draws");
     let document = Document::parse(&svg).expect("valid XML");
-    assert!(groups(&document, "axes").into_iter().any(|group| words(group).contains("level <above>")));
+    let axes: String = groups(&document, "axes").into_iter().map(words).collect();
+    assert!(axes.contains("maximum of level <above> & \"brim\" (m3/s)"), "{axes}");
 }
 
 #[test]

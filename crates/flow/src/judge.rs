@@ -9,6 +9,7 @@
 
 use crate::error::FlowError;
 use crate::integrator::Integrator;
+use crate::returns::Sequence;
 use crate::section::{Return, Section};
 use crate::tangent::Tangent;
 
@@ -31,63 +32,109 @@ pub(crate) enum Kind {
     Undecided,
 }
 
-/// Returns over which the growth is measured, in this many parts whose scatter gives the spread.
-pub(crate) const JUDGED_RETURNS: usize = 1000;
+/// Returns over which the growth is measured at a time, in this many parts whose scatter gives the spread, and
+/// how many times it is continued while nothing can be said.
+const ROUND: usize = 1000;
 const PARTS: usize = 20;
-/// Logarithm of a growth that no torus shows: the shear of a torus gives at most a growth in proportion to
-/// the number of returns, e^7 here, times a bounded factor.
+const ROUNDS: usize = 4;
+/// Logarithm of a growth that no torus shows: the shear of a torus gives a growth in proportion to the number of
+/// returns, e^7 to e^8 here, times a factor of order one.
 const BEYOND_SHEAR: f64 = 20.0;
-const SHEAR: f64 = 12.0;
 /// Standard deviations that a growth must be away from zero.
 const SURE: f64 = 4.0;
-/// A quasi-periodic motion has come back within this part of the range, and the stretch filled by its
-/// returns keeps its size within this part from the first half to the second.
+/// A quasi-periodic motion has come back within this part of the range; every k-th of its returns, k being the
+/// number that comes nearest, have gone once round the closed curve that they fill, some three stretches long; and
+/// the stretch keeps its size within this part from the first half to the second. A slow drift does none of the
+/// last two.
 const NEAR: f64 = 0.1;
-const SAME_STRETCH: f64 = 0.05;
+const LAPS: f64 = 3.3;
+const SAME_STRETCH: f64 = 0.01;
 
-/// Growth across the flow over the next returns to `section`, which are appended to `returns`.
-pub(crate) fn exponent(
+/// Watches a motion until its kind is clear or the rounds are spent. The returns judged are left in `returns`;
+/// `scale` holds the range of each state.
+pub(crate) fn judge(
     integrator: &mut Integrator<'_>,
     section: Section,
     scale: &[f64],
     returns: &mut Vec<Return>,
-) -> Result<Option<Exponent>, FlowError> {
-    let mut tangent = Tangent::new(scale, matches!(section, Section::Level { .. }));
-    let begin = integrator.time();
-    let per_part = JUDGED_RETURNS / PARTS;
-    let mut rates = Vec::with_capacity(PARTS);
-    let mut total = 0.0;
-    let (mut part_begin, mut part_growth, mut aim) = (begin, 0.0, returns.len() + per_part);
-    while rates.len() < PARTS {
-        integrator.advance()?;
-        let Some(growth) = tangent.carry(integrator) else { return Ok(None) };
-        part_growth += growth;
-        section.returns(integrator, returns);
-        if returns.len() >= aim {
-            rates.push(part_growth / (integrator.time() - part_begin));
-            total += part_growth;
-            (part_begin, part_growth, aim) = (integrator.time(), 0.0, returns.len() + per_part);
+) -> Result<(Kind, Option<Exponent>), FlowError> {
+    returns.clear();
+    let mut growth = Growth {
+        tangent: Tangent::new(scale, matches!(section, Section::Level { .. })),
+        begin: integrator.time(),
+        rates: Vec::new(),
+        total: 0.0,
+    };
+    for _ in 0..ROUNDS {
+        if !growth.measure(integrator, section, returns)? {
+            break;
+        }
+        let exponent = growth.exponent(integrator.time());
+        let kind = kind(exponent, &Sequence { returns, scale });
+        if kind != Kind::Undecided {
+            return Ok((kind, Some(exponent)));
         }
     }
-    let time = integrator.time() - begin;
-    let mean = rates.iter().sum::<f64>() / PARTS as f64;
-    let scatter: f64 = rates.iter().map(|rate| (rate - mean).powi(2)).sum::<f64>() / (PARTS - 1) as f64;
-    Ok(Some(Exponent { value: total / time, spread: (scatter / PARTS as f64).sqrt(), time }))
+    let measured = !growth.rates.is_empty();
+    Ok((Kind::Undecided, measured.then(|| growth.exponent(integrator.time()))))
 }
 
-/// The kind of motion, from its growth, its nearest return and the returns that were judged.
-pub(crate) fn kind(exponent: Exponent, nearest: f64, returns: &[Return], scale: &[f64]) -> Kind {
+/// Growth measured so far.
+struct Growth {
+    tangent: Tangent,
+    begin: f64,
+    /// Rate in each part.
+    rates: Vec<f64>,
+    total: f64,
+}
+
+impl Growth {
+    /// One round; false where the disturbance could not be carried on.
+    fn measure(
+        &mut self,
+        integrator: &mut Integrator<'_>,
+        section: Section,
+        returns: &mut Vec<Return>,
+    ) -> Result<bool, FlowError> {
+        for _ in 0..PARTS {
+            let (begin, aim) = (integrator.time(), returns.len() + ROUND / PARTS);
+            let mut part = 0.0;
+            while returns.len() < aim {
+                integrator.advance()?;
+                let Some(growth) = self.tangent.carry(integrator) else { return Ok(false) };
+                part += growth;
+                section.returns(integrator, returns);
+            }
+            self.rates.push(part / (integrator.time() - begin));
+            self.total += part;
+        }
+        Ok(true)
+    }
+
+    fn exponent(&self, now: f64) -> Exponent {
+        let (count, time) = (self.rates.len() as f64, now - self.begin);
+        let mean = self.rates.iter().sum::<f64>() / count;
+        let scatter = self.rates.iter().map(|rate| (rate - mean).powi(2)).sum::<f64>() / (count - 1.0);
+        Exponent { value: self.total / time, spread: (scatter / count).sqrt(), time }
+    }
+}
+
+/// The kind of motion, from its growth and the returns over which it was measured.
+fn kind(exponent: Exponent, judged: &Sequence<'_>) -> Kind {
     let growth = exponent.value * exponent.time;
     if growth > BEYOND_SHEAR && exponent.value > SURE * exponent.spread {
         return Kind::Irregular;
     }
-    let (first, second) = returns.split_at(returns.len() / 2);
-    let same = (0..scale.len()).all(|i| {
+    let Some(nearest) = judged.nearest() else { return Kind::Undecided };
+    let (first, second) = judged.returns.split_at(judged.returns.len() / 2);
+    let same = (0..judged.scale.len()).all(|i| {
         let (a, b) = (stretch(first, i), stretch(second, i));
         // The state that defines the section does not move on it.
-        (a - b).abs() <= SAME_STRETCH * a.max(b) || a.max(b) <= SAME_STRETCH * nearest * scale[i]
+        (a - b).abs() <= SAME_STRETCH * a.max(b) || a.max(b) <= SAME_STRETCH * nearest.distance * judged.scale[i]
     });
-    if growth.abs() <= SHEAR && nearest <= NEAR && same { Kind::QuasiPeriodic } else { Kind::Undecided }
+    let is_round = nearest.distance <= NEAR && judged.laps(nearest.returns) >= LAPS;
+    let shear = (judged.returns.len() as f64).ln();
+    if growth.abs() <= shear && is_round && same { Kind::QuasiPeriodic } else { Kind::Undecided }
 }
 
 /// Range of a state over some returns.

@@ -12,7 +12,7 @@ use crate::section::Return;
 #[derive(Clone, Debug, PartialEq)]
 pub(crate) enum Closing {
     /// The k-th return closes.
-    Closed { returns: usize, distance: f64, contraction: Option<f64> },
+    Closed { returns: usize, contraction: Option<f64> },
     /// It would, but slowly; going to `state` at the time of the last return saves the wait.
     Leap { state: Vec<f64> },
     /// Nothing closes.
@@ -35,16 +35,22 @@ pub(crate) const MOST_RETURNS: usize = 64;
 /// Returns in a row that must close, and at least as many as the cycle has.
 const IN_A_ROW: usize = 8;
 /// Below this part of the tolerance a distance is integration error and no longer shrinks.
-const NOISE: f64 = 0.1;
+const NOISE: f64 = 0.01;
+/// A cycle of k returns is told from one of fewer by returns this many times farther apart than what is left
+/// to go, and by the square root of the tolerance at least: just before a doubling every second return closes
+/// to the noise long before every return does.
+const APART: f64 = 100.0;
 /// A leap is tried when waiting would take more returns than this.
 const PATIENCE: f64 = 40.0;
-/// A leap needs the ratio of successive steps steady within this part of 1 - |rho|, and the steps
-/// this parallel: it then lands within about a fifth of the distance that was left.
+/// A leap needs the ratio rho of successive steps steady within this part of 1 - rho, and the steps this
+/// parallel: it then lands within about a fifth of the distance that was left. An alternating approach
+/// (rho < 0) is left to twice as many returns, where it does not alternate: extrapolated by itself it
+/// would lead into the middle of a doubled cycle.
 const STEADY: f64 = 0.2;
 const PARALLEL: f64 = 0.99;
-/// A leap goes no farther than this (relative to the range). The return map need not be linear over that
-/// distance: the next leap starts from much nearer.
-const LEAP_WITHIN: f64 = 0.3;
+/// A leap goes no farther than this (relative to the range): as far as the middle of the motion. The return
+/// map need not be linear over that distance: the next leap starts from much nearer.
+const LEAP_WITHIN: f64 = 1.0;
 
 /// The returns so far with the scale of each state.
 pub(crate) struct Sequence<'a> {
@@ -99,18 +105,22 @@ impl Sequence<'_> {
         if distances().any(|distance| distance > tolerance) {
             return None;
         }
-        // The last k closings make one whole turn: their worst against the worst of the first k.
-        let worst = |from: usize| (from..from + k).map(|i| self.distance(i, k)).fold(0.0, f64::max);
-        let (begin, end) = (worst(first), worst(last + 1 - k));
-        let noise = NOISE * tolerance;
-        if end <= noise {
-            return Some(Closing::Closed { returns: k, distance: end, contraction: None });
-        }
+        // Halves, so that a rotating approach is not mistaken for one that opens again.
+        let half = Self::window(k) / 2;
+        let worst = |from: usize, to: usize| (from..=to).map(|i| self.distance(i, k)).fold(0.0, f64::max);
+        let (begin, end) = (worst(first, last - half), worst(last + 1 - half, last));
         let rho = self.ratio(last - k, k).0;
-        let opening = end > begin;
-        let left = end * rho.abs() / (1.0 - rho);
-        let closed = !opening && rho.abs() < 1.0 && left <= tolerance;
-        closed.then_some(Closing::Closed { returns: k, distance: end, contraction: Some(rho) })
+        let is_noise = end <= NOISE * tolerance;
+        let left = if is_noise { end } else { end * rho.abs() / (1.0 - rho) };
+        if !is_noise && (end > begin || rho.abs() >= 1.0 || left > tolerance) {
+            return None;
+        }
+        let apart = (APART * left.max(end)).max(tolerance.sqrt());
+        let mut parts = (1..k).filter(|part| k % part == 0);
+        if parts.any(|part| (last..last + k - part).all(|i| self.distance(i, part) <= apart)) {
+            return None;
+        }
+        Some(Closing::Closed { returns: k, contraction: (!is_noise).then_some(rho) })
     }
 
     /// The limit of a geometric approach, where that is what the last returns show.
@@ -124,16 +134,25 @@ impl Sequence<'_> {
         let ratios = || (begin..=last - 2 * k).map(|i| self.ratio(i, k));
         let rho = self.ratio(last - 2 * k, k).0;
         let distance = self.distance(last - k, k);
-        let steady = ratios()
-            .all(|(ratio, cosine)| (ratio - rho).abs() <= STEADY * (1.0 - rho.abs()) && cosine.abs() >= PARALLEL);
-        let left = distance * rho.abs() / (1.0 - rho);
-        let wait = (left / tolerance).ln() / -rho.abs().ln() * k as f64;
-        if !steady || rho.abs() >= 1.0 || !(distance.max(left) <= LEAP_WITHIN) || wait <= PATIENCE {
+        let steady = ratios().all(|(ratio, cosine)| (ratio - rho).abs() <= STEADY * (1.0 - rho) && cosine >= PARALLEL);
+        let left = distance * rho / (1.0 - rho);
+        let wait = (left / tolerance).ln() / -rho.ln() * k as f64;
+        let near = distance.max(left) <= LEAP_WITHIN;
+        if !(0.0..1.0).contains(&rho) || !steady || !near || wait <= PATIENCE {
             return None;
         }
         let (a, b) = (&self.returns[last - k].state, &self.returns[last].state);
         let factor = rho / (1.0 - rho);
         Some(Closing::Leap { state: a.iter().zip(b).map(|(a, b)| b + factor * (b - a)).collect() })
+    }
+
+    /// How often the returns, every `k`-th of them, go along the whole stretch that they fill: about 1 for a drift
+    /// to one side, many for a closed curve that they go round.
+    pub(crate) fn laps(&self, k: usize) -> f64 {
+        let chain = || (0..self.returns.len().saturating_sub(k)).step_by(k);
+        let path: f64 = chain().map(|i| self.distance(i, k)).sum();
+        let extent = chain().map(|i| self.distance(0, i)).fold(0.0, f64::max);
+        if extent > 0.0 { path / extent } else { 0.0 }
     }
 
     /// The nearest return among the last ones.
@@ -178,10 +197,10 @@ mod tests {
         assert_eq!(closing(&returns), Closing::Open);
     }
 
-    /// A planted limit 1 approached with multipliers 0.995 and -0.99 (exact geometric sequences).
+    /// A planted limit 1 approached with multipliers 0.995 and -0.995 (exact geometric sequences).
     #[test]
     fn a_slow_approach_leaps_to_its_limit() {
-        for rho in [0.995, -0.99] {
+        for rho in [0.995, -0.995] {
             let returns = sequence(700, |x| 1.0 + rho * (x - 1.0));
             let Closing::Leap { state } = closing(&returns) else { panic!("{rho}: {:?}", closing(&returns)) };
             assert!((state[0] - 1.0).abs() < 1e-9, "{state:?}");

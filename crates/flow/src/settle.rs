@@ -13,7 +13,7 @@ use crate::cycle::{Cycle, record, turns};
 use crate::equilibrium::{Equilibrium, newton};
 use crate::error::FlowError;
 use crate::integrator::{Integrator, Limits, Tolerance, check_length};
-use crate::judge::{self, Kind};
+use crate::judge::{Kind, judge};
 use crate::observe::Observation;
 use crate::options::SettleOptions;
 use crate::returns::{Closing, Sequence};
@@ -51,7 +51,7 @@ const STILL_WINDOWS: usize = 12;
 const PUSH: f64 = 1e-4;
 const PUSHES: usize = 3;
 /// Leaps allowed towards slowly approached cycles.
-const LEAPS: usize = 12;
+const LEAPS: usize = 40;
 /// Returns kept.
 const KEPT: usize = 1024;
 
@@ -287,7 +287,7 @@ impl<'a, 'b> Settling<'a, 'b> {
         }
         let sequence = Sequence { returns: &self.returns, scale: &scale };
         match sequence.closing(self.options.tolerance) {
-            Closing::Closed { returns, contraction, .. } => {
+            Closing::Closed { returns, contraction } => {
                 let start = self.returns.last().expect("closed returns are not empty").clone();
                 self.record_cycle(section, &start, returns, contraction)
             }
@@ -335,7 +335,8 @@ impl<'a, 'b> Settling<'a, 'b> {
             if gap <= floor { 0.0 } else { gap / ranges[i].max(floor) }
         };
         let distance = (0..ranges.len()).map(miss).fold(0.0, f64::max);
-        if !(distance <= MISS * self.options.tolerance) {
+        // A distance that is no number is a miss too.
+        if distance.is_nan() || distance > MISS * self.options.tolerance {
             self.returns.clear();
             return Ok(None);
         }
@@ -426,16 +427,19 @@ impl<'a, 'b> Settling<'a, 'b> {
         let (Some(section), Limit::Returns) = (self.section, limit) else {
             return Ok(Verdict::NotSettled(self.evidence(limit)));
         };
-        let scale = self.scale();
-        self.returns.clear();
-        let exponent = judge::exponent(&mut self.integrator, section, &scale, &mut self.returns)?;
+        let n = self.largest.len();
+        let ranges = filled((0..n).map(|i| self.seen.range(i)).collect(), 1.0);
+        let (kind, exponent) = judge(&mut self.integrator, section, &ranges, &mut self.returns)?;
         self.all_returns += self.returns.len();
+        // What was on its way to a cycle may have arrived meanwhile.
+        if kind == Kind::Undecided
+            && let Some(cycle) = self.cycle()?
+        {
+            return Ok(Verdict::Cycle(Box::new(cycle)));
+        }
         let mut evidence = self.evidence(limit);
         evidence.exponent = exponent;
-        let (Some(exponent), Some(nearest)) = (exponent, evidence.nearest) else {
-            return Ok(Verdict::NotSettled(evidence));
-        };
-        Ok(match judge::kind(exponent, nearest.distance, &self.returns, &scale) {
+        Ok(match kind {
             Kind::QuasiPeriodic => Verdict::QuasiPeriodic(evidence),
             Kind::Irregular => Verdict::Irregular(evidence),
             Kind::Undecided => Verdict::NotSettled(evidence),

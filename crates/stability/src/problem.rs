@@ -91,7 +91,8 @@ pub struct CycleProblem {
     pub(crate) metric: Metric,
     newton: Workspace,
     spectrum: SpectrumSolver,
-    last_spectrum: Option<Spectrum>,
+    /// Spectrum of the point watched last, with its parameter and period: `describe` asks for the same one.
+    watched: Option<(f64, f64, Spectrum)>,
     bordered: Option<Bordered>,
     work: Row,
 }
@@ -153,7 +154,7 @@ impl CycleProblem {
             metric,
             newton: Workspace::default(),
             spectrum,
-            last_spectrum: None,
+            watched: None,
             bordered: None,
             work: Row::zero(0),
         })
@@ -206,7 +207,14 @@ impl CycleProblem {
     /// # Errors
     /// [`crate::SpectrumFault`] where the multipliers fail.
     pub fn describe(&mut self, point: &CyclePoint, turns: usize, distance: f64) -> Result<Point, crate::SpectrumFault> {
-        let spectrum = self.spectrum(point)?;
+        let spectrum = match &self.watched {
+            Some((value, period, spectrum))
+                if *value == point.unknowns.parameter && *period == point.unknowns.period =>
+            {
+                spectrum.clone()
+            }
+            _ => self.spectrum(point)?,
+        };
         let profile = self.profile(point);
         let measures = Measures::of(&profile);
         Ok(Point {
@@ -389,7 +397,7 @@ impl Problem for CycleProblem {
             ],
             unstable_count: spectrum.unstable_count(),
         };
-        self.last_spectrum = Some(spectrum);
+        self.watched = Some((point.unknowns.parameter, point.unknowns.period, spectrum));
         Ok(watch)
     }
 

@@ -73,16 +73,48 @@ impl CycleProblem {
     /// Size of the part of a cycle that changes sign from one half of the period to the other, in the metric: 0 for a
     /// cycle that is a shorter one told twice.
     pub fn split(&self, point: &CyclePoint) -> f64 {
+        let nodes = self.split_nodes(point);
+        self.metric.nodes_inner(self.system.tables(), &point.mesh, &nodes, &nodes).sqrt()
+    }
+
+    /// Whether a doubled branch went through its birth between two neighbouring points: the part that tells one half
+    /// of the period from the other has changed its sign.
+    pub fn passed_birth(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
+        let before = before.on_mesh(self.system.tables(), &after.mesh);
+        let (a, b) = (self.split_nodes(&before), self.split_nodes(after));
+        self.metric.nodes_inner(self.system.tables(), &after.mesh, &a, &b) < 0.0
+    }
+
+    /// Whether a branch went through an equilibrium between two neighbouring points: the motion about its mean has
+    /// changed its sign.
+    pub fn passed_equilibrium(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
+        let before = before.on_mesh(self.system.tables(), &after.mesh);
+        let (a, b) = (self.motion_nodes(&before), self.motion_nodes(after));
+        self.metric.nodes_inner(self.system.tables(), &after.mesh, &a, &b) < 0.0
+    }
+
+    /// Size of the motion about the mean, in the metric.
+    pub fn motion(&self, point: &CyclePoint) -> f64 {
+        let nodes = self.motion_nodes(point);
+        self.metric.nodes_inner(self.system.tables(), &point.mesh, &nodes, &nodes).sqrt()
+    }
+
+    fn motion_nodes(&self, point: &CyclePoint) -> Vec<f64> {
+        let profile = self.profile(point);
+        let means = profile.means();
+        profile.values.iter().enumerate().map(|(k, value)| value - means[k % profile.n_states]).collect()
+    }
+
+    fn split_nodes(&self, point: &CyclePoint) -> Vec<f64> {
         let profile = self.profile(point);
         let mut evaluator = profile.evaluator();
         let mut shifted = vec![0.0; profile.n_states];
-        let times = profile.node_times();
         let mut nodes = Vec::with_capacity(profile.values.len());
-        for (node, time) in times.iter().enumerate() {
+        for (node, time) in profile.node_times().iter().enumerate() {
             evaluator.at(time + 0.5, &mut shifted);
             nodes.extend(profile.node(node).iter().zip(&shifted).map(|(a, b)| 0.5 * (a - b)));
         }
-        self.metric.nodes_inner(self.system.tables(), &point.mesh, &nodes, &nodes).sqrt()
+        nodes
     }
 }
 

@@ -1,1 +1,21 @@
-//! armilla: study.
+//! Study files and the tree of branches.
+//!
+//! A study file says which model, where to start, what to follow and how far. [`Study::read`] checks it against the
+//! model; [`trace`] does it: start, follow, locate, switch, write. This crate does not know how a cycle is computed
+//! nor how a figure is drawn.
+
+mod branch;
+mod error;
+mod file;
+mod progress;
+mod settings;
+mod start;
+mod study;
+mod trace;
+mod walk;
+
+pub use error::{ErrorClass, StudyError};
+pub use file::{DEFAULT_ACCURACY, Follow, MeshOverride, Pursue, Start, StrideOverride, StudyFile, Values};
+pub use progress::{Observer, Progress, Silent};
+pub use study::{Study, parse};
+pub use trace::{TraceOptions, Traced, redraw, trace};

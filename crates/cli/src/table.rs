@@ -1,0 +1,74 @@
+//! The closing table of a run.
+
+use armilla_record::{Branch, Event};
+
+/// Digits of a value that its error supports: no more are printed.
+pub fn supported(value: f64, error: Option<f64>) -> String {
+    /// Digits after which a 64-bit number says nothing.
+    const MOST: i32 = 15;
+    let Some(error) = error.filter(|error| *error > 0.0) else { return format!("{value}") };
+    // One digit beyond the error's first.
+    let decimals = (1.0 - error.log10().floor()).clamp(-300.0, 300.0) as i32;
+    let leading = if value == 0.0 { 0 } else { value.abs().log10().floor() as i32 + 1 };
+    let decimals = decimals.min(MOST - leading).max(0) as usize;
+    if value != 0.0 && (leading < -4 || leading > MOST) {
+        return format!("{value:.*e}", decimals.saturating_add_signed((leading - 1) as isize).min(MOST as usize));
+    }
+    // Adding zero turns a rounded -0 into 0.
+    let text = format!("{value:.decimals$}");
+    if text.trim_start_matches(['-', '0', '.']).is_empty() { text.trim_start_matches('-').to_string() } else { text }
+}
+
+fn row(event: &Event) -> [String; 6] {
+    let error = match event.error {
+        Some(0.0) => "exact".to_string(),
+        Some(error) => format!("{error:.1e}"),
+        None => String::new(),
+    };
+    let period = supported(event.period, event.period_error);
+    [event.name.clone(), supported(event.value, event.error), error, period, event.turns.to_string(), event.note.clone()]
+}
+
+/// The events and ends of all branches as lines of text.
+pub fn closing(branches: &[Branch]) -> String {
+    let Some(first) = branches.first() else { return String::new() };
+    let unit = if first.parameter.unit.is_empty() { String::new() } else { format!(" ({})", first.parameter.unit) };
+    let head = ["event".into(), format!("{}{unit}", first.parameter.name), "error".into(), "period".into(), "turns".into(), "note".into()];
+    let mut rows: Vec<[String; 6]> = vec![head];
+    for branch in branches {
+        let mut events: Vec<&Event> = branch.events.iter().collect();
+        events.sort_by(|a, b| a.distance.total_cmp(&b.distance));
+        rows.extend(events.into_iter().map(row));
+    }
+    let mut widths = [0; 6];
+    for row in &rows {
+        row.iter().zip(&mut widths).for_each(|(cell, width)| *width = (*width).max(cell.chars().count()));
+    }
+    let mut text = String::new();
+    for row in &rows {
+        let cells: Vec<String> = row.iter().zip(widths).map(|(cell, width)| format!("{cell:width$}")).collect();
+        text.push_str(cells.join("  ").trim_end());
+        text.push('\n');
+    }
+    text.push('\n');
+    for branch in branches {
+        let stable = branch.points.iter().filter(|point| point.is_stable()).count();
+        text.push_str(&format!("branch {}: {} points, {stable} of them stable\n", branch.name, branch.points.len()));
+        text.push_str(&format!("  one end: {}\n  other end: {}\n", branch.ends.0.words, branch.ends.1.words));
+    }
+    text
+}
+
+#[cfg(test)]
+mod tests {
+    use super::supported;
+
+    #[test]
+    fn no_more_digits_than_the_error_allows() {
+        assert_eq!(supported(2.832_445_027_862_54, Some(3e-10)), "2.83244502786");
+        assert_eq!(supported(-1e-14, Some(1e-12)), "0.0000000000000");
+        assert_eq!(supported(0.5, Some(0.0)), "0.5");
+        assert_eq!(supported(1.234_567e-9, Some(1e-12)), "1.2346e-9");
+        assert_eq!(supported(123_456.789, Some(20.0)), "123457");
+    }
+}

@@ -1,0 +1,278 @@
+//! One branch, both ways, as a record.
+
+use std::collections::HashMap;
+use std::sync::atomic::AtomicBool;
+
+use armilla_follow::{Orientation, Problem};
+use armilla_record::{BRANCH_FORMAT, Branch, End, EndReason, Event, EventKind, Point, Quantity, StoredProfile};
+use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, Doubled, Located, Measures};
+
+use crate::error::StudyError;
+use crate::progress::{Observer, Progress};
+use crate::settings::follow_settings;
+use crate::study::Study;
+use crate::walk::{Found, Walk, WalkPlan, WalkSink, Walked, at_parameter, end, walk};
+
+/// Every k-th profile is kept in a branch file; the first and the last always.
+const KEEP_EVERY: usize = 10;
+
+/// Where a branch comes from.
+#[derive(Clone, Debug)]
+pub(crate) struct Lineage {
+    pub name: String,
+    pub born_at: Option<String>,
+    pub doublings: usize,
+    pub turns: usize,
+}
+
+/// A finished branch with the doublings that can be switched at.
+pub(crate) struct Finished {
+    pub branch: Branch,
+    pub doublings: Vec<(String, Located)>,
+    pub problem: CycleProblem,
+}
+
+/// What a branch is entered by.
+pub(crate) enum Entry {
+    /// A cycle; the branch goes both ways from it.
+    Cycle(Box<CycleProblem>, Box<CyclePoint>),
+    /// A doubling; the branch goes outwards from its birth.
+    Birth(Box<Doubled>),
+}
+
+/// What every branch of a run shares.
+pub(crate) struct Run<'a> {
+    pub study: &'a Study,
+    pub abort: &'a AtomicBool,
+    pub observer: &'a mut dyn Observer,
+    /// Called with each event as it is located.
+    pub keep: &'a mut dyn FnMut(&Event) -> Result<(), StudyError>,
+    /// Points still allowed.
+    pub points_left: usize,
+}
+
+/// Collects what a walk finds, names events, and passes the news on.
+struct Collector<'r, 'a> {
+    run: &'r mut Run<'a>,
+    lineage: &'r Lineage,
+    numbers: HashMap<EventKind, usize>,
+    events: Vec<Event>,
+    doublings: Vec<(String, Located)>,
+    points: usize,
+    fault: Option<StudyError>,
+}
+
+impl Collector<'_, '_> {
+    fn name(&mut self, kind: EventKind) -> String {
+        let number = self.numbers.entry(kind).or_insert(0);
+        *number += 1;
+        format!("{}/{}{}", self.lineage.name, kind.word(), number)
+    }
+}
+
+impl WalkSink for Collector<'_, '_> {
+    fn point(&mut self, point: &Point) {
+        self.points += 1;
+        self.run.points_left = self.run.points_left.saturating_sub(1);
+        let (name, points) = (&self.lineage.name, self.points);
+        self.run.observer.notice(Progress::Point { name, points, value: point.value, stable: point.is_stable() });
+    }
+
+    fn event(&mut self, problem: &CycleProblem, found: &Found) {
+        let event = event_record(problem, found, self.name(found.kind), self.lineage.turns);
+        if let (EventKind::Doubling, Some(located)) = (found.kind, &found.located) {
+            self.doublings.push((event.name.clone(), located.clone()));
+        }
+        if event.kind.is_threshold() {
+            self.run.observer.notice(Progress::Event { name: &event.name, value: event.value });
+        }
+        if let Err(fault) = (self.run.keep)(&event) {
+            self.fault.get_or_insert(fault);
+        }
+        self.events.push(event);
+    }
+}
+
+fn event_record(problem: &CycleProblem, found: &Found, name: String, turns: usize) -> Event {
+    let profile = problem.profile(&found.point);
+    let measures = Measures::of(&profile);
+    Event {
+        name,
+        kind: found.kind,
+        value: found.point.unknowns.parameter,
+        error: found.error,
+        period: found.point.unknowns.period,
+        period_error: found.period_error,
+        turns,
+        angle: found.angle,
+        criticality: None,
+        distance: found.distance,
+        note: found.note.clone(),
+        maxima: measures.maxima,
+        minima: measures.minima,
+        means: measures.means,
+        spreads: measures.spreads,
+        profile: Some(profile),
+    }
+}
+
+/// Follows one branch to its ends.
+pub(crate) fn follow_branch(
+    run: &mut Run<'_>,
+    lineage: &Lineage,
+    entry: Entry,
+) -> Result<Finished, StudyError> {
+    run.observer.notice(Progress::Branch { name: &lineage.name });
+    match entry {
+        Entry::Cycle(problem, point) => both_ways(run, lineage, *problem, *point),
+        Entry::Birth(doubled) => outwards(run, lineage, *doubled),
+    }
+}
+
+fn plan<'a>(run: &Run<'a>, lineage: &Lineage, sign: f64) -> WalkPlan<'a> {
+    let mut settings = follow_settings(run.study);
+    settings.points = run.points_left;
+    WalkPlan { study: run.study, settings, turns: lineage.turns, doubled: lineage.born_at.is_some(), sign, abort: run.abort }
+}
+
+fn both_ways(run: &mut Run<'_>, lineage: &Lineage, mut problem: CycleProblem, start: CyclePoint) -> Result<Finished, StudyError> {
+    let no_cycle = |reason: String| StudyError::NoCycle { reason };
+    let first = problem.describe(&start, lineage.turns, 0.0).map_err(|fault| no_cycle(fault.to_string()))?;
+    let up = problem
+        .tangent(&start, Orientation::Parameter(1.0))
+        .map_err(|_| no_cycle("the cycle at the start cannot be continued in the followed parameter".into()))?;
+    let down = reversed(&up);
+    let plans = (plan(run, lineage, 1.0), -1.0);
+    let mut collector = collector(run, lineage);
+    collector.point(&first);
+    let found = at_parameter(&mut problem, EventKind::Start, &start, 0.0);
+    collector.event(&problem, &found);
+    if plans.0.settings.targets.contains(&start.unknowns.parameter) {
+        let target = Found { kind: EventKind::Target, ..at_parameter(&mut problem, EventKind::Target, &start, 0.0) };
+        collector.event(&problem, &target);
+    }
+    let forward = walk(&mut problem, (start.clone(), up), &plans.0, &mut collector);
+    // A closed branch has been seen whole.
+    let backward = if forward.end.reason == EndReason::Closed {
+        Walk { points: Vec::new(), events: Vec::new(), end: forward.end.clone() }
+    } else {
+        let back = plan(collector.run, lineage, plans.1);
+        walk(&mut problem, (start.clone(), down), &back, &mut collector)
+    };
+    let mut walked: Vec<Walked> = backward.points.into_iter().rev().collect();
+    walked.push(Walked { point: first, cycle: start });
+    walked.extend(forward.points);
+    finish(collector, problem, walked, (backward.end, forward.end))
+}
+
+fn outwards(run: &mut Run<'_>, lineage: &Lineage, doubled: Doubled) -> Result<Finished, StudyError> {
+    let Doubled { mut problem, birth, point, outwards, amplitude } = doubled;
+    let no_cycle = |reason: String| StudyError::NoCycle { reason };
+    let mut first = problem.describe(&birth, lineage.turns, 0.0).map_err(|fault| no_cycle(fault.to_string()))?;
+    let second = problem.describe(&point, lineage.turns, amplitude).map_err(|fault| no_cycle(fault.to_string()))?;
+    // At the birth itself one multiplier is 1 to roundoff: the branch has the stability of its neighbouring cycles.
+    first.unstable_count = second.unstable_count;
+    let tangent = problem
+        .tangent(&point, Orientation::Along(&outwards))
+        .map_err(|_| no_cycle("the doubled cycle cannot be continued".into()))?;
+    let mut plan = plan(run, lineage, 1.0);
+    plan.settings.initial = amplitude.clamp(plan.settings.shortest, plan.settings.longest);
+    let mut collector = collector(run, lineage);
+    collector.point(&first);
+    collector.point(&second);
+    let mut found = at_parameter(&mut problem, EventKind::Start, &point, amplitude);
+    found.note = lineage.born_at.as_ref().map(|parent| format!("first cycle beyond {parent}")).unwrap_or_default();
+    collector.event(&problem, &found);
+    let forward = walk_shifted(&mut problem, (point.clone(), tangent), &plan, &mut collector, amplitude);
+    let parent = lineage.born_at.clone().unwrap_or_default();
+    let born = end(
+        EndReason::ReturnsToParent,
+        birth.unknowns.parameter,
+        format!("returns to its parent: born at {parent}, {} = {}", run_parameter(&plan), birth.unknowns.parameter),
+    );
+    let mut walked = vec![Walked { point: first, cycle: birth }, Walked { point: second, cycle: point }];
+    walked.extend(forward.points);
+    finish(collector, problem, walked, (born, forward.end))
+}
+
+fn run_parameter(plan: &WalkPlan<'_>) -> String {
+    plan.study.file.follow.parameter.clone()
+}
+
+/// A walk whose distances count from the birth instead of from its first cycle.
+fn walk_shifted(
+    problem: &mut CycleProblem,
+    first: (CyclePoint, CycleTangent),
+    plan: &WalkPlan<'_>,
+    collector: &mut Collector<'_, '_>,
+    shift: f64,
+) -> Walk {
+    let events_before = collector.events.len();
+    let mut walk = walk(problem, first, plan, collector);
+    walk.points.iter_mut().for_each(|walked| walked.point.distance += shift);
+    collector.events[events_before..].iter_mut().for_each(|event| event.distance += shift);
+    walk
+}
+
+fn collector<'r, 'a>(run: &'r mut Run<'a>, lineage: &'r Lineage) -> Collector<'r, 'a> {
+    Collector { run, lineage, numbers: HashMap::new(), events: Vec::new(), doublings: Vec::new(), points: 0, fault: None }
+}
+
+fn reversed(tangent: &CycleTangent) -> CycleTangent {
+    let mut back = tangent.clone();
+    back.row.nodes.iter_mut().for_each(|value| *value = -*value);
+    back.row.period = -back.row.period;
+    back.row.parameter = -back.row.parameter;
+    back
+}
+
+fn finish(collector: Collector<'_, '_>, problem: CycleProblem, walked: Vec<Walked>, ends: (End, End)) -> Result<Finished, StudyError> {
+    let Collector { run, lineage, mut events, doublings, fault, .. } = collector;
+    if let Some(fault) = fault {
+        return Err(fault);
+    }
+    events.sort_by(|a, b| a.distance.total_cmp(&b.distance));
+    let last = walked.len() - 1;
+    let keep = |index: usize| index % KEEP_EVERY == 0 || index == last;
+    let profiles = walked
+        .iter()
+        .enumerate()
+        .filter(|(index, _)| keep(*index))
+        .map(|(point, walked)| StoredProfile { point, profile: problem.profile(&walked.cycle) })
+        .collect();
+    let points: Vec<Point> = walked.into_iter().map(|walked| walked.point).collect();
+    run.observer.notice(Progress::Finished { name: &lineage.name, points: points.len() });
+    let branch = branch_record(run.study, lineage, Parts { points, events, ends, profiles });
+    Ok(Finished { branch, doublings, problem })
+}
+
+struct Parts {
+    points: Vec<Point>,
+    events: Vec<Event>,
+    ends: (End, End),
+    profiles: Vec<StoredProfile>,
+}
+
+fn branch_record(study: &Study, lineage: &Lineage, parts: Parts) -> Branch {
+    let quantity = |name: &str, label: &str, unit: &str| Quantity { name: name.into(), label: label.into(), unit: unit.into() };
+    let model = &study.model;
+    let followed = &model.parameters()[study.free];
+    let others = model.parameters().iter().zip(&study.parameters).enumerate();
+    Branch {
+        format: BRANCH_FORMAT,
+        armilla: env!("CARGO_PKG_VERSION").into(),
+        name: lineage.name.clone(),
+        born_at: lineage.born_at.clone(),
+        model_title: model.title().into(),
+        model_fingerprint: model.fingerprint().into(),
+        states: model.states().iter().map(|s| quantity(&s.name, &s.label, &s.unit)).collect(),
+        parameter: quantity(&followed.name, &followed.label, &followed.unit),
+        range: study.range,
+        fixed: others.filter(|(index, _)| *index != study.free).map(|(_, (p, value))| (p.name.clone(), *value)).collect(),
+        accuracy: study.file.accuracy,
+        points: parts.points,
+        events: parts.events,
+        ends: parts.ends,
+        profiles: parts.profiles,
+    }
+}

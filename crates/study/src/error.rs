@@ -1,0 +1,159 @@
+//! What stops a study, by whose fault it is.
+
+use std::path::PathBuf;
+
+use armilla_flow::FlowError;
+use armilla_model::{Diagnostic, ModelError};
+use armilla_record::RecordError;
+
+/// Why a study could not be done. [`StudyError::class`] tells whose fault it is.
+#[derive(Debug)]
+pub enum StudyError {
+    /// The study file could not be read.
+    Unreadable {
+        /// Its path.
+        path: PathBuf,
+        /// Why.
+        source: std::io::Error,
+    },
+    /// Something in the study file is wrong.
+    Invalid(Box<Diagnostic>),
+    /// The model file is at fault.
+    Model(ModelError),
+    /// Writing or reading results failed.
+    Record(RecordError),
+    /// A rate is not finite where the study starts.
+    RateAtStart {
+        /// The state whose rate it is.
+        state: String,
+        /// The formula, where the model comes from a file.
+        formula: String,
+        /// The states there, by name.
+        states: Vec<(String, f64)>,
+    },
+    /// The simulation could not be carried out.
+    Settling(FlowError),
+    /// The motion settles at rest.
+    SettlesAtRest {
+        /// The state of rest, by name.
+        states: Vec<(String, f64)>,
+        /// Largest real part of its eigenvalues, in the inverse of the model's time unit.
+        growth: f64,
+    },
+    /// The motion did not settle.
+    DidNotSettle {
+        /// What was seen, in words.
+        evidence: String,
+    },
+    /// The settled motion could not be corrected to a cycle.
+    NoCycle {
+        /// Why.
+        reason: String,
+    },
+    /// Something this version does not do.
+    NotInThisVersion {
+        /// What was asked.
+        what: &'static str,
+        /// What to use instead.
+        instead: &'static str,
+    },
+    /// The user stopped the run before there was a result.
+    Interrupted,
+}
+
+/// Whose fault an error is; the exit code follows from it.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum ErrorClass {
+    /// The computation did not reach what was asked.
+    NotReached,
+    /// The input is wrong.
+    Input,
+    /// The machine failed.
+    Machine,
+}
+
+impl StudyError {
+    /// Whose fault it is.
+    pub fn class(&self) -> ErrorClass {
+        match self {
+            Self::Invalid(_) | Self::RateAtStart { .. } | Self::NotInThisVersion { .. } => ErrorClass::Input,
+            Self::Unreadable { .. } | Self::Model(_) => ErrorClass::Input,
+            Self::Record(error) if error.is_machine_fault() => ErrorClass::Machine,
+            Self::Record(_) => ErrorClass::Input,
+            Self::Settling(FlowError::Aborted { .. }) | Self::Interrupted => ErrorClass::NotReached,
+            Self::Settling(FlowError::Setting { .. } | FlowError::ForcingPeriodMissing) => ErrorClass::Input,
+            Self::Settling(_) | Self::SettlesAtRest { .. } | Self::DidNotSettle { .. } | Self::NoCycle { .. } => {
+                ErrorClass::NotReached
+            }
+        }
+    }
+}
+
+impl std::fmt::Display for StudyError {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        match self {
+            Self::Unreadable { path, source } => write!(f, "cannot read the study file `{}`: {source}", path.display()),
+            Self::Invalid(diagnostic) => diagnostic.fmt(f),
+            Self::Model(error) => error.fmt(f),
+            Self::Record(error) => error.fmt(f),
+            Self::RateAtStart { state, formula, states } => {
+                write!(f, "the rate of `{state}` is not finite at the start ({})", listed(states))?;
+                if !formula.is_empty() {
+                    write!(f, ": {formula}")?;
+                }
+                write!(f, "\n    help: begin elsewhere (`begin` in the model file) or change the parameters of the start")
+            }
+            Self::Settling(error) => write!(f, "settling failed: {error}"),
+            Self::SettlesAtRest { states, growth } => write!(
+                f,
+                "the motion settles at rest ({}), all disturbances shrinking at {:.3e} per time unit or faster; there is \
+                 no cycle to start from\n    help: start at parameter values where the model oscillates \
+                 (`start: Settle(at: ...)`), or begin farther from rest (`begin` in the model file)",
+                listed(states),
+                -growth
+            ),
+            Self::DidNotSettle { evidence } => write!(
+                f,
+                "the motion did not settle: {evidence}\n    help: allow a longer `transient`, or start at parameter \
+                 values where the motion is periodic"
+            ),
+            Self::NoCycle { reason } => write!(
+                f,
+                "no cycle was found from the settled motion: {reason}\n    help: start at parameter values where the \
+                 cycle attracts more strongly, or allow a longer `transient`"
+            ),
+            Self::NotInThisVersion { what, instead } => {
+                write!(f, "{what} is not built in this version\n    help: {instead}")
+            }
+            Self::Interrupted => write!(f, "stopped before there was a result; nothing was written"),
+        }
+    }
+}
+
+/// `level = 0.4, flow = 0`.
+pub(crate) fn listed(states: &[(String, f64)]) -> String {
+    states.iter().map(|(name, value)| format!("{name} = {value}")).collect::<Vec<_>>().join(", ")
+}
+
+impl std::error::Error for StudyError {}
+
+impl From<Diagnostic> for StudyError {
+    fn from(diagnostic: Diagnostic) -> Self {
+        Self::Invalid(Box::new(diagnostic))
+    }
+}
+impl From<ModelError> for StudyError {
+    fn from(error: ModelError) -> Self {
+        Self::Model(error)
+    }
+}
+impl From<RecordError> for StudyError {
+    fn from(error: RecordError) -> Self {
+        Self::Record(error)
+    }
+}
+impl From<FlowError> for StudyError {
+    fn from(error: FlowError) -> Self {
+        Self::Settling(error)
+    }
+}

@@ -1,0 +1,34 @@
+//! From a study to the settings of the crates below.
+
+use armilla_follow::Settings;
+use armilla_stability::CycleSettings;
+
+use crate::file::StrideOverride;
+use crate::study::Study;
+
+/// Settings of the cycles of a study; `turns` multiplies a fixed number of intervals.
+pub(crate) fn cycle_settings(study: &Study, turns: usize) -> CycleSettings {
+    let mut settings = CycleSettings::new(study.file.accuracy);
+    if let Some(mesh) = study.file.mesh {
+        settings.degree = mesh.degree.unwrap_or(settings.degree);
+        settings.mesh.fixed = mesh.intervals.map(|intervals| intervals * turns);
+    }
+    settings
+}
+
+/// Settings of following.
+pub(crate) fn follow_settings(study: &Study) -> Settings {
+    let mut settings = Settings::new(study.range);
+    settings.targets.clone_from(&study.file.targets);
+    if let Some(stride) = study.file.stride {
+        override_strides(&mut settings, stride);
+    }
+    settings
+}
+
+/// Applies an override; a stride that is given alone moves the others so that their order holds where it can.
+pub(crate) fn override_strides(settings: &mut Settings, stride: StrideOverride) {
+    settings.shortest = stride.shortest.unwrap_or(settings.shortest);
+    settings.longest = stride.longest.unwrap_or(settings.longest);
+    settings.initial = stride.initial.unwrap_or(settings.initial.min(settings.longest).max(settings.shortest));
+}

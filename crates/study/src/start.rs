@@ -1,0 +1,123 @@
+//! From the start of a study to a first cycle.
+
+use std::sync::atomic::AtomicBool;
+
+use armilla_flow::{Evidence, SettleOptions, Verdict, settle};
+use armilla_model::Batch;
+use armilla_stability::{CyclePoint, CycleProblem, CycleSpec};
+
+use crate::error::StudyError;
+use crate::file::Start;
+use crate::progress::{Observer, Progress};
+use crate::settings::cycle_settings;
+use crate::study::Study;
+
+/// The first cycle with the problem it belongs to.
+pub(crate) struct First {
+    pub problem: CycleProblem,
+    pub point: CyclePoint,
+    pub turns: usize,
+    /// Anything the user must know about the start.
+    pub notes: Vec<String>,
+}
+
+/// Intervals per turn of the first guess; the mesh is then chosen from the accuracy.
+const FIRST_INTERVALS: usize = 40;
+
+/// Finds the first cycle.
+pub(crate) fn first_cycle(study: &Study, abort: &AtomicBool, observer: &mut dyn Observer) -> Result<First, StudyError> {
+    let transient = match &study.file.start {
+        Start::Settle { transient, .. } => *transient,
+        Start::Equilibrium { .. } => {
+            return Err(StudyError::NotInThisVersion {
+                what: "a start from an equilibrium",
+                instead: "start on a stable cycle: start: Settle(at: { ... })",
+            });
+        }
+        Start::Samples { .. } => {
+            return Err(StudyError::NotInThisVersion {
+                what: "a start from samples",
+                instead: "start on a stable cycle: start: Settle(at: { ... })",
+            });
+        }
+    };
+    if study.model.forcing().is_some() {
+        return Err(StudyError::NotInThisVersion {
+            what: "following the cycles of a forced model",
+            instead: "`armilla settle` shows what the motion settles on; following needs rates without the time `t`",
+        });
+    }
+    check_rates(study)?;
+    observer.notice(Progress::Settling);
+    let options = SettleOptions { transient, abort, ..SettleOptions::default() };
+    let field = study.model.field();
+    let settled = settle(field.as_ref(), &study.start_parameters, &study.model.begin(), &options)?;
+    let notes: Vec<String> = settled.pushes.iter().map(|push| push_note(study, push)).collect();
+    notes.iter().for_each(|note| observer.notice(Progress::Note(note)));
+    let cycle = match settled.verdict {
+        Verdict::Cycle(cycle) => cycle,
+        Verdict::Equilibrium(rest) => {
+            return Err(StudyError::SettlesAtRest { growth: rest.growth(), states: named(study, &rest.state) });
+        }
+        Verdict::NotSettled(evidence) => {
+            return Err(StudyError::DidNotSettle { evidence: evidence_words(study, &evidence) });
+        }
+        _ => return Err(StudyError::DidNotSettle { evidence: "the motion is neither at rest nor periodic".into() }),
+    };
+    let turns = cycle.turns.max(1);
+    let settings = cycle_settings(study, turns);
+    let profile = cycle.profile(settings.degree, settings.mesh.fixed.unwrap_or(FIRST_INTERVALS * turns));
+    let spec = CycleSpec {
+        field,
+        parameters: study.parameters.clone(),
+        free: study.free,
+        parameter_scale: study.range.1 - study.range.0,
+    };
+    let value = study.start_parameters[study.free];
+    let (problem, point) = CycleProblem::start(spec, settings, &profile, value)
+        .map_err(|fault| StudyError::NoCycle { reason: fault.to_string() })?;
+    Ok(First { problem, point, turns, notes })
+}
+
+/// States with their names.
+pub(crate) fn named(study: &Study, values: &[f64]) -> Vec<(String, f64)> {
+    study.model.states().iter().map(|state| state.name.clone()).zip(values.iter().copied()).collect()
+}
+
+fn check_rates(study: &Study) -> Result<(), StudyError> {
+    let begin = study.model.begin();
+    let mut rates = vec![0.0; begin.len()];
+    let batch = Batch { len: 1, time: &[0.0], states: &begin, parameters: &study.start_parameters };
+    study.model.field().evaluator(&[]).rates(batch, &mut rates);
+    match rates.iter().position(|rate| !rate.is_finite()) {
+        None => Ok(()),
+        Some(index) => Err(StudyError::RateAtStart {
+            state: study.model.states()[index].name.clone(),
+            formula: study.model.rates().get(index).map(|formula| formula.text.clone()).unwrap_or_default(),
+            states: named(study, &begin),
+        }),
+    }
+}
+
+fn push_note(study: &Study, push: &armilla_flow::Push) -> String {
+    let states = crate::error::listed(&named(study, &push.equilibrium.state));
+    format!("the start sat on an unstable state of rest ({states}) and was pushed off it by {:e}", push.size)
+}
+
+fn evidence_words(study: &Study, evidence: &Evidence) -> String {
+    let ranges: Vec<String> = study
+        .model
+        .states()
+        .iter()
+        .zip(&evidence.ranges)
+        .map(|(state, (low, high))| format!("`{}` between {low:.6} and {high:.6}", state.name))
+        .collect();
+    let mut words = format!("after a time of {:.6} and {} returns, {}", evidence.time, evidence.returns, ranges.join(", "));
+    if let Some(near) = &evidence.nearest {
+        words.push_str(&format!(
+            "; the nearest of the last returns came back after {} turns to within {:.1e} of the range",
+            near.returns, near.distance
+        ));
+    }
+    words
+}

@@ -1,0 +1,235 @@
+//! A study that has been read and checked against its model.
+
+use std::ops::Range;
+use std::path::{Path, PathBuf};
+
+use armilla_figure::{Figure, Measure};
+use armilla_model::{Diagnostic, Model, Source, nearest_name};
+use ron::extensions::Extensions;
+
+use crate::error::StudyError;
+use crate::file::{Start, StudyFile, Values};
+
+/// Accepted accuracies: finer ones drown in the roundoff of 64-bit numbers, coarser ones do not find cycles.
+const ACCURACY: (f64, f64) = (1e-13, 1e-2);
+/// Degrees an override may ask for.
+const DEGREES: (usize, usize) = (3, 8);
+
+/// A study with its model.
+#[derive(Clone, Debug)]
+pub struct Study {
+    /// What the file says, with defaults, figures and range order settled.
+    pub file: StudyFile,
+    /// Path of the study file.
+    pub path: PathBuf,
+    /// The model.
+    pub model: Model,
+    /// Values of all parameters for following: the model's and those of `set`.
+    pub parameters: Vec<f64>,
+    /// Values of all parameters while settling.
+    pub start_parameters: Vec<f64>,
+    /// Index of the followed parameter.
+    pub free: usize,
+    /// The asked range, ascending.
+    pub range: (f64, f64),
+}
+
+impl Study {
+    /// Reads a study and the model it names.
+    ///
+    /// # Errors
+    /// [`StudyError`] with the place of the first error.
+    pub fn read(path: impl AsRef<Path>) -> Result<Self, StudyError> {
+        let path = path.as_ref();
+        let text = std::fs::read_to_string(path)
+            .map_err(|source| StudyError::Unreadable { path: path.to_path_buf(), source })?;
+        let shown = path.display().to_string();
+        let file = parse(Source { file: &shown, text: &text })?;
+        let model_path = path.parent().unwrap_or(Path::new("")).join(&file.model);
+        if !model_path.is_file() {
+            let place = Place { source: Source { file: &shown, text: &text } };
+            let message = format!("there is no model file `{}`", model_path.display());
+            return Err(place.error("model", &file.model, message).with_help("the path is relative to the study file").into());
+        }
+        let model = Model::read(&model_path)?;
+        Self::check(file, path.to_path_buf(), model, Source { file: &shown, text: &text })
+    }
+
+    fn check(mut file: StudyFile, path: PathBuf, model: Model, source: Source<'_>) -> Result<Self, StudyError> {
+        let place = Place { source };
+        place.numbers(&file)?;
+        let free = place.parameter(&model, "follow", &file.follow.parameter)?;
+        let mut parameters = model.values();
+        place.set(&model, "set", &file.set, &mut parameters)?;
+        let mut start_parameters = parameters.clone();
+        if let Start::Settle { at, .. } = &file.start {
+            place.set(&model, "at", at, &mut start_parameters)?;
+            place.only_followed_differs(&model, free, (&parameters, &start_parameters), at)?;
+        }
+        let range = (file.follow.from.min(file.follow.to), file.follow.from.max(file.follow.to));
+        place.start_in_range(&file, start_parameters[free], range)?;
+        if file.figures.is_empty() {
+            file.figures.push(Figure::diagram(Measure::Max(model.states()[0].name.clone())));
+        }
+        place.figures(&model, &file.figures)?;
+        place.targets(&file, range)?;
+        Ok(Self { file, path, model, parameters, start_parameters, free, range })
+    }
+
+    /// Name of the results folder beside the study.
+    pub fn results_folder(&self) -> PathBuf {
+        let name = self.path.file_name().map(|name| name.to_string_lossy().into_owned()).unwrap_or_default();
+        let stem = name.strip_suffix(".study.ron").or_else(|| name.strip_suffix(".ron")).unwrap_or(&name);
+        self.path.with_file_name(format!("{stem}.results"))
+    }
+
+    /// The study as it was understood, as the text of a study file.
+    pub fn understood(&self) -> String {
+        let pretty = ron::ser::PrettyConfig::new().extensions(Extensions::IMPLICIT_SOME).struct_names(false);
+        let text = ron::ser::to_string_pretty(&self.file, pretty).expect("a study has no part that RON cannot write");
+        format!(
+            "// understood by armilla {} from {}\n// model fingerprint {}\n{text}\n",
+            env!("CARGO_PKG_VERSION"),
+            self.path.display(),
+            self.model.fingerprint()
+        )
+    }
+}
+
+/// Reads the text of a study file.
+///
+/// # Errors
+/// A diagnostic with its place.
+pub fn parse(source: Source<'_>) -> Result<StudyFile, Diagnostic> {
+    let options = ron::Options::default().with_default_extension(Extensions::IMPLICIT_SOME);
+    options.from_str(source.text).map_err(|error| Diagnostic::from_ron(source, &error))
+}
+
+/// Finds places in the text for errors that only show against the model.
+struct Place<'a> {
+    source: Source<'a>,
+}
+
+impl Place<'_> {
+    /// The span of `token` after the first `key` field, else of the key, else of the whole text's start.
+    fn span(&self, key: &str, token: &str) -> Range<usize> {
+        let text = self.source.text;
+        let field = text.match_indices(key).find(|(at, _)| text[at + key.len()..].trim_start().starts_with(':'));
+        let Some((start, _)) = field else { return 0..1 };
+        match text[start + key.len()..].find(token) {
+            Some(offset) if !token.is_empty() => {
+                let at = start + key.len() + offset;
+                at..at + token.len()
+            }
+            _ => start..start + key.len(),
+        }
+    }
+
+    fn error(&self, key: &str, token: &str, message: impl Into<String>) -> Diagnostic {
+        Diagnostic::new(self.source, self.span(key, token), message)
+    }
+
+    fn parameter(&self, model: &Model, key: &str, name: &str) -> Result<usize, Diagnostic> {
+        model.parameter_index(name).ok_or_else(|| {
+            let names: Vec<&str> = model.parameters().iter().map(|parameter| parameter.name.as_str()).collect();
+            let help = match nearest_name(name, names.iter().copied()) {
+                Some(near) => format!("did you mean `{near}`?"),
+                None => format!("the model's parameters are {}", names.join(", ")),
+            };
+            self.error(key, name, format!("the model has no parameter `{name}`")).with_help(help)
+        })
+    }
+
+    fn set(&self, model: &Model, key: &str, values: &Values, parameters: &mut [f64]) -> Result<(), Diagnostic> {
+        for (name, value) in &values.0 {
+            let index = self.parameter(model, key, name)?;
+            if !value.is_finite() {
+                return Err(self.error(key, name, format!("the value of `{name}` is not finite")));
+            }
+            parameters[index] = *value;
+        }
+        Ok(())
+    }
+
+    fn only_followed_differs(&self, model: &Model, free: usize, (follow, start): (&[f64], &[f64]), at: &Values) -> Result<(), Diagnostic> {
+        for (index, parameter) in model.parameters().iter().enumerate() {
+            if index != free && follow[index] != start[index] {
+                let name = &parameter.name;
+                let message = format!("`{name}` is {} while settling but {} while following", start[index], follow[index]);
+                let help = format!("put `{name}` into `set`; `at` is for the followed parameter `{}`", model.parameters()[free].name);
+                debug_assert!(at.0.contains_key(name));
+                return Err(self.error("at", name, message).with_help(help));
+            }
+        }
+        Ok(())
+    }
+
+    fn numbers(&self, file: &StudyFile) -> Result<(), Diagnostic> {
+        let follow = &file.follow;
+        if !(follow.from.is_finite() && follow.to.is_finite() && follow.from != follow.to) {
+            return Err(self.error("follow", "", "the range must have two different finite ends `from` and `to`"));
+        }
+        if !(file.accuracy >= ACCURACY.0 && file.accuracy <= ACCURACY.1) {
+            let message = format!("the accuracy {} must lie between {:e} and {:e}", file.accuracy, ACCURACY.0, ACCURACY.1);
+            return Err(self.error("accuracy", "", message));
+        }
+        if file.pursue.branches == 0 || file.pursue.points == 0 {
+            return Err(self.error("pursue", "", "`branches` and `points` must be at least 1"));
+        }
+        if let Some(degree) = file.mesh.and_then(|mesh| mesh.degree)
+            && !(DEGREES.0..=DEGREES.1).contains(&degree)
+        {
+            let message = format!("the degree {degree} must lie between {} and {}", DEGREES.0, DEGREES.1);
+            return Err(self.error("degree", "", message));
+        }
+        if file.mesh.and_then(|mesh| mesh.intervals).is_some_and(|intervals| intervals < 4) {
+            return Err(self.error("intervals", "", "a mesh needs at least 4 intervals"));
+        }
+        self.strides(file)
+    }
+
+    fn strides(&self, file: &StudyFile) -> Result<(), Diagnostic> {
+        let Some(stride) = file.stride else { return Ok(()) };
+        let mut settings = armilla_follow::Settings::new((0.0, 1.0));
+        crate::settings::override_strides(&mut settings, stride);
+        settings.validate().map_err(|fault| self.error("stride", fault.field, fault.to_string()))
+    }
+
+    fn start_in_range(&self, file: &StudyFile, value: f64, (low, high): (f64, f64)) -> Result<(), Diagnostic> {
+        if value >= low && value <= high {
+            return Ok(());
+        }
+        let name = &file.follow.parameter;
+        let message = format!("the start has `{name}` = {value}, outside the asked range from {low} to {high}");
+        let help = format!("widen `follow`, or start inside it: start: Settle(at: {{ \"{name}\": ... }})");
+        Err(self.error("follow", "from", message).with_help(help))
+    }
+
+    fn targets(&self, file: &StudyFile, (low, high): (f64, f64)) -> Result<(), Diagnostic> {
+        match file.targets.iter().find(|target| !(**target >= low && **target <= high)) {
+            Some(target) => {
+                let message = format!("the target {target} lies outside the asked range from {low} to {high}");
+                Err(self.error("targets", "", message))
+            }
+            None => Ok(()),
+        }
+    }
+
+    fn figures(&self, model: &Model, figures: &[Figure]) -> Result<(), Diagnostic> {
+        let states: Vec<&str> = model.states().iter().map(|state| state.name.as_str()).collect();
+        let asked = figures.iter().flat_map(|figure| match figure {
+            Figure::Diagram(diagram) => diagram.measure.state().into_iter().collect::<Vec<_>>(),
+            Figure::Portrait(portrait) => portrait.axes.iter().map(String::as_str).collect(),
+        });
+        for name in asked {
+            if !states.contains(&name) {
+                let help = match nearest_name(name, states.iter().copied()) {
+                    Some(near) => format!("did you mean `{near}`?"),
+                    None => format!("the model's states are {}", states.join(", ")),
+                };
+                return Err(self.error("figures", name, format!("the model has no state `{name}`")).with_help(help));
+            }
+        }
+        Ok(())
+    }
+}

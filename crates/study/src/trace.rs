@@ -1,0 +1,210 @@
+//! The main job: start, follow, locate, switch, write.
+
+use std::collections::VecDeque;
+use std::path::{Path, PathBuf};
+use std::sync::atomic::{AtomicBool, Ordering};
+
+use armilla_figure::Figure;
+use armilla_record::{Branch, EndReason, EventKind, Results, Threshold};
+
+use crate::branch::{Entry, Finished, Lineage, Run, follow_branch};
+use crate::error::StudyError;
+use crate::progress::Observer;
+use crate::start::first_cycle;
+use crate::study::Study;
+
+/// How a run is to be done.
+pub struct TraceOptions<'a> {
+    /// Results folder; beside the study where absent.
+    pub folder: Option<PathBuf>,
+    /// Whether an existing results folder may be replaced.
+    pub replace: bool,
+    /// Ends the run cleanly when set.
+    pub abort: &'a AtomicBool,
+}
+
+/// What a run brought.
+#[derive(Debug)]
+pub struct Traced {
+    /// All branches, in order of descent.
+    pub branches: Vec<Branch>,
+    /// Where everything was written.
+    pub folder: PathBuf,
+    /// What was asked and not reached, one sentence each.
+    pub shortfalls: Vec<String>,
+    /// Notes on the start.
+    pub notes: Vec<String>,
+    /// Whether the user stopped the run.
+    pub interrupted: bool,
+}
+
+/// A branch waiting to be followed.
+struct Waiting {
+    lineage: Lineage,
+    entry: Entry,
+}
+
+/// Does the study and writes its results.
+///
+/// # Errors
+/// [`StudyError`]; nothing was written unless it is a fault of the machine in the middle of the run, and then
+/// everything finished before is kept.
+pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Observer) -> Result<Traced, StudyError> {
+    let folder = options.folder.clone().unwrap_or_else(|| study.results_folder());
+    let mut results = Results::create(&folder, options.replace)?;
+    let first = first_cycle(study, options.abort, observer)?;
+    results.write_study(&study.understood())?;
+    let mut traced = Traced {
+        branches: Vec::new(),
+        folder: results.folder().to_path_buf(),
+        shortfalls: Vec::new(),
+        notes: first.notes,
+        interrupted: false,
+    };
+    let lineage = Lineage { name: "a".into(), born_at: None, doublings: 0, turns: first.turns };
+    let entry = Entry::Cycle(Box::new(first.problem), Box::new(first.point));
+    let mut queue = VecDeque::from([Waiting { lineage, entry }]);
+    let mut points_left = study.file.pursue.points;
+    while let Some(waiting) = queue.pop_front() {
+        let mut keep = |event: &armilla_record::Event| results.write_event(event).map_err(StudyError::from);
+        let mut run = Run { study, abort: options.abort, observer: &mut *observer, keep: &mut keep, points_left };
+        let lineage = waiting.lineage.clone();
+        let finished = match follow_branch(&mut run, &lineage, waiting.entry) {
+            Ok(finished) => finished,
+            Err(StudyError::NoCycle { reason }) if lineage.born_at.is_some() => {
+                traced.shortfalls.push(format!("branch {} could not be followed: {reason}", lineage.name));
+                continue;
+            }
+            Err(fault) => return Err(fault),
+        };
+        points_left = run.points_left;
+        results.write_branch(&finished.branch)?;
+        if options.abort.load(Ordering::Relaxed) {
+            traced.branches.push(finished.branch);
+            break;
+        }
+        let room = study.file.pursue.branches.saturating_sub(traced.branches.len() + 1 + queue.len());
+        queue.extend(children(study, &lineage, &finished, room, &mut traced.shortfalls));
+        traced.branches.push(finished.branch);
+        results.write_thresholds(&Threshold::rows(&traced.branches))?;
+        if points_left == 0 {
+            break;
+        }
+    }
+    traced.interrupted = options.abort.load(Ordering::Relaxed);
+    for waiting in &queue {
+        let why = if traced.interrupted { "the run was stopped" } else { "all points allowed by `pursue` were used" };
+        traced.shortfalls.push(format!("branch {} was not followed: {why}", waiting.lineage.name));
+    }
+    conclude(study, results, traced)
+}
+
+/// The branches born at the doublings of a finished one.
+fn children(study: &Study, lineage: &Lineage, finished: &Finished, room: usize, shortfalls: &mut Vec<String>) -> Vec<Waiting> {
+    let mut children = Vec::new();
+    if lineage.doublings >= study.file.pursue.doublings {
+        return children;
+    }
+    for (event, located) in &finished.doublings {
+        if children.len() >= room {
+            shortfalls.push(format!("the branch born at {event} was not followed: `pursue` allows {} branches", study.file.pursue.branches));
+            continue;
+        }
+        match finished.problem.double(located) {
+            Err(fault) => shortfalls.push(format!("at {event} {fault}")),
+            Ok(doubled) => children.push(Waiting {
+                lineage: child_lineage(lineage, event),
+                entry: Entry::Birth(Box::new(doubled)),
+            }),
+        }
+    }
+    children
+}
+
+fn child_lineage(parent: &Lineage, event: &str) -> Lineage {
+    // `a/doubling1` gives birth to `a.doubling1`.
+    Lineage {
+        name: event.replace('/', "."),
+        born_at: Some(event.to_string()),
+        doublings: parent.doublings + 1,
+        turns: 2 * parent.turns,
+    }
+}
+
+/// Sorts, writes tables and figures, and says what was not reached.
+fn conclude(study: &Study, mut results: Results, mut traced: Traced) -> Result<Traced, StudyError> {
+    let order = armilla_record::descent_order(&traced.branches);
+    let mut slots: Vec<Option<Branch>> = traced.branches.drain(..).map(Some).collect();
+    traced.branches = order.into_iter().filter_map(|index| slots[index].take()).collect();
+    results.write_thresholds(&Threshold::rows(&traced.branches))?;
+    traced.shortfalls.extend(shortfalls(study, &traced.branches));
+    let failed = write_figures(&study.file.figures, &traced.branches, &mut results)?;
+    traced.shortfalls.extend(failed);
+    results.finish()?;
+    Ok(traced)
+}
+
+/// Draws figures into a results folder; returns what could not be drawn, in sentences.
+pub(crate) fn write_figures(figures: &[Figure], branches: &[Branch], results: &mut Results) -> Result<Vec<String>, StudyError> {
+    let mut failed = Vec::new();
+    let (mut diagrams, mut portraits) = (0, 0);
+    for figure in figures {
+        let name = match figure {
+            Figure::Diagram(_) => {
+                diagrams += 1;
+                format!("diagram{diagrams}")
+            }
+            Figure::Portrait(_) => {
+                portraits += 1;
+                format!("portrait{portraits}")
+            }
+        };
+        match figure.draw(branches) {
+            Ok(svg) => results.write_figure(&name, &svg)?,
+            Err(fault) => failed.push(format!("figure {name} was not drawn: {fault}")),
+        }
+    }
+    Ok(failed)
+}
+
+/// Draws the figures of a results folder again from its branch files.
+///
+/// # Errors
+/// [`StudyError`] where the folder cannot be read or written.
+pub fn redraw(folder: &Path) -> Result<Vec<String>, StudyError> {
+    let mut results = Results::open(folder)?;
+    let text = results.read_study()?;
+    let shown = folder.join("study.ron").display().to_string();
+    let file = crate::study::parse(armilla_model::Source { file: &shown, text: &text })?;
+    let branches = results.read_all_branches()?;
+    write_figures(&file.figures, &branches, &mut results)
+}
+
+fn shortfalls(study: &Study, branches: &[Branch]) -> Vec<String> {
+    let mut found = Vec::new();
+    for branch in branches {
+        for end in [&branch.ends.0, &branch.ends.1] {
+            let reached = matches!(
+                end.reason,
+                EndReason::Edge | EndReason::Closed | EndReason::Equilibrium { .. } | EndReason::ReturnsToParent | EndReason::PeriodBlowUp
+            );
+            if !reached {
+                found.push(format!("branch {} stops early: {}", branch.name, end.words));
+            }
+        }
+        for event in branch.events.iter().filter(|event| event.kind == EventKind::Unresolved) {
+            found.push(format!("{} is unresolved: {}", event.name, event.note));
+        }
+        let worst = branch.points.iter().map(|point| point.profile_error).fold(0.0, f64::max);
+        if worst > study.file.accuracy {
+            found.push(format!("branch {} reaches a profile error of {worst:.1e} only", branch.name));
+        }
+    }
+    for target in &study.file.targets {
+        let met = branches.iter().flat_map(|b| &b.events).any(|e| e.kind == EventKind::Target && e.value == *target);
+        if !met {
+            found.push(format!("no cycle was met at the target {} = {target}", study.file.follow.parameter));
+        }
+    }
+    found
+}

@@ -1,0 +1,324 @@
+//! One direction of one branch: steps, events, the reason of the end.
+
+use std::sync::atomic::{AtomicBool, Ordering};
+
+use armilla_follow::{FollowEnd, Follower, Landing, Outcome, Settings, Station, Step};
+use armilla_record::{End, EndReason, EventKind, Point};
+use armilla_stability::{
+    CriticalKind, CyclePoint, CycleProblem, CycleTangent, Located, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS,
+};
+
+use crate::study::Study;
+
+pub(crate) type CycleStation = Station<CyclePoint, CycleTangent>;
+
+/// An event as found, before it has a name.
+pub(crate) struct Found {
+    pub kind: EventKind,
+    pub point: CyclePoint,
+    pub distance: f64,
+    pub error: Option<f64>,
+    pub period_error: Option<f64>,
+    pub angle: Option<f64>,
+    pub note: String,
+    /// What a switch needs.
+    pub located: Option<Located>,
+}
+
+/// A point with its cycle.
+pub(crate) struct Walked {
+    pub point: Point,
+    pub cycle: CyclePoint,
+}
+
+/// What a walk needs to know besides the problem.
+pub(crate) struct WalkPlan<'a> {
+    pub study: &'a Study,
+    pub settings: Settings,
+    pub turns: usize,
+    /// Whether the branch was born at a doubling and may return to its parent.
+    pub doubled: bool,
+    /// +1 where distances grow with the walk, -1 where they fall.
+    pub sign: f64,
+    pub abort: &'a AtomicBool,
+}
+
+/// What a walk brings back.
+pub(crate) struct Walk {
+    pub points: Vec<Walked>,
+    pub events: Vec<Found>,
+    pub end: End,
+}
+
+/// Takes the points and events of a walk as they come.
+pub(crate) trait WalkSink {
+    fn point(&mut self, point: &Point);
+    fn event(&mut self, problem: &CycleProblem, found: &Found);
+}
+
+/// Strides halved at most this often where the unstable count changes by something no event explains.
+const RETRIES: usize = 10;
+
+/// Walks from `first` to the end of this direction. The first station itself is not among the points.
+pub(crate) fn walk(
+    problem: &mut CycleProblem,
+    first: (CyclePoint, CycleTangent),
+    plan: &WalkPlan<'_>,
+    sink: &mut dyn WalkSink,
+) -> Walk {
+    let start_value = first.0.unknowns.parameter;
+    let mut walk = Walk { points: Vec::new(), events: Vec::new(), end: end(EndReason::Stuck, start_value, String::new()) };
+    let mut follower = match Follower::start_along(problem, first.0, first.1, plan.settings.clone()) {
+        Ok(follower) => follower,
+        Err(_) => {
+            walk.end.words = "the multipliers at its first cycle could not be computed".into();
+            return walk;
+        }
+    };
+    let mut retries = 0;
+    let mut motions = vec![motion(&mut follower)];
+    loop {
+        if plan.abort.load(Ordering::Relaxed) {
+            let value = follower.current().point.unknowns.parameter;
+            walk.end = end(EndReason::Interrupted, value, "stopped by the user".into());
+            return walk;
+        }
+        let Outcome::Step(step) = follower.step() else { break };
+        if let Some(ended) = passed_through(&mut follower, plan, &mut motions) {
+            walk.end = ended;
+            return walk;
+        }
+        if !is_explained(&step) && retries < RETRIES && follower.retract() {
+            motions.pop();
+            retries += 1;
+            continue;
+        }
+        retries = 0;
+        let (problem, before, after) = follower.parts();
+        let before = before.expect("a step has a station before it").clone();
+        let after = after.clone();
+        let found = events_of_step(problem, &step, (&before, &after), plan);
+        for event in found {
+            sink.event(problem, &event);
+            walk.events.push(event);
+        }
+        match problem.describe(&after.point, plan.turns, plan.sign * after.distance) {
+            Ok(point) => {
+                sink.point(&point);
+                walk.points.push(Walked { point, cycle: after.point });
+            }
+            Err(_) => break,
+        }
+    }
+    walk.end = end_of_follower(&mut follower, plan, &motions);
+    walk
+}
+
+fn motion(follower: &mut Follower<'_, CycleProblem>) -> (f64, f64) {
+    let (problem, _, current) = follower.parts();
+    (problem.motion(&current.point), current.point.unknowns.parameter)
+}
+
+/// Whether the last step went through an equilibrium or through the branch's own birth; the walk is over then, and the
+/// last point, already on the way back, is not kept.
+fn passed_through(
+    follower: &mut Follower<'_, CycleProblem>,
+    plan: &WalkPlan<'_>,
+    motions: &mut Vec<(f64, f64)>,
+) -> Option<End> {
+    motions.push(motion(follower));
+    let (problem, before, after) = follower.parts();
+    let before = before?;
+    let last = before.point.unknowns.parameter;
+    if problem.passed_equilibrium(&before.point, &after.point) {
+        let value = extrapolate_to_rest(motions);
+        let words = format!("shrinks to an equilibrium at {} = {value}", with_unit_name(plan));
+        return Some(end(EndReason::Equilibrium { value }, last, words));
+    }
+    if plan.doubled && problem.passed_birth(&before.point, &after.point) {
+        let words = format!("returns to its parent near {} = {last}", with_unit_name(plan));
+        return Some(end(EndReason::ReturnsToParent, last, words));
+    }
+    None
+}
+
+/// Parameter at amplitude 0 from the last three points: near a Hopf point the parameter is an even function of the
+/// amplitude (Hopf 1942), so a polynomial in its square through them is extrapolated.
+fn extrapolate_to_rest(motions: &[(f64, f64)]) -> f64 {
+    let last = &motions[motions.len().saturating_sub(3)..];
+    let mut value = 0.0;
+    for (i, (motion, parameter)) in last.iter().enumerate() {
+        let weight: f64 = last
+            .iter()
+            .enumerate()
+            .filter(|(j, _)| *j != i)
+            .map(|(_, (other, _))| other * other / (other * other - motion * motion))
+            .product();
+        value += weight * parameter;
+    }
+    // Two equal amplitudes leave no weights; the last point then stands for the end.
+    if value.is_finite() { value } else { last[last.len() - 1].1 }
+}
+
+/// Whether the events of a step can account for the change of the unstable count: each fold or doubling moves one
+/// multiplier across the unit circle, each torus point two.
+fn is_explained(step: &Step) -> bool {
+    let count = |index: usize| step.crossings.iter().filter(|crossing| crossing.index == index).count();
+    let single = count(WATCH_FOLD) + count(WATCH_DOUBLING);
+    let change = step.unstable.0.abs_diff(step.unstable.1);
+    change <= single + 2 * count(WATCH_TORUS) && change % 2 == single % 2
+}
+
+fn events_of_step(
+    problem: &mut CycleProblem,
+    step: &Step,
+    (before, after): (&CycleStation, &CycleStation),
+    plan: &WalkPlan<'_>,
+) -> Vec<Found> {
+    let mut found = Vec::new();
+    for crossing in &step.crossings {
+        let kind = match crossing.index {
+            WATCH_FOLD => CriticalKind::Fold,
+            WATCH_DOUBLING => CriticalKind::Doubling,
+            _ => continue,
+        };
+        found.push(match problem.locate(kind, crossing.index, before, after) {
+            Ok(located) => located_event(kind, located, (before, after), plan),
+            Err(fault) => {
+                let (a, b) = fault.bracket;
+                let word = if kind == CriticalKind::Fold { "fold" } else { "period doubling" };
+                let note = format!("a {word} lies in this interval but was not located");
+                unresolved(before, (0.5 * (a + b), 0.5 * (a - b).abs()), note, plan)
+            }
+        });
+    }
+    if let Some(event) = remaining_change(problem, step, (before, after), plan) {
+        found.push(event);
+    }
+    found.sort_by(|a, b| (plan.sign * a.distance).total_cmp(&(plan.sign * b.distance)));
+    if let Some(landing) = step.landing {
+        found.push(landing_event(problem, landing, after, plan));
+    }
+    found
+}
+
+fn located_event(kind: CriticalKind, located: Located, (before, after): (&CycleStation, &CycleStation), plan: &WalkPlan<'_>) -> Found {
+    let distance = before.distance + located.share * (after.distance - before.distance);
+    let (kind, angle) = match kind {
+        CriticalKind::Fold => (EventKind::Fold, 0.0),
+        CriticalKind::Doubling => (EventKind::Doubling, std::f64::consts::PI),
+    };
+    Found {
+        kind,
+        point: located.point.clone(),
+        distance: plan.sign * distance,
+        error: Some(located.error),
+        period_error: Some(located.period_error),
+        angle: Some(angle),
+        note: String::new(),
+        located: Some(located),
+    }
+}
+
+/// A change of the unstable count that folds and doublings leave over: narrowed by bisection and told as what crosses.
+fn remaining_change(
+    problem: &mut CycleProblem,
+    step: &Step,
+    (before, after): (&CycleStation, &CycleStation),
+    plan: &WalkPlan<'_>,
+) -> Option<Found> {
+    let single = step.crossings.iter().filter(|c| c.index == WATCH_FOLD || c.index == WATCH_DOUBLING).count();
+    let change = step.unstable.0.abs_diff(step.unstable.1);
+    // With folds or doublings in the same step the count cannot be split; they were located above.
+    if change == 0 || (single > 0 && is_explained(step)) {
+        return None;
+    }
+    let count = before.watch.unstable_count;
+    let (low, high) = problem.narrow(before, after, |station| station.watch.unstable_count == count);
+    let (a, b) = (low.point.unknowns.parameter, high.point.unknowns.parameter);
+    let half_width = 0.5 * (a - b).abs() + f64::EPSILON * a.abs();
+    let critical = problem.spectrum(&high.point).ok().and_then(|spectrum| {
+        spectrum.multipliers.into_iter().min_by(|x, y| x.log_modulus.abs().total_cmp(&y.log_modulus.abs()))
+    });
+    let (kind, angle, note) = match critical {
+        Some(mu) if change == 2 && mu.angle != 0.0 && mu.angle != std::f64::consts::PI => {
+            (EventKind::Torus, Some(mu.angle.abs()), "located by bisection of the unstable count")
+        }
+        Some(mu) if change == 1 && mu.angle == 0.0 => (
+            EventKind::Branching,
+            Some(0.0),
+            "a multiplier passes +1 without a fold; located by bisection, kind not decided, crossing branch not followed",
+        ),
+        _ => (EventKind::Unresolved, None, "the number of unstable multipliers changes here for a reason not resolved"),
+    };
+    let mut event = unresolved(&low, (0.5 * (a + b), half_width), note.into(), plan);
+    (event.kind, event.angle) = (kind, angle);
+    Some(event)
+}
+
+fn unresolved(station: &CycleStation, (value, half_width): (f64, f64), note: String, plan: &WalkPlan<'_>) -> Found {
+    let mut point = station.point.clone();
+    point.unknowns.parameter = value;
+    Found {
+        kind: EventKind::Unresolved,
+        point,
+        distance: plan.sign * station.distance,
+        error: Some(half_width),
+        period_error: None,
+        angle: None,
+        note,
+        located: None,
+    }
+}
+
+fn landing_event(problem: &mut CycleProblem, landing: Landing, after: &CycleStation, plan: &WalkPlan<'_>) -> Found {
+    let kind = match landing {
+        Landing::Edge(_) => EventKind::Edge,
+        Landing::Target(_) => EventKind::Target,
+    };
+    at_parameter(problem, kind, &after.point, plan.sign * after.distance)
+}
+
+/// An event at a given parameter value: the value is exact, the period's error from a refined mesh.
+pub(crate) fn at_parameter(problem: &mut CycleProblem, kind: EventKind, point: &CyclePoint, distance: f64) -> Found {
+    let (point, period_error) = match problem.refine(point) {
+        Ok((fine, error)) => (fine, Some(error)),
+        Err(_) => (point.clone(), None),
+    };
+    Found { kind, point, distance, error: Some(0.0), period_error, angle: None, note: String::new(), located: None }
+}
+
+pub(crate) fn end(reason: EndReason, value: f64, words: String) -> End {
+    End { reason, value, words }
+}
+
+fn with_unit_name(plan: &WalkPlan<'_>) -> String {
+    plan.study.file.follow.parameter.clone()
+}
+
+/// Motion, relative to the largest along the walk, below which a walk that is stuck has shrunk to an equilibrium.
+const NEARLY_AT_REST: f64 = 0.02;
+
+fn end_of_follower(follower: &mut Follower<'_, CycleProblem>, plan: &WalkPlan<'_>, motions: &[(f64, f64)]) -> End {
+    let value = follower.current().point.unknowns.parameter;
+    let name = with_unit_name(plan);
+    let largest = motions.iter().map(|m| m.0).fold(0.0, f64::max);
+    let shrunk = motions.last().is_some_and(|m| m.0 < NEARLY_AT_REST * largest) && motions.len() > 2;
+    match follower.end() {
+        Some(FollowEnd::Edge(value)) => end(EndReason::Edge, *value, format!("reaches the edge of the asked range, {name} = {value}")),
+        Some(FollowEnd::Closed) => end(EndReason::Closed, value, "closed upon itself: its start was met again".into()),
+        Some(FollowEnd::Budget) => end(EndReason::Budget, value, format!("all points allowed by `pursue` were used at {name} = {value}")),
+        Some(FollowEnd::Stuck | FollowEnd::Outside(_)) if shrunk => {
+            let rest = extrapolate_to_rest(motions);
+            let words = format!("shrinks to an equilibrium at {name} = {rest}");
+            end(EndReason::Equilibrium { value: rest }, value, words)
+        }
+        Some(FollowEnd::Outside(fault)) => {
+            end(EndReason::NotFinite, value, format!("a rate is not finite beyond {name} = {value}: {fault}"))
+        }
+        Some(FollowEnd::Stuck) => {
+            end(EndReason::Stuck, value, format!("the corrector fails at the shortest stride at {name} = {value}"))
+        }
+        None => end(EndReason::Stuck, value, format!("the multipliers could not be computed at {name} = {value}")),
+    }
+}
