@@ -55,6 +55,8 @@ pub struct MeshChoice {
 const DENSITY_FLOOR: f64 = 0.3;
 /// Largest growth of interval length per length travelled: 0.5 lets neighbours differ by a factor of about 1.7.
 const GROWTH: f64 = 0.5;
+/// Imbalance below which a mesh counts as equidistributed.
+const BALANCED: f64 = 2.0;
 /// Predicted errors aim below the accuracy by this factor, since the estimate is asymptotic.
 const SAFETY: f64 = 0.5;
 
@@ -112,11 +114,11 @@ pub fn remesh(tables: &Tables, mesh: &[f64], estimate: &ErrorEstimate, settings:
     let order = tables.degree as f64 + 1.0;
     let density = guarded_density(mesh, estimate, order);
     let total: f64 = density.iter().zip(mesh.windows(2)).map(|(s, pair)| s * (pair[1] - pair[0])).sum();
-    let wanted = if total > 0.0 {
-        total * (tables.error_constant / (SAFETY * settings.accuracy)).powf(1.0 / order)
-    } else {
-        0.0
-    };
+    let predicted = total * (tables.error_constant / (SAFETY * settings.accuracy)).powf(1.0 / order);
+    // A mesh that misses the accuracy although it should not have (the estimate is asymptotic) must grow.
+    let missed = estimate.error > settings.accuracy && estimate.imbalance < BALANCED;
+    let grown = (mesh.len() - 1) as f64 * (estimate.error / (SAFETY * settings.accuracy)).powf(1.0 / order);
+    let wanted = if missed { predicted.max(grown) } else { predicted };
     let intervals = settings.fixed.unwrap_or_else(|| (wanted.ceil().min(1e12) as usize).clamp(settings.fewest, settings.most));
     let limited = settings.fixed.is_none() && wanted > settings.most as f64;
     MeshChoice { mesh: equidistribute(mesh, &density, intervals), limited }

@@ -5,7 +5,7 @@
 //! root mean square, stays below 1; the next step is `h * safety * error^(-1/q)`, q the order of the
 //! estimate. Stiffness is measured, not guessed: a power iteration with the exact Jacobian, carried from
 //! step to step, gives the size of its dominant eigenvalue, and h times that size tells which method is
-//! limited by accuracy and which by stability (see [`Stiffness`]).
+//! limited by accuracy and which by stability (module `stiffness`).
 
 use std::sync::atomic::{AtomicBool, Ordering};
 
@@ -15,6 +15,7 @@ use crate::error::FlowError;
 use crate::explicit::{Explicit, StepFrom};
 use crate::implicit::{Attempt, Implicit, NEWTON_LIMIT};
 use crate::rates::{Rates, first_not_finite};
+use crate::stiffness::{CHECK_EVERY, Stiffness};
 
 /// Errors allowed in a step, per state.
 #[derive(Clone, Debug, PartialEq)]
@@ -72,6 +73,9 @@ const SAFETY: f64 = 0.9;
 /// Largest growth and largest shrinking of the step from one to the next.
 const GROWTH: f64 = 6.0;
 const SHRINKING: f64 = 0.2;
+/// An implicit step that took k iterations shortens the next one by b/(b - 1 + k) with this b, as in the program
+/// of the method (Hairer & Wanner, Solving Ordinary Differential Equations II, IV.8).
+const NEWTON_BASE: f64 = (2 * NEWTON_LIMIT + 1) as f64;
 /// Orders in h of the two error estimates.
 const EXPLICIT_ORDER: f64 = 8.0;
 const IMPLICIT_ORDER: f64 = 6.0;
@@ -86,9 +90,9 @@ pub struct Integrator<'a> {
     /// A second workspace of the method, for landing inside the last step.
     lander: Explicit,
     implicit_lander: Option<Box<Implicit>>,
-    method: Method,
+    next_method: Method,
     /// Method of the last step accepted, whose dense output stands.
-    dense_method: Method,
+    method: Method,
     stiffness: Stiffness,
     time: f64,
     state: Vec<f64>,
@@ -97,6 +101,8 @@ pub struct Integrator<'a> {
     previous_state: Vec<f64>,
     previous_slope: Vec<f64>,
     step: f64,
+    /// At most 1, smaller where Newton's iteration was slow: the next step is shortened by it.
+    newton_speed: f64,
     end: Vec<f64>,
     end_slope: Vec<f64>,
     weights: Vec<f64>,
@@ -128,8 +134,8 @@ impl<'a> Integrator<'a> {
             implicit: None,
             lander: Explicit::new(n),
             implicit_lander: None,
+            next_method: Method::Explicit,
             method: Method::Explicit,
-            dense_method: Method::Explicit,
             stiffness: Stiffness::new(n),
             time: start.0,
             state: start.1.to_vec(),
@@ -138,6 +144,7 @@ impl<'a> Integrator<'a> {
             previous_state: start.1.to_vec(),
             previous_slope: zeros.clone(),
             step: 0.0,
+            newton_speed: 1.0,
             end: zeros.clone(),
             end_slope: zeros.clone(),
             weights: zeros,
@@ -204,7 +211,7 @@ impl<'a> Integrator<'a> {
 
     /// Method of the last step.
     pub fn method(&self) -> Method {
-        self.dense_method
+        self.method
     }
 
     /// Counts so far.
@@ -214,7 +221,7 @@ impl<'a> Integrator<'a> {
 
     /// State at the fraction `theta` in [0, 1] of the last step, from its dense output.
     pub fn dense(&self, theta: f64, out: &mut [f64]) {
-        match (&self.implicit, self.dense_method) {
+        match (&self.implicit, self.method) {
             (Some(implicit), Method::Implicit) => implicit.dense(theta, out),
             _ => self.explicit.dense(theta, out),
         }
@@ -233,7 +240,7 @@ impl<'a> Integrator<'a> {
             out.copy_from_slice(&self.previous_state);
             return;
         }
-        if self.dense_method == Method::Explicit {
+        if self.method == Method::Explicit {
             self.lander.advance(&mut self.rates, from, out);
             return;
         }
@@ -257,7 +264,7 @@ impl<'a> Integrator<'a> {
         loop {
             self.check_limits()?;
             let (error, order) = self.attempt();
-            let factor = (SAFETY * error.powf(-1.0 / order)).clamp(SHRINKING, GROWTH);
+            let factor = (SAFETY * self.newton_speed * error.powf(-1.0 / order)).clamp(SHRINKING, GROWTH);
             if error <= 1.0 {
                 self.accept(if shrink_only { factor.min(1.0) } else { factor });
                 return self.check_bound();
@@ -305,11 +312,12 @@ impl<'a> Integrator<'a> {
 
     /// Tries one step; its error and the order of the estimate. Not finite where the step failed.
     fn attempt(&mut self) -> (f64, f64) {
+        self.newton_speed = 1.0;
         for (i, weight) in self.weights.iter_mut().enumerate() {
             *weight = self.tolerance.absolute[i] + self.tolerance.relative[i] * self.state[i].abs();
         }
         let from = StepFrom { time: self.time, step: self.step, state: &self.state, slope: &self.slope };
-        let (error, order) = match self.method {
+        let (error, order) = match self.next_method {
             Method::Explicit => {
                 self.explicit.advance(&mut self.rates, from, &mut self.end);
                 (self.explicit.error(self.step, &self.weights), EXPLICIT_ORDER)
@@ -320,18 +328,8 @@ impl<'a> Integrator<'a> {
                 self.rates.linearise(self.time, &self.state);
                 match implicit.advance(&mut self.rates, from, &self.weights, &mut self.end) {
                     Attempt::Done { error, iterations } => {
-                        // A slow iteration makes the next step shorter, as in the book of the method.
-                        let limit = (2 * NEWTON_LIMIT) as f64;
-                        let slow = (limit + iterations as f64) / (limit + 1.0);
-                        (
-                            error
-                                * if error <= 1.0 {
-                                    slow.powf(IMPLICIT_ORDER).min(1.0 / error.max(1e-300))
-                                } else {
-                                    1.0
-                                },
-                            IMPLICIT_ORDER,
-                        )
+                        self.newton_speed = NEWTON_BASE / (NEWTON_BASE - 1.0 + iterations as f64);
+                        (error, IMPLICIT_ORDER)
                     }
                     Attempt::NoConvergence => (f64::INFINITY, IMPLICIT_ORDER),
                 }
@@ -345,19 +343,19 @@ impl<'a> Integrator<'a> {
     /// Takes the step just tried, prepares its dense output and the next step.
     fn accept(&mut self, factor: f64) {
         let from = StepFrom { time: self.time, step: self.step, state: &self.state, slope: &self.slope };
-        if self.method == Method::Explicit {
+        if self.next_method == Method::Explicit {
             self.explicit.prepare_dense(&mut self.rates, from, &self.end, &self.end_slope);
         }
         self.stats.accepted += 1;
-        self.stats.implicit += usize::from(self.method == Method::Implicit);
-        self.dense_method = self.method;
+        self.stats.implicit += usize::from(self.next_method == Method::Implicit);
+        self.method = self.next_method;
         self.previous_time = self.time;
         self.time += self.step;
         std::mem::swap(&mut self.previous_state, &mut self.state);
         std::mem::swap(&mut self.previous_slope, &mut self.slope);
         self.state.copy_from_slice(&self.end);
         self.slope.copy_from_slice(&self.end_slope);
-        let due = self.method == Method::Implicit || self.stats.accepted.is_multiple_of(CHECK_EVERY);
+        let due = self.next_method == Method::Implicit || self.stats.accepted.is_multiple_of(CHECK_EVERY);
         let taken = self.step;
         self.step *= factor;
         if due {
@@ -368,9 +366,9 @@ impl<'a> Integrator<'a> {
     }
 
     fn choose_method(&mut self) {
-        let next = self.stiffness.choice(self.method);
-        if next != self.method {
-            self.method = next;
+        let next = self.stiffness.choice(self.next_method);
+        if next != self.next_method {
+            self.next_method = next;
             if let Some(implicit) = &mut self.implicit {
                 implicit.forget();
             }
@@ -402,67 +400,6 @@ impl<'a> Integrator<'a> {
         let by_order =
             if largest > 1e-15 && largest.is_finite() { (0.01 / largest).powf(1.0 / EXPLICIT_ORDER) } else { trial };
         (100.0 * trial).min(by_order)
-    }
-}
-
-/// Accepted explicit steps between two looks at the Jacobian.
-const CHECK_EVERY: usize = 5;
-
-/// Decides between the methods from h times the size of the dominant eigenvalue.
-#[derive(Clone)]
-struct Stiffness {
-    /// Power iteration vector.
-    vector: Vec<f64>,
-    product: Vec<f64>,
-    /// h times the size of the dominant eigenvalue; negative where the vector shrinks.
-    last: f64,
-    /// Looks in a row that speak for the other method.
-    streak: usize,
-}
-
-impl Stiffness {
-    /// The explicit method is stable up to about 6 on the negative real axis and sits between 4 and 6 when
-    /// stability is what limits it; at the tolerances used here accuracy limits it to less than 2.
-    const STIFF_ABOVE: f64 = 3.5;
-    /// Below this the explicit method would be limited by accuracy.
-    const EASY_BELOW: f64 = 0.5;
-    /// A choice needs this many looks in a row, so that a short stretch does not switch back and forth.
-    const STIFF_LOOKS: usize = 4;
-    const EASY_LOOKS: usize = 20;
-
-    fn new(n: usize) -> Self {
-        // Any vector with all directions in it will do.
-        let vector = (0..n).map(|i| 1.0 / (1.0 + i as f64).sqrt()).collect();
-        Self { vector, product: vec![0.0; n], last: 0.0, streak: 0 }
-    }
-
-    /// Two power iterations with the Jacobian last evaluated.
-    fn measure(&mut self, rates: &Rates<'_>, step: f64) {
-        for _ in 0..2 {
-            rates.product(&self.vector, &mut self.product);
-            let along: f64 = self.product.iter().zip(&self.vector).map(|(a, b)| a * b).sum();
-            let size = |v: &[f64]| v.iter().map(|x| x * x).sum::<f64>().sqrt();
-            let (before, after) = (size(&self.vector), size(&self.product));
-            if after == 0.0 || !after.is_finite() {
-                self.last = 0.0;
-                return;
-            }
-            self.last = step.abs() * after / before * along.signum();
-            self.vector.iter_mut().zip(&self.product).for_each(|(v, p)| *v = p / after);
-        }
-    }
-
-    fn choice(&mut self, method: Method) -> Method {
-        let (other, speaks, enough) = match method {
-            Method::Explicit => (Method::Implicit, self.last < -Self::STIFF_ABOVE, Self::STIFF_LOOKS),
-            Method::Implicit => (Method::Explicit, self.last.abs() < Self::EASY_BELOW, Self::EASY_LOOKS),
-        };
-        self.streak = if speaks { self.streak + 1 } else { 0 };
-        if self.streak < enough {
-            return method;
-        }
-        self.streak = 0;
-        other
     }
 }
 

@@ -42,9 +42,9 @@ const ROUNDS: usize = 4;
 const BEYOND_SHEAR: f64 = 20.0;
 /// Standard deviations that a growth must be away from zero.
 const SURE: f64 = 4.0;
-/// A quasi-periodic motion has come back within this part of the range; every k-th of its returns, k being the
-/// number that comes nearest, have gone once round the closed curve that they fill, some three stretches long; and
-/// the stretch keeps its size within this part from the first half to the second. A slow drift does none of the
+/// A quasi-periodic motion has come back within this part of the range; the ways of its returns to the ones that
+/// come nearest go more than once round the closed curve that they fill, some three extents long; and the
+/// stretch filled keeps its size within this part from the first half to the second. A slow drift does none of the
 /// last two.
 const NEAR: f64 = 0.1;
 const LAPS: f64 = 3.3;

@@ -2,7 +2,7 @@
 //!
 //! What this crate is for: to follow a model in time and to tell what its motion comes to. An [`Integrator`]
 //! steps adaptively, explicitly or implicitly as the model demands, with dense output; a [`Section`] finds the
-//! returns to a level or to multiples of a forcing period, as accurately as the steps are; [`settle`] discards
+//! returns to a level or to multiples of a forcing period, as accurately as the steps are; [`settle()`] discards
 //! the transient by itself and gives a [`Verdict`]: a state of rest, a cycle with its period and its number of
 //! turns, a quasi-periodic or an irregular motion with their evidence, or what was seen until a limit was
 //! reached. A [`Cycle`] is handed over as a profile on a mesh of the caller's size, good enough to start Newton's
@@ -75,9 +75,11 @@ mod observe;
 mod options;
 mod radau;
 mod rates;
+mod rest;
 mod returns;
 mod section;
 mod settle;
+mod stiffness;
 mod tangent;
 // The tests of the whole crate share these and use models that the unit tests do not.
 #[cfg(test)]

@@ -42,11 +42,8 @@ impl Lu {
 
     pub(crate) fn solve_in_place(&self, b: &mut [f64]) {
         let n = self.n;
-        for k in 0..n {
-            b.swap(k, self.pivots[k]);
-            // The factors are stored with whole rows swapped, so the right side is permuted as a whole
-            // before the substitution below.
-        }
+        // Whole rows were swapped while factoring, so the right side is permuted before the substitution.
+        self.pivots.iter().enumerate().for_each(|(k, &pivot)| b.swap(k, pivot));
         for (k, row) in self.entries.chunks_exact(n).enumerate() {
             let sum: f64 = row[..k].iter().zip(&*b).map(|(l, value)| l * value).sum();
             b[k] -= sum;

@@ -69,3 +69,11 @@ pub(crate) fn liveliest(ranges: &[(f64, f64)]) -> usize {
     let better = |best: usize, i: usize| if relative(&ranges[i]) > relative(&ranges[best]) { i } else { best };
     (1..ranges.len()).fold(0, better)
 }
+
+/// Sizes with zeros replaced by the largest of them, or by `fallback` where all are zero.
+pub(crate) fn filled(mut sizes: Vec<f64>, fallback: f64) -> Vec<f64> {
+    let largest = sizes.iter().copied().fold(0.0, f64::max);
+    let fill = if largest > 0.0 { largest } else { fallback };
+    sizes.iter_mut().filter(|size| **size == 0.0).for_each(|size| *size = fill);
+    sizes
+}

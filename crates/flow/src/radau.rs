@@ -66,10 +66,9 @@ fn nodes() -> [f64; STAGES] {
 fn coefficients(c: &[f64; STAGES]) -> ([[f64; STAGES]; STAGES], f64, [f64; STAGES]) {
     // Row q of the transposed Vandermonde matrix: Sum_j w_j c_j^q = right side q, for q = 0 … s-1.
     let mut moments = Lu::new(STAGES);
-    for q in 0..STAGES {
-        for j in 0..STAGES {
-            moments.entries[q * STAGES + j] = c[j].powi(q as i32);
-        }
+    for (k, entry) in moments.entries.iter_mut().enumerate() {
+        let (q, j) = (k / STAGES, k % STAGES);
+        *entry = c[j].powi(q as i32);
     }
     assert!(moments.factor(), "the nodes are distinct");
     let a: [[f64; STAGES]; STAGES] = std::array::from_fn(|i| {
@@ -78,10 +77,8 @@ fn coefficients(c: &[f64; STAGES]) -> ([[f64; STAGES]; STAGES], f64, [f64; STAGE
         row
     });
     let mut transposed = Lu::new(STAGES);
-    for i in 0..STAGES {
-        for j in 0..STAGES {
-            transposed.entries[j * STAGES + i] = a[i][j];
-        }
+    for (k, entry) in transposed.entries.iter_mut().enumerate() {
+        *entry = a[k % STAGES][k / STAGES];
     }
     assert!(transposed.factor(), "the matrix of the method is regular");
     // Any positive gamma gives order s; the mean size of the eigenvalues of A filters as the method does.

@@ -116,7 +116,7 @@ impl Sequence<'_> {
             return None;
         }
         let apart = (APART * left.max(end)).max(tolerance.sqrt());
-        let mut parts = (1..k).filter(|part| k % part == 0);
+        let mut parts = (1..k).filter(|part| k.is_multiple_of(*part));
         if parts.any(|part| (last..last + k - part).all(|i| self.distance(i, part) <= apart)) {
             return None;
         }
@@ -146,12 +146,13 @@ impl Sequence<'_> {
         Some(Closing::Leap { state: a.iter().zip(b).map(|(a, b)| b + factor * (b - a)).collect() })
     }
 
-    /// How often the returns, every `k`-th of them, go along the whole stretch that they fill: about 1 for a drift
-    /// to one side, many for a closed curve that they go round.
+    /// Length of the ways from every return to the `k`-th after it, together, in units of the extent of all
+    /// returns. A drift to one point goes once along the extent, to k points far apart on k short ways; a closed
+    /// curve is gone round many times, or covered many times over by k pieces.
     pub(crate) fn laps(&self, k: usize) -> f64 {
-        let chain = || (0..self.returns.len().saturating_sub(k)).step_by(k);
-        let path: f64 = chain().map(|i| self.distance(i, k)).sum();
-        let extent = chain().map(|i| self.distance(0, i)).fold(0.0, f64::max);
+        let count = self.returns.len();
+        let path: f64 = (0..count.saturating_sub(k)).map(|i| self.distance(i, k)).sum();
+        let extent = (0..count).map(|i| self.distance(0, i)).fold(0.0, f64::max);
         if extent > 0.0 { path / extent } else { 0.0 }
     }
 

@@ -158,7 +158,7 @@ mod tests {
         }
         for pair in found.windows(2) {
             let period = pair[1].time - pair[0].time;
-            assert!((period - 5.585_053_606_381_854_6).abs() < 1e-11, "{period}");
+            assert!((period - 5.585_053_606_381_854).abs() < 1e-11, "{period}");
         }
     }
 

@@ -14,8 +14,9 @@ use crate::equilibrium::{Equilibrium, newton};
 use crate::error::FlowError;
 use crate::integrator::{Integrator, Limits, Tolerance, check_length};
 use crate::judge::{Kind, judge};
-use crate::observe::Observation;
+use crate::observe::{Observation, filled};
 use crate::options::SettleOptions;
+use crate::rest::{AT_REST, Outlook, RestWatch};
 use crate::returns::{Closing, Sequence};
 use crate::section::{Return, Section};
 use crate::verdict::{Evidence, Limit, Push, Settled, Verdict};
@@ -38,15 +39,6 @@ const MANY: usize = 256;
 /// range is larger by this factor.
 const MEAN_MOVED: f64 = 0.1;
 const LIVELIER: f64 = 1.2;
-/// How near, relative to the size of the states, counts as being at rest.
-const AT_REST: f64 = 1e-9;
-/// Nearer than this a decay at the rate of the eigenvalue, within `SAME_RATE`, over windows that hold at
-/// least `DECAY` of it, twice in a row, is taken for going to rest.
-const NEAR_REST: f64 = 0.02;
-const SAME_RATE: f64 = 0.1;
-const DECAY: f64 = 0.3;
-/// Windows after which a motion that stands still where Newton's method fails is at rest too.
-const STILL_WINDOWS: usize = 12;
 /// Relative size of the push given to a motion that rests where it cannot stay, and how often.
 const PUSH: f64 = 1e-4;
 const PUSHES: usize = 3;
@@ -109,10 +101,7 @@ struct Settling<'a, 'b> {
     /// Largest range of each state over any window.
     largest: Vec<f64>,
     window: f64,
-    windows: usize,
-    /// Reach from the state of rest in the window before, with the time of its end.
-    decay: Option<(f64, f64)>,
-    decays: usize,
+    rest_watch: RestWatch,
     leaps: usize,
     pushes: Vec<Push>,
 }
@@ -130,9 +119,7 @@ impl<'a, 'b> Settling<'a, 'b> {
             seen: Observation::new(n),
             largest: vec![0.0; n],
             window: 0.0,
-            windows: 0,
-            decay: None,
-            decays: 0,
+            rest_watch: RestWatch::default(),
             leaps: 0,
             pushes: Vec::new(),
         }
@@ -199,7 +186,6 @@ impl<'a, 'b> Settling<'a, 'b> {
             }
         }
         self.window = self.seen.time;
-        self.windows = 1;
         Ok(())
     }
 
@@ -225,7 +211,6 @@ impl<'a, 'b> Settling<'a, 'b> {
         if self.all_returns - before < FEW {
             self.window *= 2.0;
         }
-        self.windows += 1;
         Ok(())
     }
 
@@ -350,53 +335,15 @@ impl<'a, 'b> Settling<'a, 'b> {
         if matches!(self.section, Some(Section::Period { .. })) {
             return Ok(None);
         }
-        let n = self.largest.len();
-        let sizes: Vec<f64> = (0..n).map(|i| self.largest[i].max(self.seen.magnitude(i))).collect();
-        let scale = filled(sizes, 1.0);
-        let state = self.integrator.state().to_vec();
-        let time = self.integrator.time();
-        let Some(found) = newton(&mut self.integrator.rates, time, &state, &scale) else {
-            return Ok(self.still(&scale));
-        };
-        let far = |i: usize| {
-            let at = found.state[i];
-            (self.seen.low[i] - at).abs().max((self.seen.high[i] - at).abs()) / scale[i]
-        };
-        let reach = (0..n).map(far).fold(0.0, f64::max);
-        let is_neutral = found.growth().abs() <= ROUNDOFF * largest_eigenvalue(&found);
-        if reach <= AT_REST && (found.is_stable() || is_neutral) {
-            return Ok(Some(found));
-        }
-        if reach <= AT_REST && found.growth() > 0.0 {
-            if self.pushes.len() == PUSHES {
-                return Ok(Some(found));
+        match self.rest_watch.look(&mut self.integrator, &self.seen, &self.largest) {
+            Outlook::Moves => Ok(None),
+            Outlook::Rests(found) => Ok(Some(found)),
+            Outlook::RestsUnstably(found) if self.pushes.len() == PUSHES => Ok(Some(found)),
+            Outlook::RestsUnstably(found) => {
+                self.push(found)?;
+                Ok(None)
             }
-            self.push(found)?;
-            return Ok(None);
         }
-        Ok(self.decays_to(&found, reach).then_some(found))
-    }
-
-    /// Whether the reach has fallen at the rate of the slowest eigenvalue in two windows in a row.
-    fn decays_to(&mut self, found: &Equilibrium, reach: f64) -> bool {
-        let time = self.integrator.time() - self.seen.time;
-        let before = self.decay.replace((time, reach));
-        let Some((earlier, larger)) = before else { return false };
-        let expected = -found.growth() * (time - earlier);
-        let decayed = (larger / reach).ln();
-        let as_expected = (decayed - expected).abs() <= SAME_RATE * expected;
-        let counts = found.is_stable() && larger <= NEAR_REST && expected >= DECAY && as_expected;
-        self.decays = if counts { self.decays + 1 } else { 0 };
-        self.decays >= 2
-    }
-
-    /// A motion that no longer moves where the Jacobian is singular.
-    fn still(&mut self, scale: &[f64]) -> Option<Equilibrium> {
-        let moves = (0..scale.len()).any(|i| self.seen.range(i) > AT_REST * scale[i]);
-        if moves || self.windows < STILL_WINDOWS {
-            return None;
-        }
-        Some(Equilibrium { state: self.integrator.state().to_vec(), eigenvalues: Vec::new() })
     }
 
     /// Moves every state up by a little, each by another part of its size, and forgets what was seen.
@@ -417,8 +364,7 @@ impl<'a, 'b> Settling<'a, 'b> {
         self.integrator.restart(time, &state)?;
         self.pushes.push(Push { time, equilibrium, size });
         self.returns.clear();
-        self.decay = None;
-        self.decays = 0;
+        self.rest_watch = RestWatch::default();
         Ok(())
     }
 
@@ -464,16 +410,4 @@ impl<'a, 'b> Settling<'a, 'b> {
             exponent: None,
         }
     }
-}
-
-fn largest_eigenvalue(equilibrium: &Equilibrium) -> f64 {
-    equilibrium.eigenvalues.iter().map(|(re, im)| re.hypot(*im)).fold(0.0, f64::max)
-}
-
-/// Sizes with zeros replaced by the largest of them, or by `fallback` where all are zero.
-fn filled(mut sizes: Vec<f64>, fallback: f64) -> Vec<f64> {
-    let largest = sizes.iter().copied().fold(0.0, f64::max);
-    let fill = if largest > 0.0 { largest } else { fallback };
-    sizes.iter_mut().filter(|size| **size == 0.0).for_each(|size| *size = fill);
-    sizes
 }

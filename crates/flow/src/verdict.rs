@@ -72,7 +72,7 @@ pub struct Push {
     pub size: f64,
 }
 
-/// The outcome of [`settle`].
+/// The outcome of [`settle()`](crate::settle()).
 #[derive(Clone, Debug)]
 pub struct Settled {
     /// What it settled on.

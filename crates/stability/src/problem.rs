@@ -61,7 +61,10 @@ impl CycleSettings {
 /// Share of a state's range at the start of the branch below which its accuracy is no longer relative to its own range.
 const LEAST_RANGE: f64 = 1e-3;
 /// A new mesh must bring the estimated error below this share of the old one, or the floor of roundoff is reached.
-const WORTH: f64 = 0.7;
+const WORTH: f64 = 0.8;
+
+/// Meshes tried at one point: the estimate on the second is already that of a suitable one.
+const RENEWALS: usize = 3;
 
 /// Why a first cycle could not be made.
 #[derive(Clone, Debug, PartialEq)]
@@ -274,6 +277,21 @@ impl CycleProblem {
         ((too_coarse || too_fine) && !settled).then(|| choice.mesh.into())
     }
 
+    /// Corrects a point carried to a new mesh: at its parameter value, which an edge or target needs exactly, or, where
+    /// the branch nearly turns back in the parameter, normal to its tangent.
+    fn settle_on_mesh(&mut self, point: &mut CyclePoint, tangent: &CycleTangent) -> Result<Report, NewtonFailure> {
+        /// Share of the parameter in the tangent below which the branch nearly turns back.
+        const TURNING: f64 = 0.01;
+        if tangent.row.parameter.abs() > TURNING * self.metric.parameter_scale {
+            let value = point.unknowns.parameter;
+            return self.correct_at(point, value);
+        }
+        let row = self.arclength_row(tangent, &point.mesh.clone());
+        let target = row.apply(&point.unknowns);
+        let reference = point.unknowns.nodes.clone();
+        self.newton(point, &reference, &mut LinearClosing { row, target })
+    }
+
     /// Whether a change of mesh helped: fewer intervals, or a smaller error.
     fn is_worth(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
         after.mesh.len() < before.mesh.len() || self.profile_error(after) < WORTH * self.profile_error(before)
@@ -402,15 +420,18 @@ impl Problem for CycleProblem {
     }
 
     fn renew(&mut self, point: &CyclePoint, tangents: &[&CycleTangent]) -> Option<(CyclePoint, Vec<CycleTangent>)> {
-        let mesh = self.better_mesh(point)?;
-        let mut renewed = point.on_mesh(self.system.tables(), &mesh);
-        let tangents: Vec<CycleTangent> = tangents.iter().map(|t| t.on_mesh(self.system.tables(), &mesh)).collect();
-        let direction = tangents.first()?;
-        let row = self.arclength_row(direction, &mesh);
-        let target = row.apply(&renewed.unknowns);
-        let reference = renewed.unknowns.nodes.clone();
-        // Where the new mesh does not converge the old point stands, with its larger error shown.
-        self.newton(&mut renewed, &reference, &mut LinearClosing { row, target }).ok()?;
-        self.is_worth(point, &renewed).then_some((renewed, tangents))
+        let mut best: Option<(CyclePoint, Vec<CycleTangent>)> = None;
+        for _ in 0..RENEWALS {
+            let now = best.as_ref().map_or(point, |(point, _)| point);
+            let Some(mesh) = self.better_mesh(now) else { break };
+            let mut renewed = now.on_mesh(self.system.tables(), &mesh);
+            let carried: Vec<CycleTangent> = tangents.iter().map(|t| t.on_mesh(self.system.tables(), &mesh)).collect();
+            // Where the new mesh does not converge the old point stands, with its larger error shown.
+            if self.settle_on_mesh(&mut renewed, carried.first()?).is_err() || !self.is_worth(now, &renewed) {
+                break;
+            }
+            best = Some((renewed, carried));
+        }
+        best
     }
 }

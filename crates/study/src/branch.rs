@@ -11,7 +11,7 @@ use crate::error::StudyError;
 use crate::progress::{Observer, Progress};
 use crate::settings::follow_settings;
 use crate::study::Study;
-use crate::walk::{Found, Walk, WalkPlan, WalkSink, Walked, at_parameter, end, walk};
+use crate::walk::{Found, Walk, WalkPlan, WalkSink, Walked, at_parameter, end, short, walk};
 
 /// Every k-th profile is kept in a branch file; the first and the last always.
 const KEEP_EVERY: usize = 10;
@@ -188,7 +188,7 @@ fn outwards(run: &mut Run<'_>, lineage: &Lineage, doubled: Doubled) -> Result<Fi
     let born = end(
         EndReason::ReturnsToParent,
         birth.unknowns.parameter,
-        format!("returns to its parent: born at {parent}, {} = {}", run_parameter(&plan), birth.unknowns.parameter),
+        format!("returns to its parent: born at {parent}, {} = {}", run_parameter(&plan), short(plan.study, birth.unknowns.parameter)),
     );
     let mut walked = vec![Walked { point: first, cycle: birth }, Walked { point: second, cycle: point }];
     walked.extend(forward.points);

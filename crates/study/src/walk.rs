@@ -132,14 +132,22 @@ fn passed_through(
     let last = before.point.unknowns.parameter;
     if problem.passed_equilibrium(&before.point, &after.point) {
         let value = extrapolate_to_rest(motions);
-        let words = format!("shrinks to an equilibrium at {} = {value}", with_unit_name(plan));
+        let words = format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), short(plan.study, value));
         return Some(end(EndReason::Equilibrium { value }, last, words));
     }
     if plan.doubled && problem.passed_birth(&before.point, &after.point) {
-        let words = format!("returns to its parent near {} = {last}", with_unit_name(plan));
+        let words = format!("returns to its parent near {} = {}", with_unit_name(plan), short(plan.study, last));
         return Some(end(EndReason::ReturnsToParent, last, words));
     }
     None
+}
+
+/// A number for a sentence: ten digits, and 0 where it is 0 to the roundoff of the asked range.
+pub(crate) fn short(study: &Study, value: f64) -> String {
+    let scale = (study.range.1 - study.range.0).max(study.range.0.abs()).max(study.range.1.abs());
+    let rounded = if value.abs() < 1e-11 * scale { 0.0 } else { value };
+    let shown = format!("{rounded:.9e}").parse::<f64>().unwrap_or(rounded);
+    format!("{shown}")
 }
 
 /// Parameter at amplitude 0 from the last three points: near a Hopf point the parameter is an even function of the
@@ -302,23 +310,24 @@ const NEARLY_AT_REST: f64 = 0.02;
 fn end_of_follower(follower: &mut Follower<'_, CycleProblem>, plan: &WalkPlan<'_>, motions: &[(f64, f64)]) -> End {
     let value = follower.current().point.unknowns.parameter;
     let name = with_unit_name(plan);
+    let here = short(plan.study, value);
     let largest = motions.iter().map(|m| m.0).fold(0.0, f64::max);
     let shrunk = motions.last().is_some_and(|m| m.0 < NEARLY_AT_REST * largest) && motions.len() > 2;
     match follower.end() {
-        Some(FollowEnd::Edge(value)) => end(EndReason::Edge, *value, format!("reaches the edge of the asked range, {name} = {value}")),
+        Some(FollowEnd::Edge(edge)) => end(EndReason::Edge, *edge, format!("reaches the edge of the asked range, {name} = {edge}")),
         Some(FollowEnd::Closed) => end(EndReason::Closed, value, "closed upon itself: its start was met again".into()),
-        Some(FollowEnd::Budget) => end(EndReason::Budget, value, format!("all points allowed by `pursue` were used at {name} = {value}")),
+        Some(FollowEnd::Budget) => end(EndReason::Budget, value, format!("all points allowed by `pursue` were used at {name} = {here}")),
         Some(FollowEnd::Stuck | FollowEnd::Outside(_)) if shrunk => {
             let rest = extrapolate_to_rest(motions);
-            let words = format!("shrinks to an equilibrium at {name} = {rest}");
+            let words = format!("shrinks to an equilibrium at {name} = {}", short(plan.study, rest));
             end(EndReason::Equilibrium { value: rest }, value, words)
         }
         Some(FollowEnd::Outside(fault)) => {
-            end(EndReason::NotFinite, value, format!("a rate is not finite beyond {name} = {value}: {fault}"))
+            end(EndReason::NotFinite, value, format!("a rate is not finite beyond {name} = {here}: {fault}"))
         }
         Some(FollowEnd::Stuck) => {
-            end(EndReason::Stuck, value, format!("the corrector fails at the shortest stride at {name} = {value}"))
+            end(EndReason::Stuck, value, format!("the corrector fails at the shortest stride at {name} = {here}"))
         }
-        None => end(EndReason::Stuck, value, format!("the multipliers could not be computed at {name} = {value}")),
+        None => end(EndReason::Stuck, value, format!("the multipliers could not be computed at {name} = {here}")),
     }
 }
