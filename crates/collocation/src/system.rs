@@ -201,6 +201,10 @@ impl System {
     pub fn spec(&self) -> &SystemSpec {
         &self.spec
     }
+    /// Changes the metric of scaled norms and of the phase condition.
+    pub fn set_metric(&mut self, metric: Metric) {
+        self.spec.metric = metric;
+    }
     /// Basis tables.
     pub fn tables(&self) -> &Tables {
         &self.tables

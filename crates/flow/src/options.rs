@@ -15,7 +15,8 @@ pub struct SettleOptions<'a> {
     pub longest_time: Option<f64>,
     /// Steps allowed in all. Default 2 million, some seconds for a small model.
     pub steps: usize,
-    /// Returns watched in all before the motion counts as not settled. Default 4000.
+    /// Returns watched before the motion counts as one that closes nowhere; up to 4000 more then tell whether it is
+    /// quasi-periodic or irregular. Default 4000.
     pub returns: usize,
     /// Period of the forcing; needed where the rates use the time.
     pub forcing_period: Option<f64>,

@@ -25,6 +25,8 @@ use crate::verdict::{Evidence, Limit, Push, Settled, Verdict};
 const STEP_PART: f64 = 0.01;
 /// Least error allowed in a step relative to the state itself, some hundred units in the last place.
 const ROUNDOFF: f64 = 1e-13;
+/// Roundoff of a rate in units in the last place of its largest terms.
+const NOISE_UNITS: f64 = 10.0;
 /// A state whose range is below this part of its size does not move: what is seen of it is roundoff.
 const MOVES: f64 = 1e-10;
 /// A state that grows by this factor beyond all states at the start is taken for divergent: far more than
@@ -224,7 +226,9 @@ impl<'a, 'b> Settling<'a, 'b> {
             if size > 0.0 { (part * (ranges[i] / size).min(1.0)).max(ROUNDOFF) } else { part }
         };
         let relative = (0..n).map(relative).collect();
-        self.integrator.set_tolerance(Tolerance { absolute: ranges.iter().map(|r| part * r).collect(), relative })?;
+        let noise = self.noise();
+        let absolute = ranges.iter().zip(&noise).map(|(range, noise)| (part * range).max(*noise)).collect();
+        self.integrator.set_tolerance(Tolerance { absolute, relative })?;
         if matches!(self.section, Some(Section::Period { .. })) {
             return Ok(());
         }
@@ -240,6 +244,21 @@ impl<'a, 'b> Settling<'a, 'b> {
             self.returns.clear();
         }
         Ok(())
+    }
+
+    /// Roundoff of the rates over one step: errors below it cannot be asked for, even of a state that rests near
+    /// zero between large terms that cancel.
+    fn noise(&mut self) -> Vec<f64> {
+        let (time, state) = (self.integrator.time(), self.integrator.state().to_vec());
+        let step = self.integrator.time() - self.integrator.previous_time();
+        let mut noise = vec![0.0; state.len()];
+        self.integrator.rates.linearise(time, &state);
+        for (row, column, value) in self.integrator.rates.entries() {
+            noise[row] += NOISE_UNITS * f64::EPSILON * step * (value * state[column]).abs();
+        }
+        // A derivative that is not finite here says nothing of the noise.
+        noise.iter_mut().filter(|noise| !noise.is_finite()).for_each(|noise| *noise = 0.0);
+        noise
     }
 
     /// Whether some state is clearly livelier than this one.

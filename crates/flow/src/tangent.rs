@@ -2,7 +2,8 @@
 //!
 //! Inside each step of the orbit, x(t) is its dense output, and the linear equation is solved by one step of
 //! Radau IIA with five stages: the increments z_i of the stages solve
-//! `z_i - h Sum_j a_ij J_j z_j = h Sum_j a_ij J_j v`, one linear system of size s n a step. L-stable, so damped
+//! `z_i - h Sum_j a_ij J_j z_j = h Sum_j a_ij J_j v`, found by substitution where the step is not stiff, else
+//! by one linear system of size s n. L-stable, so damped
 //! disturbances die whatever the step; order 9 where they matter.
 //!
 //! The part of v along the flow neither grows nor shrinks in the long run. It is taken out where the motion
@@ -20,11 +21,21 @@ pub(crate) struct Tangent {
     scale: Vec<f64>,
     /// Whether the part along the flow is taken out.
     across: bool,
-    jacobians: Vec<f64>,
+    /// (row, column, value) of the Jacobians, stage after stage.
+    jacobians: Vec<(usize, usize, f64)>,
     stages: Vec<f64>,
+    slopes: Vec<f64>,
     point: Vec<f64>,
-    system: Lu,
+    /// Made when the first stiff step needs it.
+    system: Option<Lu>,
 }
+
+/// Substitutions allowed: explicit steps contract by about one half each.
+const ITERATIONS: usize = 60;
+/// Relative change at which the stages have converged, far below what an exponent needs.
+const CONVERGED: f64 = 1e-12;
+/// Stages this large (the disturbance has size 1) are diverging.
+const HOPELESS: f64 = 1e12;
 
 impl Tangent {
     /// A disturbance with all directions in it.
@@ -36,33 +47,28 @@ impl Tangent {
             vector,
             scale: scale.to_vec(),
             across,
-            jacobians: vec![0.0; STAGES * n * n],
+            jacobians: Vec::new(),
             stages: vec![0.0; STAGES * n],
+            slopes: vec![0.0; STAGES * n],
             point: vec![0.0; n],
-            system: Lu::new(STAGES * n),
+            system: None,
         }
     }
 
     /// Carries the disturbance over the last step of `integrator` and scales it back to size 1; the logarithm
     /// of its growth, or none where the step is too long for its Jacobian.
     pub(crate) fn carry(&mut self, integrator: &mut Integrator<'_>) -> Option<f64> {
-        let n = self.vector.len();
         let h = integrator.time() - integrator.previous_time();
-        for i in 0..STAGES {
-            integrator.dense(self.table.c[i], &mut self.point);
-            let time = integrator.previous_time() + self.table.c[i] * h;
-            integrator.rates.linearise(time, &self.point);
-            let block = &mut self.jacobians[i * n * n..(i + 1) * n * n];
-            block.fill(0.0);
-            for (row, column, value) in integrator.rates.entries() {
-                block[row * n + column] = value;
-            }
+        self.jacobians.clear();
+        for c in self.table.c {
+            integrator.dense(c, &mut self.point);
+            integrator.rates.linearise(integrator.previous_time() + c * h, &self.point);
+            self.jacobians.extend(integrator.rates.entries());
         }
-        self.assemble(h);
-        if !self.system.factor() {
+        if !self.iterate(h) && !self.solve(h) {
             return None;
         }
-        self.system.solve_in_place(&mut self.stages);
+        let n = self.vector.len();
         let last = &self.stages[(STAGES - 1) * n..];
         self.vector.iter_mut().zip(last).for_each(|(v, z)| *v += z);
         if self.across {
@@ -71,24 +77,58 @@ impl Tangent {
         Some(self.rescale())
     }
 
-    fn assemble(&mut self, h: f64) {
+    /// Solves the stages by substituting them into themselves; false where that does not converge. It does
+    /// where the steps are not stiff, at the cost of sparse products alone.
+    fn iterate(&mut self, h: f64) -> bool {
         let n = self.vector.len();
-        let size = STAGES * n;
-        self.system.entries.fill(0.0);
         self.stages.fill(0.0);
-        for (i, weights) in self.table.a.iter().enumerate() {
-            for (j, weight) in weights.iter().enumerate() {
-                for row in 0..n {
-                    let source = &self.jacobians[(j * n + row) * n..(j * n + row + 1) * n];
-                    let start = (i * n + row) * size + j * n;
-                    let target = &mut self.system.entries[start..start + n];
-                    target.iter_mut().zip(source).for_each(|(t, value)| *t -= h * weight * value);
-                    let product: f64 = source.iter().zip(&self.vector).map(|(a, v)| a * v).sum();
-                    self.stages[i * n + row] += h * weight * product;
-                }
+        for _ in 0..ITERATIONS {
+            self.slopes.fill(0.0);
+            let per_stage = self.jacobians.len() / STAGES;
+            for (k, &(row, column, value)) in self.jacobians.iter().enumerate() {
+                let at = k / per_stage * n;
+                self.slopes[at + row] += value * (self.vector[column] + self.stages[at + column]);
+            }
+            let (mut change, mut size) = (0.0f64, 0.0f64);
+            for (k, stage) in self.stages.iter_mut().enumerate() {
+                let (i, l) = (k / n, k % n);
+                let sum: f64 = (0..STAGES).map(|j| self.table.a[i][j] * self.slopes[j * n + l]).sum();
+                change = change.max(((h * sum - *stage) / self.scale[l]).abs());
+                size = size.max((h * sum / self.scale[l]).abs());
+                *stage = h * sum;
+            }
+            if change <= CONVERGED * (1.0 + size) {
+                return true;
+            }
+            if size.is_nan() || size > HOPELESS {
+                return false;
             }
         }
-        (0..size).for_each(|k| self.system.entries[k * size + k] += 1.0);
+        false
+    }
+
+    /// Solves the stages as one linear system; false where it is singular or not finite.
+    fn solve(&mut self, h: f64) -> bool {
+        let n = self.vector.len();
+        let size = STAGES * n;
+        let system = self.system.get_or_insert_with(|| Lu::new(size));
+        system.entries.fill(0.0);
+        self.stages.fill(0.0);
+        let per_stage = self.jacobians.len() / STAGES;
+        for (k, &(row, column, value)) in self.jacobians.iter().enumerate() {
+            let j = k / per_stage;
+            for (i, weights) in self.table.a.iter().enumerate() {
+                let part = h * weights[j] * value;
+                system.entries[(i * n + row) * size + j * n + column] -= part;
+                self.stages[i * n + row] += part * self.vector[column];
+            }
+        }
+        (0..size).for_each(|k| system.entries[k * size + k] += 1.0);
+        let regular = system.factor();
+        if regular {
+            system.solve_in_place(&mut self.stages);
+        }
+        regular
     }
 
     /// Takes out the part along the flow.

@@ -295,7 +295,8 @@ impl<'a, Q: Problem> Follower<'a, Q> {
             point = renewed;
             tangent = tangents.pop().expect("renew returns as many tangents as it gets");
         }
-        let watch = self.problem.watch(&point, &tangent)?;
+        let mut watch = self.problem.watch(&point, &tangent)?;
+        keep_signs(&self.current.watch, &mut watch);
         let step = Step {
             crossings: crossings(&self.current.watch, &watch),
             unstable: (self.current.watch.unstable_count, watch.unstable_count),
@@ -343,10 +344,19 @@ impl Landing {
     }
 }
 
+/// A value of exactly 0 has no sign; it keeps the one before, and the crossing shows at the next point.
+fn keep_signs(before: &Watch, now: &mut Watch) {
+    for (before, now) in before.values.iter().zip(&mut now.values) {
+        if now.value == 0.0 {
+            now.value = f64::MIN_POSITIVE.copysign(before.value);
+        }
+    }
+}
+
 fn crossings(before: &Watch, after: &Watch) -> Vec<Crossing> {
     let pairs = before.values.iter().zip(&after.values).enumerate();
     pairs
-        .filter(|(_, (a, b))| a.value * b.value < 0.0 || (b.value == 0.0 && a.value != 0.0))
+        .filter(|(_, (a, b))| a.value * b.value < 0.0)
         .map(|(index, (a, b))| Crossing { index, before: a.value, after: b.value })
         .collect()
 }

@@ -40,6 +40,26 @@ const EVEN_COEFFICIENTS: [f64; 22] = [
     5.990671762482134e-34, -1.5174548844682903e-35,
 ];
 
+/// Coefficients of the series of each derivative: `B_n / (n - order)!` for n = 2, 4, 6, ….
+static DERIVATIVE_COEFFICIENTS: [[f64; 22]; HIGHEST_ORDER as usize + 1] = derivative_coefficients();
+
+const fn derivative_coefficients() -> [[f64; 22]; HIGHEST_ORDER as usize + 1] {
+    let mut table = [EVEN_COEFFICIENTS; HIGHEST_ORDER as usize + 1];
+    let mut order = 1;
+    while order < table.len() {
+        let mut half = 0;
+        while half < EVEN_COEFFICIENTS.len() {
+            // n (n-1) … (n-order+1), zero where the power is too low to survive.
+            let remaining = 2 * (half + 1) as i64 - order as i64 + 1;
+            let factor = if remaining > 0 { remaining as f64 } else { 0.0 };
+            table[order][half] = table[order - 1][half] * factor;
+            half += 1;
+        }
+        order += 1;
+    }
+    table
+}
+
 /// `g^(order)(u)` over any scalar, order at most [`HIGHEST_ORDER`].
 pub(crate) fn bernoulli<S: Scalar>(order: u8, u: S) -> S {
     let order = usize::from(order.min(HIGHEST_ORDER));
@@ -52,9 +72,8 @@ fn series<S: Scalar>(order: usize, u: S) -> S {
     let square = u.clone() * u.clone();
     let first = order.div_ceil(2).max(1);
     let mut sum = S::from_f64(0.0);
-    for half in (first..=EVEN_COEFFICIENTS.len()).rev() {
-        let scale = falling(2 * half, order);
-        sum = sum * square.clone() + S::from_f64(EVEN_COEFFICIENTS[half - 1] * scale);
+    for &coefficient in DERIVATIVE_COEFFICIENTS[order][first - 1..].iter().rev() {
+        sum = sum * square.clone() + S::from_f64(coefficient);
     }
     // The lowest even n is 2 * first: its power of u is 2 for order 0, 1 for odd, 0 for even orders.
     match order {
@@ -65,29 +84,24 @@ fn series<S: Scalar>(order: usize, u: S) -> S {
     }
 }
 
-/// `n (n-1) … (n-order+1)`.
-fn falling(n: usize, order: usize) -> f64 {
-    (0..order).map(|k| (n - k) as f64).product()
-}
-
 fn recurrence<S: Scalar>(order: usize, u: S) -> S {
     let minus_one_plus_exp = u.clone().unary(crate::function::Unary::Expm1);
-    let mut slopes: Vec<S> = Vec::with_capacity(order + 1);
-    slopes.push(u.clone() / minus_one_plus_exp.clone());
+    let mut slopes: [S; HIGHEST_ORDER as usize + 1] = std::array::from_fn(|_| S::from_f64(0.0));
+    slopes[0] = u.clone() / minus_one_plus_exp.clone();
     if order == 0 {
-        return slopes.swap_remove(0);
+        return slopes[0].clone();
     }
     let one = S::from_f64(1.0);
     let q = -(one.clone() / (-u.clone()).unary(crate::function::Unary::Expm1));
-    slopes.push((one - u * q.clone()) / minus_one_plus_exp);
+    slopes[1] = (one - u * q.clone()) / minus_one_plus_exp;
     for k in 2..=order {
         let mut sum = slopes[0].clone();
         let mut binomial = 1.0;
-        for j in 1..k {
+        for (j, slope) in slopes.iter().enumerate().take(k).skip(1) {
             binomial *= (k + 1 - j) as f64 / j as f64;
-            sum = sum + slopes[j].clone() * S::from_f64(binomial);
+            sum = sum + slope.clone() * S::from_f64(binomial);
         }
-        slopes.push(-(q.clone() * sum));
+        slopes[k] = -(q.clone() * sum);
     }
-    slopes.swap_remove(order)
+    slopes[order].clone()
 }

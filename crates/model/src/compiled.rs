@@ -11,9 +11,7 @@ use std::sync::{Arc, Mutex, PoisonError};
 use nalgebra_sparse::pattern::SparsityPattern;
 
 use crate::derivative::{directional, gradients, reverse_gradient};
-use crate::field::{
-    Batch, Column, Direction, Evaluator, Gradient, Linearisation, NotProvided, VectorField,
-};
+use crate::field::{Batch, Column, Direction, Evaluator, Gradient, Linearisation, NotProvided, VectorField};
 use crate::graph::{Graph, Node, NodeId, Variable};
 use crate::lower::{Origin, lower};
 use crate::program::{Program, Slot, Workspace};
@@ -100,8 +98,7 @@ impl CompiledField {
         let n = rates.len();
         let pattern = SparsityPattern::try_from_offsets_and_indices(n, n, offsets, columns)
             .expect("gradients are sorted by variable and name states only");
-        let is_forced =
-            graph.reachable(&rates).iter().any(|id| graph.node(*id) == Node::Variable(Variable::Time));
+        let is_forced = graph.reachable(&rates).iter().any(|id| graph.node(*id) == Node::Variable(Variable::Time));
         let maker = Mutex::new(Maker { graph: grown, jacobian, programs: HashMap::new() });
         let shared = Shared { formulas: graph, rates, n_parameters, is_forced, pattern, maker };
         Self { shared: Arc::new(shared) }
@@ -141,6 +138,7 @@ impl VectorField for CompiledField {
     }
 
     fn evaluator(&self, columns: &[Column]) -> Box<dyn Evaluator> {
+        check_columns(columns, self.shared.n_parameters);
         let mut evaluator = CompiledEvaluator {
             field: Arc::clone(&self.shared),
             columns: columns.to_vec(),
@@ -151,6 +149,18 @@ impl VectorField for CompiledField {
             evaluator.program(kind, Sharing::Common);
         }
         Box::new(evaluator)
+    }
+}
+
+/// Checks that the columns of an evaluator exist and differ.
+///
+/// # Panics
+/// If they do not.
+pub(crate) fn check_columns(columns: &[Column], n_parameters: usize) {
+    for (at, column) in columns.iter().enumerate() {
+        let exists = !matches!(column, Column::Parameter(index) if *index >= n_parameters);
+        assert!(exists, "{column:?} is not one of the {n_parameters} parameters");
+        assert!(!columns[..at].contains(column), "{column:?} is asked for twice");
     }
 }
 
@@ -195,19 +205,12 @@ impl Maker {
     fn derivative(&mut self, rates: &[NodeId], columns: &[Column], parts: &[Parts]) -> Vec<NodeId> {
         let mut result = rates.to_vec();
         for (at, parts) in (0..).zip(parts) {
-            result = directional(&mut self.graph, &result, |variable| {
-                direction_entry(variable, at, *parts, columns)
-            });
+            result = directional(&mut self.graph, &result, |variable| direction_entry(variable, at, *parts, columns));
         }
         result
     }
 
-    fn second_gradient(
-        &mut self,
-        rates: &[NodeId],
-        columns: &[Column],
-        parts: Parts,
-    ) -> Vec<(Slot, NodeId)> {
+    fn second_gradient(&mut self, rates: &[NodeId], columns: &[Column], parts: Parts) -> Vec<(Slot, NodeId)> {
         let along = self.derivative(rates, columns, &[parts]);
         let mut sum = self.graph.whole(0);
         for (index, slope) in (0..).zip(along) {
@@ -362,12 +365,7 @@ impl Evaluator for CompiledEvaluator {
         self.run(Kind::Second([parts(u), parts(v)]), at, extra, &mut [out]);
     }
 
-    fn third(
-        &mut self,
-        at: Batch<'_>,
-        directions: [Direction<'_>; 3],
-        out: &mut [f64],
-    ) -> Result<(), NotProvided> {
+    fn third(&mut self, at: Batch<'_>, directions: [Direction<'_>; 3], out: &mut [f64]) -> Result<(), NotProvided> {
         check_output(out, self.field.rates.len() * at.len, "third derivatives");
         let extra = Extra { psi: &[], directions: directions.map(Some) };
         self.run(Kind::Third(directions.map(parts)), at, extra, &mut [out]);

@@ -115,7 +115,13 @@ impl Decimal {
     /// Exact sum, if it is short.
     pub fn plus(&self, other: &Self) -> Option<Self> {
         let ((a, ea), (b, eb)) = (self.parts()?, other.parts()?);
-        let low = if a == 0 { eb } else if b == 0 { ea } else { ea.min(eb) };
+        let low = if a == 0 {
+            eb
+        } else if b == 0 {
+            ea
+        } else {
+            ea.min(eb)
+        };
         let lift = |m: i128, e: i64| {
             let gap = u32::try_from(e - low).ok()?;
             if m == 0 { Some(0) } else { m.checked_mul(10_i128.checked_pow(gap)?) }

@@ -162,19 +162,15 @@ fn power_log_slopes(graph: &mut Graph, order: u8, a: NodeId, b: NodeId) -> Vec<(
 pub type SparseGradient = BTreeMap<Variable, NodeId>;
 
 /// Gradients of `outputs` in the variables for which `wanted` holds.
-pub fn gradients(
-    graph: &mut Graph,
-    outputs: &[NodeId],
-    wanted: impl Fn(Variable) -> bool,
-) -> Vec<SparseGradient> {
+pub fn gradients(graph: &mut Graph, outputs: &[NodeId], wanted: impl Fn(Variable) -> bool) -> Vec<SparseGradient> {
     let order = graph.reachable(outputs);
     let mut known: Vec<SparseGradient> = vec![SparseGradient::new(); graph.len()];
     for id in order {
         let mut gradient = SparseGradient::new();
-        if let Node::Variable(variable) = graph.node(id) {
-            if wanted(variable) {
-                gradient.insert(variable, graph.whole(1));
-            }
+        if let Node::Variable(variable) = graph.node(id)
+            && wanted(variable)
+        {
+            gradient.insert(variable, graph.whole(1));
         }
         if graph.node(id).children().any(|child| !known[child.0 as usize].is_empty()) {
             for (child, slope) in local_slopes(graph, id) {

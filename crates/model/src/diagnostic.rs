@@ -107,8 +107,7 @@ const SHOWN_CHARACTERS: usize = 110;
 impl fmt::Display for Diagnostic {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         writeln!(f, "{}:{}:{}: {}", self.file, self.line, self.column, self.message)?;
-        let characters: Vec<char> =
-            self.source_line.chars().map(|c| if c.is_control() { ' ' } else { c }).collect();
+        let characters: Vec<char> = self.source_line.chars().map(|c| if c.is_control() { ' ' } else { c }).collect();
         let mark = self.column - 1;
         let first = if characters.len() > SHOWN_CHARACTERS {
             mark.saturating_sub(SHOWN_CHARACTERS / 2)

@@ -7,17 +7,11 @@ use crate::scalar::Scalar;
 ///
 /// Allocates; meant for constants, checks and scalars of high precision. The hot loops use compiled
 /// fields.
-pub fn evaluate<S: Scalar>(
-    graph: &Graph,
-    outputs: &[NodeId],
-    value: impl Fn(Variable) -> S,
-) -> Vec<S> {
+pub fn evaluate<S: Scalar>(graph: &Graph, outputs: &[NodeId], value: impl Fn(Variable) -> S) -> Vec<S> {
     let order = graph.reachable(outputs);
     let mut values: Vec<Option<S>> = vec![None; graph.len()];
     for id in order {
-        let of = |child: NodeId| {
-            values[child.0 as usize].clone().expect("children come before their parents")
-        };
+        let of = |child: NodeId| values[child.0 as usize].clone().expect("children come before their parents");
         let result = match graph.node(id) {
             Node::Number(number) => S::from_decimal(&graph.number(number).to_string()),
             Node::Pi => S::pi(),
@@ -33,8 +27,5 @@ pub fn evaluate<S: Scalar>(
         };
         values[id.0 as usize] = Some(result);
     }
-    outputs
-        .iter()
-        .map(|id| values[id.0 as usize].clone().expect("outputs are reachable from themselves"))
-        .collect()
+    outputs.iter().map(|id| values[id.0 as usize].clone().expect("outputs are reachable from themselves")).collect()
 }

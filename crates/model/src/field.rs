@@ -86,6 +86,9 @@ pub trait VectorField: Send + Sync {
     /// Sparsity of the Jacobian in the states: n rows, n columns, compressed rows.
     fn pattern(&self) -> &SparsityPattern;
     /// A workspace-owning evaluator whose columns are `columns`, in that order.
+    ///
+    /// # Panics
+    /// If a column is no parameter of the field, or is given twice.
     fn evaluator(&self, columns: &[Column]) -> Box<dyn Evaluator>;
 }
 
@@ -102,13 +105,8 @@ pub trait Evaluator: Send {
     ///
     /// # Errors
     /// [`NotProvided`] by a field without third derivatives.
-    fn third(
-        &mut self,
-        at: Batch<'_>,
-        directions: [Direction<'_>; 3],
-        out: &mut [f64],
-    ) -> Result<(), NotProvided>;
-    /// Gradient of the scalar psi^T Df[v], in the states and in the columns, by one reverse sweep.
+    fn third(&mut self, at: Batch<'_>, directions: [Direction<'_>; 3], out: &mut [f64]) -> Result<(), NotProvided>;
+    /// Gradient of the scalar `psi^T Df[v]`, in the states and in the columns, by one reverse sweep.
     /// `psi` is n x len.
     fn second_gradient(&mut self, at: Batch<'_>, psi: &[f64], v: Direction<'_>, out: Gradient<'_>);
 }

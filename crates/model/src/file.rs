@@ -129,9 +129,7 @@ impl Located {
         let raw = raw.trim().get_ron();
         let start = (raw.as_ptr() as usize).saturating_sub(source.text.as_ptr() as usize);
         let span = start..start + raw.len();
-        let wrong = || {
-            Diagnostic::new(source, span.clone(), format!("{wanted} is expected here"))
-        };
+        let wrong = || Diagnostic::new(source, span.clone(), format!("{wanted} is expected here"));
         let first = raw.chars().next().unwrap_or(' ');
         if first.is_ascii_digit() || matches!(first, '-' | '+' | '.') {
             return Ok(Self { text: raw.to_owned(), inside: Some(start), span });

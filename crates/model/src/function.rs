@@ -41,7 +41,7 @@ pub enum Unary {
     Floor,
     /// -1, 0 or 1 by the sign: the slope of [`Unary::Abs`].
     Sign,
-    /// Derivative of the given order of `x / (exp(x) - 1)`; order 0 is the quotient itself.
+    /// Derivative of the given order (at most 8) of `x / (exp(x) - 1)`; order 0 is the quotient itself.
     Bernoulli(u8),
 }
 
@@ -111,10 +111,7 @@ impl Callable {
 
     /// Whether the function has corners or jumps, where no derivative exists.
     pub fn has_kinks(self) -> bool {
-        matches!(
-            self,
-            Self::One(Unary::Abs | Unary::Floor) | Self::Two(Binary::Min | Binary::Max)
-        )
+        matches!(self, Self::One(Unary::Abs | Unary::Floor) | Self::Two(Binary::Min | Binary::Max))
     }
 }
 

@@ -173,12 +173,7 @@ impl Graph {
         self.as_number(id).is_some_and(Decimal::is_zero)
     }
 
-    fn fold(
-        &mut self,
-        a: NodeId,
-        b: NodeId,
-        exact: fn(&Decimal, &Decimal) -> Option<Decimal>,
-    ) -> Option<NodeId> {
+    fn fold(&mut self, a: NodeId, b: NodeId, exact: fn(&Decimal, &Decimal) -> Option<Decimal>) -> Option<NodeId> {
         let folded = exact(self.as_number(a)?, self.as_number(b)?)?;
         Some(self.decimal(folded))
     }
@@ -246,10 +241,6 @@ impl Graph {
             if self.is_whole(factor, -1) {
                 return self.negate(other);
             }
-            if let Node::Negate(inner) = self.node(factor) {
-                let product = self.multiply(inner, other);
-                return self.negate(product);
-            }
             if let Some(merged) = self.merge_literals(factor, other) {
                 return merged;
             }
@@ -257,7 +248,12 @@ impl Graph {
         if a == b {
             return self.power(a, 2);
         }
-        self.insert(Node::Multiply(a, b))
+        let product = match (self.node(a), self.node(b)) {
+            (Node::Negate(inner), _) => self.multiply(inner, b),
+            (_, Node::Negate(inner)) => self.multiply(a, inner),
+            _ => return self.insert(Node::Multiply(a, b)),
+        };
+        self.negate(product)
     }
 
     /// `2 * (3 * x)` as `6 * x`.
@@ -345,10 +341,10 @@ impl Graph {
 
     /// A function of two arguments. Powers with a whole-number literal become [`Node::Power`].
     pub fn binary(&mut self, function: Binary, a: NodeId, b: NodeId) -> NodeId {
-        if function == Binary::PowerLog(0) {
-            if let Some(exponent) = self.as_number(b).and_then(Decimal::as_whole) {
-                return self.power(a, exponent);
-            }
+        if function == Binary::PowerLog(0)
+            && let Some(exponent) = self.as_number(b).and_then(Decimal::as_whole)
+        {
+            return self.power(a, exponent);
         }
         self.insert(Node::Binary(function, a, b))
     }

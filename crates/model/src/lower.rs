@@ -35,11 +35,7 @@ enum Value {
 type ValueId = u32;
 
 /// Lowers `outputs` to a program that writes each into its slot.
-pub(crate) fn lower(
-    graph: &Graph,
-    outputs: &[(Slot, NodeId)],
-    origin: impl Fn(Variable) -> Origin,
-) -> Program {
+pub(crate) fn lower(graph: &Graph, outputs: &[(Slot, NodeId)], origin: impl Fn(Variable) -> Origin) -> Program {
     let nodes: Vec<NodeId> = outputs.iter().map(|(_, node)| *node).collect();
     let mut values = Values::default();
     let mut lowered: HashMap<NodeId, ValueId> = HashMap::new();
@@ -266,8 +262,7 @@ impl Emitter {
 
     /// Whether the value is computed for each point.
     fn is_lane_operation(&self, value: ValueId) -> bool {
-        matches!(self.values.values[value as usize], Value::Operation(..))
-            && !self.values.is_uniform[value as usize]
+        matches!(self.values.values[value as usize], Value::Operation(..)) && !self.values.is_uniform[value as usize]
     }
 
     fn emit_value(&mut self, value: ValueId) {
@@ -322,10 +317,10 @@ impl Emitter {
     fn release(&mut self, value: ValueId) {
         let reads = &mut self.reads[value as usize];
         *reads -= 1;
-        if *reads == 0 {
-            if let Some(Operand::Register(register)) = self.place[value as usize] {
-                self.free.push(register);
-            }
+        if *reads == 0
+            && let Some(Operand::Register(register)) = self.place[value as usize]
+        {
+            self.free.push(register);
         }
     }
 

@@ -162,9 +162,8 @@ impl Model {
         let path = path.as_ref();
         let unreadable = |error| ModelError::Unreadable { path: path.display().to_string(), error };
         let bytes = std::fs::read(path).map_err(unreadable)?;
-        let text = String::from_utf8(bytes).map_err(|error| {
-            unreadable(std::io::Error::new(std::io::ErrorKind::InvalidData, error.utf8_error()))
-        })?;
+        let text = String::from_utf8(bytes)
+            .map_err(|error| unreadable(std::io::Error::new(std::io::ErrorKind::InvalidData, error.utf8_error())))?;
         Self::parse(&text, &path.display().to_string())
     }
 

@@ -3,7 +3,7 @@
 //! Every check adds what it finds to one list; the first error in the order of the file is returned.
 //! Order of work: names, values, formulas of the expressions in order of dependence, rates, forcing.
 
-use std::collections::HashMap;
+use std::collections::{HashMap, HashSet};
 use std::ops::Range;
 use std::sync::Arc;
 
@@ -15,7 +15,7 @@ use crate::file::{Located, ModelFile, read_shape};
 use crate::function::function_named;
 use crate::graph::{Graph, Node, NodeId, Variable};
 use crate::model::{Forcing, Formula, Kink, Model, Parameter, State, fingerprint};
-use crate::resolve::{Names, constant_node, resolve};
+use crate::resolve::{Meaning, Names, resolve};
 use crate::syntax::{Part, Syntax, parse};
 
 /// Help where a value may only be a constant.
@@ -24,12 +24,15 @@ const CONSTANT_ONLY: &str = "a value is a number or a constant formula of number
 /// Reads a model; the first error in the order of the file is returned.
 pub(crate) fn read_model(source: Source<'_>) -> Result<Model, Diagnostic> {
     let file = read_shape(source)?;
-    let mut reader = Reader { source, graph: Graph::new(), names: HashMap::new(), state_places: Vec::new(), errors: Vec::new() };
+    let mut reader =
+        Reader { source, graph: Graph::new(), names: HashMap::new(), state_places: Vec::new(), errors: Vec::new() };
     let states = reader.states(&file);
     let parameters = reader.parameters(&file);
     let expressions = reader.formulas(&file.expressions.0);
     reader.expression_names(&expressions);
+    let before_rates = reader.errors.len();
     let rates = reader.formulas(&file.rates.0);
+    reader.check_rate_names(&states, &rates, before_rates);
     let named = reader.expression_nodes(&expressions, file.forcing.is_some());
     let rate_nodes = reader.rate_nodes(&states, &rates, file.forcing.is_some());
     let forcing = file.forcing.as_ref().and_then(|entry| reader.forcing(entry.period, &parameters));
@@ -44,7 +47,8 @@ pub(crate) fn read_model(source: Source<'_>) -> Result<Model, Diagnostic> {
     let graph = Arc::new(reader.graph);
     let compiled = Arc::new(CompiledField::new((*graph).clone(), rate_nodes, parameters.len()));
     let text_of = |entry: &FormulaEntry| Formula { name: entry.name.text.clone(), text: entry.formula.text.clone() };
-    let rate_text = |state: &State| rates.iter().find(|rate| rate.name.text == state.name).map(text_of);
+    let rate_index = by_name(&rates);
+    let rate_text = |state: &State| rate_index.get(state.name.as_str()).map(|at| text_of(&rates[*at]));
     Ok(Model {
         title: file.title,
         note: file.note,
@@ -73,7 +77,7 @@ struct Reader<'a> {
     source: Source<'a>,
     graph: Graph,
     /// What each declared name stands for. An expression stands here once it is built.
-    names: HashMap<String, NodeId>,
+    names: HashMap<String, Meaning>,
     /// Where each state is declared.
     state_places: Vec<Range<usize>>,
     errors: Vec<Diagnostic>,
@@ -148,7 +152,7 @@ impl Reader<'_> {
         let names = HashMap::new();
         let scope = Names { known: &names, has_time: false, refused: Some(CONSTANT_ONLY) };
         match resolve(&mut self.graph, &syntax, &scope) {
-            Ok(node) => constant_node(&self.graph, node),
+            Ok(meaning) => meaning.constant,
             Err(error) => {
                 self.complain(located.place(&error.span), error.message, error.help);
                 None
@@ -169,7 +173,7 @@ impl Reader<'_> {
     fn declare(&mut self, name: &Located, variable: Variable) {
         if self.check_name(name) {
             let node = self.graph.variable(variable);
-            self.names.insert(name.text.clone(), node);
+            self.names.insert(name.text.clone(), Meaning { node, constant: None });
         }
     }
 
@@ -218,7 +222,7 @@ impl Reader<'_> {
             if self.check_name(&entry.name) {
                 // A variable of its own: an expression that fails must not make those that use it fail.
                 let placeholder = self.graph.variable(Variable::Extra { vector: u8::MAX, index });
-                self.names.insert(entry.name.text.clone(), placeholder);
+                self.names.insert(entry.name.text.clone(), Meaning { node: placeholder, constant: None });
             }
         }
     }
@@ -228,21 +232,20 @@ impl Reader<'_> {
         let mut named = Vec::new();
         for index in self.dependence_order(expressions) {
             let entry = &expressions[index];
-            if let Some(node) = self.resolve(entry, has_time) {
-                self.names.insert(entry.name.text.clone(), node);
-                named.push((entry.name.text.clone(), node));
+            if let Some(meaning) = self.resolve(entry, has_time) {
+                self.names.insert(entry.name.text.clone(), meaning);
+                named.push((entry.name.text.clone(), meaning.node));
             }
         }
-        let place = |name: &str| expressions.iter().position(|entry| entry.name.text == name);
-        named.sort_by_key(|(name, _)| place(name));
+        let index = by_name(expressions);
+        named.sort_by_key(|(name, _)| index.get(name.as_str()));
         named
     }
 
     /// Depth-first order in which every expression follows those it uses; a cycle is noted as an error
     /// and yields an order without the part that closes it.
     fn dependence_order(&mut self, expressions: &[FormulaEntry]) -> Vec<usize> {
-        let index: HashMap<&str, usize> =
-            expressions.iter().enumerate().rev().map(|(at, entry)| (entry.name.text.as_str(), at)).collect();
+        let index = by_name(expressions);
         let uses: Vec<Vec<(usize, Range<usize>)>> =
             expressions.iter().map(|entry| used_expressions(entry, &index)).collect();
         let mut order = Vec::new();
@@ -276,10 +279,10 @@ impl Reader<'_> {
         self.complain(span, message, Some(format!("the circle is {}", chain.join(" uses "))));
     }
 
-    fn resolve(&mut self, entry: &FormulaEntry, has_time: bool) -> Option<NodeId> {
+    fn resolve(&mut self, entry: &FormulaEntry, has_time: bool) -> Option<Meaning> {
         let scope = Names { known: &self.names, has_time, refused: None };
         match resolve(&mut self.graph, entry.syntax.as_ref()?, &scope) {
-            Ok(node) => Some(node),
+            Ok(meaning) => Some(meaning),
             Err(error) => {
                 self.complain(entry.formula.place(&error.span), error.message, error.help);
                 None
@@ -288,39 +291,45 @@ impl Reader<'_> {
     }
 
     fn rate_nodes(&mut self, states: &[State], rates: &[FormulaEntry], has_time: bool) -> Vec<NodeId> {
-        self.check_rate_names(states, rates);
+        let index = by_name(rates);
         let mut nodes = Vec::new();
         for state in states {
-            let node = rates.iter().find(|rate| rate.name.text == state.name);
-            nodes.extend(node.and_then(|rate| self.resolve(rate, has_time)));
+            let rate = index.get(state.name.as_str()).map(|at| &rates[*at]);
+            nodes.extend(rate.and_then(|rate| self.resolve(rate, has_time)).map(|meaning| meaning.node));
         }
         nodes
     }
 
-    fn check_rate_names(&mut self, states: &[State], rates: &[FormulaEntry]) {
-        for (at, state) in states.iter().enumerate() {
-            if !rates.iter().any(|rate| rate.name.text == state.name) {
-                let span = self.state_places[at].clone();
-                let name = &state.name;
-                let help = format!("add `\"{name}\": \"…\"` under `rates`");
-                self.complain(span, format!("the state `{name}` has no rate"), Some(help));
-            }
-        }
+    fn check_rate_names(&mut self, states: &[State], rates: &[FormulaEntry], known_errors: usize) {
         let state_names = || states.iter().map(|state| state.name.as_str());
+        let known: HashSet<&str> = state_names().collect();
+        let index = by_name(rates);
         for (at, rate) in rates.iter().enumerate() {
             let name = &rate.name.text;
-            if !state_names().any(|state| state == name) {
+            if !known.contains(name.as_str()) {
                 let help = match nearest_name(name, state_names()) {
                     Some(near) => format!("did you mean `{near}`?"),
                     None => "declare it under `states`, or move the formula to `expressions`".to_owned(),
                 };
                 self.complain(rate.name.whole(), format!("`{name}` has a rate but is not a state"), Some(help));
-            } else if rates[..at].iter().any(|earlier| earlier.name.text == *name) {
+            } else if index[name.as_str()] < at {
                 self.complain(
                     rate.name.whole(),
                     format!("the rate of `{name}` is given twice"),
                     Some("keep one of them".to_owned()),
                 );
+            }
+        }
+        // A misspelt or unreadable rate is the cause where there is one.
+        if self.errors.len() > known_errors {
+            return;
+        }
+        for (at, state) in states.iter().enumerate() {
+            if !index.contains_key(state.name.as_str()) {
+                let span = self.state_places[at].clone();
+                let name = &state.name;
+                let help = format!("add `\"{name}\": \"…\"` under `rates`");
+                self.complain(span, format!("the state `{name}` has no rate"), Some(help));
             }
         }
     }
@@ -329,7 +338,7 @@ impl Reader<'_> {
         let formula = self.located(raw, "a formula in quotes or a number")?;
         let syntax = self.syntax(&formula)?;
         let entry = FormulaEntry { name: formula.clone(), formula, syntax: Some(syntax) };
-        let node = self.resolve(&entry, true)?;
+        let node = self.resolve(&entry, true)?.node;
         let located = entry.formula;
         let is_parameter = |id: &NodeId| match self.graph.node(*id) {
             Node::Variable(variable) => matches!(variable, Variable::Parameter(_)),
@@ -388,6 +397,11 @@ impl Reader<'_> {
         kinks.sort_by_key(|kink| (kink.line, kink.column));
         kinks
     }
+}
+
+/// Index of the first entry of each name.
+fn by_name(entries: &[FormulaEntry]) -> HashMap<&str, usize> {
+    entries.iter().enumerate().rev().map(|(at, entry)| (entry.name.text.as_str(), at)).collect()
 }
 
 fn used_expressions(entry: &FormulaEntry, index: &HashMap<&str, usize>) -> Vec<(usize, Range<usize>)> {

@@ -3,17 +3,24 @@
 use std::collections::HashMap;
 
 use crate::diagnostic::nearest_name;
-use crate::evaluate::evaluate;
 use crate::function::{Binary, Callable, FUNCTIONS, function_named};
 use crate::graph::{Graph, NodeId, Variable};
 use crate::ratio::safe_quotient;
 use crate::scalar::{binary_f64, unary_f64};
 use crate::syntax::{Operator, Part, PartId, Syntax, SyntaxError};
 
+/// A formula, or a name for one, in the graph.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(crate) struct Meaning {
+    pub node: NodeId,
+    /// Its value, if no variable enters.
+    pub constant: Option<f64>,
+}
+
 /// What the names of a formula stand for.
 pub(crate) struct Names<'a> {
-    /// Names that may be used, with their nodes.
-    pub known: &'a HashMap<String, NodeId>,
+    /// Names that may be used, with what they stand for.
+    pub known: &'a HashMap<String, Meaning>,
     /// Whether `t` is the time.
     pub has_time: bool,
     /// Why a name that exists elsewhere in the file may not be used here.
@@ -21,22 +28,19 @@ pub(crate) struct Names<'a> {
 }
 
 /// Builds the formula in the graph.
-pub(crate) fn resolve(
-    graph: &mut Graph,
-    syntax: &Syntax,
-    names: &Names<'_>,
-) -> Result<NodeId, SyntaxError> {
+pub(crate) fn resolve(graph: &mut Graph, syntax: &Syntax, names: &Names<'_>) -> Result<Meaning, SyntaxError> {
     let mut nodes: Vec<NodeId> = Vec::with_capacity(syntax.parts.len());
     // The value of every part that no variable enters, to catch numbers that are not finite.
     let mut constants: Vec<Option<f64>> = Vec::with_capacity(syntax.parts.len());
     for id in 0..syntax.parts.len() {
         let node = build_part(graph, syntax, id, &nodes, names)?;
-        let constant = constant_of(graph, syntax, id, node, &constants);
+        let constant = constant_of(syntax, id, names, &constants);
         check_finite(syntax, id, constant, &constants)?;
         nodes.push(node);
         constants.push(constant);
     }
-    Ok(*nodes.last().expect("a parsed formula has a part"))
+    let node = *nodes.last().expect("a parsed formula has a part");
+    Ok(Meaning { node, constant: constants.last().copied().flatten() })
 }
 
 fn build_part(
@@ -50,9 +54,7 @@ fn build_part(
     let fail = |message: String, help: Option<String>| SyntaxError { span: span.clone(), message, help };
     match part {
         Part::Number(number) => Ok(graph.decimal(number.clone())),
-        Part::Name(name) => {
-            name_node(graph, name, names).map_err(|(message, help)| fail(message, help))
-        }
+        Part::Name(name) => name_node(graph, name, names).map_err(|(message, help)| fail(message, help)),
         Part::Negate(a) => Ok(graph.negate(nodes[*a])),
         Part::Operation(operator, a, b) => {
             let (a, b) = (nodes[*a], nodes[*b]);
@@ -71,8 +73,11 @@ fn build_part(
             })
         }
         Part::Call(name, name_span, arguments) => {
-            let function = callable(name, arguments.len(), names)
-                .map_err(|(message, help)| SyntaxError { span: name_span.clone(), message, help })?;
+            let function = callable(name, arguments.len(), names).map_err(|(message, help)| SyntaxError {
+                span: name_span.clone(),
+                message,
+                help,
+            })?;
             let arguments: Vec<NodeId> = arguments.iter().map(|a| nodes[*a]).collect();
             Ok(match function {
                 Callable::One(function) => graph.unary(function, arguments[0]),
@@ -85,8 +90,8 @@ fn build_part(
 type Trouble = (String, Option<String>);
 
 fn name_node(graph: &mut Graph, name: &str, names: &Names<'_>) -> Result<NodeId, Trouble> {
-    if let Some(&node) = names.known.get(name) {
-        return Ok(node);
+    if let Some(meaning) = names.known.get(name) {
+        return Ok(meaning.node);
     }
     if name == "pi" {
         return Ok(graph.pi());
@@ -161,18 +166,11 @@ fn not_a_function(name: &str, names: &Names<'_>) -> Trouble {
 }
 
 /// Value of a part that no variable enters.
-fn constant_of(
-    graph: &Graph,
-    syntax: &Syntax,
-    id: PartId,
-    node: NodeId,
-    constants: &[Option<f64>],
-) -> Option<f64> {
+fn constant_of(syntax: &Syntax, id: PartId, names: &Names<'_>, constants: &[Option<f64>]) -> Option<f64> {
     match &syntax.parts[id].0 {
         Part::Number(number) => Some(number.to_f64()),
         Part::Name(name) if name == "pi" => Some(std::f64::consts::PI),
-        // A named constant expression is a constant too.
-        Part::Name(_) => constant_node(graph, node),
+        Part::Name(name) => names.known.get(name)?.constant,
         Part::Negate(a) => constants[*a].map(|a| -a),
         Part::Operation(operator, a, b) => {
             let (a, b) = (constants[*a]?, constants[*b]?);
@@ -194,16 +192,6 @@ fn constant_of(
     }
 }
 
-/// Value of a node that no variable enters.
-pub(crate) fn constant_node(graph: &Graph, node: NodeId) -> Option<f64> {
-    use crate::graph::Node;
-    let is_variable = |id: &NodeId| matches!(graph.node(*id), Node::Variable(_));
-    if graph.reachable(&[node]).iter().any(is_variable) {
-        return None;
-    }
-    evaluate(graph, &[node], |_| f64::NAN).first().copied()
-}
-
 fn check_finite(
     syntax: &Syntax,
     id: PartId,
@@ -211,10 +199,10 @@ fn check_finite(
     constants: &[Option<f64>],
 ) -> Result<(), SyntaxError> {
     let (part, span) = &syntax.parts[id];
-    if let Part::Operation(Operator::Divide, _, b) = part {
-        if constants[*b] == Some(0.0) {
-            return Err(SyntaxError { span: span.clone(), message: "this divides by zero".to_owned(), help: None });
-        }
+    if let Part::Operation(Operator::Divide, _, b) = part
+        && constants[*b] == Some(0.0)
+    {
+        return Err(SyntaxError { span: span.clone(), message: "this divides by zero".to_owned(), help: None });
     }
     match constant {
         Some(value) if !value.is_finite() => Err(SyntaxError {

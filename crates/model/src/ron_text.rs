@@ -13,19 +13,13 @@ pub(crate) fn explain(error: &Error) -> (String, Option<String>) {
             let place = outer.as_ref().map_or_else(String::new, |outer| format!(" of a {outer}"));
             let near = nearest_name(found, expected.iter().copied())
                 .map_or_else(String::new, |name| format!("did you mean `{name}`? "));
-            (
-                format!("`{found}` is not a field{place}"),
-                Some(format!("{near}the fields are {}", listed(expected))),
-            )
+            (format!("`{found}` is not a field{place}"), Some(format!("{near}the fields are {}", listed(expected))))
         }
         Error::NoSuchEnumVariant { expected, found, outer } => {
             let place = outer.as_ref().map_or_else(String::new, |outer| format!(" for {outer}"));
             let near = nearest_name(found, expected.iter().copied())
                 .map_or_else(String::new, |name| format!("did you mean `{name}`? "));
-            (
-                format!("`{found}` is not a choice{place}"),
-                Some(format!("{near}the choices are {}", listed(expected))),
-            )
+            (format!("`{found}` is not a choice{place}"), Some(format!("{near}the choices are {}", listed(expected))))
         }
         Error::MissingStructField { field, outer } => {
             let place = outer.as_ref().map_or_else(String::new, |outer| format!(" of the {outer}"));
@@ -38,9 +32,13 @@ pub(crate) fn explain(error: &Error) -> (String, Option<String>) {
             (format!("the field `{field}` is given twice"), Some("keep one of them".to_owned()))
         }
         Error::ExceededRecursionLimit => ("the file is nested too deep".to_owned(), None),
-        Error::ExpectedStructLike | Error::ExpectedNamedStructLike(_) => {
-            ("an opening `(` is expected".to_owned(), None)
+        Error::ExpectedStructLike | Error::ExpectedNamedStructLike(_) | Error::ExpectedDifferentStructName { .. } => {
+            ("an opening `(` is expected".to_owned(), Some("fields stand between `(` and `)`".to_owned()))
         }
+        Error::ExpectedComma => (
+            "a comma or a closing bracket is expected before this".to_owned(),
+            Some("entries are separated by commas, and texts end with a quote".to_owned()),
+        ),
         Error::ExpectedStructLikeEnd => {
             ("a closing `)` or a comma is expected".to_owned(), Some("fields are separated by commas".to_owned()))
         }
@@ -49,9 +47,7 @@ pub(crate) fn explain(error: &Error) -> (String, Option<String>) {
             ("a closing `}` or a comma is expected".to_owned(), Some("entries are separated by commas".to_owned()))
         }
         Error::ExpectedMapColon => ("a colon is expected between a name and its value".to_owned(), None),
-        Error::ExpectedString | Error::ExpectedStringEnd => {
-            ("a text in double quotes is expected".to_owned(), None)
-        }
+        Error::ExpectedString | Error::ExpectedStringEnd => ("a text in double quotes is expected".to_owned(), None),
         Error::Eof => ("the file ends too early".to_owned(), Some("a closing bracket is missing".to_owned())),
         Error::TrailingCharacters => ("text after the end of the outermost `( … )`".to_owned(), None),
         other => (lower_first(&other.to_string()), None),
@@ -62,25 +58,25 @@ pub(crate) fn explain(error: &Error) -> (String, Option<String>) {
 pub(crate) fn narrow(text: &str, span: Range<usize>, error: &Error) -> Range<usize> {
     let name = match error {
         Error::NoSuchStructField { found, .. } | Error::NoSuchEnumVariant { found, .. } => Some(found.as_str()),
+        Error::ExpectedDifferentStructName { found, .. } => Some(found.as_str()),
         Error::DuplicateStructField { field, .. } => Some(*field),
         _ => None,
     };
-    let (start, end) = (span.start.min(text.len()), span.end.min(text.len()));
+    let end = span.end.min(text.len());
     if let Some(name) = name.filter(|name| !name.is_empty()) {
         // The reader stops right after the name, so it is the last occurrence before the end.
         if let Some(at) = text[..end].rfind(name) {
             return at..at + name.len();
         }
     }
-    if matches!(error, Error::MissingStructField { .. }) {
-        let before = text[..end].trim_end();
-        return before.len().saturating_sub(1)..before.len();
+    let before = text[..end].trim_end();
+    if matches!(error, Error::MissingStructField { .. } | Error::Message(_)) && before.ends_with([')', '}']) {
+        return before.len() - 1..before.len();
     }
     // Elsewhere the place where reading stopped is the spot.
     let rest = &text[end..];
     let skipped = rest.len() - rest.trim_start().len();
     let at = if skipped < rest.len() { end + skipped } else { text.trim_end().len() };
-    let _ = start;
     at..at
 }
 

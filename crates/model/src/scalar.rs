@@ -12,12 +12,7 @@ use crate::function::{Binary, Unary};
 
 /// A number that the formula graph can be evaluated over.
 pub trait Scalar:
-    Clone
-    + Add<Output = Self>
-    + Sub<Output = Self>
-    + Mul<Output = Self>
-    + Div<Output = Self>
-    + Neg<Output = Self>
+    Clone + Add<Output = Self> + Sub<Output = Self> + Mul<Output = Self> + Div<Output = Self> + Neg<Output = Self>
 {
     /// The machine number `value`, exactly.
     fn from_f64(value: f64) -> Self;
@@ -87,7 +82,13 @@ impl<D: DualNum<Primitive = f64>> Scalar for D {
             Unary::Log10 => self.log10(),
             Unary::Sqrt => self.sqrt(),
             Unary::Cbrt => self.cbrt(),
-            Unary::Abs => if self.leading() < 0.0 { -self } else { self },
+            Unary::Abs => {
+                if self.leading() < 0.0 {
+                    -self
+                } else {
+                    self
+                }
+            }
             Unary::Floor => D::from(self.leading().floor()),
             Unary::Sign => D::from(sign(self.leading())),
             Unary::Bernoulli(order) => bernoulli(order, self),
@@ -97,8 +98,20 @@ impl<D: DualNum<Primitive = f64>> Scalar for D {
     fn binary(self, function: Binary, second: Self) -> Self {
         match function {
             Binary::Atan2 => self.atan2(second),
-            Binary::Min => if not_above(&self, &second) { self } else { second },
-            Binary::Max => if not_above(&second, &self) { self } else { second },
+            Binary::Min => {
+                if not_above(&self, &second) {
+                    self
+                } else {
+                    second
+                }
+            }
+            Binary::Max => {
+                if not_above(&second, &self) {
+                    self
+                } else {
+                    second
+                }
+            }
             Binary::NotAbove => D::from(f64::from(u8::from(not_above(&self, &second)))),
             Binary::PowerLog(order) => power_log(self, second, order),
         }

@@ -152,11 +152,7 @@ fn name_end(text: &str, start: usize) -> usize {
 
 fn finite_number(word: &str, span: &Range<usize>) -> Result<Decimal, SyntaxError> {
     let Some(number) = Decimal::parse(word) else {
-        return Err(error(
-            span.clone(),
-            format!("`{word}` is not a number"),
-            Some("numbers look like 2, 0.5 or 1e-3"),
-        ));
+        return Err(error(span.clone(), format!("`{word}` is not a number"), Some("numbers look like 2, 0.5 or 1e-3")));
     };
     if number.to_f64().is_finite() {
         return Ok(number);
@@ -323,11 +319,7 @@ impl Parser {
             Token::Number(number) => format!("`{number}`"),
             Token::End => "the end of the formula".to_owned(),
         };
-        error(
-            span,
-            format!("an operator is expected before {found}"),
-            Some("write products with `*`, as in `2 * x`"),
-        )
+        error(span, format!("an operator is expected before {found}"), Some("write products with `*`, as in `2 * x`"))
     }
 }
 

@@ -63,6 +63,12 @@ const LEAST_RANGE: f64 = 1e-3;
 /// A new mesh must bring the estimated error below this share of the old one, or the floor of roundoff is reached.
 const WORTH: f64 = 0.8;
 
+/// Parameter component of a unit tangent below which its sign is roundoff.
+const TURNING_NOISE: f64 = 1e-13;
+/// Scales of the metric fall at most to this share of the largest size seen on the branch.
+const SHRINK_TO: f64 = 0.3;
+/// A scale off by more than this factor is renewed.
+const OUT_OF_SCALE: f64 = 1.5;
 /// Meshes tried at one point: the estimate on the second is already that of a suitable one.
 const RENEWALS: usize = 3;
 
@@ -92,6 +98,8 @@ pub struct CycleProblem {
     pub(crate) settings: CycleSettings,
     pub(crate) system: System,
     pub(crate) metric: Metric,
+    /// Largest range of each state seen on the branch.
+    largest: Vec<f64>,
     newton: Workspace,
     spectrum: SpectrumSolver,
     /// Spectrum of the point watched last, with its parameter and period: `describe` asks for the same one.
@@ -154,6 +162,7 @@ impl CycleProblem {
             spec,
             settings,
             system,
+            largest: metric.scales.clone(),
             metric,
             newton: Workspace::default(),
             spectrum,
@@ -277,14 +286,62 @@ impl CycleProblem {
         ((too_coarse || too_fine) && !settled).then(|| choice.mesh.into())
     }
 
+    /// Lets the metric follow the cycle where its size or period has changed much, so that a stride stays a stride;
+    /// true where it changed.
+    fn adapt_metric(&mut self, point: &CyclePoint) -> bool {
+        let profile = self.profile(point);
+        for (size, (low, high)) in self.largest.iter_mut().zip(profile.extremes()) {
+            *size = size.max(high - low);
+        }
+        // Scales never fall far below the largest size seen: a cycle that shrinks to an equilibrium must get there.
+        let wanted = profile.extremes().into_iter().zip(&self.largest).map(|((low, high), largest)| {
+            (high - low).max(SHRINK_TO * largest)
+        });
+        let wanted: Vec<f64> = wanted.zip(&self.metric.scales).map(|(w, now)| if w > 0.0 { w } else { *now }).collect();
+        let far = |now: f64, wanted: f64| now > OUT_OF_SCALE * wanted || wanted > OUT_OF_SCALE * now;
+        let changed = far(self.metric.period_scale, profile.period)
+            || self.metric.scales.iter().zip(&wanted).any(|(now, wanted)| far(*now, *wanted));
+        if changed {
+            self.metric = Metric { scales: wanted, period_scale: profile.period, ..self.metric.clone() };
+            self.system.set_metric(self.metric.clone());
+        }
+        changed
+    }
+
+    /// Sets the metric to that of a cycle, forgetting what was seen elsewhere on the branch: before a second walk from
+    /// the same start.
+    pub fn anchor(&mut self, point: &CyclePoint) {
+        let extremes = self.profile(point).extremes();
+        // What never moves keeps its size.
+        let scale = |((low, high), now): ((f64, f64), &f64)| if high - low > LEAST_RANGE * now { high - low } else { *now };
+        self.largest = extremes.into_iter().zip(&self.metric.scales).map(scale).collect();
+        self.metric =
+            Metric { scales: self.largest.clone(), period_scale: point.unknowns.period, ..self.metric.clone() };
+        self.system.set_metric(self.metric.clone());
+    }
+
+    /// The same direction with length 1 in the present metric.
+    fn normalised(&self, mut tangent: CycleTangent) -> CycleTangent {
+        let length = self.metric.inner(self.system.tables(), &tangent.mesh, &tangent.row, &tangent.row).sqrt();
+        tangent.row.nodes.iter_mut().for_each(|value| *value /= length);
+        tangent.row.period /= length;
+        tangent.row.parameter /= length;
+        tangent
+    }
+
     /// Corrects a point carried to a new mesh: at its parameter value, which an edge or target needs exactly, or, where
-    /// the branch nearly turns back in the parameter, normal to its tangent.
+    /// the branch turns back in the parameter, normal to its tangent.
     fn settle_on_mesh(&mut self, point: &mut CyclePoint, tangent: &CycleTangent) -> Result<Report, NewtonFailure> {
-        /// Share of the parameter in the tangent below which the branch nearly turns back.
-        const TURNING: f64 = 0.01;
+        /// Share of the parameter in the tangent below which the branch turns back: nearer than this to a fold the
+        /// change of mesh may move the fold past the value.
+        const TURNING: f64 = 1e-6;
         if tangent.row.parameter.abs() > TURNING * self.metric.parameter_scale {
+            let mut held = point.clone();
             let value = point.unknowns.parameter;
-            return self.correct_at(point, value);
+            if let Ok(report) = self.correct_at(&mut held, value) {
+                *point = held;
+                return Ok(report);
+            }
         }
         let row = self.arclength_row(tangent, &point.mesh.clone());
         let target = row.apply(&point.unknowns);
@@ -374,15 +431,9 @@ impl Problem for CycleProblem {
         let mut scalars = [0.0; 2];
         let right = Right { core: &[], closing: &[], border: &[0.0, 1.0] };
         bordered.solve(self.system.cyclic(), right, &mut self.work.nodes, &mut scalars);
-        let mut tangent = Row { nodes: self.work.nodes.clone(), period: scalars[0], parameter: scalars[1] };
-        let length = self.metric.inner(self.system.tables(), &point.mesh, &tangent, &tangent).sqrt();
-        if !(length > 0.0 && length.is_finite()) {
-            return Err(Failure::NotConverged);
-        }
-        tangent.nodes.iter_mut().for_each(|value| *value /= length);
-        tangent.period /= length;
-        tangent.parameter /= length;
-        Ok(CycleTangent { mesh: point.mesh.clone(), row: tangent })
+        let tangent = Row { nodes: self.work.nodes.clone(), period: scalars[0], parameter: scalars[1] };
+        let tangent = self.normalised(CycleTangent { mesh: point.mesh.clone(), row: tangent });
+        if tangent.row.nodes.iter().all(|value| value.is_finite()) { Ok(tangent) } else { Err(Failure::NotConverged) }
     }
 
     fn inner(&self, a: &CycleTangent, b: &CycleTangent) -> f64 {
@@ -407,9 +458,11 @@ impl Problem for CycleProblem {
     fn watch(&mut self, point: &CyclePoint, tangent: &CycleTangent) -> Result<Watch, Failure<Fault>> {
         let spectrum = self.spectrum(point).map_err(|_| Failure::NotConverged)?;
         let value = |value: f64| Watched { value, slope: None };
+        let turning = tangent.row.parameter / self.metric.parameter_scale;
         let watch = Watch {
             values: vec![
-                value(tangent.row.parameter / self.metric.parameter_scale),
+                // Below roundoff the sign is noise: the parameter stands still there and does not turn back.
+                value(if turning.abs() < TURNING_NOISE { 0.0 } else { turning }),
                 value(spectrum.doubling_product()),
                 value(spectrum.torus_product()),
             ],
@@ -420,12 +473,16 @@ impl Problem for CycleProblem {
     }
 
     fn renew(&mut self, point: &CyclePoint, tangents: &[&CycleTangent]) -> Option<(CyclePoint, Vec<CycleTangent>)> {
-        let mut best: Option<(CyclePoint, Vec<CycleTangent>)> = None;
+        let mut best = self.adapt_metric(point).then(|| {
+            let tangents = tangents.iter().map(|tangent| self.normalised((*tangent).clone())).collect();
+            (point.clone(), tangents)
+        });
         for _ in 0..RENEWALS {
             let now = best.as_ref().map_or(point, |(point, _)| point);
             let Some(mesh) = self.better_mesh(now) else { break };
             let mut renewed = now.on_mesh(self.system.tables(), &mesh);
-            let carried: Vec<CycleTangent> = tangents.iter().map(|t| t.on_mesh(self.system.tables(), &mesh)).collect();
+            let carry = |tangent: &&CycleTangent| self.normalised(tangent.on_mesh(self.system.tables(), &mesh));
+            let carried: Vec<CycleTangent> = tangents.iter().map(carry).collect();
             // Where the new mesh does not converge the old point stands, with its larger error shown.
             if self.settle_on_mesh(&mut renewed, carried.first()?).is_err() || !self.is_worth(now, &renewed) {
                 break;

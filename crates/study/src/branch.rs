@@ -138,10 +138,8 @@ fn plan<'a>(run: &Run<'a>, lineage: &Lineage, sign: f64) -> WalkPlan<'a> {
 fn both_ways(run: &mut Run<'_>, lineage: &Lineage, mut problem: CycleProblem, start: CyclePoint) -> Result<Finished, StudyError> {
     let no_cycle = |reason: String| StudyError::NoCycle { reason };
     let first = problem.describe(&start, lineage.turns, 0.0).map_err(|fault| no_cycle(fault.to_string()))?;
-    let up = problem
-        .tangent(&start, Orientation::Parameter(1.0))
-        .map_err(|_| no_cycle("the cycle at the start cannot be continued in the followed parameter".into()))?;
-    let down = reversed(&up);
+    let stuck = || no_cycle("the cycle at the start cannot be continued in the followed parameter".into());
+    let up = problem.tangent(&start, Orientation::Parameter(1.0)).map_err(|_| stuck())?;
     let plans = (plan(run, lineage, 1.0), -1.0);
     let mut collector = collector(run, lineage);
     collector.point(&first);
@@ -157,6 +155,8 @@ fn both_ways(run: &mut Run<'_>, lineage: &Lineage, mut problem: CycleProblem, st
         Walk { points: Vec::new(), events: Vec::new(), end: forward.end.clone() }
     } else {
         let back = plan(collector.run, lineage, plans.1);
+        problem.anchor(&start);
+        let down = problem.tangent(&start, Orientation::Parameter(-1.0)).map_err(|_| stuck())?;
         walk(&mut problem, (start.clone(), down), &back, &mut collector)
     };
     let mut walked: Vec<Walked> = backward.points.into_iter().rev().collect();
@@ -216,14 +216,6 @@ fn walk_shifted(
 
 fn collector<'r, 'a>(run: &'r mut Run<'a>, lineage: &'r Lineage) -> Collector<'r, 'a> {
     Collector { run, lineage, numbers: HashMap::new(), events: Vec::new(), doublings: Vec::new(), points: 0, fault: None }
-}
-
-fn reversed(tangent: &CycleTangent) -> CycleTangent {
-    let mut back = tangent.clone();
-    back.row.nodes.iter_mut().for_each(|value| *value = -*value);
-    back.row.period = -back.row.period;
-    back.row.parameter = -back.row.parameter;
-    back
 }
 
 fn finish(collector: Collector<'_, '_>, problem: CycleProblem, walked: Vec<Walked>, ends: (End, End)) -> Result<Finished, StudyError> {

@@ -4,6 +4,7 @@
 //! model; [`trace`] does it: start, follow, locate, switch, write. This crate does not know how a cycle is computed
 //! nor how a figure is drawn.
 
+mod approach;
 mod branch;
 mod error;
 mod file;

@@ -8,6 +8,7 @@ use armilla_stability::{
     CriticalKind, CyclePoint, CycleProblem, CycleTangent, Located, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS,
 };
 
+use crate::approach::{Approach, approach};
 use crate::study::Study;
 
 pub(crate) type CycleStation = Station<CyclePoint, CycleTangent>;
@@ -77,6 +78,7 @@ pub(crate) fn walk(
     };
     let mut retries = 0;
     let mut motions = vec![motion(&mut follower)];
+    let mut periods = vec![period(&follower)];
     loop {
         if plan.abort.load(Ordering::Relaxed) {
             let value = follower.current().point.unknowns.parameter;
@@ -109,6 +111,12 @@ pub(crate) fn walk(
             }
             Err(_) => break,
         }
+        periods.push(period(&follower));
+        if follower.end().is_none()
+            && let Some(approach) = approach(&periods, plan.study.range.1 - plan.study.range.0)
+        {
+            return blown_up(walk, &mut follower, plan, approach, sink);
+        }
     }
     walk.end = end_of_follower(&mut follower, plan, &motions);
     walk
@@ -117,6 +125,34 @@ pub(crate) fn walk(
 fn motion(follower: &mut Follower<'_, CycleProblem>) -> (f64, f64) {
     let (problem, _, current) = follower.parts();
     (problem.motion(&current.point), current.point.unknowns.parameter)
+}
+
+fn period(follower: &Follower<'_, CycleProblem>) -> (f64, f64) {
+    let unknowns = &follower.current().point.unknowns;
+    (unknowns.parameter, unknowns.period)
+}
+
+/// The end of a walk whose period grows without bound, with its event at the limit.
+fn blown_up(
+    mut walk: Walk,
+    follower: &mut Follower<'_, CycleProblem>,
+    plan: &WalkPlan<'_>,
+    approach: Approach,
+    sink: &mut dyn WalkSink,
+) -> Walk {
+    let (problem, _, current) = follower.parts();
+    let mut event = unresolved(current, (approach.limit, approach.error), format!("the period grows {}", approach.law.words()), plan);
+    event.kind = EventKind::PeriodBlowUp;
+    sink.event(problem, &event);
+    let name = with_unit_name(plan);
+    let words = format!(
+        "the period grows without bound towards {name} = {} ({})",
+        short(plan.study, approach.limit),
+        approach.law.words()
+    );
+    walk.events.push(event);
+    walk.end = end(EndReason::PeriodBlowUp, current.point.unknowns.parameter, words);
+    walk
 }
 
 /// Whether the last step went through an equilibrium or through the branch's own birth; the walk is over then, and the

@@ -1,0 +1,154 @@
+//! How a period grows without bound, told from the last points of a branch.
+//!
+//! Near a saddle loop `T = a - b ln|p - p*|`; near a saddle-node on a loop `T = a + b |p - p*|^(-1/2)` (Shilnikov,
+//! Shilnikov, Turaev & Chua 2001, Methods of Qualitative Theory in Nonlinear Dynamics II, ch. 12 and 13; from memory).
+//! Both have three constants; three points fix them, two further ones judge them.
+
+/// A law of approach.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) enum Law {
+    /// Saddle loop.
+    Logarithm,
+    /// Saddle-node on a loop.
+    InverseRoot,
+}
+
+impl Law {
+    pub(crate) fn words(self) -> &'static str {
+        match self {
+            Self::Logarithm => "as towards a saddle loop, like the logarithm of the distance",
+            Self::InverseRoot => "as towards a saddle-node on a loop, like one over the root of the distance",
+        }
+    }
+
+    fn shape(self, distance: f64) -> f64 {
+        match self {
+            Self::Logarithm => -distance.ln(),
+            Self::InverseRoot => distance.powf(-0.5),
+        }
+    }
+}
+
+/// A diagnosed approach.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(crate) struct Approach {
+    pub law: Law,
+    /// Parameter value at which the period is infinite.
+    pub limit: f64,
+    /// Estimated error of it.
+    pub error: f64,
+}
+
+/// Points looked at.
+const WINDOW: usize = 6;
+/// Growth of the period over the least period of the branch before the question is asked.
+const GROWN: f64 = 3.0;
+/// Relative change of the parameter over the window that counts as standing still.
+const STILL: f64 = 1e-12;
+/// Relative growth of the period per share of the range travelled that counts as without bound, and the growth over the
+/// least period that must have happened then: a relaxation oscillation never grows like that.
+const STEEP: f64 = 1e3;
+/// See [`STEEP`].
+const GROWN_STEEPLY: f64 = 20.0;
+
+/// Tells an approach from the history of (parameter, period), oldest first; `width` is that of the asked range.
+pub(crate) fn approach(history: &[(f64, f64)], width: f64) -> Option<Approach> {
+    let least = history.iter().map(|point| point.1).fold(f64::INFINITY, f64::min);
+    let window = &history[history.len().checked_sub(WINDOW)?..];
+    let (first, last) = (window[0], window[WINDOW - 1]);
+    let growing = window.windows(2).all(|pair| pair[1].1 > pair[0].1);
+    let travelled = (last.0 - first.0).abs() / width;
+    let still = travelled < STILL && last.1 > GROWN * least;
+    let steep = (last.1 / first.1).ln() > STEEP * travelled && last.1 > GROWN_STEEPLY * least;
+    if !growing || !(still || steep) {
+        return None;
+    }
+    let moving = moving_part(history, width);
+    [Law::Logarithm, Law::InverseRoot]
+        .into_iter()
+        .filter_map(|law| fit(law, &moving).map(|(limit, misfit)| (law, limit, misfit)))
+        .min_by(|a, b| a.2.total_cmp(&b.2))
+        .map(|(law, limit, _)| Approach { law, limit, error: error(law, limit, &moving, width) })
+        .or(Some(Approach { law: Law::Logarithm, limit: last.0, error: travelled * width + f64::EPSILON * width }))
+}
+
+/// The last points whose parameters still differ by more than roundoff.
+fn moving_part(history: &[(f64, f64)], width: f64) -> Vec<(f64, f64)> {
+    let resolved = 1e4 * f64::EPSILON * width;
+    let mut end = history.len();
+    while end >= 2 && (history[end - 1].0 - history[end - 2].0).abs() < resolved {
+        end -= 1;
+    }
+    history[end.saturating_sub(WINDOW)..end].to_vec()
+}
+
+/// Limit from the last three points, and how far the two before miss the law, relative to the growth of the period.
+fn fit(law: Law, points: &[(f64, f64)]) -> Option<(f64, f64)> {
+    let [.., (p1, t1), (p2, t2), (p3, t3)] = *points else { return None };
+    let step = p3 - p2;
+    let wanted = (t2 - t1) / (t3 - t2);
+    // Distance x of the last point from the limit; the ratio of differences is monotone in it.
+    let ratio = |x: f64| {
+        let shape = |p: f64| law.shape(x + (p3 - p) * step.signum());
+        (shape(p2) - shape(p1)) / (law.shape(x) - shape(p2))
+    };
+    let (mut low, mut high) = (1e-12 * step.abs(), 1e6 * step.abs());
+    if !(ratio(low) < wanted && wanted < ratio(high)) {
+        return None;
+    }
+    for _ in 0..200 {
+        let middle = (low * high).sqrt();
+        if ratio(middle) < wanted { low = middle } else { high = middle }
+    }
+    let distance = (low * high).sqrt();
+    let shape = |p: f64| law.shape(distance + (p3 - p) * step.signum());
+    let slope = (t3 - t2) / (shape(p3) - shape(p2));
+    let misfit = points
+        .iter()
+        .map(|(p, t)| (t3 + slope * (shape(*p) - shape(p3)) - t).abs() / (t3 - points[0].1))
+        .fold(0.0, f64::max);
+    Some((p3 + distance * step.signum(), misfit))
+}
+
+/// Difference to the limit without the last point, and roundoff of the parameter.
+fn error(law: Law, limit: f64, points: &[(f64, f64)], width: f64) -> f64 {
+    let without = fit(law, &points[..points.len().saturating_sub(1)]);
+    let spread = without.map_or(points.last().map_or(width, |last| (limit - last.0).abs()), |(other, _)| (limit - other).abs());
+    spread + 16.0 * f64::EPSILON * width.max(limit.abs())
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn history(law: Law, limit: f64, steps: usize) -> Vec<(f64, f64)> {
+        // Strides of about equal growth of the period, as a follower makes them.
+        (0..steps)
+            .map(|k| {
+                let distance = match law {
+                    Law::Logarithm => 0.1 * (-0.8 * k as f64).exp(),
+                    Law::InverseRoot => 0.1 / (1.0 + 0.7 * k as f64).powi(2),
+                };
+                (limit - distance, 3.0 + 1.5 * law.shape(distance))
+            })
+            .collect()
+    }
+
+    /// Exact by construction: each law with a planted limit.
+    #[test]
+    fn planted_limits_return() {
+        let found = approach(&history(Law::Logarithm, 0.7, 40), 1.0).expect("grows without bound");
+        assert_eq!(found.law, Law::Logarithm);
+        assert!((found.limit - 0.7).abs() <= found.error && found.error < 1e-9, "{found:?}");
+        let found = approach(&history(Law::InverseRoot, -0.2, 120), 1.0).expect("grows without bound");
+        assert_eq!(found.law, Law::InverseRoot);
+        assert!((found.limit + 0.2).abs() <= found.error && found.error < 1e-4, "{found:?}");
+    }
+
+    /// A relaxation oscillation's period grows like its parameter: no blow-up.
+    #[test]
+    fn proportional_growth_is_no_blow_up() {
+        let history: Vec<(f64, f64)> = (1..200).map(|k| (5.0 * k as f64, 8.0 * k as f64)).collect();
+        assert_eq!(approach(&history, 1000.0), None);
+    }
+}
