@@ -5,8 +5,10 @@ use std::process::ExitCode;
 use clap::Parser;
 
 mod check;
+mod columns;
 mod draw;
 mod exit;
+mod export;
 mod progress;
 mod settle;
 mod table;
@@ -33,6 +35,8 @@ enum Command {
     Trace(trace::Args),
     /// Draws the figures of a results folder again, without computing.
     Draw(draw::Args),
+    /// Writes the tables and orbits of a results folder for other tools: CSV and NumPy arrays.
+    Export(export::Args),
 }
 
 fn main() -> ExitCode {
@@ -41,5 +45,6 @@ fn main() -> ExitCode {
         Command::Settle(args) => settle::run(&args),
         Command::Trace(args) => trace::run(&args),
         Command::Draw(args) => draw::run(&args),
+        Command::Export(args) => export::run(&args),
     }
 }

@@ -4,9 +4,11 @@ use std::path::PathBuf;
 use std::process::ExitCode;
 use std::sync::atomic::{AtomicBool, Ordering};
 
-use armilla_flow::{Cycle, Evidence, SettleOptions, Settled, Verdict, settle};
+use armilla_flow::{Cycle, Equilibrium, SettleOptions, Settled, Verdict, settle};
 use armilla_model::{Model, nearest_name};
+use armilla_study::{digits, settling_words, unsettled_words};
 
+use crate::columns::section;
 use crate::exit::{Exit, say};
 
 /// Arguments of `settle`.
@@ -40,13 +42,17 @@ pub fn run(args: &Args) -> ExitCode {
             return Exit::Input.into();
         }
     };
+    if let Err(fault) = model.check_start(&parameters) {
+        say(&fault);
+        return Exit::Input.into();
+    }
     let _ = ctrlc::set_handler(|| STOP.store(true, Ordering::Relaxed));
     let forcing_period = model.forcing().map(|forcing| forcing.period(&parameters));
     let options = SettleOptions { transient: args.transient, forcing_period, abort: &STOP, ..SettleOptions::default() };
     match settle(model.field().as_ref(), &parameters, &model.begin(), &options) {
         Ok(settled) => tell(&model, &settled),
         Err(error) => {
-            say(&error);
+            say(&settling_words(&error, &model));
             settle_fault(&error).into()
         }
     }
@@ -90,48 +96,46 @@ fn unknown(model: &Model, name: &str) -> String {
 
 fn tell(model: &Model, settled: &Settled) -> ExitCode {
     for push in &settled.pushes {
-        println!("the start sat on an unstable state of rest and was pushed off it at time {}", push.time);
+        println!("the start sat on an unstable state of rest and was pushed off it at time {}", digits(push.time));
     }
     match &settled.verdict {
         Verdict::Equilibrium(rest) => {
-            println!("equilibrium, reached by time {:.6}", settled.time);
-            for (state, value) in model.states().iter().zip(&rest.state) {
-                println!("  {} = {value} {}", state.name, state.unit);
-            }
-            println!("  slowest decay rate {:e}", -rest.growth());
+            print!("{}", rest_section(model, rest, settled.time));
             Exit::Done.into()
         }
         Verdict::Cycle(cycle) => {
-            tell_cycle(model, cycle, settled.time);
+            print!("{}", cycle_section(model, cycle, settled.time));
             Exit::Done.into()
         }
-        Verdict::NotSettled(evidence) => {
-            tell_evidence(model, evidence);
-            Exit::NotReached.into()
-        }
-        _ => {
-            println!("neither at rest nor periodic, by time {:.6}", settled.time);
+        other => {
+            println!("did not settle: {}", unsettled_words(other, model));
             Exit::NotReached.into()
         }
     }
 }
 
-fn tell_cycle(model: &Model, cycle: &Cycle, time: f64) {
+fn rest_section(model: &Model, rest: &Equilibrium, time: f64) -> String {
+    let states = model.states().iter().zip(&rest.state);
+    let rows: Vec<[String; 3]> =
+        states.map(|(state, value)| [state.name.clone(), format!("{value:?}"), state.unit.clone()]).collect();
+    let mut text = section(&format!("equilibrium, reached by time {}", digits(time)), &rows);
+    // At a degenerate state of rest there is no rate of decay to tell.
+    if rest.growth() < 0.0 {
+        text.push_str(&format!("  slowest decay rate {} per time unit\n", digits(-rest.growth())));
+    }
+    text
+}
+
+fn cycle_section(model: &Model, cycle: &Cycle, time: f64) -> String {
     let word = if cycle.turns == 1 { "turn" } else { "turns" };
-    println!("cycle of {} {word}, reached by time {time:.6}", cycle.turns);
-    println!("  period {}", cycle.period());
-    for (state, (low, high)) in model.states().iter().zip(cycle.orbit.extremes()) {
-        println!("  {} between {low:.9} and {high:.9} {}", state.name, state.unit);
-    }
-    println!("  one more period leads away by {:.1e} of the range", cycle.distance);
-}
-
-fn tell_evidence(model: &Model, evidence: &Evidence) {
-    println!("did not settle by time {:.6}, after {} returns", evidence.time, evidence.returns);
-    for (state, (low, high)) in model.states().iter().zip(&evidence.ranges) {
-        println!("  {} between {low:.9} and {high:.9} {}", state.name, state.unit);
-    }
-    if let Some(near) = &evidence.nearest {
-        println!("  nearest return: after {} turns, to within {:.1e} of the range", near.returns, near.distance);
-    }
+    let states = model.states().iter().zip(cycle.orbit.extremes());
+    let mut rows = vec![["state", "lowest", "highest", "unit"].map(String::from)];
+    // Nine digits: what a simulation is good for.
+    rows.extend(states.map(|(state, (low, high))| {
+        [state.name.clone(), format!("{low:.8e}"), format!("{high:.8e}"), state.unit.clone()]
+    }));
+    let mut text = section(&format!("cycle of {} {word}, reached by time {}", cycle.turns, digits(time)), &rows);
+    text.push_str(&format!("  period {:?}\n", cycle.period()));
+    text.push_str(&format!("  one more period leads away by {:.1e} of the range\n", cycle.distance));
+    text
 }

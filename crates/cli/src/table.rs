@@ -2,6 +2,8 @@
 
 use armilla_record::{Branch, Event};
 
+use crate::columns::aligned;
+
 /// Digits of a value that its error supports: no more are printed.
 pub fn supported(value: f64, error: Option<f64>) -> String {
     /// Digits after which a 64-bit number says nothing.
@@ -40,16 +42,7 @@ pub fn closing(branches: &[Branch]) -> String {
         events.sort_by(|a, b| a.distance.total_cmp(&b.distance));
         rows.extend(events.into_iter().map(row));
     }
-    let mut widths = [0; 6];
-    for row in &rows {
-        row.iter().zip(&mut widths).for_each(|(cell, width)| *width = (*width).max(cell.chars().count()));
-    }
-    let mut text = String::new();
-    for row in &rows {
-        let cells: Vec<String> = row.iter().zip(widths).map(|(cell, width)| format!("{cell:width$}")).collect();
-        text.push_str(cells.join("  ").trim_end());
-        text.push('\n');
-    }
+    let mut text = aligned(&rows);
     text.push('\n');
     for branch in branches {
         let stable = branch.points.iter().filter(|point| point.is_stable()).count();

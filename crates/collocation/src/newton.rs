@@ -28,7 +28,9 @@ pub struct LinearClosing {
 
 impl Closing for LinearClosing {
     fn fill(&mut self, _system: &mut System, at: &Iterate, row: &mut Row) -> Result<f64, Fault> {
-        row.clone_from(&self.row);
+        // Not `clone_from`: derived, it would allocate a new row in every iteration.
+        row.nodes.copy_from_slice(&self.row.nodes);
+        (row.period, row.parameter) = (self.row.period, self.row.parameter);
         Ok(self.row.apply(at) - self.target)
     }
 }
@@ -158,8 +160,7 @@ pub fn correct_with(workspace: &mut Workspace, system: &mut System, at: &mut Ite
     report.closing_residuals.reserve(settings.most);
     for iteration in 1..=settings.most {
         let residual = workspace.step(system, at, task.reference, task.closing)?;
-        let step = workspace.step.as_ref().expect("fitted above");
-        let size = system.spec().metric.inner(system.tables(), system.mesh(), step, step).sqrt();
+        let size = workspace.size(system);
         report.closing_residuals.push(residual);
         report.corrections.push(size);
         report.iterations = iteration;
@@ -169,7 +170,7 @@ pub fn correct_with(workspace: &mut Workspace, system: &mut System, at: &mut Ite
             Verdict::Floor => return Ok(report),
             Verdict::Go | Verdict::Last => {}
         }
-        at.add(1.0, step);
+        at.add(1.0, workspace.step.as_ref().expect("fitted above"));
         if !(at.period > 0.0) {
             return Err(Failure::NegativePeriod);
         }
@@ -179,6 +180,15 @@ pub fn correct_with(workspace: &mut Workspace, system: &mut System, at: &mut Ite
     }
     let correction = report.corrections.last().copied().unwrap_or(f64::NAN);
     Err(Failure::Diverged { iterations: settings.most, correction })
+}
+
+/// One Newton correction.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Iteration {
+    /// Its scaled size.
+    pub correction: f64,
+    /// Residual of the closing before it.
+    pub closing_residual: f64,
 }
 
 enum Verdict {
@@ -213,7 +223,59 @@ fn judge(size: f64, before: Option<f64>, settings: NewtonSettings) -> Verdict {
     }
 }
 
+/// Which unknown scalar a sensitivity is asked of.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Scalar {
+    /// The period.
+    Period,
+    /// The free parameter.
+    Parameter,
+}
+
 impl Workspace {
+    /// Estimated absolute roundoff of a scalar after [`correct_with`] has converged: the sensitivity of the scalar to
+    /// each row (one transposed solve with the factors of the last iteration) times the rounding of that row, added as
+    /// independent errors. 0 before any correction.
+    pub fn roundoff(&mut self, system: &System, scalar: Scalar) -> f64 {
+        let Some(bordered) = self.bordered.as_mut() else { return 0.0 };
+        let asked = if scalar == Scalar::Period { [1.0, 0.0] } else { [0.0, 1.0] };
+        let (mut psi, mut chi) = (vec![0.0; system.shape().core_len()], [0.0; 2]);
+        bordered.solve_transposed(system.cyclic(), &[], &asked, &mut psi, &mut chi);
+        let mut sizes = vec![0.0; psi.len()];
+        system.row_sizes(&mut sizes);
+        let sum: f64 = psi.iter().zip(&sizes).map(|(psi, size)| (psi * size).powi(2)).sum();
+        // The closing is of size 1 where it is a bordered test function, and exact where it holds the parameter.
+        let touches_nodes = self.row.as_ref().is_some_and(|row| row.nodes.iter().any(|value| *value != 0.0));
+        let closing = if touches_nodes { chi[1] } else { 0.0 };
+        f64::EPSILON * (sum + closing * closing).sqrt()
+    }
+
+    /// One Newton iteration with a full step, applied to `at` whatever its size; no allocation once sized. For callers
+    /// with a loop of their own; [`correct_with`] judges and stops.
+    ///
+    /// # Errors
+    /// [`Fault`]; `at` is then unchanged.
+    pub fn iterate(
+        &mut self,
+        system: &mut System,
+        at: &mut Iterate,
+        reference: &[f64],
+        closing: &mut dyn Closing,
+    ) -> Result<Iteration, Fault> {
+        self.fit(system);
+        system.phase_row(reference, &mut self.phase);
+        let closing_residual = self.step(system, at, reference, closing)?;
+        let step = self.step.as_ref().expect("fitted above");
+        at.add(1.0, step);
+        Ok(Iteration { correction: self.size(system), closing_residual })
+    }
+
+    /// Scaled size of the last step.
+    fn size(&self, system: &System) -> f64 {
+        let step = self.step.as_ref().expect("fitted before");
+        system.spec().metric.inner(system.tables(), system.mesh(), step, step).sqrt()
+    }
+
     fn fit(&mut self, system: &System) {
         let shape = system.shape();
         let len = shape.nodes_len();

@@ -8,7 +8,7 @@
 use std::sync::Arc;
 
 use armilla_linalg::{Cyclic, Shape, Singular};
-use armilla_model::{Batch, Column, Direction, Evaluator, Gradient, Linearisation, VectorField};
+use armilla_model::{Batch, Column, Direction, Evaluator, Gradient, Linearisation, NotProvided, VectorField};
 
 use crate::metric::Metric;
 use crate::tables::Tables;
@@ -137,7 +137,9 @@ pub struct System {
     variation_points: Vec<f64>,
     gradient_states: Vec<f64>,
     gradient_columns: Vec<f64>,
+    covector: Vec<f64>,
     period: f64,
+    nodes: Vec<f64>,
 }
 
 impl System {
@@ -163,7 +165,9 @@ impl System {
             variation_points: Vec::new(),
             gradient_states: Vec::new(),
             gradient_columns: Vec::new(),
+            covector: vec![0.0; shape.n],
             period: 0.0,
+            nodes: Vec::new(),
         };
         system.set_mesh(mesh);
         system
@@ -221,6 +225,10 @@ impl System {
     pub fn cyclic(&self) -> &Cyclic {
         &self.cyclic
     }
+    /// Node values of the last linearisation.
+    pub fn last_nodes(&self) -> &[f64] {
+        &self.nodes
+    }
     /// Residual of the last linearisation, N R numbers.
     pub fn residual(&self) -> &[f64] {
         &self.residual
@@ -252,6 +260,8 @@ impl System {
         let points = self.points();
         self.spec.parameters[self.spec.free] = at.parameter;
         self.period = at.period;
+        self.nodes.clear();
+        self.nodes.extend_from_slice(&at.nodes);
         to_points(&self.tables, self.spec.metric.scales.len(), &at.nodes, &mut self.states);
         let batch = Batch { len: points, time: &[], states: &self.states, parameters: &self.spec.parameters };
         let out = Linearisation { rates: &mut self.rates, jacobian: &mut self.jacobian, columns: &mut self.free_column };
@@ -323,6 +333,22 @@ impl System {
         }
     }
 
+    /// Writes the size of the terms each interval row is summed from, `Sum_j |L'_j u_j| + h T |f|`: its rounding is that
+    /// times the unit of the last place.
+    pub fn row_sizes(&self, out: &mut [f64]) {
+        let (n, m, points) = (self.n(), self.tables.degree, self.points());
+        let size = m + 1;
+        for point in 0..points {
+            let (i, k) = (point / m, point % m);
+            let slopes = &self.tables.slope[k * size..(k + 1) * size];
+            for a in 0..n {
+                let terms: f64 =
+                    slopes.iter().enumerate().map(|(j, slope)| (slope * self.nodes[(i * m + j) * n + a]).abs()).sum();
+                out[point * n + a] = terms + (self.h(i) * self.period * self.rates[a * points + point]).abs();
+            }
+        }
+    }
+
     /// Writes the column of the period, `-h_i f`, over all interval rows.
     pub fn period_column(&self, out: &mut [f64]) {
         self.spread(&self.rates, 1.0, out);
@@ -351,19 +377,15 @@ impl System {
         let (n, m) = (self.n(), self.tables.degree);
         let size = m + 1;
         out.fill(0.0);
-        let mut slope = vec![0.0; n];
         for i in 0..self.mesh.len() - 1 {
             let nodes = &reference[i * m * n..(i * m + size) * n];
             for k in 0..m {
-                slope.fill(0.0);
-                for (node, &weight) in nodes.chunks_exact(n).zip(&self.tables.slope[k * size..(k + 1) * size]) {
-                    slope.iter_mut().zip(node).for_each(|(s, u)| *s += weight * u);
-                }
-                for j in 0..size {
-                    let factor = self.tables.weights[k] * self.tables.value[k * size + j];
-                    let target = &mut out[(i * m + j) * n..(i * m + j + 1) * n];
-                    for (a, target) in target.iter_mut().enumerate() {
-                        *target += factor * slope[a] / self.spec.metric.scales[a].powi(2);
+                let (values, slopes) = (&self.tables.value[k * size..(k + 1) * size], &self.tables.slope[k * size..(k + 1) * size]);
+                for a in 0..n {
+                    let slope: f64 = slopes.iter().zip(nodes.chunks_exact(n)).map(|(weight, node)| weight * node[a]).sum();
+                    let factor = self.tables.weights[k] * slope / self.spec.metric.scales[a].powi(2);
+                    for (j, value) in values.iter().enumerate() {
+                        out[(i * m + j) * n + a] += factor * value;
                     }
                 }
             }
@@ -387,11 +409,11 @@ impl System {
         self.evaluator.second_gradient(batch, &self.psi_points, direction, gradient);
         out.nodes.fill(0.0);
         (out.period, out.parameter) = (0.0, 0.0);
-        let mut covector = vec![0.0; n];
         let size = m + 1;
         for point in 0..points {
             let (i, k) = (point / m, point % m);
-            let h = self.h(i);
+            let h = self.mesh[i + 1] - self.mesh[i];
+            let covector = &mut self.covector;
             for (a, value) in covector.iter_mut().enumerate() {
                 *value = h * self.period * self.gradient_states[a * points + point];
             }
@@ -408,8 +430,96 @@ impl System {
             for j in 0..size {
                 let value = self.tables.value[k * size + j];
                 let target = &mut out.nodes[(i * m + j) * n..(i * m + j + 1) * n];
-                target.iter_mut().zip(&covector).for_each(|(t, c)| *t += value * c);
+                target.iter_mut().zip(covector.iter()).for_each(|(t, c)| *t += value * c);
             }
+        }
+    }
+}
+
+impl System {
+    /// `D^2 f[u, v]` at all Gauss points of the last linearisation for variations given at the nodes; `out` has N m n
+    /// numbers, point by point.
+    pub fn quadratic(&mut self, u: &[f64], v: &[f64], out: &mut [f64]) {
+        let (n, len) = (self.n(), self.points());
+        to_points(&self.tables, n, u, &mut self.psi_points);
+        to_points(&self.tables, n, v, &mut self.variation_points);
+        let at = Batch { len, time: &[], states: &self.states, parameters: &self.spec.parameters };
+        let u = Direction { states: &self.psi_points, columns: &[] };
+        let v = Direction { states: &self.variation_points, columns: &[] };
+        self.evaluator.second(at, u, v, &mut self.gradient_states);
+        by_point(n, &self.gradient_states, out);
+    }
+
+    /// `D^3 f[v, v, v]` at all Gauss points, as [`System::quadratic`].
+    ///
+    /// # Errors
+    /// [`NotProvided`] by a field without third derivatives.
+    pub fn cubic(&mut self, v: &[f64], out: &mut [f64]) -> Result<(), NotProvided> {
+        let (n, len) = (self.n(), self.points());
+        to_points(&self.tables, n, v, &mut self.variation_points);
+        let at = Batch { len, time: &[], states: &self.states, parameters: &self.spec.parameters };
+        let v = Direction { states: &self.variation_points, columns: &[] };
+        self.evaluator.third(at, [v, v, v], &mut self.gradient_states)?;
+        by_point(n, &self.gradient_states, out);
+        Ok(())
+    }
+
+    /// `A v` at all Gauss points, as [`System::quadratic`].
+    pub fn linear(&mut self, v: &[f64], out: &mut [f64]) {
+        let (n, len) = (self.n(), self.points());
+        to_points(&self.tables, n, v, &mut self.variation_points);
+        out.fill(0.0);
+        for (entry, &(a, b)) in self.entries.iter().enumerate() {
+            for point in 0..len {
+                out[point * n + a] += self.jacobian[entry * len + point] * self.variation_points[b * len + point];
+            }
+        }
+    }
+
+    /// Values of node data at all Gauss points, as [`System::quadratic`].
+    pub fn values(&mut self, v: &[f64], out: &mut [f64]) {
+        let n = self.n();
+        to_points(&self.tables, n, v, &mut self.variation_points);
+        by_point(n, &self.variation_points, out);
+    }
+
+    /// Rates at all Gauss points, as [`System::quadratic`].
+    pub fn rates(&self, out: &mut [f64]) {
+        by_point(self.n(), &self.rates, out);
+    }
+
+    /// `Sum_i h_i Sum_k x_ik . y_ik`: with x a left vector of the rows (adjoint values times Gauss weights) it is the
+    /// integral of the adjoint with y over scaled time.
+    pub fn pair(&self, x: &[f64], y: &[f64]) -> f64 {
+        let rows = self.n() * self.tables.degree;
+        x.chunks_exact(rows).zip(y.chunks_exact(rows)).enumerate().map(|(i, (x, y))| self.h(i) * dot(x, y)).sum()
+    }
+
+    /// `Int <x, y> dt` over scaled time by Gauss quadrature.
+    pub fn integral(&self, x: &[f64], y: &[f64]) -> f64 {
+        let (n, m) = (self.n(), self.tables.degree);
+        x.chunks_exact(n)
+            .zip(y.chunks_exact(n))
+            .enumerate()
+            .map(|(point, (x, y))| self.h(point / m) * self.tables.weights[point % m] * dot(x, y))
+            .sum()
+    }
+
+    /// Multiplies values at Gauss points by `factor` and the length of their interval: a right side of the interval rows.
+    pub fn weigh_rows(&self, factor: f64, values: &mut [f64]) {
+        let rows = self.n() * self.tables.degree;
+        for (i, values) in values.chunks_exact_mut(rows).enumerate() {
+            let weight = factor * self.h(i);
+            values.iter_mut().for_each(|value| *value *= weight);
+        }
+    }
+}
+
+fn by_point(n: usize, from: &[f64], out: &mut [f64]) {
+    let points = from.len() / n;
+    for point in 0..points {
+        for a in 0..n {
+            out[point * n + a] = from[a * points + point];
         }
     }
 }

@@ -22,6 +22,8 @@ pub struct Tables {
     pub value: Vec<f64>,
     /// `slope[k * (m+1) + j]`: its derivative there.
     pub slope: Vec<f64>,
+    /// `node_slope[i * (m+1) + j]`: derivative of the j-th Lagrange polynomial at node i.
+    pub node_slope: Vec<f64>,
     /// Weights of the m-th derivative, a constant on the interval: m+1 numbers.
     pub highest: Vec<f64>,
     /// `max |P|`, `P(s) = (1/m!) Int_0^s Prod (x - rho_l) dx`: the constant of the local error (de Boor 1973).
@@ -39,17 +41,33 @@ impl Tables {
         for (k, &point) in points.iter().enumerate() {
             let of = k * size..(k + 1) * size;
             lagrange_at(&nodes, &bary, point, &mut value[of.clone()]);
-            lagrange_slopes(&nodes, &bary, point, &value[of.clone()], &mut slope[of]);
+            lagrange_slopes(&nodes, &bary, &value[of.clone()], &mut slope[of]);
+        }
+        let mut node_slope = vec![0.0; size * size];
+        for i in 0..size {
+            let unit: Vec<f64> = (0..size).map(|j| if i == j { 1.0 } else { 0.0 }).collect();
+            lagrange_slopes(&nodes, &bary, &unit, &mut node_slope[i * size..(i + 1) * size]);
         }
         let error_constant = error_constant(&points);
         let highest = highest_derivative(&nodes);
-        Self { degree, node_weights: node_quadrature(degree), nodes, points, weights, value, slope, highest, error_constant }
+        Self {
+            degree,
+            node_weights: node_quadrature(degree),
+            nodes,
+            points,
+            weights,
+            value,
+            slope,
+            node_slope,
+            highest,
+            error_constant,
+        }
     }
 }
 
-/// Slopes of all Lagrange polynomials at `s`: by the barycentric differentiation matrix where `s` is a node, by
-/// interpolating that matrix's rows elsewhere (exact, since slopes are polynomials of lower degree).
-fn lagrange_slopes(nodes: &[f64], bary: &[f64], _s: f64, value_at_s: &[f64], out: &mut [f64]) {
+/// Slopes of all Lagrange polynomials at a place where their values are `value_at_s`: rows of the barycentric
+/// differentiation matrix, interpolated (exact, since slopes are polynomials of lower degree).
+fn lagrange_slopes(nodes: &[f64], bary: &[f64], value_at_s: &[f64], out: &mut [f64]) {
     out.fill(0.0);
     for (i, &weight_of_row) in value_at_s.iter().enumerate() {
         let mut diagonal = 0.0;

@@ -98,12 +98,19 @@ impl Variational {
         }
     }
 
-    /// Maps along `profile` with all `parameters`; `scales` are the sizes of the states.
+    /// Maps along `profile` with all `parameters`; `scales` are the sizes of the states, `fineness` divides the
+    /// largest `h T |A|` of a piece (1 is as accurate as the profile as a rule).
     ///
     /// # Errors
     /// [`Singular`] with the mesh interval where a stage system is singular or not finite.
-    pub fn maps(&mut self, profile: &Profile, parameters: &[f64], scales: &[f64]) -> Result<VariationalMaps, Singular> {
-        let pieces = self.cut(profile, parameters, scales);
+    pub fn maps(
+        &mut self,
+        profile: &Profile,
+        parameters: &[f64],
+        scales: &[f64],
+        fineness: f64,
+    ) -> Result<VariationalMaps, Singular> {
+        let pieces = self.cut(profile, parameters, scales, fineness);
         let (n, m) = (self.n, self.accurate.points.len());
         let mut out = VariationalMaps {
             n,
@@ -153,7 +160,7 @@ impl Variational {
     }
 
     /// Cuts every mesh interval by the size of the scaled Jacobian on it.
-    fn cut(&mut self, profile: &Profile, parameters: &[f64], scales: &[f64]) -> Vec<Piece> {
+    fn cut(&mut self, profile: &Profile, parameters: &[f64], scales: &[f64], fineness: f64) -> Vec<Piece> {
         let m = self.accurate.points.len();
         self.places.clear();
         for interval in 0..profile.intervals() {
@@ -174,7 +181,7 @@ impl Variational {
                 norm = row_sums.iter().fold(norm, |norm, sum| norm.max(*sum));
             }
             let length = (profile.mesh[interval + 1] - profile.mesh[interval]) * profile.period;
-            let wanted = (norm * length / (0.5 * m as f64)).ceil();
+            let wanted = (norm * length * fineness / (0.5 * m as f64)).ceil();
             let damping = !(wanted <= MOST_PIECES as f64);
             let count = if damping { MOST_PIECES } else { (wanted as usize).max(1) };
             pieces.extend((0..count).map(|k| Piece {

@@ -75,12 +75,55 @@ fn series<S: Scalar>(order: usize, u: S) -> S {
     for &coefficient in DERIVATIVE_COEFFICIENTS[order][first - 1..].iter().rev() {
         sum = sum * square.clone() + S::from_f64(coefficient);
     }
-    // The lowest even n is 2 * first: its power of u is 2 for order 0, 1 for odd, 0 for even orders.
+    low_terms(order, sum, square, u)
+}
+
+/// The derivative from the sum over even n, with the two low terms 1 - u/2. The lowest even n leaves
+/// u^2 for order 0, u for odd and 1 for even orders.
+#[inline]
+fn low_terms<S: Scalar>(order: usize, sum: S, square: S, u: S) -> S {
     match order {
         0 => sum * square - u * S::from_f64(0.5) + S::from_f64(1.0),
         1 => sum * u - S::from_f64(0.5),
         odd if odd % 2 == 1 => sum * u,
         _ => sum,
+    }
+}
+
+/// Lanes whose series are summed side by side: one alone waits for each addition of Horner's rule.
+const SIDE_BY_SIDE: usize = 8;
+
+/// `g^(order)` of many machine numbers: to the last bit what [`bernoulli`] gives for each.
+pub(crate) fn bernoulli_lanes(order: u8, out: &mut [f64], u: &[f64]) {
+    let mut blocks = out.chunks_exact_mut(SIDE_BY_SIDE);
+    let mut arguments = u.chunks_exact(SIDE_BY_SIDE);
+    for (out, u) in (&mut blocks).zip(&mut arguments) {
+        if u.iter().any(|u| u.abs() <= CROSS_OVER) {
+            series_lanes(usize::from(order.min(HIGHEST_ORDER)), out, u);
+        }
+        for (out, &u) in out.iter_mut().zip(u) {
+            if u.is_nan() || u.abs() > CROSS_OVER {
+                *out = bernoulli(order, u);
+            }
+        }
+    }
+    for (out, &u) in blocks.into_remainder().iter_mut().zip(arguments.remainder()) {
+        *out = bernoulli(order, u);
+    }
+}
+
+/// The steps of [`series`], lane by lane.
+fn series_lanes(order: usize, out: &mut [f64], u: &[f64]) {
+    let u: [f64; SIDE_BY_SIDE] = std::array::from_fn(|lane| u[lane]);
+    let square = u.map(|u| u * u);
+    let mut sum = [0.0; SIDE_BY_SIDE];
+    for &coefficient in DERIVATIVE_COEFFICIENTS[order][order.div_ceil(2).max(1) - 1..].iter().rev() {
+        for lane in 0..SIDE_BY_SIDE {
+            sum[lane] = sum[lane] * square[lane] + coefficient;
+        }
+    }
+    for lane in 0..SIDE_BY_SIDE {
+        out[lane] = low_terms(order, sum[lane], square[lane], u[lane]);
     }
 }
 
@@ -104,4 +147,21 @@ fn recurrence<S: Scalar>(order: usize, u: S) -> S {
         slopes[k] = -(q.clone() * sum);
     }
     slopes[order].clone()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::{HIGHEST_ORDER, bernoulli, bernoulli_lanes};
+
+    #[test]
+    fn lanes_equal_single_numbers() {
+        let u: Vec<f64> = (0..45).map(|i| f64::from(i) * 0.2 - 4.4).chain([f64::NAN, 900.0]).collect();
+        for order in 0..=HIGHEST_ORDER {
+            let mut out = vec![0.0; u.len()];
+            bernoulli_lanes(order, &mut out, &u);
+            for (found, &u) in out.iter().zip(&u) {
+                assert_eq!(found.to_bits(), bernoulli(order, u).to_bits(), "{order} at {u}");
+            }
+        }
+    }
 }

@@ -6,6 +6,7 @@
 //! uniform numbers. Registers are reused, so that the whole file of a usual model stays in the
 //! first-level cache (64 lanes of 8 bytes: 64 registers fill 32 KiB).
 
+use crate::bernoulli::{bernoulli, bernoulli_lanes};
 use crate::function::{Binary, Unary};
 use crate::scalar::{binary_f64, unary_f64};
 
@@ -223,6 +224,10 @@ fn compute(operation: Operation, out: &mut [f64], a: Lanes<'_>, b: Lanes<'_>) {
         Operation::Multiply => zip(out, a, b, |x, y| x * y),
         Operation::Unary(Unary::Sqrt) => map(out, a, f64::sqrt),
         Operation::Unary(Unary::Exp) => map(out, a, f64::exp),
+        Operation::Unary(Unary::Bernoulli(order)) => match a {
+            Lanes::Each(a) => bernoulli_lanes(order, out, a),
+            Lanes::All(a) => out.fill(bernoulli(order, a)),
+        },
         Operation::Unary(function) => map(out, a, |x| unary_f64(function, x)),
         Operation::Power(exponent) => map(out, a, |x| x.powi(exponent)),
         Operation::Binary(function) => zip(out, a, b, |x, y| binary_f64(function, x, y)),

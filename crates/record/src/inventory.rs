@@ -31,6 +31,7 @@ enum Place {
     Top,
     Branches,
     Figures,
+    Export,
 }
 
 impl Inventory {
@@ -93,6 +94,7 @@ fn inner_place(entry: &DirEntry, place: &Place) -> Option<Place> {
     match (place, entry.file_name().to_str()?) {
         (Place::Top, "branches") => Some(Place::Branches),
         (Place::Top, "figures") => Some(Place::Figures),
+        (Place::Top, "export") => Some(Place::Export),
         _ => None,
     }
 }
@@ -107,6 +109,7 @@ fn is_ours(entry: &DirEntry, place: &Place) -> bool {
         Place::Top => matches!(name, "study.ron" | "thresholds.csv" | "journal.ron"),
         Place::Branches => name.ends_with(".ron") || name.ends_with(".csv"),
         Place::Figures => name.ends_with(".svg"),
+        Place::Export => name.ends_with(".csv") || name.ends_with(".npz"),
     }
 }
 

@@ -228,7 +228,7 @@ impl Drop for Results {
             && !self.has_files
         {
             // Fails, as it must, on a folder that is not empty; then both stay.
-            for inside in ["branches", "figures", ""] {
+            for inside in ["branches", "figures", "export", ""] {
                 let _ = fs::remove_dir(self.folder.join(inside));
             }
             if !self.folder.exists() {
@@ -248,7 +248,7 @@ fn resolve(path: &Path) -> Result<PathBuf, RecordError> {
     if folder.is_dir() { Ok(folder) } else { Err(RecordError::NotAFolder { path: path.to_path_buf() }) }
 }
 
-fn make_folder(folder: &Path) -> Result<(), RecordError> {
+pub(crate) fn make_folder(folder: &Path) -> Result<(), RecordError> {
     fs::create_dir_all(folder).map_err(|source| RecordError::from_io(folder, Attempt::MakeFolder, source))
 }
 

@@ -7,6 +7,7 @@
 
 mod locate;
 mod measure;
+mod normal_form;
 mod point;
 mod problem;
 mod scale;
@@ -16,6 +17,7 @@ mod test_function;
 
 pub use locate::{Located, LocateFault};
 pub use measure::Measures;
+pub use normal_form::DoublingForm;
 pub use point::{CyclePoint, CycleTangent};
 pub use problem::{CycleProblem, CycleSettings, CycleSpec, StartFault, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS};
 pub use spectrum::{Spectrum, SpectrumFault, SpectrumSolver};

@@ -6,7 +6,7 @@
 
 use std::sync::Arc;
 
-use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, interpolate_nodes};
+use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, Scalar, interpolate_nodes};
 use armilla_follow::{Closing, Failure, Orientation, Problem, Station};
 
 use crate::point::{CyclePoint, CycleTangent};
@@ -16,6 +16,8 @@ use crate::test_function::{CriticalKind, NullVectors, TestFunction};
 /// A located event.
 #[derive(Clone, Debug)]
 pub struct Located {
+    /// Which multiplier is critical.
+    pub kind: CriticalKind,
     /// The critical cycle on the refined mesh.
     pub point: CyclePoint,
     /// Estimated absolute error of the parameter.
@@ -58,7 +60,7 @@ impl CycleProblem {
                 && let Ok((point, error, period_error, vectors)) = self.refine_event(kind, &point)
             {
                 let share = self.share(before, &point, total);
-                return Ok(Located { point, error, period_error, vectors, report, share, halvings });
+                return Ok(Located { kind, point, error, period_error, vectors, report, share, halvings });
             }
             let Some(middle) = self.middle(&low, &high) else { break };
             let same = middle.watch.values[index].value * low.watch.values[index].value > 0.0;
@@ -111,10 +113,16 @@ impl CycleProblem {
         let mesh: Arc<[f64]> = halved(&coarse.mesh).into();
         let mut fine = coarse.on_mesh(self.system.tables(), &mesh);
         let (_, vectors) = self.augmented(kind, &mut fine)?;
-        let error = |a: f64, b: f64, scale: f64| (a - b).abs() + ROUNDOFF * b.abs().max(scale);
-        let value_error = error(coarse.unknowns.parameter, fine.unknowns.parameter, self.metric.parameter_scale);
-        let period_error = error(coarse.unknowns.period, fine.unknowns.period, 0.0);
+        let value_error = (coarse.unknowns.parameter - fine.unknowns.parameter).abs()
+            + self.rounding(Scalar::Parameter, fine.unknowns.parameter);
+        let period_error =
+            (coarse.unknowns.period - fine.unknowns.period).abs() + self.rounding(Scalar::Period, fine.unknowns.period);
         Ok((fine, value_error, period_error, vectors))
+    }
+
+    /// Roundoff of a scalar of the last corrected point: that of the rows through the conditioning, and of the number.
+    fn rounding(&mut self, scalar: Scalar, value: f64) -> f64 {
+        ROUNDOFF_MARGIN * self.newton.roundoff(&self.system, scalar) + f64::EPSILON * value.abs()
     }
 
     /// A station halfway along the branch between two stations.
@@ -158,14 +166,15 @@ impl CycleProblem {
         let mut fine = CyclePoint { mesh, unknowns: Iterate { nodes, ..point.unknowns.clone() } };
         let value = point.unknowns.parameter;
         self.correct_at(&mut fine, value).map_err(|_| Failure::NotConverged)?;
-        let error = (fine.unknowns.period - point.unknowns.period).abs() + ROUNDOFF * fine.unknowns.period;
+        let error =
+            (fine.unknowns.period - point.unknowns.period).abs() + self.rounding(Scalar::Period, fine.unknowns.period);
         Ok((fine, error))
     }
 }
 
-/// Relative roundoff left in a value that Newton's method took to its floor: some tens of units in the last place, as
-/// the residual is a sum of that many terms.
-const ROUNDOFF: f64 = 64.0 * f64::EPSILON;
+/// Both the coarse and the fine value carry roundoff of the estimated size as a standard deviation; four of them cover
+/// the difference and the truth.
+const ROUNDOFF_MARGIN: f64 = 4.0;
 
 fn halved(mesh: &[f64]) -> Vec<f64> {
     let mut out = Vec::with_capacity(2 * mesh.len());

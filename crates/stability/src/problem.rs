@@ -100,7 +100,7 @@ pub struct CycleProblem {
     pub(crate) metric: Metric,
     /// Largest range of each state seen on the branch.
     largest: Vec<f64>,
-    newton: Workspace,
+    pub(crate) newton: Workspace,
     spectrum: SpectrumSolver,
     /// Spectrum of the point watched last, with its parameter and period: `describe` asks for the same one.
     watched: Option<(f64, f64, Spectrum)>,
@@ -201,7 +201,7 @@ impl CycleProblem {
     pub fn spectrum(&mut self, point: &CyclePoint) -> Result<Spectrum, crate::SpectrumFault> {
         let parameters = self.parameters_at(point);
         let profile = point.profile(self.settings.degree);
-        self.spectrum.spectrum(&profile, &parameters, &self.metric.scales)
+        self.spectrum.spectrum(&profile, &parameters, &self.metric.scales, self.settings.mesh.accuracy)
     }
 
     /// Estimated error of a cycle's profile, relative to the range of each state.

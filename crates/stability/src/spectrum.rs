@@ -108,26 +108,61 @@ impl SpectrumSolver {
         }
     }
 
-    /// Spectrum of the cycle `profile` of an autonomous field; `scales` are the sizes of the states.
+    /// Spectrum of the cycle `profile` of an autonomous field; `scales` are the sizes of the states, `accuracy` the wanted
+    /// agreement with Liouville's formula relative to the sum of all |log mu|: the linear mesh is refined until it holds.
     ///
     /// # Errors
     /// [`SpectrumFault`].
-    pub fn spectrum(&mut self, profile: &Profile, parameters: &[f64], scales: &[f64]) -> Result<Spectrum, SpectrumFault> {
-        let maps = self.variational.maps(profile, parameters, scales).map_err(SpectrumFault::Singular)?;
+    pub fn spectrum(
+        &mut self,
+        profile: &Profile,
+        parameters: &[f64],
+        scales: &[f64],
+        accuracy: f64,
+    ) -> Result<Spectrum, SpectrumFault> {
+        let mut best: Option<Spectrum> = None;
+        for fineness in FINENESS {
+            let spectrum = self.spectrum_on(profile, parameters, (scales, fineness))?;
+            let size: f64 = spectrum.multipliers.iter().map(|mu| mu.log_modulus.abs()).filter(|x| x.is_finite()).sum();
+            let before = best.as_ref().map_or(f64::INFINITY, |best| best.liouville_defect);
+            let good = spectrum.liouville_defect <= accuracy * size.max(1.0);
+            // Past roundoff, or where a stretch is too stiff to resolve, more pieces do not help.
+            let stalled = !(spectrum.liouville_defect < 0.5 * before) || spectrum.damped;
+            if best.is_none() || spectrum.liouville_defect < before {
+                best = Some(spectrum);
+            }
+            if good || stalled {
+                break;
+            }
+        }
+        best.ok_or(SpectrumFault::NotConverged(NotConverged))
+    }
+
+    fn spectrum_on(&mut self, profile: &Profile, parameters: &[f64], (scales, fineness): (&[f64], f64)) -> Result<Spectrum, SpectrumFault> {
+        let maps = self.variational.maps(profile, parameters, scales, fineness).map_err(SpectrumFault::Singular)?;
         let trivial = deflate(&maps, scales, &mut self.reduced)?;
         let n = maps.n;
-        self.schur.multipliers(n - 1, &self.reduced, &mut self.found).map_err(SpectrumFault::NotConverged)?;
-        let multipliers: Vec<Multiplier> =
-            self.found.iter().map(|mu| Multiplier { log_modulus: mu.log_modulus, angle: mu.angle }).collect();
+        let multipliers: Vec<Multiplier> = if n == 2 {
+            // In the plane Liouville's formula is the multiplier itself, and it is positive: the flow keeps orientation.
+            vec![Multiplier { log_modulus: maps.divergence, angle: 0.0 }]
+        } else {
+            self.schur.multipliers(n - 1, &self.reduced, &mut self.found).map_err(SpectrumFault::NotConverged)?;
+            self.found.iter().map(|mu| Multiplier { log_modulus: mu.log_modulus, angle: mu.angle }).collect()
+        };
         let sum: f64 = trivial + multipliers.iter().map(|mu| mu.log_modulus).sum::<f64>();
+        let liouville_defect = (sum - maps.divergence).abs();
         Ok(Spectrum {
             multipliers,
             trivial_defect: trivial.exp_m1().abs(),
-            liouville_defect: (sum - maps.divergence).abs(),
+            // An exact zero multiplier has no logarithm to compare.
+            liouville_defect: if liouville_defect.is_nan() { f64::INFINITY } else { liouville_defect },
             damped: maps.damped,
         })
     }
 }
+
+/// Refinements of the linear mesh tried in turn.
+const FINENESS: [f64; 4] = [1.0, 2.0, 4.0, 8.0];
 
 /// Splits the flow direction off every map. Writes the (n-1) x (n-1) blocks to `reduced`, returns the logarithm of
 /// the trivial multiplier.

@@ -41,7 +41,6 @@ fn hopf_with_shear_is_exact() {
     let (mut problem, point) =
         CycleProblem::start(spec(&model, "mu", &[("k", 0.5)], 1.0), CycleSettings::new(1e-9), &start, 0.25).expect("starts");
     let found = problem.describe(&point, 1, 0.0).expect("multipliers");
-    eprintln!("{found:?}");
     assert!((found.period / 5.585053606381854 - 1.0).abs() < 1e-12, "{}", found.period);
     assert!((found.multipliers[0].log_modulus - 0.061266210509709911f64.ln()).abs() < 1e-10);
     assert!(found.trivial_defect < 1e-10 && found.liouville_defect < 1e-10);
@@ -61,26 +60,54 @@ fn fold_of_cycles_is_located() {
             let (problem, before, after) = follower.parts();
             let (before, after) = (before.expect("a step was made").clone(), after.clone());
             found = Some(problem.locate(CriticalKind::Fold, WATCH_FOLD, &before, &after).expect("located"));
-            break;
         }
     }
     let found = found.expect("a fold");
-    eprintln!("{} error {} {:?} halvings {}", found.point.unknowns.parameter, found.error, found.report, found.halvings);
     assert!((found.point.unknowns.parameter + 0.25).abs() < 1e-12);
+    // Exact: r' = r g, g = mu + r^2 - r^4, so at the fold r' = -2 r^3 (r - r0)^2 / r0^2 ... = -4 r0^3 (r - r0)^2 with
+    // r0^2 = 1/2; the period does not change (S = 0) and v is radial of size 1/sqrt(2 pi), hence
+    // b = -4 r0^3 / sqrt(2 pi), up to the sign of v.
+    let b = problem.fold_form(&found).expect("regular");
+    let exact = 4.0 * 0.5f64.powf(1.5) / TAU.sqrt();
+    assert!((b.abs() - exact).abs() < 1e-10, "{b} {exact}");
+}
+
+/// X4, exact: a = e/(2 pi), c = g/(2 pi), both signs of g; the doubled cycle has U^2 = -l/g.
+#[test]
+fn doubling_coefficients_are_exact() {
+    let model = model(include_str!("../../../tests/models/x4.model.ron"));
+    for (g, e) in [(-1.3, 0.7), (0.9, -0.4)] {
+        let set = [("g", g), ("e", e)];
+        let (mut problem, point) =
+            CycleProblem::start(spec(&model, "l", &set, 0.2), CycleSettings::new(1e-10), &circle(3, 1.0, TAU), -0.05)
+                .expect("starts");
+        let mut follower = Follower::start(&mut problem, point, 1.0, Settings::new((-0.1, 0.1))).expect("follows");
+        let mut located = None;
+        while let Outcome::Step(step) = follower.step() {
+            if step.crossings.iter().any(|crossing| crossing.index == WATCH_DOUBLING) {
+                let (problem, before, after) = follower.parts();
+                let (before, after) = (before.expect("a step was made").clone(), after.clone());
+                located =
+                    Some(problem.locate(CriticalKind::Doubling, WATCH_DOUBLING, &before, &after).expect("located"));
+            }
+        }
+        let located = located.expect("a doubling");
+        let form = problem.doubling_form(&located).expect("third derivatives");
+        assert!((form.a - e / TAU).abs() < 1e-10, "{form:?} {}", e / TAU);
+        assert!((form.c - g / TAU).abs() < 1e-10, "{form:?} {}", g / TAU);
+    }
 }
 
 /// X3, exact: doubling at mu = 0; doubled cycle of amplitude sqrt(mu), period 4 pi/om.
 #[test]
 fn doubling_is_located_and_switched() {
     let model = model(include_str!("../../../tests/models/x3.model.ron"));
-    eprintln!("{:?}", model.parameters());
     let om = model.values()[model.parameter_index("om").expect("om")];
     let kap = model.values()[model.parameter_index("kap").expect("kap")];
     let start = circle(3, 1.0, TAU / om);
     let (mut problem, point) =
         CycleProblem::start(spec(&model, "mu", &[], 0.6), CycleSettings::new(1e-9), &start, -0.2).expect("starts");
     let first = problem.describe(&point, 1, 0.0).expect("multipliers");
-    eprintln!("{first:?}");
     let period = TAU / om;
     assert!((first.multipliers[0].log_modulus + 0.2 * period).abs() < 1e-10);
     assert_eq!(first.multipliers[0].angle, PI);
@@ -88,8 +115,7 @@ fn doubling_is_located_and_switched() {
     let mut follower = Follower::start(&mut problem, point, 1.0, Settings::new((-0.3, 0.3))).expect("follows");
     let mut located = None;
     while let Outcome::Step(step) = follower.step() {
-        eprintln!("{:?} {:?}", follower.current().watch, follower.stride());
-        if step.crossings.iter().any(|crossing| crossing.index == WATCH_DOUBLING) {
+            if step.crossings.iter().any(|crossing| crossing.index == WATCH_DOUBLING) {
             let (problem, before, after) = follower.parts();
             let (before, after) = (before.expect("a step was made").clone(), after.clone());
             located = Some(problem.locate(CriticalKind::Doubling, WATCH_DOUBLING, &before, &after).expect("located"));
@@ -97,11 +123,9 @@ fn doubling_is_located_and_switched() {
     }
     assert_eq!(follower.end(), Some(&FollowEnd::Edge(0.3)));
     let located = located.expect("a doubling");
-    eprintln!("{} error {} {:?} halvings {}", located.point.unknowns.parameter, located.error, located.report, located.halvings);
     assert!(located.point.unknowns.parameter.abs() < 1e-12);
     let mut doubled = problem.double(&located).expect("a doubled branch");
     let at = doubled.problem.describe(&doubled.point, 2, 0.0).expect("multipliers");
-    eprintln!("{at:?}");
     assert!((at.period - 2.0 * period).abs() < 1e-9);
     assert!((at.multipliers[0].log_modulus + 2.0 * at.value * at.period).abs() < 1e-9);
 }

@@ -105,7 +105,7 @@ fn event_record(problem: &CycleProblem, found: &Found, name: String, turns: usiz
         period_error: found.period_error,
         turns,
         angle: found.angle,
-        criticality: None,
+        criticality: found.criticality,
         distance: found.distance,
         note: found.note.clone(),
         maxima: measures.maxima,

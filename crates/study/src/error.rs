@@ -6,6 +6,8 @@ use armilla_flow::FlowError;
 use armilla_model::{Diagnostic, ModelError};
 use armilla_record::RecordError;
 
+use crate::words::{digits, listed};
+
 /// Why a study could not be done. [`StudyError::class`] tells whose fault it is.
 #[derive(Debug)]
 pub enum StudyError {
@@ -32,7 +34,12 @@ pub enum StudyError {
         states: Vec<(String, f64)>,
     },
     /// The simulation could not be carried out.
-    Settling(FlowError),
+    Settling {
+        /// Why.
+        error: FlowError,
+        /// The same with the names of the model.
+        words: String,
+    },
     /// The motion settles at rest.
     SettlesAtRest {
         /// The state of rest, by name.
@@ -80,9 +87,9 @@ impl StudyError {
             Self::Unreadable { .. } | Self::Model(_) => ErrorClass::Input,
             Self::Record(error) if error.is_machine_fault() => ErrorClass::Machine,
             Self::Record(_) => ErrorClass::Input,
-            Self::Settling(FlowError::Aborted { .. }) | Self::Interrupted => ErrorClass::NotReached,
-            Self::Settling(FlowError::Setting { .. } | FlowError::ForcingPeriodMissing) => ErrorClass::Input,
-            Self::Settling(_) | Self::SettlesAtRest { .. } | Self::DidNotSettle { .. } | Self::NoCycle { .. } => {
+            Self::Settling { error: FlowError::Aborted { .. }, .. } | Self::Interrupted => ErrorClass::NotReached,
+            Self::Settling { error: FlowError::Setting { .. } | FlowError::ForcingPeriodMissing, .. } => ErrorClass::Input,
+            Self::Settling { .. } | Self::SettlesAtRest { .. } | Self::DidNotSettle { .. } | Self::NoCycle { .. } => {
                 ErrorClass::NotReached
             }
         }
@@ -103,14 +110,18 @@ impl std::fmt::Display for StudyError {
                 }
                 write!(f, "\n    help: begin elsewhere (`begin` in the model file) or change the parameters of the start")
             }
-            Self::Settling(error) => write!(f, "settling failed: {error}"),
+            Self::Settling { error: FlowError::Aborted { .. }, .. } | Self::Interrupted => {
+                write!(f, "stopped before there was a result; nothing was written")
+            }
+            Self::Settling { words, .. } => write!(f, "settling failed: {words}"),
             Self::SettlesAtRest { states, growth } => write!(
                 f,
-                "the motion settles at rest ({}), all disturbances shrinking at {:.3e} per time unit or faster; there is \
-                 no cycle to start from\n    help: start at parameter values where the model oscillates \
-                 (`start: Settle(at: ...)`), or begin farther from rest (`begin` in the model file)",
+                "the motion settles at rest ({}){}; there is no cycle to start from\n    help: start at parameter values \
+                 where the model oscillates (`start: Settle(at: ...)`), or begin farther from rest (`begin` in the \
+                 model file)",
                 listed(states),
-                -growth
+                // At a degenerate state of rest there is no rate of decay to tell.
+                if *growth < 0.0 { format!(", all disturbances shrinking at {} per time unit or faster", digits(-growth)) } else { String::new() }
             ),
             Self::DidNotSettle { evidence } => write!(
                 f,
@@ -125,14 +136,8 @@ impl std::fmt::Display for StudyError {
             Self::NotInThisVersion { what, instead } => {
                 write!(f, "{what} is not built in this version\n    help: {instead}")
             }
-            Self::Interrupted => write!(f, "stopped before there was a result; nothing was written"),
         }
     }
-}
-
-/// `level = 0.4, flow = 0`.
-pub(crate) fn listed(states: &[(String, f64)]) -> String {
-    states.iter().map(|(name, value)| format!("{name} = {value}")).collect::<Vec<_>>().join(", ")
 }
 
 impl std::error::Error for StudyError {}
@@ -150,10 +155,5 @@ impl From<ModelError> for StudyError {
 impl From<RecordError> for StudyError {
     fn from(error: RecordError) -> Self {
         Self::Record(error)
-    }
-}
-impl From<FlowError> for StudyError {
-    fn from(error: FlowError) -> Self {
-        Self::Settling(error)
     }
 }

@@ -14,9 +14,11 @@ mod start;
 mod study;
 mod trace;
 mod walk;
+mod words;
 
 pub use error::{ErrorClass, StudyError};
 pub use file::{DEFAULT_ACCURACY, Follow, MeshOverride, Pursue, Start, StrideOverride, StudyFile, Values};
 pub use progress::{Observer, Progress, Silent};
 pub use study::{Study, parse};
 pub use trace::{TraceOptions, Traced, redraw, trace};
+pub use words::{digits, settling_words, unsettled_words};

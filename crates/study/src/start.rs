@@ -2,7 +2,7 @@
 
 use std::sync::atomic::AtomicBool;
 
-use armilla_flow::{Evidence, SettleOptions, Verdict, settle};
+use armilla_flow::{SettleOptions, Verdict, settle};
 use armilla_model::Batch;
 use armilla_stability::{CyclePoint, CycleProblem, CycleSpec};
 
@@ -11,6 +11,7 @@ use crate::file::Start;
 use crate::progress::{Observer, Progress};
 use crate::settings::cycle_settings;
 use crate::study::Study;
+use crate::words::{listed, settling_words, unsettled_words};
 
 /// The first cycle with the problem it belongs to.
 pub(crate) struct First {
@@ -51,7 +52,8 @@ pub(crate) fn first_cycle(study: &Study, abort: &AtomicBool, observer: &mut dyn 
     observer.notice(Progress::Settling);
     let options = SettleOptions { transient, abort, ..SettleOptions::default() };
     let field = study.model.field();
-    let settled = settle(field.as_ref(), &study.start_parameters, &study.model.begin(), &options)?;
+    let settled = settle(field.as_ref(), &study.start_parameters, &study.model.begin(), &options)
+        .map_err(|error| StudyError::Settling { words: settling_words(&error, &study.model), error })?;
     let notes: Vec<String> = settled.pushes.iter().map(|push| push_note(study, push)).collect();
     notes.iter().for_each(|note| observer.notice(Progress::Note(note)));
     let cycle = match settled.verdict {
@@ -59,10 +61,7 @@ pub(crate) fn first_cycle(study: &Study, abort: &AtomicBool, observer: &mut dyn 
         Verdict::Equilibrium(rest) => {
             return Err(StudyError::SettlesAtRest { growth: rest.growth(), states: named(study, &rest.state) });
         }
-        Verdict::NotSettled(evidence) => {
-            return Err(StudyError::DidNotSettle { evidence: evidence_words(study, &evidence) });
-        }
-        _ => return Err(StudyError::DidNotSettle { evidence: "the motion is neither at rest nor periodic".into() }),
+        other => return Err(StudyError::DidNotSettle { evidence: unsettled_words(&other, &study.model) }),
     };
     let turns = cycle.turns.max(1);
     let settings = cycle_settings(study, turns);
@@ -100,24 +99,6 @@ fn check_rates(study: &Study) -> Result<(), StudyError> {
 }
 
 fn push_note(study: &Study, push: &armilla_flow::Push) -> String {
-    let states = crate::error::listed(&named(study, &push.equilibrium.state));
+    let states = listed(&named(study, &push.equilibrium.state));
     format!("the start sat on an unstable state of rest ({states}) and was pushed off it by {:e}", push.size)
-}
-
-fn evidence_words(study: &Study, evidence: &Evidence) -> String {
-    let ranges: Vec<String> = study
-        .model
-        .states()
-        .iter()
-        .zip(&evidence.ranges)
-        .map(|(state, (low, high))| format!("`{}` between {low:.6} and {high:.6}", state.name))
-        .collect();
-    let mut words = format!("after a time of {:.6} and {} returns, {}", evidence.time, evidence.returns, ranges.join(", "));
-    if let Some(near) = &evidence.nearest {
-        words.push_str(&format!(
-            "; the nearest of the last returns came back after {} turns to within {:.1e} of the range",
-            near.returns, near.distance
-        ));
-    }
-    words
 }

@@ -3,7 +3,7 @@
 use std::sync::atomic::{AtomicBool, Ordering};
 
 use armilla_follow::{FollowEnd, Follower, Landing, Outcome, Settings, Station, Step};
-use armilla_record::{End, EndReason, EventKind, Point};
+use armilla_record::{Criticality, End, EndReason, EventKind, Point};
 use armilla_stability::{
     CriticalKind, CyclePoint, CycleProblem, CycleTangent, Located, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS,
 };
@@ -21,6 +21,7 @@ pub(crate) struct Found {
     pub error: Option<f64>,
     pub period_error: Option<f64>,
     pub angle: Option<f64>,
+    pub criticality: Option<Criticality>,
     pub note: String,
     /// What a switch needs.
     pub located: Option<Located>,
@@ -227,7 +228,7 @@ fn events_of_step(
             _ => continue,
         };
         found.push(match problem.locate(kind, crossing.index, before, after) {
-            Ok(located) => located_event(kind, located, (before, after), plan),
+            Ok(located) => located_event(problem, located, (before, after), plan),
             Err(fault) => {
                 let (a, b) = fault.bracket;
                 let word = if kind == CriticalKind::Fold { "fold" } else { "period doubling" };
@@ -246,11 +247,25 @@ fn events_of_step(
     found
 }
 
-fn located_event(kind: CriticalKind, located: Located, (before, after): (&CycleStation, &CycleStation), plan: &WalkPlan<'_>) -> Found {
+fn located_event(
+    problem: &mut CycleProblem,
+    located: Located,
+    (before, after): (&CycleStation, &CycleStation),
+    plan: &WalkPlan<'_>,
+) -> Found {
     let distance = before.distance + located.share * (after.distance - before.distance);
-    let (kind, angle) = match kind {
-        CriticalKind::Fold => (EventKind::Fold, 0.0),
-        CriticalKind::Doubling => (EventKind::Doubling, std::f64::consts::PI),
+    let (kind, angle, criticality, note) = match located.kind {
+        CriticalKind::Fold => {
+            let note = problem.fold_form(&located).map(|b| format!("normal form coefficient b = {b:.6e}"));
+            (EventKind::Fold, 0.0, None, note)
+        }
+        CriticalKind::Doubling => match problem.doubling_form(&located) {
+            Some(form) => {
+                let note = format!("normal form coefficient c = {:.6e}", form.c);
+                (EventKind::Doubling, std::f64::consts::PI, Some(criticality(form.c)), Some(note))
+            }
+            None => (EventKind::Doubling, std::f64::consts::PI, None, None),
+        },
     };
     Found {
         kind,
@@ -259,9 +274,14 @@ fn located_event(kind: CriticalKind, located: Located, (before, after): (&CycleS
         error: Some(located.error),
         period_error: Some(located.period_error),
         angle: Some(angle),
-        note: String::new(),
+        criticality,
+        note: note.unwrap_or_default(),
         located: Some(located),
     }
+}
+
+fn criticality(c: f64) -> Criticality {
+    if c < 0.0 { Criticality::Supercritical } else { Criticality::Subcritical }
 }
 
 /// A change of the unstable count that folds and doublings leave over: narrowed by bisection and told as what crosses.
@@ -310,6 +330,7 @@ fn unresolved(station: &CycleStation, (value, half_width): (f64, f64), note: Str
         error: Some(half_width),
         period_error: None,
         angle: None,
+        criticality: None,
         note,
         located: None,
     }
@@ -329,7 +350,7 @@ pub(crate) fn at_parameter(problem: &mut CycleProblem, kind: EventKind, point: &
         Ok((fine, error)) => (fine, Some(error)),
         Err(_) => (point.clone(), None),
     };
-    Found { kind, point, distance, error: Some(0.0), period_error, angle: None, note: String::new(), located: None }
+    Found { kind, point, distance, error: Some(0.0), period_error, angle: None, criticality: None, note: String::new(), located: None }
 }
 
 pub(crate) fn end(reason: EndReason, value: f64, words: String) -> End {

@@ -1,0 +1,165 @@
+//! Normal-form coefficients at folds and doublings, on the collocation.
+//!
+//! Real time, integrals over one period T, `phi* ' + A^T phi* = 0` the adjoint of the flow direction.
+//! - Fold, `xi' = b xi^2`: `b = 1/2 Int <phi*, B(v,v) + 2 S A v>` with `v' - A v - S f = 0`, `Int <v,f> = 0`,
+//!   `Int <v,v> = 1`, `Int <phi*,v> = 1`.
+//! - Doubling, `xi' = c xi^3`: `a = 1/2 Int <phi*, B(v,v)>`, `h' - A h = B(v,v) - 2 a f` periodic with
+//!   `Int <phi*,h> = 0`, `c = 1/6 Int <v*, C(v,v,v) + 3 B(v,h) - 6 a A v>`, v and v* antiperiodic, `Int <v,v> = 1`,
+//!   `Int <v*,v> = 1`. c < 0: the doubled cycle is born stable (supercritical).
+//!
+//! Source: Kuznetsov, Govaerts, Doedel & Dhooge 2005 (SIAM J. Numer. Anal. 43:1407); Iooss 1988 (J. Differential
+//! Equations 76:47). Left vectors of the collocation rows are adjoint values times Gauss weights, so every integral
+//! with an adjoint is a plain sum over rows.
+
+use armilla_collocation::System;
+use armilla_linalg::{Bordered, Right};
+
+use crate::locate::Located;
+use crate::problem::CycleProblem;
+use crate::test_function::CriticalKind;
+
+/// Coefficients at a doubling.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct DoublingForm {
+    /// Change of the turn's duration with the square of the amplitude.
+    pub a: f64,
+    /// Cubic coefficient; negative where the doubled cycle is born stable.
+    pub c: f64,
+}
+
+impl CycleProblem {
+    /// The coefficient b of a located fold; none where the linear systems fail.
+    pub fn fold_form(&mut self, located: &Located) -> Option<f64> {
+        debug_assert_eq!(located.kind, CriticalKind::Fold);
+        let period = self.linearise_at(located)?;
+        let system = &mut self.system;
+        let len = system.residual().len();
+        let (mut f, mut v, mut av, mut bvv) = (vec![0.0; len], vec![0.0; len], vec![0.0; len], vec![0.0; len]);
+        system.rates(&mut f);
+        // Node data of the flow direction, to shift v along the orbit until it is orthogonal to f.
+        let nodes = orthogonal_to_flow(system, &located.vectors.nodes, period)?;
+        system.values(&nodes, &mut v);
+        let size = period * system.integral(&v, &v);
+        let psi = &located.vectors.psi;
+        let pairing = period * system.pair(psi, &v);
+        system.linear(&nodes, &mut av);
+        system.quadratic(&nodes, &nodes, &mut bvv);
+        let quadratic = period * system.pair(psi, &bvv);
+        let mixed = 2.0 * located.vectors.period / period * period * system.pair(psi, &av);
+        // v is scaled to unit size, psi so that its pairing with the scaled v is 1.
+        Some(0.5 * (quadratic + mixed) / (pairing * size.sqrt()))
+    }
+
+    /// The coefficients of a located doubling; none where the field has no third derivatives or the systems fail.
+    pub fn doubling_form(&mut self, located: &Located) -> Option<DoublingForm> {
+        debug_assert_eq!(located.kind, CriticalKind::Doubling);
+        let period = self.linearise_at(located)?;
+        let mut phase = vec![0.0; located.point.unknowns.nodes.len()];
+        self.system.phase_row(&located.point.unknowns.nodes, &mut phase);
+        let system = &mut self.system;
+        let len = system.residual().len();
+        let column = || vec![0.0; len];
+        let (mut f, mut v, mut av, mut bvv, mut bvh, mut cvvv) = (column(), column(), column(), column(), column(), column());
+        let raw = &located.vectors;
+        system.values(&raw.nodes, &mut v);
+        let scale = 1.0 / (period * system.integral(&v, &v)).sqrt();
+        let nodes: Vec<f64> = raw.nodes.iter().map(|value| scale * value).collect();
+        system.values(&nodes, &mut v);
+        let pairing = period * system.pair(&raw.psi, &v);
+        system.rates(&mut f);
+        system.linear(&nodes, &mut av);
+        system.quadratic(&nodes, &nodes, &mut bvv);
+        system.cubic(&nodes, &mut cvvv).ok()?;
+        let periodic = Periodic::new(system, &phase)?;
+        let (h, a, phi) = periodic.second_order(system, &bvv, period);
+        // The part of h along the flow is fixed by Int <phi*, h> = 0.
+        let mut h_values = column();
+        system.values(&h, &mut h_values);
+        let along = period * system.pair(&phi, &h_values);
+        let flow = flow_nodes(system, &located.point.unknowns.nodes, period);
+        let h: Vec<f64> = h.iter().zip(&flow).map(|(h, f)| h - along * f).collect();
+        system.quadratic(&nodes, &h, &mut bvh);
+        let integrand: Vec<f64> =
+            (0..len).map(|k| cvvv[k] + 3.0 * bvh[k] - 6.0 * a * av[k]).collect();
+        let c = period * system.pair(&raw.psi, &integrand) / (6.0 * pairing);
+        (a.is_finite() && c.is_finite()).then_some(DoublingForm { a, c })
+    }
+
+    fn linearise_at(&mut self, located: &Located) -> Option<f64> {
+        self.system.set_mesh(&located.point.mesh);
+        self.system.linearise(&located.point.unknowns).ok()?;
+        Some(located.point.unknowns.period)
+    }
+}
+
+/// The periodic problem bordered by the flow column and the phase row: regular away from folds.
+struct Periodic {
+    bordered: Bordered,
+    /// Adjoint of the flow times Gauss weights, scaled to `Int <phi*, f> dt = 1` up to the period.
+    psi: Vec<f64>,
+}
+
+impl Periodic {
+    fn new(system: &System, phase: &[f64]) -> Option<Self> {
+        let shape = system.shape();
+        let mut bordered = Bordered::new(shape, 1);
+        system.period_column(bordered.column_mut(0));
+        bordered.row_mut(0).copy_from_slice(phase);
+        bordered.prepare(system.cyclic(), 1.0).ok()?;
+        let mut psi = vec![0.0; shape.core_len()];
+        bordered.solve_transposed(system.cyclic(), &[], &[1.0], &mut psi, &mut [0.0]);
+        Some(Self { bordered, psi })
+    }
+
+    /// Solves `h' - A h + 2 a f = B`, returns h at the nodes, a, and the scaled adjoint of the flow.
+    fn second_order(mut self, system: &System, b: &[f64], period: f64) -> (Vec<f64>, f64, Vec<f64>) {
+        let mut right = b.to_vec();
+        system.weigh_rows(period, &mut right);
+        let mut h = vec![0.0; system.shape().nodes_len()];
+        let mut scalar = [0.0];
+        let right = Right { core: &right, closing: &[], border: &[0.0] };
+        self.bordered.solve(system.cyclic(), right, &mut h, &mut scalar);
+        // The scalar multiplies the column -h f: S = -2 a T.
+        let a = -0.5 * scalar[0] / period;
+        // Column times psi is 1: -Sum h psi f = 1.
+        self.psi.iter_mut().for_each(|psi| *psi /= -period);
+        (h, a, self.psi)
+    }
+}
+
+/// The flow direction f = u'/T at the nodes, from the slopes of the pieces; means of both pieces at shared nodes.
+fn flow_nodes(system: &System, nodes: &[f64], period: f64) -> Vec<f64> {
+    let (n, tables, mesh) = (system.n(), system.tables(), system.mesh());
+    let m = tables.degree;
+    let mut out = vec![0.0; nodes.len()];
+    let mut counts = vec![0.0; nodes.len() / n];
+    for (i, pair) in mesh.windows(2).enumerate() {
+        let scale = 1.0 / ((pair[1] - pair[0]) * period);
+        for row in 0..=m {
+            let target = i * m + row;
+            counts[target] += 1.0;
+            for j in 0..=m {
+                let weight = scale * tables.node_slope[row * (m + 1) + j];
+                for a in 0..n {
+                    out[target * n + a] += weight * nodes[(i * m + j) * n + a];
+                }
+            }
+        }
+    }
+    for (point, count) in counts.iter().enumerate() {
+        out[point * n..(point + 1) * n].iter_mut().for_each(|value| *value /= count);
+    }
+    out
+}
+
+/// v shifted along the orbit until `Int <v, f> = 0`.
+fn orthogonal_to_flow(system: &mut System, v: &[f64], period: f64) -> Option<Vec<f64>> {
+    let len = system.residual().len();
+    let (mut values, mut f) = (vec![0.0; len], vec![0.0; len]);
+    system.values(v, &mut values);
+    system.rates(&mut f);
+    let along = system.integral(&values, &f) / system.integral(&f, &f);
+    let orbit = system.last_nodes().to_vec();
+    let flow = flow_nodes(system, &orbit, period);
+    along.is_finite().then(|| v.iter().zip(&flow).map(|(v, f)| v - along * f).collect())
+}
