@@ -7,7 +7,7 @@ use armilla_model::{DerivativeTest, Kink, Model, test_derivatives};
 use armilla_study::Study;
 
 use crate::columns::section;
-use crate::exit::{Exit, fail, say};
+use crate::exit::{Exit, fail, hint, say, show};
 
 /// Arguments of `check`.
 #[derive(clap::Args)]
@@ -24,7 +24,7 @@ pub fn run(args: &Args) -> ExitCode {
     if args.file.to_string_lossy().ends_with(".study.ron") {
         return match Study::read(&args.file) {
             Ok(study) => {
-                println!("study\n{}", study.understood());
+                show(&format!("study\n{}\n", study.understood()));
                 tell(&study.model, &study.start_parameters)
             }
             Err(error) => fail(&error),
@@ -40,20 +40,17 @@ pub fn run(args: &Args) -> ExitCode {
 }
 
 fn tell(model: &Model, parameters: &[f64]) -> ExitCode {
-    print!("{}", head(model));
-    println!("{}", parameter_section(model, parameters));
-    println!("{}", equations(model));
-    println!("{}", sizes(model));
-    println!("{}", start(model, parameters));
+    let sections = [parameter_section(model, parameters), equations(model), sizes(model), start(model, parameters)];
+    show(&format!("{}{}\n", head(model), sections.join("\n")));
     if let Err(fault) = model.check_start(parameters) {
         say(&fault);
-        eprintln!("    help: begin elsewhere (`begin` in the model file) or change the parameters");
+        hint("    help: begin elsewhere (`begin` in the model file) or change the parameters");
         return Exit::Input.into();
     }
     let tests = test_derivatives(model, SEED);
-    print!("{}", derivatives(&tests));
+    show(&derivatives(&tests));
     if !model.kinks().is_empty() {
-        print!("\n{}", kinks(model.kinks()));
+        show(&format!("\n{}", kinks(model.kinks())));
     }
     if tests.iter().all(DerivativeTest::passed) { Exit::Done.into() } else { Exit::NotReached.into() }
 }

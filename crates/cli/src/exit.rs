@@ -1,5 +1,7 @@
-//! Exit codes, in one table, and the last words to standard error.
+//! Exit codes, in one table, and the two streams.
 
+use std::fmt::Display;
+use std::io::{Write, stderr, stdout};
 use std::process::ExitCode;
 
 use armilla_study::{ErrorClass, StudyError};
@@ -35,6 +37,18 @@ pub fn fail(error: &StudyError) -> ExitCode {
 }
 
 /// Says an error.
-pub fn say(error: &dyn std::fmt::Display) {
-    eprintln!("armilla: {error}");
+pub fn say(error: &dyn Display) {
+    hint(&format!("armilla: {error}"));
+}
+
+/// A further line to standard error.
+pub fn hint(line: &str) {
+    // Where standard error is gone, there is no one left to tell.
+    let _ = writeln!(stderr(), "{line}");
+}
+
+/// Text to standard output, with the line ends it has.
+pub fn show(text: &str) {
+    // A reader that went away, as `head` does, is no fault; `println!` would panic.
+    let _ = stdout().write_all(text.as_bytes()).and_then(|()| stdout().flush());
 }

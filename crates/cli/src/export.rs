@@ -5,7 +5,7 @@ use std::process::ExitCode;
 
 use armilla_record::{ExportFormat, RecordError, Results};
 
-use crate::exit::{Exit, fail, say};
+use crate::exit::{Exit, fail, say, show};
 
 /// Arguments of `export`.
 #[derive(clap::Args)]
@@ -36,7 +36,7 @@ pub fn run(args: &Args) -> ExitCode {
     }
     match export(args) {
         Ok(written) => {
-            written.iter().for_each(|path| println!("{}", path.display()));
+            written.iter().for_each(|path| show(&format!("{}\n", path.display())));
             Exit::Done.into()
         }
         Err(error) => fail(&error.into()),

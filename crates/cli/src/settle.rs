@@ -9,7 +9,7 @@ use armilla_model::{Model, nearest_name};
 use armilla_study::{digits, settling_words, unsettled_words};
 
 use crate::columns::section;
-use crate::exit::{Exit, say};
+use crate::exit::{Exit, hint, say, show};
 
 /// Arguments of `settle`.
 #[derive(clap::Args)]
@@ -44,6 +44,7 @@ pub fn run(args: &Args) -> ExitCode {
     };
     if let Err(fault) = model.check_start(&parameters) {
         say(&fault);
+        hint("    help: begin elsewhere (`begin` in the model file) or change the parameters (`--set`)");
         return Exit::Input.into();
     }
     let _ = ctrlc::set_handler(|| STOP.store(true, Ordering::Relaxed));
@@ -96,19 +97,19 @@ fn unknown(model: &Model, name: &str) -> String {
 
 fn tell(model: &Model, settled: &Settled) -> ExitCode {
     for push in &settled.pushes {
-        println!("the start sat on an unstable state of rest and was pushed off it at time {}", digits(push.time));
+        show(&format!("the start sat on an unstable state of rest and was pushed off it at time {}\n", digits(push.time)));
     }
     match &settled.verdict {
         Verdict::Equilibrium(rest) => {
-            print!("{}", rest_section(model, rest, settled.time));
+            show(&rest_section(model, rest, settled.time));
             Exit::Done.into()
         }
         Verdict::Cycle(cycle) => {
-            print!("{}", cycle_section(model, cycle, settled.time));
+            show(&cycle_section(model, cycle, settled.time));
             Exit::Done.into()
         }
         other => {
-            println!("did not settle: {}", unsettled_words(other, model));
+            show(&format!("did not settle: {}\n", unsettled_words(other, model)));
             Exit::NotReached.into()
         }
     }

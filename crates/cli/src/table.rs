@@ -4,21 +4,26 @@ use armilla_record::{Branch, Event};
 
 use crate::columns::aligned;
 
-/// Digits of a value that its error supports: no more are printed.
+/// Digits after which a 64-bit number says nothing.
+const MOST_DIGITS: i32 = 15;
+
+/// A value with the digits that its error supports and one more; 0 where the error is larger than the value.
 pub fn supported(value: f64, error: Option<f64>) -> String {
-    /// Digits after which a 64-bit number says nothing.
-    const MOST: i32 = 15;
-    let Some(error) = error.filter(|error| *error > 0.0) else { return format!("{value}") };
-    // One digit beyond the error's first.
-    let decimals = (1.0 - error.log10().floor()).clamp(-300.0, 300.0) as i32;
-    let leading = if value == 0.0 { 0 } else { value.abs().log10().floor() as i32 + 1 };
-    let decimals = decimals.min(MOST - leading).max(0) as usize;
-    if value != 0.0 && (leading < -4 || leading > MOST) {
-        return format!("{value:.*e}", decimals.saturating_add_signed((leading - 1) as isize).min(MOST as usize));
+    let Some(error) = error.filter(|error| *error > 0.0) else {
+        let text = format!("{value:?}");
+        return text.strip_suffix(".0").unwrap_or(&text).to_string();
+    };
+    if value.abs() < error {
+        return "0".into();
     }
-    // Adding zero turns a rounded -0 into 0.
-    let text = format!("{value:.decimals$}");
-    if text.trim_start_matches(['-', '0', '.']).is_empty() { text.trim_start_matches('-').to_string() } else { text }
+    let exponent = |number: f64| number.abs().log10().floor() as i32;
+    let leading = exponent(value);
+    let digits = (leading - exponent(error) + 2).clamp(1, MOST_DIGITS);
+    if (-4..MOST_DIGITS).contains(&leading) {
+        format!("{value:.*}", (digits - 1 - leading).max(0) as usize)
+    } else {
+        format!("{value:.*e}", (digits - 1) as usize)
+    }
 }
 
 fn row(event: &Event) -> [String; 6] {
@@ -59,7 +64,9 @@ mod tests {
     #[test]
     fn no_more_digits_than_the_error_allows() {
         assert_eq!(supported(2.832_445_027_862_54, Some(3e-10)), "2.83244502786");
-        assert_eq!(supported(-1e-14, Some(1e-12)), "0.0000000000000");
+        assert_eq!(supported(-1e-14, Some(1e-12)), "0");
+        assert_eq!(supported(2e-9, None), "2e-9");
+        assert_eq!(supported(f64::INFINITY, Some(1.0)), "inf");
         assert_eq!(supported(0.5, Some(0.0)), "0.5");
         assert_eq!(supported(1.234_567e-9, Some(1e-12)), "1.2346e-9");
         assert_eq!(supported(123_456.789, Some(20.0)), "123457");

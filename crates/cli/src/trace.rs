@@ -6,7 +6,7 @@ use std::sync::atomic::{AtomicBool, Ordering};
 
 use armilla_study::{Study, TraceOptions, Traced, trace};
 
-use crate::exit::{Exit, fail, say};
+use crate::exit::{Exit, fail, say, show};
 use crate::progress::ProgressLine;
 use crate::table::closing;
 
@@ -29,6 +29,9 @@ pub struct Args {
 /// Set by Ctrl-C; the run then ends with everything found so far on disk.
 static STOP: AtomicBool = AtomicBool::new(false);
 
+/// Stands below every table of numbers.
+const CAUTION: &str = "These numbers describe the model, not the machine; local codes and licensed practice decide.";
+
 /// Runs the main job.
 pub fn run(args: &Args) -> ExitCode {
     let study = match Study::read(&args.study) {
@@ -46,9 +49,7 @@ pub fn run(args: &Args) -> ExitCode {
 }
 
 fn close(traced: &Traced) -> ExitCode {
-    print!("{}", closing(&traced.branches));
-    println!("\nresults: {}", traced.folder.display());
-    println!("These numbers describe the model, not the machine; local codes and licensed practice decide.");
+    show(&format!("{}\nresults: {}\n{CAUTION}\n", closing(&traced.branches), traced.folder.display()));
     traced.notes.iter().for_each(|note| say(note));
     traced.shortfalls.iter().for_each(|shortfall| say(shortfall));
     if traced.interrupted {

@@ -232,22 +232,29 @@ pub enum Scalar {
     Parameter,
 }
 
+/// Estimated absolute roundoff of a scalar of the bordered cycle problem with borders (period, parameter) and (phase,
+/// closing): the sensitivity of the scalar to each row, one transposed solve, times the rounding of that row, added as
+/// independent errors. `closing` is the size of the closing's terms. `bordered` must have been prepared with the
+/// system's last factors.
+pub fn roundoff(bordered: &mut Bordered, system: &System, scalar: Scalar, closing: f64) -> f64 {
+    let asked = if scalar == Scalar::Period { [1.0, 0.0] } else { [0.0, 1.0] };
+    let (mut psi, mut chi) = (vec![0.0; system.shape().core_len()], [0.0; 2]);
+    bordered.solve_transposed(system.cyclic(), &[], &asked, &mut psi, &mut chi);
+    let mut sizes = vec![0.0; psi.len()];
+    system.row_sizes(&mut sizes);
+    let sum: f64 = psi.iter().zip(&sizes).map(|(psi, size)| (psi * size).powi(2)).sum();
+    f64::EPSILON * (sum + (closing * chi[1]).powi(2)).sqrt()
+}
+
 impl Workspace {
-    /// Estimated absolute roundoff of a scalar after [`correct_with`] has converged: the sensitivity of the scalar to
-    /// each row (one transposed solve with the factors of the last iteration) times the rounding of that row, added as
-    /// independent errors. 0 before any correction.
+    /// [`roundoff`] after [`correct_with`] has converged on the system's mesh; 0 before any correction.
     pub fn roundoff(&mut self, system: &System, scalar: Scalar) -> f64 {
-        let Some(bordered) = self.bordered.as_mut() else { return 0.0 };
-        let asked = if scalar == Scalar::Period { [1.0, 0.0] } else { [0.0, 1.0] };
-        let (mut psi, mut chi) = (vec![0.0; system.shape().core_len()], [0.0; 2]);
-        bordered.solve_transposed(system.cyclic(), &[], &asked, &mut psi, &mut chi);
-        let mut sizes = vec![0.0; psi.len()];
-        system.row_sizes(&mut sizes);
-        let sum: f64 = psi.iter().zip(&sizes).map(|(psi, size)| (psi * size).powi(2)).sum();
         // The closing is of size 1 where it is a bordered test function, and exact where it holds the parameter.
         let touches_nodes = self.row.as_ref().is_some_and(|row| row.nodes.iter().any(|value| *value != 0.0));
-        let closing = if touches_nodes { chi[1] } else { 0.0 };
-        f64::EPSILON * (sum + closing * closing).sqrt()
+        match self.bordered.as_mut() {
+            Some(bordered) => roundoff(bordered, system, scalar, if touches_nodes { 1.0 } else { 0.0 }),
+            None => 0.0,
+        }
     }
 
     /// One Newton iteration with a full step, applied to `at` whatever its size; no allocation once sized. For callers

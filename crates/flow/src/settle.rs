@@ -21,6 +21,8 @@ use crate::returns::{Closing, Sequence};
 use crate::section::{Return, Section};
 use crate::verdict::{Evidence, Limit, Push, Settled, Verdict};
 
+/// Least absolute error allowed in a step, in any unit: far below it squares of errors underflow.
+const LEAST_TOLERANCE: f64 = 1e-150;
 /// Part of the tolerance of settling that a step may err by: errors of a whole turn then stay below it.
 const STEP_PART: f64 = 0.01;
 /// Least error allowed in a step relative to the state itself, some hundred units in the last place.
@@ -227,7 +229,8 @@ impl<'a, 'b> Settling<'a, 'b> {
         };
         let relative = (0..n).map(relative).collect();
         let noise = self.noise();
-        let absolute = ranges.iter().zip(&noise).map(|(range, noise)| (part * range).max(*noise)).collect();
+        // A state that dies out for good has no range any more; its tolerance stays positive.
+        let absolute = ranges.iter().zip(&noise).map(|(range, noise)| (part * range).max(*noise).max(LEAST_TOLERANCE)).collect();
         self.integrator.set_tolerance(Tolerance { absolute, relative })?;
         if matches!(self.section, Some(Section::Period { .. })) {
             return Ok(());
@@ -274,13 +277,21 @@ impl<'a, 'b> Settling<'a, 'b> {
         (self.all_returns >= self.options.returns).then_some(Limit::Returns)
     }
 
-    /// Scale of each state for closings: its range now; infinite where it does not move.
-    fn scale(&self) -> Vec<f64> {
+    /// Scale of each state for closings: its range now, or the least that can close; infinite where it does not move.
+    fn scale(&mut self) -> Vec<f64> {
+        let least = self.least_ranges();
         let one = |i: usize| {
             let range = self.seen.range(i);
-            if range > MOVES * self.seen.magnitude(i) { range } else { f64::INFINITY }
+            if range > MOVES * self.seen.magnitude(i) { range.max(least[i]) } else { f64::INFINITY }
         };
         (0..self.largest.len()).map(one).collect()
+    }
+
+    /// Range of each state below which the roundoff of its rate is seen at the errors allowed: a state that dies out
+    /// beside others that move ends there and never closes relative to its own range.
+    fn least_ranges(&mut self) -> Vec<f64> {
+        let part = STEP_PART * self.options.tolerance;
+        self.noise().into_iter().map(|noise| noise / part).collect()
     }
 
     fn cycle(&mut self) -> Result<Option<Cycle>, FlowError> {
@@ -333,10 +344,11 @@ impl<'a, 'b> Settling<'a, 'b> {
             return Ok(None);
         };
         let ranges: Vec<f64> = orbit.extremes().iter().map(|(low, high)| high - low).collect();
+        let least = self.least_ranges();
         let miss = |i: usize| {
             let gap = (end.state[i] - start.state[i]).abs();
             let floor = ROUNDOFF * start.state[i].abs();
-            if gap <= floor { 0.0 } else { gap / ranges[i].max(floor) }
+            if gap <= floor { 0.0 } else { gap / ranges[i].max(floor).max(least[i]) }
         };
         let distance = (0..ranges.len()).map(miss).fold(0.0, f64::max);
         // A distance that is no number is a miss too.
@@ -411,7 +423,7 @@ impl<'a, 'b> Settling<'a, 'b> {
         })
     }
 
-    fn evidence(&self, limit: Limit) -> Evidence {
+    fn evidence(&mut self, limit: Limit) -> Evidence {
         let scale = self.scale();
         let return_time = match self.returns.as_slice() {
             [first, .., last] => Some((last.time - first.time) / (self.returns.len() - 1) as f64),

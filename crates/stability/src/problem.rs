@@ -3,8 +3,8 @@
 use std::sync::Arc;
 
 use armilla_collocation::{
-    ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings, Report, Row, System, SystemSpec, Task,
-    Workspace, correct_with, estimate_error, remesh,
+    ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings, Report, Row, Scalar, System, SystemSpec, Task,
+    Workspace, correct_with, estimate_error, remesh, roundoff,
 };
 use armilla_follow::{Closing, Corrected, Failure, Orientation, Problem, Watch, Watched};
 use armilla_linalg::{Bordered, Right};
@@ -32,6 +32,8 @@ pub struct CycleSpec {
     pub parameters: Vec<f64>,
     /// Index of the followed parameter.
     pub free: usize,
+    /// Sizes the states are known to have, absolute, 0 where unknown: n numbers.
+    pub typical: Vec<f64>,
     /// Size of the followed parameter in the metric: the width of the asked range.
     pub parameter_scale: f64,
 }
@@ -63,8 +65,9 @@ const LEAST_RANGE: f64 = 1e-3;
 /// A new mesh must bring the estimated error below this share of the old one, or the floor of roundoff is reached.
 const WORTH: f64 = 0.8;
 
-/// Parameter component of a unit tangent below which its sign is roundoff.
-const TURNING_NOISE: f64 = 1e-13;
+/// Length of branch over which a change of the parameter must rise above its roundoff for the branch to count as moving
+/// in it: a tenth of the longest stride.
+const TURNING_LENGTH: f64 = 0.005;
 /// Scales of the metric fall at most to this share of the largest size seen on the branch.
 const SHRINK_TO: f64 = 0.3;
 /// A scale off by more than this factor is renewed.
@@ -105,6 +108,8 @@ pub struct CycleProblem {
     /// Spectrum of the point watched last, with its parameter and period: `describe` asks for the same one.
     watched: Option<(f64, f64, Spectrum)>,
     bordered: Option<Bordered>,
+    /// Roundoff of the parameter at the last tangent.
+    parameter_roundoff: f64,
     work: Row,
 }
 
@@ -147,7 +152,7 @@ impl CycleProblem {
         parameters[spec.free] = parameter;
         let sizes = match parent {
             Some(sizes) => sizes.to_vec(),
-            None => natural_sizes(spec.field.as_ref(), &parameters, profile),
+            None => natural_sizes(spec.field.as_ref(), &parameters, profile, &spec.typical),
         };
         let metric = first_metric(profile, &sizes, spec.parameter_scale).ok_or(StartFault::NoExtent)?;
         let system_spec = SystemSpec {
@@ -168,6 +173,7 @@ impl CycleProblem {
             spectrum,
             watched: None,
             bordered: None,
+            parameter_roundoff: 0.0,
             work: Row::zero(0),
         })
     }
@@ -320,6 +326,12 @@ impl CycleProblem {
         self.system.set_metric(self.metric.clone());
     }
 
+    /// Parameter component of a unit tangent below which its sign is roundoff: that of the parameter at the last tangent,
+    /// over [`TURNING_LENGTH`].
+    fn turning_noise(&self) -> f64 {
+        (self.parameter_roundoff / self.metric.parameter_scale / TURNING_LENGTH).max(1e3 * f64::EPSILON)
+    }
+
     /// The same direction with length 1 in the present metric.
     fn normalised(&self, mut tangent: CycleTangent) -> CycleTangent {
         let length = self.metric.inner(self.system.tables(), &tangent.mesh, &tangent.row, &tangent.row).sqrt();
@@ -432,6 +444,7 @@ impl Problem for CycleProblem {
         let right = Right { core: &[], closing: &[], border: &[0.0, 1.0] };
         bordered.solve(self.system.cyclic(), right, &mut self.work.nodes, &mut scalars);
         let tangent = Row { nodes: self.work.nodes.clone(), period: scalars[0], parameter: scalars[1] };
+        self.parameter_roundoff = roundoff(bordered, &self.system, Scalar::Parameter, 0.0);
         let tangent = self.normalised(CycleTangent { mesh: point.mesh.clone(), row: tangent });
         if tangent.row.nodes.iter().all(|value| value.is_finite()) { Ok(tangent) } else { Err(Failure::NotConverged) }
     }
@@ -459,10 +472,11 @@ impl Problem for CycleProblem {
         let spectrum = self.spectrum(point).map_err(|_| Failure::NotConverged)?;
         let value = |value: f64| Watched { value, slope: None };
         let turning = tangent.row.parameter / self.metric.parameter_scale;
+        let noise = self.turning_noise();
         let watch = Watch {
             values: vec![
                 // Below roundoff the sign is noise: the parameter stands still there and does not turn back.
-                value(if turning.abs() < TURNING_NOISE { 0.0 } else { turning }),
+                value(if turning.abs() < noise { 0.0 } else { turning }),
                 value(spectrum.doubling_product()),
                 value(spectrum.torus_product()),
             ],

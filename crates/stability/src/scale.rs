@@ -11,8 +11,12 @@ use armilla_record::Profile;
 /// A range below this share of the size is roundoff, not motion: Newton's method leaves about 1e-13.
 const STILL: f64 = 1e-9;
 
+/// A size below this share of the largest is that of a state that died out.
+const VANISHED: f64 = 1e-30;
+
 /// What each rate could move its state by over one period, from the ranges of the states it depends on.
-pub(crate) fn natural_sizes(field: &dyn VectorField, parameters: &[f64], profile: &Profile) -> Vec<f64> {
+/// `typical` are sizes the states have had elsewhere, 0 where unknown: they stand in for a state that has died out.
+pub(crate) fn natural_sizes(field: &dyn VectorField, parameters: &[f64], profile: &Profile, typical: &[f64]) -> Vec<f64> {
     let (n, points) = (profile.n_states, profile.n_nodes());
     let ranges = ranges(profile);
     let mut states = vec![0.0; n * points];
@@ -30,7 +34,16 @@ pub(crate) fn natural_sizes(field: &dyn VectorField, parameters: &[f64], profile
             sizes[a] += profile.period * largest * ranges[b];
         }
     }
-    sizes.iter_mut().zip(&ranges).for_each(|(size, range)| *size = size.max(*range));
+    let largest = ranges.iter().copied().fold(0.0, f64::max);
+    for ((size, range), typical) in sizes.iter_mut().zip(&ranges).zip(typical) {
+        *size = size.max(*range);
+        // Nothing but roundoff moves it: the size it had before, or any at all.
+        if *size < STILL * typical {
+            *size = *typical;
+        } else if *size < VANISHED * largest {
+            *size = 0.0;
+        }
+    }
     sizes
 }
 

@@ -63,7 +63,7 @@ impl CycleProblem {
         let mut amplitude = AMPLITUDE;
         for _ in 0..HALVINGS {
             if let Some(point) = first_cycle(&mut problem, &birth, &outwards, amplitude) {
-                return Ok(Doubled { problem, birth, point, outwards, amplitude });
+                return Ok(on_own_mesh(Doubled { problem, birth, point, outwards, amplitude }));
             }
             amplitude *= 0.5;
         }
@@ -130,13 +130,21 @@ fn direction(problem: &CycleProblem, birth: &CyclePoint, located: &Located) -> C
     CycleTangent { mesh: birth.mesh.clone(), row }
 }
 
+/// The start of the branch on a mesh and in a metric of its own; amplitudes are measured in the new metric then.
+fn on_own_mesh(mut doubled: Doubled) -> Doubled {
+    let renewed = doubled.problem.renew(&doubled.point, &[&doubled.outwards]);
+    if let Some((point, mut tangents)) = renewed {
+        doubled.point = point;
+        doubled.outwards = tangents.pop().expect("renew returns as many tangents as it gets");
+        doubled.amplitude = doubled.problem.split(&doubled.point);
+    }
+    doubled
+}
+
 fn first_cycle(problem: &mut CycleProblem, birth: &CyclePoint, outwards: &CycleTangent, amplitude: f64) -> Option<CyclePoint> {
     let prediction = problem.advance(birth, outwards, amplitude);
     let closing = Closing::Component { from: birth, direction: outwards, amount: amplitude };
-    let mut point = problem.correct(&prediction, closing).ok()?.point;
-    if let Some((renewed, _)) = problem.renew(&point, &[outwards]) {
-        point = renewed;
-    }
+    let point = problem.correct(&prediction, closing).ok()?.point;
     // The split must be what was asked, or Newton's method fell back onto the undoubled cycle or off elsewhere.
     let split = problem.split(&point);
     if !(split > 0.5 * amplitude && split < 2.0 * amplitude) || problem.distance(birth, &point) > 10.0 * amplitude {

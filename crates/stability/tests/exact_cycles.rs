@@ -30,7 +30,7 @@ fn spec(model: &Model, free: &str, set: &[(&str, f64)], width: f64) -> CycleSpec
         parameters[model.parameter_index(name).expect("a parameter")] = *value;
     }
     let free = model.parameter_index(free).expect("a parameter");
-    CycleSpec { field: model.field(), parameters, free, parameter_scale: width }
+    CycleSpec { field: model.field(), parameters, free, typical: vec![0.0; model.states().len()], parameter_scale: width }
 }
 
 /// X1, exact: T = 2 pi/(1 + k mu), multiplier exp(-4 pi mu/(1 + k mu)).

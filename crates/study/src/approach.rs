@@ -1,8 +1,8 @@
 //! How a period grows without bound, told from the last points of a branch.
 //!
 //! Near a saddle loop `T = a - b ln|p - p*|`; near a saddle-node on a loop `T = a + b |p - p*|^(-1/2)` (Shilnikov,
-//! Shilnikov, Turaev & Chua 2001, Methods of Qualitative Theory in Nonlinear Dynamics II, ch. 12 and 13; from memory).
-//! Both have three constants; three points fix them, two further ones judge them.
+//! Shilnikov, Turaev & Chua 2001, Methods of Qualitative Theory in Nonlinear Dynamics II, ch. 12 and 13; from memory);
+//! where a frequency goes to zero, `T = a + b / |p - p*|`. Each has three constants; three points fix them, two further ones judge them.
 
 /// A law of approach.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -11,12 +11,15 @@ pub(crate) enum Law {
     Logarithm,
     /// Saddle-node on a loop.
     InverseRoot,
+    /// A frequency that goes to zero.
+    Inverse,
 }
 
 impl Law {
     pub(crate) fn words(self) -> &'static str {
         match self {
             Self::Logarithm => "as towards a saddle loop, like the logarithm of the distance",
+            Self::Inverse => "as where a frequency goes to zero, like one over the distance",
             Self::InverseRoot => "as towards a saddle-node on a loop, like one over the root of the distance",
         }
     }
@@ -25,6 +28,7 @@ impl Law {
         match self {
             Self::Logarithm => -distance.ln(),
             Self::InverseRoot => distance.powf(-0.5),
+            Self::Inverse => 1.0 / distance,
         }
     }
 }
@@ -64,7 +68,7 @@ pub(crate) fn approach(history: &[(f64, f64)], width: f64) -> Option<Approach> {
         return None;
     }
     let moving = moving_part(history, width);
-    [Law::Logarithm, Law::InverseRoot]
+    [Law::Logarithm, Law::InverseRoot, Law::Inverse]
         .into_iter()
         .filter_map(|law| fit(law, &moving).map(|(limit, misfit)| (law, limit, misfit)))
         .min_by(|a, b| a.2.total_cmp(&b.2))
@@ -128,6 +132,7 @@ mod tests {
                 let distance = match law {
                     Law::Logarithm => 0.1 * (-0.8 * k as f64).exp(),
                     Law::InverseRoot => 0.1 / (1.0 + 0.7 * k as f64).powi(2),
+                    Law::Inverse => 0.1 / (1.0 + 0.7 * k as f64),
                 };
                 (limit - distance, 3.0 + 1.5 * law.shape(distance))
             })
@@ -143,6 +148,14 @@ mod tests {
         let found = approach(&history(Law::InverseRoot, -0.2, 120), 1.0).expect("grows without bound");
         assert_eq!(found.law, Law::InverseRoot);
         assert!((found.limit + 0.2).abs() <= found.error && found.error < 1e-4, "{found:?}");
+    }
+
+    /// Exact by construction: a rotation whose frequency is the parameter.
+    #[test]
+    fn a_vanishing_frequency_is_told() {
+        let found = approach(&history(Law::Inverse, 0.0, 400), 1.0).expect("grows without bound");
+        assert_eq!(found.law, Law::Inverse);
+        assert!(found.limit.abs() <= found.error && found.error < 1e-3, "{found:?}");
     }
 
     /// A relaxation oscillation's period grows like its parameter: no blow-up.

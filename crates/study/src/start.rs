@@ -4,6 +4,7 @@ use std::sync::atomic::AtomicBool;
 
 use armilla_flow::{SettleOptions, Verdict, settle};
 use armilla_model::Batch;
+use armilla_record::Profile;
 use armilla_stability::{CyclePoint, CycleProblem, CycleSpec};
 
 use crate::error::StudyError;
@@ -63,19 +64,71 @@ pub(crate) fn first_cycle(study: &Study, abort: &AtomicBool, observer: &mut dyn 
         }
         other => return Err(StudyError::DidNotSettle { evidence: unsettled_words(&other, &study.model) }),
     };
-    let turns = cycle.turns.max(1);
+    let settled_turns = cycle.turns.max(1);
+    let copies = copies(&cycle.orbit, settled_turns);
+    let turns = settled_turns / copies;
     let settings = cycle_settings(study, turns);
-    let profile = cycle.profile(settings.degree, settings.mesh.fixed.unwrap_or(FIRST_INTERVALS * turns));
+    let intervals = settings.mesh.fixed.unwrap_or(FIRST_INTERVALS * turns);
+    let profile = part(&cycle.profile(settings.degree, intervals * copies), copies);
     let spec = CycleSpec {
         field,
         parameters: study.parameters.clone(),
         free: study.free,
+        typical: study.model.begin().iter().map(|value| value.abs()).collect(),
         parameter_scale: study.range.1 - study.range.0,
     };
     let value = study.start_parameters[study.free];
     let (problem, point) = CycleProblem::start(spec, settings, &profile, value)
         .map_err(|fault| StudyError::NoCycle { reason: fault.to_string() })?;
     Ok(First { problem, point, turns, notes })
+}
+
+/// How many copies of one cycle a settled motion is: 1 as a rule, more where something beside the cycle itself (a state
+/// that dies out) kept it from closing earlier.
+fn copies(orbit: &Profile, turns: usize) -> usize {
+    /// Distance of shifted copies, relative to the range of each state that moves, that tells them apart: a doubled
+    /// cycle nearer than that to its threshold could not have settled.
+    const SAME: f64 = 1e-6;
+    /// A state that moves less than this share of its own size does not decide.
+    const STILL: f64 = 1e-9;
+    let extremes = orbit.extremes();
+    let decides = |(low, high): &(f64, f64)| high - low > STILL * high.abs().max(low.abs());
+    let largest = extremes.iter().map(|(low, high)| high - low).fold(0.0, f64::max);
+    let alike = |count: usize| {
+        let mut evaluator = orbit.evaluator();
+        let (mut here, mut there) = (vec![0.0; orbit.n_states], vec![0.0; orbit.n_states]);
+        orbit.node_times().iter().all(|time| {
+            evaluator.at(*time, &mut here);
+            evaluator.at(time + 1.0 / count as f64, &mut there);
+            let near = |((a, b), (low, high)): ((&f64, &f64), &(f64, f64))| {
+                !decides(&(*low, *high)) || high - low < STILL * largest || (a - b).abs() < SAME * (high - low)
+            };
+            here.iter().zip(&there).zip(&extremes).all(near)
+        })
+    };
+    (2..=turns).rev().find(|count| turns.is_multiple_of(*count) && alike(*count)).unwrap_or(1)
+}
+
+/// The first of `copies` equal parts of a profile, with its mesh.
+fn part(profile: &Profile, copies: usize) -> Profile {
+    if copies == 1 {
+        return profile.clone();
+    }
+    let intervals = (profile.intervals() / copies).max(1);
+    let mut first = Profile {
+        n_states: profile.n_states,
+        degree: profile.degree,
+        period: profile.period / copies as f64,
+        mesh: (0..=intervals).map(|i| i as f64 / intervals as f64).collect(),
+        values: Vec::new(),
+    };
+    let mut evaluator = profile.evaluator();
+    let mut state = vec![0.0; profile.n_states];
+    for time in first.node_times() {
+        evaluator.at(time / copies as f64, &mut state);
+        first.values.extend_from_slice(&state);
+    }
+    first
 }
 
 /// States with their names.

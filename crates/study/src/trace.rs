@@ -5,7 +5,7 @@ use std::path::{Path, PathBuf};
 use std::sync::atomic::{AtomicBool, Ordering};
 
 use armilla_figure::Figure;
-use armilla_record::{Branch, EndReason, EventKind, Results, Threshold};
+use armilla_record::{Branch, EndReason, EventKind, RecordError, Results, Threshold};
 
 use crate::branch::{Entry, Finished, Lineage, Run, follow_branch};
 use crate::error::StudyError;
@@ -44,6 +44,16 @@ struct Waiting {
     entry: Entry,
 }
 
+impl Waiting {
+    /// Parameter value at which it begins.
+    fn birth_value(&self) -> f64 {
+        match &self.entry {
+            Entry::Cycle(_, point) => point.unknowns.parameter,
+            Entry::Birth(doubled) => doubled.birth.unknowns.parameter,
+        }
+    }
+}
+
 /// Does the study and writes its results.
 ///
 /// # Errors
@@ -69,7 +79,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         let mut keep = |event: &armilla_record::Event| results.write_event(event).map_err(StudyError::from);
         let mut run = Run { study, abort: options.abort, observer: &mut *observer, keep: &mut keep, points_left };
         let lineage = waiting.lineage.clone();
-        let finished = match follow_branch(&mut run, &lineage, waiting.entry) {
+        let mut finished = match follow_branch(&mut run, &lineage, waiting.entry) {
             Ok(finished) => finished,
             Err(StudyError::NoCycle { reason }) if lineage.born_at.is_some() => {
                 traced.shortfalls.push(format!("branch {} could not be followed: {reason}", lineage.name));
@@ -78,6 +88,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
             Err(fault) => return Err(fault),
         };
         points_left = run.points_left;
+        drop_other_end(study, &lineage, &mut finished.branch, &mut queue);
         results.write_branch(&finished.branch)?;
         if options.abort.load(Ordering::Relaxed) {
             traced.branches.push(finished.branch);
@@ -97,6 +108,30 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         traced.shortfalls.push(format!("branch {} was not followed: {why}", waiting.lineage.name));
     }
     conclude(study, results, traced)
+}
+
+/// A doubled branch that returns to its parent at another doubling of it has been followed from both: the branch that
+/// waits to be entered there is the same one.
+fn drop_other_end(study: &Study, lineage: &Lineage, branch: &mut Branch, queue: &mut VecDeque<Waiting>) {
+    /// Share of the range within which the extrapolated return and a located doubling are the same point.
+    const SAME: f64 = 1e-2;
+    let (Some(born_at), EndReason::ReturnsToParent) = (&lineage.born_at, &branch.ends.1.reason) else { return };
+    let parent = born_at.split('/').next().unwrap_or_default();
+    let value = branch.ends.1.value;
+    let gap = |waiting: &Waiting| (waiting.birth_value() - value).abs();
+    let sibling = |waiting: &&Waiting| {
+        waiting.lineage.turns == lineage.turns
+            && waiting.lineage.born_at.as_ref().is_some_and(|event| event.split('/').next() == Some(parent))
+    };
+    let nearest = queue.iter().filter(sibling).min_by(|a, b| gap(a).total_cmp(&gap(b)));
+    let Some(name) = nearest.filter(|w| gap(w) < SAME * (study.range.1 - study.range.0)).map(|w| w.lineage.name.clone()) else {
+        return;
+    };
+    if let Some(at) = queue.iter().position(|waiting| waiting.lineage.name == name)
+        && let Some(met) = queue.remove(at).and_then(|waiting| waiting.lineage.born_at)
+    {
+        branch.ends.1.words = format!("returns to its parent at {met}; the branch born there is this one");
+    }
 }
 
 /// The branches born at the doublings of a finished one.
@@ -177,6 +212,9 @@ pub fn redraw(folder: &Path) -> Result<Vec<String>, StudyError> {
     let shown = folder.join("study.ron").display().to_string();
     let file = crate::study::parse(armilla_model::Source { file: &shown, text: &text })?;
     let branches = results.read_all_branches()?;
+    if branches.is_empty() {
+        return Err(RecordError::NotResults { path: folder.to_path_buf(), why: "it holds no branch yet".into() }.into());
+    }
     write_figures(&file.figures, &branches, &mut results)
 }
 

@@ -172,11 +172,30 @@ fn passed_through(
         let words = format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), short(plan.study, value));
         return Some(end(EndReason::Equilibrium { value }, last, words));
     }
-    if plan.doubled && problem.passed_birth(&before.point, &after.point) {
-        let words = format!("returns to its parent near {} = {}", with_unit_name(plan), short(plan.study, last));
-        return Some(end(EndReason::ReturnsToParent, last, words));
+    if plan.turns % 2 == 0 && problem.passed_birth(&before.point, &after.point) {
+        let value = birth_value(problem, before, after);
+        let words = if plan.doubled {
+            format!("returns to its parent at {} = {}", with_unit_name(plan), short(plan.study, value))
+        } else {
+            format!(
+                "returns to the cycle of half its turns it was born from by a period doubling, at {} = {}",
+                with_unit_name(plan),
+                short(plan.study, value)
+            )
+        };
+        return Some(end(EndReason::ReturnsToParent, value, words));
     }
     None
+}
+
+/// Parameter where the split between the turns vanishes: even in the split, so linear in its square.
+fn birth_value(problem: &CycleProblem, before: &CycleStation, after: &CycleStation) -> f64 {
+    let squares = [before, after].map(|station| problem.split(&station.point).powi(2));
+    let values = [before, after].map(|station| station.point.unknowns.parameter);
+    let value = (values[0] * squares[1] - values[1] * squares[0]) / (squares[1] - squares[0]);
+    let spread = (values[0] - values[1]).abs();
+    // Nearly equal splits on both sides leave the quotient to roundoff; the birth lies close to both then.
+    if (value - values[0]).abs() <= 10.0 * spread { value } else { values[0] }
 }
 
 /// A number for a sentence: ten digits, and 0 where it is 0 to the roundoff of the asked range.
@@ -229,12 +248,7 @@ fn events_of_step(
         };
         found.push(match problem.locate(kind, crossing.index, before, after) {
             Ok(located) => located_event(problem, located, (before, after), plan),
-            Err(fault) => {
-                let (a, b) = fault.bracket;
-                let word = if kind == CriticalKind::Fold { "fold" } else { "period doubling" };
-                let note = format!("a {word} lies in this interval but was not located");
-                unresolved(before, (0.5 * (a + b), 0.5 * (a - b).abs()), note, plan)
-            }
+            Err(fault) => bracketed(problem, kind, fault.bracket, (before, after), plan),
         });
     }
     if let Some(event) = remaining_change(problem, step, (before, after), plan) {
@@ -246,6 +260,43 @@ fn events_of_step(
     }
     found
 }
+
+/// An event known by its bracket alone. Where the branch turns so sharply that Newton's method finds no footing, the
+/// bracket may still hold the value to the asked accuracy; then it is the event, else it is unresolved.
+fn bracketed(
+    problem: &mut CycleProblem,
+    kind: CriticalKind,
+    (a, b): (f64, f64),
+    (before, after): (&CycleStation, &CycleStation),
+    plan: &WalkPlan<'_>,
+) -> Found {
+    let width = plan.study.range.1 - plan.study.range.0;
+    let scale = width.max(a.abs());
+    let profile_error = problem.profile_error(&before.point).max(problem.profile_error(&after.point));
+    // A fold may lie beyond both ends of its bracket; over the whole step it lies within the change of the parameter.
+    let (p, q) = (before.point.unknowns.parameter, after.point.unknowns.parameter);
+    let spread = if kind == CriticalKind::Fold { (p - q).abs() } else { 0.5 * (a - b).abs() };
+    let error = spread + profile_error * scale * SUPERCONVERGENCE + 1e2 * f64::EPSILON * scale;
+    let tight = error <= plan.study.file.accuracy * scale;
+    let (word, event_kind, angle) = match kind {
+        CriticalKind::Fold => ("fold", EventKind::Fold, 0.0),
+        CriticalKind::Doubling => ("period doubling", EventKind::Doubling, std::f64::consts::PI),
+    };
+    let note = if tight {
+        "located by its bracket".to_string()
+    } else {
+        format!("a {word} lies in this interval but was not located")
+    };
+    let mut event = unresolved(before, (0.5 * (a + b), error), note, plan);
+    if tight {
+        (event.kind, event.angle) = (event_kind, Some(angle));
+    }
+    event
+}
+
+/// Thresholds are far more accurate than profiles (order 2m against m+1), as long as the profile is resolved; a
+/// thousandth of the profile's error is a cautious share.
+const SUPERCONVERGENCE: f64 = 1e-3;
 
 fn located_event(
     problem: &mut CycleProblem,

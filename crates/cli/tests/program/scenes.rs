@@ -1,0 +1,35 @@
+//! Models and studies of these tests.
+
+/// X1 of the outside checks: radius sqrt(mu), period 2 pi/(1 + k mu); exact.
+pub const X1_MODEL: &str = include_str!("../../../../tests/models/x1.model.ron");
+/// X3 of the outside checks: a doubling at mu = 0, the doubled branch known exactly.
+pub const X3_MODEL: &str = include_str!("../../../../tests/models/x3.model.ron");
+
+pub const X1_STUDY: &str = r#"(
+    title: "Growth of a circle",
+    model: "x1.model.ron",
+    start: Settle(),
+    follow: (parameter: "mu", from: 0.1, to: 1.0),
+    targets: [0.5],
+    figures: [Diagram(measure: Max("x")), Portrait(axes: ["x", "y"])],
+)
+"#;
+
+pub const X3_STUDY: &str = r#"(
+    model: "x3.model.ron",
+    start: Settle(at: { "mu": -0.1 }),
+    follow: (parameter: "mu", from: -0.2, to: 0.2),
+    pursue: (doublings: 1),
+    figures: [Diagram(measure: Max("x"))],
+)
+"#;
+
+/// X1 with its study.
+pub fn x1() -> [(&'static str, &'static str); 2] {
+    [("x1.model.ron", X1_MODEL), ("x1.study.ron", X1_STUDY)]
+}
+
+/// X3 with its study.
+pub fn x3() -> [(&'static str, &'static str); 2] {
+    [("x3.model.ron", X3_MODEL), ("x3.study.ron", X3_STUDY)]
+}
