@@ -18,7 +18,8 @@ pub fn aligned<const N: usize>(rows: &[[String; N]]) -> String {
 /// A heading with aligned rows under it, moved in by two spaces.
 pub fn section<const N: usize>(heading: &str, rows: &[[String; N]]) -> String {
     let body = aligned(rows);
-    let lines: String = body.lines().map(|line| if line.is_empty() { "\n".into() } else { format!("  {line}\n") }).collect();
+    let lines: String =
+        body.lines().map(|line| if line.is_empty() { "\n".into() } else { format!("  {line}\n") }).collect();
     format!("{heading}\n{lines}")
 }
 

@@ -72,9 +72,8 @@ fn settle_fault(error: &armilla_flow::FlowError) -> Exit {
 fn parameters(model: &Model, set: &[String]) -> Result<Vec<f64>, String> {
     let mut parameters = model.values();
     for entry in set {
-        let (name, value) = entry
-            .split_once('=')
-            .ok_or_else(|| format!("`--set {entry}` must have the form NAME=VALUE"))?;
+        let (name, value) =
+            entry.split_once('=').ok_or_else(|| format!("`--set {entry}` must have the form NAME=VALUE"))?;
         let (name, value) = (name.trim(), value.trim());
         let index = model.parameter_index(name).ok_or_else(|| unknown(model, name))?;
         let number: f64 = value.parse().map_err(|_| format!("`--set {entry}`: `{value}` is not a number"))?;
@@ -97,7 +96,10 @@ fn unknown(model: &Model, name: &str) -> String {
 
 fn tell(model: &Model, settled: &Settled) -> ExitCode {
     for push in &settled.pushes {
-        show(&format!("the start sat on an unstable state of rest and was pushed off it at time {}\n", digits(push.time)));
+        show(&format!(
+            "the start sat on an unstable state of rest and was pushed off it at time {}\n",
+            digits(push.time)
+        ));
     }
     match &settled.verdict {
         Verdict::Equilibrium(rest) => {

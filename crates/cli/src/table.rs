@@ -33,14 +33,28 @@ fn row(event: &Event) -> [String; 6] {
         None => String::new(),
     };
     let period = supported(event.period, event.period_error);
-    [event.name.clone(), supported(event.value, event.error), error, period, event.turns.to_string(), event.note.clone()]
+    [
+        event.name.clone(),
+        supported(event.value, event.error),
+        error,
+        period,
+        event.turns.to_string(),
+        event.note.clone(),
+    ]
 }
 
 /// The events and ends of all branches as lines of text.
 pub fn closing(branches: &[Branch]) -> String {
     let Some(first) = branches.first() else { return String::new() };
     let unit = if first.parameter.unit.is_empty() { String::new() } else { format!(" ({})", first.parameter.unit) };
-    let head = ["event".into(), format!("{}{unit}", first.parameter.name), "error".into(), "period".into(), "turns".into(), "note".into()];
+    let head = [
+        "event".into(),
+        format!("{}{unit}", first.parameter.name),
+        "error".into(),
+        "period".into(),
+        "turns".into(),
+        "note".into(),
+    ];
     let mut rows: Vec<[String; 6]> = vec![head];
     for branch in branches {
         let mut events: Vec<&Event> = branch.events.iter().collect();

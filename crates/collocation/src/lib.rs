@@ -20,7 +20,10 @@ mod variational;
 pub use gauss::{gauss, radau};
 pub use mesh::{ErrorEstimate, MeshChoice, MeshSettings, estimate_error, interpolate_nodes, remesh};
 pub use metric::Metric;
-pub use newton::{Closing, Failure, Iteration, LinearClosing, NewtonSettings, Report, Scalar, Task, Workspace, correct, correct_with, roundoff};
+pub use newton::{
+    Closing, Failure, Iteration, LinearClosing, NewtonSettings, Report, Scalar, Task, Workspace, correct, correct_with,
+    roundoff,
+};
 pub use system::{Fault, Iterate, Row, System, SystemSpec, Variation};
 pub use tables::Tables;
 pub use variational::{Variational, VariationalMaps};

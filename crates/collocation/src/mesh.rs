@@ -77,7 +77,8 @@ pub fn estimate_error(tables: &Tables, mesh: &[f64], nodes: &[f64], least: &[f64
         })
         .collect();
     let order = tables.degree as f64 + 1.0;
-    let derivative: Vec<f64> = (0..intervals).map(|i| 0.5 * (jumps[(i + intervals - 1) % intervals] + jumps[i])).collect();
+    let derivative: Vec<f64> =
+        (0..intervals).map(|i| 0.5 * (jumps[(i + intervals - 1) % intervals] + jumps[i])).collect();
     let shares: Vec<f64> = derivative.iter().enumerate().map(|(i, d)| h(i) * d.powf(1.0 / order)).collect();
     let largest = shares.iter().copied().fold(0.0, f64::max);
     let mean = shares.iter().sum::<f64>() / intervals as f64;
@@ -119,7 +120,8 @@ pub fn remesh(tables: &Tables, mesh: &[f64], estimate: &ErrorEstimate, settings:
     let missed = estimate.error > settings.accuracy && estimate.imbalance < BALANCED;
     let grown = (mesh.len() - 1) as f64 * (estimate.error / (SAFETY * settings.accuracy)).powf(1.0 / order);
     let wanted = if missed { predicted.max(grown) } else { predicted };
-    let intervals = settings.fixed.unwrap_or_else(|| (wanted.ceil().min(1e12) as usize).clamp(settings.fewest, settings.most));
+    let intervals =
+        settings.fixed.unwrap_or_else(|| (wanted.ceil().min(1e12) as usize).clamp(settings.fewest, settings.most));
     let limited = settings.fixed.is_none() && wanted > settings.most as f64;
     MeshChoice { mesh: equidistribute(mesh, &density, intervals), limited }
 }
@@ -178,7 +180,11 @@ pub fn interpolate_nodes(from: (&Tables, &[f64]), nodes: &[f64], to: (&Tables, &
     let mut out = vec![0.0; (intervals * new.degree + 1) * n];
     let mut i = 0;
     for node in 0..=intervals * new.degree {
-        let (piece, j) = if node == intervals * new.degree { (intervals - 1, new.degree) } else { (node / new.degree, node % new.degree) };
+        let (piece, j) = if node == intervals * new.degree {
+            (intervals - 1, new.degree)
+        } else {
+            (node / new.degree, node % new.degree)
+        };
         let time = new_mesh[piece] + (new_mesh[piece + 1] - new_mesh[piece]) * new.nodes[j];
         while i + 2 < old_mesh.len() && old_mesh[i + 1] < time {
             i += 1;
@@ -228,7 +234,8 @@ mod tests {
         let mut mesh: Vec<f64> = (0..=60).map(|i| i as f64 / 60.0).collect();
         for _ in 0..3 {
             let nodes = sampled(&tables, &mesh, layer);
-            mesh = remesh(&tables, &mesh, &estimate_error(&tables, &mesh, &nodes, &[0.0]), MeshSettings::new(1e-8)).mesh;
+            mesh =
+                remesh(&tables, &mesh, &estimate_error(&tables, &mesh, &nodes, &[0.0]), MeshSettings::new(1e-8)).mesh;
         }
         let estimate = estimate_error(&tables, &mesh, &sampled(&tables, &mesh, layer), &[0.0]);
         assert!(estimate.error < 1e-8 && estimate.error > 1e-10, "{}", estimate.error);

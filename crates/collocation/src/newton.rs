@@ -151,7 +151,12 @@ pub struct Task<'a> {
 ///
 /// # Errors
 /// [`Failure`]; `at` is then the last iterate.
-pub fn correct_with(workspace: &mut Workspace, system: &mut System, at: &mut Iterate, task: Task<'_>) -> Result<Report, Failure> {
+pub fn correct_with(
+    workspace: &mut Workspace,
+    system: &mut System,
+    at: &mut Iterate,
+    task: Task<'_>,
+) -> Result<Report, Failure> {
     let settings = task.settings;
     workspace.fit(system);
     system.phase_row(task.reference, &mut workspace.phase);
@@ -215,7 +220,11 @@ fn judge(size: f64, before: Option<f64>, settings: NewtonSettings) -> Verdict {
         None if size > settings.longest => Verdict::Lost,
         None => Verdict::Go,
         Some(before) if size > SLOWEST * before => {
-            if size <= settings.floor { Verdict::Floor } else { Verdict::Lost }
+            if size <= settings.floor {
+                Verdict::Floor
+            } else {
+                Verdict::Lost
+            }
         }
         // Quadratic convergence: the next correction would be about size^3 / before^2.
         Some(before) if size * (size / before).powi(2) <= settings.tolerance => Verdict::Last,
@@ -297,7 +306,13 @@ impl Workspace {
     }
 
     /// Linearises at the iterate and leaves the Newton correction in `self.step`; returns the closing's residual.
-    fn step(&mut self, system: &mut System, at: &Iterate, reference: &[f64], closing: &mut dyn Closing) -> Result<f64, Fault> {
+    fn step(
+        &mut self,
+        system: &mut System,
+        at: &Iterate,
+        reference: &[f64],
+        closing: &mut dyn Closing,
+    ) -> Result<f64, Fault> {
         system.linearise(at)?;
         let row = self.row.as_mut().expect("fitted before");
         let residual = closing.fill(system, at, row)?;

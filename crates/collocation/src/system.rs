@@ -93,7 +93,10 @@ impl std::fmt::Display for Fault {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         match self {
             Self::NotFinite { time, state, states } => {
-                write!(f, "rate {state} or one of its derivatives is not finite at scaled time {time}, states {states:?}")
+                write!(
+                    f,
+                    "rate {state} or one of its derivatives is not finite at scaled time {time}, states {states:?}"
+                )
             }
             Self::Singular(singular) => singular.fmt(f),
         }
@@ -264,7 +267,8 @@ impl System {
         self.nodes.extend_from_slice(&at.nodes);
         to_points(&self.tables, self.spec.metric.scales.len(), &at.nodes, &mut self.states);
         let batch = Batch { len: points, time: &[], states: &self.states, parameters: &self.spec.parameters };
-        let out = Linearisation { rates: &mut self.rates, jacobian: &mut self.jacobian, columns: &mut self.free_column };
+        let out =
+            Linearisation { rates: &mut self.rates, jacobian: &mut self.jacobian, columns: &mut self.free_column };
         self.evaluator.linearise(batch, out);
         self.find_not_finite()
     }
@@ -380,9 +384,11 @@ impl System {
         for i in 0..self.mesh.len() - 1 {
             let nodes = &reference[i * m * n..(i * m + size) * n];
             for k in 0..m {
-                let (values, slopes) = (&self.tables.value[k * size..(k + 1) * size], &self.tables.slope[k * size..(k + 1) * size]);
+                let (values, slopes) =
+                    (&self.tables.value[k * size..(k + 1) * size], &self.tables.slope[k * size..(k + 1) * size]);
                 for a in 0..n {
-                    let slope: f64 = slopes.iter().zip(nodes.chunks_exact(n)).map(|(weight, node)| weight * node[a]).sum();
+                    let slope: f64 =
+                        slopes.iter().zip(nodes.chunks_exact(n)).map(|(weight, node)| weight * node[a]).sum();
                     let factor = self.tables.weights[k] * slope / self.spec.metric.scales[a].powi(2);
                     for (j, value) in values.iter().enumerate() {
                         out[(i * m + j) * n + a] += factor * value;

@@ -127,7 +127,10 @@ mod tests {
                 }
                 let highest: f64 = tables.highest.iter().zip(&at_nodes).map(|(w, y)| w * y).sum();
                 let exact = if power == degree as i32 { (1..=degree).map(|k| k as f64).product() } else { 0.0 };
-                assert!((highest - exact).abs() < 1e-9 * tables.highest.iter().map(|w| w.abs()).sum::<f64>(), "{degree}");
+                assert!(
+                    (highest - exact).abs() < 1e-9 * tables.highest.iter().map(|w| w.abs()).sum::<f64>(),
+                    "{degree}"
+                );
             }
         }
     }

@@ -195,7 +195,13 @@ impl Variational {
     }
 
     /// Solves `K_l - step A_l Sum_j a_lj K_j = A_l` (scaled) for all n right sides and appends `I + step Sum b_j K_j`.
-    fn map_of_piece(&mut self, piece: Piece, (first, points): (usize, usize), step: f64, out: &mut VariationalMaps) -> Result<(), Singular> {
+    fn map_of_piece(
+        &mut self,
+        piece: Piece,
+        (first, points): (usize, usize),
+        step: f64,
+        out: &mut VariationalMaps,
+    ) -> Result<(), Singular> {
         let n = self.n;
         let scheme = if piece.damping { &self.damping } else { &self.accurate };
         let m = scheme.points.len();

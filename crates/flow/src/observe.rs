@@ -60,11 +60,18 @@ impl Observation {
     }
 }
 
-/// Index of the largest relative range (max - min)/max(|max|, |min|); the first of equals.
+/// Size relative to the largest state below which a state has died out: its motion is that of a disturbance on its way
+/// to zero, and its turns are not those of the cycle.
+const DIED_OUT: f64 = 1e-12;
+
+/// Index of the largest relative range (max - min)/max(|max|, |min|); the first of equals. States that have died out
+/// beside others do not count.
 pub(crate) fn liveliest(ranges: &[(f64, f64)]) -> usize {
-    let relative = |&(low, high): &(f64, f64)| {
-        let size = low.abs().max(high.abs());
-        if size > 0.0 { (high - low) / size } else { 0.0 }
+    let size = |&(low, high): &(f64, f64)| low.abs().max(high.abs());
+    let least = DIED_OUT * ranges.iter().map(size).fold(0.0, f64::max);
+    let relative = |range: &(f64, f64)| {
+        let size = size(range);
+        if size > least { (range.1 - range.0) / size } else { 0.0 }
     };
     let better = |best: usize, i: usize| if relative(&ranges[i]) > relative(&ranges[best]) { i } else { best };
     (1..ranges.len()).fold(0, better)

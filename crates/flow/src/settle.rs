@@ -230,7 +230,8 @@ impl<'a, 'b> Settling<'a, 'b> {
         let relative = (0..n).map(relative).collect();
         let noise = self.noise();
         // A state that dies out for good has no range any more; its tolerance stays positive.
-        let absolute = ranges.iter().zip(&noise).map(|(range, noise)| (part * range).max(*noise).max(LEAST_TOLERANCE)).collect();
+        let absolute =
+            ranges.iter().zip(&noise).map(|(range, noise)| (part * range).max(*noise).max(LEAST_TOLERANCE)).collect();
         self.integrator.set_tolerance(Tolerance { absolute, relative })?;
         if matches!(self.section, Some(Section::Period { .. })) {
             return Ok(());

@@ -107,7 +107,12 @@ impl<'a, Q: Problem> Follower<'a, Q> {
     ///
     /// # Errors
     /// [`StartFault`].
-    pub fn start(problem: &'a mut Q, point: Q::Point, direction: f64, settings: Settings) -> Result<Self, StartFault<Q::Error>> {
+    pub fn start(
+        problem: &'a mut Q,
+        point: Q::Point,
+        direction: f64,
+        settings: Settings,
+    ) -> Result<Self, StartFault<Q::Error>> {
         let tangent = problem.tangent(&point, Orientation::Parameter(direction)).map_err(StartFault::Problem)?;
         Self::start_along(problem, point, tangent, settings)
     }
@@ -116,7 +121,12 @@ impl<'a, Q: Problem> Follower<'a, Q> {
     ///
     /// # Errors
     /// [`StartFault`].
-    pub fn start_along(problem: &'a mut Q, point: Q::Point, tangent: Q::Tangent, settings: Settings) -> Result<Self, StartFault<Q::Error>> {
+    pub fn start_along(
+        problem: &'a mut Q,
+        point: Q::Point,
+        tangent: Q::Tangent,
+        settings: Settings,
+    ) -> Result<Self, StartFault<Q::Error>> {
         settings.validate().map_err(StartFault::Settings)?;
         let watch = problem.watch(&point, &tangent).map_err(StartFault::Problem)?;
         let first = Station { point, tangent, watch, distance: 0.0 };
@@ -151,9 +161,7 @@ impl<'a, Q: Problem> Follower<'a, Q> {
     }
     /// The problem with the last two stations, to ask it something about the step between them.
     #[allow(clippy::type_complexity)]
-    pub fn parts(
-        &mut self,
-    ) -> (&mut Q, Option<&Station<Q::Point, Q::Tangent>>, &Station<Q::Point, Q::Tangent>) {
+    pub fn parts(&mut self) -> (&mut Q, Option<&Station<Q::Point, Q::Tangent>>, &Station<Q::Point, Q::Tangent>) {
         (self.problem, self.previous.as_ref(), &self.current)
     }
 
@@ -275,7 +283,12 @@ impl<'a, Q: Problem> Follower<'a, Q> {
             .min_by(|a, b| (a.value() - from).abs().total_cmp(&(b.value() - from).abs()))
     }
 
-    fn land(&mut self, candidate: &Candidate<Q>, landing: Landing, stride: f64) -> Result<Candidate<Q>, Failure<Q::Error>> {
+    fn land(
+        &mut self,
+        candidate: &Candidate<Q>,
+        landing: Landing,
+        stride: f64,
+    ) -> Result<Candidate<Q>, Failure<Q::Error>> {
         let (from, to) = (self.problem.parameter(&self.current.point), self.problem.parameter(&candidate.point));
         let share = ((landing.value() - from) / (to - from)).clamp(0.0, 1.0);
         let guess = self.problem.advance(&self.current.point, &self.current.tangent, share * stride);

@@ -176,7 +176,14 @@ impl Bordered {
 
     /// Solves the transposed system `(psi, chi_closing, chi)^T [..] = (nodes, scalars)^T`: `psi` gets N R numbers,
     /// one per interval row; the k border multipliers go to `chi`.
-    pub fn solve_transposed(&mut self, cyclic: &Cyclic, nodes: &[f64], scalars: &[f64], psi: &mut [f64], chi: &mut [f64]) {
+    pub fn solve_transposed(
+        &mut self,
+        cyclic: &Cyclic,
+        nodes: &[f64],
+        scalars: &[f64],
+        psi: &mut [f64],
+        chi: &mut [f64],
+    ) {
         let (n, k) = (self.shape.n, self.k);
         let (core_len, nodes_len) = (self.shape.core_len(), self.shape.nodes_len());
         let row = &mut self.work_row;
@@ -236,7 +243,13 @@ mod tests {
                 for c in 0..shape.width() {
                     let value = random.next();
                     cyclic.block_mut(i)[r * shape.width() + c] = value;
-                    let place = if c < inner { n + c } else if c < inner + n { c - inner } else { rows + c - inner - n };
+                    let place = if c < inner {
+                        n + c
+                    } else if c < inner + n {
+                        c - inner
+                    } else {
+                        rows + c - inner - n
+                    };
                     dense[(i * rows + r) * size + i * rows + place] = value;
                 }
             }
@@ -276,7 +289,9 @@ mod tests {
     #[test]
     fn planted_solutions_return_straight_and_transposed() {
         for (seed, (n, inner, intervals, k, sigma)) in
-            [(1, 0, 1, 1, 1.0), (2, 4, 3, 2, 1.0), (3, 6, 40, 2, -1.0), (4, 12, 33, 3, 1.0), (2, 2, 64, 0, 0.3)].into_iter().enumerate()
+            [(1, 0, 1, 1, 1.0), (2, 4, 3, 2, 1.0), (3, 6, 40, 2, -1.0), (4, 12, 33, 3, 1.0), (2, 2, 64, 0, 0.3)]
+                .into_iter()
+                .enumerate()
         {
             let shape = Shape { n, inner, intervals };
             let Planted { cyclic, mut bordered, dense, size } = planted(shape, k, sigma, seed as u64 + 1);

@@ -180,7 +180,7 @@ impl Lu {
     }
 }
 
-/// The transpositions (q with swaps[q], in turn) that bring rows into the order `order`.
+/// The transpositions (q with `swaps[q]`, in turn) that bring rows into the order `order`.
 fn swaps_of(order: &[usize]) -> Vec<usize> {
     let mut now: Vec<usize> = (0..order.len()).collect();
     let mut place: Vec<usize> = now.clone();
@@ -247,8 +247,7 @@ pub(crate) mod tests {
             assert!(lu.factor());
             let mut b: Vec<f64> = (0..size).map(|r| dot(&a[r * size..(r + 1) * size], &x)).collect();
             lu.solve(&mut b);
-            let mut c: Vec<f64> =
-                (0..size).map(|q| (0..size).map(|r| a[r * size + q] * x[r]).sum()).collect();
+            let mut c: Vec<f64> = (0..size).map(|q| (0..size).map(|r| a[r * size + q] * x[r]).sum()).collect();
             lu.solve_transposed(&mut c);
             for ((b, c), x) in b.iter().zip(&c).zip(&x) {
                 assert!((b - x).abs() < 1e-11 && (c - x).abs() < 1e-11, "size {size}: {b} {c} {x}");

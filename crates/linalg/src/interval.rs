@@ -73,9 +73,8 @@ pub(crate) fn back_substitute(shape: Shape, block: &[f64], g: &[f64], nodes: &mu
     let (w, right) = rest.split_at_mut(inner);
     for q in (0..inner).rev() {
         let row = &block[q * width..(q + 1) * width];
-        let known = dot(&row[q + 1..inner], &w[q + 1..])
-            + dot(&row[inner..inner + n], left)
-            + dot(&row[inner + n..], right);
+        let known =
+            dot(&row[q + 1..inner], &w[q + 1..]) + dot(&row[inner..inner + n], left) + dot(&row[inner + n..], right);
         w[q] = (g[q] - known) / row[q];
     }
 }

@@ -29,9 +29,9 @@ mod bordered;
 mod chain;
 mod cyclic;
 mod dense;
+mod factors;
 mod interval;
 mod periodic;
-mod factors;
 
 pub use bordered::{Bordered, DeterminantSign, Right};
 pub use cyclic::{Cyclic, Shape, Singular};

@@ -90,7 +90,7 @@ impl Tester<'_> {
         second
     }
 
-    /// Df[u].
+    /// `Df[u]`.
     fn first(&mut self, place: &Place, u: &Part) -> Vec<f64> {
         let (rates, jacobian, columns) = self.linearise(place);
         let n = rates.len();

@@ -125,7 +125,10 @@ fn cycles(archive: &mut Archive<'_>, branch: &Branch) -> io::Result<()> {
     }
     archive.numbers("orbit_first", &[first.len()], &first)?;
     let times = |of: fn(&Orbit<'_>, f64) -> f64| -> Vec<f64> {
-        orbits.iter().flat_map(|orbit| orbit.profile.node_times().into_iter().map(move |time| of(orbit, time))).collect()
+        orbits
+            .iter()
+            .flat_map(|orbit| orbit.profile.node_times().into_iter().map(move |time| of(orbit, time)))
+            .collect()
     };
     let scaled = times(|_, time| time);
     archive.numbers("orbit_scaled_time", &[scaled.len()], &scaled)?;

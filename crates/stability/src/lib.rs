@@ -15,7 +15,7 @@ mod spectrum;
 mod switch;
 mod test_function;
 
-pub use locate::{Located, LocateFault};
+pub use locate::{LocateFault, Located};
 pub use measure::Measures;
 pub use normal_form::DoublingForm;
 pub use point::{CyclePoint, CycleTangent};

@@ -51,7 +51,13 @@ impl CycleProblem {
     ///
     /// # Errors
     /// [`LocateFault`] with the narrowest bracket reached.
-    pub fn locate(&mut self, kind: CriticalKind, index: usize, before: &CycleStation, after: &CycleStation) -> Result<Located, LocateFault> {
+    pub fn locate(
+        &mut self,
+        kind: CriticalKind,
+        index: usize,
+        before: &CycleStation,
+        after: &CycleStation,
+    ) -> Result<Located, LocateFault> {
         let total = after.distance - before.distance;
         let (mut low, mut high) = (before.clone(), after.clone());
         for halvings in 0..HALVINGS {
@@ -89,17 +95,28 @@ impl CycleProblem {
     }
 
     /// Newton on the augmented system; accepted only inside the bracket's neighbourhood.
-    fn newton_event(&mut self, kind: CriticalKind, guess: &CyclePoint, low: &CycleStation, high: &CycleStation) -> Option<(CyclePoint, Report)> {
+    fn newton_event(
+        &mut self,
+        kind: CriticalKind,
+        guess: &CyclePoint,
+        low: &CycleStation,
+        high: &CycleStation,
+    ) -> Option<(CyclePoint, Report)> {
         let mut point = guess.clone();
         let report = self.augmented(kind, &mut point).ok()?.0;
         let length = self.distance(&low.point, &high.point);
         // A chord is shorter than the branch between its ends; twice its length still excludes anything else.
-        let inside = self.distance(&low.point, &point) <= 2.0 * length && self.distance(&high.point, &point) <= 2.0 * length;
+        let inside =
+            self.distance(&low.point, &point) <= 2.0 * length && self.distance(&high.point, &point) <= 2.0 * length;
         inside.then_some((point, report))
     }
 
     /// Solves the augmented system in place on the point's mesh.
-    pub(crate) fn augmented(&mut self, kind: CriticalKind, point: &mut CyclePoint) -> Result<(Report, NullVectors), NewtonFailure> {
+    pub(crate) fn augmented(
+        &mut self,
+        kind: CriticalKind,
+        point: &mut CyclePoint,
+    ) -> Result<(Report, NullVectors), NewtonFailure> {
         self.system.set_mesh(&point.mesh);
         self.system.linearise(&point.unknowns)?;
         let mut function = TestFunction::new(kind, &self.system, &point.unknowns)?;
@@ -109,7 +126,11 @@ impl CycleProblem {
     }
 
     /// The event again with every interval halved: the better value, and the difference as the error of it.
-    fn refine_event(&mut self, kind: CriticalKind, coarse: &CyclePoint) -> Result<(CyclePoint, f64, f64, NullVectors), NewtonFailure> {
+    fn refine_event(
+        &mut self,
+        kind: CriticalKind,
+        coarse: &CyclePoint,
+    ) -> Result<(CyclePoint, f64, f64, NullVectors), NewtonFailure> {
         let mesh: Arc<[f64]> = halved(&coarse.mesh).into();
         let mut fine = coarse.on_mesh(self.system.tables(), &mesh);
         let (_, vectors) = self.augmented(kind, &mut fine)?;
@@ -138,7 +159,12 @@ impl CycleProblem {
 
     /// Narrows a bracket over which `differs` tells its ends apart, for changes without a defining system: returns
     /// the narrowest pair of stations.
-    pub fn narrow(&mut self, before: &CycleStation, after: &CycleStation, same_as_before: impl Fn(&CycleStation) -> bool) -> (CycleStation, CycleStation) {
+    pub fn narrow(
+        &mut self,
+        before: &CycleStation,
+        after: &CycleStation,
+        same_as_before: impl Fn(&CycleStation) -> bool,
+    ) -> (CycleStation, CycleStation) {
         let (mut low, mut high) = (before.clone(), after.clone());
         for _ in 0..HALVINGS {
             // Bisection along the chord: past this length the ends agree to the profile's accuracy.

@@ -59,7 +59,8 @@ impl CycleProblem {
         let system = &mut self.system;
         let len = system.residual().len();
         let column = || vec![0.0; len];
-        let (mut f, mut v, mut av, mut bvv, mut bvh, mut cvvv) = (column(), column(), column(), column(), column(), column());
+        let (mut f, mut v, mut av, mut bvv, mut bvh, mut cvvv) =
+            (column(), column(), column(), column(), column(), column());
         let raw = &located.vectors;
         system.values(&raw.nodes, &mut v);
         let scale = 1.0 / (period * system.integral(&v, &v)).sqrt();
@@ -79,8 +80,7 @@ impl CycleProblem {
         let flow = flow_nodes(system, &located.point.unknowns.nodes, period);
         let h: Vec<f64> = h.iter().zip(&flow).map(|(h, f)| h - along * f).collect();
         system.quadratic(&nodes, &h, &mut bvh);
-        let integrand: Vec<f64> =
-            (0..len).map(|k| cvvv[k] + 3.0 * bvh[k] - 6.0 * a * av[k]).collect();
+        let integrand: Vec<f64> = (0..len).map(|k| cvvv[k] + 3.0 * bvh[k] - 6.0 * a * av[k]).collect();
         let c = period * system.pair(&raw.psi, &integrand) / (6.0 * pairing);
         (a.is_finite() && c.is_finite()).then_some(DoublingForm { a, c })
     }

@@ -3,8 +3,8 @@
 use std::sync::Arc;
 
 use armilla_collocation::{
-    ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings, Report, Row, Scalar, System, SystemSpec, Task,
-    Workspace, correct_with, estimate_error, remesh, roundoff,
+    ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings, Report, Row,
+    Scalar, System, SystemSpec, Task, Workspace, correct_with, estimate_error, remesh, roundoff,
 };
 use armilla_follow::{Closing, Corrected, Failure, Orientation, Problem, Watch, Watched};
 use armilla_linalg::{Bordered, Right};
@@ -12,8 +12,8 @@ use armilla_model::VectorField;
 use armilla_record::{Point, Profile};
 
 use crate::measure::Measures;
-use crate::scale::{first_metric, natural_sizes};
 use crate::point::{CyclePoint, CycleTangent};
+use crate::scale::{first_metric, natural_sizes};
 use crate::spectrum::{Spectrum, SpectrumSolver};
 
 /// Index of the fold function in the watch list: the parameter's component of the tangent.
@@ -119,7 +119,12 @@ impl CycleProblem {
     ///
     /// # Errors
     /// [`StartFault`].
-    pub fn start(spec: CycleSpec, settings: CycleSettings, profile: &Profile, parameter: f64) -> Result<(Self, CyclePoint), StartFault> {
+    pub fn start(
+        spec: CycleSpec,
+        settings: CycleSettings,
+        profile: &Profile,
+        parameter: f64,
+    ) -> Result<(Self, CyclePoint), StartFault> {
         // The given profile carries the errors of its origin, the corrected one only roundoff: sizes are read twice.
         let mut problem = Self::with_metric(spec, settings, None, profile, parameter)?;
         let mut point = CyclePoint::from_profile(profile, parameter);
@@ -300,9 +305,11 @@ impl CycleProblem {
             *size = size.max(high - low);
         }
         // Scales never fall far below the largest size seen: a cycle that shrinks to an equilibrium must get there.
-        let wanted = profile.extremes().into_iter().zip(&self.largest).map(|((low, high), largest)| {
-            (high - low).max(SHRINK_TO * largest)
-        });
+        let wanted = profile
+            .extremes()
+            .into_iter()
+            .zip(&self.largest)
+            .map(|((low, high), largest)| (high - low).max(SHRINK_TO * largest));
         let wanted: Vec<f64> = wanted.zip(&self.metric.scales).map(|(w, now)| if w > 0.0 { w } else { *now }).collect();
         let far = |now: f64, wanted: f64| now > OUT_OF_SCALE * wanted || wanted > OUT_OF_SCALE * now;
         let changed = far(self.metric.period_scale, profile.period)
@@ -319,7 +326,8 @@ impl CycleProblem {
     pub fn anchor(&mut self, point: &CyclePoint) {
         let extremes = self.profile(point).extremes();
         // What never moves keeps its size.
-        let scale = |((low, high), now): ((f64, f64), &f64)| if high - low > LEAST_RANGE * now { high - low } else { *now };
+        let scale =
+            |((low, high), now): ((f64, f64), &f64)| if high - low > LEAST_RANGE * now { high - low } else { *now };
         self.largest = extremes.into_iter().zip(&self.metric.scales).map(scale).collect();
         self.metric =
             Metric { scales: self.largest.clone(), period_scale: point.unknowns.period, ..self.metric.clone() };
@@ -401,7 +409,8 @@ impl Problem for CycleProblem {
         let mut point = prediction.clone();
         let report = match closing {
             Closing::Parameter(value) => self.correct_at(&mut point, value),
-            Closing::Arclength { from, tangent: direction, stride: amount } | Closing::Component { from, direction, amount } => {
+            Closing::Arclength { from, tangent: direction, stride: amount }
+            | Closing::Component { from, direction, amount } => {
                 let from = from.on_mesh(self.system.tables(), &prediction.mesh);
                 let row = self.arclength_row(direction, &prediction.mesh);
                 let target = row.apply(&from.unknowns) + amount;
@@ -419,7 +428,11 @@ impl Problem for CycleProblem {
         Ok(Corrected { point, contraction: report.contraction(), iterations: report.iterations })
     }
 
-    fn tangent(&mut self, point: &CyclePoint, orientation: Orientation<'_, CycleTangent>) -> Result<CycleTangent, Failure<Fault>> {
+    fn tangent(
+        &mut self,
+        point: &CyclePoint,
+        orientation: Orientation<'_, CycleTangent>,
+    ) -> Result<CycleTangent, Failure<Fault>> {
         let len = point.unknowns.nodes.len();
         let row = match orientation {
             Orientation::Along(old) => self.arclength_row(old, &point.mesh),

@@ -16,7 +16,12 @@ const VANISHED: f64 = 1e-30;
 
 /// What each rate could move its state by over one period, from the ranges of the states it depends on.
 /// `typical` are sizes the states have had elsewhere, 0 where unknown: they stand in for a state that has died out.
-pub(crate) fn natural_sizes(field: &dyn VectorField, parameters: &[f64], profile: &Profile, typical: &[f64]) -> Vec<f64> {
+pub(crate) fn natural_sizes(
+    field: &dyn VectorField,
+    parameters: &[f64],
+    profile: &Profile,
+    typical: &[f64],
+) -> Vec<f64> {
     let (n, points) = (profile.n_states, profile.n_nodes());
     let ranges = ranges(profile);
     let mut states = vec![0.0; n * points];
@@ -60,8 +65,13 @@ pub(crate) fn first_metric(profile: &Profile, sizes: &[f64], parameter_scale: f6
         return None;
     }
     let scale = |(range, size): (&f64, &f64)| match () {
-        () if *range > STILL * size => *range,
-        () if *size > 0.0 => *size,
+        () if *size > 0.0 => {
+            if *range > STILL * size {
+                *range
+            } else {
+                *size
+            }
+        }
         // Nothing tells the unit of this state: the largest range stands in.
         () => largest,
     };

@@ -138,7 +138,12 @@ impl SpectrumSolver {
         best.ok_or(SpectrumFault::NotConverged(NotConverged))
     }
 
-    fn spectrum_on(&mut self, profile: &Profile, parameters: &[f64], (scales, fineness): (&[f64], f64)) -> Result<Spectrum, SpectrumFault> {
+    fn spectrum_on(
+        &mut self,
+        profile: &Profile,
+        parameters: &[f64],
+        (scales, fineness): (&[f64], f64),
+    ) -> Result<Spectrum, SpectrumFault> {
         let maps = self.variational.maps(profile, parameters, scales, fineness).map_err(SpectrumFault::Singular)?;
         let trivial = deflate(&maps, scales, &mut self.reduced)?;
         let n = maps.n;

@@ -56,7 +56,10 @@ impl CycleProblem {
     pub fn double(&self, located: &Located) -> Result<Doubled, SwitchFault> {
         let birth_profile = self.profile(&located.point).repeated(2);
         let (value, sizes) = (located.point.unknowns.parameter, Some(&self.metric.scales[..]));
-        let mut problem = CycleProblem::with_metric(self.spec.clone(), self.settings, sizes, &birth_profile, value)
+        let mut settings = self.settings;
+        // A number of intervals fixed by the user is per turn.
+        settings.mesh.fixed = settings.mesh.fixed.map(|intervals| 2 * intervals);
+        let mut problem = CycleProblem::with_metric(self.spec.clone(), settings, sizes, &birth_profile, value)
             .map_err(|_| SwitchFault)?;
         let birth = CyclePoint::from_profile(&birth_profile, value);
         let outwards = direction(&problem, &birth, located);
@@ -141,7 +144,12 @@ fn on_own_mesh(mut doubled: Doubled) -> Doubled {
     doubled
 }
 
-fn first_cycle(problem: &mut CycleProblem, birth: &CyclePoint, outwards: &CycleTangent, amplitude: f64) -> Option<CyclePoint> {
+fn first_cycle(
+    problem: &mut CycleProblem,
+    birth: &CyclePoint,
+    outwards: &CycleTangent,
+    amplitude: f64,
+) -> Option<CyclePoint> {
     let prediction = problem.advance(birth, outwards, amplitude);
     let closing = Closing::Component { from: birth, direction: outwards, amount: amplitude };
     let point = problem.correct(&prediction, closing).ok()?.point;

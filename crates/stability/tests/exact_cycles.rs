@@ -14,7 +14,8 @@ fn model(text: &str) -> Model {
 /// A circle of radius `r` in the first two states, the others 0, on a coarse mesh.
 fn circle(n: usize, r: f64, period: f64) -> Profile {
     let mesh: Vec<f64> = (0..=12).map(|i| i as f64 / 12.0).collect();
-    let mut profile = Profile { n_states: n, degree: CycleSettings::new(1e-9).degree, period, mesh, values: Vec::new() };
+    let mut profile =
+        Profile { n_states: n, degree: CycleSettings::new(1e-9).degree, period, mesh, values: Vec::new() };
     for t in profile.node_times() {
         let (s, c) = (TAU * t).sin_cos();
         let mut state = vec![0.0; n];
@@ -30,7 +31,13 @@ fn spec(model: &Model, free: &str, set: &[(&str, f64)], width: f64) -> CycleSpec
         parameters[model.parameter_index(name).expect("a parameter")] = *value;
     }
     let free = model.parameter_index(free).expect("a parameter");
-    CycleSpec { field: model.field(), parameters, free, typical: vec![0.0; model.states().len()], parameter_scale: width }
+    CycleSpec {
+        field: model.field(),
+        parameters,
+        free,
+        typical: vec![0.0; model.states().len()],
+        parameter_scale: width,
+    }
 }
 
 /// X1, exact: T = 2 pi/(1 + k mu), multiplier exp(-4 pi mu/(1 + k mu)).
@@ -39,10 +46,11 @@ fn hopf_with_shear_is_exact() {
     let model = model(include_str!("../../../tests/models/x1.model.ron"));
     let start = circle(2, 0.5, TAU / 1.1);
     let (mut problem, point) =
-        CycleProblem::start(spec(&model, "mu", &[("k", 0.5)], 1.0), CycleSettings::new(1e-9), &start, 0.25).expect("starts");
+        CycleProblem::start(spec(&model, "mu", &[("k", 0.5)], 1.0), CycleSettings::new(1e-9), &start, 0.25)
+            .expect("starts");
     let found = problem.describe(&point, 1, 0.0).expect("multipliers");
     assert!((found.period / 5.585053606381854 - 1.0).abs() < 1e-12, "{}", found.period);
-    assert!((found.multipliers[0].log_modulus - 0.061266210509709911f64.ln()).abs() < 1e-10);
+    assert!((found.multipliers[0].log_modulus - 0.061_266_210_509_709_91_f64.ln()).abs() < 1e-10);
     assert!(found.trivial_defect < 1e-10 && found.liouville_defect < 1e-10);
 }
 
@@ -115,7 +123,7 @@ fn doubling_is_located_and_switched() {
     let mut follower = Follower::start(&mut problem, point, 1.0, Settings::new((-0.3, 0.3))).expect("follows");
     let mut located = None;
     while let Outcome::Step(step) = follower.step() {
-            if step.crossings.iter().any(|crossing| crossing.index == WATCH_DOUBLING) {
+        if step.crossings.iter().any(|crossing| crossing.index == WATCH_DOUBLING) {
             let (problem, before, after) = follower.parts();
             let (before, after) = (before.expect("a step was made").clone(), after.clone());
             located = Some(problem.locate(CriticalKind::Doubling, WATCH_DOUBLING, &before, &after).expect("located"));

@@ -117,7 +117,8 @@ fn fit(law: Law, points: &[(f64, f64)]) -> Option<(f64, f64)> {
 /// Difference to the limit without the last point, and roundoff of the parameter.
 fn error(law: Law, limit: f64, points: &[(f64, f64)], width: f64) -> f64 {
     let without = fit(law, &points[..points.len().saturating_sub(1)]);
-    let spread = without.map_or(points.last().map_or(width, |last| (limit - last.0).abs()), |(other, _)| (limit - other).abs());
+    let spread =
+        without.map_or(points.last().map_or(width, |last| (limit - last.0).abs()), |(other, _)| (limit - other).abs());
     spread + 16.0 * f64::EPSILON * width.max(limit.abs())
 }
 

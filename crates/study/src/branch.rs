@@ -117,11 +117,7 @@ fn event_record(problem: &CycleProblem, found: &Found, name: String, turns: usiz
 }
 
 /// Follows one branch to its ends.
-pub(crate) fn follow_branch(
-    run: &mut Run<'_>,
-    lineage: &Lineage,
-    entry: Entry,
-) -> Result<Finished, StudyError> {
+pub(crate) fn follow_branch(run: &mut Run<'_>, lineage: &Lineage, entry: Entry) -> Result<Finished, StudyError> {
     run.observer.notice(Progress::Branch { name: &lineage.name });
     match entry {
         Entry::Cycle(problem, point) => both_ways(run, lineage, *problem, *point),
@@ -132,10 +128,22 @@ pub(crate) fn follow_branch(
 fn plan<'a>(run: &Run<'a>, lineage: &Lineage, sign: f64) -> WalkPlan<'a> {
     let mut settings = follow_settings(run.study);
     settings.points = run.points_left;
-    WalkPlan { study: run.study, settings, turns: lineage.turns, doubled: lineage.born_at.is_some(), sign, abort: run.abort }
+    WalkPlan {
+        study: run.study,
+        settings,
+        turns: lineage.turns,
+        doubled: lineage.born_at.is_some(),
+        sign,
+        abort: run.abort,
+    }
 }
 
-fn both_ways(run: &mut Run<'_>, lineage: &Lineage, mut problem: CycleProblem, start: CyclePoint) -> Result<Finished, StudyError> {
+fn both_ways(
+    run: &mut Run<'_>,
+    lineage: &Lineage,
+    mut problem: CycleProblem,
+    start: CyclePoint,
+) -> Result<Finished, StudyError> {
     let no_cycle = |reason: String| StudyError::NoCycle { reason };
     let first = problem.describe(&start, lineage.turns, 0.0).map_err(|fault| no_cycle(fault.to_string()))?;
     let stuck = || no_cycle("the cycle at the start cannot be continued in the followed parameter".into());
@@ -188,7 +196,11 @@ fn outwards(run: &mut Run<'_>, lineage: &Lineage, doubled: Doubled) -> Result<Fi
     let born = end(
         EndReason::ReturnsToParent,
         birth.unknowns.parameter,
-        format!("returns to its parent: born at {parent}, {} = {}", run_parameter(&plan), short(plan.study, birth.unknowns.parameter)),
+        format!(
+            "returns to its parent: born at {parent}, {} = {}",
+            run_parameter(&plan),
+            short(plan.study, birth.unknowns.parameter)
+        ),
     );
     let mut walked = vec![Walked { point: first, cycle: birth }, Walked { point: second, cycle: point }];
     walked.extend(forward.points);
@@ -215,17 +227,30 @@ fn walk_shifted(
 }
 
 fn collector<'r, 'a>(run: &'r mut Run<'a>, lineage: &'r Lineage) -> Collector<'r, 'a> {
-    Collector { run, lineage, numbers: HashMap::new(), events: Vec::new(), doublings: Vec::new(), points: 0, fault: None }
+    Collector {
+        run,
+        lineage,
+        numbers: HashMap::new(),
+        events: Vec::new(),
+        doublings: Vec::new(),
+        points: 0,
+        fault: None,
+    }
 }
 
-fn finish(collector: Collector<'_, '_>, problem: CycleProblem, walked: Vec<Walked>, ends: (End, End)) -> Result<Finished, StudyError> {
+fn finish(
+    collector: Collector<'_, '_>,
+    problem: CycleProblem,
+    walked: Vec<Walked>,
+    ends: (End, End),
+) -> Result<Finished, StudyError> {
     let Collector { run, lineage, mut events, doublings, fault, .. } = collector;
     if let Some(fault) = fault {
         return Err(fault);
     }
     events.sort_by(|a, b| a.distance.total_cmp(&b.distance));
     let last = walked.len() - 1;
-    let keep = |index: usize| index % KEEP_EVERY == 0 || index == last;
+    let keep = |index: usize| index.is_multiple_of(KEEP_EVERY) || index == last;
     let profiles = walked
         .iter()
         .enumerate()
@@ -246,7 +271,8 @@ struct Parts {
 }
 
 fn branch_record(study: &Study, lineage: &Lineage, parts: Parts) -> Branch {
-    let quantity = |name: &str, label: &str, unit: &str| Quantity { name: name.into(), label: label.into(), unit: unit.into() };
+    let quantity =
+        |name: &str, label: &str, unit: &str| Quantity { name: name.into(), label: label.into(), unit: unit.into() };
     let model = &study.model;
     let followed = &model.parameters()[study.free];
     let others = model.parameters().iter().zip(&study.parameters).enumerate();
@@ -260,7 +286,10 @@ fn branch_record(study: &Study, lineage: &Lineage, parts: Parts) -> Branch {
         states: model.states().iter().map(|s| quantity(&s.name, &s.label, &s.unit)).collect(),
         parameter: quantity(&followed.name, &followed.label, &followed.unit),
         range: study.range,
-        fixed: others.filter(|(index, _)| *index != study.free).map(|(_, (p, value))| (p.name.clone(), *value)).collect(),
+        fixed: others
+            .filter(|(index, _)| *index != study.free)
+            .map(|(_, (p, value))| (p.name.clone(), *value))
+            .collect(),
         accuracy: study.file.accuracy,
         points: parts.points,
         events: parts.events,

@@ -88,7 +88,9 @@ impl StudyError {
             Self::Record(error) if error.is_machine_fault() => ErrorClass::Machine,
             Self::Record(_) => ErrorClass::Input,
             Self::Settling { error: FlowError::Aborted { .. }, .. } | Self::Interrupted => ErrorClass::NotReached,
-            Self::Settling { error: FlowError::Setting { .. } | FlowError::ForcingPeriodMissing, .. } => ErrorClass::Input,
+            Self::Settling { error: FlowError::Setting { .. } | FlowError::ForcingPeriodMissing, .. } => {
+                ErrorClass::Input
+            }
             Self::Settling { .. } | Self::SettlesAtRest { .. } | Self::DidNotSettle { .. } | Self::NoCycle { .. } => {
                 ErrorClass::NotReached
             }
@@ -108,7 +110,10 @@ impl std::fmt::Display for StudyError {
                 if !formula.is_empty() {
                     write!(f, ": {formula}")?;
                 }
-                write!(f, "\n    help: begin elsewhere (`begin` in the model file) or change the parameters of the start")
+                write!(
+                    f,
+                    "\n    help: begin elsewhere (`begin` in the model file) or change the parameters of the start"
+                )
             }
             Self::Settling { error: FlowError::Aborted { .. }, .. } | Self::Interrupted => {
                 write!(f, "stopped before there was a result; nothing was written")
@@ -121,7 +126,11 @@ impl std::fmt::Display for StudyError {
                  model file)",
                 listed(states),
                 // At a degenerate state of rest there is no rate of decay to tell.
-                if *growth < 0.0 { format!(", all disturbances shrinking at {} per time unit or faster", digits(-growth)) } else { String::new() }
+                if *growth < 0.0 {
+                    format!(", all disturbances shrinking at {} per time unit or faster", digits(-growth))
+                } else {
+                    String::new()
+                }
             ),
             Self::DidNotSettle { evidence } => write!(
                 f,

@@ -13,7 +13,7 @@ pub const DEFAULT_ACCURACY: f64 = 1e-9;
 
 /// A study as written, defaults filled in.
 #[derive(Clone, Debug, PartialEq, DeserializeDerive, Serialize)]
-#[serde(rename = "Study", deny_unknown_fields)]
+#[serde(rename = "study", deny_unknown_fields)]
 pub struct StudyFile {
     /// Title; empty where none is given.
     #[serde(default)]
@@ -81,7 +81,7 @@ pub enum Start {
 
 /// The parameter to follow and its range.
 #[derive(Clone, Debug, PartialEq, DeserializeDerive, Serialize)]
-#[serde(deny_unknown_fields)]
+#[serde(rename = "follow", deny_unknown_fields)]
 pub struct Follow {
     /// Its name.
     pub parameter: String,
@@ -93,7 +93,7 @@ pub struct Follow {
 
 /// How far switching goes on its own.
 #[derive(Clone, Copy, Debug, PartialEq, DeserializeDerive, Serialize)]
-#[serde(deny_unknown_fields, default)]
+#[serde(rename = "pursue", deny_unknown_fields, default)]
 pub struct Pursue {
     /// Doublings in one line of descent.
     pub doublings: usize,
@@ -111,7 +111,7 @@ impl Default for Pursue {
 
 /// Mesh fixed by the user.
 #[derive(Clone, Copy, Debug, PartialEq, DeserializeDerive, Serialize)]
-#[serde(deny_unknown_fields)]
+#[serde(rename = "mesh", deny_unknown_fields)]
 pub struct MeshOverride {
     /// Intervals per turn of the first cycle; chosen from the accuracy where absent.
     #[serde(default, skip_serializing_if = "Option::is_none")]
@@ -123,7 +123,7 @@ pub struct MeshOverride {
 
 /// Strides fixed by the user, in the metric of the branch (1 is the size of the cycle or of the range).
 #[derive(Clone, Copy, Debug, PartialEq, DeserializeDerive, Serialize)]
-#[serde(deny_unknown_fields)]
+#[serde(rename = "stride", deny_unknown_fields)]
 pub struct StrideOverride {
     /// First stride.
     #[serde(default, skip_serializing_if = "Option::is_none")]

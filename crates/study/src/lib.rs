@@ -1,7 +1,7 @@
 //! Study files and the tree of branches.
 //!
 //! A study file says which model, where to start, what to follow and how far. [`Study::read`] checks it against the
-//! model; [`trace`] does it: start, follow, locate, switch, write. This crate does not know how a cycle is computed
+//! model; [`trace()`] does it: start, follow, locate, switch, write. This crate does not know how a cycle is computed
 //! nor how a figure is drawn.
 
 mod approach;

@@ -49,7 +49,10 @@ impl Study {
         if !model_path.is_file() {
             let place = Place { source: Source { file: &shown, text: &text } };
             let message = format!("there is no model file `{}`", model_path.display());
-            return Err(place.error("model", &file.model, message).with_help("the path is relative to the study file").into());
+            return Err(place
+                .error("model", &file.model, message)
+                .with_help("the path is relative to the study file")
+                .into());
         }
         let model = Model::read(&model_path)?;
         Self::check(file, path.to_path_buf(), model, Source { file: &shown, text: &text })
@@ -151,12 +154,22 @@ impl Place<'_> {
         Ok(())
     }
 
-    fn only_followed_differs(&self, model: &Model, free: usize, (follow, start): (&[f64], &[f64]), at: &Values) -> Result<(), Diagnostic> {
+    fn only_followed_differs(
+        &self,
+        model: &Model,
+        free: usize,
+        (follow, start): (&[f64], &[f64]),
+        at: &Values,
+    ) -> Result<(), Diagnostic> {
         for (index, parameter) in model.parameters().iter().enumerate() {
             if index != free && follow[index] != start[index] {
                 let name = &parameter.name;
-                let message = format!("`{name}` is {} while settling but {} while following", start[index], follow[index]);
-                let help = format!("put `{name}` into `set`; `at` is for the followed parameter `{}`", model.parameters()[free].name);
+                let message =
+                    format!("`{name}` is {} while settling but {} while following", start[index], follow[index]);
+                let help = format!(
+                    "put `{name}` into `set`; `at` is for the followed parameter `{}`",
+                    model.parameters()[free].name
+                );
                 debug_assert!(at.0.contains_key(name));
                 return Err(self.error("at", name, message).with_help(help));
             }
@@ -170,8 +183,14 @@ impl Place<'_> {
             return Err(self.error("follow", "", "the range must have two different finite ends `from` and `to`"));
         }
         if !(file.accuracy >= ACCURACY.0 && file.accuracy <= ACCURACY.1) {
-            let message = format!("the accuracy {} must lie between {:e} and {:e}", file.accuracy, ACCURACY.0, ACCURACY.1);
+            let message =
+                format!("the accuracy {:e} must lie between {:e} and {:e}", file.accuracy, ACCURACY.0, ACCURACY.1);
             return Err(self.error("accuracy", "", message));
+        }
+        if let Start::Settle { transient: Some(transient), .. } = file.start
+            && !(transient.is_finite() && transient >= 0.0)
+        {
+            return Err(self.error("transient", "", "the transient must be a finite time, 0 or more"));
         }
         if file.pursue.branches == 0 || file.pursue.points == 0 {
             return Err(self.error("pursue", "", "`branches` and `points` must be at least 1"));

@@ -124,7 +124,9 @@ fn drop_other_end(study: &Study, lineage: &Lineage, branch: &mut Branch, queue: 
             && waiting.lineage.born_at.as_ref().is_some_and(|event| event.split('/').next() == Some(parent))
     };
     let nearest = queue.iter().filter(sibling).min_by(|a, b| gap(a).total_cmp(&gap(b)));
-    let Some(name) = nearest.filter(|w| gap(w) < SAME * (study.range.1 - study.range.0)).map(|w| w.lineage.name.clone()) else {
+    let Some(name) =
+        nearest.filter(|w| gap(w) < SAME * (study.range.1 - study.range.0)).map(|w| w.lineage.name.clone())
+    else {
         return;
     };
     if let Some(at) = queue.iter().position(|waiting| waiting.lineage.name == name)
@@ -135,22 +137,29 @@ fn drop_other_end(study: &Study, lineage: &Lineage, branch: &mut Branch, queue: 
 }
 
 /// The branches born at the doublings of a finished one.
-fn children(study: &Study, lineage: &Lineage, finished: &Finished, room: usize, shortfalls: &mut Vec<String>) -> Vec<Waiting> {
+fn children(
+    study: &Study,
+    lineage: &Lineage,
+    finished: &Finished,
+    room: usize,
+    shortfalls: &mut Vec<String>,
+) -> Vec<Waiting> {
     let mut children = Vec::new();
     if lineage.doublings >= study.file.pursue.doublings {
         return children;
     }
     for (event, located) in &finished.doublings {
         if children.len() >= room {
-            shortfalls.push(format!("the branch born at {event} was not followed: `pursue` allows {} branches", study.file.pursue.branches));
+            shortfalls.push(format!(
+                "the branch born at {event} was not followed: `pursue` allows {} branches",
+                study.file.pursue.branches
+            ));
             continue;
         }
         match finished.problem.double(located) {
             Err(fault) => shortfalls.push(format!("at {event} {fault}")),
-            Ok(doubled) => children.push(Waiting {
-                lineage: child_lineage(lineage, event),
-                entry: Entry::Birth(Box::new(doubled)),
-            }),
+            Ok(doubled) => children
+                .push(Waiting { lineage: child_lineage(lineage, event), entry: Entry::Birth(Box::new(doubled)) }),
         }
     }
     children
@@ -180,7 +189,11 @@ fn conclude(study: &Study, mut results: Results, mut traced: Traced) -> Result<T
 }
 
 /// Draws figures into a results folder; returns what could not be drawn, in sentences.
-pub(crate) fn write_figures(figures: &[Figure], branches: &[Branch], results: &mut Results) -> Result<Vec<String>, StudyError> {
+pub(crate) fn write_figures(
+    figures: &[Figure],
+    branches: &[Branch],
+    results: &mut Results,
+) -> Result<Vec<String>, StudyError> {
     let mut failed = Vec::new();
     let (mut diagrams, mut portraits) = (0, 0);
     for figure in figures {
@@ -224,7 +237,11 @@ fn shortfalls(study: &Study, branches: &[Branch]) -> Vec<String> {
         for end in [&branch.ends.0, &branch.ends.1] {
             let reached = matches!(
                 end.reason,
-                EndReason::Edge | EndReason::Closed | EndReason::Equilibrium { .. } | EndReason::ReturnsToParent | EndReason::PeriodBlowUp
+                EndReason::Edge
+                    | EndReason::Closed
+                    | EndReason::Equilibrium { .. }
+                    | EndReason::ReturnsToParent
+                    | EndReason::PeriodBlowUp
             );
             if !reached {
                 found.push(format!("branch {} stops early: {}", branch.name, end.words));

@@ -69,7 +69,8 @@ pub(crate) fn walk(
     sink: &mut dyn WalkSink,
 ) -> Walk {
     let start_value = first.0.unknowns.parameter;
-    let mut walk = Walk { points: Vec::new(), events: Vec::new(), end: end(EndReason::Stuck, start_value, String::new()) };
+    let mut walk =
+        Walk { points: Vec::new(), events: Vec::new(), end: end(EndReason::Stuck, start_value, String::new()) };
     let mut follower = match Follower::start_along(problem, first.0, first.1, plan.settings.clone()) {
         Ok(follower) => follower,
         Err(_) => {
@@ -86,7 +87,8 @@ pub(crate) fn walk(
             walk.end = end(EndReason::Interrupted, value, "stopped by the user".into());
             return walk;
         }
-        let Outcome::Step(step) = follower.step() else { break };
+        let Outcome::Step(mut step) = follower.step() else { break };
+        drop_idle_turns(&mut step);
         if let Some(ended) = passed_through(&mut follower, plan, &mut motions) {
             walk.end = ended;
             return walk;
@@ -142,7 +144,12 @@ fn blown_up(
     sink: &mut dyn WalkSink,
 ) -> Walk {
     let (problem, _, current) = follower.parts();
-    let mut event = unresolved(current, (approach.limit, approach.error), format!("the period grows {}", approach.law.words()), plan);
+    let mut event = unresolved(
+        current,
+        (approach.limit, approach.error),
+        format!("the period grows {}", approach.law.words()),
+        plan,
+    );
     event.kind = EventKind::PeriodBlowUp;
     sink.event(problem, &event);
     let name = with_unit_name(plan);
@@ -172,7 +179,7 @@ fn passed_through(
         let words = format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), short(plan.study, value));
         return Some(end(EndReason::Equilibrium { value }, last, words));
     }
-    if plan.turns % 2 == 0 && problem.passed_birth(&before.point, &after.point) {
+    if plan.turns.is_multiple_of(2) && problem.passed_birth(&before.point, &after.point) {
         let value = birth_value(problem, before, after);
         let words = if plan.doubled {
             format!("returns to its parent at {} = {}", with_unit_name(plan), short(plan.study, value))
@@ -222,6 +229,16 @@ fn extrapolate_to_rest(motions: &[(f64, f64)]) -> f64 {
     }
     // Two equal amplitudes leave no weights; the last point then stands for the end.
     if value.is_finite() { value } else { last[last.len() - 1].1 }
+}
+
+/// Takes out turnings of the parameter that are none: where it stands still to roundoff over a whole stride (in the
+/// middle of a canard explosion, say) its sign flips at random, and no multiplier passes 1.
+fn drop_idle_turns(step: &mut Step) {
+    /// Parameter component of the unit tangent that no true fold stays below at both ends of a stride.
+    const IDLE: f64 = 1e-6;
+    if step.unstable.0 == step.unstable.1 {
+        step.crossings.retain(|c| c.index != WATCH_FOLD || c.before.abs() > IDLE || c.after.abs() > IDLE);
+    }
 }
 
 /// Whether the events of a step can account for the change of the unstable count: each fold or doubling moves one
@@ -401,7 +418,17 @@ pub(crate) fn at_parameter(problem: &mut CycleProblem, kind: EventKind, point: &
         Ok((fine, error)) => (fine, Some(error)),
         Err(_) => (point.clone(), None),
     };
-    Found { kind, point, distance, error: Some(0.0), period_error, angle: None, criticality: None, note: String::new(), located: None }
+    Found {
+        kind,
+        point,
+        distance,
+        error: Some(0.0),
+        period_error,
+        angle: None,
+        criticality: None,
+        note: String::new(),
+        located: None,
+    }
 }
 
 pub(crate) fn end(reason: EndReason, value: f64, words: String) -> End {
@@ -422,9 +449,13 @@ fn end_of_follower(follower: &mut Follower<'_, CycleProblem>, plan: &WalkPlan<'_
     let largest = motions.iter().map(|m| m.0).fold(0.0, f64::max);
     let shrunk = motions.last().is_some_and(|m| m.0 < NEARLY_AT_REST * largest) && motions.len() > 2;
     match follower.end() {
-        Some(FollowEnd::Edge(edge)) => end(EndReason::Edge, *edge, format!("reaches the edge of the asked range, {name} = {edge}")),
+        Some(FollowEnd::Edge(edge)) => {
+            end(EndReason::Edge, *edge, format!("reaches the edge of the asked range, {name} = {edge}"))
+        }
         Some(FollowEnd::Closed) => end(EndReason::Closed, value, "closed upon itself: its start was met again".into()),
-        Some(FollowEnd::Budget) => end(EndReason::Budget, value, format!("all points allowed by `pursue` were used at {name} = {here}")),
+        Some(FollowEnd::Budget) => {
+            end(EndReason::Budget, value, format!("all points allowed by `pursue` were used at {name} = {here}"))
+        }
         Some(FollowEnd::Stuck | FollowEnd::Outside(_)) if shrunk => {
             let rest = extrapolate_to_rest(motions);
             let words = format!("shrinks to an equilibrium at {name} = {}", short(plan.study, rest));

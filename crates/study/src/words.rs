@@ -57,7 +57,9 @@ pub fn settling_words(error: &FlowError, model: &Model) -> String {
 pub fn unsettled_words(verdict: &Verdict, model: &Model) -> String {
     let (kind, evidence) = match verdict {
         Verdict::Equilibrium(_) | Verdict::Cycle(_) => return String::new(),
-        Verdict::QuasiPeriodic(evidence) => ("it is quasi-periodic, with frequencies that no whole number relates", evidence),
+        Verdict::QuasiPeriodic(evidence) => {
+            ("it is quasi-periodic, with frequencies that no whole number relates", evidence)
+        }
         Verdict::Irregular(evidence) => ("it is irregular and amplifies disturbances", evidence),
         Verdict::NotSettled(evidence) => ("neither rest nor a cycle was recognised", evidence),
         _ => return "it is neither at rest nor periodic".into(),
@@ -79,7 +81,11 @@ fn evidence_words(evidence: &Evidence, model: &Model) -> String {
         ));
     }
     if let Some(exponent) = &evidence.exponent {
-        words.push_str(&format!("; disturbances grow at {} ± {} per time unit", digits(exponent.value), digits(exponent.spread)));
+        words.push_str(&format!(
+            "; disturbances grow at {} ± {} per time unit",
+            digits(exponent.value),
+            digits(exponent.spread)
+        ));
     }
     words
 }
@@ -108,7 +114,8 @@ mod tests {
         assert!(settling_words(&fault, &model()).starts_with("`flow` grows without bound: at time 1.5 it is 1e30\n"));
         let fault = FlowError::NotFinite { state_index: 0, time: 0.25, state: vec![2.0, -0.5] };
         assert!(
-            settling_words(&fault, &model()).starts_with("the rate of `level` is not finite at time 0.25 (level = 2.0, flow = -0.5)\n")
+            settling_words(&fault, &model())
+                .starts_with("the rate of `level` is not finite at time 0.25 (level = 2.0, flow = -0.5)\n")
         );
     }
 }

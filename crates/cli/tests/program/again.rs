@@ -62,7 +62,8 @@ fn orbits_are_exported_as_a_table() {
     let said = desk.run(&["export", "x1.results", "--format", "csv"]);
     assert_eq!((said.code, said.err.as_str()), (0, ""), "{said:?}");
     let listed: Vec<&str> = said.out.lines().collect();
-    let wanted = ["x1.results/export/quantities.csv", "x1.results/export/a.points.csv", "x1.results/export/a.orbits.csv"];
+    let wanted =
+        ["x1.results/export/quantities.csv", "x1.results/export/a.points.csv", "x1.results/export/a.orbits.csv"];
     assert_eq!(listed, wanted);
     assert_eq!(desk.read(wanted[0]), "role,name,label,unit\nstate,x,x,1\nstate,y,y,1\nparameter,mu,mu,1\n");
     assert_eq!(desk.read(wanted[1]), desk.read("x1.results/branches/a.csv"));

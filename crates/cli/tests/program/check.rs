@@ -58,7 +58,8 @@ fn shows_a_study_with_its_defaults_and_the_start_it_gives() {
     desk.write("b.study.ron", "(model: \"x1.model.ron\", set: {\"k\": 0.0}, start: Settle(at: {\"mu\": 1.0}), follow: (parameter: \"mu\", from: 2, to: 0.5))");
     let said = desk.run(&["check", "b.study.ron"]);
     assert_eq!(said.code, 0, "{said:?}");
-    for wanted in ["accuracy: 1e-9", "points: 4000", "doublings: 4", "mu  1.0  1", "k   0.0  1", "measure: Max(\"x\")"] {
+    for wanted in ["accuracy: 1e-9", "points: 4000", "doublings: 4", "mu  1.0  1", "k   0.0  1", "measure: Max(\"x\")"]
+    {
         assert!(said.out.contains(wanted), "no `{wanted}` in\n{}", said.out);
     }
     // By hand: at (0.5, 0) with mu = 1, k = 0 the rates are 0.5 (1 - 1/4) and 0.5.

@@ -57,7 +57,10 @@ fn what_was_found_is_on_disk() {
     assert!(said.out.contains("a/target1"), "{}", said.out);
     let results = Results::open(&desk.path("x1.results")).expect("results");
     let branch = results.read_branch("a").expect("a branch");
-    assert!(matches!(branch.ends.0.reason, EndReason::Interrupted) || matches!(branch.ends.1.reason, EndReason::Interrupted));
+    assert!(
+        matches!(branch.ends.0.reason, EndReason::Interrupted)
+            || matches!(branch.ends.1.reason, EndReason::Interrupted)
+    );
     assert!(branch.points.len() > 3);
     let thresholds = results.read_thresholds().expect("thresholds");
     assert!(thresholds.iter().any(|row| row.event == "a/target1" && row.value == 0.2505));
@@ -68,7 +71,10 @@ fn what_was_found_is_on_disk() {
 
 #[test]
 fn while_settling_nothing_is_written() {
-    let desk = Desk::with(&[("x1.model.ron", X1_MODEL), ("x1.study.ron", &X1_STUDY.replace("Settle()", "Settle(transient: 1e9)"))]);
+    let desk = Desk::with(&[
+        ("x1.model.ron", X1_MODEL),
+        ("x1.study.ron", &X1_STUDY.replace("Settle()", "Settle(transient: 1e9)")),
+    ]);
     desk.write("x1.results/study.ron", "// armilla study, format 1\n()\n");
     let before = desk.files();
     for arguments in [&["trace", "x1.study.ron", "--replace"][..], &["settle", "x1.model.ron", "--transient", "1e9"]] {

@@ -88,7 +88,12 @@ fn tables_have_the_bits_of_the_branch_files() {
         let table = cells(&desk.read(&format!("x3.results/branches/{}.csv", branch.name)));
         assert_eq!(table.len(), branch.points.len() + 1);
         for (k, (row, point)) in table[1..].iter().zip(&branch.points).enumerate() {
-            let words = [k.to_string(), point.turns.to_string(), point.is_stable().to_string(), point.unstable_count.to_string()];
+            let words = [
+                k.to_string(),
+                point.turns.to_string(),
+                point.is_stable().to_string(),
+                point.unstable_count.to_string(),
+            ];
             assert_eq!([&row[0], &row[3], &row[4], &row[5]], [&words[0], &words[1], &words[2], &words[3]]);
             let mut numbers =
                 vec![point.value, point.period, point.trivial_defect, point.liouville_defect, point.profile_error];
@@ -172,7 +177,10 @@ fn replaced_results_are_the_same_bytes_and_nothing_else_stays() {
 fn a_run_that_fails_leaves_the_old_results() {
     let desk = Desk::with(&x1());
     traced(&desk, "x1.study.ron");
-    desk.write("x1.study.ron", X1_STUDY.replace("from: 0.1", "from: -0.5").replace("Settle()", "Settle(at: { \"mu\": -0.25 })"));
+    desk.write(
+        "x1.study.ron",
+        X1_STUDY.replace("from: 0.1", "from: -0.5").replace("Settle()", "Settle(at: { \"mu\": -0.25 })"),
+    );
     let before = desk.files();
     let said = desk.run(&["trace", "x1.study.ron", "--replace"]);
     assert_eq!(said.code, 1, "{said:?}");

@@ -41,13 +41,23 @@ fn the_closing_table_names_events_ends_folder_and_caution() {
 #[test]
 fn help_speaks_in_whole_words() {
     let desk = Desk::new();
-    let allowed = ["CSV", "DIR", "NAME", "VALUE", "TIME", "FORMAT", "RESULTS", "MODEL", "STUDY", "FILE", "COMMAND", "OPTIONS"];
-    for arguments in [&["--help"][..], &["check", "--help"], &["settle", "--help"], &["trace", "--help"], &["draw", "--help"], &["export", "--help"]] {
+    let allowed =
+        ["CSV", "DIR", "NAME", "VALUE", "TIME", "FORMAT", "RESULTS", "MODEL", "STUDY", "FILE", "COMMAND", "OPTIONS"];
+    for arguments in [
+        &["--help"][..],
+        &["check", "--help"],
+        &["settle", "--help"],
+        &["trace", "--help"],
+        &["draw", "--help"],
+        &["export", "--help"],
+    ] {
         let said = desk.run(arguments);
         assert_eq!((said.code, said.err.as_str()), (0, ""), "{said:?}");
         assert!(said.out.contains("Usage: armilla"), "{}", said.out);
         for word in said.out.split(|c: char| !c.is_alphanumeric()) {
-            let is_code = word.len() > 1 && word.chars().all(|c| c.is_uppercase() || c.is_ascii_digit()) && word.chars().any(char::is_uppercase);
+            let is_code = word.len() > 1
+                && word.chars().all(|c| c.is_uppercase() || c.is_ascii_digit())
+                && word.chars().any(char::is_uppercase);
             assert!(!is_code || allowed.contains(&word), "`{word}` in\n{}", said.out);
         }
         assert!(said.out.lines().all(|line| line.chars().count() <= 100), "{}", said.out);
@@ -63,7 +73,8 @@ fn a_closed_pipe_ends_without_a_panic() {
     let desk = Desk::with(&x1());
     let program = env!("CARGO_BIN_EXE_armilla");
     let script = format!("'{program}' check x1.model.ron | true; '{program}' trace x1.study.ron | true");
-    let output = std::process::Command::new("sh").arg("-c").arg(script).current_dir(desk.path("")).output().expect("a shell");
+    let output =
+        std::process::Command::new("sh").arg("-c").arg(script).current_dir(desk.path("")).output().expect("a shell");
     let err = String::from_utf8_lossy(&output.stderr).into_owned();
     assert!(!err.contains("panicked"), "{err}");
     assert!(desk.path("x1.results/thresholds.csv").exists());

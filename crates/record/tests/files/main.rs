@@ -14,3 +14,5 @@ mod tables;
 mod folder;
 // A run that is killed.
 mod journal;
+// Tables and arrays for other tools.
+mod export;
