@@ -1,1 +1,32 @@
 //! Acceptance tests of armilla against outside references.
+//!
+//! The tests under `tests/` check what the program finds against exact cases, published values and independent
+//! computations, each with its source beside it; this library is what they share. It goes through the public face of
+//! the crates only and knows no reference value. Models are in `models/`.
+//!
+//! ```
+//! use armilla_tests::{Case, relative, settings};
+//!
+//! let case = Case::new("x1", "mu", 1.0).with("k", 0.5);
+//! let (_, cycle) = case.start(&case.circle(0.4, 6.0), settings(1e-9), 0.25);
+//! // Exact, by hand: 2 pi/(1 + k mu).
+//! relative("period", cycle.unknowns.period, std::f64::consts::TAU / 1.125, 1e-12);
+//! ```
+
+mod bracket;
+mod case;
+mod check;
+mod job;
+mod order;
+mod series;
+mod uniform;
+mod walk;
+
+pub use bracket::{station, stations};
+pub use case::{Case, settings};
+pub use check::{absolute, multiplier, relative};
+pub use job::{branch, event, job};
+pub use order::Orders;
+pub use series::{VanDerPol, divergence_integral};
+pub use uniform::{Uniform, uniform_mesh};
+pub use walk::walk;

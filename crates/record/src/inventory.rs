@@ -106,7 +106,7 @@ fn is_ours(entry: &DirEntry, place: &Place) -> bool {
         return true;
     }
     match place {
-        Place::Top => matches!(name, "study.ron" | "thresholds.csv" | "journal.ron"),
+        Place::Top => matches!(name, "study.ron" | "thresholds.csv" | "cascade.csv" | "journal.ron"),
         Place::Branches => name.ends_with(".ron") || name.ends_with(".csv"),
         Place::Figures => name.ends_with(".svg"),
         Place::Export => name.ends_with(".csv") || name.ends_with(".npz"),

@@ -17,6 +17,7 @@ use crate::inventory::{Inventory, STUDY_WHAT};
 use crate::journal::{Journal, JournalEntry};
 use crate::seal::head;
 use crate::threshold::write_threshold_table;
+use crate::cascade::{CascadeRow, write_cascade_table};
 use crate::{Branch, Event, RecordError, Threshold};
 
 /// Format version of `study.ron` as far as this crate is concerned: its first line.
@@ -147,6 +148,17 @@ impl Results {
     pub fn write_thresholds(&mut self, rows: &[Threshold]) -> Result<(), RecordError> {
         let path = self.begin(None)?.join("thresholds.csv");
         write_threshold_table(&path, rows)?;
+        self.has_files = true;
+        Ok(())
+    }
+
+    /// Writes `cascade.csv`.
+    ///
+    /// # Errors
+    /// [`RecordError::Inconsistent`] for a row with something that is not finite.
+    pub fn write_cascade(&mut self, rows: &[CascadeRow]) -> Result<(), RecordError> {
+        let path = self.begin(None)?.join("cascade.csv");
+        write_cascade_table(&path, rows)?;
         self.has_files = true;
         Ok(())
     }

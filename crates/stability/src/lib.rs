@@ -15,6 +15,7 @@ mod spectrum;
 mod switch;
 mod test_function;
 
+pub use armilla_collocation::Fault;
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;
 pub use normal_form::DoublingForm;

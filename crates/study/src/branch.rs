@@ -47,6 +47,8 @@ pub(crate) struct Run<'a> {
     pub observer: &'a mut dyn Observer,
     /// Called with each event as it is located.
     pub keep: &'a mut dyn FnMut(&Event) -> Result<(), StudyError>,
+    /// Whether every branch ends at its first doubling.
+    pub to_first_doubling: bool,
     /// Points still allowed.
     pub points_left: usize,
 }
@@ -135,6 +137,7 @@ fn plan<'a>(run: &Run<'a>, lineage: &Lineage, sign: f64) -> WalkPlan<'a> {
         doubled: lineage.born_at.is_some(),
         sign,
         abort: run.abort,
+        to_first_doubling: run.to_first_doubling,
     }
 }
 

@@ -6,6 +6,7 @@
 
 mod approach;
 mod branch;
+mod cascade;
 mod error;
 mod file;
 mod progress;

@@ -12,7 +12,7 @@ use crate::file::Start;
 use crate::progress::{Observer, Progress};
 use crate::settings::cycle_settings;
 use crate::study::Study;
-use crate::words::{listed, settling_words, unsettled_words};
+use crate::words::{digits, listed, settling_words, unsettled_words};
 
 /// The first cycle with the problem it belongs to.
 pub(crate) struct First {
@@ -153,5 +153,5 @@ fn check_rates(study: &Study) -> Result<(), StudyError> {
 
 fn push_note(study: &Study, push: &armilla_flow::Push) -> String {
     let states = listed(&named(study, &push.equilibrium.state));
-    format!("the start sat on an unstable state of rest ({states}) and was pushed off it by {:e}", push.size)
+    format!("the start sat on an unstable state of rest ({states}) and was pushed off it by {}", digits(push.size))
 }

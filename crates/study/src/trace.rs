@@ -5,8 +5,9 @@ use std::path::{Path, PathBuf};
 use std::sync::atomic::{AtomicBool, Ordering};
 
 use armilla_figure::Figure;
-use armilla_record::{Branch, EndReason, EventKind, RecordError, Results, Threshold};
+use armilla_record::{Branch, CascadeRow, EndReason, EventKind, RecordError, Results, Threshold};
 
+use crate::cascade::cascade;
 use crate::branch::{Entry, Finished, Lineage, Run, follow_branch};
 use crate::error::StudyError;
 use crate::progress::Observer;
@@ -19,6 +20,8 @@ pub struct TraceOptions<'a> {
     pub folder: Option<PathBuf>,
     /// Whether an existing results folder may be replaced.
     pub replace: bool,
+    /// Follows every branch to its first doubling only: the doubling sequence in the shortest time.
+    pub cascade: bool,
     /// Ends the run cleanly when set.
     pub abort: &'a AtomicBool,
 }
@@ -32,6 +35,8 @@ pub struct Traced {
     pub folder: PathBuf,
     /// What was asked and not reached, one sentence each.
     pub shortfalls: Vec<String>,
+    /// The doubling sequence with its limit, where three doublings or more follow each other.
+    pub cascade: Vec<CascadeRow>,
     /// Notes on the start.
     pub notes: Vec<String>,
     /// Whether the user stopped the run.
@@ -68,6 +73,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         branches: Vec::new(),
         folder: results.folder().to_path_buf(),
         shortfalls: Vec::new(),
+        cascade: Vec::new(),
         notes: first.notes,
         interrupted: false,
     };
@@ -77,7 +83,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
     let mut points_left = study.file.pursue.points;
     while let Some(waiting) = queue.pop_front() {
         let mut keep = |event: &armilla_record::Event| results.write_event(event).map_err(StudyError::from);
-        let mut run = Run { study, abort: options.abort, observer: &mut *observer, keep: &mut keep, points_left };
+        let mut run = Run { study, abort: options.abort, observer: &mut *observer, keep: &mut keep, to_first_doubling: options.cascade, points_left };
         let lineage = waiting.lineage.clone();
         let mut finished = match follow_branch(&mut run, &lineage, waiting.entry) {
             Ok(finished) => finished,
@@ -107,7 +113,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         let why = if traced.interrupted { "the run was stopped" } else { "all points allowed by `pursue` were used" };
         traced.shortfalls.push(format!("branch {} was not followed: {why}", waiting.lineage.name));
     }
-    conclude(study, results, traced)
+    conclude(study, results, traced, options.cascade)
 }
 
 /// A doubled branch that returns to its parent at another doubling of it has been followed from both: the branch that
@@ -176,12 +182,16 @@ fn child_lineage(parent: &Lineage, event: &str) -> Lineage {
 }
 
 /// Sorts, writes tables and figures, and says what was not reached.
-fn conclude(study: &Study, mut results: Results, mut traced: Traced) -> Result<Traced, StudyError> {
+fn conclude(study: &Study, mut results: Results, mut traced: Traced, cascade_only: bool) -> Result<Traced, StudyError> {
     let order = armilla_record::descent_order(&traced.branches);
     let mut slots: Vec<Option<Branch>> = traced.branches.drain(..).map(Some).collect();
     traced.branches = order.into_iter().filter_map(|index| slots[index].take()).collect();
     results.write_thresholds(&Threshold::rows(&traced.branches))?;
-    traced.shortfalls.extend(shortfalls(study, &traced.branches));
+    traced.cascade = cascade(&traced.branches);
+    if !traced.cascade.is_empty() {
+        results.write_cascade(&traced.cascade)?;
+    }
+    traced.shortfalls.extend(shortfalls(study, &traced.branches, cascade_only));
     let failed = write_figures(&study.file.figures, &traced.branches, &mut results)?;
     traced.shortfalls.extend(failed);
     results.finish()?;
@@ -231,7 +241,7 @@ pub fn redraw(folder: &Path) -> Result<Vec<String>, StudyError> {
     write_figures(&file.figures, &branches, &mut results)
 }
 
-fn shortfalls(study: &Study, branches: &[Branch]) -> Vec<String> {
+fn shortfalls(study: &Study, branches: &[Branch], cascade_only: bool) -> Vec<String> {
     let mut found = Vec::new();
     for branch in branches {
         for end in [&branch.ends.0, &branch.ends.1] {
@@ -243,7 +253,7 @@ fn shortfalls(study: &Study, branches: &[Branch]) -> Vec<String> {
                     | EndReason::ReturnsToParent
                     | EndReason::PeriodBlowUp
             );
-            if !reached {
+            if !reached && !cascade_only {
                 found.push(format!("branch {} stops early: {}", branch.name, end.words));
             }
         }

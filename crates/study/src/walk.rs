@@ -5,6 +5,7 @@ use std::sync::atomic::{AtomicBool, Ordering};
 use armilla_follow::{FollowEnd, Follower, Landing, Outcome, Settings, Station, Step};
 use armilla_record::{Criticality, End, EndReason, EventKind, Point};
 use armilla_stability::{
+    Fault,
     CriticalKind, CyclePoint, CycleProblem, CycleTangent, Located, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS,
 };
 
@@ -43,6 +44,8 @@ pub(crate) struct WalkPlan<'a> {
     /// +1 where distances grow with the walk, -1 where they fall.
     pub sign: f64,
     pub abort: &'a AtomicBool,
+    /// Whether the walk ends at its first doubling.
+    pub to_first_doubling: bool,
 }
 
 /// What a walk brings back.
@@ -89,9 +92,18 @@ pub(crate) fn walk(
         }
         let Outcome::Step(mut step) = follower.step() else { break };
         drop_idle_turns(&mut step);
-        if let Some(ended) = passed_through(&mut follower, plan, &mut motions) {
-            walk.end = ended;
-            return walk;
+        match passed_through(&mut follower, plan, &mut motions) {
+            Passage::None => {}
+            Passage::TooLong if retries < RETRIES && follower.retract() => {
+                motions.pop();
+                retries += 1;
+                continue;
+            }
+            Passage::TooLong => {}
+            Passage::End(ended) => {
+                walk.end = ended;
+                return walk;
+            }
         }
         if !is_explained(&step) && retries < RETRIES && follower.retract() {
             motions.pop();
@@ -103,6 +115,7 @@ pub(crate) fn walk(
         let before = before.expect("a step has a station before it").clone();
         let after = after.clone();
         let found = events_of_step(problem, &step, (&before, &after), plan);
+        let doubles = found.iter().any(|event| event.kind == EventKind::Doubling);
         for event in found {
             sink.event(problem, &event);
             walk.events.push(event);
@@ -113,6 +126,11 @@ pub(crate) fn walk(
                 walk.points.push(Walked { point, cycle: after.point });
             }
             Err(_) => break,
+        }
+        if plan.to_first_doubling && doubles {
+            let value = follower.current().point.unknowns.parameter;
+            walk.end = end(EndReason::Budget, value, "followed to its first doubling only, as a cascade asks".into());
+            return walk;
         }
         periods.push(period(&follower));
         if follower.end().is_none()
@@ -163,21 +181,37 @@ fn blown_up(
     walk
 }
 
+/// What the last step went through.
+enum Passage {
+    /// Nothing.
+    None,
+    /// An equilibrium, in a stride so long that nothing tells where: to be tried again shorter.
+    TooLong,
+    /// An equilibrium or the branch's own birth.
+    End(End),
+}
+
 /// Whether the last step went through an equilibrium or through the branch's own birth; the walk is over then, and the
 /// last point, already on the way back, is not kept.
 fn passed_through(
     follower: &mut Follower<'_, CycleProblem>,
     plan: &WalkPlan<'_>,
     motions: &mut Vec<(f64, f64)>,
-) -> Option<End> {
+) -> Passage {
+    /// Share of the largest motion of the walk that the last cycle before the passage must have fallen below.
+    const SMALL: f64 = 0.3;
     motions.push(motion(follower));
     let (problem, before, after) = follower.parts();
-    let before = before?;
+    let Some(before) = before else { return Passage::None };
     let last = before.point.unknowns.parameter;
     if problem.passed_equilibrium(&before.point, &after.point) {
+        let largest = motions.iter().map(|motion| motion.0).fold(0.0, f64::max);
+        if problem.motion(&before.point) > SMALL * largest || motions.len() < 4 {
+            return Passage::TooLong;
+        }
         let value = extrapolate_to_rest(motions);
         let words = format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), short(plan.study, value));
-        return Some(end(EndReason::Equilibrium { value }, last, words));
+        return Passage::End(end(EndReason::Equilibrium { value }, last, words));
     }
     if plan.turns.is_multiple_of(2) && problem.passed_birth(&before.point, &after.point) {
         let value = birth_value(problem, before, after);
@@ -190,9 +224,9 @@ fn passed_through(
                 short(plan.study, value)
             )
         };
-        return Some(end(EndReason::ReturnsToParent, value, words));
+        return Passage::End(end(EndReason::ReturnsToParent, value, words));
     }
-    None
+    Passage::None
 }
 
 /// Parameter where the split between the turns vanishes: even in the split, so linear in its square.
@@ -439,6 +473,19 @@ fn with_unit_name(plan: &WalkPlan<'_>) -> String {
     plan.study.file.follow.parameter.clone()
 }
 
+/// What stopped the evaluation, with the names of the model.
+fn fault_words(study: &Study, fault: &Fault) -> String {
+    match fault {
+        Fault::NotFinite { state, states, .. } => {
+            let name = &study.model.states()[*state].name;
+            let at = crate::words::listed(&crate::start::named(study, states));
+            let formula = study.model.rates().get(*state).map(|f| format!(", {},", f.text)).unwrap_or_default();
+            format!("the rate of `{name}`{formula} or a derivative of it is not finite at {at},")
+        }
+        Fault::Singular(_) => "the linear system is singular".into(),
+    }
+}
+
 /// Motion, relative to the largest along the walk, below which a walk that is stuck has shrunk to an equilibrium.
 const NEARLY_AT_REST: f64 = 0.02;
 
@@ -462,7 +509,7 @@ fn end_of_follower(follower: &mut Follower<'_, CycleProblem>, plan: &WalkPlan<'_
             end(EndReason::Equilibrium { value: rest }, value, words)
         }
         Some(FollowEnd::Outside(fault)) => {
-            end(EndReason::NotFinite, value, format!("a rate is not finite beyond {name} = {here}: {fault}"))
+            end(EndReason::NotFinite, value, format!("{} beyond {name} = {here}", fault_words(plan.study, fault)))
         }
         Some(FollowEnd::Stuck) => {
             end(EndReason::Stuck, value, format!("the corrector fails at the shortest stride at {name} = {here}"))

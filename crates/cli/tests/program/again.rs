@@ -5,17 +5,17 @@ use std::fs;
 use armilla_record::Results;
 
 use crate::desk::Desk;
-use crate::scenes::{x1, x3};
+use crate::scenes::{x1, x3_traced};
 
-fn traced(files: &[(&str, &str)], study: &str) -> Desk {
-    let desk = Desk::with(files);
-    assert_eq!(desk.run(&["trace", study]).code, 0);
+fn x1_traced() -> Desk {
+    let desk = Desk::with(&x1());
+    assert_eq!(desk.run(&["trace", "x1.study.ron"]).code, 0);
     desk
 }
 
 #[test]
 fn figures_are_drawn_again_to_the_byte() {
-    let desk = traced(&x3(), "x3.study.ron");
+    let desk = x3_traced();
     let first = desk.files();
     fs::remove_dir_all(desk.path("x3.results/figures")).expect("figures");
     let said = desk.run(&["draw", "x3.results"]);
@@ -29,7 +29,7 @@ fn figures_are_drawn_again_to_the_byte() {
 /// Whoever wants another figure edits `study.ron` in the results.
 #[test]
 fn figures_follow_the_study_of_the_results() {
-    let desk = traced(&x1(), "x1.study.ron");
+    let desk = x1_traced();
     desk.write("x1.results/study.ron", desk.read("x1.results/study.ron").replace("Max(\"x\")", "Period"));
     assert_eq!(desk.run(&["draw", "x1.results"]).code, 0);
     assert!(desk.read("x1.results/figures/diagram1.svg").contains("period"));
@@ -41,7 +41,7 @@ fn figures_follow_the_study_of_the_results() {
 
 #[test]
 fn a_damaged_branch_file_is_refused_in_words() {
-    let desk = traced(&x1(), "x1.study.ron");
+    let desk = x1_traced();
     let text = desk.read("x1.results/branches/a.ron");
     for damaged in [text.replacen('5', "6", 1), text[..text.len() / 2].to_string(), String::new()] {
         desk.write("x1.results/branches/a.ron", &damaged);
@@ -58,7 +58,7 @@ fn a_damaged_branch_file_is_refused_in_words() {
 /// Exact: every node of every orbit lies on the circle of radius sqrt(mu) and its last time is the period.
 #[test]
 fn orbits_are_exported_as_a_table() {
-    let desk = traced(&x1(), "x1.study.ron");
+    let desk = x1_traced();
     let said = desk.run(&["export", "x1.results", "--format", "csv"]);
     assert_eq!((said.code, said.err.as_str()), (0, ""), "{said:?}");
     let listed: Vec<&str> = said.out.lines().collect();
@@ -91,7 +91,7 @@ fn orbits_are_exported_as_a_table() {
 
 #[test]
 fn exports_do_not_change_and_do_not_hinder_replacing() {
-    let desk = traced(&x3(), "x3.study.ron");
+    let desk = x3_traced();
     assert_eq!(desk.run(&["export", "x3.results"]).code, 0);
     let first = desk.files();
     for file in ["quantities.csv", "a.points.csv", "a.orbits.csv", "a.npz", "a.doubling1.npz"] {

@@ -3,7 +3,7 @@
 use armilla_record::{Branch, EndReason, EventKind, Results};
 
 use crate::desk::Desk;
-use crate::scenes::{X1_MODEL, X1_STUDY, x1, x3};
+use crate::scenes::{X1_MODEL, X1_STUDY, x1, x3_traced};
 
 /// Runs a study that must reach everything.
 fn traced(desk: &Desk, study: &str) {
@@ -80,8 +80,7 @@ fn numbers_are_those_of_the_exact_circle() {
 /// Every number of the tables has the bits of the branch file.
 #[test]
 fn tables_have_the_bits_of_the_branch_files() {
-    let desk = Desk::with(&x3());
-    traced(&desk, "x3.study.ron");
+    let desk = x3_traced();
     let bits = |text: &str| text.parse::<f64>().expect("a number").to_bits();
     let mut compared = 0;
     for branch in branches(&desk, "x3.results") {
@@ -124,8 +123,7 @@ fn tables_have_the_bits_of_the_branch_files() {
 #[test]
 fn a_doubling_is_located_and_its_branch_followed() {
     use std::f64::consts::PI;
-    let desk = Desk::with(&x3());
-    traced(&desk, "x3.study.ron");
+    let desk = x3_traced();
     let found = branches(&desk, "x3.results");
     let names: Vec<&str> = found.iter().map(|branch| branch.name.as_str()).collect();
     assert_eq!(names, ["a", "a.doubling1"]);
@@ -164,8 +162,7 @@ fn the_understood_study_gives_the_same_results() {
 
 #[test]
 fn replaced_results_are_the_same_bytes_and_nothing_else_stays() {
-    let desk = Desk::with(&x3());
-    traced(&desk, "x3.study.ron");
+    let desk = x3_traced();
     let first = desk.files();
     let said = desk.run(&["trace", "x3.study.ron", "--replace"]);
     assert_eq!((said.code, said.err.as_str()), (0, ""), "{said:?}");

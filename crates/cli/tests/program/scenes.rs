@@ -1,5 +1,10 @@
 //! Models and studies of these tests.
 
+use std::collections::BTreeMap;
+use std::sync::LazyLock;
+
+use crate::desk::Desk;
+
 /// X1 of the outside checks: radius sqrt(mu), period 2 pi/(1 + k mu); exact.
 pub const X1_MODEL: &str = include_str!("../../../../tests/models/x1.model.ron");
 /// X3 of the outside checks: a doubling at mu = 0, the doubled branch known exactly.
@@ -29,7 +34,17 @@ pub fn x1() -> [(&'static str, &'static str); 2] {
     [("x1.model.ron", X1_MODEL), ("x1.study.ron", X1_STUDY)]
 }
 
-/// X3 with its study.
-pub fn x3() -> [(&'static str, &'static str); 2] {
-    [("x3.model.ron", X3_MODEL), ("x3.study.ron", X3_STUDY)]
+/// A desk with X3, traced; the run itself is done once for all tests.
+pub fn x3_traced() -> Desk {
+    static FILES: LazyLock<BTreeMap<String, Vec<u8>>> = LazyLock::new(|| {
+        let desk = Desk::with(&[("x3.model.ron", X3_MODEL), ("x3.study.ron", X3_STUDY)]);
+        let said = desk.run(&["trace", "x3.study.ron"]);
+        assert_eq!((said.code, said.err.as_str()), (0, ""), "{said:?}");
+        desk.files()
+    });
+    let desk = Desk::new();
+    for (name, bytes) in FILES.iter().filter(|(name, _)| !name.ends_with('/')) {
+        desk.write(name, bytes);
+    }
+    desk
 }

@@ -82,7 +82,7 @@ fn arrays_have_the_bits_of_the_branch() {
         let written =
             folder(place.path(), std::slice::from_ref(&original)).export(&[ExportFormat::Npz]).expect("exported");
         let path = place.path().join("a.results/export/a.npz");
-        assert_eq!(written, [path.clone()]);
+        assert_eq!(written.as_slice(), std::slice::from_ref(&path));
         assert_eq!(floats(&path, "point_value"), (vec![4], bits(original.points.iter().map(|point| &point.value))));
         assert_eq!(
             floats(&path, "point_max"),
