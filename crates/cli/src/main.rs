@@ -33,6 +33,8 @@ enum Command {
     Settle(settle::Args),
     /// The main job: start, follow, locate, switch, write branch files, thresholds and figures.
     Trace(trace::Args),
+    /// The doubling sequence alone: every branch to its first doubling, the thresholds and the value they tend to.
+    Cascade(trace::CascadeArgs),
     /// Draws the figures of a results folder again, without computing.
     Draw(draw::Args),
     /// Writes the tables and orbits of a results folder for other tools: CSV and NumPy arrays.
@@ -44,6 +46,7 @@ fn main() -> ExitCode {
         Command::Check(args) => check::run(&args),
         Command::Settle(args) => settle::run(&args),
         Command::Trace(args) => trace::run(&args),
+        Command::Cascade(args) => trace::run_cascade(&args),
         Command::Draw(args) => draw::run(&args),
         Command::Export(args) => export::run(&args),
     }

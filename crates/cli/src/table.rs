@@ -1,6 +1,6 @@
 //! The closing table of a run.
 
-use armilla_record::{Branch, Event};
+use armilla_record::{Branch, CascadeRow, Event};
 
 use crate::columns::aligned;
 
@@ -26,7 +26,7 @@ pub fn supported(value: f64, error: Option<f64>) -> String {
     }
 }
 
-fn row(event: &Event) -> [String; 6] {
+fn row(event: &Event) -> [String; 7] {
     let error = match event.error {
         Some(0.0) => "exact".to_string(),
         Some(error) => format!("{error:.1e}"),
@@ -39,6 +39,7 @@ fn row(event: &Event) -> [String; 6] {
         error,
         period,
         event.turns.to_string(),
+        event.criticality.map_or(String::new(), |side| side.word().to_string()),
         event.note.clone(),
     ]
 }
@@ -53,9 +54,10 @@ pub fn closing(branches: &[Branch]) -> String {
         "error".into(),
         "period".into(),
         "turns".into(),
+        "side".into(),
         "note".into(),
     ];
-    let mut rows: Vec<[String; 6]> = vec![head];
+    let mut rows: Vec<[String; 7]> = vec![head];
     for branch in branches {
         let mut events: Vec<&Event> = branch.events.iter().collect();
         events.sort_by(|a, b| a.distance.total_cmp(&b.distance));
@@ -69,6 +71,24 @@ pub fn closing(branches: &[Branch]) -> String {
         text.push_str(&format!("  one end: {}\n  other end: {}\n", branch.ends.0.words, branch.ends.1.words));
     }
     text
+}
+
+/// The doubling sequence as lines of text; empty where there is none.
+pub fn sequence(rows: &[CascadeRow]) -> String {
+    if rows.is_empty() {
+        return String::new();
+    }
+    let cell = |row: &CascadeRow| {
+        [
+            row.turns.map_or("limit".into(), |turns| format!("{turns} to {}", 2 * turns)),
+            supported(row.value, row.error),
+            row.error.map_or(String::new(), |error| format!("{error:.1e}")),
+            row.ratio.map_or(String::new(), |ratio| format!("{ratio:.6}")),
+        ]
+    };
+    let head = ["turns".into(), "threshold".into(), "error".into(), "ratio of intervals".into()];
+    let table: Vec<[String; 4]> = std::iter::once(head).chain(rows.iter().map(cell)).collect();
+    format!("\n{}", crate::columns::section("doubling sequence", &table))
 }
 
 #[cfg(test)]

@@ -8,11 +8,11 @@ use armilla_study::{Study, TraceOptions, Traced, trace};
 
 use crate::exit::{Exit, fail, say, show};
 use crate::progress::ProgressLine;
-use crate::table::closing;
+use crate::table::{closing, sequence};
 
-/// Arguments of `trace`.
+/// What `trace` and `cascade` are told alike.
 #[derive(clap::Args)]
-pub struct Args {
+pub struct Job {
     /// The study file, NAME.study.ron.
     study: PathBuf,
     /// Results folder; NAME.results beside the study if not given.
@@ -26,6 +26,13 @@ pub struct Args {
     quiet: bool,
 }
 
+/// Arguments of `trace`.
+#[derive(clap::Args)]
+pub struct Args {
+    #[command(flatten)]
+    job: Job,
+}
+
 /// Set by Ctrl-C; the run then ends with everything found so far on disk.
 static STOP: AtomicBool = AtomicBool::new(false);
 
@@ -34,22 +41,48 @@ const CAUTION: &str = "These numbers describe the model, not the machine; local 
 
 /// Runs the main job.
 pub fn run(args: &Args) -> ExitCode {
-    let study = match Study::read(&args.study) {
-        Ok(study) => study,
-        Err(error) => return fail(&error),
-    };
+    match Study::read(&args.job.study) {
+        Ok(study) => follow(&study, &args.job, false),
+        Err(error) => fail(&error),
+    }
+}
+
+/// Arguments of `cascade`.
+#[derive(clap::Args)]
+pub struct CascadeArgs {
+    #[command(flatten)]
+    job: Job,
+    /// Doublings to locate, each on the branch born at the one before.
+    #[arg(long, value_name = "NUMBER", default_value_t = 10, value_parser = clap::value_parser!(u8).range(1..=20))]
+    doublings: u8,
+}
+
+/// Runs the doubling sequence alone: every branch to its first doubling only.
+pub fn run_cascade(args: &CascadeArgs) -> ExitCode {
+    match Study::read(&args.job.study) {
+        Ok(mut study) => {
+            // The last doubling is located on its branch but not entered.
+            study.file.pursue.doublings = usize::from(args.doublings) - 1;
+            follow(&study, &args.job, true)
+        }
+        Err(error) => fail(&error),
+    }
+}
+
+fn follow(study: &Study, job: &Job, cascade: bool) -> ExitCode {
     // Where no handler can be set, Ctrl-C ends the run at once: files are whole all the same.
     let _ = ctrlc::set_handler(|| STOP.store(true, Ordering::Relaxed));
-    let options = TraceOptions { folder: args.out.clone(), replace: args.replace, abort: &STOP };
-    let mut progress = ProgressLine::new(args.quiet);
-    match trace(&study, &options, &mut progress) {
+    let options = TraceOptions { folder: job.out.clone(), replace: job.replace, cascade, abort: &STOP };
+    let mut progress = ProgressLine::new(job.quiet);
+    match trace(study, &options, &mut progress) {
         Ok(traced) => close(&traced),
         Err(error) => fail(&error),
     }
 }
 
 fn close(traced: &Traced) -> ExitCode {
-    show(&format!("{}\nresults: {}\n{CAUTION}\n", closing(&traced.branches), traced.folder.display()));
+    let table = format!("{}{}", closing(&traced.branches), sequence(&traced.cascade));
+    show(&format!("{table}\nresults: {}\n{CAUTION}\n", traced.folder.display()));
     traced.notes.iter().for_each(|note| say(note));
     traced.shortfalls.iter().for_each(|shortfall| say(shortfall));
     if traced.interrupted {
