@@ -18,7 +18,8 @@ fn traced(place: &Path, fields: &str) -> HashMap<String, Row> {
     std::fs::copy(models.join("roessler.model.ron"), place.join("roessler.model.ron")).expect("the model is there");
     let study = place.join("band.study.ron");
     std::fs::write(&study, format!("(model: \"roessler.model.ron\", {fields})")).expect("a study written");
-    let output = Command::new(env!("CARGO_BIN_EXE_armilla")).arg("trace").arg(&study).output().expect("the program runs");
+    let output =
+        Command::new(env!("CARGO_BIN_EXE_armilla")).arg("trace").arg(&study).output().expect("the program runs");
     let said = String::from_utf8_lossy(&output.stderr);
     assert_eq!(output.status.code(), Some(0), "{said}");
     thresholds(&place.join("band.results/thresholds.csv"))
@@ -34,7 +35,8 @@ fn thresholds(path: &Path) -> HashMap<String, Row> {
         .map(|line| {
             // Only the last column, the note, may hold commas.
             let cells: Vec<&str> = line.split(',').collect();
-            let row = Row { value: cells[value].parse().expect("a number"), turns: cells[turns].parse().expect("a number") };
+            let row =
+                Row { value: cells[value].parse().expect("a number"), turns: cells[turns].parse().expect("a number") };
             (cells[event].to_string(), row)
         })
         .collect()

@@ -4,7 +4,9 @@
 use std::hint::black_box;
 use std::sync::Arc;
 
-use armilla_collocation::{Iterate, LinearClosing, Metric, NewtonSettings, Row, System, SystemSpec, Workspace, correct};
+use armilla_collocation::{
+    Iterate, LinearClosing, Metric, NewtonSettings, Row, System, SystemSpec, Workspace, correct,
+};
 use armilla_model::{Model, VectorField};
 use armilla_record::Profile;
 use criterion::{Criterion, criterion_group, criterion_main};

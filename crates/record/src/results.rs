@@ -11,13 +11,13 @@ use std::path::{Path, PathBuf};
 use crate::atomic::{temporary_in, write_atomic};
 use crate::branch_table::write_branch_table;
 use crate::branch_text::write_branch_file;
+use crate::cascade::{CascadeRow, write_cascade_table};
 use crate::error::Attempt;
 use crate::file_name::{branch_file_stem, figure_file_name};
 use crate::inventory::{Inventory, STUDY_WHAT};
 use crate::journal::{Journal, JournalEntry};
 use crate::seal::head;
 use crate::threshold::write_threshold_table;
-use crate::cascade::{CascadeRow, write_cascade_table};
 use crate::{Branch, Event, RecordError, Threshold};
 
 /// Format version of `study.ron` as far as this crate is concerned: its first line.

@@ -11,7 +11,7 @@
 //! Equations 76:47). Left vectors of the collocation rows are adjoint values times Gauss weights, so every integral
 //! with an adjoint is a plain sum over rows.
 
-use armilla_collocation::System;
+use armilla_collocation::{Row, System, Variation};
 use armilla_linalg::{Bordered, Right};
 
 use crate::locate::Located;
@@ -25,6 +25,21 @@ pub struct DoublingForm {
     pub a: f64,
     /// Cubic coefficient; negative where the doubled cycle is born stable.
     pub c: f64,
+    /// Derivative of the critical exponent sigma in the parameter along the branch: `xi' = sigma xi + c xi^3`.
+    pub slope: f64,
+}
+
+impl DoublingForm {
+    /// Amplitude xi at which the multiplier that is 1 at the birth of the doubled cycle has this logarithm, to leading
+    /// order: the exponent along xi is 2 c xi^2, over two turns of length `period` each.
+    pub fn amplitude_at(&self, log_multiplier: f64, period: f64) -> f64 {
+        (log_multiplier / (4.0 * period * self.c)).abs().sqrt()
+    }
+
+    /// Distance of the parameter from the threshold at amplitude xi, to leading order.
+    pub fn offset(&self, xi: f64) -> f64 {
+        -self.c * xi * xi / self.slope
+    }
 }
 
 impl CycleProblem {
@@ -82,7 +97,8 @@ impl CycleProblem {
         system.quadratic(&nodes, &h, &mut bvh);
         let integrand: Vec<f64> = (0..len).map(|k| cvvv[k] + 3.0 * bvh[k] - 6.0 * a * av[k]).collect();
         let c = period * system.pair(&raw.psi, &integrand) / (6.0 * pairing);
-        (a.is_finite() && c.is_finite()).then_some(DoublingForm { a, c })
+        let slope = exponent_slope(system, located, &phase)?;
+        (a.is_finite() && c.is_finite()).then_some(DoublingForm { a, c, slope })
     }
 
     fn linearise_at(&mut self, located: &Located) -> Option<f64> {
@@ -90,6 +106,31 @@ impl CycleProblem {
         self.system.linearise(&located.point.unknowns).ok()?;
         Some(located.point.unknowns.period)
     }
+}
+
+/// `dsigma/dp` of the critical exponent along the branch. With `L v + T sigma v` for L v in the test function's M,
+/// G(sigma, z) = 0 defines sigma, and its derivatives are those of a bordered function: `G_sigma = -T psi^T v`, the total
+/// derivative in p from the gradient row and the tangent (Wilkins, Tidor, White & Barton 2009, SIAM J. Sci. Comput.
+/// 31:2706, for exponent sensitivities).
+fn exponent_slope(system: &mut System, located: &Located, phase: &[f64]) -> Option<f64> {
+    let raw = &located.vectors;
+    let mut v = vec![0.0; system.residual().len()];
+    system.values(&raw.nodes, &mut v);
+    let by_exponent = located.point.unknowns.period * system.pair(&raw.psi, &v);
+    let mut row = Row::zero(phase.len());
+    system.variation_gradient(Variation { psi: &raw.psi, nodes: &raw.nodes, period: 0.0 }, &mut row);
+    let mut bordered = Bordered::new(system.shape(), 2);
+    system.period_column(bordered.column_mut(0));
+    system.parameter_column(bordered.column_mut(1));
+    bordered.row_mut(0).copy_from_slice(phase);
+    bordered.corner_mut()[3] = 1.0;
+    bordered.prepare(system.cyclic(), 1.0).ok()?;
+    let (mut nodes, mut scalars) = (vec![0.0; phase.len()], [0.0; 2]);
+    let right = Right { core: &[], closing: &[], border: &[0.0, 1.0] };
+    bordered.solve(system.cyclic(), right, &mut nodes, &mut scalars);
+    let products: f64 = row.nodes.iter().zip(&nodes).map(|(r, x)| r * x).sum();
+    let total = products + row.period * scalars[0] + row.parameter * scalars[1];
+    Some(total / by_exponent)
 }
 
 /// The periodic problem bordered by the flow column and the phase row: regular away from folds.

@@ -301,15 +301,10 @@ impl CycleProblem {
     /// true where it changed.
     fn adapt_metric(&mut self, point: &CyclePoint) -> bool {
         let profile = self.profile(point);
-        for (size, (low, high)) in self.largest.iter_mut().zip(profile.extremes()) {
-            *size = size.max(high - low);
-        }
+        let ranges: Vec<f64> = profile.extremes().into_iter().map(|(low, high)| high - low).collect();
+        self.largest.iter_mut().zip(&ranges).for_each(|(size, range)| *size = size.max(*range));
         // Scales never fall far below the largest size seen: a cycle that shrinks to an equilibrium must get there.
-        let wanted = profile
-            .extremes()
-            .into_iter()
-            .zip(&self.largest)
-            .map(|((low, high), largest)| (high - low).max(SHRINK_TO * largest));
+        let wanted = ranges.iter().zip(&self.largest).map(|(range, largest)| range.max(SHRINK_TO * largest));
         let wanted: Vec<f64> = wanted.zip(&self.metric.scales).map(|(w, now)| if w > 0.0 { w } else { *now }).collect();
         let far = |now: f64, wanted: f64| now > OUT_OF_SCALE * wanted || wanted > OUT_OF_SCALE * now;
         let changed = far(self.metric.period_scale, profile.period)

@@ -6,10 +6,11 @@
 //! not be known (Keller 1977, in Applications of Bifurcation Theory, 359; Kuznetsov, Govaerts, Doedel & Dhooge 2005,
 //! SIAM J. Numer. Anal. 43:1407, for the predictor).
 
-use armilla_collocation::Row;
+use armilla_collocation::{Metric, Row};
 use armilla_follow::{Closing, Problem};
 
 use crate::locate::Located;
+use crate::normal_form::DoublingForm;
 use crate::point::{CyclePoint, CycleTangent};
 use crate::problem::CycleProblem;
 
@@ -42,6 +43,11 @@ impl std::error::Error for SwitchFault {}
 /// First amplitude tried, in the branch's metric (1 is the size of the cycle): well above roundoff in xi^2, and small
 /// against the cycle.
 const AMPLITUDE: f64 = 0.02;
+/// Largest first amplitude, where the normal form would allow more.
+const LARGEST: f64 = 0.1;
+/// Wanted |log mu| of the multiplier that is 1 at the birth: near enough for the normal form to hold, far enough from the
+/// birth for a regular start.
+const WANTED: f64 = 0.1;
 /// Halvings of the amplitude before giving up.
 const HALVINGS: usize = 12;
 /// Largest |log mu| of the multiplier that is 1 at the birth: beyond, the first cycle is already far from it and a
@@ -49,11 +55,11 @@ const HALVINGS: usize = 12;
 const NEAR_BIRTH: f64 = 0.3;
 
 impl CycleProblem {
-    /// Enters the branch born at a located doubling.
+    /// Enters the branch born at a located doubling; its normal form, where known, predicts amplitude and side.
     ///
     /// # Errors
     /// [`SwitchFault`].
-    pub fn double(&self, located: &Located) -> Result<Doubled, SwitchFault> {
+    pub fn double(&self, located: &Located, form: Option<&DoublingForm>) -> Result<Doubled, SwitchFault> {
         let birth_profile = self.profile(&located.point).repeated(2);
         let (value, sizes) = (located.point.unknowns.parameter, Some(&self.metric.scales[..]));
         let mut settings = self.settings;
@@ -63,9 +69,11 @@ impl CycleProblem {
             .map_err(|_| SwitchFault)?;
         let birth = CyclePoint::from_profile(&birth_profile, value);
         let outwards = direction(&problem, &birth, located);
-        let mut amplitude = AMPLITUDE;
+        let forecast = form.and_then(|form| Forecast::new(&problem, located, form));
+        let mut amplitude = forecast.as_ref().map_or(AMPLITUDE, |forecast| forecast.amplitude.min(LARGEST));
         for _ in 0..HALVINGS {
-            if let Some(point) = first_cycle(&mut problem, &birth, &outwards, amplitude) {
+            let offset = forecast.as_ref().map_or(0.0, |forecast| forecast.offset_at(amplitude));
+            if let Some(point) = first_cycle(&mut problem, (&birth, &outwards), amplitude, offset) {
                 return Ok(on_own_mesh(Doubled { problem, birth, point, outwards, amplitude }));
             }
             amplitude *= 0.5;
@@ -121,6 +129,34 @@ impl CycleProblem {
     }
 }
 
+/// What the normal form says of the first cycle, in the metric of the branch.
+struct Forecast {
+    /// Amplitude at which the critical multiplier has moved to [`WANTED`].
+    amplitude: f64,
+    /// Offset of the parameter there.
+    offset: f64,
+}
+
+impl Forecast {
+    fn new(problem: &CycleProblem, located: &Located, form: &DoublingForm) -> Option<Self> {
+        let n = problem.system.n();
+        let tables = problem.system.tables();
+        let (v, mesh) = (&located.vectors.nodes, &located.point.mesh);
+        let period = located.point.unknowns.period;
+        // Lengths of v in the metric, which is the same over one turn and two, and in the norm of the normal form.
+        let length = problem.metric.nodes_inner(tables, mesh, v, v).sqrt();
+        let plain = Metric { scales: vec![1.0; n], ..problem.metric.clone() };
+        let norm = (plain.nodes_inner(tables, mesh, v, v) * n as f64 * period).sqrt();
+        let xi = form.amplitude_at(WANTED, period);
+        let (amplitude, offset) = (xi * length / norm, form.offset(xi));
+        (amplitude.is_finite() && offset.is_finite() && amplitude > 0.0).then_some(Self { amplitude, offset })
+    }
+
+    fn offset_at(&self, amplitude: f64) -> f64 {
+        self.offset * (amplitude / self.amplitude).powi(2)
+    }
+}
+
 /// The critical vector over two turns, of unit length.
 fn direction(problem: &CycleProblem, birth: &CyclePoint, located: &Located) -> CycleTangent {
     let n = problem.system.n();
@@ -146,11 +182,12 @@ fn on_own_mesh(mut doubled: Doubled) -> Doubled {
 
 fn first_cycle(
     problem: &mut CycleProblem,
-    birth: &CyclePoint,
-    outwards: &CycleTangent,
+    (birth, outwards): (&CyclePoint, &CycleTangent),
     amplitude: f64,
+    offset: f64,
 ) -> Option<CyclePoint> {
-    let prediction = problem.advance(birth, outwards, amplitude);
+    let mut prediction = problem.advance(birth, outwards, amplitude);
+    prediction.unknowns.parameter += offset;
     let closing = Closing::Component { from: birth, direction: outwards, amount: amplitude };
     let point = problem.correct(&prediction, closing).ok()?.point;
     // The split must be what was asked, or Newton's method fell back onto the undoubled cycle or off elsewhere.

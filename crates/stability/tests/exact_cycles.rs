@@ -103,6 +103,14 @@ fn doubling_coefficients_are_exact() {
         let form = problem.doubling_form(&located).expect("third derivatives");
         assert!((form.a - e / TAU).abs() < 1e-10, "{form:?} {}", e / TAU);
         assert!((form.c - g / TAU).abs() < 1e-10, "{form:?} {}", g / TAU);
+        // The multiplier is -exp(2 pi l): the exponent is l itself.
+        assert!((form.slope - 1.0).abs() < 1e-9, "{form:?}");
+        let doubled = problem.double(&located, Some(&form)).expect("a doubled branch");
+        let value = doubled.point.unknowns.parameter;
+        // Exact: U^2 = -l/g on the doubled cycle; xi = U sqrt(2 pi) by Int <v,v> = 1. Side and amplitude are predicted.
+        assert!(value * g < 0.0, "born on the wrong side: {value}");
+        let predicted = form.offset(form.amplitude_at(0.1, TAU));
+        assert!((value / predicted - 1.0).abs() < 0.1, "first point at {value}, predicted {predicted}");
     }
 }
 
@@ -132,7 +140,7 @@ fn doubling_is_located_and_switched() {
     assert_eq!(follower.end(), Some(&FollowEnd::Edge(0.3)));
     let located = located.expect("a doubling");
     assert!(located.point.unknowns.parameter.abs() < 1e-12);
-    let mut doubled = problem.double(&located).expect("a doubled branch");
+    let mut doubled = problem.double(&located, None).expect("a doubled branch");
     let at = doubled.problem.describe(&doubled.point, 2, 0.0).expect("multipliers");
     assert!((at.period - 2.0 * period).abs() < 1e-9);
     assert!((at.multipliers[0].log_modulus + 2.0 * at.value * at.period).abs() < 1e-9);

@@ -5,7 +5,7 @@ use std::sync::atomic::AtomicBool;
 
 use armilla_follow::{Orientation, Problem};
 use armilla_record::{BRANCH_FORMAT, Branch, End, EndReason, Event, EventKind, Point, Quantity, StoredProfile};
-use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, Doubled, Located, Measures};
+use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, Doubled, DoublingForm, Located, Measures};
 
 use crate::error::StudyError;
 use crate::progress::{Observer, Progress};
@@ -25,10 +25,18 @@ pub(crate) struct Lineage {
     pub turns: usize,
 }
 
+/// A doubling at which a branch is born.
+pub(crate) struct Switchable {
+    /// Name of the event.
+    pub event: String,
+    pub located: Located,
+    pub form: Option<DoublingForm>,
+}
+
 /// A finished branch with the doublings that can be switched at.
 pub(crate) struct Finished {
     pub branch: Branch,
-    pub doublings: Vec<(String, Located)>,
+    pub doublings: Vec<Switchable>,
     pub problem: CycleProblem,
 }
 
@@ -59,7 +67,7 @@ struct Collector<'r, 'a> {
     lineage: &'r Lineage,
     numbers: HashMap<EventKind, usize>,
     events: Vec<Event>,
-    doublings: Vec<(String, Located)>,
+    doublings: Vec<Switchable>,
     points: usize,
     fault: Option<StudyError>,
 }
@@ -83,7 +91,8 @@ impl WalkSink for Collector<'_, '_> {
     fn event(&mut self, problem: &CycleProblem, found: &Found) {
         let event = event_record(problem, found, self.name(found.kind), self.lineage.turns);
         if let (EventKind::Doubling, Some(located)) = (found.kind, &found.located) {
-            self.doublings.push((event.name.clone(), located.clone()));
+            let (event, located, form) = (event.name.clone(), located.clone(), found.form);
+            self.doublings.push(Switchable { event, located, form });
         }
         if event.kind.is_threshold() {
             self.run.observer.notice(Progress::Event { name: &event.name, value: event.value });

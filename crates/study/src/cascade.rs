@@ -30,7 +30,13 @@ pub(crate) fn cascade(branches: &[Branch]) -> Vec<CascadeRow> {
     let last = line.len() - 1;
     let roundoff = [last, last - 1].iter().filter_map(|k| line[*k].error).sum::<f64>();
     let error = (limit(last) - limit(last - 1)).abs() + 2.0 * roundoff;
-    rows.push(CascadeRow { event: "accumulation".into(), turns: None, value: limit(last), error: Some(error), ratio: None });
+    rows.push(CascadeRow {
+        event: "accumulation".into(),
+        turns: None,
+        value: limit(last),
+        error: Some(error),
+        ratio: None,
+    });
     rows
 }
 

@@ -7,8 +7,8 @@ use std::sync::atomic::{AtomicBool, Ordering};
 use armilla_figure::Figure;
 use armilla_record::{Branch, CascadeRow, EndReason, EventKind, RecordError, Results, Threshold};
 
+use crate::branch::{Entry, Finished, Lineage, Run, Switchable, follow_branch};
 use crate::cascade::cascade;
-use crate::branch::{Entry, Finished, Lineage, Run, follow_branch};
 use crate::error::StudyError;
 use crate::progress::Observer;
 use crate::start::first_cycle;
@@ -83,7 +83,14 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
     let mut points_left = study.file.pursue.points;
     while let Some(waiting) = queue.pop_front() {
         let mut keep = |event: &armilla_record::Event| results.write_event(event).map_err(StudyError::from);
-        let mut run = Run { study, abort: options.abort, observer: &mut *observer, keep: &mut keep, to_first_doubling: options.cascade, points_left };
+        let mut run = Run {
+            study,
+            abort: options.abort,
+            observer: &mut *observer,
+            keep: &mut keep,
+            to_first_doubling: options.cascade,
+            points_left,
+        };
         let lineage = waiting.lineage.clone();
         let mut finished = match follow_branch(&mut run, &lineage, waiting.entry) {
             Ok(finished) => finished,
@@ -154,7 +161,7 @@ fn children(
     if lineage.doublings >= study.file.pursue.doublings {
         return children;
     }
-    for (event, located) in &finished.doublings {
+    for Switchable { event, located, form } in &finished.doublings {
         if children.len() >= room {
             shortfalls.push(format!(
                 "the branch born at {event} was not followed: `pursue` allows {} branches",
@@ -162,7 +169,7 @@ fn children(
             ));
             continue;
         }
-        match finished.problem.double(located) {
+        match finished.problem.double(located, form.as_ref()) {
             Err(fault) => shortfalls.push(format!("at {event} {fault}")),
             Ok(doubled) => children
                 .push(Waiting { lineage: child_lineage(lineage, event), entry: Entry::Birth(Box::new(doubled)) }),

@@ -5,8 +5,8 @@ use std::sync::atomic::{AtomicBool, Ordering};
 use armilla_follow::{FollowEnd, Follower, Landing, Outcome, Settings, Station, Step};
 use armilla_record::{Criticality, End, EndReason, EventKind, Point};
 use armilla_stability::{
-    Fault,
-    CriticalKind, CyclePoint, CycleProblem, CycleTangent, Located, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS,
+    CriticalKind, CyclePoint, CycleProblem, CycleTangent, DoublingForm, Fault, Located, WATCH_DOUBLING, WATCH_FOLD,
+    WATCH_TORUS,
 };
 
 use crate::approach::{Approach, approach};
@@ -26,6 +26,8 @@ pub(crate) struct Found {
     pub note: String,
     /// What a switch needs.
     pub located: Option<Located>,
+    /// Normal form of a doubling.
+    pub form: Option<DoublingForm>,
 }
 
 /// A point with its cycle.
@@ -356,15 +358,17 @@ fn located_event(
     plan: &WalkPlan<'_>,
 ) -> Found {
     let distance = before.distance + located.share * (after.distance - before.distance);
+    let mut form = None;
     let (kind, angle, criticality, note) = match located.kind {
         CriticalKind::Fold => {
             let note = problem.fold_form(&located).map(|b| format!("normal form coefficient b = {b:.6e}"));
             (EventKind::Fold, 0.0, None, note)
         }
         CriticalKind::Doubling => match problem.doubling_form(&located) {
-            Some(form) => {
-                let note = format!("normal form coefficient c = {:.6e}", form.c);
-                (EventKind::Doubling, std::f64::consts::PI, Some(criticality(form.c)), Some(note))
+            Some(found) => {
+                form = Some(found);
+                let note = format!("normal form coefficient c = {:.6e}", found.c);
+                (EventKind::Doubling, std::f64::consts::PI, Some(criticality(found.c)), Some(note))
             }
             None => (EventKind::Doubling, std::f64::consts::PI, None, None),
         },
@@ -379,6 +383,7 @@ fn located_event(
         criticality,
         note: note.unwrap_or_default(),
         located: Some(located),
+        form,
     }
 }
 
@@ -435,6 +440,7 @@ fn unresolved(station: &CycleStation, (value, half_width): (f64, f64), note: Str
         criticality: None,
         note,
         located: None,
+        form: None,
     }
 }
 
@@ -462,6 +468,7 @@ pub(crate) fn at_parameter(problem: &mut CycleProblem, kind: EventKind, point: &
         criticality: None,
         note: String::new(),
         located: None,
+        form: None,
     }
 }
 
