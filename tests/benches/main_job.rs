@@ -17,7 +17,7 @@ const TO: f64 = 4.0;
 fn pursue(problem: &mut CycleProblem, point: CyclePoint, turns: usize) -> (usize, Option<Located>) {
     let (mut points, mut doubling) = (0, None);
     // Both branches together have about a hundred points with strides no longer than this.
-    let settings = Settings { longest: 0.03, ..Settings::new((FROM, TO)) };
+    let settings = Settings { longest: 0.017, ..Settings::new((FROM, TO)) };
     let mut follower = Follower::start(problem, point, 1.0, settings).expect("the walk starts");
     while let Outcome::Step(step) = follower.step() {
         let (problem, before, after) = follower.parts();
@@ -53,8 +53,7 @@ fn bench(criterion: &mut Criterion) {
     group.sample_size(20);
     group.bench_function("numerical part", |bencher| bencher.iter(|| main_job(&case, black_box(&settled))));
     group.bench_function("settling", |bencher| bencher.iter(|| case.settled(black_box(FROM))));
-    let fields =
-        r#"start: Settle(at: {"c": 1.0}), follow: (parameter: "c", from: 1.0, to: 4.0), pursue: (doublings: 1)"#;
+    let fields = r#"start: Settle(at: {"c": 1.0}), follow: (parameter: "c", from: 1.0, to: 4.0), pursue: (doublings: 1)"#;
     group.bench_function("whole, with files and figure", |bencher| bencher.iter(|| job("roessler", black_box(fields))));
     group.finish();
 }

@@ -15,7 +15,7 @@ pub fn job(model: &str, fields: &str) -> Traced {
     let model = crate::case::model_path(model);
     std::fs::write(&path, format!("(model: {:?}, {fields})", model.display().to_string())).expect("a study written");
     let study = Study::read(&path).unwrap_or_else(|fault| panic!("{fault}"));
-    let options = TraceOptions { folder: None, replace: false, abort: &AtomicBool::new(false) };
+    let options = TraceOptions { folder: None, replace: false, cascade: false, abort: &AtomicBool::new(false) };
     trace(&study, &options, &mut Silent).unwrap_or_else(|fault| panic!("{fault}"))
 }
 

@@ -23,6 +23,9 @@ pub struct Cycle {
     /// Ratio of this distance from one period to the next, signed, where it was still shrinking when the
     /// cycle was accepted: an estimate of the multiplier nearest the unit circle.
     pub contraction: Option<f64>,
+    /// Whether it attracts nothing: volume is kept over a turn, and the returns closed from the first. Such cycles
+    /// come in continua as a rule (conservative models), and the one found is that of the start.
+    pub neutral: bool,
     /// Time of the simulation at which the orbit begins.
     pub time: f64,
 }
@@ -183,11 +186,11 @@ fn closed_profile(recorder: Recorder, start: &Return, end: &Return) -> Profile {
     profile
 }
 
-/// The state with the largest relative range, and how often it crosses its own mean upward in one period.
-pub(crate) fn turns(orbit: &Profile) -> (usize, usize) {
+/// The state with the largest relative range (of those that have not `died` out), and how often it crosses its own mean upward in one period.
+pub(crate) fn turns(orbit: &Profile, died: &[f64]) -> (usize, usize) {
     /// Looks per piece: no wave of a polynomial of degree 7 fits between.
     const LOOKS: usize = 4 * ORBIT_DEGREE;
-    let state_index = liveliest(&orbit.extremes());
+    let state_index = liveliest(&orbit.extremes(), died);
     let mean = orbit.means()[state_index];
     let mut evaluator = orbit.evaluator();
     let mut point = vec![0.0; orbit.n_states];

@@ -103,6 +103,8 @@ pub struct Integrator<'a> {
     step: f64,
     /// At most 1, smaller where Newton's iteration was slow: the next step is shortened by it.
     newton_speed: f64,
+    /// Whether the last Jacobian evaluated is that at the state reached.
+    has_fresh_jacobian: bool,
     end: Vec<f64>,
     end_slope: Vec<f64>,
     weights: Vec<f64>,
@@ -145,6 +147,7 @@ impl<'a> Integrator<'a> {
             previous_slope: zeros.clone(),
             step: 0.0,
             newton_speed: 1.0,
+            has_fresh_jacobian: false,
             end: zeros.clone(),
             end_slope: zeros.clone(),
             weights: zeros,
@@ -212,6 +215,11 @@ impl<'a> Integrator<'a> {
     /// Method of the last step.
     pub fn method(&self) -> Method {
         self.method
+    }
+
+    /// Whether the last step has left the Jacobian at the state reached; landing inside the step overwrites it.
+    pub(crate) fn has_fresh_jacobian(&self) -> bool {
+        self.has_fresh_jacobian
     }
 
     /// Counts so far.
@@ -358,6 +366,7 @@ impl<'a> Integrator<'a> {
         let due = self.next_method == Method::Implicit || self.stats.accepted.is_multiple_of(CHECK_EVERY);
         let taken = self.step;
         self.step *= factor;
+        self.has_fresh_jacobian = due;
         if due {
             self.rates.linearise(self.time, &self.state);
             self.stiffness.measure(&self.rates, taken);

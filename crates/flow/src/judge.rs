@@ -59,6 +59,7 @@ pub(crate) fn judge(
     returns: &mut Vec<Return>,
 ) -> Result<(Kind, Option<Exponent>), FlowError> {
     returns.clear();
+    let exact = vec![0.0; scale.len()];
     let mut growth = Growth {
         tangent: Tangent::new(scale, matches!(section, Section::Level { .. })),
         begin: integrator.time(),
@@ -70,7 +71,7 @@ pub(crate) fn judge(
             break;
         }
         let exponent = growth.exponent(integrator.time());
-        let kind = kind(exponent, &Sequence { returns, scale });
+        let kind = kind(exponent, &Sequence { returns, scale, noise: &exact });
         if kind != Kind::Undecided {
             return Ok((kind, Some(exponent)));
         }

@@ -9,6 +9,7 @@ pub(crate) struct Observation {
     pub(crate) high: Vec<f64>,
     integral: Vec<f64>,
     pub(crate) time: f64,
+    steps: usize,
     point: Vec<f64>,
 }
 
@@ -23,6 +24,7 @@ impl Observation {
             high: vec![f64::NEG_INFINITY; n],
             integral: vec![0.0; n],
             time: 0.0,
+            steps: 0,
             point: vec![0.0; n],
         }
     }
@@ -39,6 +41,7 @@ impl Observation {
             }
         }
         self.time += h;
+        self.steps += 1;
     }
 
     pub(crate) fn range(&self, i: usize) -> f64 {
@@ -53,28 +56,30 @@ impl Observation {
         self.integral[i] / self.time
     }
 
-    /// The state with the largest range relative to its largest absolute value.
-    pub(crate) fn liveliest(&self) -> usize {
+    /// Mean length of the steps taken in.
+    pub(crate) fn mean_step(&self) -> f64 {
+        self.time / self.steps.max(1) as f64
+    }
+
+    /// The state with the largest range relative to its largest absolute value, of those above their `least` range.
+    pub(crate) fn liveliest(&self, least: &[f64]) -> usize {
         let ranges: Vec<(f64, f64)> = self.low.iter().copied().zip(self.high.iter().copied()).collect();
-        liveliest(&ranges)
+        liveliest(&ranges, least)
     }
 }
 
-/// Size relative to the largest state below which a state has died out: its motion is that of a disturbance on its way
-/// to zero, and its turns are not those of the cycle.
-const DIED_OUT: f64 = 1e-12;
-
-/// Index of the largest relative range (max - min)/max(|max|, |min|); the first of equals. States that have died out
-/// beside others do not count.
-pub(crate) fn liveliest(ranges: &[(f64, f64)]) -> usize {
-    let size = |&(low, high): &(f64, f64)| low.abs().max(high.abs());
-    let least = DIED_OUT * ranges.iter().map(size).fold(0.0, f64::max);
-    let relative = |range: &(f64, f64)| {
-        let size = size(range);
-        if size > least { (range.1 - range.0) / size } else { 0.0 }
+/// Index of the largest relative range (max - min)/max(|max|, |min|); the first of equals. States whose range is
+/// not above their `least`, which have died out beside others, do not count unless all have.
+pub(crate) fn liveliest(ranges: &[(f64, f64)], least: &[f64]) -> usize {
+    let relative = |i: usize| {
+        let (low, high) = ranges[i];
+        let size = low.abs().max(high.abs());
+        if size > 0.0 { (high - low) / size } else { 0.0 }
     };
-    let better = |best: usize, i: usize| if relative(&ranges[i]) > relative(&ranges[best]) { i } else { best };
-    (1..ranges.len()).fold(0, better)
+    let lives = |i: usize| ranges[i].1 - ranges[i].0 > least[i];
+    let better = |best: usize, i: usize| if relative(i) > relative(best) { i } else { best };
+    let all = 0..ranges.len();
+    all.clone().filter(|i| lives(*i)).reduce(better).or(all.reduce(better)).unwrap_or(0)
 }
 
 /// Sizes with zeros replaced by the largest of them, or by `fallback` where all are zero.

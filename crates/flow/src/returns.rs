@@ -57,22 +57,27 @@ pub(crate) struct Sequence<'a> {
     pub(crate) returns: &'a [Return],
     /// Range of each state; a state that does not move has scale infinity.
     pub(crate) scale: &'a [f64],
+    /// Roundoff of each state: what two returns differ by less than this is no difference.
+    pub(crate) noise: &'a [f64],
 }
 
 impl Sequence<'_> {
+    /// Way from one return to another in one state, relative to its scale, less the noise.
+    fn way(&self, i: usize, k: usize, state: usize) -> f64 {
+        let way = self.returns[i + k].state[state] - self.returns[i].state[state];
+        (way - way.clamp(-self.noise[state], self.noise[state])) / self.scale[state]
+    }
+
     /// Distance between two returns, worst state.
     fn distance(&self, i: usize, k: usize) -> f64 {
-        let (a, b) = (&self.returns[i].state, &self.returns[i + k].state);
-        a.iter().zip(b).zip(self.scale).map(|((a, b), s)| ((b - a) / s).abs()).fold(0.0, f64::max)
+        (0..self.scale.len()).map(|state| self.way(i, k, state).abs()).fold(0.0, f64::max)
     }
 
     /// Ratio of the step from `i + k` to the step from `i`, both over `k` returns, and their cosine.
     fn ratio(&self, i: usize, k: usize) -> (f64, f64) {
-        let at = |index: usize| &self.returns[index].state;
         let (mut inner, mut first, mut second) = (0.0, 0.0, 0.0);
-        for (l, s) in self.scale.iter().enumerate() {
-            let a = (at(i + k)[l] - at(i)[l]) / s;
-            let b = (at(i + 2 * k)[l] - at(i + k)[l]) / s;
+        for state in 0..self.scale.len() {
+            let (a, b) = (self.way(i, k, state), self.way(i + k, k, state));
             inner += a * b;
             first += a * a;
             second += b * b;
@@ -112,7 +117,8 @@ impl Sequence<'_> {
         let rho = self.ratio(last - k, k).0;
         let is_noise = end <= NOISE * tolerance;
         let left = if is_noise { end } else { end * rho.abs() / (1.0 - rho) };
-        if !is_noise && (end > begin || rho.abs() >= 1.0 || left > tolerance) {
+        // What opens after a step of none has no ratio.
+        if !is_noise && (end > begin || rho.is_nan() || rho.abs() >= 1.0 || left > tolerance) {
             return None;
         }
         let apart = (APART * left.max(end)).max(tolerance.sqrt());
@@ -182,7 +188,7 @@ mod tests {
     }
 
     fn closing(returns: &[Return]) -> Closing {
-        Sequence { returns, scale: &[1.0] }.closing(1e-9)
+        Sequence { returns, scale: &[1.0], noise: &[0.0] }.closing(1e-9)
     }
 
     /// Known cycles of the logistic map x -> r x (1 - x): one turn at 2.8, two at 3.2, four at 3.5, three at
@@ -214,6 +220,6 @@ mod tests {
         let returns: Vec<Return> = (0..3000)
             .map(|i| Return { time: i as f64, state: vec![(i as f64 * 2.399).cos(), (i as f64 * 2.399).sin()] })
             .collect();
-        assert_eq!(Sequence { returns: &returns, scale: &[2.0, 2.0] }.closing(1e-9), Closing::Open);
+        assert_eq!(Sequence { returns: &returns, scale: &[2.0, 2.0], noise: &[0.0; 2] }.closing(1e-9), Closing::Open);
     }
 }

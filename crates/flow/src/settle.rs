@@ -12,8 +12,10 @@ use armilla_model::VectorField;
 use crate::cycle::{Cycle, record, turns};
 use crate::equilibrium::{Equilibrium, newton};
 use crate::error::FlowError;
+use crate::floors::{Floor, Floors};
 use crate::integrator::{Integrator, Limits, Tolerance, check_length};
 use crate::judge::{Kind, judge};
+use crate::neutral::keeps_volume;
 use crate::observe::{Observation, filled};
 use crate::options::SettleOptions;
 use crate::rest::{AT_REST, Outlook, RestWatch};
@@ -21,14 +23,10 @@ use crate::returns::{Closing, Sequence};
 use crate::section::{Return, Section};
 use crate::verdict::{Evidence, Limit, Push, Settled, Verdict};
 
-/// Least absolute error allowed in a step, in any unit: far below it squares of errors underflow.
-const LEAST_TOLERANCE: f64 = 1e-150;
 /// Part of the tolerance of settling that a step may err by: errors of a whole turn then stay below it.
 const STEP_PART: f64 = 0.01;
 /// Least error allowed in a step relative to the state itself, some hundred units in the last place.
 const ROUNDOFF: f64 = 1e-13;
-/// Roundoff of a rate in units in the last place of its largest terms.
-const NOISE_UNITS: f64 = 10.0;
 /// A state whose range is below this part of its size does not move: what is seen of it is roundoff.
 const MOVES: f64 = 1e-10;
 /// A state that grows by this factor beyond all states at the start is taken for divergent: far more than
@@ -104,6 +102,7 @@ struct Settling<'a, 'b> {
     seen: Observation,
     /// Largest range of each state over any window.
     largest: Vec<f64>,
+    floors: Floors,
     window: f64,
     rest_watch: RestWatch,
     leaps: usize,
@@ -122,6 +121,7 @@ impl<'a, 'b> Settling<'a, 'b> {
             all_returns: 0,
             seen: Observation::new(n),
             largest: vec![0.0; n],
+            floors: Floors::new(n),
             window: 0.0,
             rest_watch: RestWatch::default(),
             leaps: 0,
@@ -181,14 +181,18 @@ impl<'a, 'b> Settling<'a, 'b> {
         let transient = self.options.transient.unwrap_or(0.0);
         let start = self.integrator.time();
         let mut steps = 0;
+        let mut whole = Observation::new(self.integrator.state().len());
         // The second half alone is kept in mind: the first may hold the way in.
         while steps < FIRST_STEPS || self.integrator.time() - start < transient {
             self.integrator.advance()?;
             steps += 1;
+            whole.add(&self.integrator);
+            self.floors.sample(&self.integrator);
             if self.integrator.time() - start > 0.5 * transient {
                 self.seen.add(&self.integrator);
             }
         }
+        self.floors.widen(&whole);
         self.window = self.seen.time;
         Ok(())
     }
@@ -197,10 +201,12 @@ impl<'a, 'b> Settling<'a, 'b> {
     fn watch(&mut self) -> Result<(), FlowError> {
         let n = self.integrator.state().len();
         self.seen = Observation::new(n);
+        self.floors.begin_window();
         let before = self.all_returns;
         while self.seen.time < self.window && self.all_returns - before < MANY {
             self.integrator.advance()?;
             self.seen.add(&self.integrator);
+            self.floors.sample(&self.integrator);
             if let Some(section) = self.section {
                 let count = self.returns.len();
                 section.returns(&mut self.integrator, &mut self.returns);
@@ -210,6 +216,7 @@ impl<'a, 'b> Settling<'a, 'b> {
         for (i, largest) in self.largest.iter_mut().enumerate() {
             *largest = largest.max(self.seen.range(i));
         }
+        self.floors.widen(&self.seen);
         let surplus = self.returns.len().saturating_sub(KEPT);
         self.returns.drain(..surplus);
         if self.all_returns - before < FEW {
@@ -228,17 +235,15 @@ impl<'a, 'b> Settling<'a, 'b> {
             if size > 0.0 { (part * (ranges[i] / size).min(1.0)).max(ROUNDOFF) } else { part }
         };
         let relative = (0..n).map(relative).collect();
-        let noise = self.noise();
-        // A state that dies out for good has no range any more; its tolerance stays positive.
-        let absolute =
-            ranges.iter().zip(&noise).map(|(range, noise)| (part * range).max(*noise).max(LEAST_TOLERANCE)).collect();
+        let least = self.floors.step(&self.seen, part);
+        let absolute = ranges.iter().zip(&least).map(|(range, least)| (part * range).max(*least)).collect();
         self.integrator.set_tolerance(Tolerance { absolute, relative })?;
         if matches!(self.section, Some(Section::Period { .. })) {
             return Ok(());
         }
         let state_index = match self.section {
-            Some(Section::Level { state_index, .. }) if !self.is_livelier(state_index) => state_index,
-            _ => self.seen.liveliest(),
+            Some(Section::Level { state_index, .. }) if self.is_lively(state_index) => state_index,
+            _ => self.seen.liveliest(&self.floor().died),
         };
         let mean = self.seen.mean(state_index);
         let kept = matches!(self.section, Some(Section::Level { state_index: old, level })
@@ -250,25 +255,26 @@ impl<'a, 'b> Settling<'a, 'b> {
         Ok(())
     }
 
-    /// Roundoff of the rates over one step: errors below it cannot be asked for, even of a state that rests near
-    /// zero between large terms that cancel.
-    fn noise(&mut self) -> Vec<f64> {
-        let (time, state) = (self.integrator.time(), self.integrator.state().to_vec());
-        let step = self.integrator.time() - self.integrator.previous_time();
-        let mut noise = vec![0.0; state.len()];
-        self.integrator.rates.linearise(time, &state);
-        for (row, column, value) in self.integrator.rates.entries() {
-            noise[row] += NOISE_UNITS * f64::EPSILON * step * (value * state[column]).abs();
-        }
-        // A derivative that is not finite here says nothing of the noise.
-        noise.iter_mut().filter(|noise| !noise.is_finite()).for_each(|noise| *noise = 0.0);
-        noise
+    /// The floors of what was seen, with the returns as they are.
+    fn floor(&self) -> Floor {
+        let return_time = self.return_time().unwrap_or(0.0);
+        self.floors.floor(&self.seen, return_time, self.options.tolerance)
     }
 
-    /// Whether some state is clearly livelier than this one.
-    fn is_livelier(&self, state_index: usize) -> bool {
+    /// Mean time from one return to the next.
+    fn return_time(&self) -> Option<f64> {
+        match self.returns.as_slice() {
+            [first, .., last] => Some((last.time - first.time) / (self.returns.len() - 1) as f64),
+            _ => None,
+        }
+    }
+
+    /// Whether this state lives, and none is clearly livelier.
+    fn is_lively(&self, state_index: usize) -> bool {
+        let died = self.floor().died;
         let relative = |i: usize| self.seen.range(i) / self.seen.magnitude(i).max(f64::MIN_POSITIVE);
-        relative(self.seen.liveliest()) > LIVELIER * relative(state_index)
+        let lives = self.seen.range(state_index) > died[state_index];
+        lives && relative(self.seen.liveliest(&died)) <= LIVELIER * relative(state_index)
     }
 
     fn limit(&self) -> Option<Limit> {
@@ -278,30 +284,23 @@ impl<'a, 'b> Settling<'a, 'b> {
         (self.all_returns >= self.options.returns).then_some(Limit::Returns)
     }
 
-    /// Scale of each state for closings: its range now, or the least that can close; infinite where it does not move.
-    fn scale(&mut self) -> Vec<f64> {
-        let least = self.least_ranges();
+    /// Scale of each state for closings: its range now, or its floor; infinite where it does not move.
+    fn scale(&self, floor: &Floor) -> Vec<f64> {
         let one = |i: usize| {
             let range = self.seen.range(i);
-            if range > MOVES * self.seen.magnitude(i) { range.max(least[i]) } else { f64::INFINITY }
+            if range > MOVES * self.seen.magnitude(i) { range.max(floor.range[i]) } else { f64::INFINITY }
         };
         (0..self.largest.len()).map(one).collect()
     }
 
-    /// Range of each state below which the roundoff of its rate is seen at the errors allowed: a state that dies out
-    /// beside others that move ends there and never closes relative to its own range.
-    fn least_ranges(&mut self) -> Vec<f64> {
-        let part = STEP_PART * self.options.tolerance;
-        self.noise().into_iter().map(|noise| noise / part).collect()
-    }
-
     fn cycle(&mut self) -> Result<Option<Cycle>, FlowError> {
         let Some(section) = self.section else { return Ok(None) };
-        let scale = self.scale();
+        let floor = self.floor();
+        let scale = self.scale(&floor);
         if matches!(section, Section::Level { state_index, .. } if scale[state_index].is_infinite()) {
             return Ok(None);
         }
-        let sequence = Sequence { returns: &self.returns, scale: &scale };
+        let sequence = Sequence { returns: &self.returns, scale: &scale, noise: &floor.noise };
         match sequence.closing(self.options.tolerance) {
             Closing::Closed { returns, contraction } => {
                 let start = self.returns.last().expect("closed returns are not empty").clone();
@@ -345,11 +344,11 @@ impl<'a, 'b> Settling<'a, 'b> {
             return Ok(None);
         };
         let ranges: Vec<f64> = orbit.extremes().iter().map(|(low, high)| high - low).collect();
-        let least = self.least_ranges();
+        let floor = self.floor();
         let miss = |i: usize| {
             let gap = (end.state[i] - start.state[i]).abs();
-            let floor = ROUNDOFF * start.state[i].abs();
-            if gap <= floor { 0.0 } else { gap / ranges[i].max(floor).max(least[i]) }
+            let roundoff = (ROUNDOFF * start.state[i].abs()).max(floor.noise[i]);
+            if gap <= roundoff { 0.0 } else { gap / ranges[i].max(roundoff).max(floor.range[i]) }
         };
         let distance = (0..ranges.len()).map(miss).fold(0.0, f64::max);
         // A distance that is no number is a miss too.
@@ -357,9 +356,10 @@ impl<'a, 'b> Settling<'a, 'b> {
             self.returns.clear();
             return Ok(None);
         }
-        let (state_index, counted) = turns(&orbit);
+        let (state_index, counted) = turns(&orbit, &floor.died);
         let turns = if matches!(section, Section::Period { .. }) { returns } else { counted };
-        Ok(Some(Cycle { orbit, turns, state_index, distance, contraction, time: start.time }))
+        let neutral = contraction.is_none() && keeps_volume(&mut self.integrator.rates, &orbit, start.time);
+        Ok(Some(Cycle { orbit, turns, state_index, distance, contraction, neutral, time: start.time }))
     }
 
     /// The state of rest that the motion goes to, if it does; pushes it off an unstable one.
@@ -406,8 +406,9 @@ impl<'a, 'b> Settling<'a, 'b> {
             return Ok(Verdict::NotSettled(self.evidence(limit)));
         };
         let n = self.largest.len();
-        let ranges = filled((0..n).map(|i| self.seen.range(i)).collect(), 1.0);
-        let (kind, exponent) = judge(&mut self.integrator, section, &ranges, &mut self.returns)?;
+        let floor = self.floor();
+        let scale = filled((0..n).map(|i| self.seen.range(i).max(floor.range[i])).collect(), 1.0);
+        let (kind, exponent) = judge(&mut self.integrator, section, &scale, &mut self.returns)?;
         self.all_returns += self.returns.len();
         // What was on its way to a cycle may have arrived meanwhile.
         if kind == Kind::Undecided
@@ -424,12 +425,10 @@ impl<'a, 'b> Settling<'a, 'b> {
         })
     }
 
-    fn evidence(&mut self, limit: Limit) -> Evidence {
-        let scale = self.scale();
-        let return_time = match self.returns.as_slice() {
-            [first, .., last] => Some((last.time - first.time) / (self.returns.len() - 1) as f64),
-            _ => None,
-        };
+    fn evidence(&self, limit: Limit) -> Evidence {
+        let floor = self.floor();
+        let scale = self.scale(&floor);
+        let return_time = self.return_time();
         Evidence {
             limit,
             time: self.integrator.time(),
@@ -438,7 +437,7 @@ impl<'a, 'b> Settling<'a, 'b> {
             section: self.section,
             returns: self.all_returns,
             return_time,
-            nearest: Sequence { returns: &self.returns, scale: &scale }.nearest(),
+            nearest: Sequence { returns: &self.returns, scale: &scale, noise: &floor.noise }.nearest(),
             exponent: None,
         }
     }

@@ -9,6 +9,7 @@ mod branch;
 mod cascade;
 mod error;
 mod file;
+mod near_miss;
 mod progress;
 mod settings;
 mod start;

@@ -10,6 +10,7 @@ use armilla_stability::{
 };
 
 use crate::approach::{Approach, approach};
+use crate::near_miss::{Sample, near_miss};
 use crate::study::Study;
 
 pub(crate) type CycleStation = Station<CyclePoint, CycleTangent>;
@@ -86,6 +87,7 @@ pub(crate) fn walk(
     let mut retries = 0;
     let mut motions = vec![motion(&mut follower)];
     let mut periods = vec![period(&follower)];
+    let mut samples = vec![samples_at(&follower)];
     loop {
         if plan.abort.load(Ordering::Relaxed) {
             let value = follower.current().point.unknowns.parameter;
@@ -107,7 +109,10 @@ pub(crate) fn walk(
                 return walk;
             }
         }
-        if !is_explained(&step) && retries < RETRIES && follower.retract() {
+        samples.truncate(walk.points.len() + 1);
+        samples.push(samples_at(&follower));
+        let doubtful = !is_explained(&step) || touches_zero(&samples);
+        if doubtful && retries < RETRIES && follower.retract() {
             motions.pop();
             retries += 1;
             continue;
@@ -265,6 +270,19 @@ fn extrapolate_to_rest(motions: &[(f64, f64)]) -> f64 {
     }
     // Two equal amplitudes leave no weights; the last point then stands for the end.
     if value.is_finite() { value } else { last[last.len() - 1].1 }
+}
+
+/// The values that folds and doublings are watched by, at the present station.
+fn samples_at(follower: &Follower<'_, CycleProblem>) -> [Sample; 2] {
+    let station = follower.current();
+    [WATCH_FOLD, WATCH_DOUBLING]
+        .map(|index| Sample { distance: station.distance, value: station.watch.values[index].value })
+}
+
+/// Whether one of the watched values may have touched zero and turned back within the last step.
+fn touches_zero(samples: &[[Sample; 2]]) -> bool {
+    let [.., a, b, c] = samples else { return false };
+    (0..2).any(|watched| near_miss([a[watched], b[watched], c[watched]]))
 }
 
 /// Takes out turnings of the parameter that are none: where it stands still to roundoff over a whole stride (in the

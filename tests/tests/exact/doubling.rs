@@ -2,7 +2,7 @@
 
 use std::f64::consts::TAU;
 
-use armilla_record::{Branch, EndReason};
+use armilla_record::{Branch, Criticality, EndReason};
 use armilla_study::Traced;
 use armilla_tests::{absolute, branch, event, job, multiplier, relative};
 
@@ -28,6 +28,7 @@ fn twisted_band_doubles_supercritically() {
     absolute("doubling", doubling.value, 0.0, 1e-12);
     assert!(doubling.value.abs() <= doubling.error.expect("an error"), "the error must cover the truth: {doubling:?}");
     relative("period at the doubling", doubling.period, period, 1e-10);
+    assert_eq!(doubling.criticality, Some(Criticality::Supercritical));
     let doubled = branch(&traced, "a.doubling1");
     assert_eq!(doubled.born_at.as_deref(), Some("a/doubling1"));
     for point in away_from_birth(doubled) {
@@ -68,7 +69,9 @@ fn check_x4(traced: &Traced, g: f64) {
         multiplier("second multiplier", point.multipliers[1], (-TAU, true), 1e-10);
         assert_eq!(point.unstable_count, usize::from(point.value > 0.0), "at {}", point.value);
     }
-    absolute("doubling", event(traced, "a/doubling1").value, 0.0, 1e-12);
+    let doubling = event(traced, "a/doubling1");
+    absolute("doubling", doubling.value, 0.0, 1e-12);
+    assert_eq!(doubling.criticality, Some(if g < 0.0 { Criticality::Supercritical } else { Criticality::Subcritical }));
     for point in away_from_birth(branch(traced, "a.doubling1")) {
         let l = point.value;
         assert!(l * g < 0.0, "the doubled cycle exists where -l/g > 0, found at l = {l}");

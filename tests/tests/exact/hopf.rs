@@ -12,10 +12,7 @@ const K: f64 = 0.5;
 
 #[test]
 fn every_cycle_of_the_branch_is_the_exact_circle() {
-    let traced = job(
-        "x1",
-        r#"set: {"k": 0.5}, start: Settle(at: {"mu": 0.6}), follow: (parameter: "mu", from: 0.05, to: 1.5), targets: [0.25]"#,
-    );
+    let traced = job("x1", r#"set: {"k": 0.5}, start: Settle(at: {"mu": 0.6}), follow: (parameter: "mu", from: 0.05, to: 1.5), targets: [0.25]"#);
     assert!(traced.shortfalls.is_empty(), "{:?}", traced.shortfalls);
     let a = branch(&traced, "a");
     assert!(a.points.len() > 10);
@@ -34,12 +31,7 @@ fn every_cycle_of_the_branch_is_the_exact_circle() {
     // Exact, by hand, to 24 digits: mu = 1/4, k = 1/2.
     relative("period at the target", event(&traced, "a/target1").period, 5.585_053_606_381_854_646_155_81, 1e-10);
     let point = a.points.iter().find(|point| point.value == 0.25).expect("the target is a point");
-    relative(
-        "multiplier at the target",
-        point.multipliers[0].log_modulus.exp(),
-        0.061_266_210_509_709_911_346_792,
-        1e-10,
-    );
+    relative("multiplier at the target", point.multipliers[0].log_modulus.exp(), 0.061_266_210_509_709_911_346_792, 1e-10);
 }
 
 #[test]

@@ -51,19 +51,10 @@ fn period_amplitude_and_multiplier() {
         relative(&format!("period at mu = {}", known.mu), point.period, known.period, 1e-10);
         relative(&format!("amplitude at mu = {}", known.mu), point.maxima[0], known.amplitude, 1e-10);
         relative("amplitude by symmetry", -point.minima[0], known.amplitude, 1e-10);
-        relative(
-            &format!("log multiplier at mu = {}", known.mu),
-            point.multipliers[0].log_modulus,
-            known.log_multiplier,
-            1e-10,
-        );
+        relative(&format!("log multiplier at mu = {}", known.mu), point.multipliers[0].log_modulus, known.log_multiplier, 1e-10);
         let event = traced.branches.iter().flat_map(|b| &b.events).find(|e| e.value == known.mu).expect("an event");
         let error = (event.period - known.period).abs();
-        assert!(
-            error <= event.period_error.expect("an error"),
-            "{}: error {error:e} is not covered: {event:?}",
-            known.event
-        );
+        assert!(error <= event.period_error.expect("an error"), "{}: error {error:e} is not covered: {event:?}", known.event);
     }
     assert_eq!(event(&traced, "a/start1").value, 1.0);
 }
