@@ -53,7 +53,8 @@ fn bench(criterion: &mut Criterion) {
     group.sample_size(20);
     group.bench_function("numerical part", |bencher| bencher.iter(|| main_job(&case, black_box(&settled))));
     group.bench_function("settling", |bencher| bencher.iter(|| case.settled(black_box(FROM))));
-    let fields = r#"start: Settle(at: {"c": 1.0}), follow: (parameter: "c", from: 1.0, to: 4.0), pursue: (doublings: 1)"#;
+    let fields =
+        r#"start: Settle(at: {"c": 1.0}), follow: (parameter: "c", from: 1.0, to: 4.0), pursue: (doublings: 1)"#;
     group.bench_function("whole, with files and figure", |bencher| bencher.iter(|| job("roessler", black_box(fields))));
     group.finish();
 }

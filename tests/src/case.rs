@@ -88,7 +88,8 @@ impl Case {
     /// A circle in the first two states, the others at rest: a guess.
     pub fn circle(&self, radius: f64, period: f64) -> Profile {
         let (n, intervals) = (self.model.states().len(), 40);
-        let mut profile = Profile { n_states: n, degree: 6, period, mesh: crate::uniform_mesh(intervals), values: Vec::new() };
+        let mut profile =
+            Profile { n_states: n, degree: 6, period, mesh: crate::uniform_mesh(intervals), values: Vec::new() };
         for time in profile.node_times() {
             let (sine, cosine) = (TAU * time).sin_cos();
             let mut state = vec![0.0; n];

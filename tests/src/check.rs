@@ -36,7 +36,12 @@ pub fn multiplier(what: &str, found: Multiplier, (log_modulus, negative): (f64, 
 
 #[track_caller]
 fn report(what: &str, (found, wanted): (f64, f64), difference: f64, tolerance: f64, kind: &str) {
-    eprintln!("{what}: found {found:.17e}, wanted {wanted:.17e}, {kind} difference {difference:.1e} (allowed {tolerance:.0e})");
+    eprintln!(
+        "{what}: found {found:.17e}, wanted {wanted:.17e}, {kind} difference {difference:.1e} (allowed {tolerance:.0e})"
+    );
     // Written so that NaN fails.
-    assert!(difference <= tolerance, "{what}: found {found:.17e}, wanted {wanted:.17e}, {kind} difference {difference:.1e}");
+    assert!(
+        difference <= tolerance,
+        "{what}: found {found:.17e}, wanted {wanted:.17e}, {kind} difference {difference:.1e}"
+    );
 }

@@ -1,6 +1,8 @@
 //! Cycles and thresholds on fixed uniform meshes, by the collocation crate directly.
 
-use armilla_collocation::{Closing, Iterate, LinearClosing, Metric, NewtonSettings, Report, Row, System, SystemSpec, correct};
+use armilla_collocation::{
+    Closing, Iterate, LinearClosing, Metric, NewtonSettings, Report, Row, System, SystemSpec, correct,
+};
 use armilla_record::{Multiplier, Profile};
 use armilla_stability::{CriticalKind, SpectrumSolver, TestFunction};
 
@@ -45,7 +47,8 @@ impl Uniform {
     pub fn new(case: &Case, profile: &Profile, value: f64, (degree, intervals): (usize, usize)) -> Self {
         let guess = resample(profile, degree, intervals);
         let spec = case.spec();
-        let scales = profile.extremes().into_iter().map(|(low, high)| if high > low { high - low } else { 1.0 }).collect();
+        let scales =
+            profile.extremes().into_iter().map(|(low, high)| if high > low { high - low } else { 1.0 }).collect();
         let metric = Metric { scales, period_scale: profile.period, parameter_scale: spec.parameter_scale };
         let parameters = case.parameters(value);
         let spec = SystemSpec { field: spec.field, parameters: parameters.clone(), free: spec.free, metric };

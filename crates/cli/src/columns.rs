@@ -1,10 +1,13 @@
 //! Rows of cells as lines of text with straight columns.
 
+/// Widest column that is padded; a longer cell runs over.
+const WIDEST: usize = 200;
+
 /// Two spaces between columns, none at the end of a line; every line ends with a line feed.
 pub fn aligned<const N: usize>(rows: &[[String; N]]) -> String {
     let mut widths = [0; N];
     for row in rows {
-        row.iter().zip(&mut widths).for_each(|(cell, width)| *width = (*width).max(cell.chars().count()));
+        row.iter().zip(&mut widths).for_each(|(cell, width)| *width = (*width).max(cell.chars().count().min(WIDEST)));
     }
     let mut text = String::new();
     for row in rows {

@@ -120,6 +120,7 @@ pub struct Workspace {
     step: Option<Row>,
     row: Option<Row>,
     phase: Vec<f64>,
+    gap: Vec<f64>,
 }
 
 /// Corrects `at` in place. `reference` are the node values of the phase condition, on the system's mesh.
@@ -303,6 +304,7 @@ impl Workspace {
         self.step = Some(Row::zero(len));
         self.row = Some(Row::zero(len));
         self.phase = vec![0.0; len];
+        self.gap = vec![0.0; shape.n];
     }
 
     /// Linearises at the iterate and leaves the Newton correction in `self.step`; returns the closing's residual.
@@ -328,25 +330,14 @@ impl Workspace {
         let len = at.nodes.len();
         let step = self.step.as_mut().expect("fitted before");
         // The iterate closes exactly unless the caller's guess does not; then the step repairs it.
-        let mut gap = [0.0; SMALL_N];
-        let mut large_gap = Vec::new();
-        let gap: &mut [f64] = if n <= SMALL_N {
-            &mut gap[..n]
-        } else {
-            large_gap.resize(n, 0.0);
-            &mut large_gap
-        };
-        for (a, value) in gap.iter_mut().enumerate() {
+        for (a, value) in self.gap.iter_mut().enumerate() {
             *value = at.nodes[a] - at.nodes[len - n + a];
         }
         let phase: f64 = self.phase.iter().zip(at.nodes.iter().zip(reference)).map(|(p, (u, r))| p * (r - u)).sum();
         let mut scalars = [0.0; 2];
-        let right = Right { core: &self.core, closing: gap, border: &[phase, -residual] };
+        let right = Right { core: &self.core, closing: &self.gap, border: &[phase, -residual] };
         bordered.solve(system.cyclic(), right, &mut step.nodes, &mut scalars);
         (step.period, step.parameter) = (scalars[0], scalars[1]);
         Ok(residual)
     }
 }
-
-/// States up to which the closing gap lives on the stack.
-const SMALL_N: usize = 16;

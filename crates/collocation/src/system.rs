@@ -494,6 +494,11 @@ impl System {
         by_point(self.n(), &self.rates, out);
     }
 
+    /// Derivatives of the rates in the free parameter at all Gauss points, as [`System::quadratic`].
+    pub fn parameter_rates(&self, out: &mut [f64]) {
+        by_point(self.n(), &self.free_column, out);
+    }
+
     /// `Sum_i h_i Sum_k x_ik . y_ik`: with x a left vector of the rows (adjoint values times Gauss weights) it is the
     /// integral of the adjoint with y over scaled time.
     pub fn pair(&self, x: &[f64], y: &[f64]) -> f64 {

@@ -3,7 +3,7 @@
 //! `v' = T A(t) v` is linear, so its maps need no Newton and no mesh of the profile: every mesh interval is cut
 //! until `h T |A|` is at most m/2, where Gauss collocation of degree m is as accurate as the profile. Where that
 //! would take more pieces than allowed, the interval is merely strongly damped and Radau IIA collocation,
-//! L-stable, keeps signs and counts right (Hairer & Wanner 1996, Solving ODEs II, sec. IV.5, IV.3). Gauss steps
+//! L-stable, keeps signs and counts right; where it is strongly repelling, the same scheme run backwards in time does (Hairer & Wanner 1996, Solving ODEs II, sec. IV.5, IV.3). Gauss steps
 //! would not: for stiff decay they tend to modulus 1 with sign (-1)^m.
 
 use armilla_linalg::{Lu, Singular};
@@ -64,10 +64,12 @@ pub struct Variational {
     n: usize,
     accurate: Scheme,
     damping: Scheme,
+    repelling: Scheme,
     states: Vec<f64>,
     rates: Vec<f64>,
     jacobian: Vec<f64>,
     stages: Lu,
+    right: Vec<f64>,
     places: Vec<(usize, f64)>,
 }
 
@@ -77,7 +79,18 @@ struct Piece {
     interval: usize,
     from: f64,
     length: f64,
-    damping: bool,
+    stiffness: Stiffness,
+}
+
+/// What a piece is like.
+#[derive(Clone, Copy, PartialEq, Eq)]
+enum Stiffness {
+    /// Cut finely enough for the accurate scheme.
+    None,
+    /// Strongly damped on balance.
+    Damped,
+    /// Strongly repelling on balance.
+    Repelling,
 }
 
 impl Variational {
@@ -90,10 +103,12 @@ impl Variational {
             n,
             accurate: Scheme::new(gauss(degree).0),
             damping: Scheme::new(radau(degree)),
+            repelling: Scheme::new(radau(degree).iter().rev().map(|c| 1.0 - c).collect()),
             states: Vec::new(),
             rates: Vec::new(),
             jacobian: Vec::new(),
             stages: Lu::new(degree * n),
+            right: Vec::new(),
             places: Vec::new(),
         }
     }
@@ -117,12 +132,16 @@ impl Variational {
             maps: Vec::with_capacity(pieces.len() * n * n),
             flow: vec![0.0; pieces.len() * n],
             divergence: 0.0,
-            damped: pieces.iter().any(|piece| piece.damping),
+            damped: pieces.iter().any(|piece| piece.stiffness != Stiffness::None),
         };
         // Per piece: its start (for the flow direction), then its stages.
         self.places.clear();
         for piece in &pieces {
-            let scheme = if piece.damping { &self.damping } else { &self.accurate };
+            let scheme = match piece.stiffness {
+                Stiffness::None => &self.accurate,
+                Stiffness::Damped => &self.damping,
+                Stiffness::Repelling => &self.repelling,
+            };
             self.places.push((piece.interval, piece.from));
             self.places.extend(scheme.points.iter().map(|c| (piece.interval, piece.from + piece.length * c)));
         }
@@ -172,23 +191,30 @@ impl Variational {
         let mut pieces = Vec::with_capacity(profile.intervals());
         let mut row_sums = vec![0.0; self.n];
         for interval in 0..profile.intervals() {
-            let mut norm = 0.0f64;
+            let (mut norm, mut trace) = (0.0f64, 0.0);
             for point in interval * (m + 1)..(interval + 1) * (m + 1) {
                 row_sums.fill(0.0);
                 for (entry, &(a, b)) in self.entries.iter().enumerate() {
+                    if a == b {
+                        trace += self.jacobian[entry * points + point];
+                    }
                     row_sums[a] += (self.jacobian[entry * points + point] * scales[b] / scales[a]).abs();
                 }
                 norm = row_sums.iter().fold(norm, |norm, sum| norm.max(*sum));
             }
             let length = (profile.mesh[interval + 1] - profile.mesh[interval]) * profile.period;
             let wanted = (norm * length * fineness / (0.5 * m as f64)).ceil();
-            let damping = !(wanted <= MOST_PIECES as f64);
-            let count = if damping { MOST_PIECES } else { (wanted as usize).max(1) };
+            let stiffness = match () {
+                () if wanted <= MOST_PIECES as f64 => Stiffness::None,
+                () if trace > 0.0 => Stiffness::Repelling,
+                () => Stiffness::Damped,
+            };
+            let count = if stiffness == Stiffness::None { (wanted as usize).max(1) } else { MOST_PIECES };
             pieces.extend((0..count).map(|k| Piece {
                 interval,
                 from: k as f64 / count as f64,
                 length: 1.0 / count as f64,
-                damping,
+                stiffness,
             }));
         }
         pieces
@@ -203,7 +229,11 @@ impl Variational {
         out: &mut VariationalMaps,
     ) -> Result<(), Singular> {
         let n = self.n;
-        let scheme = if piece.damping { &self.damping } else { &self.accurate };
+        let scheme = match piece.stiffness {
+            Stiffness::None => &self.accurate,
+            Stiffness::Damped => &self.damping,
+            Stiffness::Repelling => &self.repelling,
+        };
         let m = scheme.points.len();
         let size = m * n;
         let matrix = self.stages.matrix_mut();
@@ -226,7 +256,8 @@ impl Variational {
         }
         let start = out.maps.len();
         out.maps.resize(start + n * n, 0.0);
-        let mut stages = vec![0.0; size];
+        let stages = &mut self.right;
+        stages.resize(size, 0.0);
         for column in 0..n {
             stages.fill(0.0);
             for (entry, &(a, b)) in self.entries.iter().enumerate() {
@@ -236,7 +267,7 @@ impl Variational {
                     }
                 }
             }
-            self.stages.solve(&mut stages);
+            self.stages.solve(stages);
             for a in 0..n {
                 let sum: f64 = (0..m).map(|j| scheme.weights[j] * stages[j * n + a]).sum();
                 out.maps[start + a * n + column] = sum + if a == column { 1.0 } else { 0.0 };

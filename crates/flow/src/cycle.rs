@@ -23,7 +23,7 @@ pub struct Cycle {
     /// Ratio of this distance from one period to the next, signed, where it was still shrinking when the
     /// cycle was accepted: an estimate of the multiplier nearest the unit circle.
     pub contraction: Option<f64>,
-    /// Whether it attracts nothing: volume is kept over a turn, and the returns closed from the first. Such cycles
+    /// Whether it attracts nothing: volume is kept over a turn (the integral of the divergence vanishes). Such cycles
     /// come in continua as a rule (conservative models), and the one found is that of the start.
     pub neutral: bool,
     /// Time of the simulation at which the orbit begins.

@@ -1,8 +1,8 @@
 //! Whether a cycle is one of a continuum, as those of conservative models are.
 //!
 //! The multipliers of a cycle multiply to exp of the integral of the divergence over it (Liouville). Where that
-//! integral vanishes no neighbourhood shrinks onto the cycle, so it attracts nothing: a motion that closes at once
-//! has begun on it.
+//! integral vanishes no neighbourhood shrinks onto the cycle, so it attracts nothing: a motion that closes has begun
+//! on it.
 
 use armilla_record::Profile;
 

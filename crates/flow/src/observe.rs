@@ -9,7 +9,6 @@ pub(crate) struct Observation {
     pub(crate) high: Vec<f64>,
     integral: Vec<f64>,
     pub(crate) time: f64,
-    steps: usize,
     point: Vec<f64>,
 }
 
@@ -24,7 +23,6 @@ impl Observation {
             high: vec![f64::NEG_INFINITY; n],
             integral: vec![0.0; n],
             time: 0.0,
-            steps: 0,
             point: vec![0.0; n],
         }
     }
@@ -41,7 +39,6 @@ impl Observation {
             }
         }
         self.time += h;
-        self.steps += 1;
     }
 
     pub(crate) fn range(&self, i: usize) -> f64 {
@@ -54,11 +51,6 @@ impl Observation {
 
     pub(crate) fn mean(&self, i: usize) -> f64 {
         self.integral[i] / self.time
-    }
-
-    /// Mean length of the steps taken in.
-    pub(crate) fn mean_step(&self) -> f64 {
-        self.time / self.steps.max(1) as f64
     }
 
     /// The state with the largest range relative to its largest absolute value, of those above their `least` range.

@@ -113,6 +113,7 @@ impl<'a, 'b> Settling<'a, 'b> {
     fn new(integrator: Integrator<'a>, options: &'b SettleOptions<'b>) -> Self {
         let n = integrator.state().len();
         let section = options.forcing_period.map(|period| Section::Period { period });
+        let floors = Floors::new(&integrator);
         Self {
             integrator,
             options,
@@ -121,7 +122,7 @@ impl<'a, 'b> Settling<'a, 'b> {
             all_returns: 0,
             seen: Observation::new(n),
             largest: vec![0.0; n],
-            floors: Floors::new(n),
+            floors,
             window: 0.0,
             rest_watch: RestWatch::default(),
             leaps: 0,
@@ -258,7 +259,8 @@ impl<'a, 'b> Settling<'a, 'b> {
     /// The floors of what was seen, with the returns as they are.
     fn floor(&self) -> Floor {
         let return_time = self.return_time().unwrap_or(0.0);
-        self.floors.floor(&self.seen, return_time, self.options.tolerance)
+        let tolerance = self.options.tolerance;
+        self.floors.floor(&self.seen, return_time, (tolerance, STEP_PART * tolerance))
     }
 
     /// Mean time from one return to the next.
@@ -358,7 +360,7 @@ impl<'a, 'b> Settling<'a, 'b> {
         }
         let (state_index, counted) = turns(&orbit, &floor.died);
         let turns = if matches!(section, Section::Period { .. }) { returns } else { counted };
-        let neutral = contraction.is_none() && keeps_volume(&mut self.integrator.rates, &orbit, start.time);
+        let neutral = keeps_volume(&mut self.integrator.rates, &orbit, start.time);
         Ok(Some(Cycle { orbit, turns, state_index, distance, contraction, neutral, time: start.time }))
     }
 

@@ -211,3 +211,85 @@ pub(crate) fn random_quadratic(n: usize) -> TestField {
         }
     })
 }
+
+/// A twisted band (parameters mu, kap, om). Exact: the cycle is the unit circle in the plane z = 0, T = 2 pi/om,
+/// multipliers 1, -exp(mu T), -exp(-kap T).
+pub(crate) fn twisted_band() -> TestField {
+    TestField::new(3, 3, |_, x, p, f, j| {
+        let (mu, kap, om) = (p[0], p[1], p[2]);
+        let (r, z) = (x[0].hypot(x[1]), x[2]);
+        let (q, c, s) = (r - 1.0, x[0] / r, x[1] / r);
+        let u = 0.5 * (q * q + z * z + c * (q * q - z * z) + 2.0 * s * q * z);
+        let a = 0.5 * (mu - kap);
+        let b = 0.5 * (mu + kap);
+        let big = -0.5 * om * z + a * q + b * (c * q + s * z) - u * q;
+        f[0] = big * c - om * x[1];
+        f[1] = big * s + om * x[0];
+        f[2] = 0.5 * om * q + a * z + b * (s * q - c * z) - u * z;
+        // Derivatives by q, c, s, z first, then by x and y through them.
+        let (u_q, u_z) = (q + c * q + s * z, z - c * z + s * q);
+        let (u_c, u_s) = (0.5 * (q * q - z * z), q * z);
+        let big_by = [a + b * c - u_q * q - u, b * q - u_c * q, b * z - u_s * q, -0.5 * om + b * s - u_z * q];
+        let rate_by = [0.5 * om + b * s - u_q * z, -b * z - u_c * z, b * q - u_s * z, a - b * c - u_z * z - u];
+        let by_x = [c, s * s / r, -c * s / r];
+        let by_y = [s, -c * s / r, c * c / r];
+        let chain = |d: &[f64; 4], by: &[f64; 3]| d[0] * by[0] + d[1] * by[1] + d[2] * by[2];
+        j[0] = chain(&big_by, &by_x) * c + big * by_x[1];
+        j[1] = chain(&big_by, &by_y) * c + big * by_y[1] - om;
+        j[2] = big_by[3] * c;
+        j[3] = chain(&big_by, &by_x) * s + big * by_x[2] + om;
+        j[4] = chain(&big_by, &by_y) * s + big * by_y[2];
+        j[5] = big_by[3] * s;
+        j[6] = chain(&rate_by, &by_x);
+        j[7] = chain(&rate_by, &by_y);
+        j[8] = rate_by[3];
+    })
+}
+
+/// A circle that drives an oscillator by 0.1 (x - x r), which vanishes on it: x^2 + y^2 = r -> 1, and u, v die out
+/// at the rate 0.3 while they turn at 1.618.
+pub(crate) fn dying_oscillator() -> TestField {
+    TestField::new(4, 0, |_, w, _, f, j| {
+        let (x, y, u, v) = (w[0], w[1], w[2], w[3]);
+        let (r, s) = (x * x + y * y, u * u + v * v);
+        let (g, h) = (1.0 - r - 2.0 * s, 0.2 - 0.5 * r - s);
+        f.copy_from_slice(&[x * g - y, y * g + x, u * h - 1.618 * v + 0.1 * (x - x * r), v * h + 1.618 * u]);
+        j[..4].copy_from_slice(&[g - 2.0 * x * x, -2.0 * x * y - 1.0, -4.0 * x * u, -4.0 * x * v]);
+        j[4..8].copy_from_slice(&[1.0 - 2.0 * x * y, g - 2.0 * y * y, -4.0 * y * u, -4.0 * y * v]);
+        let by_x = -u * x + 0.1 * (1.0 - r - 2.0 * x * x);
+        j[8..12].copy_from_slice(&[by_x, -u * y - 0.2 * x * y, h - 2.0 * u * u, -1.618 - 2.0 * u * v]);
+        j[12..].copy_from_slice(&[-v * x, -v * y, 1.618 - 2.0 * u * v, h - 2.0 * v * v]);
+    })
+}
+
+/// Van der Pol's oscillator at mu = 1 beside z' = z (m + c x y - z^2 (1 + 0.2 x^2)), parameters m, c: z dies out for
+/// m < 0, and its rate, all of it in proportion to z, has no roundoff beside it.
+pub(crate) fn dying_passenger() -> TestField {
+    TestField::new(3, 2, |_, w, p, f, j| {
+        let (x, y, z) = (w[0], w[1], w[2]);
+        let rest = p[0] + p[1] * x * y;
+        f.copy_from_slice(&[y, (1.0 - x * x) * y - x, z * (rest - z * z * (1.0 + 0.2 * x * x))]);
+        j[..3].copy_from_slice(&[0.0, 1.0, 0.0]);
+        j[3..6].copy_from_slice(&[-2.0 * x * y - 1.0, 1.0 - x * x, 0.0]);
+        j[6] = z * (p[1] * y - 0.4 * x * z * z);
+        j[7] = z * p[1] * x;
+        j[8] = rest - 3.0 * z * z * (1.0 + 0.2 * x * x);
+    })
+}
+
+/// Prey and predator without damping (parameters a, b): x' = x (a - y), y' = y (x - b). x - b ln x + y - a ln y is
+/// conserved.
+pub(crate) fn prey_and_predator() -> TestField {
+    TestField::new(2, 2, |_, x, p, f, j| {
+        f.copy_from_slice(&[x[0] * (p[0] - x[1]), x[1] * (x[0] - p[1])]);
+        j.copy_from_slice(&[p[0] - x[1], -x[0], x[1], x[0] - p[1]]);
+    })
+}
+
+/// A pendulum with the damping d: q' = v, v' = -sin q - d v.
+pub(crate) fn pendulum() -> TestField {
+    TestField::new(2, 1, |_, x, p, f, j| {
+        f.copy_from_slice(&[x[1], -x[0].sin() - p[0] * x[1]]);
+        j.copy_from_slice(&[0.0, 1.0, -x[0].cos(), -p[0]]);
+    })
+}

@@ -12,8 +12,9 @@ use armilla_flow::{Cycle, FlowError, Limit, SettleOptions, Settled, Verdict, set
 use armilla_model::{Batch, VectorField};
 
 use test_models::{
-    TestField, common_brusselator, duffing, hopf_with_shear, lorenz, random_quadratic, roessler, saddle_loop,
-    scaled_van_der_pol, torus_case, tyson, van_der_pol,
+    TestField, common_brusselator, duffing, dying_oscillator, dying_passenger, hopf_with_shear, lorenz, pendulum,
+    prey_and_predator, random_quadratic, roessler, saddle_loop, scaled_van_der_pol, torus_case, twisted_band, tyson,
+    van_der_pol,
 };
 
 fn run(field: &TestField, parameters: &[f64], state: &[f64]) -> Settled {
@@ -349,6 +350,71 @@ fn random_models_end_in_finite_numbers() {
             Err(error) => panic!("seed {seed}: {error}"),
         }
     }
+}
+
+/// Settles on one turn with the exact period, in at most so many steps and so much time.
+fn settles_soon(field: &TestField, parameters: &[f64], start: &[f64], (period, time, steps): (f64, f64, usize)) {
+    let settled = run(field, parameters, start);
+    let Verdict::Cycle(cycle) = &settled.verdict else { panic!("{parameters:?}: {:?}", settled.verdict) };
+    close(cycle.period(), period, 1e-9);
+    assert_eq!(cycle.turns, 1, "{parameters:?}");
+    assert!(cycle.state_index < 2 && !cycle.neutral, "{parameters:?}: {cycle:?}");
+    let stats = settled.stats;
+    assert!(settled.time <= time && stats.accepted + stats.rejected <= steps, "{} {stats:?}", settled.time);
+}
+
+/// Exact cycles in a plane of symmetry: the state across it dies out to the roundoff that the others feed into it, and
+/// holds up nothing. The time asked for is that of the slowest multiplier, at mu = -0.1 exp(-0.63) a turn: 1e-11
+/// takes 40 turns, and 48 returns make a window.
+#[test]
+fn a_state_that_dies_to_roundoff_holds_up_nothing() {
+    for mu in [-0.1, -0.3, -1.0] {
+        settles_soon(&twisted_band(), &[mu, 0.5, 1.0], &[1.02, 0.0, 0.01], (2.0 * PI, 600.0, 6_000));
+    }
+    settles_soon(&dying_oscillator(), &[], &[0.5, 0.1, 0.01, 0.0], (2.0 * PI, 600.0, 6_000));
+}
+
+/// The same where the rate of the dying state is in proportion to it, so that it dies for good, fast (m = -0.5) or
+/// slowly. Exact: c x y is the derivative of c x^2/2, so the multiplier is exp(m T). Period of van der Pol's equation at
+/// mu = 1 computed independently with 113 bits.
+#[test]
+fn a_state_that_dies_for_good_holds_up_nothing() {
+    for m in [-5.0, -0.5, -0.1, -0.02] {
+        let time = 600.0 + 60.0 / -m;
+        let steps = (20.0 * time) as usize;
+        settles_soon(&dying_passenger(), &[m, 0.3], &[1.5, 0.3, 0.01], (6.663_286_859_323_13, time, steps));
+    }
+}
+
+/// A transient a million times wider than the cycle does not make its states dead: exact circle of radius 1e-3.
+#[test]
+fn a_wide_transient_is_not_taken_for_a_life() {
+    let mu = 1e-6;
+    let cycle = cycle(&hopf_with_shear(), &[mu, 0.5], &[1e3, 0.0]);
+    close(cycle.period(), 2.0 * PI / (1.0 + 0.5 * mu), 1e-9);
+    assert_eq!(cycle.turns, 1);
+}
+
+/// Conservative models settle on the cycle of their start, and say that it is one of a continuum; with the least
+/// damping they go to rest, and attracting cycles with an undamped state, or with weak attraction, are not neutral.
+/// Exact: the pendulum from q = 1 at rest has T = 4 K(sin^2 1/2) = 6.699...; small prey-predator cycles have
+/// T = 2 pi/sqrt(a b).
+#[test]
+fn conservative_cycles_are_neutral() {
+    let from_side = cycle(&pendulum(), &[0.0], &[1.0, 0.0]);
+    // 4 K by the arithmetic-geometric mean of 1 and cos(1/2).
+    let (mut a, mut b) = (1.0f64, 0.5f64.cos());
+    (0..6).for_each(|_| (a, b) = (0.5 * (a + b), (a * b).sqrt()));
+    close(from_side.period(), 2.0 * PI / a, 1e-9);
+    assert!(from_side.neutral);
+    let small = cycle(&prey_and_predator(), &[2.0, 0.5], &[0.501, 2.0]);
+    close(small.period(), 2.0 * PI, 1e-5);
+    assert!(small.neutral);
+    assert!(cycle(&prey_and_predator(), &[1.0, 1.0], &[3.0, 0.2]).neutral);
+    let damped = run(&pendulum(), &[1e-3], &[1.0, 0.0]);
+    assert!(matches!(damped.verdict, Verdict::Equilibrium(_)), "{:?}", damped.verdict);
+    assert!(!cycle(&van_der_pol(), &[1e-3], &[0.5, 0.0]).neutral);
+    assert!(!cycle(&hopf_with_shear(), &[1e-4, 0.5], &[0.01, 0.0]).neutral);
 }
 
 /// A linear congruence (Knuth's MMIX constants), numbers in [-2, 2).

@@ -1,7 +1,7 @@
 //! Normal-form coefficients at folds and doublings, on the collocation.
 //!
 //! Real time, integrals over one period T, `phi* ' + A^T phi* = 0` the adjoint of the flow direction.
-//! - Fold, `xi' = b xi^2`: `b = 1/2 Int <phi*, B(v,v) + 2 S A v>` with `v' - A v - S f = 0`, `Int <v,f> = 0`,
+//! - Fold, `xi' = alpha (p - p*) + b xi^2`, alpha > 0: `b = 1/2 Int <phi*, B(v,v) + 2 S A v>` with `v' - A v - S f = 0`, `Int <v,f> = 0`,
 //!   `Int <v,v> = 1`, `Int <phi*,v> = 1`.
 //! - Doubling, `xi' = c xi^3`: `a = 1/2 Int <phi*, B(v,v)>`, `h' - A h = B(v,v) - 2 a f` periodic with
 //!   `Int <phi*,h> = 0`, `c = 1/6 Int <v*, C(v,v,v) + 3 B(v,h) - 6 a A v>`, v and v* antiperiodic, `Int <v,v> = 1`,
@@ -61,8 +61,12 @@ impl CycleProblem {
         system.quadratic(&nodes, &nodes, &mut bvv);
         let quadratic = period * system.pair(psi, &bvv);
         let mixed = 2.0 * located.vectors.period / period * period * system.pair(psi, &av);
-        // v is scaled to unit size, psi so that its pairing with the scaled v is 1.
-        Some(0.5 * (quadratic + mixed) / (pairing * size.sqrt()))
+        // v is scaled to unit size, psi so that its pairing with the scaled v is 1. The sign of v is free: it is taken so
+        // that a rising parameter pushes along v, and b > 0 then says that the two cycles exist below the threshold.
+        let mut push = vec![0.0; len];
+        system.parameter_rates(&mut push);
+        let sign = (system.pair(psi, &push) * pairing).signum();
+        Some(sign * 0.5 * (quadratic + mixed) / (pairing * size.sqrt()))
     }
 
     /// The coefficients of a located doubling; none where the field has no third derivatives or the systems fail.

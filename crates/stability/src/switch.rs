@@ -64,7 +64,7 @@ impl CycleProblem {
         let (value, sizes) = (located.point.unknowns.parameter, Some(&self.metric.scales[..]));
         let mut settings = self.settings;
         // A number of intervals fixed by the user is per turn.
-        settings.mesh.fixed = settings.mesh.fixed.map(|intervals| 2 * intervals);
+        settings.mesh.fixed = settings.mesh.fixed.map(|intervals| intervals.saturating_mul(2));
         let mut problem = CycleProblem::with_metric(self.spec.clone(), settings, sizes, &birth_profile, value)
             .map_err(|_| SwitchFault)?;
         let birth = CyclePoint::from_profile(&birth_profile, value);
@@ -73,7 +73,10 @@ impl CycleProblem {
         let mut amplitude = forecast.as_ref().map_or(AMPLITUDE, |forecast| forecast.amplitude.min(LARGEST));
         for _ in 0..HALVINGS {
             let offset = forecast.as_ref().map_or(0.0, |forecast| forecast.offset_at(amplitude));
-            if let Some(point) = first_cycle(&mut problem, (&birth, &outwards), amplitude, offset) {
+            let found = first_cycle(&mut problem, (&birth, &outwards), amplitude, offset);
+            // A branch on the side the normal form denies is one of the discretisation.
+            let sided = |point: &CyclePoint| offset == 0.0 || (point.unknowns.parameter - value) * offset > 0.0;
+            if let Some(point) = found.filter(sided) {
                 return Ok(on_own_mesh(Doubled { problem, birth, point, outwards, amplitude }));
             }
             amplitude *= 0.5;

@@ -43,7 +43,7 @@ pub(crate) fn cascade(branches: &[Branch]) -> Vec<CascadeRow> {
 /// The chain of events with the most members.
 fn longest_line(branches: &[Branch]) -> Option<Vec<&Event>> {
     let roots = branches.iter().filter(|branch| branch.born_at.is_none());
-    let doublings = roots.flat_map(|branch| doublings_of(branch));
+    let doublings = roots.flat_map(doublings_of);
     doublings.map(|event| line_from(branches, event)).max_by_key(Vec::len)
 }
 

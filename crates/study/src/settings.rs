@@ -6,12 +6,16 @@ use armilla_stability::CycleSettings;
 use crate::file::StrideOverride;
 use crate::study::Study;
 
+/// Coarsest accuracy of the profiles: with coarser ones a branch near its birth is shifted by more than it has moved, and
+/// they cost next to nothing less.
+const COARSEST: f64 = 1e-6;
+
 /// Settings of the cycles of a study; `turns` multiplies a fixed number of intervals.
 pub(crate) fn cycle_settings(study: &Study, turns: usize) -> CycleSettings {
-    let mut settings = CycleSettings::new(study.file.accuracy);
+    let mut settings = CycleSettings::new(study.file.accuracy.min(COARSEST));
     if let Some(mesh) = study.file.mesh {
         settings.degree = mesh.degree.unwrap_or(settings.degree);
-        settings.mesh.fixed = mesh.intervals.map(|intervals| intervals * turns);
+        settings.mesh.fixed = mesh.intervals.map(|intervals| intervals.saturating_mul(turns));
     }
     settings
 }

@@ -12,6 +12,8 @@ use crate::file::{Start, StudyFile, Values};
 
 /// Accepted accuracies: finer ones drown in the roundoff of 64-bit numbers, coarser ones do not find cycles.
 const ACCURACY: (f64, f64) = (1e-13, 1e-2);
+/// Intervals per turn an override may ask for: fewer alias the error estimate, more fill the memory.
+const INTERVALS: (usize, usize) = (4, 20_000);
 /// Degrees an override may ask for.
 const DEGREES: (usize, usize) = (3, 8);
 
@@ -179,7 +181,7 @@ impl Place<'_> {
 
     fn numbers(&self, file: &StudyFile) -> Result<(), Diagnostic> {
         let follow = &file.follow;
-        if !(follow.from.is_finite() && follow.to.is_finite() && follow.from != follow.to) {
+        if !((follow.to - follow.from).is_finite() && follow.from != follow.to) {
             return Err(self.error("follow", "", "the range must have two different finite ends `from` and `to`"));
         }
         if !(file.accuracy >= ACCURACY.0 && file.accuracy <= ACCURACY.1) {
@@ -201,8 +203,11 @@ impl Place<'_> {
             let message = format!("the degree {degree} must lie between {} and {}", DEGREES.0, DEGREES.1);
             return Err(self.error("degree", "", message));
         }
-        if file.mesh.and_then(|mesh| mesh.intervals).is_some_and(|intervals| intervals < 4) {
-            return Err(self.error("intervals", "", "a mesh needs at least 4 intervals"));
+        if let Some(intervals) = file.mesh.and_then(|mesh| mesh.intervals)
+            && !(INTERVALS.0..=INTERVALS.1).contains(&intervals)
+        {
+            let message = format!("a mesh has {} to {} intervals per turn, not {intervals}", INTERVALS.0, INTERVALS.1);
+            return Err(self.error("intervals", "", message));
         }
         self.strides(file)
     }

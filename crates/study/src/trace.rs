@@ -126,8 +126,6 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
 /// A doubled branch that returns to its parent at another doubling of it has been followed from both: the branch that
 /// waits to be entered there is the same one.
 fn drop_other_end(study: &Study, lineage: &Lineage, branch: &mut Branch, queue: &mut VecDeque<Waiting>) {
-    /// Share of the range within which the extrapolated return and a located doubling are the same point.
-    const SAME: f64 = 1e-2;
     let (Some(born_at), EndReason::ReturnsToParent) = (&lineage.born_at, &branch.ends.1.reason) else { return };
     let parent = born_at.split('/').next().unwrap_or_default();
     let value = branch.ends.1.value;
@@ -136,10 +134,12 @@ fn drop_other_end(study: &Study, lineage: &Lineage, branch: &mut Branch, queue: 
         waiting.lineage.turns == lineage.turns
             && waiting.lineage.born_at.as_ref().is_some_and(|event| event.split('/').next() == Some(parent))
     };
+    // The return was extrapolated from the last point; it is off by less than it is away from it.
+    let width = study.range.1 - study.range.0;
+    let away = branch.points.last().map_or(0.0, |point| (point.value - value).abs());
+    let same = away.clamp(1e-6 * width, 1e-2 * width);
     let nearest = queue.iter().filter(sibling).min_by(|a, b| gap(a).total_cmp(&gap(b)));
-    let Some(name) =
-        nearest.filter(|w| gap(w) < SAME * (study.range.1 - study.range.0)).map(|w| w.lineage.name.clone())
-    else {
+    let Some(name) = nearest.filter(|w| gap(w) < same).map(|w| w.lineage.name.clone()) else {
         return;
     };
     if let Some(at) = queue.iter().position(|waiting| waiting.lineage.name == name)
@@ -273,7 +273,11 @@ fn shortfalls(study: &Study, branches: &[Branch], cascade_only: bool) -> Vec<Str
         }
     }
     for target in &study.file.targets {
-        let met = branches.iter().flat_map(|b| &b.events).any(|e| e.kind == EventKind::Target && e.value == *target);
+        // An edge or the start at the same value is the cycle that was wanted there too.
+        let wanted = |event: &armilla_record::Event| {
+            matches!(event.kind, EventKind::Target | EventKind::Edge | EventKind::Start) && event.value == *target
+        };
+        let met = branches.iter().flat_map(|branch| &branch.events).any(wanted);
         if !met {
             found.push(format!("no cycle was met at the target {} = {target}", study.file.follow.parameter));
         }

@@ -295,13 +295,19 @@ fn drop_idle_turns(step: &mut Step) {
     }
 }
 
-/// Whether the events of a step can account for the change of the unstable count: each fold or doubling moves one
-/// multiplier across the unit circle, each torus point two.
+/// Whether the events of a step account for the change of the unstable count: each fold or doubling moves one multiplier
+/// across the unit circle, a torus point two. A pair that crosses in the same step as a fold or doubling leaves the count
+/// ambiguous; a shorter stride separates them.
 fn is_explained(step: &Step) -> bool {
     let count = |index: usize| step.crossings.iter().filter(|crossing| crossing.index == index).count();
     let single = count(WATCH_FOLD) + count(WATCH_DOUBLING);
     let change = step.unstable.0.abs_diff(step.unstable.1);
-    change <= single + 2 * count(WATCH_TORUS) && change % 2 == single % 2
+    match (single, count(WATCH_TORUS)) {
+        (0, 0) => change == 0,
+        (0, _) => change == 0 || change == 2,
+        (_, 0) => change <= single && change % 2 == single % 2,
+        (_, _) => false,
+    }
 }
 
 fn events_of_step(
@@ -425,7 +431,10 @@ fn remaining_change(
     let count = before.watch.unstable_count;
     let (low, high) = problem.narrow(before, after, |station| station.watch.unstable_count == count);
     let (a, b) = (low.point.unknowns.parameter, high.point.unknowns.parameter);
-    let half_width = 0.5 * (a - b).abs() + f64::EPSILON * a.abs();
+    // The count itself hangs on multipliers of profiles with their own error.
+    let resolution = SUPERCONVERGENCE * problem.profile_error(&high.point);
+    let scale = (plan.study.range.1 - plan.study.range.0).max(a.abs());
+    let half_width = 0.5 * (a - b).abs() + (resolution + f64::EPSILON) * scale;
     let critical = problem.spectrum(&high.point).ok().and_then(|spectrum| {
         spectrum.multipliers.into_iter().min_by(|x, y| x.log_modulus.abs().total_cmp(&y.log_modulus.abs()))
     });
@@ -445,15 +454,18 @@ fn remaining_change(
     Some(event)
 }
 
+/// An event that is known by an interval of the parameter; its period is that of the station, known to its profile's
+/// accuracy only.
 fn unresolved(station: &CycleStation, (value, half_width): (f64, f64), note: String, plan: &WalkPlan<'_>) -> Found {
     let mut point = station.point.clone();
+    let period_error = PERIOD_OF_INTERVAL * point.unknowns.period;
     point.unknowns.parameter = value;
     Found {
         kind: EventKind::Unresolved,
         point,
         distance: plan.sign * station.distance,
         error: Some(half_width),
-        period_error: None,
+        period_error: Some(period_error),
         angle: None,
         criticality: None,
         note,
@@ -489,6 +501,10 @@ pub(crate) fn at_parameter(problem: &mut CycleProblem, kind: EventKind, point: &
         form: None,
     }
 }
+
+/// Relative error claimed for the period of an event known by an interval: the period varies along a stride of some
+/// hundredths, and nothing better was computed.
+const PERIOD_OF_INTERVAL: f64 = 1e-3;
 
 pub(crate) fn end(reason: EndReason, value: f64, words: String) -> End {
     End { reason, value, words }

@@ -14,7 +14,7 @@ fn twisted_band_doubles_supercritically() {
     let (kap, period) = (0.5, TAU / 1.3);
     let traced = job(
         "x3",
-        r#"set: {"kap": 0.5, "om": 1.3}, start: Settle(at: {"mu": -0.1}), follow: (parameter: "mu", from: -0.2, to: 0.2), pursue: (doublings: 1)"#,
+        r#"set: {"kap": 0.5, "om": 1.3}, start: Settle(at: {"mu": -0.1}), follow: (parameter: "mu", from: -0.2, to: 0.2), accuracy: 1e-10, pursue: (doublings: 1)"#,
     );
     assert!(traced.shortfalls.is_empty(), "{:?}", traced.shortfalls);
     for point in &branch(&traced, "a").points {
@@ -34,10 +34,10 @@ fn twisted_band_doubles_supercritically() {
     for point in away_from_birth(doubled) {
         let (amplitude, twice) = (point.value.sqrt(), 2.0 * period);
         relative(&format!("doubled period at mu = {}", point.value), point.period, twice, 1e-10);
-        // z = U sin(theta/2); ranges 2 U, accuracy 1e-9.
-        absolute("largest z", point.maxima[2], amplitude, 2e-9 * amplitude);
-        multiplier("first multiplier", point.multipliers[0], (-2.0 * point.value * twice, false), 1e-9);
-        multiplier("second multiplier", point.multipliers[1], (-(kap + point.value) * twice, false), 1e-9);
+        // z = U sin(theta/2), range 2 U.
+        absolute("largest z", point.maxima[2], amplitude, 2e-10 * amplitude);
+        multiplier("first multiplier", point.multipliers[0], (-2.0 * point.value * twice, false), 1e-10);
+        multiplier("second multiplier", point.multipliers[1], (-(kap + point.value) * twice, false), 1e-10);
         assert_eq!((point.unstable_count, point.turns), (0, 2));
     }
 }
@@ -53,7 +53,7 @@ fn x4(g: f64, range: (f64, f64)) -> Traced {
     job(
         "x4",
         &format!(
-            r#"set: {{"g": {g:?}, "e": 0.7}}, start: Settle(at: {{"l": -0.05}}), follow: (parameter: "l", from: {from}, to: {to}), pursue: (doublings: 1)"#
+            r#"set: {{"g": {g:?}, "e": 0.7}}, start: Settle(at: {{"l": -0.05}}), follow: (parameter: "l", from: {from}, to: {to}), accuracy: 1e-10, pursue: (doublings: 1)"#
         ),
     )
 }
@@ -78,10 +78,10 @@ fn check_x4(traced: &Traced, g: f64) {
         let square = -l / g;
         let period = 2.0 * TAU / (1.0 + e * square);
         relative(&format!("doubled period at l = {l}"), point.period, period, 1e-10);
-        absolute("largest z", point.maxima[2], square.sqrt(), 2e-9 * square.sqrt());
+        absolute("largest z", point.maxima[2], square.sqrt(), 2e-10 * square.sqrt());
         // The multipliers in the order of their moduli: the growth -2 l is above -1 here.
-        multiplier("first multiplier", point.multipliers[0], (-2.0 * l * period, false), 1e-9);
-        multiplier("second multiplier", point.multipliers[1], (-period, false), 1e-9);
+        multiplier("first multiplier", point.multipliers[0], (-2.0 * l * period, false), 1e-10);
+        multiplier("second multiplier", point.multipliers[1], (-period, false), 1e-10);
         assert_eq!((point.unstable_count, point.turns), (usize::from(g > 0.0), 2));
     }
 }

@@ -69,14 +69,22 @@ fn kind(multipliers: &[Multiplier]) -> usize {
 /// Liouville by hand: the divergence is a + x - c, so its integral needs only the mean of x. To what the study asks, 1e-9.
 fn check_liouville(point: &Point) {
     let sum: f64 = point.multipliers.iter().map(|multiplier| multiplier.log_modulus).sum();
-    relative(&format!("sum of log multipliers at c = {}", point.value), sum, point.period * (0.2 + point.means[0] - point.value), 1e-9);
+    relative(
+        &format!("sum of log multipliers at c = {}", point.value),
+        sum,
+        point.period * (0.2 + point.means[0] - point.value),
+        1e-9,
+    );
 }
 
 /// On the way to a doubling the real multipliers meet, become a complex pair, meet again on the negative axis, and one goes
 /// to -1. On the first branch the pair lives over a third of the way.
 #[test]
 fn a_real_pair_turns_complex_and_real_again_before_the_first_doubling() {
-    let traced = job("roessler", r#"start: Settle(at: {"c": 1.0}), follow: (parameter: "c", from: 0.8, to: 3.0), pursue: (doublings: 0)"#);
+    let traced = job(
+        "roessler",
+        r#"start: Settle(at: {"c": 1.0}), follow: (parameter: "c", from: 0.8, to: 3.0), pursue: (doublings: 0)"#,
+    );
     let a = branch(&traced, "a");
     let doubling = event(&traced, "a/doubling1").value;
     let kinds: Vec<usize> = a.points.iter().map(|point| kind(&point.multipliers)).collect();

@@ -66,7 +66,11 @@ fn van_der_pol_profile_period_and_multiplier() {
     let guess = problem.profile(&cycle);
     assert!(problem.spectrum(&cycle).is_ok());
     // Superconvergent errors meet roundoff on meshes on which the others are not yet asymptotic: two lists.
-    let lists = [(3, [48, 80, 120, 192], [96, 192, 384]), (4, [24, 32, 44, 60], [80, 160, 320]), (5, [34, 40, 47, 55], [60, 120, 240])];
+    let lists = [
+        (3, [48, 80, 120, 192], [96, 192, 384]),
+        (4, [24, 32, 44, 60], [80, 160, 320]),
+        (5, [34, 40, 47, 55], [60, 120, 240]),
+    ];
     for (degree, coarse, fine) in lists {
         let [mut inside, mut at_mesh, mut period, mut multiplier] = std::array::from_fn(|_| Orders::default());
         let solve = |intervals: usize| {
