@@ -9,7 +9,8 @@
 //! cancels). Dying out: a range is small beside the widest ever seen of this state, while other states keep theirs.
 //!
 //! A state remembers for the time `1/(|J_ii| + sum over j of sqrt|J_ij J_ji|)`, which no change of units changes: a
-//! disturbance then has decayed, or has gone over into another state.
+//! disturbance then has decayed, or has gone over into another state. What one state does to another lasts as long as
+//! both remember it.
 
 use std::collections::HashMap;
 
@@ -126,7 +127,8 @@ impl Floors {
             both[1] = both[1].max(both[0]);
         }
         for coupling in &mut self.couplings {
-            coupling.step = coupling.step.max(adds_up(coupling.now, step, self.forgets[coupling.row][0]));
+            let forgets = self.forgets[coupling.row][0] + self.forgets[coupling.column][0];
+            coupling.step = coupling.step.max(adds_up(coupling.now, step, forgets));
         }
         for (i, most) in self.step_roundoff.iter_mut().enumerate() {
             *most = most.max(f64::EPSILON * adds_up(self.terms[i][0], step, self.forgets[i][0]));
@@ -157,7 +159,8 @@ impl Floors {
     pub(crate) fn floor(&self, seen: &Observation, return_time: f64, (tolerance, part): (f64, f64)) -> Floor {
         let n = self.widest.len();
         let alive = self.alive(seen);
-        let gain = |coupling: &Coupling| adds_up(coupling.most, return_time, self.forgets[coupling.row][1]);
+        let forgets = |coupling: &Coupling| self.forgets[coupling.row][1] + self.forgets[coupling.column][1];
+        let gain = |coupling: &Coupling| adds_up(coupling.most, return_time, forgets(coupling));
         let ranges: Vec<f64> = (0..n).map(|i| seen.range(i)).collect();
         let mut reach = self.reach(&ranges, gain);
         let cancelled = |i: usize, reach: &[f64]| ranges[i] <= CANCELLED * reach[i];

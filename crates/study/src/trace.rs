@@ -13,6 +13,7 @@ use crate::error::StudyError;
 use crate::progress::Observer;
 use crate::start::first_cycle;
 use crate::study::Study;
+use crate::walk::LOCATED_BY_BRACKET;
 
 /// How a run is to be done.
 pub struct TraceOptions<'a> {
@@ -266,6 +267,14 @@ fn shortfalls(study: &Study, branches: &[Branch], cascade_only: bool) -> Vec<Str
         }
         for event in branch.events.iter().filter(|event| event.kind == EventKind::Unresolved) {
             found.push(format!("{} is unresolved: {}", event.name, event.note));
+        }
+        let bracketed =
+            branch.events.iter().filter(|event| event.kind == EventKind::Doubling && event.note == LOCATED_BY_BRACKET);
+        for event in bracketed {
+            found.push(format!(
+                "the branch born at {} was not entered: its doubling is known by a bracket only",
+                event.name
+            ));
         }
         let worst = branch.points.iter().map(|point| point.profile_error).fold(0.0, f64::max);
         if worst > study.file.accuracy {

@@ -65,7 +65,7 @@ pub(crate) trait WalkSink {
 }
 
 /// Strides halved at most this often where the unstable count changes by something no event explains.
-const RETRIES: usize = 10;
+const RETRIES: usize = 8;
 
 /// Walks from `first` to the end of this direction. The first station itself is not among the points.
 pub(crate) fn walk(
@@ -85,6 +85,8 @@ pub(crate) fn walk(
         }
     };
     let mut retries = 0;
+    // Distance up to which the last doubt reaches.
+    let mut doubt_until = 0.0f64;
     let mut motions = vec![motion(&mut follower)];
     let mut periods = vec![period(&follower)];
     let mut samples = vec![samples_at(&follower)];
@@ -95,7 +97,9 @@ pub(crate) fn walk(
             return walk;
         }
         let Outcome::Step(mut step) = follower.step() else { break };
-        drop_idle_turns(&mut step);
+        if retries == 0 {
+            drop_idle_turns(&mut step);
+        }
         match passed_through(&mut follower, plan, &mut motions) {
             Passage::None => {}
             Passage::TooLong if retries < RETRIES && follower.retract() => {
@@ -104,7 +108,13 @@ pub(crate) fn walk(
                 continue;
             }
             Passage::TooLong => {}
-            Passage::End(ended) => {
+            Passage::End(ended, rest) => {
+                if let Some(rest) = rest {
+                    let (problem, before, _) = follower.parts();
+                    let event = birth_of_cycle(before.expect("a step has a station before it"), problem, rest, plan);
+                    sink.event(problem, &event);
+                    walk.events.push(event);
+                }
                 walk.end = ended;
                 return walk;
             }
@@ -112,17 +122,35 @@ pub(crate) fn walk(
         samples.truncate(walk.points.len() + 1);
         samples.push(samples_at(&follower));
         let doubtful = !is_explained(&step) || touches_zero(&samples);
+        let reached = follower.current().distance;
         if doubtful && retries < RETRIES && follower.retract() {
             motions.pop();
             retries += 1;
+            doubt_until = doubt_until.max(reached);
             continue;
         }
-        retries = 0;
         let (problem, before, after) = follower.parts();
         let before = before.expect("a step has a station before it").clone();
         let after = after.clone();
         let found = events_of_step(problem, &step, (&before, &after), plan);
+        // A fold beyond the edge: the walk should have ended on the edge before it, and does so in shorter strides.
+        let beyond = |event: &Found| {
+            let value = event.point.unknowns.parameter;
+            event.kind == EventKind::Fold && (value < plan.study.range.0 || value > plan.study.range.1)
+        };
+        if found.iter().any(beyond) && retries < RETRIES && follower.retract() {
+            motions.pop();
+            retries += 1;
+            doubt_until = doubt_until.max(reached);
+            continue;
+        }
+        // The budget of retries belongs to the whole stretch that was in doubt, or the walk would creep towards a
+        // singular point in ever shorter strides.
+        if reached >= doubt_until {
+            retries = 0;
+        }
         let doubles = found.iter().any(|event| event.kind == EventKind::Doubling);
+        let (problem, _, _) = follower.parts();
         for event in found {
             sink.event(problem, &event);
             walk.events.push(event);
@@ -194,8 +222,8 @@ enum Passage {
     None,
     /// An equilibrium, in a stride so long that nothing tells where: to be tried again shorter.
     TooLong,
-    /// An equilibrium or the branch's own birth.
-    End(End),
+    /// An equilibrium, with the value and error of its parameter, or the branch's own birth.
+    End(End, Option<(f64, f64)>),
 }
 
 /// Whether the last step went through an equilibrium or through the branch's own birth; the walk is over then, and the
@@ -218,7 +246,8 @@ fn passed_through(
         }
         let value = extrapolate_to_rest(motions);
         let words = format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), short(plan.study, value));
-        return Passage::End(end(EndReason::Equilibrium { value }, last, words));
+        let error = rest_error(motions, value, plan);
+        return Passage::End(end(EndReason::Equilibrium { value }, last, words), Some((value, error)));
     }
     if plan.turns.is_multiple_of(2) && problem.passed_birth(&before.point, &after.point) {
         let value = birth_value(problem, before, after);
@@ -231,7 +260,7 @@ fn passed_through(
                 short(plan.study, value)
             )
         };
-        return Passage::End(end(EndReason::ReturnsToParent, value, words));
+        return Passage::End(end(EndReason::ReturnsToParent, value, words), None);
     }
     Passage::None
 }
@@ -295,6 +324,36 @@ fn drop_idle_turns(step: &mut Step) {
     }
 }
 
+/// Estimated error of the extrapolated birth: how far the value moves when the point farthest from rest is left out, and
+/// the share of the profiles' own error.
+fn rest_error(motions: &[(f64, f64)], value: f64, plan: &WalkPlan<'_>) -> f64 {
+    let last = &motions[motions.len().saturating_sub(3)..];
+    let farthest = last.iter().enumerate().max_by(|a, b| a.1.0.total_cmp(&b.1.0)).map_or(0, |(index, _)| index);
+    let without: Vec<(f64, f64)> =
+        last.iter().enumerate().filter(|(index, _)| *index != farthest).map(|(_, motion)| *motion).collect();
+    let scale = (plan.study.range.1 - plan.study.range.0).max(value.abs());
+    (extrapolate_to_rest(&without) - value).abs() + SUPERCONVERGENCE * plan.study.file.accuracy * scale
+}
+
+/// The birth of the cycle at an equilibrium as an event: the last cycle shrunk to its mean.
+fn birth_of_cycle(
+    before: &CycleStation,
+    problem: &CycleProblem,
+    (value, error): (f64, f64),
+    plan: &WalkPlan<'_>,
+) -> Found {
+    let note = "extrapolated from the last cycles".to_string();
+    let mut event = unresolved(before, (value, error), note, plan);
+    let means = problem.profile(&before.point).means();
+    for (k, node) in event.point.unknowns.nodes.iter_mut().enumerate() {
+        *node = means[k % means.len()];
+    }
+    // One motion farther along the walk, so that the event stands behind the last point.
+    event.distance = plan.sign * (before.distance + problem.motion(&before.point));
+    event.kind = EventKind::Hopf;
+    event
+}
+
 /// Whether the events of a step account for the change of the unstable count: each fold or doubling moves one multiplier
 /// across the unit circle, a torus point two. A pair that crosses in the same step as a fold or doubling leaves the count
 /// ambiguous; a shorter stride separates them.
@@ -317,6 +376,9 @@ fn events_of_step(
     plan: &WalkPlan<'_>,
 ) -> Vec<Found> {
     let mut found = Vec::new();
+    // The parameter turns back, yet no multiplier changes side: the mirror image of this branch goes on from there.
+    let turns_at_crossing =
+        step.unstable.0 == step.unstable.1 && step.crossings.len() == 1 && step.crossings[0].index == WATCH_FOLD;
     for crossing in &step.crossings {
         let kind = match crossing.index {
             WATCH_FOLD => CriticalKind::Fold,
@@ -328,6 +390,13 @@ fn events_of_step(
             Err(fault) => bracketed(problem, kind, fault.bracket, (before, after), plan),
         });
     }
+    if turns_at_crossing && let Some(event) = found.last_mut() {
+        event.kind = EventKind::Branching;
+        event.located = None;
+        event.note = "the parameter turns back but no multiplier changes side: another branch crosses here, as at a \
+                      pitchfork met from one of its two sides; not followed"
+            .into();
+    }
     if let Some(event) = remaining_change(problem, step, (before, after), plan) {
         found.push(event);
     }
@@ -337,6 +406,9 @@ fn events_of_step(
     }
     found
 }
+
+/// Note of an event that its bracket holds to the asked accuracy.
+pub(crate) const LOCATED_BY_BRACKET: &str = "located by its bracket";
 
 /// An event known by its bracket alone. Where the branch turns so sharply that Newton's method finds no footing, the
 /// bracket may still hold the value to the asked accuracy; then it is the event, else it is unresolved.
@@ -360,7 +432,7 @@ fn bracketed(
         CriticalKind::Doubling => ("period doubling", EventKind::Doubling, std::f64::consts::PI),
     };
     let note = if tight {
-        "located by its bracket".to_string()
+        LOCATED_BY_BRACKET.to_string()
     } else {
         format!("a {word} lies in this interval but was not located")
     };
