@@ -36,7 +36,8 @@ fn main_job(case: &Case, settled: &Profile) -> (usize, f64, f64) {
     let (mut problem, cycle) = case.start(settled, settings(1e-9), FROM);
     let (first_points, first) = pursue(&mut problem, cycle, 1);
     let first = first.expect("the first doubling");
-    let mut doubled = problem.double(&first).expect("a doubled branch");
+    let form = problem.doubling_form(&first);
+    let mut doubled = problem.double(&first, form.as_ref()).expect("a doubled branch");
     let (second_points, second) = pursue(&mut doubled.problem, doubled.point, 2);
     let second = second.expect("the second doubling");
     (first_points + second_points, first.point.unknowns.parameter, second.point.unknowns.parameter)

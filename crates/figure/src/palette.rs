@@ -1,6 +1,7 @@
 //! Colours and line weights.
 //!
-//! Okabe & Ito (2002, modified 2008), "Color universal design", without yellow, which thin lines do not carry.
+//! Okabe & Ito (2002, modified 2008), "Color universal design", without yellow, which thin lines do not carry, and with
+//! a dark brown of our own in place of black, in which the legend shows the line styles.
 //! Colour never stands alone: neighbouring branches differ in weight too, and carry their names.
 
 use plotters::style::RGBColor;
@@ -14,7 +15,7 @@ const LINES: [RGBColor; 7] = [
     RGBColor(0x00, 0x72, 0xB2), // blue
     RGBColor(0xD5, 0x5E, 0x00), // vermilion
     RGBColor(0x00, 0x9E, 0x73), // bluish green
-    RGBColor(0x00, 0x00, 0x00), // black
+    RGBColor(0x5C, 0x3A, 0x00), // dark brown
     RGBColor(0xCC, 0x79, 0xA7), // reddish purple
     RGBColor(0xE6, 0x9F, 0x00), // orange
     RGBColor(0x56, 0xB4, 0xE9), // sky blue

@@ -33,7 +33,7 @@ pub(crate) struct Tangent {
 /// Substitutions allowed: explicit steps contract by about one half each.
 const ITERATIONS: usize = 60;
 /// Relative change at which the stages have converged, far below what an exponent needs.
-const CONVERGED: f64 = 1e-12;
+const CONVERGED: f64 = 1e-9;
 /// Stages this large (the disturbance has size 1) are diverging.
 const HOPELESS: f64 = 1e12;
 

@@ -43,8 +43,9 @@ pub(crate) fn merge_len(n: usize) -> usize {
     6 * n * n + n
 }
 
-/// Merges two links (each A then E, n x n row-major): factors into `store`, writes the new link into `left`.
-pub(crate) fn merge(n: usize, left: &mut [f64], right: &[f64], store: &mut [f64]) {
+/// Merges two links (each A then E, n x n row-major): factors into `store`, writes the new link into `left`; `scratch`
+/// has 2n numbers.
+pub(crate) fn merge(n: usize, left: &mut [f64], right: &[f64], store: &mut [f64], scratch: &mut [f64]) {
     let width = 3 * n;
     let (matrix, taus) = store.split_at_mut(6 * n * n);
     let (a_left, e_left) = left.split_at(n * n);
@@ -61,7 +62,7 @@ pub(crate) fn merge(n: usize, left: &mut [f64], right: &[f64], store: &mut [f64]
         bottom[2 * n..].copy_from_slice(&e_right[of]);
     }
     for q in 0..n {
-        taus[q] = reflect_column(n, q, matrix);
+        taus[q] = reflect_column(n, q, matrix, scratch);
     }
     let (a_left, e_left) = left.split_at_mut(n * n);
     for r in 0..n {
@@ -72,19 +73,10 @@ pub(crate) fn merge(n: usize, left: &mut [f64], right: &[f64], store: &mut [f64]
 }
 
 /// One Householder step on column `q` of the stacked matrix, applied to all later columns.
-fn reflect_column(n: usize, q: usize, matrix: &mut [f64]) -> f64 {
+fn reflect_column(n: usize, q: usize, matrix: &mut [f64], scratch: &mut [f64]) -> f64 {
     let width = 3 * n;
-    // A stack buffer for the column: one allocation here would be one in the hot loop.
-    const SMALL: usize = 32;
     let length = 2 * n - q;
-    let mut small = [0.0; SMALL];
-    let mut large = Vec::new();
-    let column: &mut [f64] = if length <= SMALL {
-        &mut small[..length]
-    } else {
-        large.resize(length, 0.0);
-        &mut large
-    };
+    let column = &mut scratch[..length];
     for (r, value) in column.iter_mut().enumerate() {
         *value = matrix[(q + r) * width + q];
     }

@@ -66,6 +66,7 @@ pub struct Cyclic {
     links: Vec<f64>,
     merges: Vec<f64>,
     plan: Vec<Merge>,
+    scratch: Vec<f64>,
 }
 
 impl Cyclic {
@@ -79,6 +80,7 @@ impl Cyclic {
             links: vec![0.0; intervals * 2 * n * n],
             merges: vec![0.0; intervals * chain::merge_len(n)],
             plan: chain::plan(intervals),
+            scratch: vec![0.0; 2 * n],
         }
     }
 
@@ -133,7 +135,8 @@ impl Cyclic {
         for &Merge { left, right, .. } in &self.plan {
             let (head, tail) = self.links.split_at_mut(right * link_len);
             let store = &mut self.merges[right * store_len..(right + 1) * store_len];
-            chain::merge(n, &mut head[left * link_len..(left + 1) * link_len], &tail[..link_len], store);
+            let left = &mut head[left * link_len..(left + 1) * link_len];
+            chain::merge(n, left, &tail[..link_len], store, &mut self.scratch);
         }
         Ok(())
     }

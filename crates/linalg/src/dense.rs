@@ -38,6 +38,45 @@ pub struct Lu {
     row_scale: Vec<f64>,
     odd_swaps: bool,
     work: Vec<f64>,
+    blocked: Option<Blocked>,
+}
+
+/// Storage of faer's factorisation.
+struct Blocked {
+    matrix: Mat<f64>,
+    forward: Vec<usize>,
+    inverse: Vec<usize>,
+    memory: MemBuffer,
+    /// Current order of rows and where each row is, to turn a permutation into swaps.
+    now: Vec<usize>,
+    place: Vec<usize>,
+}
+
+impl Blocked {
+    fn new(size: usize) -> Self {
+        let scratch = factor::lu_in_place_scratch::<usize, f64>(size, size, Par::Seq, Default::default());
+        Self {
+            matrix: Mat::zeros(size, size),
+            forward: vec![0; size],
+            inverse: vec![0; size],
+            memory: MemBuffer::new(scratch),
+            now: vec![0; size],
+            place: vec![0; size],
+        }
+    }
+}
+
+impl Clone for Blocked {
+    /// Fresh storage of the same size; what it holds does not outlive a call.
+    fn clone(&self) -> Self {
+        Self::new(self.forward.len())
+    }
+}
+
+impl std::fmt::Debug for Blocked {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        f.debug_struct("Blocked").field("size", &self.forward.len()).finish_non_exhaustive()
+    }
 }
 
 impl Lu {
@@ -50,6 +89,7 @@ impl Lu {
             row_scale: vec![1.0; size],
             odd_swaps: false,
             work: vec![0.0; size],
+            blocked: (size >= BLOCKED_FROM).then(|| Blocked::new(size)),
         }
     }
 
@@ -71,7 +111,14 @@ impl Lu {
             *scale = 1.0 / largest;
             row.iter_mut().for_each(|value| *value *= *scale);
         }
-        if size < BLOCKED_FROM { self.factor_plain() } else { self.factor_blocked() }
+        match self.blocked.take() {
+            None => self.factor_plain(),
+            Some(mut blocked) => {
+                let regular = self.factor_blocked(&mut blocked);
+                self.blocked = Some(blocked);
+                regular
+            }
+        }
     }
 
     fn factor_plain(&mut self) -> bool {
@@ -106,23 +153,20 @@ impl Lu {
         true
     }
 
-    fn factor_blocked(&mut self) -> bool {
+    fn factor_blocked(&mut self, blocked: &mut Blocked) -> bool {
         let size = self.size;
-        let mut matrix = Mat::from_fn(size, size, |r, c| self.factors[r * size + c]);
-        let (mut forward, mut inverse) = (vec![0usize; size], vec![0usize; size]);
-        let scratch = factor::lu_in_place_scratch::<usize, f64>(size, size, Par::Seq, Default::default());
-        let mut memory = MemBuffer::new(scratch);
-        let (info, permutation) = factor::lu_in_place(
-            matrix.as_mut(),
-            &mut forward,
-            &mut inverse,
-            Par::Seq,
-            MemStack::new(&mut memory),
-            Default::default(),
-        );
+        let Blocked { matrix, forward, inverse, memory, now, place } = blocked;
+        for r in 0..size {
+            for c in 0..size {
+                matrix[(r, c)] = self.factors[r * size + c];
+            }
+        }
+        let stack = MemStack::new(memory);
+        let (info, permutation) =
+            factor::lu_in_place(matrix.as_mut(), forward, inverse, Par::Seq, stack, Default::default());
         self.odd_swaps = info.transposition_count % 2 == 1;
         let (order, _) = permutation.arrays();
-        self.swaps.copy_from_slice(&swaps_of(order));
+        swaps_of(order, (now, place), &mut self.swaps);
         for r in 0..size {
             for c in 0..size {
                 self.factors[r * size + c] = matrix[(r, c)];
@@ -180,20 +224,20 @@ impl Lu {
     }
 }
 
-/// The transpositions (q with `swaps[q]`, in turn) that bring rows into the order `order`.
-fn swaps_of(order: &[usize]) -> Vec<usize> {
-    let mut now: Vec<usize> = (0..order.len()).collect();
-    let mut place: Vec<usize> = now.clone();
-    let mut swaps = Vec::with_capacity(order.len());
+/// The transpositions (row q with `swaps[q]`, in turn) that bring rows into the order `order`; `now` and `place` are
+/// scratch.
+fn swaps_of(order: &[usize], (now, place): (&mut [usize], &mut [usize]), swaps: &mut [usize]) {
+    for (q, (now, place)) in now.iter_mut().zip(place.iter_mut()).enumerate() {
+        (*now, *place) = (q, q);
+    }
     for (q, &wanted) in order.iter().enumerate() {
         let other = place[wanted];
         let here = now[q];
         now.swap(q, other);
         place[wanted] = q;
         place[here] = other;
-        swaps.push(other);
+        swaps[q] = other;
     }
-    swaps
 }
 
 /// Householder reflection that turns `x` into `(beta, 0, ...)`: overwrites `x` by `(beta, v_1, ...)` with

@@ -22,8 +22,8 @@ pub struct Equation {
 
 impl fmt::Display for Equation {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let mark = if self.is_rate { "'" } else { "" };
-        write!(f, "{}{mark} = {}", self.name, self.text)
+        let what = if self.is_rate { "rate of " } else { "" };
+        write!(f, "{what}{} = {}", self.name, self.text)
     }
 }
 

