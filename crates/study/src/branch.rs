@@ -7,11 +7,13 @@ use armilla_follow::{Orientation, Problem};
 use armilla_record::{BRANCH_FORMAT, Branch, End, EndReason, Event, EventKind, Point, Quantity, StoredProfile};
 use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, Doubled, DoublingForm, Located, Measures};
 
+use crate::ends::{end, short};
 use crate::error::StudyError;
 use crate::progress::{Observer, Progress};
 use crate::settings::follow_settings;
+use crate::step_events::{Found, at_parameter};
 use crate::study::Study;
-use crate::walk::{Found, Walk, WalkPlan, WalkSink, Walked, at_parameter, end, short, walk};
+use crate::walk::{Walk, WalkPlan, WalkSink, Walked, walk};
 
 /// Every k-th profile is kept in a branch file; the first and the last always.
 const KEEP_EVERY: usize = 10;

@@ -7,12 +7,14 @@
 mod approach;
 mod branch;
 mod cascade;
+mod ends;
 mod error;
 mod file;
 mod near_miss;
 mod progress;
 mod settings;
 mod start;
+mod step_events;
 mod study;
 mod trace;
 mod walk;

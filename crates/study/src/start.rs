@@ -78,8 +78,16 @@ pub(crate) fn first_cycle(study: &Study, abort: &AtomicBool, observer: &mut dyn 
         parameter_scale: study.range.1 - study.range.0,
     };
     let value = study.start_parameters[study.free];
-    let (problem, point) = CycleProblem::start(spec, settings, &profile, value)
-        .map_err(|fault| StudyError::NoCycle { reason: fault.to_string() })?;
+    let (problem, point) = CycleProblem::start(spec, settings, &profile, value).map_err(|fault| {
+        let reason = if cycle.neutral {
+            "the model is conservative there (its divergence integrates to zero over the settled motion), so cycles come \
+             in families and none can be told from its neighbours; this version follows isolated cycles only"
+                .to_string()
+        } else {
+            fault.to_string()
+        };
+        StudyError::NoCycle { reason }
+    })?;
     Ok(First { problem, point, turns, notes })
 }
 

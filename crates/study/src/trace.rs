@@ -12,8 +12,8 @@ use crate::cascade::cascade;
 use crate::error::StudyError;
 use crate::progress::Observer;
 use crate::start::first_cycle;
+use crate::step_events::LOCATED_BY_BRACKET;
 use crate::study::Study;
-use crate::walk::LOCATED_BY_BRACKET;
 
 /// How a run is to be done.
 pub struct TraceOptions<'a> {

@@ -50,6 +50,9 @@ fn multipliers_agree_with_the_divergence() {
         absolute(&format!("sum of log multipliers of {model} at {at}"), sum, integral, 1e-9 * size.max(1.0));
         assert!(spectrum.trivial_defect < 1e-9, "{spectrum:?}");
         // In the plane the program takes the multiplier from the divergence, and its audit is of maps it does not use.
-        assert!(problem.profile(&cycle).n_states == 2 || spectrum.liouville_defect < 1e-9 * size.max(1.0), "{spectrum:?}");
+        assert!(
+            problem.profile(&cycle).n_states == 2 || spectrum.liouville_defect < 1e-9 * size.max(1.0),
+            "{spectrum:?}"
+        );
     }
 }

@@ -55,7 +55,12 @@ fn expressions_are_printed_by_name() {
     let shown: Vec<String> = model.equations().iter().map(ToString::to_string).collect();
     assert_eq!(
         shown,
-        ["push = a * max(x, y)", "root = sqrt(y - 1)", "rate of x = push - floor(x) * 2", "rate of y = abs(x) * root + root^2"]
+        [
+            "push = a * max(x, y)",
+            "root = sqrt(y - 1)",
+            "rate of x = push - floor(x) * 2",
+            "rate of y = abs(x) * root + root^2"
+        ]
     );
     let sizes = model.sizes();
     assert_eq!((sizes.states, sizes.parameters, sizes.nonzeros), (2, 1, 4));
