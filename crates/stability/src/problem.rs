@@ -13,7 +13,7 @@ use armilla_record::{Point, Profile};
 
 use crate::measure::Measures;
 use crate::point::{CyclePoint, CycleTangent};
-use crate::scale::{first_metric, natural_sizes};
+use crate::scale::{STILL, STILL_AT_FIRST, first_metric, natural_sizes};
 use crate::spectrum::{Spectrum, SpectrumSolver};
 
 /// Index of the fold function in the watch list: the parameter's component of the tangent.
@@ -95,6 +95,14 @@ impl std::fmt::Display for StartFault {
 
 impl std::error::Error for StartFault {}
 
+/// Where the sizes of states that do not move come from.
+pub(crate) enum Sizes<'a> {
+    /// The branch this one springs from.
+    Parent(&'a [f64]),
+    /// The model itself; the number is the share of its size below which a state does not move.
+    Natural(f64),
+}
+
 /// Cycles of one model in one parameter.
 pub struct CycleProblem {
     pub(crate) spec: CycleSpec,
@@ -126,11 +134,11 @@ impl CycleProblem {
         parameter: f64,
     ) -> Result<(Self, CyclePoint), StartFault> {
         // The given profile carries the errors of its origin, the corrected one only roundoff: sizes are read twice.
-        let mut problem = Self::with_metric(spec, settings, None, profile, parameter)?;
+        let mut problem = Self::with_metric(spec, settings, Sizes::Natural(STILL_AT_FIRST), profile, parameter)?;
         let mut point = CyclePoint::from_profile(profile, parameter);
         problem.correct_at(&mut point, parameter).map_err(StartFault::Newton)?;
         let corrected = problem.profile(&point);
-        problem = Self::with_metric(problem.spec, settings, None, &corrected, parameter)?;
+        problem = Self::with_metric(problem.spec, settings, Sizes::Natural(STILL), &corrected, parameter)?;
         // Each round the estimate comes from a better mesh; the choice settles in two or three.
         const ROUNDS: usize = 8;
         for _ in 0..ROUNDS {
@@ -145,21 +153,23 @@ impl CycleProblem {
         Ok((problem, point))
     }
 
-    /// A problem with the metric of `profile`; `parent` are the sizes of the branch it springs from, if any.
+    /// A problem with the metric of `profile`; `sizes` stand in for states that do not move.
     pub(crate) fn with_metric(
         spec: CycleSpec,
         settings: CycleSettings,
-        parent: Option<&[f64]>,
+        sizes: Sizes<'_>,
         profile: &Profile,
         parameter: f64,
     ) -> Result<Self, StartFault> {
         let mut parameters = spec.parameters.clone();
         parameters[spec.free] = parameter;
-        let sizes = match parent {
-            Some(sizes) => sizes.to_vec(),
-            None => natural_sizes(spec.field.as_ref(), &parameters, profile, &spec.typical),
+        let (sizes, still) = match sizes {
+            Sizes::Parent(sizes) => (sizes.to_vec(), STILL),
+            Sizes::Natural(still) => {
+                (natural_sizes(spec.field.as_ref(), &parameters, profile, (&spec.typical, still)), still)
+            }
         };
-        let metric = first_metric(profile, &sizes, spec.parameter_scale).ok_or(StartFault::NoExtent)?;
+        let metric = first_metric(profile, (&sizes, still), spec.parameter_scale).ok_or(StartFault::NoExtent)?;
         let system_spec = SystemSpec {
             field: spec.field.clone(),
             parameters: spec.parameters.clone(),

@@ -9,7 +9,9 @@ use armilla_model::{Batch, Linearisation, VectorField};
 use armilla_record::Profile;
 
 /// A range below this share of the size is roundoff, not motion: Newton's method leaves about 1e-13.
-const STILL: f64 = 1e-9;
+pub(crate) const STILL: f64 = 1e-9;
+/// The same for a cycle as it comes from elsewhere: a state on its way to zero is still that far from it.
+pub(crate) const STILL_AT_FIRST: f64 = 1e-5;
 
 /// A size below this share of the largest is that of a state that died out.
 const VANISHED: f64 = 1e-30;
@@ -20,7 +22,7 @@ pub(crate) fn natural_sizes(
     field: &dyn VectorField,
     parameters: &[f64],
     profile: &Profile,
-    typical: &[f64],
+    (typical, still): (&[f64], f64),
 ) -> Vec<f64> {
     let (n, points) = (profile.n_states, profile.n_nodes());
     let ranges = ranges(profile);
@@ -43,7 +45,7 @@ pub(crate) fn natural_sizes(
     for ((size, range), typical) in sizes.iter_mut().zip(&ranges).zip(typical) {
         *size = size.max(*range);
         // Nothing but roundoff moves it: the size it had before, or any at all.
-        if *size < STILL * typical {
+        if *size < still * typical {
             *size = *typical;
         } else if *size < VANISHED * largest {
             *size = 0.0;
@@ -57,7 +59,7 @@ fn ranges(profile: &Profile) -> Vec<f64> {
 }
 
 /// The metric of a branch: ranges of `profile`, or `sizes` for states that do not move. None where nothing moves.
-pub(crate) fn first_metric(profile: &Profile, sizes: &[f64], parameter_scale: f64) -> Option<Metric> {
+pub(crate) fn first_metric(profile: &Profile, (sizes, still): (&[f64], f64), parameter_scale: f64) -> Option<Metric> {
     let ranges = ranges(profile);
     let largest = ranges.iter().copied().fold(0.0, f64::max);
     let modulus = profile.values.iter().fold(0.0f64, |largest, value| largest.max(value.abs()));
@@ -66,7 +68,7 @@ pub(crate) fn first_metric(profile: &Profile, sizes: &[f64], parameter_scale: f6
     }
     let scale = |(range, size): (&f64, &f64)| match () {
         () if *size > 0.0 => {
-            if *range > STILL * size {
+            if *range > still * size {
                 *range
             } else {
                 *size

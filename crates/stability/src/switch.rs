@@ -12,7 +12,7 @@ use armilla_follow::{Closing, Problem};
 use crate::locate::Located;
 use crate::normal_form::DoublingForm;
 use crate::point::{CyclePoint, CycleTangent};
-use crate::problem::CycleProblem;
+use crate::problem::{CycleProblem, Sizes};
 
 /// The start of a doubled branch.
 pub struct Doubled {
@@ -61,7 +61,7 @@ impl CycleProblem {
     /// [`SwitchFault`].
     pub fn double(&self, located: &Located, form: Option<&DoublingForm>) -> Result<Doubled, SwitchFault> {
         let birth_profile = self.profile(&located.point).repeated(2);
-        let (value, sizes) = (located.point.unknowns.parameter, Some(&self.metric.scales[..]));
+        let (value, sizes) = (located.point.unknowns.parameter, Sizes::Parent(&self.metric.scales));
         let mut settings = self.settings;
         // A number of intervals fixed by the user is per turn.
         settings.mesh.fixed = settings.mesh.fixed.map(|intervals| intervals.saturating_mul(2));
