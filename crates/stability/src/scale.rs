@@ -25,7 +25,9 @@ pub(crate) fn natural_sizes(
     (typical, still): (&[f64], f64),
 ) -> Vec<f64> {
     let (n, points) = (profile.n_states, profile.n_nodes());
-    let ranges = ranges(profile);
+    // A state that is still but has had a size elsewhere counts with that: it would move others by as much.
+    let own = |(range, typical): (f64, &f64)| if range < still * typical { *typical } else { range };
+    let ranges: Vec<f64> = ranges(profile).into_iter().zip(typical).map(own).collect();
     let mut states = vec![0.0; n * points];
     for (point, node) in profile.values.chunks_exact(n).enumerate() {
         node.iter().enumerate().for_each(|(a, value)| states[a * points + point] = *value);

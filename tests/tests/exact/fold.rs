@@ -39,7 +39,11 @@ fn both_circles_and_their_fold_are_exact() {
     assert!((fold.value + 0.25).abs() <= fold.error.expect("an error"), "the error must cover the truth: {fold:?}");
     absolute("period at the fold", fold.period, TAU, 1e-10);
     absolute("radius at the fold", fold.maxima[0], 0.5f64.sqrt(), 1e-9);
-    assert_eq!(a.events.iter().filter(|event| event.kind.is_threshold()).count(), 1, "{:?}", a.events);
+    let thresholds: Vec<&str> =
+        a.events.iter().filter(|event| event.kind.is_threshold()).map(|event| event.name.as_str()).collect();
+    assert_eq!(thresholds, ["a/hopf1", "a/fold1"]);
+    let hopf = event(&traced, "a/hopf1");
+    assert!(hopf.value.abs() <= hopf.error.expect("an error"), "the error must cover the truth: {hopf:?}");
     assert_eq!(fold.kind, EventKind::Fold);
     let EndReason::Equilibrium { value } = a.ends.0.reason else { panic!("{:?}", a.ends) };
     // Extrapolated, not located; the range is 0.9.

@@ -50,4 +50,8 @@ fn the_branch_ends_where_the_circle_is_born() {
     };
     // Exact, by hand: mu = 0. The end is extrapolated, not located; the asked range is 1.
     absolute("birth of the circle", value, 0.0, 1e-9);
+    let hopf = event(&traced, "a/hopf1");
+    assert!(hopf.value.abs() <= hopf.error.expect("an error"), "the error must cover the truth: {hopf:?}");
+    // Exact, by hand: the period there is 2 pi.
+    absolute("period at the birth", hopf.period, TAU, hopf.period_error.expect("an error"));
 }
