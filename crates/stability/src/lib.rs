@@ -4,6 +4,39 @@
 //! multipliers with their two audits; [`TestFunction`] is a fold or a period doubling as one bordered scalar with
 //! its exact derivative; [`CycleProblem::locate`] finds it from a bracket and [`CycleProblem::double`] enters the
 //! doubled branch. This crate knows no files and no figures.
+//!
+//! ```
+//! use armilla_model::Model;
+//! use armilla_record::Profile;
+//! use armilla_stability::{CycleProblem, CycleSettings, CycleSpec};
+//!
+//! // A circle of radius sqrt(mu), period 2 pi, multiplier exp(-4 pi mu).
+//! let text = r#"(
+//!     states: { "x": (begin: 0.5), "y": (begin: 0) },
+//!     parameters: { "mu": (value: 0.25) },
+//!     expressions: { "gap": "mu - x^2 - y^2" },
+//!     rates: { "x": "x*gap - y", "y": "y*gap + x" },
+//! )"#;
+//! let model = Model::parse(text, "circle.model.ron").expect("a model");
+//! let mesh: Vec<f64> = (0..=12).map(|i| i as f64 / 12.0).collect();
+//! let settings = CycleSettings::new(1e-9);
+//! let mut start = Profile { n_states: 2, degree: settings.degree, period: 6.0, mesh, values: Vec::new() };
+//! for time in start.node_times() {
+//!     let (sine, cosine) = (std::f64::consts::TAU * time).sin_cos();
+//!     start.values.extend([0.45 * cosine, 0.45 * sine]);
+//! }
+//! let spec = CycleSpec {
+//!     field: model.field(),
+//!     parameters: model.values(),
+//!     free: 0,
+//!     typical: vec![0.0; 2],
+//!     parameter_scale: 1.0,
+//! };
+//! let (mut problem, cycle) = CycleProblem::start(spec, settings, &start, 0.25).expect("a cycle near the guess");
+//! let point = problem.describe(&cycle, 1, 0.0).expect("multipliers");
+//! assert!((point.period - std::f64::consts::TAU).abs() < 1e-11);
+//! assert!((point.multipliers[0].log_modulus + std::f64::consts::PI).abs() < 1e-9);
+//! ```
 
 mod locate;
 mod measure;

@@ -3,6 +3,22 @@
 //! A study file says which model, where to start, what to follow and how far. [`Study::read`] checks it against the
 //! model; [`trace()`] does it: start, follow, locate, switch, write. This crate does not know how a cycle is computed
 //! nor how a figure is drawn.
+//!
+//! ```
+//! use armilla_model::Source;
+//! use armilla_study::{DEFAULT_ACCURACY, parse};
+//!
+//! let text = r#"(
+//!     model: "level.model.ron",
+//!     start: Settle(at: { "gain": 1.0 }),
+//!     follow: (parameter: "gain", from: 0.5, to: 4.0),
+//! )"#;
+//! let study = parse(Source { file: "level.study.ron", text }).expect("every other field has a default");
+//! assert_eq!(study.accuracy, DEFAULT_ACCURACY);
+//!
+//! let wrong = parse(Source { file: "level.study.ron", text: &text.replace("follow", "folow") });
+//! assert!(wrong.expect_err("no such field").to_string().starts_with("level.study.ron:4:"));
+//! ```
 
 mod approach;
 mod branch;
