@@ -3,10 +3,28 @@
 use armilla_record::Branch;
 
 use crate::error::FigureError;
-use crate::spec::Figure;
+use crate::page::points;
+use crate::range::Asked;
+use crate::spec::{Figure, Measure};
 use crate::{diagram, portrait};
 
 impl Figure {
+    /// Checks what can be checked before there is anything to draw: ranges and width.
+    ///
+    /// # Errors
+    /// [`FigureError::Range`] or [`FigureError::Width`].
+    pub fn check(&self) -> Result<(), FigureError> {
+        let (x, y, logarithmic, width) = match self {
+            Figure::Diagram(diagram) => {
+                let logarithmic = diagram.logarithmic || diagram.measure == Measure::LargestMultiplier;
+                (diagram.x, diagram.y, logarithmic, diagram.width)
+            }
+            Figure::Portrait(portrait) => (portrait.x, portrait.y, false, portrait.width),
+        };
+        Asked::new(x, y, logarithmic)?;
+        points(width).map(|_| ())
+    }
+
     /// The figure as the text of an SVG file.
     ///
     /// The branches are those of one study, in the order in which they are to be named.

@@ -240,6 +240,9 @@ impl Place<'_> {
     }
 
     fn figures(&self, model: &Model, figures: &[Figure]) -> Result<(), Diagnostic> {
+        if let Some(fault) = figures.iter().find_map(|figure| figure.check().err()) {
+            return Err(self.error("figures", "", fault.to_string()));
+        }
         let states: Vec<&str> = model.states().iter().map(|state| state.name.as_str()).collect();
         let asked = figures.iter().flat_map(|figure| match figure {
             Figure::Diagram(diagram) => diagram.measure.state().into_iter().collect::<Vec<_>>(),
