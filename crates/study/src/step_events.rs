@@ -50,7 +50,9 @@ pub(crate) fn events_of_step(
     // The parameter turns back, yet no multiplier changes side: the mirror image of this branch goes on from there.
     let turns_at_crossing =
         step.unstable.0 == step.unstable.1 && step.crossings.len() == 1 && step.crossings[0].index == WATCH_FOLD;
-    for crossing in &step.crossings {
+    // Where none is near +1 at all, the parameter stands still to roundoff and its direction is noise.
+    let idle = turns_at_crossing && !is_near_one(problem, after) && !is_near_one(problem, before);
+    for crossing in step.crossings.iter().filter(|_| !idle) {
         let kind = match crossing.index {
             WATCH_FOLD => CriticalKind::Fold,
             WATCH_DOUBLING => CriticalKind::Doubling,
@@ -76,6 +78,17 @@ pub(crate) fn events_of_step(
         found.push(landing_event(problem, landing, after, plan));
     }
     found
+}
+
+/// Whether some real multiplier is near +1, as it must be beside a crossing of branches.
+fn is_near_one(problem: &mut CycleProblem, station: &CycleStation) -> bool {
+    /// |log mu| that no multiplier stays beyond within a stride of a crossing.
+    const NEAR: f64 = 1.0;
+    problem
+        .spectrum(&station.point)
+        .ok()
+        .and_then(|spectrum| spectrum.nearest_to_one())
+        .is_some_and(|log| log.abs() < NEAR)
 }
 
 /// Note of an event that its bracket holds to the asked accuracy.
