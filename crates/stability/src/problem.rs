@@ -311,7 +311,7 @@ impl CycleProblem {
     /// true where it changed.
     fn adapt_metric(&mut self, point: &CyclePoint) -> bool {
         let profile = self.profile(point);
-        let ranges: Vec<f64> = profile.extremes().into_iter().map(|(low, high)| high - low).collect();
+        let ranges = profile.node_ranges();
         self.largest.iter_mut().zip(&ranges).for_each(|(size, range)| *size = size.max(*range));
         // Scales never fall far below the largest size seen: a cycle that shrinks to an equilibrium must get there.
         let wanted = ranges.iter().zip(&self.largest).map(|(range, largest)| range.max(SHRINK_TO * largest));
