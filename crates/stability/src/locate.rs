@@ -143,7 +143,12 @@ impl CycleProblem {
 
     /// Roundoff of a scalar of the last corrected point: that of the rows through the conditioning, and of the number.
     fn rounding(&mut self, scalar: Scalar, value: f64) -> f64 {
-        ROUNDOFF_MARGIN * self.newton.roundoff(&self.system, scalar) + f64::EPSILON * value.abs()
+        let scale = match scalar {
+            Scalar::Parameter => self.metric.parameter_scale,
+            Scalar::Period => 0.0,
+        };
+        ROUNDOFF_MARGIN * self.newton.roundoff(&self.system, scalar)
+            + COHERENT_UNITS * f64::EPSILON * value.abs().max(scale)
     }
 
     /// A station halfway along the branch between two stations.
@@ -202,6 +207,9 @@ impl CycleProblem {
 /// the difference and the truth. Twice that, since the roundings of the basis tables are the same in every interval and
 /// add up instead of cancelling: the doubling of X3 was found a little beyond four from its exact place.
 const ROUNDOFF_MARGIN: f64 = 8.0;
+/// Units in the last place, of the value or of the range of its parameter, for rounding that acts on every row alike and
+/// that the sum of independent errors leaves out: the basis tables are correct to a few units each.
+const COHERENT_UNITS: f64 = 16.0;
 
 fn halved(mesh: &[f64]) -> Vec<f64> {
     let mut out = Vec::with_capacity(2 * mesh.len());
