@@ -204,8 +204,8 @@ impl CycleProblem {
 }
 
 /// Both the coarse and the fine value carry roundoff of the estimated size as a standard deviation; four of them cover
-/// the difference and the truth. Twice that, since the roundings of the basis tables are the same in every interval and
-/// add up instead of cancelling: the doubling of X3 was found a little beyond four from its exact place.
+/// the difference and the truth if rows round independently. Twice that, since they need not: on X3 the doubling was
+/// found a little beyond four from its exact place.
 const ROUNDOFF_MARGIN: f64 = 8.0;
 /// Units in the last place, of the value or of the range of its parameter, for rounding that acts on every row alike and
 /// that the sum of independent errors leaves out: the basis tables are correct to a few units each.
