@@ -22,6 +22,7 @@
 //! #     value: 1.0 + 0.1 * k as f64, period: 6.3, turns: 1, distance: k as f64, unstable_count: 0,
 //! #     trivial_defect: 0.0, liouville_defect: 0.0, profile_error: 0.0, multipliers: vec![], intervals: 20, degree: 4,
 //! #     maxima: vec![(0.1 * k as f64).sqrt()], minima: vec![0.0], means: vec![0.0], spreads: vec![0.0],
+//! #     ..Point::default()
 //! # };
 //! # let branch = Branch {
 //! #     format: 1, armilla: String::new(), name: "a".into(), born_at: None, model_title: "A tank".into(),

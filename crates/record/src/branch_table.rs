@@ -21,6 +21,10 @@ const FIRST_COLUMNS: [&str; 9] = [
     "profile_error",
 ];
 
+/// The columns after them.
+const LAST_COLUMNS: [&str; 7] =
+    ["degree", "intervals", "choice", "reached", "unresolved_count", "unresolved_below", "unresolved_log_sum"];
+
 /// Writes the table of a branch, atomically.
 ///
 /// # Errors
@@ -38,6 +42,7 @@ pub fn branch_columns(branch: &Branch) -> Vec<String> {
     for k in 1..=n_multipliers(branch) {
         columns.extend(["log_modulus", "angle"].map(|part| format!("multiplier{k}_{part}")));
     }
+    columns.extend(LAST_COLUMNS.map(String::from));
     columns
 }
 
@@ -57,7 +62,8 @@ fn table(out: &mut dyn Write, branch: &Branch) -> io::Result<()> {
             let multiplier = point.multipliers.get(i);
             [multiplier.map(|m| &m.log_modulus), multiplier.map(|m| &m.angle)]
         });
-        writer.write_record(cells.chain(states.chain(multipliers).map(|value| cell(value.copied()))))?;
+        let middle = states.chain(multipliers).map(|value| cell(value.copied()));
+        writer.write_record(cells.chain(middle).chain(last_cells(point)))?;
     }
     writer.flush()
 }
@@ -73,6 +79,18 @@ fn first_cells(k: usize, point: &Point) -> [String; FIRST_COLUMNS.len()] {
         cell(Some(point.trivial_defect)),
         cell(Some(point.liouville_defect)),
         cell(Some(point.profile_error)),
+    ]
+}
+
+fn last_cells(point: &Point) -> [String; LAST_COLUMNS.len()] {
+    [
+        point.degree.to_string(),
+        point.intervals.to_string(),
+        point.choice.word().into(),
+        point.reached.word().into(),
+        point.unresolved.map_or(0, |unresolved| unresolved.count).to_string(),
+        cell(point.unresolved.map(|unresolved| unresolved.below)),
+        cell(point.unresolved.map(|unresolved| unresolved.log_sum)),
     ]
 }
 

@@ -16,7 +16,7 @@ use crate::{Branch, End, EndReason, Event, Multiplier, Point, Profile, Quantity,
 pub(crate) const WHAT: &str = "branch";
 
 /// Format version of the branch files this crate writes.
-pub const BRANCH_FORMAT: u32 = 1;
+pub const BRANCH_FORMAT: u32 = 2;
 
 /// Writes a branch file, atomically.
 ///
@@ -36,12 +36,16 @@ pub fn write_branch_file(path: &Path, branch: &Branch) -> Result<(), RecordError
 /// [`RecordError::Inconsistent`].
 pub fn parse_branch(path: &Path, bytes: &[u8]) -> Result<Branch, RecordError> {
     let text = open_sealed(path, bytes, WHAT, BRANCH_FORMAT)?;
-    let branch: Branch = ron::from_str(text).map_err(|error| RecordError::Malformed {
+    let mut branch: Branch = ron::from_str(text).map_err(|error| RecordError::Malformed {
         path: path.to_path_buf(),
         line: error.span.start.line,
         column: error.span.start.col,
         what: error.code.to_string(),
     })?;
+    // Fields that format 1 does not have take the values that say so; from here on the branch is one of today's.
+    if (1..BRANCH_FORMAT).contains(&branch.format) {
+        branch.format = BRANCH_FORMAT;
+    }
     check_branch(&branch).map_err(|what| RecordError::inconsistent(path, what))?;
     Ok(branch)
 }
@@ -224,6 +228,24 @@ fn point_text(pen: &mut Pen<'_>, point: &Point) -> io::Result<()> {
     list(pen, "multipliers", &point.multipliers, multiplier_text)?;
     pen.line()?;
     named_counts(pen, &[("intervals", point.intervals), ("degree", point.degree)])?;
+    pen.raw(" ")?;
+    for (name, word) in [("choice", point.choice.word()), ("reached", point.reached.word())] {
+        pen.name(name)?;
+        pen.variant(word)?;
+        pen.raw(",")?;
+        pen.raw(if name == "choice" { " " } else { "" })?;
+    }
+    pen.field("unresolved")?;
+    match point.unresolved {
+        Some(unresolved) => {
+            pen.raw("Some((")?;
+            named_counts(pen, &[("count", unresolved.count)])?;
+            pen.raw(" ")?;
+            named_floats(pen, &[("below", unresolved.below), ("log_sum", unresolved.log_sum)])?;
+            pen.raw(")),")?;
+        }
+        None => pen.raw("None,")?,
+    }
     pen.close(")")
 }
 

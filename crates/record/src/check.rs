@@ -85,6 +85,13 @@ fn check_point(point: &Point, n: usize) -> Result<(), String> {
     if point.unstable_count > point.multipliers.len() {
         return Err("more multipliers are unstable than there are".into());
     }
+    if let Some(unresolved) = point.unresolved {
+        finite("modulus below which multipliers are not resolved", unresolved.below)?;
+        not_nan("log_sum of the multipliers that are not resolved", unresolved.log_sum)?;
+        if unresolved.below > 0.0 || unresolved.count == 0 {
+            return Err("multipliers that are not resolved are some, and inside the unit circle".into());
+        }
+    }
     point.multipliers.iter().try_for_each(check_multiplier)
 }
 

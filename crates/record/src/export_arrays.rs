@@ -100,6 +100,13 @@ fn points(archive: &mut Archive<'_>, branch: &Branch) -> io::Result<()> {
     archive.rows("point_min", points, n, |point| point.minima.clone())?;
     archive.rows("point_mean", points, n, |point| point.means.clone())?;
     archive.rows("point_spread", points, n, |point| point.spreads.clone())?;
+    archive.column("point_degree", points, |point| point.degree as u64)?;
+    archive.column("point_intervals", points, |point| point.intervals as u64)?;
+    archive.texts("point_choice", &points.iter().map(|point| point.choice.word()).collect::<Vec<_>>())?;
+    archive.texts("point_reached", &points.iter().map(|point| point.reached.word()).collect::<Vec<_>>())?;
+    archive.column("point_unresolved_count", points, |point| point.unresolved.map_or(0, |u| u.count as u64))?;
+    archive.column("point_unresolved_below", points, |point| point.unresolved.map_or(f64::NAN, |u| u.below))?;
+    archive.column("point_unresolved_log_sum", points, |point| point.unresolved.map_or(f64::NAN, |u| u.log_sum))?;
     let width = points.iter().map(|point| point.multipliers.len()).max().unwrap_or(0);
     let padded = |of: fn(&Multiplier) -> f64| {
         move |point: &Point| {

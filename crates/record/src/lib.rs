@@ -32,6 +32,9 @@
 //!     multipliers: vec![Multiplier { log_modulus: f64::NEG_INFINITY, angle: 0.0 }],
 //!     intervals: 20,
 //!     degree: 4,
+//!     choice: MeshReason::Start,
+//!     reached: Reached::Accuracy,
+//!     unresolved: None,
 //! };
 //! let end = |value: f64| End { reason: EndReason::Edge, value, words: "end of the range".into() };
 //! let branch = Branch {
@@ -101,7 +104,7 @@ pub use event::{Criticality, Event, EventKind};
 pub use export::ExportFormat;
 pub use file_name::branch_file_stem;
 pub use journal::{Journal, JournalContent, JournalEntry};
-pub use point::{Multiplier, Point};
+pub use point::{MeshReason, Multiplier, Point, Reached, Unresolved};
 pub use profile::{Evaluator, Profile, ProfileFault, barycentric_weights, lagrange_at, node_quadrature, nodes};
 pub use results::Results;
 pub use threshold::{THRESHOLD_COLUMNS, Threshold, parse_threshold_table, write_threshold_table};

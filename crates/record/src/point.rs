@@ -13,7 +13,7 @@ pub struct Multiplier {
 }
 
 /// One cycle of a branch.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub struct Point {
     /// Value of the followed parameter, in its unit.
@@ -40,12 +40,102 @@ pub struct Point {
     pub means: Vec<f64>,
     /// Root mean square of each state about its mean.
     pub spreads: Vec<f64>,
-    /// The n-1 multipliers besides the trivial one, largest modulus first.
+    /// The n-1 multipliers besides the trivial one and those that are not resolved, largest modulus first.
     pub multipliers: Vec<Multiplier>,
     /// Mesh intervals of the computation.
     pub intervals: usize,
     /// Degree of the pieces.
     pub degree: usize,
+    /// Why the degree and the number of intervals are what they are.
+    #[serde(default)]
+    pub choice: MeshReason,
+    /// Whether the profile has the asked accuracy, and what keeps it from it where it has not.
+    #[serde(default)]
+    pub reached: Reached,
+    /// Multipliers too small to be resolved, where there are some; they are missing from `multipliers`.
+    #[serde(default)]
+    pub unresolved: Option<Unresolved>,
+}
+
+/// Why a point has the degree and the number of intervals it has.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum MeshReason {
+    /// A file of format 1 does not tell.
+    #[default]
+    Unstated,
+    /// Chosen for the first cycle of the branch.
+    Start,
+    /// Those of the point before suit this one too.
+    Kept,
+    /// Fixed by the study.
+    Given,
+    /// More intervals, or moved ones: the error of the profile had grown beyond the accuracy.
+    ProfileError,
+    /// Fewer intervals: the profile needs no more.
+    Ease,
+    /// Another degree: it reaches the accuracy with less work.
+    Work,
+    /// More intervals: the multipliers missed Liouville's formula.
+    LiouvilleDefect,
+}
+
+impl MeshReason {
+    /// The word in files.
+    pub fn word(self) -> &'static str {
+        match self {
+            Self::Unstated => "unstated",
+            Self::Start => "start",
+            Self::Kept => "kept",
+            Self::Given => "given",
+            Self::ProfileError => "profile-error",
+            Self::Ease => "ease",
+            Self::Work => "work",
+            Self::LiouvilleDefect => "liouville-defect",
+        }
+    }
+}
+
+/// Whether a profile has the asked accuracy.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Reached {
+    /// A file of format 1 does not tell.
+    #[default]
+    Unstated,
+    /// It has.
+    Accuracy,
+    /// No: the rounding of 64-bit numbers stands in the way.
+    RoundoffFloor,
+    /// No: the largest mesh allowed is too coarse.
+    MeshLimit,
+    /// No: the mesh fixed by the study is too coarse.
+    GivenMesh,
+}
+
+impl Reached {
+    /// The word in files.
+    pub fn word(self) -> &'static str {
+        match self {
+            Self::Unstated => "unstated",
+            Self::Accuracy => "accuracy",
+            Self::RoundoffFloor => "roundoff-floor",
+            Self::MeshLimit => "mesh-limit",
+            Self::GivenMesh => "given-mesh",
+        }
+    }
+}
+
+/// Multipliers that are too small to be told from each other and from zero; all lie inside the unit circle.
+#[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Unresolved {
+    /// How many.
+    pub count: usize,
+    /// Natural logarithm of the modulus that all of them are below.
+    pub below: f64,
+    /// Sum of the logarithms of their moduli, from Liouville's formula.
+    pub log_sum: f64,
 }
 
 impl Point {

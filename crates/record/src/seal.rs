@@ -69,7 +69,7 @@ pub(crate) fn write_sealed(
 ///
 /// # Errors
 /// [`RecordError::Malformed`] for a file that begins otherwise, [`RecordError::Format`] for a version
-/// this one does not know, [`RecordError::Damaged`] for a sum that is missing or does not fit.
+/// later than this one knows, [`RecordError::Damaged`] for a sum that is missing or does not fit.
 pub(crate) fn open_sealed<'a>(path: &Path, bytes: &'a [u8], what: &str, known: u32) -> Result<&'a str, RecordError> {
     let damaged = |what| RecordError::Damaged { path: path.to_path_buf(), what };
     let found = head_format(bytes, what).ok_or_else(|| RecordError::Malformed {
@@ -84,7 +84,7 @@ pub(crate) fn open_sealed<'a>(path: &Path, bytes: &'a [u8], what: &str, known: u
         None => None,
     };
     // A later format may be sealed in another way, so its version is told before a missing sum is.
-    if found != known {
+    if found == 0 || found > known {
         return Err(RecordError::Format { path: path.to_path_buf(), found, known });
     }
     if body.is_none() {

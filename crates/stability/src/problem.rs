@@ -266,6 +266,7 @@ impl CycleProblem {
             multipliers: spectrum.multipliers,
             intervals: profile.intervals(),
             degree: profile.degree,
+            ..Point::default()
         })
     }
 

@@ -60,6 +60,7 @@ fn point(s: f64, cycle: &Cycle) -> Point {
         multipliers: vec![Multiplier { log_modulus: cycle.log_modulus, angle: std::f64::consts::PI }],
         intervals: 20,
         degree: 4,
+        ..Point::default()
     }
 }
 

@@ -67,9 +67,9 @@ fn a_lost_line_and_a_changed_digit_are_called_damage() {
 #[test]
 fn a_later_format_is_refused_in_words() {
     let text = String::from_utf8(bytes_of(&branch(5, "a", 3))).expect("text");
-    let later = text.replacen("format 1", "format 7", 1);
+    let later = text.replacen("format 2", "format 7", 1);
     let error = parse(&resealed(&later)).expect_err("format 7");
-    let words = "branches/a.ron has format version 7, this armilla reads versions up to 1; use a newer armilla";
+    let words = "branches/a.ron has format version 7, this armilla reads versions up to 2; use a newer armilla";
     assert_eq!(error.to_string(), words);
 }
 

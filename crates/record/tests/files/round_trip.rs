@@ -5,7 +5,7 @@ use std::path::Path;
 
 use armilla_record::*;
 
-use crate::sample::{all_bits, branch};
+use crate::sample::{all_bits, branch, branch_of_today};
 
 #[test]
 fn branches_of_random_bits_read_back_to_the_last_bit() {
@@ -13,7 +13,7 @@ fn branches_of_random_bits_read_back_to_the_last_bit() {
     let path = place.path().join("a.ron");
     let mut checked = 0;
     for seed in 0..250 {
-        let written = branch(seed, "a.doubling1", 1 + seed as usize % 9);
+        let written = branch_of_today(seed, "a.doubling1", 1 + seed as usize % 9);
         write_branch_file(&path, &written).expect("a sound branch");
         let read = parse_branch(&path, &fs::read(&path).expect("it is there")).expect("a sound file");
         assert_eq!(read, written, "seed {seed}");
@@ -34,10 +34,20 @@ fn a_kept_file_of_format_1_still_reads() {
     assert_eq!(all_bits(&read), all_bits(&written));
 }
 
+/// The same for format 2.
+#[test]
+fn a_kept_file_of_format_2_still_reads() {
+    let kept = include_bytes!("branch-format-2.ron");
+    let read = parse_branch(Path::new("branch-format-2.ron"), kept).expect("format 2 is known");
+    let written = branch_of_today(15, "a.doubling1", 4);
+    assert_eq!(read, written);
+    assert_eq!(all_bits(&read), all_bits(&written));
+}
+
 /// Outside: any RON reader, here with no type of ours; the two comment lines do not disturb it.
 #[test]
 fn the_file_is_plain_ron_with_no_line_beyond_reason() {
-    let text = include_str!("branch-format-1.ron");
+    let text = include_str!("branch-format-2.ron");
     ron::from_str::<ron::Value>(text).expect("plain RON");
     let longest = text.lines().map(str::len).max();
     assert!(longest < Some(170), "{longest:?}");
@@ -59,7 +69,7 @@ fn the_table_of_a_branch_reads_back_to_the_last_bit() {
     let place = tempfile::tempdir().expect("a temporary folder");
     let path = place.path().join("a.csv");
     for seed in 0..50 {
-        let written = branch(seed, "a", 6);
+        let written = branch_of_today(seed, "a", 6);
         write_branch_table(&path, &written).expect("a table");
         let mut reader = csv::Reader::from_path(&path).expect("a table");
         let header = reader.headers().expect("a header").clone();
@@ -74,6 +84,11 @@ fn the_table_of_a_branch_reads_back_to_the_last_bit() {
             assert_eq!(cell("point"), k.to_string());
             assert_eq!(bits("value"), point.value.to_bits());
             assert_eq!(bits("liouville_defect"), point.liouville_defect.to_bits());
+            assert_eq!(cell("degree"), point.degree.to_string());
+            assert_eq!(cell("choice"), point.choice.word());
+            assert_eq!(cell("reached"), point.reached.word());
+            let below = point.unresolved.map_or(String::new(), |u| format!("{:?}", u.below));
+            assert_eq!(cell("unresolved_below"), below);
             assert_eq!(cell("stable"), if point.unstable_count == 0 { "true" } else { "false" });
             for (i, state) in written.states.iter().enumerate() {
                 assert_eq!(bits(&format!("{}_max", state.name)), point.maxima[i].to_bits());

@@ -90,7 +90,24 @@ fn point(bits: &mut Bits, n: usize, distance: f64) -> Point {
         multipliers,
         intervals: bits.below(5000),
         degree: bits.below(9),
+        ..Point::default()
     }
+}
+
+/// A branch as [`branch`] gives it, with what format 2 added.
+pub fn branch_of_today(seed: u64, name: &str, n_points: usize) -> Branch {
+    use MeshReason::*;
+    let choices = [Start, Kept, Given, ProfileError, Ease, Work, LiouvilleDefect];
+    let reached = [Reached::Accuracy, Reached::RoundoffFloor, Reached::MeshLimit, Reached::GivenMesh];
+    let mut branch = branch(seed, name, n_points);
+    let bits = &mut Bits(seed + 77);
+    for point in &mut branch.points {
+        (point.choice, point.reached) = (choices[bits.below(7)], reached[bits.below(4)]);
+        let some = bits.below(2) == 0;
+        point.unresolved =
+            some.then(|| Unresolved { count: 1 + bits.below(5), below: -bits.finite().abs(), log_sum: bits.finite() });
+    }
+    branch
 }
 
 fn event(bits: &mut Bits, branch: &str, number: usize, n: usize, distance: f64) -> Event {
@@ -176,6 +193,7 @@ pub fn all_bits(branch: &Branch) -> Vec<u64> {
         all.extend([p.value, p.period, p.distance, p.trivial_defect, p.liouville_defect, p.profile_error]);
         all.extend(p.maxima.iter().chain(&p.minima).chain(&p.means).chain(&p.spreads));
         all.extend(p.multipliers.iter().flat_map(|m| [m.log_modulus, m.angle]));
+        all.extend(p.unresolved.iter().flat_map(|u| [u.below, u.log_sum]));
     }
     for e in &branch.events {
         all.extend([e.value, e.period, e.distance]);

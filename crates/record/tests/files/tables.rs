@@ -12,12 +12,14 @@ fn small() -> Branch {
     b
 }
 
-/// Outside: the results table of the interface, written out for three states and two multipliers.
+/// Outside: the results table of the interface, written out for three states and two multipliers, with the columns
+/// added since at its end.
 #[test]
 fn branch_columns_are_those_of_the_interface() {
     let wanted = "point,value,period,turns,stable,unstable_count,trivial_defect,liouville_defect,profile_error,\
                   level_max,level_min,level_mean,flow_max,flow_min,flow_mean,valve_max,valve_min,valve_mean,\
-                  multiplier1_log_modulus,multiplier1_angle,multiplier2_log_modulus,multiplier2_angle";
+                  multiplier1_log_modulus,multiplier1_angle,multiplier2_log_modulus,multiplier2_angle,\
+                  degree,intervals,choice,reached,unresolved_count,unresolved_below,unresolved_log_sum";
     assert_eq!(branch_columns(&small()).join(","), wanted);
     let place = tempfile::tempdir().expect("a temporary folder");
     let path = place.path().join("a.csv");
@@ -58,11 +60,12 @@ fn missing_multipliers_leave_their_cells_empty() {
     let mut b = small();
     b.points[1].unstable_count = 0;
     b.points[1].multipliers.clear();
+    (b.points[1].degree, b.points[1].intervals) = (5, 40);
     let place = tempfile::tempdir().expect("a temporary folder");
     let path = place.path().join("a.csv");
     write_branch_table(&path, &b).expect("a table");
     let text = fs::read_to_string(path).expect("there");
-    assert!(text.lines().nth(2).expect("the row").ends_with(",,,"), "{text}");
+    assert!(text.lines().nth(2).expect("the row").ends_with(",,,,5,40,unstated,unstated,0,,"), "{text}");
 }
 
 fn with_events(name: &str, events: &[(&str, f64)]) -> Branch {
