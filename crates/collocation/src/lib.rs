@@ -34,6 +34,7 @@
 //! ```
 
 mod gauss;
+mod linear_mesh;
 mod mesh;
 mod metric;
 mod newton;
@@ -43,6 +44,7 @@ mod variational;
 
 pub use gauss::{gauss, radau};
 pub use mesh::{ErrorEstimate, MeshChoice, MeshSettings, estimate_error, interpolate_nodes, remesh};
+pub use linear_mesh::TooStiff;
 pub use metric::Metric;
 pub use newton::{
     Closing, Failure, Iteration, LinearClosing, NewtonSettings, Report, Scalar, Task, Workspace, correct, correct_with,
@@ -50,4 +52,4 @@ pub use newton::{
 };
 pub use system::{Fault, Iterate, Row, System, SystemSpec, Variation};
 pub use tables::Tables;
-pub use variational::{Variational, VariationalMaps};
+pub use variational::{MapsFault, Variational, VariationalMaps};

@@ -264,6 +264,7 @@ impl CycleProblem {
             means: measures.means,
             spreads: measures.spreads,
             multipliers: spectrum.multipliers,
+            unresolved: spectrum.unresolved,
             intervals: profile.intervals(),
             degree: profile.degree,
             ..Point::default()
