@@ -14,15 +14,15 @@ use armilla_linalg::{PeriodicSchur, ScaledMultiplier};
 const EASY: usize = 16;
 /// The same for a whole cycle: below so many pieces asking costs as much as cutting.
 const EASY_IN_ALL: usize = 1024;
-/// Pieces of a whole cycle spent on merely damped directions. More resolve stronger damping, at a cost in proportion; with
-/// degree 6 they carry rates up to some 20 000 over the period, beyond which multipliers are not resolved.
-const MOST_FOR_DAMPED: usize = 1 << 14;
-/// Pieces of a whole cycle spent on directions that decide about stability. Beyond, the multipliers fail.
-const MOST: usize = 1 << 16;
-/// Fineness at which the pieces allowed must do: one refinement is needed to see what is resolved.
-const AFFORDED_AT: f64 = 2.0;
-/// Largest share of |lambda| that |Im lambda| may be, nearly, of a direction called damped or repelling: -Re lambda is at
-/// least half of |lambda|, well inside the sector where Radau schemes damp as they should.
+/// Pieces of a whole cycle spent on merely damped directions, at fineness 1. More resolve stronger damping, at a cost in
+/// proportion; with degree 6 they carry rates up to some 12 000 over the period, beyond which multipliers are not
+/// resolved.
+const MOST_FOR_DAMPED: usize = 1 << 12;
+/// Pieces of a whole cycle at any fineness, all of them perhaps for directions that decide about stability. Beyond, the
+/// multipliers fail; a piece takes some microseconds for three states, and its map is kept.
+const MOST: usize = 1 << 17;
+/// Least share of |lambda| that |Re lambda| is of a direction called damped or repelling. Slower ones wind round so often
+/// while they decay that an L-stable scheme would decide their side.
 const SECTOR: f64 = 0.5;
 
 /// How one mesh interval is passed.
@@ -71,16 +71,18 @@ impl std::fmt::Display for TooStiff {
 
 impl std::error::Error for TooStiff {}
 
-/// Jacobians at some places of every mesh interval.
+/// Jacobians at some places of every mesh interval, as they are evaluated.
 pub(crate) struct Samples<'a> {
     /// Lengths `h T` of the mesh intervals.
     pub lengths: &'a [f64],
     /// Places per interval.
     pub per_interval: usize,
-    /// Scaled Jacobians, n x n row-major each, interval by interval.
-    pub matrices: &'a [f64],
-    /// Number of states n.
-    pub n: usize,
+    /// Row and column of each entry.
+    pub entries: &'a [(usize, usize)],
+    /// Entry by entry the values at all places, interval by interval.
+    pub jacobian: &'a [f64],
+    /// Sizes of the n states.
+    pub scales: &'a [f64],
 }
 
 /// Rates of one mesh interval.
@@ -127,14 +129,14 @@ impl LinearMesh {
 
     /// Directions that may be dropped and the rates that are left, from the eigenvalues on one interval.
     fn rates(&mut self, samples: &Samples<'_>, interval: usize, norm: f64) -> Rates {
-        let n = samples.n;
+        let n = samples.scales.len();
         // Resolved by a piece anyhow.
         if norm * samples.lengths[interval] <= self.reach {
             return Rates { repelling: false, by_dropped: vec![norm; n + 1] };
         }
         let mut spectra = Vec::with_capacity(samples.per_interval);
-        for matrix in samples.of(interval) {
-            if self.schur.multipliers(n, matrix, &mut self.found).is_err() {
+        for place in samples.places(interval) {
+            if self.schur.multipliers(n, &samples.matrix(place), &mut self.found).is_err() {
                 return Rates { repelling: false, by_dropped: vec![norm; n + 1] };
             }
             // Modulus and the cosine of the angle: largest modulus first.
@@ -165,14 +167,13 @@ impl LinearMesh {
             let pieces = |(rates, length): (&Rates, &f64)| self.pieces(rates, *length, dropped, fineness);
             rates.iter().zip(samples.lengths).map(pieces).sum()
         };
-        let afforded = |dropped: &usize| total(*dropped, fineness.max(AFFORDED_AT)) <= MOST_FOR_DAMPED as f64;
-        if let Some(dropped) = (1..=samples.n).find(afforded) {
+        let n = samples.scales.len();
+        let afforded = |dropped: &usize| total(*dropped, 1.0) <= MOST_FOR_DAMPED as f64;
+        let dropped = (1..=n).find(afforded).unwrap_or(n);
+        if total(dropped, fineness) <= MOST as f64 {
             return Ok(dropped);
         }
-        if total(samples.n, fineness) <= MOST as f64 {
-            return Ok(samples.n);
-        }
-        let rate = |interval: usize| rates[interval].by_dropped[samples.n] * samples.lengths[interval];
+        let rate = |interval: usize| rates[interval].by_dropped[n] * samples.lengths[interval];
         let worst = (0..rates.len()).max_by(|a, b| rate(*a).total_cmp(&rate(*b)));
         Err(TooStiff { interval: worst.unwrap_or(0) })
     }
@@ -196,19 +197,39 @@ impl LinearMesh {
 }
 
 impl Samples<'_> {
-    fn of(&self, interval: usize) -> std::slice::ChunksExact<'_, f64> {
-        let size = self.n * self.n * self.per_interval;
-        self.matrices[interval * size..(interval + 1) * size].chunks_exact(self.n * self.n)
+    /// Places of one interval.
+    fn places(&self, interval: usize) -> std::ops::Range<usize> {
+        interval * self.per_interval..(interval + 1) * self.per_interval
+    }
+
+    /// The entries of the scaled Jacobian at a place: row, column, value.
+    fn at(&self, place: usize) -> impl Iterator<Item = (usize, usize, f64)> + '_ {
+        let places = self.lengths.len() * self.per_interval;
+        let scaled = move |(entry, &(a, b)): (usize, &(usize, usize))| {
+            (a, b, self.jacobian[entry * places + place] * self.scales[b] / self.scales[a])
+        };
+        self.entries.iter().enumerate().map(scaled)
     }
 
     /// Largest row sum on each interval.
     fn norms(&self) -> Vec<f64> {
-        let row_sum = |row: &[f64]| row.iter().map(|value| value.abs()).sum::<f64>();
-        let norm = |interval| {
-            let rows = self.of(interval).flat_map(|matrix| matrix.chunks_exact(self.n));
-            rows.map(row_sum).fold(0.0, f64::max)
+        let mut row_sums = vec![0.0; self.scales.len()];
+        let mut norm = |interval| {
+            self.places(interval).fold(0.0f64, |norm, place| {
+                row_sums.fill(0.0);
+                self.at(place).for_each(|(row, _, value)| row_sums[row] += value.abs());
+                row_sums.iter().fold(norm, |norm, sum| norm.max(*sum))
+            })
         };
-        (0..self.lengths.len()).map(norm).collect()
+        (0..self.lengths.len()).map(&mut norm).collect()
+    }
+
+    /// The scaled Jacobian at a place, n x n row-major.
+    fn matrix(&self, place: usize) -> Vec<f64> {
+        let n = self.scales.len();
+        let mut matrix = vec![0.0; n * n];
+        self.at(place).for_each(|(row, column, value)| matrix[row * n + column] += value);
+        matrix
     }
 }
 
@@ -218,7 +239,9 @@ mod tests {
 
     fn plan(matrix: &[f64], length: f64, fineness: f64) -> Result<Plan, TooStiff> {
         let n = matrix.len().isqrt();
-        let samples = Samples { lengths: &[length], per_interval: 1, matrices: matrix, n };
+        let entries: Vec<(usize, usize)> = (0..n * n).map(|entry| (entry / n, entry % n)).collect();
+        let (lengths, scales) = (&[length], &vec![1.0; n]);
+        let samples = Samples { lengths, per_interval: 1, entries: &entries, jacobian: matrix, scales };
         LinearMesh::new(6).plan(&samples, fineness)
     }
 

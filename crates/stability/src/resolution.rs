@@ -64,13 +64,18 @@ impl Reading {
         accuracy * size.max(1.0) + ROUNDOFF * f64::EPSILON * self.stiffness
     }
 
-    /// Indices of the multipliers on which `coarse` differs.
+    /// Indices of the multipliers on which `coarse` differs, a pair whole.
     fn doubtful(&self, coarse: &Self, accuracy: f64) -> Vec<usize> {
-        let pairs = self.multipliers.iter().zip(&coarse.multipliers).enumerate();
-        let differs = |fine: f64, coarse: f64| !((fine - coarse).abs() <= self.tolerance(accuracy, fine.abs()));
-        let mut found: Vec<usize> = pairs
-            .filter(|(_, (fine, coarse))| differs(fine.log_modulus, coarse.log_modulus))
-            .map(|(index, _)| index)
+        let differs = |index: usize| {
+            let (fine, coarse) = (self.multipliers[index].log_modulus, coarse.multipliers[index].log_modulus);
+            !((fine - coarse).abs() <= self.tolerance(accuracy, fine.abs()))
+        };
+        let mut found: Vec<usize> = (0..self.multipliers.len())
+            .filter(|&index| match self.multipliers[index].angle {
+                angle if angle == 0.0 || angle == PI => differs(index),
+                angle if angle > 0.0 => differs(index) || differs(index + 1),
+                _ => differs(index - 1) || differs(index),
+            })
             .collect();
         // Both may be wrong alike by accident; the formula sees that, and the last is the most damped.
         if found.is_empty() && self.defect() > self.tolerance(accuracy, self.size()) {
@@ -94,7 +99,7 @@ impl Reading {
         };
         match doubtful[..] {
             [] => Ok(Resolved { multipliers: self.multipliers.clone(), unresolved: None, defect: self.defect() }),
-            [index] if is_real(self.multipliers[index]) => {
+            [index] => {
                 let multipliers = self.completed(index);
                 Ok(Resolved { multipliers, unresolved: None, defect: defect(self.multipliers.len()) })
             }
@@ -120,10 +125,8 @@ impl Reading {
         multipliers
     }
 
-    /// The multipliers from `first` on as not resolved; a pair is not torn.
+    /// The multipliers from `first` on as not resolved.
     fn unresolved_from(&self, first: usize, coarse: &Self) -> Result<Unresolved, SideUnknown> {
-        let second_of_pair = self.multipliers[first].angle < 0.0 && first > 0;
-        let first = if second_of_pair { first - 1 } else { first };
         let count = self.multipliers.len() - first;
         let kept: f64 = self.multipliers[..first].iter().map(|mu| mu.log_modulus).sum();
         let log_sum = self.divergence - kept;
@@ -135,10 +138,6 @@ impl Reading {
         let below = bound.max(log_sum / count as f64);
         if below < 0.0 { Ok(Unresolved { count, below, log_sum }) } else { Err(SideUnknown) }
     }
-}
-
-fn is_real(mu: Multiplier) -> bool {
-    mu.angle == 0.0 || mu.angle == PI
 }
 
 #[cfg(test)]

@@ -132,7 +132,8 @@ impl SpectrumSolver {
         scales: &[f64],
         accuracy: f64,
     ) -> Result<Spectrum, SpectrumFault> {
-        let mut on = |fineness| self.reading(profile, parameters, (scales, fineness));
+        let enough = self.variational.fineness_for(accuracy);
+        let mut on = |refinement: f64| self.reading(profile, parameters, (scales, enough * refinement));
         let coarse = on(FINENESS[0])?;
         match () {
             () if profile.n_states == 2 => Ok(planar(&coarse)),
@@ -217,9 +218,9 @@ fn by_comparison(
             break;
         }
         match refined(fineness) {
-            Ok(finer) if finer.dropped <= fine.dropped => (coarse, fine) = (fine, finer),
+            Ok(finer) => (coarse, fine) = (fine, finer),
             // More pieces than allowed: what is known must do.
-            Ok(_) | Err(SpectrumFault::Maps(MapsFault::TooStiff(_))) => break,
+            Err(SpectrumFault::Maps(MapsFault::TooStiff(_))) => break,
             Err(fault) => return Err(fault),
         }
     }
