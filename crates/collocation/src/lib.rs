@@ -33,6 +33,7 @@
 //! assert!(before.error > 1e-9 && after.error < 1e-9, "{} {}", before.error, after.error);
 //! ```
 
+mod direction;
 mod gauss;
 mod linear_mesh;
 mod mesh;

@@ -11,6 +11,7 @@ use armilla_linalg::{Lu, Singular};
 use armilla_model::{Batch, Evaluator, Linearisation, VectorField};
 use armilla_record::Profile;
 
+use crate::direction::Directions;
 use crate::gauss::{gauss, radau};
 use crate::linear_mesh::{LinearMesh, Plan, Samples, Stiffness, TooStiff};
 
@@ -21,7 +22,8 @@ pub struct VariationalMaps {
     pub n: usize,
     /// The maps, n x n row-major, in the order of time.
     pub maps: Vec<f64>,
-    /// Rates at the start of each map, n numbers each: the known direction of the trivial multiplier.
+    /// Direction of the trivial multiplier at the start of each map, n numbers each: the rates at mesh points, carried on
+    /// inside.
     pub flow: Vec<f64>,
     /// Integral of the divergence over one period.
     pub divergence: f64,
@@ -194,6 +196,8 @@ impl Variational {
             }
         }
         self.pass(profile, parameters, &batch, &mut out)?;
+        let directions = Directions { maps: &out.maps, scales };
+        directions.carry(&mut out.flow, plan.cuts.iter().map(|cut| cut.pieces));
         Ok(out)
     }
 
