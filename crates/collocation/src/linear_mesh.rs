@@ -121,7 +121,8 @@ impl LinearMesh {
             };
             return Ok(Plan { cuts: norms.iter().enumerate().map(accurate).collect(), dropped: 0, stiffness });
         }
-        let rates: Vec<Rates> = (0..norms.len()).map(|interval| self.rates(samples, interval, norms[interval])).collect();
+        let rates: Vec<Rates> =
+            (0..norms.len()).map(|interval| self.rates(samples, interval, norms[interval])).collect();
         let dropped = self.to_drop(samples, &rates, fineness)?;
         let cuts = rates.iter().zip(samples.lengths).map(|(rates, length)| self.cut(rates, *length, dropped, fineness));
         Ok(Plan { cuts: cuts.collect(), dropped, stiffness })

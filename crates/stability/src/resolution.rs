@@ -1,191 +1,266 @@
-//! Which multipliers of a strongly damped cycle are resolved.
+//! Degree and mesh along a branch, from the accuracy alone.
 //!
-//! Where some directions are left to an L-stable scheme, Liouville's formula cannot audit: the scheme is not meant to
-//! satisfy it. Two linear meshes, one twice as fine, tell instead. Multipliers on which they agree are resolved. If one
-//! alone is left, Liouville's formula gives it: its log-modulus is the integral of the divergence less the sum of the
-//! others, its sign the one that makes the product of all positive, for a flow keeps orientation. If several are left, all
-//! from the first of them on are not resolved; only their sum is known.
+//! At each new point the local error of the profile tells how many intervals each degree would need; the mesh is
+//! changed where the error exceeds the accuracy, where many intervals became superfluous, or where another degree
+//! does it with clearly less work. Then the multipliers are asked: where they miss Liouville's formula by more than
+//! the accuracy although their own mesh was refined, the cycle's mesh is halved. What was done stands in the point.
 
-use std::f64::consts::PI;
+use std::sync::Arc;
 
-use armilla_record::{Multiplier, Unresolved};
+use armilla_collocation::{Failure as NewtonFailure, LinearClosing, Report, refine, remesh, work};
+use armilla_record::{MeshReason, Reached};
 
-/// What one linear mesh gives.
-#[derive(Clone, Debug)]
-pub(crate) struct Reading {
-    /// The n-1 multipliers besides the trivial one, largest modulus first.
-    pub multipliers: Vec<Multiplier>,
-    /// Logarithm of the trivial one.
-    pub trivial: f64,
-    /// Integral of the divergence.
-    pub divergence: f64,
-    /// `Int |A| dt`.
-    pub stiffness: f64,
-    /// Largest number of directions at one place that were left to an L-stable scheme.
-    pub dropped: usize,
+use crate::point::{CyclePoint, CycleTangent};
+use crate::problem::CycleProblem;
+
+/// What the choice of meshes remembers from point to point.
+#[derive(Clone, Copy, Debug, Default)]
+pub(crate) struct Resolution {
+    /// Points for which the degree stays.
+    hold: usize,
+    /// Fewest intervals that Liouville's formula asked for; 0 where it asked for none.
+    least: usize,
+    /// Estimated error at which the last finer mesh brought no gain; 0 where none failed.
+    floor: f64,
+    /// Intervals at which halving the mesh did not bring the multipliers closer to Liouville's formula; 0 for none.
+    in_vain: usize,
 }
 
-/// What two linear meshes say together.
-#[derive(Clone, Debug, PartialEq)]
-pub(crate) struct Resolved {
-    /// The multipliers that are right, largest modulus first.
-    pub multipliers: Vec<Multiplier>,
-    /// The others.
-    pub unresolved: Option<Unresolved>,
-    /// By how much the log-moduli of `multipliers` may miss Liouville's formula.
-    pub defect: f64,
+/// A degree and a mesh.
+struct Grid {
+    degree: usize,
+    mesh: Arc<[f64]>,
+    reason: MeshReason,
+    /// Whether more intervals than allowed are needed.
+    limited: bool,
 }
 
-/// A multiplier that is not resolved may lie outside the unit circle.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub(crate) struct SideUnknown;
+/// A point with the tangents carried to its mesh.
+type Carried = (CyclePoint, Vec<CycleTangent>);
 
-/// Roundoff of a log-modulus, in units of epsilon times `Int |A| dt`: each entry of A is rounded a few times.
-const ROUNDOFF: f64 = 10.0;
+/// A new mesh must bring the estimated error below this share of the old one, or the floor of roundoff is reached.
+const WORTH: f64 = 0.8;
+/// Share of intervals that must become superfluous before the mesh shrinks: less would swing to and fro.
+const SHRINK_BELOW: f64 = 0.6;
+/// Rounds of cuts: each shortens the interval of a kink by four at most, and its error falls at least like a square.
+const PATIENCE: usize = 8;
+/// Multiple of the rounding of the error estimate up to which an error that no mesh lowers counts as roundoff: Newton's
+/// method leaves some tens of units in the last place, more where the problem is badly conditioned.
+const NEAR_ROUNDOFF: f64 = 1e3;
+/// Multiple of the known floor up to which an error counts as that floor still.
+const FLOOR_KNOWN: f64 = 2.0;
+/// Meshes tried at one point: the estimate on the second is already that of a suitable one.
+const RENEWALS: usize = 3;
+/// Meshes tried at the first point of a branch: each estimate comes from a better mesh, the choice settles in three or
+/// four.
+const FIRST_ROUNDS: usize = 8;
+/// Points for which a new degree stays: the estimates before and after a change differ, and must not undo it.
+const HOLD: usize = 8;
+/// Share of the allowed Liouville defect below which the intervals it had asked for are given back, by a third a point.
+const EASY: f64 = 0.01;
 
-impl Reading {
-    fn sum(&self) -> f64 {
-        self.multipliers.iter().map(|mu| mu.log_modulus).sum()
+impl CycleProblem {
+    /// The first cycle of a branch on a mesh chosen for the accuracy.
+    pub(crate) fn first_mesh(&mut self, point: CyclePoint) -> CyclePoint {
+        let mut point = self.meshed(&point, &[], FIRST_ROUNDS).map_or(point, |(point, _)| point);
+        self.resolution.hold = 0;
+        let given = self.settings.mesh.fixed.is_some();
+        point.choice = if given { MeshReason::Given } else { MeshReason::Start };
+        point
     }
 
-    /// Sum of |log mu|; multipliers that are exactly zero have none.
-    pub(crate) fn size(&self) -> f64 {
-        self.multipliers.iter().map(|mu| mu.log_modulus.abs()).filter(|x| x.is_finite()).sum()
+    /// A point of a branch on a mesh that suits it; none where it stays as it is. `adapted` is the point as changed
+    /// already.
+    pub(crate) fn renew_mesh(
+        &mut self,
+        point: &CyclePoint,
+        tangents: &[&CycleTangent],
+        adapted: Option<Carried>,
+    ) -> Option<Carried> {
+        self.resolution.hold = self.resolution.hold.saturating_sub(1);
+        let best = self.meshed(point, tangents, RENEWALS).or(adapted);
+        self.heed_liouville(point, tangents, best)
     }
 
-    /// |sum of all log-moduli - integral of the divergence|, infinite where a multiplier is exactly zero.
-    pub(crate) fn defect(&self) -> f64 {
-        let defect = (self.trivial + self.sum() - self.divergence).abs();
-        if defect.is_nan() { f64::INFINITY } else { defect }
-    }
-
-    /// Agreement that can be had where `accuracy` is wanted.
-    fn tolerance(&self, accuracy: f64, size: f64) -> f64 {
-        accuracy * size.max(1.0) + ROUNDOFF * f64::EPSILON * self.stiffness
-    }
-
-    /// Indices of the multipliers on which `coarse` differs, a pair whole.
-    fn doubtful(&self, coarse: &Self, accuracy: f64) -> Vec<usize> {
-        let differs = |index: usize| {
-            let (fine, coarse) = (self.multipliers[index].log_modulus, coarse.multipliers[index].log_modulus);
-            !((fine - coarse).abs() <= self.tolerance(accuracy, fine.abs()))
-        };
-        let mut found: Vec<usize> = (0..self.multipliers.len())
-            .filter(|&index| match self.multipliers[index].angle {
-                angle if angle == 0.0 || angle == PI => differs(index),
-                angle if angle > 0.0 => differs(index) || differs(index + 1),
-                _ => differs(index - 1) || differs(index),
-            })
-            .collect();
-        // Both may be wrong alike by accident; the formula sees that, and the last is the most damped.
-        if found.is_empty() && self.defect() > self.tolerance(accuracy, self.size()) {
-            found.extend(self.multipliers.len().checked_sub(1));
-        }
-        found
-    }
-
-    /// Number of multipliers on which `coarse` differs.
-    pub(crate) fn n_doubtful(&self, coarse: &Self, accuracy: f64) -> usize {
-        self.doubtful(coarse, accuracy).len()
-    }
-
-    /// What this reading and one on a coarser mesh say together.
-    pub(crate) fn resolve(&self, coarse: &Self, accuracy: f64) -> Result<Resolved, SideUnknown> {
-        let doubtful = self.doubtful(coarse, accuracy);
-        let drift = |index: usize| (self.multipliers[index].log_modulus - coarse.multipliers[index].log_modulus).abs();
-        let defect = |kept: usize| {
-            let others = (0..kept).filter(|index| !doubtful.contains(index));
-            self.trivial.abs() + others.map(drift).sum::<f64>()
-        };
-        match doubtful[..] {
-            [] => Ok(Resolved { multipliers: self.multipliers.clone(), unresolved: None, defect: self.defect() }),
-            [index] => {
-                let multipliers = self.completed(index);
-                Ok(Resolved { multipliers, unresolved: None, defect: defect(self.multipliers.len()) })
+    /// The point on the last of at most `rounds` meshes, each better than the one before; none where nothing changed.
+    fn meshed(&mut self, point: &CyclePoint, tangents: &[&CycleTangent], rounds: usize) -> Option<Carried> {
+        let mut best: Option<Carried> = None;
+        for _ in 0..rounds {
+            let now = best.as_ref().map_or(point, |(point, _)| point).clone();
+            let Some(grid) = self.better_grid(&now) else { break };
+            let next = self.moved(&now, tangents, &grid).filter(|(next, _)| self.is_worth(&now, next));
+            let next = next.or_else(|| self.with_patience(&now, tangents, &grid));
+            let obstacle = self.obstacle(next.as_ref().map_or(&now, |(next, _)| next), grid.limited);
+            let Some((mut renewed, carried)) = next else {
+                if grid.reason != MeshReason::ProfileError && grid.reason != MeshReason::Given {
+                    break;
+                }
+                // The old point stands, with its larger error and the reason of it.
+                let normalised = || tangents.iter().map(|tangent| self.normalised((*tangent).clone())).collect();
+                let mut kept = best.take().unwrap_or_else(|| (point.clone(), normalised()));
+                kept.0.reached = obstacle;
+                // A kink moves on with the branch, and the next point may fare better; roundoff stays.
+                if obstacle == Reached::RoundoffFloor {
+                    self.resolution.floor = self.estimate(&kept.0).error;
+                }
+                return Some(kept);
+            };
+            renewed.reached = obstacle;
+            if renewed.degree != now.degree {
+                self.resolution.hold = HOLD;
             }
-            [first, ..] => {
-                let unresolved = self.unresolved_from(first, coarse)?;
-                let multipliers = self.multipliers[..self.multipliers.len() - unresolved.count].to_vec();
-                let defect = defect(multipliers.len());
-                Ok(Resolved { multipliers, unresolved: Some(unresolved), defect })
+            best = Some((renewed, carried));
+        }
+        best
+    }
+
+    /// A mesh made by cutting, again and again, the intervals whose own error is too large. A kink of the rates is no matter
+    /// of density: the interval that holds it must shrink until it does not count, and the estimate, which is
+    /// asymptotic, tells how far only step by step. None where the cuts do not help.
+    fn with_patience(&mut self, now: &CyclePoint, tangents: &[&CycleTangent], grid: &Grid) -> Option<Carried> {
+        if grid.reason != MeshReason::ProfileError || grid.limited {
+            return None;
+        }
+        let accuracy = self.settings.mesh.accuracy;
+        let mut tried: Carried = (now.clone(), tangents.iter().map(|tangent| (*tangent).clone()).collect());
+        for _ in 0..PATIENCE {
+            let estimate = self.estimate(&tried.0);
+            if estimate.error <= accuracy {
+                break;
             }
+            let mesh = refine(tried.0.tables(), &tried.0.mesh, &estimate, accuracy);
+            if mesh.len() - 1 > self.settings.mesh.most {
+                break;
+            }
+            let finer = Grid { degree: tried.0.degree, mesh: mesh.into(), reason: grid.reason, limited: false };
+            let carried: Vec<&CycleTangent> = tried.1.iter().collect();
+            let Some(next) = self.moved(&tried.0, &carried, &finer) else { break };
+            tried = next;
+        }
+        self.is_worth(now, &tried.0).then_some(tried)
+    }
+
+    /// What stands in the way of the accuracy at a point that no better mesh was found for.
+    fn obstacle(&mut self, point: &CyclePoint, limited: bool) -> Reached {
+        match () {
+            () if self.settings.mesh.fixed.is_some() => Reached::GivenMesh,
+            () if limited => Reached::MeshLimit,
+            () if self.profile_error(point) < NEAR_ROUNDOFF * self.rounding_of_nodes(point) => Reached::RoundoffFloor,
+            () => Reached::Rough,
         }
     }
 
-    /// All multipliers, the one at `index` by Liouville's formula.
-    fn completed(&self, index: usize) -> Vec<Multiplier> {
-        let mut multipliers = self.multipliers.clone();
-        multipliers.remove(index);
-        let others: f64 = multipliers.iter().map(|mu| mu.log_modulus).sum();
-        let negative = multipliers.iter().filter(|mu| mu.angle == PI).count() % 2 == 1;
-        let angle = if negative { PI } else { 0.0 };
-        let last = Multiplier { log_modulus: self.divergence - others, angle };
-        let place = multipliers.partition_point(|mu| mu.log_modulus > last.log_modulus);
-        multipliers.insert(place, last);
-        multipliers
+    /// A degree and a mesh that suit the point, or none where the present ones do: its error is within the accuracy, it
+    /// has not many more intervals than needed, and no other degree does it with clearly less work.
+    fn better_grid(&mut self, point: &CyclePoint) -> Option<Grid> {
+        let estimate = self.estimate(point);
+        let mut settings = self.settings.mesh;
+        settings.fewest = settings.fewest.max(self.resolution.least);
+        if self.resolution.hold > 0 {
+            settings.degrees = (point.degree, point.degree);
+        }
+        let choice = remesh(point.tables(), &point.mesh, &estimate, settings);
+        let (now, wanted) = (point.intervals(), choice.mesh.len() - 1);
+        let other_degree = choice.degree != point.degree;
+        let above_floor = estimate.error > FLOOR_KNOWN * self.resolution.floor;
+        let too_coarse = estimate.error > settings.accuracy && above_floor && !(choice.limited && now == wanted);
+        let too_fine = (wanted as f64) < SHRINK_BELOW * now as f64;
+        let settled = settings.fixed == Some(now) && estimate.imbalance < 2.0 && !other_degree;
+        let reason = match () {
+            () if settings.fixed.is_some() => MeshReason::Given,
+            () if too_coarse => MeshReason::ProfileError,
+            () if other_degree => MeshReason::Work,
+            () => MeshReason::Ease,
+        };
+        let grid = Grid { degree: choice.degree, mesh: choice.mesh.into(), reason, limited: choice.limited };
+        ((too_coarse || too_fine || other_degree) && !settled).then_some(grid)
     }
 
-    /// The multipliers from `first` on as not resolved.
-    fn unresolved_from(&self, first: usize, coarse: &Self) -> Result<Unresolved, SideUnknown> {
-        let count = self.multipliers.len() - first;
-        let kept: f64 = self.multipliers[..first].iter().map(|mu| mu.log_modulus).sum();
-        let log_sum = self.divergence - kept;
-        let (fine, coarse) = (self.multipliers[first].log_modulus, coarse.multipliers[first].log_modulus);
-        // An L-stable scheme damps too little where it is coarse, so refining moves the bound down; where it moves it
-        // up, it may do so again.
-        let bound = if fine > coarse { fine + (fine - coarse) } else { coarse };
-        // The largest of some numbers is no less than their mean.
-        let below = bound.max(log_sum / count as f64);
-        if below < 0.0 { Ok(Unresolved { count, below, log_sum }) } else { Err(SideUnknown) }
-    }
-}
-
-#[cfg(test)]
-mod tests {
-    use super::*;
-
-    fn reading(logs: &[(f64, f64)], divergence: f64) -> Reading {
-        let multipliers = logs.iter().map(|&(log_modulus, angle)| Multiplier { log_modulus, angle }).collect();
-        Reading { multipliers, trivial: 0.0, divergence, stiffness: 1e3, dropped: 1 }
+    /// The point corrected on another mesh, with its tangents, or at its parameter value where there are none; none where
+    /// Newton's method fails there.
+    fn moved(&mut self, point: &CyclePoint, tangents: &[&CycleTangent], grid: &Grid) -> Option<Carried> {
+        let mut moved = point.on_mesh(grid.degree, &grid.mesh);
+        moved.choice = grid.reason;
+        let carry = |tangent: &&CycleTangent| self.normalised(tangent.on_mesh(grid.degree, &grid.mesh));
+        let carried: Vec<CycleTangent> = tangents.iter().map(carry).collect();
+        match carried.first() {
+            Some(tangent) => self.settle_on_mesh(&mut moved, tangent).ok()?,
+            None => {
+                let value = point.unknowns.parameter;
+                self.correct_at(&mut moved, value).ok()?
+            }
+        };
+        Some((moved, carried))
     }
 
-    #[test]
-    fn one_doubtful_multiplier_is_the_remainder_with_the_sign_that_keeps_orientation() {
-        let coarse = reading(&[(0.5, 0.0), (-2.0, PI), (-90.0, 0.0)], -1000.0);
-        let fine = reading(&[(0.5, 0.0), (-2.0, PI), (-150.0, 0.0)], -1000.0);
-        let found = fine.resolve(&coarse, 1e-9).expect("sides known");
-        assert_eq!(found.multipliers[2], Multiplier { log_modulus: -998.5, angle: PI });
-        assert_eq!((found.unresolved, found.defect), (None, 0.0));
+    /// Halves the mesh where the multipliers miss Liouville's formula on it.
+    fn heed_liouville(
+        &mut self,
+        point: &CyclePoint,
+        tangents: &[&CycleTangent],
+        best: Option<Carried>,
+    ) -> Option<Carried> {
+        let now = best.as_ref().map_or(point, |(point, _)| point).clone();
+        let Some(excess) = self.liouville_excess(&now) else { return best };
+        if excess < EASY {
+            self.resolution.least = self.resolution.least * 2 / 3;
+        }
+        let free = self.settings.mesh.fixed.is_none() && 2 * now.intervals() <= self.settings.mesh.most;
+        // Where halving did not help, it is not tried again before the mesh has become another one.
+        let vain = self.resolution.in_vain;
+        if excess <= 1.0 || !free || (vain / 2..=2 * vain).contains(&now.intervals()) {
+            return best;
+        }
+        let mesh = crate::locate::halved(&now.mesh).into();
+        let grid = Grid { degree: now.degree, mesh, reason: MeshReason::LiouvilleDefect, limited: false };
+        let halved = self.moved(&now, tangents, &grid);
+        let helped = halved.filter(|(point, _)| self.liouville_excess(point).is_some_and(|finer| finer < 0.5 * excess));
+        if helped.is_some() {
+            self.resolution.least = 2 * now.intervals();
+        } else {
+            self.resolution.in_vain = now.intervals();
+        }
+        helped.or(best)
     }
 
-    #[test]
-    fn several_are_left_out_with_their_sum() {
-        let coarse = reading(&[(-2.0, 0.0), (-80.0, 0.0), (-90.0, 0.0)], -1000.0);
-        let fine = reading(&[(-2.0, 0.0), (-120.0, 0.0), (-150.0, 0.0)], -1000.0);
-        let found = fine.resolve(&coarse, 1e-9).expect("sides known");
-        assert_eq!(found.multipliers.len(), 1);
-        assert_eq!(found.unresolved, Some(Unresolved { count: 2, below: -80.0, log_sum: -998.0 }));
+    /// Liouville defect over what the accuracy allows; none where the multipliers are not the product of interval maps, or
+    /// fail.
+    fn liouville_excess(&mut self, point: &CyclePoint) -> Option<f64> {
+        let accuracy = self.settings.mesh.accuracy;
+        if self.system.n() == 2 {
+            return None;
+        }
+        let spectrum = self.known_spectrum(point).ok()?;
+        let sizes = spectrum.multipliers.iter().map(|mu| mu.log_modulus.abs()).filter(|size| size.is_finite());
+        let allowed = accuracy * sizes.sum::<f64>().max(1.0);
+        (!spectrum.damped).then_some(spectrum.liouville_defect / allowed)
     }
 
-    /// A bound that refining raises is raised once more; a pair is kept or left out whole.
-    #[test]
-    fn the_bound_is_on_the_safe_side() {
-        let coarse = reading(&[(-2.0, 0.0), (-8.0, 2.0), (-8.0, -2.0), (-90.0, 0.0)], -1000.0);
-        let fine = reading(&[(-2.0, 0.0), (-6.0, 2.0), (-6.0, -2.0), (-150.0, 0.0)], -1000.0);
-        let found = fine.resolve(&coarse, 1e-9).expect("sides known");
-        assert_eq!(found.unresolved, Some(Unresolved { count: 3, below: -4.0, log_sum: -998.0 }));
+    /// Whether a change of mesh helped: a smaller error where it was too large, less work elsewhere.
+    fn is_worth(&mut self, before: &CyclePoint, after: &CyclePoint) -> bool {
+        let (old, new) = (self.estimate(before).error, self.estimate(after).error);
+        let work = |point: &CyclePoint| work(point.degree, point.intervals());
+        let accuracy = self.settings.mesh.accuracy;
+        if old > accuracy { new <= accuracy || new < WORTH * old } else { work(after) < work(before) }
     }
 
-    #[test]
-    fn a_side_is_never_guessed() {
-        let coarse = reading(&[(3.0, 0.0), (-80.0, 0.0)], -1000.0);
-        let fine = reading(&[(-0.5, 0.0), (-120.0, 0.0)], -1000.0);
-        assert_eq!(fine.resolve(&coarse, 1e-9), Err(SideUnknown));
-    }
-
-    #[test]
-    fn accidental_agreement_is_seen_by_the_formula() {
-        let one = reading(&[(-2.0, 0.0), (-80.0, 0.0)], -1000.0);
-        assert_eq!(one.resolve(&one.clone(), 1e-9).expect("sides known").multipliers[1].log_modulus, -998.0);
+    /// Corrects a point carried to a new mesh: at its parameter value, which an edge or target needs exactly, or, where
+    /// the branch turns back in the parameter, normal to its tangent.
+    fn settle_on_mesh(&mut self, point: &mut CyclePoint, tangent: &CycleTangent) -> Result<Report, NewtonFailure> {
+        /// Share of the parameter in the tangent below which the branch turns back: nearer than this to a fold the
+        /// change of mesh may move the fold past the value.
+        const TURNING: f64 = 1e-6;
+        if tangent.row.parameter.abs() > TURNING * self.metric.parameter_scale {
+            let mut held = point.clone();
+            let value = point.unknowns.parameter;
+            if let Ok(report) = self.correct_at(&mut held, value) {
+                *point = held;
+                return Ok(report);
+            }
+        }
+        let row = self.arclength_row(tangent, point);
+        let target = row.apply(&point.unknowns);
+        let reference = point.unknowns.nodes.clone();
+        self.newton(point, &reference, &mut LinearClosing { row, target })
     }
 }

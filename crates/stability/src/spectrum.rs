@@ -12,7 +12,7 @@ use armilla_linalg::{NotConverged, PeriodicSchur, ScaledMultiplier};
 use armilla_model::VectorField;
 use armilla_record::{Multiplier, Profile, Unresolved};
 
-use crate::resolution::{Reading, Resolved, SideUnknown};
+use crate::agreement::{Reading, Resolved, SideUnknown};
 
 /// Multipliers of a cycle with their audits.
 #[derive(Clone, Debug, PartialEq)]

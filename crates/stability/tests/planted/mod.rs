@@ -138,8 +138,7 @@ fn inverse_upper(upper: &[Vec<f64>]) -> Vec<Vec<f64>> {
 }
 
 fn inverse_lower(lower: &[Vec<f64>]) -> Vec<Vec<f64>> {
-    let transposed = |a: &[Vec<f64>]| -> Vec<Vec<f64>> {
-        (0..a.len()).map(|i| (0..a.len()).map(|j| a[j][i]).collect()).collect()
-    };
+    let transposed =
+        |a: &[Vec<f64>]| -> Vec<Vec<f64>> { (0..a.len()).map(|i| (0..a.len()).map(|j| a[j][i]).collect()).collect() };
     transposed(&inverse_upper(&transposed(lower)))
 }
