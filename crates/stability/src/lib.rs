@@ -50,7 +50,7 @@ mod spectrum;
 mod switch;
 mod test_function;
 
-pub use armilla_collocation::Fault;
+pub use armilla_collocation::{Fault, MapsFault, TooStiff};
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;
 pub use normal_form::DoublingForm;

@@ -49,10 +49,9 @@ impl std::fmt::Display for SpectrumFault {
             Self::Maps(fault) => fault.fmt(f),
             Self::NotConverged(fault) => fault.fmt(f),
             Self::AtRest => write!(f, "the cycle touches an equilibrium"),
-            Self::SideUnknown => write!(
-                f,
-                "damping and repulsion along the cycle are too strong to tell whether it is stable; scale the stiffness down"
-            ),
+            Self::SideUnknown => {
+                write!(f, "damping and repulsion along the cycle are too strong to tell whether it is stable")
+            }
         }
     }
 }

@@ -4,7 +4,7 @@ use std::f64::consts::TAU;
 
 use armilla_model::Model;
 use armilla_record::{Point, Profile};
-use armilla_stability::{CycleProblem, CycleSettings, CycleSpec};
+use armilla_stability::{CycleProblem, CycleSettings, CycleSpec, SpectrumFault};
 
 /// A circle of radius 1 and period 2 pi with linear states beside it.
 #[derive(Clone)]
@@ -46,6 +46,15 @@ impl Planted {
         self.rates.push(format!(
             "(({half_difference:?})*{sine} + {speed:?}) * {p} + ({mean:?} - ({half_difference:?})*{cosine}) * {q}"
         ));
+        self
+    }
+
+    /// Two states that wind round each other at the rate `speed` while they grow at the rate `growth`: multipliers
+    /// exp(2 pi (growth ± i speed)).
+    pub fn winding(mut self, growth: f64, speed: f64) -> Self {
+        let (p, q) = (format!("o{}", self.rates.len() + 2), format!("o{}", self.rates.len() + 3));
+        self.rates.push(format!("({growth:?})*{p} - {speed:?}*{q}"));
+        self.rates.push(format!("{speed:?}*{p} + ({growth:?})*{q}"));
         self
     }
 
@@ -96,7 +105,7 @@ impl Planted {
     }
 
     /// The cycle, described.
-    pub fn describe(&self, accuracy: f64) -> Point {
+    pub fn describe(&self, accuracy: f64) -> Result<Point, SpectrumFault> {
         let model = Model::parse(&self.text(), "planted").unwrap_or_else(|fault| panic!("{fault}"));
         let (n, settings) = (self.n(), CycleSettings::new(accuracy));
         let mesh: Vec<f64> = (0..=24).map(|i| i as f64 / 24.0).collect();
@@ -115,7 +124,7 @@ impl Planted {
         };
         let (mut problem, cycle) =
             CycleProblem::start(spec, settings, &profile, 0.0).unwrap_or_else(|fault| panic!("{fault}"));
-        problem.describe(&cycle, 1, 0.0).unwrap_or_else(|fault| panic!("{fault}"))
+        problem.describe(&cycle, 1, 0.0)
     }
 }
 
