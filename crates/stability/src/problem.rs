@@ -308,11 +308,11 @@ impl CycleProblem {
             means: measures.means,
             spreads: measures.spreads,
             multipliers: spectrum.multipliers,
+            unresolved: spectrum.unresolved,
             intervals: profile.intervals(),
             degree: profile.degree,
             choice: point.choice,
             reached,
-            unresolved: None,
         })
     }
 
