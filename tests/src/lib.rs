@@ -17,7 +17,7 @@
 mod bracket;
 mod case;
 mod check;
-mod curve;
+pub mod curve;
 mod decimal;
 mod errors;
 mod job;

@@ -3,8 +3,8 @@
 use std::sync::Arc;
 
 use armilla_collocation::{
-    ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings, Report, Row,
-    Scalar, System, SystemSpec, Task, Workspace, correct_with, estimate_error, remesh, roundoff,
+    Collocated, Defects, ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings, Report, Row,
+    Scalar, System, SystemSpec, Task, Workspace, correct_with, estimate_error, remesh, roundoff, scales_of,
 };
 use armilla_follow::{Closing, Corrected, Failure, Orientation, Problem, Watch, Watched};
 use armilla_linalg::{Bordered, Right};
@@ -113,6 +113,7 @@ pub struct CycleProblem {
     largest: Vec<f64>,
     pub(crate) newton: Workspace,
     spectrum: SpectrumSolver,
+    defects: Defects,
     /// Spectrum of the point watched last, with its parameter and period: `describe` asks for the same one.
     watched: Option<(f64, f64, Spectrum)>,
     bordered: Option<Bordered>,
@@ -178,6 +179,7 @@ impl CycleProblem {
         };
         let system = System::new(system_spec, settings.degree, &profile.mesh);
         let spectrum = SpectrumSolver::new(spec.field.as_ref(), settings.degree);
+        let defects = Defects::new(spec.field.as_ref());
         Ok(Self {
             spec,
             settings,
@@ -186,6 +188,7 @@ impl CycleProblem {
             metric,
             newton: Workspace::default(),
             spectrum,
+            defects,
             watched: None,
             bordered: None,
             parameter_roundoff: 0.0,
@@ -226,13 +229,17 @@ impl CycleProblem {
     }
 
     /// Estimated error of a cycle's profile, relative to the range of each state.
-    pub fn profile_error(&self, point: &CyclePoint) -> f64 {
+    pub fn profile_error(&mut self, point: &CyclePoint) -> f64 {
         self.estimate(point).error
     }
 
-    fn estimate(&self, point: &CyclePoint) -> ErrorEstimate {
+    fn estimate(&mut self, point: &CyclePoint) -> ErrorEstimate {
         let least: Vec<f64> = self.metric.scales.iter().map(|scale| LEAST_RANGE * scale).collect();
-        estimate_error(self.system.tables(), &point.mesh, &point.unknowns.nodes, &least)
+        let (tables, mesh, nodes) = (self.system.tables(), &point.mesh, &point.unknowns.nodes);
+        let parameters = self.parameters_at(point);
+        let cycle = Collocated { mesh, nodes, period: point.unknowns.period, parameters: &parameters };
+        let local = self.defects.local_errors(tables, cycle, &scales_of(nodes, &least));
+        estimate_error(tables, mesh, nodes, &least).measured(tables, mesh, &local)
     }
 
     /// A point as a row of the branch table.
@@ -296,7 +303,7 @@ impl CycleProblem {
 
     /// A mesh that suits the point, or none where the present one does: its error is within the accuracy and it has
     /// not many more intervals than needed.
-    pub(crate) fn better_mesh(&self, point: &CyclePoint) -> Option<Arc<[f64]>> {
+    pub(crate) fn better_mesh(&mut self, point: &CyclePoint) -> Option<Arc<[f64]>> {
         /// Share of intervals that must become superfluous before the mesh shrinks: less would swing to and fro.
         const SHRINK_BELOW: f64 = 0.6;
         let estimate = self.estimate(point);
@@ -376,7 +383,7 @@ impl CycleProblem {
     }
 
     /// Whether a change of mesh helped: fewer intervals, or a smaller error.
-    fn is_worth(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
+    fn is_worth(&mut self, before: &CyclePoint, after: &CyclePoint) -> bool {
         after.mesh.len() < before.mesh.len() || self.profile_error(after) < WORTH * self.profile_error(before)
     }
 
