@@ -116,6 +116,7 @@ fn brusselator() -> Run {
     .finer("a", 4.0)
 }
 
+/// Births exact: the trace of the Jacobian at the state of rest vanishes, solved in 40 decimals.
 fn cell_cycle() -> Run {
     Run::new(
         "Tyson's cell cycle",
@@ -123,10 +124,14 @@ fn cell_cycle() -> Run {
         r#"start: Settle(at: {"k6": 1}), follow: (parameter: "k6", from: 0.2, to: 1.6)"#,
     )
     .period_at("a", 1.0, "35.597934978", Independent)
-    .value("a/hopf2", "0.3640658841", Independent)
-    .value("a/hopf1", "1.46258909", Independent)
+    .value("a/hopf2", "0.36406588408319731190778186", Exact)
+    .period("a/hopf2", "18.306829880710505141593489", Exact)
+    .value("a/hopf1", "1.4625890895367049943448342", Exact)
+    .period("a/hopf1", "27.034213267649628915963737", Exact)
 }
 
+/// Births exact: Hurwitz's determinant of the Jacobian at the state of rest vanishes, solved in 40 decimals (published as
+/// 9.78 and 154.5: Hassard 1978, J. Theor. Biol. 71:401; from memory).
 fn membrane() -> Run {
     Run::new(
         "Hodgkin-Huxley",
@@ -134,10 +139,10 @@ fn membrane() -> Run {
         r#"start: Settle(at: {"I": 10}), follow: (parameter: "I", from: 6, to: 160), pursue: (doublings: 0)"#,
     )
     .value("a/fold1", "6.26452127451", Independent)
-    .value("a/hopf2", "9.77963799539", Independent)
-    .period("a/hopf2", "10.71788281", Independent)
-    .value("a/hopf1", "154.526633666", Independent)
-    .period("a/hopf1", "5.911239441", Independent)
+    .value("a/hopf2", "9.7796379953931263325136133", Exact)
+    .period("a/hopf2", "10.717882807935417308611562", Exact)
+    .value("a/hopf1", "154.52663366580800086256233", Exact)
+    .period("a/hopf1", "5.9112394413376591390013454", Exact)
 }
 
 fn canard() -> Run {
