@@ -157,7 +157,9 @@ impl Defects {
         for a in 0..n {
             let defect = |k: usize| {
                 let slopes = &stations.slope[k * size..(k + 1) * size];
-                let slope: f64 = slopes.iter().enumerate().map(|(j, slope)| slope * nodes[j * n + a]).sum();
+                // Differences from the first node: slopes of a constant vanish, and its rounding with them.
+                let slope: f64 =
+                    slopes.iter().enumerate().map(|(j, slope)| slope * (nodes[j * n + a] - nodes[a])).sum();
                 h * cycle.period * self.rates[a * len + (interval - block.start) * size + k] - slope
             };
             for weights in stations.integral.chunks_exact(size) {
