@@ -28,6 +28,7 @@ mod error;
 mod file;
 mod near_miss;
 mod progress;
+mod rest;
 mod settings;
 mod start;
 mod step_events;

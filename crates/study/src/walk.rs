@@ -9,6 +9,7 @@ use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_DOUBLING, 
 use crate::approach::approach;
 use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through};
 use crate::near_miss::{Sample, near_miss};
+use crate::rest::{Motion, Rest};
 use crate::step_events::{Found, events_of_step, is_explained};
 use crate::study::Study;
 
@@ -77,8 +78,8 @@ pub(crate) fn walk(
 
 /// What was seen at each station, the first included.
 struct Seen {
-    /// Size of the motion, and parameter.
-    motions: Vec<(f64, f64)>,
+    /// The motion about the mean.
+    motions: Vec<Motion>,
     /// Parameter and period.
     periods: Vec<(f64, f64)>,
     /// Watched values.
@@ -169,7 +170,7 @@ impl Walker<'_, '_> {
         true
     }
 
-    fn come_to_rest(&mut self, rest: Option<(f64, f64)>) {
+    fn come_to_rest(&mut self, rest: Option<Rest>) {
         let Some(rest) = rest else { return };
         let (problem, before, _) = self.follower.parts();
         let event = birth_of_cycle(before.expect("a step has a station before it"), problem, rest, self.plan);
@@ -219,9 +220,10 @@ enum Taken {
     Ended(End),
 }
 
-fn motion(follower: &mut Follower<'_, CycleProblem>) -> (f64, f64) {
+fn motion(follower: &mut Follower<'_, CycleProblem>) -> Motion {
     let (problem, _, current) = follower.parts();
-    (problem.motion(&current.point), current.point.unknowns.parameter)
+    let unknowns = &current.point.unknowns;
+    Motion { size: problem.motion(&current.point), parameter: unknowns.parameter, period: unknowns.period }
 }
 
 fn period(follower: &Follower<'_, CycleProblem>) -> (f64, f64) {
