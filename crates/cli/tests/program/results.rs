@@ -41,7 +41,8 @@ fn holds_every_file_with_its_columns() {
         desk.read("x1.results/branches/a.csv").lines().next(),
         Some(
             "point,value,period,turns,stable,unstable_count,trivial_defect,liouville_defect,profile_error,\
-             x_max,x_min,x_mean,y_max,y_min,y_mean,multiplier1_log_modulus,multiplier1_angle"
+             x_max,x_min,x_mean,y_max,y_min,y_mean,multiplier1_log_modulus,multiplier1_angle,\
+             degree,intervals,choice,reached,unresolved_count,unresolved_below,unresolved_log_sum"
         )
     );
     assert_eq!(
@@ -100,7 +101,11 @@ fn tables_have_the_bits_of_the_branch_files() {
                 numbers.extend([point.maxima[state], point.minima[state], point.means[state]]);
             }
             numbers.extend(point.multipliers.iter().flat_map(|multiplier| [multiplier.log_modulus, multiplier.angle]));
-            let found = [&row[1..3], &row[6..]].concat();
+            let (numeric, last) = row.split_at(row.len() - 7);
+            assert_eq!([&last[0], &last[1]], [&point.degree.to_string(), &point.intervals.to_string()]);
+            assert_eq!([&last[2], &last[3]], [point.choice.word(), point.reached.word()]);
+            assert_eq!(last[4..], ["0", "", ""]);
+            let found = [&numeric[1..3], &numeric[6..]].concat();
             assert_eq!(found.len(), numbers.len());
             for (cell, number) in found.iter().zip(&numbers) {
                 assert_eq!(bits(cell), number.to_bits(), "{cell} {number}");
