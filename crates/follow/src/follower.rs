@@ -159,6 +159,10 @@ impl<'a, Q: Problem> Follower<'a, Q> {
     pub fn stride(&self) -> f64 {
         self.stride
     }
+    /// Asks for another next stride, within the shortest and the longest; the control of strides goes on from there.
+    pub fn ask_stride(&mut self, stride: f64) {
+        self.stride = stride.clamp(self.settings.shortest, self.settings.longest);
+    }
     /// The problem with the last two stations, to ask it something about the step between them.
     #[allow(clippy::type_complexity)]
     pub fn parts(&mut self) -> (&mut Q, Option<&Station<Q::Point, Q::Tangent>>, &Station<Q::Point, Q::Tangent>) {

@@ -6,6 +6,7 @@ use armilla_follow::{Follower, Outcome, Settings, Station, Step};
 use armilla_record::{End, EndReason, EventKind, Point};
 use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_DOUBLING, WATCH_FOLD};
 
+use crate::ahead::Ahead;
 use crate::approach::approach;
 use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through};
 use crate::near_miss::{Sample, near_miss};
@@ -32,6 +33,8 @@ pub(crate) struct WalkPlan<'a> {
     pub abort: &'a AtomicBool,
     /// Whether the walk ends at its first doubling.
     pub to_first_doubling: bool,
+    /// Where the next doubling is expected.
+    pub ahead: Option<Ahead>,
 }
 
 /// What a walk brings back.
@@ -105,6 +108,7 @@ impl Walker<'_, '_> {
                 self.walk.end = end(EndReason::Interrupted, value, "stopped by the user".into());
                 return self.walk;
             }
+            self.aim();
             let Outcome::Step(step) = self.follower.step() else { break };
             match self.take(step) {
                 Taken::On => {}
@@ -117,6 +121,20 @@ impl Walker<'_, '_> {
         }
         self.walk.end = end_of_follower(&self.follower, self.plan, &self.seen.motions);
         self.walk
+    }
+
+    /// Plans the next stride so that the doubling expected ahead is met in few steps, as long as none was met.
+    fn aim(&mut self) {
+        let Some(ahead) = &self.plan.ahead else { return };
+        // A stride in doubt is not to be made longer again.
+        if self.retries > 0 || self.walk.events.iter().any(|event| event.kind == EventKind::Doubling) {
+            return;
+        }
+        let station = self.follower.current();
+        let stride = ahead.stride(station.point.unknowns.parameter, station.distance, self.follower.stride());
+        if let Some(stride) = stride {
+            self.follower.ask_stride(stride);
+        }
     }
 
     /// Judges a step: takes it, takes it back, or ends the walk with it.
