@@ -6,6 +6,8 @@
 //! not be known (Keller 1977, in Applications of Bifurcation Theory, 359; Kuznetsov, Govaerts, Doedel & Dhooge 2005,
 //! SIAM J. Numer. Anal. 43:1407, for the predictor).
 
+use std::sync::Arc;
+
 use armilla_collocation::{Metric, Row};
 use armilla_follow::{Closing, Problem};
 
@@ -18,7 +20,7 @@ use crate::problem::{CycleProblem, Sizes};
 pub struct Doubled {
     /// The problem of the doubled branch, with its own metric.
     pub problem: CycleProblem,
-    /// The critical cycle told twice: where the branch is born.
+    /// The critical cycle told twice, on the mesh of the branch: where the branch is born.
     pub birth: CyclePoint,
     /// The first cycle with a split between its turns.
     pub point: CyclePoint,
@@ -70,18 +72,40 @@ impl CycleProblem {
         let birth = CyclePoint::from_profile(&birth_profile, value);
         let outwards = direction(&problem, &birth, located);
         let forecast = form.and_then(|form| Forecast::new(&problem, located, form));
-        let mut amplitude = forecast.as_ref().map_or(AMPLITUDE, |forecast| forecast.amplitude.min(LARGEST));
-        for _ in 0..HALVINGS {
-            let offset = forecast.as_ref().map_or(0.0, |forecast| forecast.offset_at(amplitude));
-            let found = first_cycle(&mut problem, (&birth, &outwards), amplitude, offset);
-            // A branch on the side the normal form denies is one of the discretisation.
-            let sided = |point: &CyclePoint| offset == 0.0 || (point.unknowns.parameter - value) * offset > 0.0;
-            if let Some(point) = found.filter(sided) {
-                return Ok(on_own_mesh(Doubled { problem, birth, point, outwards, amplitude }));
+        // The located cycle stands on a mesh refined for its error; one for the accuracy alone has several times fewer
+        // intervals. Where the branch has no cycle on it (a coarse accuracy shifts the birth), the fine one remains.
+        let own = problem.own_mesh(&birth).map(|mesh| {
+            let tables = problem.system.tables();
+            (birth.on_mesh(tables, &mesh), outwards.on_mesh(tables, &mesh))
+        });
+        for (birth, outwards) in own.into_iter().chain([(birth, outwards)]) {
+            let mut amplitude = forecast.as_ref().map_or(AMPLITUDE, |forecast| forecast.amplitude.min(LARGEST));
+            for _ in 0..HALVINGS {
+                let offset = forecast.as_ref().map_or(0.0, |forecast| forecast.offset_at(amplitude));
+                let found = first_cycle(&mut problem, (&birth, &outwards), amplitude, offset);
+                // A branch on the side the normal form denies is one of the discretisation.
+                let sided = |point: &CyclePoint| offset == 0.0 || (point.unknowns.parameter - value) * offset > 0.0;
+                if let Some(point) = found.filter(sided) {
+                    return Ok(on_own_mesh(Doubled { problem, birth, point, outwards, amplitude }));
+                }
+                amplitude *= 0.5;
             }
-            amplitude *= 0.5;
         }
         Err(SwitchFault)
+    }
+
+    /// A mesh that carries `fine` to the accuracy with fewer intervals, if there is one. Each round the estimate comes from
+    /// a better mesh, the values from the fine one.
+    fn own_mesh(&self, fine: &CyclePoint) -> Option<Arc<[f64]>> {
+        const ROUNDS: usize = 4;
+        let mut mesh = None;
+        let mut carried = fine.clone();
+        for _ in 0..ROUNDS {
+            let Some(better) = self.better_mesh(&carried) else { break };
+            carried = fine.on_mesh(self.system.tables(), &better);
+            mesh = Some(better);
+        }
+        mesh.filter(|mesh| mesh.len() < fine.mesh.len())
     }
 
     /// Size of the part of a cycle that changes sign from one half of the period to the other, in the metric: 0 for a
