@@ -25,7 +25,7 @@ mod walk;
 pub use bracket::{station, stations};
 pub use case::{Case, settings};
 pub use check::{absolute, multiplier, relative};
-pub use job::{branch, event, job};
+pub use job::{branch, cascade_job, event, job};
 pub use order::Orders;
 pub use series::{VanDerPol, divergence_integral};
 pub use uniform::{Uniform, uniform_mesh};

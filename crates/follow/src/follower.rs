@@ -340,12 +340,12 @@ impl<'a, Q: Problem> Follower<'a, Q> {
         const FEWEST: usize = 8;
         /// Part of the last step within which the plane's point is the start itself.
         const SAME: f64 = 1e-4;
-        let near = self.problem.distance(&self.current.point, &self.first.point) <= length;
-        if self.taken < FEWEST || !near {
+        if self.taken < FEWEST {
             return false;
         }
+        let Some(near) = self.problem.met_again(&self.current.point, &self.first.point, length) else { return false };
         let closing = Closing::Component { from: &self.first.point, direction: &self.first.tangent, amount: 0.0 };
-        match self.problem.correct(&self.current.point, closing) {
+        match self.problem.correct(&near, closing) {
             Ok(met) => self.problem.distance(&met.point, &self.first.point) <= SAME * length,
             Err(_) => false,
         }

@@ -38,6 +38,7 @@
 //! assert!((point.multipliers[0].log_modulus + std::f64::consts::PI).abs() < 1e-9);
 //! ```
 
+mod align;
 mod locate;
 mod measure;
 mod normal_form;

@@ -483,6 +483,10 @@ impl Problem for CycleProblem {
         self.metric.inner(self.system.tables(), &a.mesh, &difference, &difference).sqrt()
     }
 
+    fn met_again(&self, point: &CyclePoint, first: &CyclePoint, within: f64) -> Option<CyclePoint> {
+        self.shifted_towards(point, first, within)
+    }
+
     fn parameter(&self, point: &CyclePoint) -> f64 {
         point.unknowns.parameter
     }

@@ -7,7 +7,7 @@ use armilla_record::{End, EndReason, EventKind, Point};
 use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_DOUBLING, WATCH_FOLD};
 
 use crate::ahead::Ahead;
-use crate::approach::approach;
+use crate::approach::{approach, orbit_stands};
 use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through};
 use crate::near_miss::{Sample, near_miss};
 use crate::step_events::{Found, events_of_step, is_explained};
@@ -214,7 +214,9 @@ impl Walker<'_, '_> {
         }
         self.seen.periods.push(period(&self.follower));
         let width = self.plan.study.range.1 - self.plan.study.range.0;
-        match approach(&self.seen.periods, width).filter(|_| self.follower.end().is_none()) {
+        let accuracy = self.plan.study.file.accuracy;
+        let grows = self.follower.end().is_none() && orbit_stands(&self.walk.points);
+        match approach(&self.seen.periods, width, accuracy).filter(|_| grows) {
             Some(approach) => {
                 let (event, ended) = blown_up(&after, self.plan, approach);
                 let (problem, _, _) = self.follower.parts();
