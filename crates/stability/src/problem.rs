@@ -340,6 +340,11 @@ impl CycleProblem {
         self.system.set_metric(self.metric.clone());
     }
 
+    /// Estimated roundoff of the parameter, as a standard deviation, where the last tangent was computed.
+    pub fn parameter_roundoff(&self) -> f64 {
+        self.parameter_roundoff + f64::EPSILON * self.metric.parameter_scale
+    }
+
     /// Parameter component of a unit tangent below which its sign is roundoff: that of the parameter at the last tangent,
     /// over [`TURNING_LENGTH`].
     fn turning_noise(&self) -> f64 {

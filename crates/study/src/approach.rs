@@ -5,7 +5,6 @@
 //! where a frequency goes to zero, `T = a + b / |p - p*|`. Each has three constants; three points fix
 //! them, those before judge them.
 
-use crate::step_events::SUPERCONVERGENCE;
 use crate::walk::Walked;
 
 /// A law of approach.
@@ -63,9 +62,20 @@ const GROWN_STEEPLY: f64 = 20.0;
 /// still too, but the orbit grows with the period.
 const SHAPE: f64 = 0.1;
 
-/// Tells an approach from the history of (parameter, period), oldest first; `width` is that of the asked range and
-/// `accuracy` the relative one of periods.
-pub(crate) fn approach(history: &[(f64, f64)], width: f64, accuracy: f64) -> Option<Approach> {
+/// How well the numbers of a history are known.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Known {
+    /// Width of the asked range.
+    pub width: f64,
+    /// Relative error of periods.
+    pub period: f64,
+    /// Error of the parameter on a branch.
+    pub parameter: f64,
+}
+
+/// Tells an approach from the history of (parameter, period), oldest first.
+pub(crate) fn approach(history: &[(f64, f64)], known: Known) -> Option<Approach> {
+    let width = known.width;
     let least = history.iter().map(|point| point.1).fold(f64::INFINITY, f64::min);
     let window = &history[history.len().checked_sub(WINDOW)?..];
     let (first, last) = (window[0], window[WINDOW - 1]);
@@ -76,12 +86,12 @@ pub(crate) fn approach(history: &[(f64, f64)], width: f64, accuracy: f64) -> Opt
     if !growing || !(still || steep) {
         return None;
     }
-    let moving = moving_part(history, width);
+    let moving = moving_part(history, known);
     [Law::Logarithm, Law::InverseRoot, Law::Inverse]
         .into_iter()
         .filter_map(|law| fit(law, &moving).map(|(limit, misfit)| (law, limit, misfit)))
         .min_by(|a, b| a.2.total_cmp(&b.2))
-        .map(|(law, limit, _)| Approach { law, limit, error: error(law, limit, &moving, (width, accuracy)) })
+        .map(|(law, limit, _)| Approach { law, limit, error: error(law, limit, &moving, known) })
         .or(Some(Approach { law: Law::Logarithm, limit: last.0, error: travelled * width + f64::EPSILON * width }))
 }
 
@@ -95,9 +105,9 @@ pub(crate) fn orbit_stands(points: &[Walked]) -> bool {
     (0..last.maxima.len()).all(|k| moved(k) <= allowed * range(k))
 }
 
-/// The points whose parameters still differ by more than roundoff.
-fn moving_part(history: &[(f64, f64)], width: f64) -> Vec<(f64, f64)> {
-    let resolved = 1e4 * f64::EPSILON * width;
+/// The points whose parameters still differ by much more than their error.
+fn moving_part(history: &[(f64, f64)], known: Known) -> Vec<(f64, f64)> {
+    let resolved = (1e4 * f64::EPSILON * known.width).max(RESOLVED * known.parameter);
     let mut end = history.len();
     while end >= 2 && (history[end - 1].0 - history[end - 2].0).abs() < resolved {
         end -= 1;
@@ -149,27 +159,35 @@ fn fit(law: Law, points: &[(f64, f64)]) -> Option<(f64, f64)> {
 /// What the law leaves out is smaller than its growing term by the square of the distance (by its square times a
 /// logarithm at a saddle loop), and moves the limit by as much: the limit from twice as far away is off at least three
 /// times as far, and the difference covers the error.
-fn error(law: Law, limit: f64, points: &[(f64, f64)], (width, accuracy): (f64, f64)) -> f64 {
+fn error(law: Law, limit: f64, points: &[(f64, f64)], known: Known) -> f64 {
     let last = points.last().map_or(limit, |last| last.0);
     let distance = (limit - last).abs();
     let farther = points.iter().rposition(|(p, _)| (limit - p).abs() >= 2.0 * distance);
     let before = farther.and_then(|at| fit(law, &points[..=at]));
     // Without points that far away nothing tells how well the law holds.
     let by_law = before.map_or(distance, |(other, _)| (limit - other).abs());
-    let moved = |sign: f64| {
+    // The worst for a ratio of differences: the middle of three against its neighbours.
+    let moved = |value: f64, period: f64| {
         let mut points = points.to_vec();
-        // The worst for a ratio of differences: the middle of three against its neighbours.
         if let [.., middle, _] = &mut points[..] {
-            middle.1 *= 1.0 + sign * SUPERCONVERGENCE * accuracy;
+            *middle = (middle.0 + value, middle.1 * (1.0 + period));
         }
         fit(law, &points).map_or(distance, |(other, _)| (limit - other).abs())
     };
-    by_law + moved(1.0).max(moved(-1.0)) + 16.0 * f64::EPSILON * width.max(limit.abs())
+    let value = known.parameter;
+    let by_noise = moved(value, 0.0).max(moved(-value, 0.0)) + moved(0.0, known.period).max(moved(0.0, -known.period));
+    by_law + by_noise + value + 16.0 * f64::EPSILON * known.width.max(limit.abs())
 }
+
+/// Differences of neighbouring parameters, in their errors, that a limit is told from: larger leaves more of what the law
+/// leaves out, smaller more noise.
+const RESOLVED: f64 = 100.0;
 
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    const KNOWN: Known = Known { width: 1.0, period: 1e-12, parameter: 1e-15 };
 
     fn history(law: Law, limit: f64, steps: usize) -> Vec<(f64, f64)> {
         // Strides of about equal growth of the period, as a follower makes them.
@@ -188,10 +206,10 @@ mod tests {
     /// Exact by construction: each law with a planted limit.
     #[test]
     fn planted_limits_return() {
-        let found = approach(&history(Law::Logarithm, 0.7, 40), 1.0, 1e-9).expect("grows without bound");
+        let found = approach(&history(Law::Logarithm, 0.7, 40), KNOWN).expect("grows without bound");
         assert_eq!(found.law, Law::Logarithm);
         assert!((found.limit - 0.7).abs() <= found.error && found.error < 1e-9, "{found:?}");
-        let found = approach(&history(Law::InverseRoot, -0.2, 120), 1.0, 1e-9).expect("grows without bound");
+        let found = approach(&history(Law::InverseRoot, -0.2, 120), KNOWN).expect("grows without bound");
         assert_eq!(found.law, Law::InverseRoot);
         assert!((found.limit + 0.2).abs() <= found.error && found.error < 1e-4, "{found:?}");
     }
@@ -199,7 +217,7 @@ mod tests {
     /// Exact by construction: a rotation whose frequency is the parameter.
     #[test]
     fn a_vanishing_frequency_is_told() {
-        let found = approach(&history(Law::Inverse, 0.0, 400), 1.0, 1e-9).expect("grows without bound");
+        let found = approach(&history(Law::Inverse, 0.0, 400), KNOWN).expect("grows without bound");
         assert_eq!(found.law, Law::Inverse);
         assert!(found.limit.abs() <= found.error && found.error < 1e-3, "{found:?}");
     }
@@ -208,6 +226,6 @@ mod tests {
     #[test]
     fn proportional_growth_is_no_blow_up() {
         let history: Vec<(f64, f64)> = (1..200).map(|k| (5.0 * k as f64, 8.0 * k as f64)).collect();
-        assert_eq!(approach(&history, 1000.0, 1e-9), None);
+        assert_eq!(approach(&history, Known { width: 1000.0, ..KNOWN }), None);
     }
 }

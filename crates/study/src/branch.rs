@@ -171,9 +171,9 @@ fn both_ways(
     let first = problem.describe(&start, lineage.turns, 0.0).map_err(|fault| no_cycle(fault.to_string()))?;
     let stuck = || no_cycle("the cycle at the start cannot be continued in the followed parameter".into());
     let up = problem.tangent(&start, Orientation::Parameter(1.0)).map_err(|_| stuck())?;
-    let plans = (plan(run, lineage, 1.0), -1.0);
     let mut collector = collector(run, lineage);
     collector.point(&first);
+    let plans = (plan(collector.run, lineage, 1.0), -1.0);
     let found = at_parameter(&mut problem, EventKind::Start, &start, 0.0);
     collector.event(&problem, &found);
     if plans.0.settings.targets.contains(&start.unknowns.parameter) {
@@ -206,7 +206,10 @@ fn outwards(run: &mut Run<'_>, lineage: &Lineage, doubled: Doubled) -> Result<Fi
     let tangent = problem
         .tangent(&point, Orientation::Along(&outwards))
         .map_err(|_| no_cycle("the doubled cycle cannot be continued".into()))?;
-    let mut plan = plan(run, lineage, 1.0);
+    let mut collector = collector(run, lineage);
+    collector.point(&first);
+    collector.point(&second);
+    let mut plan = plan(collector.run, lineage, 1.0);
     plan.ahead = next_doubling(&lineage.line).map(|predicted| Ahead {
         birth: birth.unknowns.parameter,
         value: predicted.value,
@@ -215,9 +218,6 @@ fn outwards(run: &mut Run<'_>, lineage: &Lineage, doubled: Doubled) -> Result<Fi
     let known = plan.ahead.is_some_and(|ahead| ahead.leads_from(point.unknowns.parameter));
     let initial = if known { TOWARDS_PREDICTED * amplitude } else { amplitude };
     plan.settings.initial = initial.clamp(plan.settings.shortest, plan.settings.longest);
-    let mut collector = collector(run, lineage);
-    collector.point(&first);
-    collector.point(&second);
     let mut found = at_parameter(&mut problem, EventKind::Start, &point, amplitude);
     found.note = lineage.born_at.as_ref().map(|parent| format!("first cycle beyond {parent}")).unwrap_or_default();
     collector.event(&problem, &found);

@@ -146,8 +146,10 @@ fn drop_other_end(study: &Study, lineage: &Lineage, branch: &mut Branch, queue: 
         return;
     };
     if let Some(at) = queue.iter().position(|waiting| waiting.lineage.name == name)
-        && let Some(met) = queue.remove(at).and_then(|waiting| waiting.lineage.born_at)
+        && let Some(waiting) = queue.remove(at)
+        && let Some(met) = &waiting.lineage.born_at
     {
+        branch.ends.1.value = waiting.birth_value();
         branch.ends.1.words = format!("returns to its parent at {met}; the branch born there is this one");
     }
 }

@@ -7,10 +7,10 @@ use armilla_record::{End, EndReason, EventKind, Point};
 use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_DOUBLING, WATCH_FOLD};
 
 use crate::ahead::Ahead;
-use crate::approach::{approach, orbit_stands};
-use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through};
+use crate::approach::{Known, approach, orbit_stands};
+use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost};
 use crate::near_miss::{Sample, near_miss};
-use crate::step_events::{Found, events_of_step, is_explained};
+use crate::step_events::{Found, SUPERCONVERGENCE, events_of_step, is_explained};
 use crate::study::Study;
 
 pub(crate) type CycleStation = Station<CyclePoint, CycleTangent>;
@@ -119,7 +119,7 @@ impl Walker<'_, '_> {
                 }
             }
         }
-        self.walk.end = end_of_follower(&self.follower, self.plan, &self.seen.motions);
+        self.walk.end = end_of_follower(&mut self.follower, self.plan, &self.seen.motions);
         self.walk
     }
 
@@ -143,7 +143,7 @@ impl Walker<'_, '_> {
             drop_idle_turns(&mut step);
         }
         self.seen.motions.push(motion(&mut self.follower));
-        let passage = passed_through(&mut self.follower, self.plan, &self.seen.motions);
+        let passage = passed_through(&mut self.follower, self.plan, &self.seen.motions, &self.walk.points);
         if matches!(passage, Passage::TooLong) && self.retry() {
             return Taken::On;
         }
@@ -207,16 +207,22 @@ impl Walker<'_, '_> {
             return Taken::NoMultipliers;
         };
         self.sink.point(&point);
+        let lost = resolution_lost(&point, self.plan);
         self.walk.points.push(Walked { point, cycle: after.point.clone() });
+        if let Some(lost) = lost {
+            return Taken::Ended(lost);
+        }
         if self.plan.to_first_doubling && doubles {
             let words = "followed to its first doubling only, as a cascade asks".into();
             return Taken::Ended(end(EndReason::Budget, after.point.unknowns.parameter, words));
         }
         self.seen.periods.push(period(&self.follower));
         let width = self.plan.study.range.1 - self.plan.study.range.0;
-        let accuracy = self.plan.study.file.accuracy;
+        let share = SUPERCONVERGENCE * self.walk.points.last().map_or(0.0, |last| last.point.profile_error);
+        let known =
+            Known { width, period: share, parameter: share * width + self.follower.parts().0.parameter_roundoff() };
         let grows = self.follower.end().is_none() && orbit_stands(&self.walk.points);
-        match approach(&self.seen.periods, width, accuracy).filter(|_| grows) {
+        match approach(&self.seen.periods, known).filter(|_| grows) {
             Some(approach) => {
                 let (event, ended) = blown_up(&after, self.plan, approach);
                 let (problem, _, _) = self.follower.parts();
