@@ -47,14 +47,15 @@ pub(crate) fn passed_through(
         let words = format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), known(plan, limit));
         return Passage::End(end(EndReason::Equilibrium { value: limit.0 }, last, words), Some(limit));
     }
-    if plan.turns.is_multiple_of(2) && problem.passed_birth(&before.point, &after.point) {
+    // Whatever its turns: they count crossings of one state, which may have the longer period alone.
+    if problem.passed_birth(&before.point, &after.point) {
         let sizes = sizes(points, (before, after), |point| problem.split(point));
         let limit = even_limit(&sizes, problem.profile_error(&before.point), plan);
         let at = format!("{} = {}", with_unit_name(plan), known(plan, limit));
         let words = if plan.doubled {
             format!("returns to its parent at {at}")
         } else {
-            format!("returns to the cycle of half its turns it was born from by a period doubling, at {at}")
+            format!("returns to the cycle of half its period that it was born from by a period doubling, at {at}")
         };
         return Passage::End(end(EndReason::ReturnsToParent, limit.0, words), None);
     }
@@ -71,7 +72,7 @@ fn sizes(
     /// Difference of two sizes, relative, below which their weights are roundoff.
     const DIFFERENT: f64 = 0.1;
     // `before` is the last of the points, unless it is the first station of the walk.
-    let earlier = &points[points.len().saturating_sub(EVEN_POINTS)..];
+    let earlier = &points[points.len().saturating_sub(EVEN_POINTS + WITNESSES)..];
     let mut stations: Vec<&CyclePoint> = earlier.iter().map(|walked| &walked.cycle).collect();
     if stations.is_empty() {
         stations.push(&before.point);
@@ -86,7 +87,7 @@ fn sizes(
             kept.push(found);
         }
     }
-    kept.split_off(kept.len().saturating_sub(EVEN_POINTS))
+    kept
 }
 
 /// A limit with its error, in the digits that the error leaves.
@@ -112,23 +113,26 @@ pub(crate) fn short(study: &Study, value: f64) -> String {
     format!("{shown}")
 }
 
-/// Stations at which a size is looked at: three tell a limit, a fourth its error.
-const EVEN_POINTS: usize = 4;
-/// Factor on the change that one more station makes to a limit: the change is its error to leading order.
+/// Stations a limit is told from.
+const EVEN_POINTS: usize = 3;
+/// Further stations its error is told from: one could agree by chance where two orders cancel.
+const WITNESSES: usize = 2;
+/// Factor on the change that a further station makes to a limit: the change is its error to leading order.
 const ORDER_MARGIN: f64 = 2.0;
 
 /// Parameter where a size vanishes, and its error: near a Hopf point the parameter is an even function of the amplitude
 /// (Hopf 1942), near a period doubling of the difference between the turns, so a polynomial in the square of the size
-/// through the nearest stations is extrapolated; one station more tells what it is off. Errors of the sizes, integrals over
+/// through the nearest stations is extrapolated; further stations tell what it is off. Errors of the sizes, integrals over
 /// the cycle, and of the parameter converge as fast as thresholds do.
 fn even_limit(sizes: &[(f64, f64)], profile_error: f64, plan: &WalkPlan<'_>) -> (f64, f64) {
     let mut sizes = sizes.to_vec();
     sizes.sort_by(|a, b| a.0.total_cmp(&b.0));
-    sizes.truncate(EVEN_POINTS);
-    let nearest = &sizes[..(sizes.len() - 1).max(1)];
-    let value = at_rest(nearest);
-    // A single station says nothing but where it stands itself.
-    let by_order = ORDER_MARGIN * (at_rest(&sizes) - value).abs();
+    sizes.truncate(EVEN_POINTS + WITNESSES);
+    // Where stations are few, the last one stays a witness.
+    let told = EVEN_POINTS.min(sizes.len() - 1).max(1);
+    let value = at_rest(&sizes[..told]);
+    let moved = (told..=sizes.len()).map(|count| (at_rest(&sizes[..count]) - value).abs()).fold(0.0, f64::max);
+    let by_order = ORDER_MARGIN * moved;
     let scale = (plan.study.range.1 - plan.study.range.0).max(value.abs());
     (value, by_order + (SUPERCONVERGENCE * profile_error + ROUNDOFF_UNITS * f64::EPSILON) * scale)
 }
@@ -238,7 +242,8 @@ pub(crate) fn end_of_follower(
             end(EndReason::Budget, value, format!("all points allowed by `pursue` were used at {name} = {here}"))
         }
         Some(FollowEnd::Stuck | FollowEnd::Outside(_)) if shrunk => {
-            let limit = even_limit(&motions[motions.len().saturating_sub(EVEN_POINTS)..], profile_error, plan);
+            let limit =
+                even_limit(&motions[motions.len().saturating_sub(EVEN_POINTS + WITNESSES)..], profile_error, plan);
             let words = format!("shrinks to an equilibrium at {name} = {}", known(plan, limit));
             end(EndReason::Equilibrium { value: limit.0 }, value, words)
         }

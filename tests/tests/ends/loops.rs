@@ -83,7 +83,7 @@ fn a_branch_of_two_turns_ends_where_it_was_born() {
         let a = branch(&traced, "a");
         for (end, exact) in [(&a.ends.0, p0 - half), (&a.ends.1, p0 + half)] {
             assert_eq!(end.reason, EndReason::ReturnsToParent, "{what}: {}", end.words);
-            assert!(end.words.starts_with("returns to the cycle of half its turns"), "{what}: {}", end.words);
+            assert!(end.words.starts_with("returns to the cycle of half its period"), "{what}: {}", end.words);
             let (_, error) = value_with_error(&end.words);
             let off = (end.value - exact).abs().max(4.0 * f64::EPSILON);
             eprintln!("{what}: off {off:.1e}, error {error:.1e}");
