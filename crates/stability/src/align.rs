@@ -34,7 +34,7 @@ impl CycleProblem {
         for (node, time) in nodes.chunks_exact_mut(profile.n_states).zip(wanted.node_times()) {
             evaluator.at(time + shift, node);
         }
-        let shifted = CyclePoint { mesh: to.mesh.clone(), unknowns: Iterate { nodes, ..point.unknowns.clone() } };
+        let shifted = CyclePoint { unknowns: Iterate { nodes, ..point.unknowns.clone() }, ..to.clone() };
         (armilla_follow::Problem::distance(self, &shifted, to) <= within).then_some(shifted)
     }
 

@@ -6,8 +6,6 @@
 //! not be known (Keller 1977, in Applications of Bifurcation Theory, 359; Kuznetsov, Govaerts, Doedel & Dhooge 2005,
 //! SIAM J. Numer. Anal. 43:1407, for the predictor).
 
-use std::sync::Arc;
-
 use armilla_collocation::{Metric, Row};
 use armilla_follow::{Closing, Problem};
 
@@ -74,9 +72,9 @@ impl CycleProblem {
         let forecast = form.and_then(|form| Forecast::new(&problem, located, form));
         // The located cycle stands on a mesh refined for its error; one for the accuracy alone has several times fewer
         // intervals. Where the branch has no cycle on it (a coarse accuracy shifts the birth), the fine one remains.
-        let own = problem.own_mesh(&birth).map(|mesh| {
-            let tables = problem.system.tables();
-            (birth.on_mesh(tables, &mesh), outwards.on_mesh(tables, &mesh))
+        let own = problem.own_mesh(&birth).map(|own| {
+            let outwards = outwards.on_mesh(own.degree, &own.mesh);
+            (own, outwards)
         });
         for (birth, outwards) in own.into_iter().chain([(birth, outwards)]) {
             let mut amplitude = forecast.as_ref().map_or(AMPLITUDE, |forecast| forecast.amplitude.min(LARGEST));
@@ -94,47 +92,45 @@ impl CycleProblem {
         Err(SwitchFault)
     }
 
-    /// A mesh that carries `fine` to the accuracy with fewer intervals, if there is one. Each round the estimate comes from
-    /// a better mesh, the values from the fine one.
-    fn own_mesh(&self, fine: &CyclePoint) -> Option<Arc<[f64]>> {
+    /// `fine` carried to a mesh that holds it to the accuracy with less work, if there is one. Each round the estimate comes
+    /// from a better mesh, the values from the fine one.
+    fn own_mesh(&mut self, fine: &CyclePoint) -> Option<CyclePoint> {
         const ROUNDS: usize = 4;
-        let mut mesh = None;
-        let mut carried = fine.clone();
+        let mut own: Option<CyclePoint> = None;
         for _ in 0..ROUNDS {
-            let Some(better) = self.better_mesh(&carried) else { break };
-            carried = fine.on_mesh(self.system.tables(), &better);
-            mesh = Some(better);
+            let Some((degree, mesh)) = self.grid_for(own.as_ref().unwrap_or(fine)) else { break };
+            own = Some(fine.on_mesh(degree, &mesh));
         }
-        mesh.filter(|mesh| mesh.len() < fine.mesh.len())
+        own.filter(|own| own.unknowns.nodes.len() < fine.unknowns.nodes.len())
     }
 
     /// Size of the part of a cycle that changes sign from one half of the period to the other, in the metric: 0 for a
     /// cycle that is a shorter one told twice.
     pub fn split(&self, point: &CyclePoint) -> f64 {
         let nodes = self.split_nodes(point);
-        self.metric.nodes_inner(self.system.tables(), &point.mesh, &nodes, &nodes).sqrt()
+        self.metric.nodes_inner(point.tables(), &point.mesh, &nodes, &nodes).sqrt()
     }
 
     /// Whether a doubled branch went through its birth between two neighbouring points: the part that tells one half
     /// of the period from the other has changed its sign.
     pub fn passed_birth(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
-        let before = before.on_mesh(self.system.tables(), &after.mesh);
+        let before = before.on_mesh(after.degree, &after.mesh);
         let (a, b) = (self.split_nodes(&before), self.split_nodes(after));
-        self.metric.nodes_inner(self.system.tables(), &after.mesh, &a, &b) < 0.0
+        self.metric.nodes_inner(after.tables(), &after.mesh, &a, &b) < 0.0
     }
 
     /// Whether a branch went through an equilibrium between two neighbouring points: the motion about its mean has
     /// changed its sign.
     pub fn passed_equilibrium(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
-        let before = before.on_mesh(self.system.tables(), &after.mesh);
+        let before = before.on_mesh(after.degree, &after.mesh);
         let (a, b) = (self.motion_nodes(&before), self.motion_nodes(after));
-        self.metric.nodes_inner(self.system.tables(), &after.mesh, &a, &b) < 0.0
+        self.metric.nodes_inner(after.tables(), &after.mesh, &a, &b) < 0.0
     }
 
     /// Size of the motion about the mean, in the metric.
     pub fn motion(&self, point: &CyclePoint) -> f64 {
         let nodes = self.motion_nodes(point);
-        self.metric.nodes_inner(self.system.tables(), &point.mesh, &nodes, &nodes).sqrt()
+        self.metric.nodes_inner(point.tables(), &point.mesh, &nodes, &nodes).sqrt()
     }
 
     fn motion_nodes(&self, point: &CyclePoint) -> Vec<f64> {
@@ -167,7 +163,7 @@ struct Forecast {
 impl Forecast {
     fn new(problem: &CycleProblem, located: &Located, form: &DoublingForm) -> Option<Self> {
         let n = problem.system.n();
-        let tables = problem.system.tables();
+        let tables = located.point.tables();
         let (v, mesh) = (&located.vectors.nodes, &located.point.mesh);
         let period = located.point.unknowns.period;
         // Lengths of v in the metric, which is the same over one turn and two, and in the norm of the normal form.
@@ -191,9 +187,9 @@ fn direction(problem: &CycleProblem, birth: &CyclePoint, located: &Located) -> C
     let mut nodes = v[..v.len() - n].to_vec();
     nodes.extend(v.iter().map(|value| -value));
     let mut row = Row { nodes, period: 0.0, parameter: 0.0 };
-    let length = problem.metric.inner(problem.system.tables(), &birth.mesh, &row, &row).sqrt();
+    let length = problem.metric.inner(birth.tables(), &birth.mesh, &row, &row).sqrt();
     row.nodes.iter_mut().for_each(|value| *value /= length);
-    CycleTangent { mesh: birth.mesh.clone(), row }
+    CycleTangent { degree: birth.degree, mesh: birth.mesh.clone(), row }
 }
 
 /// The start of the branch on a mesh and in a metric of its own; amplitudes are measured in the new metric then.

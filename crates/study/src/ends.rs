@@ -43,14 +43,14 @@ pub(crate) fn passed_through(
             return Passage::TooLong;
         }
         let sizes = sizes(points, (before, after), |point| problem.motion(point));
-        let limit = even_limit(&sizes, problem.profile_error(&before.point), plan);
+        let limit = even_limit(&sizes, worst_profile(points, problem.profile_error(&before.point)), plan);
         let words = format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), known(plan, limit));
         return Passage::End(end(EndReason::Equilibrium { value: limit.0 }, last, words), Some(limit));
     }
     // Whatever its turns: they count crossings of one state, which may have the longer period alone.
     if problem.passed_birth(&before.point, &after.point) {
         let sizes = sizes(points, (before, after), |point| problem.split(point));
-        let limit = even_limit(&sizes, problem.profile_error(&before.point), plan);
+        let limit = even_limit(&sizes, worst_profile(points, problem.profile_error(&before.point)), plan);
         let at = format!("{} = {}", with_unit_name(plan), known(plan, limit));
         let words = if plan.doubled {
             format!("returns to its parent at {at}")
@@ -88,6 +88,12 @@ fn sizes(
         }
     }
     kept
+}
+
+/// Largest error of a profile among the last stations.
+fn worst_profile(points: &[Walked], last: f64) -> f64 {
+    let earlier = &points[points.len().saturating_sub(EVEN_POINTS + WITNESSES)..];
+    earlier.iter().map(|walked| walked.point.profile_error).fold(last, f64::max)
 }
 
 /// A limit with its error, in the digits that the error leaves.
