@@ -39,6 +39,7 @@
 //! ```
 
 mod agreement;
+mod align;
 mod locate;
 mod measure;
 mod normal_form;

@@ -372,6 +372,11 @@ impl CycleProblem {
         self.system.set_metric(self.metric.clone());
     }
 
+    /// Estimated roundoff of the parameter, as a standard deviation, where the last tangent was computed.
+    pub fn parameter_roundoff(&self) -> f64 {
+        self.parameter_roundoff + f64::EPSILON * self.metric.parameter_scale
+    }
+
     /// Parameter component of a unit tangent below which its sign is roundoff: that of the parameter at the last tangent,
     /// over [`TURNING_LENGTH`].
     fn turning_noise(&self) -> f64 {
@@ -489,6 +494,10 @@ impl Problem for CycleProblem {
             parameter: a.unknowns.parameter - b.unknowns.parameter,
         };
         self.metric.inner(a.tables(), &a.mesh, &difference, &difference).sqrt()
+    }
+
+    fn met_again(&self, point: &CyclePoint, first: &CyclePoint, within: f64) -> Option<CyclePoint> {
+        self.shifted_towards(point, first, within)
     }
 
     fn parameter(&self, point: &CyclePoint) -> f64 {
