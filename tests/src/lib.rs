@@ -14,10 +14,14 @@
 //! ```
 
 mod bracket;
+mod change;
 mod case;
 mod check;
 mod job;
+mod ledger;
 mod order;
+mod planted;
+mod random;
 mod series;
 mod uniform;
 mod walk;
@@ -26,7 +30,11 @@ pub use bracket::{station, stations};
 pub use case::{Case, settings};
 pub use check::{absolute, multiplier, relative};
 pub use job::{branch, event, job};
+pub use change::{Bend, Change, Move};
+pub use ledger::Ratios;
 pub use order::Orders;
+pub use planted::{Beneath, Exact, Planted, Sheet};
+pub use random::Random;
 pub use series::{VanDerPol, divergence_integral};
 pub use uniform::{Uniform, uniform_mesh};
 pub use walk::walk;

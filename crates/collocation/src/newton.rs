@@ -138,6 +138,10 @@ pub fn correct(
     correct_with(&mut workspace, system, at, Task { reference, closing, settings })
 }
 
+/// Units in the last place of the largest state over its scale at which stagnation is taken for roundoff in any case: a
+/// state far from zero that hardly moves cannot be had to more digits. A conditioning of a hundred is allowed for.
+const FLOOR_UNITS: f64 = 100.0;
+
 /// What [`correct_with`] is to do.
 pub struct Task<'a> {
     /// Node values of the phase condition.
@@ -158,7 +162,8 @@ pub fn correct_with(
     at: &mut Iterate,
     task: Task<'_>,
 ) -> Result<Report, Failure> {
-    let settings = task.settings;
+    let mut settings = task.settings;
+    settings.floor = settings.floor.max(FLOOR_UNITS * f64::EPSILON * system.spec().metric.largest(&at.nodes));
     workspace.fit(system);
     system.phase_row(task.reference, &mut workspace.phase);
     let mut report = Report::default();
