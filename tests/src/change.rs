@@ -94,8 +94,7 @@ impl Change {
             match *step {
                 Move::Turn(i, j, (c, s)) => {
                     (x[i], x[j]) = (x[i] * c - x[j] * s, x[i] * s + x[j] * c);
-                    (velocity[i], velocity[j]) =
-                        (velocity[i] * c - velocity[j] * s, velocity[i] * s + velocity[j] * c);
+                    (velocity[i], velocity[j]) = (velocity[i] * c - velocity[j] * s, velocity[i] * s + velocity[j] * c);
                 }
                 Move::Shear(i, j, (size, bend)) => {
                     let (value, slope) = bend.at(x[j]);

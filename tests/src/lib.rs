@@ -14,8 +14,8 @@
 //! ```
 
 mod bracket;
-mod change;
 mod case;
+mod change;
 mod check;
 mod job;
 mod ledger;
@@ -28,9 +28,9 @@ mod walk;
 
 pub use bracket::{station, stations};
 pub use case::{Case, settings};
+pub use change::{Bend, Change, Move};
 pub use check::{absolute, multiplier, relative};
 pub use job::{branch, event, job};
-pub use change::{Bend, Change, Move};
 pub use ledger::Ratios;
 pub use order::Orders;
 pub use planted::{Beneath, Exact, Planted, Sheet};

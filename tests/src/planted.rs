@@ -252,7 +252,8 @@ impl Planted {
         let n = beneath.n() + beside.len();
         let origin = random.between(-10.0, 10.0);
         let change = Change::random(random, n);
-        let (clock, unit) = (random.decade(-3.0, 3.0), random.decade(-3.0, 3.0) * if random.coin() { 1.0 } else { -1.0 });
+        let (clock, unit) =
+            (random.decade(-3.0, 3.0), random.decade(-3.0, 3.0) * if random.coin() { 1.0 } else { -1.0 });
         Self { beneath, beside, change, clock, origin: origin * unit, unit }
     }
 
@@ -302,7 +303,9 @@ impl Planted {
             ranges.iter().map(|range| (share * range * random.between(-1.0, 1.0), random.between(0.0, TAU))).collect();
         for time in profile.node_times() {
             let (state, _) = self.orbit(sheet, value, time);
-            profile.values.extend(state.iter().zip(&waves).map(|(u, (size, phase))| u + size * (TAU * time + phase).sin()));
+            profile
+                .values
+                .extend(state.iter().zip(&waves).map(|(u, (size, phase))| u + size * (TAU * time + phase).sin()));
         }
         profile
     }
@@ -340,13 +343,15 @@ impl Planted {
         let points = self.change.pull_text(states.clone(), &mut expressions);
         let x = points.last().expect("it starts with y").clone();
         let mut velocity = self.beneath.text(&x, &mut expressions);
-        velocity.extend(self.beside.iter().zip(&x[self.beneath.n()..]).map(|(rate, x)| format!("{}*{x}", number(*rate))));
+        velocity
+            .extend(self.beside.iter().zip(&x[self.beneath.n()..]).map(|(rate, x)| format!("{}*{x}", number(*rate))));
         let rates = self.change.push_text(velocity, &points, &mut expressions);
         let quoted = |pairs: Vec<(String, String)>| -> String {
             pairs.iter().map(|(name, formula)| format!("        \"{name}\": \"{formula}\",\n")).collect()
         };
         let begin = self.orbit(Sheet::First, self.value(0.1), 0.0).0;
-        let declared: String = states.iter().zip(&begin).map(|(name, u)| format!("\"{name}\": (begin: {u:?}), ")).collect();
+        let declared: String =
+            states.iter().zip(&begin).map(|(name, u)| format!("\"{name}\": (begin: {u:?}), ")).collect();
         let rates = states.into_iter().zip(rates).map(|(y, v)| (y, format!("{}*({v})", number(self.clock)))).collect();
         let [a, b] = self.beneath.constants();
         let text = format!(

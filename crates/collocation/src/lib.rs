@@ -33,6 +33,7 @@
 //! assert!(before.error > 1e-9 && after.error < 1e-9, "{} {}", before.error, after.error);
 //! ```
 
+mod defect;
 mod gauss;
 mod mesh;
 mod metric;
@@ -41,6 +42,7 @@ mod system;
 mod tables;
 mod variational;
 
+pub use defect::{ProfileError, profile_error};
 pub use gauss::{gauss, radau};
 pub use mesh::{ErrorEstimate, MeshChoice, MeshSettings, estimate_error, interpolate_nodes, remesh};
 pub use metric::Metric;

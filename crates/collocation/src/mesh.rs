@@ -82,9 +82,7 @@ pub fn estimate_error(tables: &Tables, mesh: &[f64], nodes: &[f64], least: &[f64
     let shares: Vec<f64> = derivative.iter().enumerate().map(|(i, d)| h(i) * d.powf(1.0 / order)).collect();
     let largest = shares.iter().copied().fold(0.0, f64::max);
     let mean = shares.iter().sum::<f64>() / intervals as f64;
-    let steepest = |i: usize| jumps[(i + intervals - 1) % intervals].max(jumps[i]);
-    let worst = (0..intervals).map(|i| h(i) * steepest(i).powf(1.0 / order)).fold(0.0, f64::max);
-    let error = tables.error_constant * worst.powf(order);
+    let error = tables.error_constant * largest.powf(order);
     ErrorEstimate { error, derivative, imbalance: if mean > 0.0 { largest / mean } else { 1.0 } }
 }
 

@@ -3,8 +3,9 @@
 use std::sync::Arc;
 
 use armilla_collocation::{
-    ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings, Report, Row,
-    Scalar, System, SystemSpec, Task, Workspace, correct_with, estimate_error, remesh, roundoff,
+    ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings, ProfileError,
+    Report, Row, Scalar, System, SystemSpec, Task, Workspace, correct_with, estimate_error, profile_error, remesh,
+    roundoff,
 };
 use armilla_follow::{Closing, Corrected, Failure, Orientation, Problem, Watch, Watched};
 use armilla_linalg::{Bordered, Right};
@@ -227,12 +228,22 @@ impl CycleProblem {
 
     /// Estimated error of a cycle's profile, relative to the range of each state.
     pub fn profile_error(&self, point: &CyclePoint) -> f64 {
-        self.estimate(point).error
+        self.error_of(point).total()
     }
 
+    fn error_of(&self, point: &CyclePoint) -> ProfileError {
+        let (profile, parameters) = (self.profile(point), self.parameters_at(point));
+        profile_error(self.spec.field.as_ref(), &parameters, &profile, &self.least_ranges())
+    }
+
+    fn least_ranges(&self) -> Vec<f64> {
+        self.metric.scales.iter().map(|scale| LEAST_RANGE * scale).collect()
+    }
+
+    /// Jumps of derivatives tell where the mesh is too coarse, the defect by how much.
     fn estimate(&self, point: &CyclePoint) -> ErrorEstimate {
-        let least: Vec<f64> = self.metric.scales.iter().map(|scale| LEAST_RANGE * scale).collect();
-        estimate_error(self.system.tables(), &point.mesh, &point.unknowns.nodes, &least)
+        let jumps = estimate_error(self.system.tables(), &point.mesh, &point.unknowns.nodes, &self.least_ranges());
+        ErrorEstimate { error: self.error_of(point).discretisation, ..jumps }
     }
 
     /// A point as a row of the branch table.
@@ -377,7 +388,8 @@ impl CycleProblem {
 
     /// Whether a change of mesh helped: fewer intervals, or a smaller error.
     fn is_worth(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
-        after.mesh.len() < before.mesh.len() || self.profile_error(after) < WORTH * self.profile_error(before)
+        let error = |point: &CyclePoint| self.error_of(point).discretisation;
+        after.mesh.len() < before.mesh.len() || error(after) < WORTH * error(before)
     }
 
     fn arclength_row(&mut self, direction: &CycleTangent, mesh: &Arc<[f64]>) -> Row {

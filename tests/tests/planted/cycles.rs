@@ -15,7 +15,7 @@ fn run(first_seed: u64, sheet: Sheet, draw: impl Fn(u64) -> Draw, at: impl Fn(&m
         let mut case = draw(seed);
         let mu = at(&mut case);
         let value = case.planted.value(mu);
-        let Some((mut problem, cycle)) = case.start(sheet, value) else { continue };
+        let (mut problem, cycle) = case.start(sheet, value);
         let wanted = Wanted { name: &case.name, planted: &case.planted, sheet };
         judge(&mut problem, &cycle, wanted, &mut ratios);
     }
@@ -33,7 +33,8 @@ fn every_number_of_a_cycle_is_within_its_error() {
     ratios.extend(run(6000, Sheet::First, |seed| Draw::new(seed, turning), |case| case.random.either_sign(0.02, 0.2)));
     // U^2 = -l/g: the side of l goes with the sign of g.
     let doubled = |seed| Draw::new(seed, turning);
-    let side = |planted: &Planted| if matches!(planted.beneath, Beneath::Turning(g, _) if g > 0.0) { -1.0 } else { 1.0 };
+    let side =
+        |planted: &Planted| if matches!(planted.beneath, Beneath::Turning(g, _) if g > 0.0) { -1.0 } else { 1.0 };
     ratios.extend(run(7000, Sheet::Doubled, doubled, |case| side(&case.planted) * case.random.between(0.02, 0.07)));
     ratios.check();
 }

@@ -9,6 +9,9 @@ use armilla_tests::{Beneath, Planted, Random, Sheet};
 /// Share of the size by which guesses are off.
 const OFF: f64 = 2e-3;
 
+/// Width of the range a branch is followed over, in the parameter beneath.
+pub const WIDTH: f64 = 0.4;
+
 /// A system with everything that was drawn for it.
 pub struct Draw {
     /// What tells the case in a message.
@@ -34,7 +37,7 @@ impl Draw {
     }
 
     /// The cycle of a sheet at a value of the followed parameter, corrected from a disturbed exact one.
-    pub fn start(&mut self, sheet: Sheet, value: f64) -> Option<(CycleProblem, CyclePoint)> {
+    pub fn start(&mut self, sheet: Sheet, value: f64) -> (CycleProblem, CyclePoint) {
         let settings = CycleSettings::new(self.accuracy);
         let guess = self.planted.guess(&mut self.random, (sheet, value), settings.degree, OFF);
         let spec = CycleSpec {
@@ -42,9 +45,9 @@ impl Draw {
             parameters: self.planted.parameters(value),
             free: 0,
             typical: self.planted.orbit(sheet, value, 0.0).0.into_iter().map(f64::abs).collect(),
-            parameter_scale: self.planted.unit.abs(),
+            parameter_scale: WIDTH * self.planted.unit.abs(),
         };
-        CycleProblem::start(spec, settings, &guess, value).map_err(|fault| eprintln!("{}: {fault} {:?}", self.name, self.planted)).ok()
+        CycleProblem::start(spec, settings, &guess, value).unwrap_or_else(|fault| panic!("{}: {fault}", self.name))
     }
 }
 

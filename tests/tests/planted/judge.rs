@@ -23,20 +23,21 @@ pub fn judge(problem: &mut CycleProblem, cycle: &CyclePoint, wanted: Wanted<'_>,
     ratios.add("period", wanted.name, ((fine.unknowns.period - exact.period).abs(), error));
     let sizes = problem.metric().scales.clone();
     let distance = profile_distance(&problem.profile(cycle), wanted, (point.value, &sizes));
-    ratios.add("profile", wanted.name, (distance, point.profile_error));
-    multipliers(&point, &exact.multipliers, (wanted.name, problem.settings().mesh.accuracy), ratios);
+    let name = format!("{} N={}", wanted.name, point.intervals);
+    ratios.add("profile", &name, (distance, point.profile_error));
+    multipliers(&point, &exact.multipliers, wanted.name, ratios);
 }
 
 /// Every multiplier, its sign, and the unstable count.
 ///
 /// What is claimed of multipliers: Liouville's formula holds to `liouville_defect`, the trivial one to `trivial_defect`,
-/// and the cycle they are taken along has errors of the order of the accuracy, to which logarithms are as sensitive as
-/// they are large.
-fn multipliers(point: &Point, exact: &[(f64, bool)], (name, accuracy): (&str, f64), ratios: &mut Ratios) {
+/// and the cycle they are taken along has the error of its profile, to which logarithms are as sensitive as they are
+/// large.
+fn multipliers(point: &Point, exact: &[(f64, bool)], name: &str, ratios: &mut Ratios) {
     assert!(point.unresolved.is_none(), "{name}: {:?}", point.unresolved);
     assert_eq!(point.multipliers.len(), exact.len(), "{name}");
     let size: f64 = exact.iter().map(|(log, _)| log.abs()).sum();
-    let claimed = point.liouville_defect + point.trivial_defect + accuracy.max(point.profile_error) * size.max(1.0);
+    let claimed = point.liouville_defect + point.trivial_defect + point.profile_error * size.max(1.0);
     for (found, (log, negative)) in point.multipliers.iter().zip(exact) {
         ratios.add("multiplier", name, ((found.log_modulus - log).abs(), claimed));
         // Two of nearly equal modulus may come as a pair.
