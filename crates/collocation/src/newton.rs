@@ -268,13 +268,8 @@ pub fn roundoff(bordered: &mut Bordered, system: &System, scalar: Scalar, closin
 
 impl Workspace {
     /// [`roundoff`] after [`correct_with`] has converged on the system's mesh; 0 before any correction.
-    pub fn roundoff(&mut self, system: &System, scalar: Scalar) -> f64 {
-        // The closing is of size 1 where it is a bordered test function, and exact where it holds the parameter.
-        let touches_nodes = self.row.as_ref().is_some_and(|row| row.nodes.iter().any(|value| *value != 0.0));
-        match self.bordered.as_mut() {
-            Some(bordered) => roundoff(bordered, system, scalar, if touches_nodes { 1.0 } else { 0.0 }),
-            None => 0.0,
-        }
+    pub fn roundoff(&mut self, system: &System, scalar: Scalar, closing: f64) -> f64 {
+        self.bordered.as_mut().map_or(0.0, |bordered| roundoff(bordered, system, scalar, closing))
     }
 
     /// One Newton iteration with a full step, applied to `at` whatever its size; no allocation once sized. For callers

@@ -130,6 +130,8 @@ pub struct System {
     tables: Tables,
     mesh: Vec<f64>,
     entries: Vec<(usize, usize)>,
+    /// Of each entry of the Jacobian: size of the column's state over that of the row's, the units of the blocks.
+    ratios: Vec<f64>,
     cyclic: Cyclic,
     states: Vec<f64>,
     rates: Vec<f64>,
@@ -150,13 +152,14 @@ impl System {
     pub fn new(spec: SystemSpec, degree: usize, mesh: &[f64]) -> Self {
         let evaluator = spec.field.evaluator(&[Column::Parameter(spec.free)]);
         let pattern = spec.field.pattern();
-        let entries = pattern.entries().collect();
+        let entries: Vec<(usize, usize)> = pattern.entries().collect();
         let shape = Shape { n: spec.field.n_states(), inner: 0, intervals: 1 };
         let mut system = Self {
             spec,
             evaluator,
             tables: Tables::new(degree),
             mesh: Vec::new(),
+            ratios: vec![1.0; entries.len()],
             entries,
             cyclic: Cyclic::new(shape),
             states: Vec::new(),
@@ -252,6 +255,10 @@ impl System {
     pub fn linearise(&mut self, at: &Iterate) -> Result<(), Fault> {
         self.evaluate(at)?;
         self.fill_residual(at);
+        self.cyclic.set_sizes(&self.spec.metric.scales);
+        for (ratio, &(a, b)) in self.ratios.iter_mut().zip(&self.entries) {
+            *ratio = self.cyclic.sizes()[b] / self.cyclic.sizes()[a];
+        }
         for i in 0..self.mesh.len() - 1 {
             self.fill_block(i);
         }
@@ -322,7 +329,7 @@ impl System {
             let values = &self.tables.value[k * size..(k + 1) * size];
             let slopes = &self.tables.slope[k * size..(k + 1) * size];
             for (entry, &(a, b)) in self.entries.iter().enumerate() {
-                let factor = -step * self.jacobian[entry * points + i * m + k];
+                let factor = -step * self.jacobian[entry * points + i * m + k] * self.ratios[entry];
                 let row = &mut block[(k * n + a) * width..(k * n + a + 1) * width];
                 for (j, value) in values.iter().enumerate() {
                     row[column(j) + b] += factor * value;
@@ -349,6 +356,30 @@ impl System {
                 let terms: f64 =
                     slopes.iter().enumerate().map(|(j, slope)| (slope * self.nodes[(i * m + j) * n + a]).abs()).sum();
                 out[point * n + a] = terms + (self.h(i) * self.period * self.rates[a * points + point]).abs();
+            }
+        }
+    }
+
+    /// The same for the rows of a variation (v, S), `Sum_j |L'_j v_j| + h T Sum_b |A_ab v_b| + h |S f|`, at the last
+    /// linearisation.
+    pub fn variation_sizes(&mut self, nodes: &[f64], period: f64, out: &mut [f64]) {
+        let (n, m, points) = (self.n(), self.tables.degree, self.points());
+        let size = m + 1;
+        to_points(&self.tables, n, nodes, &mut self.variation_points);
+        for point in 0..points {
+            let (i, k) = (point / m, point % m);
+            let slopes = &self.tables.slope[k * size..(k + 1) * size];
+            for a in 0..n {
+                let terms: f64 =
+                    slopes.iter().enumerate().map(|(j, slope)| (slope * nodes[(i * m + j) * n + a]).abs()).sum();
+                out[point * n + a] = terms + (self.h(i) * period * self.rates[a * points + point]).abs();
+            }
+        }
+        for (entry, &(a, b)) in self.entries.iter().enumerate() {
+            for point in 0..points {
+                let step = self.h(point / m) * self.period;
+                let term = self.jacobian[entry * points + point] * self.variation_points[b * points + point];
+                out[point * n + a] += (step * term).abs();
             }
         }
     }

@@ -116,13 +116,13 @@ impl CycleProblem {
         &mut self,
         kind: CriticalKind,
         point: &mut CyclePoint,
-    ) -> Result<(Report, NullVectors), NewtonFailure> {
+    ) -> Result<(Report, TestFunction), NewtonFailure> {
         self.system.set_mesh(&point.mesh);
         self.system.linearise(&point.unknowns)?;
         let mut function = TestFunction::new(kind, &self.system, &point.unknowns)?;
         let reference = point.unknowns.nodes.clone();
         let report = self.newton(point, &reference, &mut function)?;
-        Ok((report, function.vectors().clone()))
+        Ok((report, function))
     }
 
     /// The event again with every interval halved: the better value, and the difference as the error of it.
@@ -133,21 +133,23 @@ impl CycleProblem {
     ) -> Result<(CyclePoint, f64, f64, NullVectors), NewtonFailure> {
         let mesh: Arc<[f64]> = halved(&coarse.mesh).into();
         let mut fine = coarse.on_mesh(self.system.tables(), &mesh);
-        let (_, vectors) = self.augmented(kind, &mut fine)?;
+        let (_, function) = self.augmented(kind, &mut fine)?;
+        let size = function.size(&mut self.system);
         let value_error = (coarse.unknowns.parameter - fine.unknowns.parameter).abs()
-            + self.rounding(Scalar::Parameter, fine.unknowns.parameter);
-        let period_error =
-            (coarse.unknowns.period - fine.unknowns.period).abs() + self.rounding(Scalar::Period, fine.unknowns.period);
-        Ok((fine, value_error, period_error, vectors))
+            + self.rounding(Scalar::Parameter, fine.unknowns.parameter, size);
+        let period_error = (coarse.unknowns.period - fine.unknowns.period).abs()
+            + self.rounding(Scalar::Period, fine.unknowns.period, size);
+        Ok((fine, value_error, period_error, function.vectors().clone()))
     }
 
-    /// Roundoff of a scalar of the last corrected point: that of the rows through the conditioning, and of the number.
-    fn rounding(&mut self, scalar: Scalar, value: f64) -> f64 {
+    /// Roundoff of a scalar of the last corrected point: that of the rows and of a closing with terms of size `closing`
+    /// through the conditioning, and of the number.
+    fn rounding(&mut self, scalar: Scalar, value: f64, closing: f64) -> f64 {
         let scale = match scalar {
             Scalar::Parameter => self.metric.parameter_scale,
             Scalar::Period => 0.0,
         };
-        ROUNDOFF_MARGIN * self.newton.roundoff(&self.system, scalar)
+        ROUNDOFF_MARGIN * self.newton.roundoff(&self.system, scalar, closing)
             + COHERENT_UNITS * f64::EPSILON * value.abs().max(scale)
     }
 
@@ -197,8 +199,9 @@ impl CycleProblem {
         let mut fine = CyclePoint { mesh, unknowns: Iterate { nodes, ..point.unknowns.clone() } };
         let value = point.unknowns.parameter;
         self.correct_at(&mut fine, value).map_err(|_| Failure::NotConverged)?;
-        let error =
-            (fine.unknowns.period - point.unknowns.period).abs() + self.rounding(Scalar::Period, fine.unknowns.period);
+        // The closing holds the parameter exactly.
+        let error = (fine.unknowns.period - point.unknowns.period).abs()
+            + self.rounding(Scalar::Period, fine.unknowns.period, 0.0);
         Ok((fine, error))
     }
 }
