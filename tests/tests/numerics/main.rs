@@ -1,6 +1,7 @@
 //! What the methods promise: orders, quadratic convergence, meshes, multipliers whatever the mesh.
 
 mod location; // Newton iterations, brackets, meshes of a threshold
-mod meshes; // number of intervals against its prediction, accuracy, overrides
+mod meshes; // number of intervals against its prediction, accuracy
+mod overrides; // degree and intervals given by hand: within the reported errors
 mod orders; // m + 1 inside intervals, 2m at mesh points, in period, multipliers and thresholds
 mod parity; // multipliers on N and N + 1 intervals
