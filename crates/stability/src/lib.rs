@@ -43,6 +43,7 @@ mod measure;
 mod normal_form;
 mod point;
 mod problem;
+mod resolution;
 mod scale;
 mod spectrum;
 mod switch;

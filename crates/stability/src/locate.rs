@@ -6,7 +6,7 @@
 
 use std::sync::Arc;
 
-use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, Scalar, interpolate_nodes};
+use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, Scalar};
 use armilla_follow::{Closing, Failure, Orientation, Problem, Station};
 
 use crate::point::{CyclePoint, CycleTangent};
@@ -83,7 +83,7 @@ impl CycleProblem {
     fn secant_point(&self, index: usize, low: &CycleStation, high: &CycleStation) -> CyclePoint {
         let (a, b) = (low.watch.values[index].value, high.watch.values[index].value);
         let share = if a == b { 0.5 } else { (a / (a - b)).clamp(0.05, 0.95) };
-        let first = low.point.on_mesh(self.system.tables(), &high.point.mesh);
+        let first = low.point.on_mesh(high.point.degree, &high.point.mesh);
         let mix = |x: f64, y: f64| x + share * (y - x);
         let nodes = first.unknowns.nodes.iter().zip(&high.point.unknowns.nodes).map(|(x, y)| mix(*x, *y)).collect();
         let unknowns = Iterate {
@@ -91,7 +91,7 @@ impl CycleProblem {
             period: mix(first.unknowns.period, high.point.unknowns.period),
             parameter: mix(first.unknowns.parameter, high.point.unknowns.parameter),
         };
-        CyclePoint { mesh: high.point.mesh.clone(), unknowns }
+        CyclePoint { unknowns, ..high.point.clone() }
     }
 
     /// Newton on the augmented system; accepted only inside the bracket's neighbourhood.
@@ -117,7 +117,7 @@ impl CycleProblem {
         kind: CriticalKind,
         point: &mut CyclePoint,
     ) -> Result<(Report, TestFunction), NewtonFailure> {
-        self.system.set_mesh(&point.mesh);
+        self.system.set_mesh(point.degree, &point.mesh);
         self.system.linearise(&point.unknowns)?;
         let mut function = TestFunction::new(kind, &self.system, &point.unknowns)?;
         let reference = point.unknowns.nodes.clone();
@@ -132,7 +132,7 @@ impl CycleProblem {
         coarse: &CyclePoint,
     ) -> Result<(CyclePoint, f64, f64, NullVectors), NewtonFailure> {
         let mesh: Arc<[f64]> = halved(&coarse.mesh).into();
-        let mut fine = coarse.on_mesh(self.system.tables(), &mesh);
+        let mut fine = coarse.on_mesh(coarse.degree, &mesh);
         let (_, function) = self.augmented(kind, &mut fine)?;
         let size = function.size(&mut self.system);
         let value_error = (coarse.unknowns.parameter - fine.unknowns.parameter).abs()
@@ -190,13 +190,7 @@ impl CycleProblem {
     /// [`Failure`] where that does not converge.
     pub fn refine(&mut self, point: &CyclePoint) -> Result<(CyclePoint, f64), Failure<armilla_collocation::Fault>> {
         let mesh: Arc<[f64]> = halved(&point.mesh).into();
-        let nodes = interpolate_nodes(
-            (self.system.tables(), &point.mesh),
-            &point.unknowns.nodes,
-            (self.system.tables(), &mesh),
-            self.system.n(),
-        );
-        let mut fine = CyclePoint { mesh, unknowns: Iterate { nodes, ..point.unknowns.clone() } };
+        let mut fine = point.on_mesh(point.degree, &mesh);
         let value = point.unknowns.parameter;
         self.correct_at(&mut fine, value).map_err(|_| Failure::NotConverged)?;
         // The closing holds the parameter exactly.
@@ -214,7 +208,7 @@ const ROUNDOFF_MARGIN: f64 = 8.0;
 /// that the sum of independent errors leaves out: the basis tables are correct to a few units each.
 const COHERENT_UNITS: f64 = 16.0;
 
-fn halved(mesh: &[f64]) -> Vec<f64> {
+pub(crate) fn halved(mesh: &[f64]) -> Vec<f64> {
     let mut out = Vec::with_capacity(2 * mesh.len());
     for pair in mesh.windows(2) {
         out.extend([pair[0], 0.5 * (pair[0] + pair[1])]);

@@ -25,7 +25,8 @@ const DEGREES: std::ops::RangeInclusive<usize> = 3..=8;
 const MULTIPLES: [usize; 3] = [1, 2, 4];
 
 fn traced(run: &Run, accuracy: f64, mesh: &str) -> Traced {
-    let traced = job(run.model, &format!("{}, pursue: (doublings: 0), accuracy: {accuracy:e}, mesh: ({mesh})", run.fields));
+    let traced =
+        job(run.model, &format!("{}, pursue: (doublings: 0), accuracy: {accuracy:e}, mesh: ({mesh})", run.fields));
     assert!(traced.shortfalls.is_empty(), "{} {mesh}: {:?}", run.model, traced.shortfalls);
     traced
 }
