@@ -57,7 +57,7 @@ fn check(run: &Run, accuracy: f64, multiples: &[usize]) {
             let given = own * multiple;
             let traced = traced(run, accuracy, &format!("degree: {degree}, intervals: {given}"));
             let points = &branch(&traced, "a").points;
-            assert!(points.iter().all(|point| point.degree == degree && point.intervals == given));
+            assert!(points.iter().all(|point| point.degree == degree && point.intervals == given * point.turns));
             found.push((format!("{}, degree {degree}, {given} intervals", run.model), results(&traced, run.event)));
         }
     }
