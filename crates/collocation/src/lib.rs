@@ -34,6 +34,7 @@
 //! assert!(before.error > 1e-9 && after.error < 1e-9, "{} {}", before.error, after.error);
 //! ```
 
+mod defect;
 mod gauss;
 mod mesh;
 mod metric;
@@ -42,8 +43,11 @@ mod system;
 mod tables;
 mod variational;
 
+pub use defect::{Collocated, Defects};
 pub use gauss::{gauss, radau};
-pub use mesh::{ErrorEstimate, MeshChoice, MeshSettings, estimate_error, interpolate_nodes, refine, remesh, work};
+pub use mesh::{
+    ErrorEstimate, MeshChoice, MeshSettings, estimate_error, interpolate_nodes, refine, remesh, scales_of, work,
+};
 pub use metric::Metric;
 pub use newton::{
     Closing, Failure, Iteration, LinearClosing, NewtonSettings, Report, Scalar, Task, Workspace, correct, correct_with,

@@ -49,6 +49,30 @@ pub struct ErrorEstimate {
     pub imbalance: f64,
 }
 
+/// Share by which measured local errors are enlarged: what they leave out is smaller than half of them wherever the mesh
+/// resolves the cycle.
+const COVER: f64 = 1.5;
+
+impl ErrorEstimate {
+    /// The same with the local errors of all intervals measured ([`crate::Defects`]) instead of estimated; left as it is
+    /// where one of them is not finite.
+    #[must_use]
+    pub fn measured(mut self, tables: &Tables, mesh: &[f64], local: &[f64]) -> Self {
+        if !local.iter().all(|error| error.is_finite()) {
+            return self;
+        }
+        let order = tables.degree as f64 + 1.0;
+        let shares: Vec<f64> = local.iter().map(|e| (COVER * e / tables.error_constant).powf(1.0 / order)).collect();
+        let lengths = mesh.windows(2).map(|pair| pair[1] - pair[0]);
+        self.derivative = shares.iter().zip(lengths).map(|(share, h)| (share / h).powf(order)).collect();
+        let largest = shares.iter().copied().fold(0.0, f64::max);
+        let mean = shares.iter().sum::<f64>() / local.len() as f64;
+        self.error = COVER * local.iter().copied().fold(0.0, f64::max);
+        self.imbalance = if mean > 0.0 { largest / mean } else { 1.0 };
+        self
+    }
+}
+
 /// A mesh with the error predicted on it.
 #[derive(Clone, Debug, PartialEq)]
 pub struct MeshChoice {
@@ -96,7 +120,8 @@ pub fn estimate_error(tables: &Tables, mesh: &[f64], nodes: &[f64], least: &[f64
     ErrorEstimate { error, derivative, lower, imbalance: if mean > 0.0 { largest / mean } else { 1.0 } }
 }
 
-fn scales_of(nodes: &[f64], least: &[f64]) -> Vec<f64> {
+/// Range of each state, `least` of it where that is larger.
+pub fn scales_of(nodes: &[f64], least: &[f64]) -> Vec<f64> {
     let n = least.len();
     let range = |a: usize| {
         let values = || nodes.iter().skip(a).step_by(n).copied();

@@ -81,7 +81,7 @@ impl Tables {
 
 /// Slopes of all Lagrange polynomials at a place where their values are `value_at_s`: rows of the barycentric
 /// differentiation matrix, interpolated (exact, since slopes are polynomials of lower degree).
-fn lagrange_slopes(nodes: &[f64], bary: &[f64], value_at_s: &[f64], out: &mut [f64]) {
+pub(crate) fn lagrange_slopes(nodes: &[f64], bary: &[f64], value_at_s: &[f64], out: &mut [f64]) {
     out.fill(0.0);
     for (i, &weight_of_row) in value_at_s.iter().enumerate() {
         let mut diagonal = 0.0;

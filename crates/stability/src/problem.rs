@@ -3,8 +3,9 @@
 use std::sync::Arc;
 
 use armilla_collocation::{
-    DEGREES, ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings,
-    Report, Row, Scalar, System, SystemSpec, Tables, Task, Workspace, correct_with, estimate_error, roundoff,
+    Collocated, DEGREES, Defects, ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric,
+    NewtonSettings, Report, Row, Scalar, System, SystemSpec, Tables, Task, Workspace, correct_with, estimate_error,
+    roundoff, scales_of,
 };
 use armilla_follow::{Closing, Corrected, Failure, Orientation, Problem, Watch, Watched};
 use armilla_linalg::{Bordered, Right, Shape};
@@ -122,6 +123,7 @@ pub struct CycleProblem {
     /// Largest range of each state seen on the branch.
     largest: Vec<f64>,
     pub(crate) newton: Workspace,
+    defects: Defects,
     /// Solvers of multipliers, one for each degree met.
     spectra: Vec<Option<SpectrumSolver>>,
     /// Spectrum of the point it was last asked of, with that point: `watch` and `describe` ask again.
@@ -187,6 +189,7 @@ impl CycleProblem {
             metric: metric.clone(),
         };
         let system = System::new(system_spec, profile.degree, &profile.mesh);
+        let defects = Defects::new(spec.field.as_ref());
         Ok(Self {
             spec,
             settings,
@@ -194,6 +197,7 @@ impl CycleProblem {
             largest: metric.scales.clone(),
             metric,
             newton: Workspace::default(),
+            defects,
             spectra: (0..=DEGREES.1).map(|_| None).collect(),
             watched: None,
             bordered: None,
@@ -251,14 +255,34 @@ impl CycleProblem {
         Ok(spectrum)
     }
 
-    /// Estimated error of a cycle's profile, relative to the range of each state.
-    pub fn profile_error(&self, point: &CyclePoint) -> f64 {
-        self.estimate(point).error
+    /// Estimated error of a cycle's profile, relative to the range of each state: what a finer mesh would remove, and
+    /// rounding.
+    pub fn profile_error(&mut self, point: &CyclePoint) -> f64 {
+        self.estimate(point).error + self.rounding_of_nodes(point)
     }
 
-    pub(crate) fn estimate(&self, point: &CyclePoint) -> ErrorEstimate {
-        let least: Vec<f64> = self.metric.scales.iter().map(|scale| LEAST_RANGE * scale).collect();
-        estimate_error(point.tables(), &point.mesh, &point.unknowns.nodes, &least)
+    /// What rounding leaves of a profile: a state far from zero that hardly moves has few digits.
+    pub(crate) fn rounding_of_nodes(&self, point: &CyclePoint) -> f64 {
+        /// Units in the last place of the largest state, conditioning included.
+        const UNITS: f64 = 8.0;
+        let n = self.metric.scales.len();
+        let scales = scales_of(&point.unknowns.nodes, &self.least_ranges());
+        let values = point.unknowns.nodes.iter().enumerate();
+        UNITS * f64::EPSILON * values.map(|(k, value)| value.abs() / scales[k % n]).fold(0.0, f64::max)
+    }
+
+    fn least_ranges(&self) -> Vec<f64> {
+        self.metric.scales.iter().map(|scale| LEAST_RANGE * scale).collect()
+    }
+
+    /// Local errors of a cycle, measured by its defect.
+    pub(crate) fn estimate(&mut self, point: &CyclePoint) -> ErrorEstimate {
+        let least = self.least_ranges();
+        let (tables, mesh, nodes) = (point.tables(), &point.mesh, &point.unknowns.nodes);
+        let parameters = self.parameters_at(point);
+        let cycle = Collocated { mesh, nodes, period: point.unknowns.period, parameters: &parameters };
+        let local = self.defects.local_errors(tables, cycle, &scales_of(nodes, &least));
+        estimate_error(tables, mesh, nodes, &least).measured(tables, mesh, &local)
     }
 
     /// A point as a row of the branch table.
@@ -269,7 +293,14 @@ impl CycleProblem {
         let spectrum = self.known_spectrum(point)?;
         let profile = self.profile(point);
         let measures = Measures::of(&profile);
-        let error = self.profile_error(point);
+        let (discretisation, rounding) = (self.estimate(point).error, self.rounding_of_nodes(point));
+        let error = discretisation + rounding;
+        let accuracy = self.settings.mesh.accuracy;
+        let reached = match () {
+            () if error <= accuracy => Reached::Accuracy,
+            () if discretisation <= accuracy => Reached::RoundoffFloor,
+            () => point.reached,
+        };
         Ok(Point {
             value: point.unknowns.parameter,
             period: point.unknowns.period,
@@ -287,7 +318,7 @@ impl CycleProblem {
             intervals: profile.intervals(),
             degree: profile.degree,
             choice: point.choice,
-            reached: if error <= self.settings.mesh.accuracy { Reached::Accuracy } else { point.reached },
+            reached,
             unresolved: None,
         })
     }

@@ -87,7 +87,7 @@ impl CycleProblem {
         let mut best: Option<Carried> = None;
         for _ in 0..rounds {
             let now = best.as_ref().map_or(point, |(point, _)| point).clone();
-            let Some(grid) = self.better_grid(&now, 0) else { break };
+            let Some(grid) = self.better_grid(&now) else { break };
             let next = self.moved(&now, tangents, &grid).filter(|(next, _)| self.is_worth(&now, next));
             let next = next.or_else(|| self.with_patience(&now, tangents, &grid));
             let obstacle = self.obstacle(next.as_ref().map_or(&now, |(next, _)| next), grid.limited);
@@ -99,8 +99,9 @@ impl CycleProblem {
                 let normalised = || tangents.iter().map(|tangent| self.normalised((*tangent).clone())).collect();
                 let mut kept = best.take().unwrap_or_else(|| (point.clone(), normalised()));
                 kept.0.reached = obstacle;
-                if self.settings.mesh.fixed.is_none() && !grid.limited {
-                    self.resolution.floor = self.profile_error(&kept.0);
+                // A kink moves on with the branch, and the next point may fare better; roundoff stays.
+                if obstacle == Reached::RoundoffFloor {
+                    self.resolution.floor = self.estimate(&kept.0).error;
                 }
                 return Some(kept);
             };
@@ -140,36 +141,21 @@ impl CycleProblem {
     }
 
     /// What stands in the way of the accuracy at a point that no better mesh was found for.
-    fn obstacle(&self, point: &CyclePoint, limited: bool) -> Reached {
+    fn obstacle(&mut self, point: &CyclePoint, limited: bool) -> Reached {
         match () {
             () if self.settings.mesh.fixed.is_some() => Reached::GivenMesh,
             () if limited => Reached::MeshLimit,
-            () if self.profile_error(point) < NEAR_ROUNDOFF * self.rounding_of_estimate(point) => {
-                Reached::RoundoffFloor
-            }
+            () if self.profile_error(point) < NEAR_ROUNDOFF * self.rounding_of_nodes(point) => Reached::RoundoffFloor,
             () => Reached::Rough,
         }
     }
 
-    /// Size of the error estimate that rounding of the node values alone would make.
-    fn rounding_of_estimate(&self, point: &CyclePoint) -> f64 {
-        let tables = point.tables();
-        let weights: f64 = tables.highest.iter().map(|weight| weight.abs()).sum();
-        let n = self.metric.scales.len();
-        let units = point.unknowns.nodes.iter().enumerate();
-        let largest = units.map(|(k, value)| value.abs() / self.metric.scales[k % n]).fold(0.0, f64::max);
-        // A difference of two highest derivatives, each with the rounding of its m+1 nodes.
-        2.0 * tables.error_constant * weights * f64::EPSILON * largest.max(1.0)
-    }
-
     /// A degree and a mesh that suit the point, or none where the present ones do: its error is within the accuracy, it
     /// has not many more intervals than needed, and no other degree does it with clearly less work.
-    ///
-    /// Takes at least `fewest` intervals.
-    fn better_grid(&self, point: &CyclePoint, fewest: usize) -> Option<Grid> {
+    fn better_grid(&mut self, point: &CyclePoint) -> Option<Grid> {
         let estimate = self.estimate(point);
         let mut settings = self.settings.mesh;
-        settings.fewest = settings.fewest.max(self.resolution.least).max(fewest);
+        settings.fewest = settings.fewest.max(self.resolution.least);
         if self.resolution.hold > 0 {
             settings.degrees = (point.degree, point.degree);
         }
@@ -251,8 +237,8 @@ impl CycleProblem {
     }
 
     /// Whether a change of mesh helped: a smaller error where it was too large, less work elsewhere.
-    fn is_worth(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
-        let (old, new) = (self.profile_error(before), self.profile_error(after));
+    fn is_worth(&mut self, before: &CyclePoint, after: &CyclePoint) -> bool {
+        let (old, new) = (self.estimate(before).error, self.estimate(after).error);
         let work = |point: &CyclePoint| work(point.degree, point.intervals());
         let accuracy = self.settings.mesh.accuracy;
         if old > accuracy { new <= accuracy || new < WORTH * old } else { work(after) < work(before) }
