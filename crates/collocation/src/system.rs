@@ -304,8 +304,12 @@ impl System {
             for k in 0..m {
                 let row = &mut self.residual[(i * m + k) * n..(i * m + k + 1) * n];
                 row.fill(0.0);
-                for (node, &slope) in nodes.chunks_exact(n).zip(&self.tables.slope[k * size..(k + 1) * size]) {
-                    row.iter_mut().zip(node).for_each(|(r, u)| *r += slope * u);
+                // Differences from the first node: slopes of a constant vanish, and its rounding with them.
+                let (first, others) = nodes.split_at(n);
+                for (node, &slope) in others.chunks_exact(n).zip(&self.tables.slope[k * size + 1..(k + 1) * size]) {
+                    for (r, (u, from)) in row.iter_mut().zip(node.iter().zip(first)) {
+                        *r += slope * (u - from);
+                    }
                 }
                 for (a, r) in row.iter_mut().enumerate() {
                     *r -= step * self.rates[a * points + i * m + k];
@@ -345,8 +349,9 @@ impl System {
         }
     }
 
-    /// Writes the size of the terms each interval row is summed from, `Sum_j |L'_j u_j| + h T |f|`: its rounding is that
-    /// times the unit of the last place.
+    /// Writes the size of the terms each interval row is summed from: its rounding is that times the unit of the last
+    /// place. `Sum_j |L'_j (u_j - u_0)| + h T (|f| + Sum_b |A_ab u_b|)`, the last because the rate is taken at a rounded
+    /// state.
     pub fn row_sizes(&self, out: &mut [f64]) {
         let (n, m, points) = (self.n(), self.tables.degree, self.points());
         let size = m + 1;
@@ -354,9 +359,23 @@ impl System {
             let (i, k) = (point / m, point % m);
             let slopes = &self.tables.slope[k * size..(k + 1) * size];
             for a in 0..n {
+                let value = |j: usize| self.nodes[(i * m + j) * n + a];
                 let terms: f64 =
-                    slopes.iter().enumerate().map(|(j, slope)| (slope * self.nodes[(i * m + j) * n + a]).abs()).sum();
+                    slopes.iter().enumerate().map(|(j, slope)| (slope * (value(j) - value(0))).abs()).sum();
                 out[point * n + a] = terms + (self.h(i) * self.period * self.rates[a * points + point]).abs();
+            }
+        }
+        self.add_jacobian_sizes(&self.states, out);
+    }
+
+    /// Adds `h T Sum_b |A_ab v_b|` to all rows, v given at the Gauss points.
+    fn add_jacobian_sizes(&self, values: &[f64], out: &mut [f64]) {
+        let (n, m, points) = (self.n(), self.tables.degree, self.points());
+        for (entry, &(a, b)) in self.entries.iter().enumerate() {
+            for point in 0..points {
+                let step = self.h(point / m) * self.period;
+                let term = self.jacobian[entry * points + point] * values[b * points + point];
+                out[point * n + a] += (step * term).abs();
             }
         }
     }
@@ -376,13 +395,7 @@ impl System {
                 out[point * n + a] = terms + (self.h(i) * period * self.rates[a * points + point]).abs();
             }
         }
-        for (entry, &(a, b)) in self.entries.iter().enumerate() {
-            for point in 0..points {
-                let step = self.h(point / m) * self.period;
-                let term = self.jacobian[entry * points + point] * self.variation_points[b * points + point];
-                out[point * n + a] += (step * term).abs();
-            }
-        }
+        self.add_jacobian_sizes(&self.variation_points, out);
     }
 
     /// Writes the column of the period, `-h_i f`, over all interval rows.
