@@ -25,15 +25,12 @@ const DEGREES: std::ops::RangeInclusive<usize> = 3..=8;
 const MULTIPLES: [usize; 3] = [1, 2, 4];
 
 fn traced(run: &Run, accuracy: f64, mesh: &str) -> Traced {
-    let traced =
-        job(run.model, &format!("{}, pursue: (doublings: 0), accuracy: {accuracy:e}, mesh: ({mesh})", run.fields));
-    assert!(traced.shortfalls.is_empty(), "{} {mesh}: {:?}", run.model, traced.shortfalls);
-    traced
+    job(run.model, &format!("{}, pursue: (doublings: 0), accuracy: {accuracy:e}, mesh: ({mesh})", run.fields))
 }
 
-/// Most intervals of any cycle of the branch.
+/// Most intervals a turn of any cycle of the branch: what an override counts in.
 fn intervals(traced: &Traced) -> usize {
-    branch(traced, "a").points.iter().map(|point| point.intervals).max().expect("points")
+    branch(traced, "a").points.iter().map(|point| point.intervals.div_ceil(point.turns)).max().expect("points")
 }
 
 /// Threshold, its period and the period at the target.
@@ -137,5 +134,5 @@ fn of_the_first_doubling_of_roessler() {
 
 #[test]
 fn of_the_fold_of_the_three_turn_window() {
-    check(&WINDOW, 1e-8, &MULTIPLES);
+    check(&WINDOW, 1e-7, &MULTIPLES);
 }
