@@ -50,13 +50,13 @@ fn multipliers(point: &Point, exact: &[(f64, bool)], name: &str, ratios: &mut Ra
     }
 }
 
-/// Largest distance of a profile from the exact cycle, relative to the range of each state, or to its size where it does
-/// not move; where time begins is free.
+/// Largest distance of a profile from the exact cycle, relative to the range of each state, or to a thousandth of its size
+/// where it moves less: that is how errors of profiles are meant. Where time begins is free.
 fn profile_distance(profile: &Profile, wanted: Wanted<'_>, (value, sizes): (f64, &[f64])) -> f64 {
-    const STILL: f64 = 1e-9;
+    const LEAST_RANGE: f64 = 1e-3;
     let Wanted { planted, sheet, .. } = wanted;
-    let own = |(range, size): (f64, &f64)| if range < STILL * size { *size } else { range };
-    let ranges: Vec<f64> = planted.ranges(sheet, value).into_iter().zip(sizes).map(own).collect();
+    let ranges = planted.ranges(sheet, value).into_iter().zip(sizes);
+    let ranges: Vec<f64> = ranges.map(|(range, size)| range.max(LEAST_RANGE * size)).collect();
     let samples = 16 * profile.intervals();
     let mut evaluator = profile.evaluator();
     let mut found = vec![0.0; profile.n_states];
