@@ -116,13 +116,13 @@ impl CycleProblem {
         &mut self,
         kind: CriticalKind,
         point: &mut CyclePoint,
-    ) -> Result<(Report, NullVectors), NewtonFailure> {
+    ) -> Result<(Report, TestFunction), NewtonFailure> {
         self.system.set_mesh(point.degree, &point.mesh);
         self.system.linearise(&point.unknowns)?;
         let mut function = TestFunction::new(kind, &self.system, &point.unknowns)?;
         let reference = point.unknowns.nodes.clone();
         let report = self.newton(point, &reference, &mut function)?;
-        Ok((report, function.vectors().clone()))
+        Ok((report, function))
     }
 
     /// The event again with every interval halved: the better value, and the difference as the error of it.
@@ -133,13 +133,14 @@ impl CycleProblem {
     ) -> Result<(CyclePoint, f64, f64, NullVectors), NewtonFailure> {
         let mesh: Arc<[f64]> = halved(&coarse.mesh).into();
         let mut fine = coarse.on_mesh(coarse.degree, &mesh);
-        let (_, vectors) = self.augmented(kind, &mut fine)?;
+        let (_, function) = self.augmented(kind, &mut fine)?;
+        let size = function.size(&mut self.system);
         let left = self.left_over(coarse, &fine);
         let value_error = left * (coarse.unknowns.parameter - fine.unknowns.parameter).abs()
-            + self.rounding(Scalar::Parameter, fine.unknowns.parameter);
+            + self.rounding(Scalar::Parameter, fine.unknowns.parameter, size);
         let period_error = left * (coarse.unknowns.period - fine.unknowns.period).abs()
-            + self.rounding(Scalar::Period, fine.unknowns.period);
-        Ok((fine, value_error, period_error, vectors))
+            + self.rounding(Scalar::Period, fine.unknowns.period, size);
+        Ok((fine, value_error, period_error, function.vectors().clone()))
     }
 
     /// Share of the difference between a number on a mesh and on the halved one that may be left on the latter.
@@ -152,13 +153,14 @@ impl CycleProblem {
         if gain * CANCELLING < 1.0 { gain * CANCELLING } else { 1.0 }
     }
 
-    /// Roundoff of a scalar of the last corrected point: that of the rows through the conditioning, and of the number.
-    fn rounding(&mut self, scalar: Scalar, value: f64) -> f64 {
+    /// Roundoff of a scalar of the last corrected point: that of the rows and of a closing with terms of size `closing`
+    /// through the conditioning, and of the number.
+    fn rounding(&mut self, scalar: Scalar, value: f64, closing: f64) -> f64 {
         let scale = match scalar {
             Scalar::Parameter => self.metric.parameter_scale,
             Scalar::Period => 0.0,
         };
-        ROUNDOFF_MARGIN * self.newton.roundoff(&self.system, scalar)
+        ROUNDOFF_MARGIN * self.newton.roundoff(&self.system, scalar, closing)
             + COHERENT_UNITS * f64::EPSILON * value.abs().max(scale)
     }
 
@@ -203,8 +205,9 @@ impl CycleProblem {
         let value = point.unknowns.parameter;
         self.correct_at(&mut fine, value).map_err(|_| Failure::NotConverged)?;
         let left = self.left_over(point, &fine);
+        // The closing holds the parameter exactly.
         let error = left * (fine.unknowns.period - point.unknowns.period).abs()
-            + self.rounding(Scalar::Period, fine.unknowns.period);
+            + self.rounding(Scalar::Period, fine.unknowns.period, 0.0);
         Ok((fine, error))
     }
 }
