@@ -38,6 +38,8 @@
 //! assert!((point.multipliers[0].log_modulus + std::f64::consts::PI).abs() < 1e-9);
 //! ```
 
+mod copies;
+mod dip;
 mod locate;
 mod measure;
 mod normal_form;
@@ -49,11 +51,14 @@ mod switch;
 mod test_function;
 
 pub use armilla_collocation::Fault;
+pub use dip::Dip;
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;
 pub use normal_form::DoublingForm;
 pub use point::{CyclePoint, CycleTangent};
-pub use problem::{CycleProblem, CycleSettings, CycleSpec, StartFault, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS};
+pub use problem::{
+    CycleProblem, CycleSettings, CycleSpec, StartFault, WATCH_BRANCHING, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS,
+};
 pub use spectrum::{Spectrum, SpectrumFault, SpectrumSolver};
 pub use switch::{Doubled, SwitchFault};
 pub use test_function::{CriticalKind, NullVectors, TestFunction};

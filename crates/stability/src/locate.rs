@@ -151,35 +151,21 @@ impl CycleProblem {
             + COHERENT_UNITS * f64::EPSILON * value.abs().max(scale)
     }
 
-    /// A station halfway along the branch between two stations.
     fn middle(&mut self, low: &CycleStation, high: &CycleStation) -> Option<CycleStation> {
-        let stride = 0.5 * self.distance(&low.point, &high.point);
+        self.between(low, high, 0.5)
+    }
+
+    /// A station on the branch between two stations, at a share of the chord from `low` to `high`; none where it does not
+    /// correct or where the corrected cycle does not lie between them.
+    pub fn between(&mut self, low: &CycleStation, high: &CycleStation, share: f64) -> Option<CycleStation> {
+        let length = self.distance(&low.point, &high.point);
+        let stride = share * length;
         let prediction = self.advance(&low.point, &low.tangent, stride);
         let closing = Closing::Arclength { from: &low.point, tangent: &low.tangent, stride };
         let point = self.correct(&prediction, closing).ok()?.point;
         let tangent = self.tangent(&point, Orientation::Along(&low.tangent)).ok()?;
         let watch = self.watch(&point, &tangent).ok()?;
-        Some(Station { point, tangent, watch, distance: low.distance + stride })
-    }
-
-    /// Narrows a bracket over which `differs` tells its ends apart, for changes without a defining system: returns
-    /// the narrowest pair of stations.
-    pub fn narrow(
-        &mut self,
-        before: &CycleStation,
-        after: &CycleStation,
-        same_as_before: impl Fn(&CycleStation) -> bool,
-    ) -> (CycleStation, CycleStation) {
-        let (mut low, mut high) = (before.clone(), after.clone());
-        for _ in 0..HALVINGS {
-            // Bisection along the chord: past this length the ends agree to the profile's accuracy.
-            if self.distance(&low.point, &high.point) < self.settings.mesh.accuracy.max(1e-10) {
-                break;
-            }
-            let Some(middle) = self.middle(&low, &high) else { break };
-            if same_as_before(&middle) { low = middle } else { high = middle }
-        }
-        (low, high)
+        Some(Station { point, tangent, watch, distance: low.distance + share * (high.distance - low.distance) })
     }
 
     /// The cycle re-solved on a mesh with every interval halved, at the same parameter: its period's error.

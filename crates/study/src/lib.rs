@@ -26,6 +26,8 @@ mod cascade;
 mod ends;
 mod error;
 mod file;
+mod guards;
+mod ledger;
 mod near_miss;
 mod progress;
 mod settings;

@@ -1,11 +1,12 @@
 //! The events of one step: located, bracketed, or narrowed, before they have names.
 
-use armilla_follow::{Landing, Step};
+use armilla_follow::{Landing, Problem};
 use armilla_record::{Criticality, EventKind};
 use armilla_stability::{
-    CriticalKind, CyclePoint, CycleProblem, DoublingForm, Located, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS,
+    CriticalKind, CyclePoint, CycleProblem, Dip, DoublingForm, Located, WATCH_DOUBLING, WATCH_FOLD,
 };
 
+use crate::ledger::{Part, narrowed, parts};
 use crate::walk::{CycleStation, WalkPlan};
 
 /// An event as found, before it has a name.
@@ -24,60 +25,107 @@ pub(crate) struct Found {
     pub form: Option<DoublingForm>,
 }
 
-/// Whether the events of a step account for the change of the unstable count: each fold or doubling moves one multiplier
-/// across the unit circle, a torus point two. A pair that crosses in the same step as a fold or doubling leaves the count
-/// ambiguous; a shorter stride separates them.
-pub(crate) fn is_explained(step: &Step) -> bool {
-    let count = |index: usize| step.crossings.iter().filter(|crossing| crossing.index == index).count();
-    let single = count(WATCH_FOLD) + count(WATCH_DOUBLING);
-    let change = step.unstable.0.abs_diff(step.unstable.1);
-    match (single, count(WATCH_TORUS)) {
-        (0, 0) => change == 0,
-        (0, _) => change == 0 || change == 2,
-        (_, 0) => change <= single && change % 2 == single % 2,
-        (_, _) => false,
-    }
+/// What a step brings.
+pub(crate) struct Findings {
+    /// The events in the order of the walk.
+    pub found: Vec<Found>,
+    /// Whether the step ends on another branch: the orientation of the branch changes, and not at one place.
+    pub jumped: bool,
 }
 
 /// The events of a step, in the order of the walk.
 pub(crate) fn events_of_step(
     problem: &mut CycleProblem,
-    step: &Step,
+    ends: (&CycleStation, &CycleStation),
+    plan: &WalkPlan<'_>,
+) -> Findings {
+    let mut findings = Findings { found: Vec::new(), jumped: false };
+    for part in parts_with_dips(problem, ends, plan, &mut findings) {
+        events_of_part(problem, &part, plan, &mut findings);
+    }
+    findings.found.sort_by(|a, b| (plan.sign * a.distance).total_cmp(&(plan.sign * b.distance)));
+    findings
+}
+
+/// The parts of a step in which something happens, also where two doublings cancel.
+fn parts_with_dips(
+    problem: &mut CycleProblem,
     (before, after): (&CycleStation, &CycleStation),
     plan: &WalkPlan<'_>,
-) -> Vec<Found> {
-    let mut found = Vec::new();
-    // The parameter turns back, yet no multiplier changes side: the mirror image of this branch goes on from there.
-    let turns_at_crossing =
-        step.unstable.0 == step.unstable.1 && step.crossings.len() == 1 && step.crossings[0].index == WATCH_FOLD;
-    // Where none is near +1 at all, the parameter stands still to roundoff and its direction is noise.
-    let idle = turns_at_crossing && !is_near_one(problem, after) && !is_near_one(problem, before);
-    for crossing in step.crossings.iter().filter(|_| !idle) {
-        let kind = match crossing.index {
-            WATCH_FOLD => CriticalKind::Fold,
-            WATCH_DOUBLING => CriticalKind::Doubling,
-            _ => continue,
-        };
-        found.push(match problem.locate(kind, crossing.index, before, after) {
-            Ok(located) => located_event(problem, located, (before, after), plan),
-            Err(fault) => bracketed(problem, kind, fault.bracket, (before, after), plan),
-        });
+    findings: &mut Findings,
+) -> Vec<Part> {
+    match problem.doubling_dip(before, after) {
+        Dip::Clear => parts(problem, before, after),
+        Dip::Split(between) => {
+            let mut found = parts(problem, before, &between);
+            found.extend(parts(problem, &between, after));
+            found
+        }
+        Dip::Touch(at) => {
+            // Two events at a distance d from each other make the value dip by d^2 only.
+            let width = plan.study.range.1 - plan.study.range.0;
+            let interval = (at.point.unknowns.parameter, TOUCHING * width);
+            let note = "a multiplier touches -1: two period doublings closer to each other than can be told, or none";
+            let mut event = unresolved(&at, interval, note.into(), plan);
+            event.angle = Some(std::f64::consts::PI);
+            findings.found.push(event);
+            parts(problem, before, after)
+        }
     }
-    if turns_at_crossing && let Some(event) = found.last_mut() {
-        event.kind = EventKind::Branching;
-        event.located = None;
-        event.note = "the parameter turns back but no multiplier changes side: another branch crosses here, as at a \
-                      pitchfork met from one of its two sides; not followed"
-            .into();
+}
+
+/// Share of the range within which two doublings that cancel cannot be told apart: the root of roundoff, with a margin.
+const TOUCHING: f64 = 1e-6;
+
+fn events_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, findings: &mut Findings) {
+    let change = part.change;
+    if change.turns {
+        findings.found.extend(turning(problem, part, plan));
     }
-    if let Some(event) = remaining_change(problem, step, (before, after), plan) {
-        found.push(event);
+    if change.doubles {
+        findings.found.push(located(problem, CriticalKind::Doubling, part, plan));
     }
-    found.sort_by(|a, b| (plan.sign * a.distance).total_cmp(&(plan.sign * b.distance)));
-    if let Some(landing) = step.landing {
-        found.push(landing_event(problem, landing, after, plan));
+    if change.passes_one && !change.turns && is_gap(problem, part) {
+        findings.jumped = true;
+    } else if !change.is_explained() && !change.turns || change.pair && change.count > 0 {
+        findings.found.push(remaining_change(problem, part, plan));
     }
-    found
+}
+
+/// Whether the ends of a part that could not be cut any further are apart: there is no way along one branch between them.
+fn is_gap(problem: &CycleProblem, part: &Part) -> bool {
+    /// Distance within which two cycles count as one: beside a crossing of branches, where the equations are nearly
+    /// singular, cycles are known to the root of roundoff.
+    const APART: f64 = 1e-7;
+    problem.distance(&part.before.point, &part.after.point) > APART
+}
+
+fn located(problem: &mut CycleProblem, kind: CriticalKind, part: &Part, plan: &WalkPlan<'_>) -> Found {
+    let ends = (&part.before, &part.after);
+    let index = if kind == CriticalKind::Fold { WATCH_FOLD } else { WATCH_DOUBLING };
+    match problem.locate(kind, index, ends.0, ends.1) {
+        Ok(located) => located_event(problem, located, ends, plan),
+        Err(fault) => bracketed(problem, kind, fault.bracket, ends, plan),
+    }
+}
+
+/// The event where the parameter turns back; none where that is noise.
+fn turning(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>) -> Option<Found> {
+    if part.change.passes_one {
+        return Some(located(problem, CriticalKind::Fold, part, plan));
+    }
+    // The parameter turns back, yet no multiplier changes side: the mirror image of this branch goes on from there. Where
+    // none is near +1 at all, the parameter stands still to roundoff and its direction is noise.
+    if !is_near_one(problem, &part.after) && !is_near_one(problem, &part.before) {
+        return None;
+    }
+    let mut event = located(problem, CriticalKind::Fold, part, plan);
+    event.kind = EventKind::Branching;
+    event.located = None;
+    event.note = "the parameter turns back but no multiplier changes side: another branch crosses here, as at a \
+                  pitchfork met from one of its two sides; not followed"
+        .into();
+    Some(event)
 }
 
 /// Whether some real multiplier is near +1, as it must be beside a crossing of branches.
@@ -171,21 +219,10 @@ fn criticality(c: f64) -> Criticality {
     if c < 0.0 { Criticality::Supercritical } else { Criticality::Subcritical }
 }
 
-/// A change of the unstable count that folds and doublings leave over: narrowed by bisection and told as what crosses.
-fn remaining_change(
-    problem: &mut CycleProblem,
-    step: &Step,
-    (before, after): (&CycleStation, &CycleStation),
-    plan: &WalkPlan<'_>,
-) -> Option<Found> {
-    let single = step.crossings.iter().filter(|c| c.index == WATCH_FOLD || c.index == WATCH_DOUBLING).count();
-    let change = step.unstable.0.abs_diff(step.unstable.1);
-    // With folds or doublings in the same step the count cannot be split; they were located above.
-    if change == 0 || (single > 0 && is_explained(step)) {
-        return None;
-    }
-    let count = before.watch.unstable_count;
-    let (low, high) = problem.narrow(before, after, |station| station.watch.unstable_count == count);
+/// A change of the unstable count that is neither fold nor doubling: narrowed by bisection and told as what crosses.
+fn remaining_change(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>) -> Found {
+    let Part { before: low, after: high, .. } = narrowed(problem, part);
+    let change = low.watch.unstable_count.abs_diff(high.watch.unstable_count);
     let (a, b) = (low.point.unknowns.parameter, high.point.unknowns.parameter);
     // The count itself hangs on multipliers of profiles with their own error.
     let resolution = SUPERCONVERGENCE * problem.profile_error(&high.point);
@@ -207,7 +244,7 @@ fn remaining_change(
     };
     let mut event = unresolved(&low, (0.5 * (a + b), half_width), note.into(), plan);
     (event.kind, event.angle) = (kind, angle);
-    Some(event)
+    event
 }
 
 /// An event that is known by an interval of the parameter; its period is that of the station, known to its profile's
@@ -235,7 +272,7 @@ pub(crate) fn unresolved(
     }
 }
 
-fn landing_event(problem: &mut CycleProblem, landing: Landing, after: &CycleStation, plan: &WalkPlan<'_>) -> Found {
+pub(crate) fn landing_event(problem: &mut CycleProblem, landing: Landing, after: &CycleStation, plan: &WalkPlan<'_>) -> Found {
     let kind = match landing {
         Landing::Edge(_) => EventKind::Edge,
         Landing::Target(_) => EventKind::Target,
