@@ -187,6 +187,12 @@ impl<'a, Q: Problem> Follower<'a, Q> {
         }
         let Some(previous) = self.previous.take() else { return false };
         self.current = previous;
+        // The problem may measure otherwise since; a tangent of another length would make strides of another one.
+        if let Ok(tangent) =
+            self.problem.tangent(&self.current.point, Orientation::Along(&self.current.tangent))
+        {
+            self.current.tangent = tangent;
+        }
         self.stride = (0.5 * length).max(self.settings.shortest);
         self.control = StrideControl::default();
         self.taken = self.taken.saturating_sub(1);

@@ -82,15 +82,15 @@ impl CycleProblem {
                 break;
             }
             let station = self.between(&low.station, &high.station, share.clamp(0.01, 0.99))?;
-            let sided = station.watch.values[WATCH_DOUBLING].value * before.watch.values[WATCH_DOUBLING].value;
-            if sided < 0.0 {
-                return Some(Dip::Split(Box::new(station)));
-            }
+            let beyond = station.watch.values[WATCH_DOUBLING].value * before.watch.values[WATCH_DOUBLING].value < 0.0;
             let middle = self.end(&mut borders, station)?;
-            bottom = middle.value.abs().min(bottom);
-            if bottom < TOUCHES * size {
+            if middle.value.abs() < TOUCHES * size {
                 return Some(Dip::Touch(Box::new(middle.station)));
             }
+            if beyond {
+                return Some(Dip::Split(Box::new(middle.station)));
+            }
+            bottom = middle.value.abs().min(bottom);
             if middle.slope * low.value < 0.0 { low = middle } else { high = middle }
         }
         Some(Dip::Clear)

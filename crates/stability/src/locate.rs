@@ -6,7 +6,7 @@
 
 use std::sync::Arc;
 
-use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, Scalar, interpolate_nodes};
+use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, Row, Scalar, interpolate_nodes};
 use armilla_follow::{Closing, Failure, Orientation, Problem, Station};
 
 use crate::point::{CyclePoint, CycleTangent};
@@ -94,7 +94,7 @@ impl CycleProblem {
         CyclePoint { mesh: high.point.mesh.clone(), unknowns }
     }
 
-    /// Newton on the augmented system; accepted only inside the bracket's neighbourhood.
+    /// Newton on the augmented system; accepted only between the ends of the bracket.
     fn newton_event(
         &mut self,
         kind: CriticalKind,
@@ -105,10 +105,32 @@ impl CycleProblem {
         let mut point = guess.clone();
         let report = self.augmented(kind, &mut point).ok()?.0;
         let length = self.distance(&low.point, &high.point);
-        // A chord is shorter than the branch between its ends; twice its length still excludes anything else.
-        let inside =
+        // A chord is shorter than the branch between its ends; twice its length still excludes other branches.
+        let near =
             self.distance(&low.point, &point) <= 2.0 * length && self.distance(&high.point, &point) <= 2.0 * length;
-        inside.then_some((point, report))
+        (near && self.lies_between(&point, low, high)).then_some((point, report))
+    }
+
+    /// Whether a point lies ahead of one station and behind another, so that it is the event they bracket and not a
+    /// neighbour of it.
+    fn lies_between(&self, point: &CyclePoint, low: &CycleStation, high: &CycleStation) -> bool {
+        /// Distances on one mesh are known to this.
+        const ROUNDOFF: f64 = 1e-11;
+        let ahead = |station: &CycleStation, sign: f64| {
+            let tables = self.system.tables();
+            let from = station.point.on_mesh(tables, &point.mesh);
+            let tangent = station.tangent.on_mesh(tables, &point.mesh);
+            let mut step = Row::zero(point.unknowns.nodes.len());
+            for ((step, to), from) in step.nodes.iter_mut().zip(&point.unknowns.nodes).zip(&from.unknowns.nodes) {
+                *step = to - from;
+            }
+            step.period = point.unknowns.period - from.unknowns.period;
+            step.parameter = point.unknowns.parameter - from.unknowns.parameter;
+            let same = station.point.mesh == point.mesh;
+            let slack = if same { ROUNDOFF } else { self.settings.mesh.accuracy.max(ROUNDOFF) };
+            sign * self.metric.inner(tables, &point.mesh, &tangent.row, &step) >= -slack
+        };
+        ahead(low, 1.0) && ahead(high, -1.0)
     }
 
     /// Solves the augmented system in place on the point's mesh.
@@ -160,8 +182,10 @@ impl CycleProblem {
     pub fn between(&mut self, low: &CycleStation, high: &CycleStation, share: f64) -> Option<CycleStation> {
         let length = self.distance(&low.point, &high.point);
         let stride = share * length;
-        let prediction = self.advance(&low.point, &low.tangent, stride);
-        let closing = Closing::Arclength { from: &low.point, tangent: &low.tangent, stride };
+        // The metric may have changed since the station was made.
+        let tangent = self.normalised(low.tangent.clone());
+        let prediction = self.advance(&low.point, &tangent, stride);
+        let closing = Closing::Arclength { from: &low.point, tangent: &tangent, stride };
         let point = self.correct(&prediction, closing).ok()?.point;
         let tangent = self.tangent(&point, Orientation::Along(&low.tangent)).ok()?;
         let watch = self.watch(&point, &tangent).ok()?;

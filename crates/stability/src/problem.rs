@@ -349,7 +349,7 @@ impl CycleProblem {
     }
 
     /// The same direction with length 1 in the present metric.
-    fn normalised(&self, mut tangent: CycleTangent) -> CycleTangent {
+    pub(crate) fn normalised(&self, mut tangent: CycleTangent) -> CycleTangent {
         let length = self.metric.inner(self.system.tables(), &tangent.mesh, &tangent.row, &tangent.row).sqrt();
         tangent.row.nodes.iter_mut().for_each(|value| *value /= length);
         tangent.row.period /= length;

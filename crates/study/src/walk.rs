@@ -158,9 +158,13 @@ impl Walker<'_, '_> {
     /// Whether the parameter may turn back twice inside a step.
     fn may_turn_twice(&mut self, before: &CycleStation, after: &CycleStation) -> bool {
         let (problem, _, _) = self.follower.parts();
-        let length = problem.distance(&before.point, &after.point) * problem.metric().parameter_scale;
+        let length = problem.distance(&before.point, &after.point);
         let mean = (after.point.unknowns.parameter - before.point.unknowns.parameter) / length;
-        let [from, to] = [before, after].map(|station| station.watch.values[WATCH_FOLD].value);
+        // The metric may have changed since the first of them was made.
+        let slope = |station: &CycleStation| {
+            station.tangent.row.parameter / problem.inner(&station.tangent, &station.tangent).sqrt()
+        };
+        let (from, to) = (slope(before), slope(after));
         near_miss_by_mean((from, to), mean)
     }
 

@@ -26,7 +26,12 @@ pub fn thresholds(branch: &Branch) -> Vec<EventKind> {
 pub fn adds_up(branch: &Branch) {
     for pair in branch.points.windows(2) {
         let (from, to) = (&pair[0], &pair[1]);
-        let between = |event: &&Event| event.distance >= from.distance && event.distance <= to.distance;
+        let change = to.unstable_count as i64 - from.unstable_count as i64;
+        // An event on a point to roundoff may belong to either side of it.
+        let slack = 1e-9;
+        let between =
+            |event: &&Event| event.distance >= from.distance - slack && event.distance <= to.distance + slack;
+        let on = |event: &Event| [from, to].iter().any(|point| (point.distance - event.distance).abs() <= slack);
         let (mut least, mut most, mut unresolved) = (0i64, 0i64, false);
         for event in branch.events.iter().filter(between) {
             let size = match event.kind {
@@ -39,8 +44,8 @@ pub fn adds_up(branch: &Branch) {
                 _ => 0,
             };
             (least, most) = (least - size, most + size);
+            unresolved |= size > 0 && on(event) && (least..=most).contains(&change);
         }
-        let change = to.unstable_count as i64 - from.unstable_count as i64;
         assert!(
             unresolved || (least..=most).contains(&change) && (most - change) % 2 == 0,
             "{}: {} unstable at {}, {} at {}, events allow {least} to {most}",

@@ -5,3 +5,4 @@ mod bubbles;
 mod edges;
 mod jumps;
 mod near;
+mod probe;
