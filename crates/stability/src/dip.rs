@@ -50,16 +50,18 @@ struct End {
 }
 
 impl CycleProblem {
-    /// Looks for two doublings that cancel between two stations with the same sign of the doubling function.
-    pub fn doubling_dip(&mut self, before: &CycleStation, after: &CycleStation) -> Dip {
+    /// Looks for two doublings that cancel between two stations with the same sign of the doubling function. None where
+    /// the bordered scalar cannot tell: its linear systems fail, or the borders of one end do not suit the other, as where
+    /// two multipliers are near -1 at once.
+    pub fn doubling_dip(&mut self, before: &CycleStation, after: &CycleStation) -> Option<Dip> {
         let ends = [before, after].map(|station| station.watch.values[WATCH_DOUBLING].value);
-        if !(ends[0] * ends[1] > 0.0 && ends[0].abs().min(ends[1].abs()) < NEAR) {
-            return Dip::Clear;
+        if ends[0] * ends[1] > 0.0 && ends[0].abs().min(ends[1].abs()) < NEAR {
+            self.search_dip(before, after)
+        } else {
+            Some(Dip::Clear)
         }
-        self.search_dip(before, after).unwrap_or(Dip::Clear)
     }
 
-    /// None where the linear systems fail; the ledger of counts remains then.
     fn search_dip(&mut self, before: &CycleStation, after: &CycleStation) -> Option<Dip> {
         let mut borders = self.borders(after)?;
         let mut high = self.end(&mut borders, after.clone())?;

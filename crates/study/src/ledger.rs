@@ -87,8 +87,16 @@ const IDLE: f64 = 1e-6;
 /// as multipliers can tell: there two of them are 1, each to half the digits.
 const ON_FOLD: (f64, f64) = (1e-4, 1e-5);
 
+/// Watched value that is zero to roundoff: the station stands on an event, and its sign is noise.
+const ON_EVENT: f64 = 1e-10;
+
 /// Whether the side of each multiplier is known at a station.
 pub(crate) fn is_sure(station: &CycleStation) -> bool {
+    let value = |index: usize| station.watch.values[index].value.abs();
+    is_off_folds(station) && [WATCH_DOUBLING, WATCH_TORUS, WATCH_BRANCHING].into_iter().all(|i| value(i) > ON_EVENT)
+}
+
+fn is_off_folds(station: &CycleStation) -> bool {
     let value = |index: usize| station.watch.values[index].value.abs();
     value(WATCH_FOLD) > ON_FOLD.0 || value(WATCH_BRANCHING) > ON_FOLD.1
 }
@@ -135,7 +143,7 @@ fn middle(problem: &mut CycleProblem, before: &CycleStation, after: &CycleStatio
     if problem.distance(&before.point, &after.point) < RESOLUTION {
         return None;
     }
-    [0.5, 0.4].into_iter().find_map(|share| problem.between(before, after, share).filter(is_sure))
+    [0.5, 0.4].into_iter().find_map(|share| problem.between(before, after, share).filter(is_off_folds))
 }
 
 /// Narrows a part to the resolution around the first place where something changes.

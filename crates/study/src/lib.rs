@@ -35,6 +35,7 @@ mod start;
 mod step_events;
 mod study;
 mod trace;
+mod valley;
 mod walk;
 mod words;
 

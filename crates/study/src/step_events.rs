@@ -6,7 +6,9 @@ use armilla_stability::{
     CriticalKind, CyclePoint, CycleProblem, Dip, DoublingForm, Located, WATCH_DOUBLING, WATCH_FOLD,
 };
 
+use crate::guards::smooth_values;
 use crate::ledger::{Part, narrowed, parts};
+use crate::valley::valley;
 use crate::walk::{CycleStation, WalkPlan};
 
 /// An event as found, before it has a name.
@@ -33,48 +35,60 @@ pub(crate) struct Findings {
     pub jumped: bool,
 }
 
-/// The events of a step, in the order of the walk.
+/// The events of a step, in the order of the walk; `earlier` is the station before it.
 pub(crate) fn events_of_step(
     problem: &mut CycleProblem,
     ends: (&CycleStation, &CycleStation),
+    earlier: Option<&CycleStation>,
     plan: &WalkPlan<'_>,
 ) -> Findings {
     let mut findings = Findings { found: Vec::new(), jumped: false };
-    for part in parts_with_dips(problem, ends, plan, &mut findings) {
-        events_of_part(problem, &part, plan, &mut findings);
+    let mut stations = vec![ends.0.clone()];
+    for (dip, angle) in dips(problem, ends, earlier) {
+        match dip {
+            Dip::Clear => {}
+            Dip::Split(station) => stations.push(*station),
+            Dip::Touch(station) => findings.found.push(touch(&station, angle, plan)),
+        }
+    }
+    stations.push(ends.1.clone());
+    let along = (ends.1.distance - ends.0.distance).signum();
+    stations.sort_by(|a, b| (along * a.distance).total_cmp(&(along * b.distance)));
+    for pair in stations.windows(2) {
+        for part in parts(problem, &pair[0], &pair[1]) {
+            events_of_part(problem, &part, plan, &mut findings);
+        }
     }
     findings.found.sort_by(|a, b| (plan.sign * a.distance).total_cmp(&(plan.sign * b.distance)));
     findings
 }
 
-/// The parts of a step in which something happens, also where two doublings cancel.
-fn parts_with_dips(
+/// Pairs of events that cancel inside a step, with the angle of the critical multiplier where it is known.
+fn dips(
     problem: &mut CycleProblem,
-    (before, after): (&CycleStation, &CycleStation),
-    plan: &WalkPlan<'_>,
-    findings: &mut Findings,
-) -> Vec<Part> {
-    match problem.doubling_dip(before, after) {
-        Dip::Clear => parts(problem, before, after),
-        Dip::Split(between) => {
-            let mut found = parts(problem, before, &between);
-            found.extend(parts(problem, &between, after));
-            found
-        }
-        Dip::Touch(at) => {
-            // Two events at a distance d from each other make the value dip by d^2 only.
-            let width = plan.study.range.1 - plan.study.range.0;
-            let interval = (at.point.unknowns.parameter, TOUCHING * width);
-            let note = "a multiplier touches -1: two period doublings closer to each other than can be told, or none";
-            let mut event = unresolved(&at, interval, note.into(), plan);
-            event.angle = Some(std::f64::consts::PI);
-            findings.found.push(event);
-            parts(problem, before, after)
-        }
-    }
+    ends: (&CycleStation, &CycleStation),
+    earlier: Option<&CycleStation>,
+) -> [(Dip, Option<f64>); 3] {
+    let product = |station: &CycleStation| Some(station.watch.values[WATCH_DOUBLING].value);
+    let doubling = problem.doubling_dip(ends.0, ends.1).unwrap_or_else(|| valley(problem, ends, earlier, &product));
+    let [torus, branching] = [0, 1].map(|index| {
+        let value = move |station: &CycleStation| smooth_values(station)[index];
+        valley(problem, ends, earlier, &value)
+    });
+    [(doubling, Some(std::f64::consts::PI)), (torus, None), (branching, Some(0.0))]
 }
 
-/// Share of the range within which two doublings that cancel cannot be told apart: the root of roundoff, with a margin.
+/// A watched value that touches zero. Two events at a distance d from each other make it dip by d^2 only.
+fn touch(at: &CycleStation, angle: Option<f64>, plan: &WalkPlan<'_>) -> Found {
+    let width = plan.study.range.1 - plan.study.range.0;
+    let interval = (at.point.unknowns.parameter, TOUCHING * width);
+    let note = "a multiplier touches the unit circle: two events closer to each other than can be told, or none";
+    let mut event = unresolved(at, interval, note.into(), plan);
+    event.angle = angle;
+    event
+}
+
+/// Share of the range within which two events that cancel cannot be told apart: the root of roundoff, with a margin.
 const TOUCHING: f64 = 1e-6;
 
 fn events_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, findings: &mut Findings) {
@@ -231,8 +245,9 @@ fn remaining_change(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>
     let critical = problem.spectrum(&high.point).ok().and_then(|spectrum| {
         spectrum.multipliers.into_iter().min_by(|x, y| x.log_modulus.abs().total_cmp(&y.log_modulus.abs()))
     });
+    let is_pair = |angle: f64| angle.abs() > REAL && angle.abs() < std::f64::consts::PI - REAL;
     let (kind, angle, note) = match critical {
-        Some(mu) if change == 2 && mu.angle != 0.0 && mu.angle != std::f64::consts::PI => {
+        Some(mu) if change == 2 && is_pair(mu.angle) => {
             (EventKind::Torus, Some(mu.angle.abs()), "located by bisection of the unstable count")
         }
         Some(mu) if change == 1 && mu.angle == 0.0 => (
@@ -240,12 +255,20 @@ fn remaining_change(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>
             Some(0.0),
             "a multiplier passes +1 without a fold; located by bisection, kind not decided, crossing branch not followed",
         ),
+        Some(mu) if change == 2 => (
+            EventKind::Unresolved,
+            Some(if mu.angle.abs() < 1.0 { 0.0 } else { std::f64::consts::PI }),
+            "two multipliers leave the unit circle at one place: two events closer to each other than the accuracy tells",
+        ),
         _ => (EventKind::Unresolved, None, "the number of unstable multipliers changes here for a reason not resolved"),
     };
     let mut event = unresolved(&low, (0.5 * (a + b), half_width), note.into(), plan);
     (event.kind, event.angle) = (kind, angle);
     event
 }
+
+/// Angle from the real axis within which a pair may be two real multipliers that the accuracy does not tell apart.
+const REAL: f64 = 1e-4;
 
 /// An event that is known by an interval of the parameter; its period is that of the station, known to its profile's
 /// accuracy only.

@@ -8,9 +8,9 @@ use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_FOLD};
 
 use crate::approach::approach;
 use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, short};
-use crate::guards::{falls_on_shorter, leaps, smooth_values};
+use crate::guards::{falls_on_shorter, leaps};
 use crate::ledger::{Change, is_sure};
-use crate::near_miss::{Sample, near_miss, near_miss_by_mean};
+use crate::near_miss::near_miss_by_mean;
 use crate::step_events::{Found, events_of_step, landing_event};
 use crate::study::Study;
 
@@ -66,10 +66,9 @@ pub(crate) fn walk(
             let seen = Seen {
                 motions: vec![motion(&mut follower)],
                 periods: vec![period(&follower)],
-                samples: vec![samples_at(&follower)],
             };
             let account = follower.current().clone();
-            Walker { follower, plan, sink, walk, seen, account, retries: 0, doubt_until: 0.0 }.run()
+            Walker { follower, plan, sink, walk, seen, account, earlier: None, retries: 0, doubt_until: 0.0 }.run()
         }
         Err(_) => {
             let words = "the multipliers at its first cycle could not be computed".into();
@@ -84,8 +83,6 @@ struct Seen {
     motions: Vec<(f64, f64)>,
     /// Parameter and period.
     periods: Vec<(f64, f64)>,
-    /// Watched values that near misses are told from.
-    samples: Vec<[Option<Sample>; 2]>,
 }
 
 /// A walk under way.
@@ -97,6 +94,8 @@ struct Walker<'w, 'p> {
     seen: Seen,
     /// The last station at which the side of every multiplier was known: from there on changes are accounted for.
     account: CycleStation,
+    /// The one before it.
+    earlier: Option<CycleStation>,
     retries: usize,
     /// Distance up to which the last doubt reaches.
     doubt_until: f64,
@@ -141,8 +140,6 @@ impl Walker<'_, '_> {
             self.come_to_rest(rest);
             return Taken::Ended(ended);
         }
-        self.seen.samples.truncate(self.walk.points.len() + 1);
-        self.seen.samples.push(samples_at(&self.follower));
         if self.is_doubtful(&before, &after) && self.retry() {
             return Taken::On;
         }
@@ -152,7 +149,7 @@ impl Walker<'_, '_> {
     /// Whether a shorter stride may tell more of what happens in a step.
     fn is_doubtful(&mut self, before: &CycleStation, after: &CycleStation) -> bool {
         let explained = !is_sure(after) || Change::between(&self.account, after).is_explained();
-        !explained || leaps(before, after) || touches_zero(&self.seen.samples) || self.may_turn_twice(before, after)
+        !explained || leaps(before, after) || self.may_turn_twice(before, after)
     }
 
     /// Whether the parameter may turn back twice inside a step.
@@ -174,7 +171,7 @@ impl Walker<'_, '_> {
         let sure = is_sure(&after);
         let mut found = Vec::new();
         if sure {
-            let findings = events_of_step(problem, (&self.account, &after), self.plan);
+            let findings = events_of_step(problem, (&self.account, &after), self.earlier.as_ref(), self.plan);
             if findings.jumped {
                 return self.retry_or_end("two branches come so near each other here that they could not be told apart");
             }
@@ -203,7 +200,7 @@ impl Walker<'_, '_> {
             self.account.watch.unstable_count
         };
         if sure {
-            self.account = after.clone();
+            self.earlier = Some(std::mem::replace(&mut self.account, after.clone()));
         }
         self.keep(found, after, count)
     }
@@ -294,19 +291,4 @@ fn motion(follower: &mut Follower<'_, CycleProblem>) -> (f64, f64) {
 fn period(follower: &Follower<'_, CycleProblem>) -> (f64, f64) {
     let unknowns = &follower.current().point.unknowns;
     (unknowns.parameter, unknowns.period)
-}
-
-/// The values whose near misses are told from three stations, at the present one.
-fn samples_at(follower: &Follower<'_, CycleProblem>) -> [Option<Sample>; 2] {
-    let station = follower.current();
-    smooth_values(station).map(|value| value.map(|value| Sample { distance: station.distance, value }))
-}
-
-/// Whether one of the watched values may have touched zero and turned back within the last step.
-fn touches_zero(samples: &[[Option<Sample>; 2]]) -> bool {
-    let [.., a, b, c] = samples else { return false };
-    (0..2).any(|watched| match [a[watched], b[watched], c[watched]] {
-        [Some(a), Some(b), Some(c)] => near_miss([a, b, c]),
-        _ => false,
-    })
 }
