@@ -75,6 +75,19 @@ impl CycleProblem {
         Err(LocateFault { bracket: (low.point.unknowns.parameter, high.point.unknowns.parameter) })
     }
 
+    /// Locates the event of a kind that a station stands on, to within roundoff of its own.
+    pub fn locate_at(&mut self, kind: CriticalKind, station: &CycleStation) -> Option<Located> {
+        /// Distance from the station within which the event is the one it stands on.
+        const ON: f64 = 1e-7;
+        let mut point = station.point.clone();
+        let report = self.augmented(kind, &mut point).ok()?.0;
+        if !(self.distance(&station.point, &point) <= ON) {
+            return None;
+        }
+        let (point, error, period_error, vectors) = self.refine_event(kind, &point).ok()?;
+        Some(Located { kind, point, error, period_error, vectors, report, share: 1.0, halvings: 0 })
+    }
+
     fn share(&self, before: &CycleStation, point: &CyclePoint, total: f64) -> f64 {
         if total > 0.0 { (self.distance(&before.point, point) / total).clamp(0.0, 1.0) } else { 0.0 }
     }

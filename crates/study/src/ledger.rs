@@ -92,11 +92,15 @@ const ON_EVENT: f64 = 1e-10;
 
 /// Whether the side of each multiplier is known at a station.
 pub(crate) fn is_sure(station: &CycleStation) -> bool {
-    let value = |index: usize| station.watch.values[index].value.abs();
-    is_off_folds(station) && [WATCH_DOUBLING, WATCH_TORUS, WATCH_BRANCHING].into_iter().all(|i| value(i) > ON_EVENT)
+    is_off_folds(station) && ![WATCH_DOUBLING, WATCH_TORUS, WATCH_BRANCHING].into_iter().any(|i| stands_on(station, i))
 }
 
-fn is_off_folds(station: &CycleStation) -> bool {
+/// Whether a station stands on an event of the doubling, torus or branching function.
+pub(crate) fn stands_on(station: &CycleStation, index: usize) -> bool {
+    station.watch.values[index].value.abs() <= ON_EVENT
+}
+
+pub(crate) fn is_off_folds(station: &CycleStation) -> bool {
     let value = |index: usize| station.watch.values[index].value.abs();
     value(WATCH_FOLD) > ON_FOLD.0 || value(WATCH_BRANCHING) > ON_FOLD.1
 }

@@ -3,11 +3,12 @@
 use armilla_follow::{Landing, Problem};
 use armilla_record::{Criticality, EventKind};
 use armilla_stability::{
-    CriticalKind, CyclePoint, CycleProblem, Dip, DoublingForm, Located, WATCH_DOUBLING, WATCH_FOLD,
+    CriticalKind, CyclePoint, CycleProblem, Dip, DoublingForm, Located, WATCH_BRANCHING, WATCH_DOUBLING, WATCH_FOLD,
+    WATCH_TORUS,
 };
 
 use crate::guards::smooth_values;
-use crate::ledger::{Part, narrowed, parts};
+use crate::ledger::{Change, Part, narrowed, parts, stands_on};
 use crate::valley::valley;
 use crate::walk::{CycleStation, WalkPlan};
 
@@ -63,6 +64,43 @@ pub(crate) fn events_of_step(
     findings
 }
 
+/// Events on the very edge of the range, where the walk ends and no change of sign can follow.
+pub(crate) fn events_on_edge(
+    problem: &mut CycleProblem,
+    ends: (&CycleStation, &CycleStation),
+    plan: &WalkPlan<'_>,
+) -> Vec<Found> {
+    let after = ends.1;
+    let change = Change::between(ends.0, after);
+    let mut found = Vec::new();
+    if stands_on(after, WATCH_DOUBLING) && !change.doubles {
+        found.extend(
+            problem.locate_at(CriticalKind::Doubling, after).map(|located| located_event(problem, located, ends, plan)),
+        );
+    }
+    let bracketed = [(WATCH_TORUS, EventKind::Torus, change.pair), (WATCH_BRANCHING, EventKind::Branching, change.passes_one)];
+    for (index, kind, seen) in bracketed {
+        if stands_on(after, index) && !seen {
+            let width = plan.study.range.1 - plan.study.range.0;
+            let note = "on the edge of the range to within what the multipliers tell";
+            let mut event = unresolved(after, (after.point.unknowns.parameter, EDGE * width), note.into(), plan);
+            (event.kind, event.angle) = (kind, critical_angle(problem, after));
+            found.push(event);
+        }
+    }
+    found
+}
+
+/// Share of the range within which an event on the edge is not located further: multipliers there are 1 to 1e-10.
+const EDGE: f64 = 1e-9;
+
+/// Angle of the multiplier nearest to the unit circle.
+fn critical_angle(problem: &mut CycleProblem, station: &CycleStation) -> Option<f64> {
+    let spectrum = problem.spectrum(&station.point).ok()?;
+    let nearest = spectrum.multipliers.iter().min_by(|x, y| x.log_modulus.abs().total_cmp(&y.log_modulus.abs()));
+    nearest.map(|mu| mu.angle.abs())
+}
+
 /// Pairs of events that cancel inside a step, with the angle of the critical multiplier where it is known.
 fn dips(
     problem: &mut CycleProblem,
@@ -70,7 +108,11 @@ fn dips(
     earlier: Option<&CycleStation>,
 ) -> [(Dip, Option<f64>); 3] {
     let product = |station: &CycleStation| Some(station.watch.values[WATCH_DOUBLING].value);
-    let doubling = problem.doubling_dip(ends.0, ends.1).unwrap_or_else(|| valley(problem, ends, earlier, &product));
+    let doubling = match problem.doubling_dip(ends.0, ends.1) {
+        // Where two multipliers are near -1 at once the bordered scalar has poles; their product has none.
+        None | Some(Dip::Clear) => valley(problem, ends, earlier, &product),
+        Some(dip) => dip,
+    };
     let [torus, branching] = [0, 1].map(|index| {
         let value = move |station: &CycleStation| smooth_values(station)[index];
         valley(problem, ends, earlier, &value)

@@ -6,6 +6,7 @@ use std::sync::atomic::{AtomicBool, Ordering};
 
 use armilla_figure::Figure;
 use armilla_record::{Branch, CascadeRow, EndReason, EventKind, RecordError, Results, Threshold};
+use armilla_stability::Doubled;
 
 use crate::branch::{Entry, Finished, Lineage, Run, Switchable, follow_branch};
 use crate::cascade::cascade;
@@ -172,11 +173,19 @@ fn children(
         }
         match finished.problem.double(located, form.as_ref()) {
             Err(fault) => shortfalls.push(format!("at {event} {fault}")),
+            // Born on the edge of the range and leading out of it: nothing to follow.
+            Ok(doubled) if is_outside(study, &doubled) => {}
             Ok(doubled) => children
                 .push(Waiting { lineage: child_lineage(lineage, event), entry: Entry::Birth(Box::new(doubled)) }),
         }
     }
     children
+}
+
+/// Whether a branch begins outside the asked range though it is born on its edge.
+fn is_outside(study: &Study, doubled: &Doubled) -> bool {
+    let value = doubled.point.unknowns.parameter;
+    value < study.range.0 || value > study.range.1
 }
 
 fn child_lineage(parent: &Lineage, event: &str) -> Lineage {

@@ -14,6 +14,11 @@ use crate::walk::CycleStation;
 const LOW: f64 = 0.5;
 /// Value above which, at both ends, no multiplier passes and comes back inside a stride; the guards bound its change.
 const NEAR: f64 = 0.3;
+/// Strides by which the lowest place of a parabola may lie outside of the one it was made for and still be looked for
+/// inside: half a stride is what a smooth value may shift it by.
+const BESIDE: f64 = 0.5;
+/// Share of a stride from its ends at which it is looked for then.
+const INSIDE: f64 = 0.01;
 /// Share of the lowest value found that the parabola may still promise below it once the bottom is found.
 const SETTLED: f64 = 0.7;
 /// Value that cannot be told from zero.
@@ -65,12 +70,13 @@ fn search(
     };
     let mut best: Option<Sample> = None;
     for _ in 0..SEARCHES {
-        let (share, promised) = lowest(triple).filter(|(share, _)| *share > 0.0 && *share < 1.0)?;
+        let (share, promised) = lowest(triple).filter(|(share, _)| *share > -BESIDE && *share < 1.0 + BESIDE)?;
         let settled = best.is_some_and(|best| promised > SETTLED * best.1);
         if promised > LOW * size || settled {
             return Some(Dip::Clear);
         }
-        let station = problem.between(before, after, share.clamp(0.01, 0.99))?;
+        let share = share.clamp(INSIDE, 1.0 - INSIDE);
+        let station = problem.between(before, after, share)?;
         let found = value(&station)? * side;
         if found.abs() < ZERO {
             return Some(Dip::Touch(Box::new(station)));
@@ -79,7 +85,7 @@ fn search(
             return Some(Dip::Split(Box::new(station)));
         }
         // The next parabola goes through the lowest point and its neighbours.
-        triple = around(triple, (share.clamp(0.01, 0.99), found), (low, high))?;
+        triple = around(triple, (share, found), (low, high))?;
         best = Some(triple[1]);
     }
     Some(Dip::Clear)

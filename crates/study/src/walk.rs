@@ -2,16 +2,16 @@
 
 use std::sync::atomic::{AtomicBool, Ordering};
 
-use armilla_follow::{Follower, Outcome, Problem, Settings, Station, Step};
+use armilla_follow::{Follower, Landing, Outcome, Problem, Settings, Station, Step};
 use armilla_record::{End, EndReason, EventKind, Point};
 use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_FOLD};
 
 use crate::approach::approach;
 use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, short};
 use crate::guards::{falls_on_shorter, leaps};
-use crate::ledger::{Change, is_sure};
+use crate::ledger::{Change, is_off_folds, is_sure};
 use crate::near_miss::near_miss_by_mean;
-use crate::step_events::{Found, events_of_step, landing_event};
+use crate::step_events::{Found, events_of_step, events_on_edge, landing_event};
 use crate::study::Study;
 
 pub(crate) type CycleStation = Station<CyclePoint, CycleTangent>;
@@ -169,13 +169,17 @@ impl Walker<'_, '_> {
     fn judge(&mut self, step: &Step, after: CycleStation) -> Taken {
         let (problem, _, _) = self.follower.parts();
         let sure = is_sure(&after);
+        let on_edge = matches!(step.landing, Some(Landing::Edge(_))) && !sure && is_off_folds(&after);
         let mut found = Vec::new();
-        if sure {
+        if sure || on_edge {
             let findings = events_of_step(problem, (&self.account, &after), self.earlier.as_ref(), self.plan);
             if findings.jumped {
                 return self.retry_or_end("two branches come so near each other here that they could not be told apart");
             }
             found = findings.found;
+        }
+        if on_edge {
+            found.extend(events_on_edge(problem, (&self.account, &after), self.plan));
         }
         // A fold beyond the edge: the walk should have ended on the edge before it, and does so in shorter strides.
         let (low, high) = self.plan.study.range;
