@@ -188,9 +188,7 @@ impl<'a, Q: Problem> Follower<'a, Q> {
         let Some(previous) = self.previous.take() else { return false };
         self.current = previous;
         // The problem may measure otherwise since; a tangent of another length would make strides of another one.
-        if let Ok(tangent) =
-            self.problem.tangent(&self.current.point, Orientation::Along(&self.current.tangent))
-        {
+        if let Ok(tangent) = self.problem.tangent(&self.current.point, Orientation::Along(&self.current.tangent)) {
             self.current.tangent = tangent;
         }
         self.stride = (0.5 * length).max(self.settings.shortest);
@@ -279,7 +277,8 @@ impl<'a, Q: Problem> Follower<'a, Q> {
     fn leaves_its_curve(&self, candidate: &Candidate<Q>, stride: f64) -> bool {
         let Station { point, tangent, .. } = &self.current;
         let half = self.problem.advance(point, tangent, 0.5 * stride);
-        let missed = self.problem.distance(&self.problem.advance(&half, &candidate.tangent, 0.5 * stride), &candidate.point);
+        let missed =
+            self.problem.distance(&self.problem.advance(&half, &candidate.tangent, 0.5 * stride), &candidate.point);
         let predicted = self.problem.distance(&self.problem.advance(&half, tangent, 0.5 * stride), &candidate.point);
         let bend = 0.5 * stride * (2.0 - 2.0 * candidate.cosine.min(1.0)).sqrt();
         missed > CURVE_SHARE * predicted.max(bend) && missed > CURVE_FLOOR * stride

@@ -38,6 +38,8 @@ const LOW: f64 = 0.1;
 const SETTLED: f64 = 0.5;
 /// Share of the larger end value under which the bottom cannot be told from zero.
 const TOUCHES: f64 = 1e-11;
+/// Share of the smaller end value that the bottom must fall below to count as one.
+const BOTTOM: f64 = 0.01;
 /// Cycles computed in search of the bottom; each divides its distance by two at least, mostly squares it.
 const SEARCHES: usize = 40;
 
@@ -86,7 +88,8 @@ impl CycleProblem {
             let station = self.between(&low.station, &high.station, share.clamp(0.01, 0.99))?;
             let beyond = station.watch.values[WATCH_DOUBLING].value * before.watch.values[WATCH_DOUBLING].value < 0.0;
             let middle = self.end(&mut borders, station)?;
-            if middle.value.abs() < TOUCHES * size {
+            // Beside an event that another stride has told the ends themselves are as small.
+            if middle.value.abs() < (TOUCHES * size).min(BOTTOM * floor) {
                 return Some(Dip::Touch(Box::new(middle.station)));
             }
             if beyond {

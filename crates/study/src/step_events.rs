@@ -45,7 +45,9 @@ pub(crate) fn events_of_step(
 ) -> Findings {
     let mut findings = Findings { found: Vec::new(), jumped: false };
     let mut stations = vec![ends.0.clone()];
-    for (dip, angle) in dips(problem, ends, earlier) {
+    // What does not add up is cut into parts anyway; its values dip to zero because of what is found there.
+    let explained = Change::between(ends.0, ends.1).is_explained();
+    for (dip, angle) in explained.then(|| dips(problem, ends, earlier)).into_iter().flatten() {
         match dip {
             Dip::Clear => {}
             Dip::Split(station) => stations.push(*station),
@@ -78,7 +80,8 @@ pub(crate) fn events_on_edge(
             problem.locate_at(CriticalKind::Doubling, after).map(|located| located_event(problem, located, ends, plan)),
         );
     }
-    let bracketed = [(WATCH_TORUS, EventKind::Torus, change.pair), (WATCH_BRANCHING, EventKind::Branching, change.passes_one)];
+    let bracketed =
+        [(WATCH_TORUS, EventKind::Torus, change.pair), (WATCH_BRANCHING, EventKind::Branching, change.passes_one)];
     for (index, kind, seen) in bracketed {
         if stands_on(after, index) && !seen {
             let width = plan.study.range.1 - plan.study.range.0;
@@ -337,7 +340,12 @@ pub(crate) fn unresolved(
     }
 }
 
-pub(crate) fn landing_event(problem: &mut CycleProblem, landing: Landing, after: &CycleStation, plan: &WalkPlan<'_>) -> Found {
+pub(crate) fn landing_event(
+    problem: &mut CycleProblem,
+    landing: Landing,
+    after: &CycleStation,
+    plan: &WalkPlan<'_>,
+) -> Found {
     let kind = match landing {
         Landing::Edge(_) => EventKind::Edge,
         Landing::Target(_) => EventKind::Target,

@@ -22,7 +22,9 @@ const INSIDE: f64 = 0.01;
 /// Share of the lowest value found that the parabola may still promise below it once the bottom is found.
 const SETTLED: f64 = 0.7;
 /// Value that cannot be told from zero.
-pub(crate) const ZERO: f64 = 1e-12;
+const ZERO: f64 = 1e-12;
+/// Share of the smaller end value that the bottom of a valley must fall below to count as one.
+const BOTTOM: f64 = 0.01;
 /// Cycles computed in search of the bottom.
 const SEARCHES: usize = 30;
 
@@ -78,7 +80,8 @@ fn search(
         let share = share.clamp(INSIDE, 1.0 - INSIDE);
         let station = problem.between(before, after, share)?;
         let found = value(&station)? * side;
-        if found.abs() < ZERO {
+        // Beside an event that another step has told the ends themselves are as small.
+        if found.abs() < ZERO.min(BOTTOM * low.1.min(high.1)) {
             return Some(Dip::Touch(Box::new(station)));
         }
         if found < 0.0 {
@@ -106,8 +109,7 @@ fn lowest([a, b, c]: [Sample; 3]) -> Option<Sample> {
 
 /// The lowest of the points seen with its neighbours on both sides.
 fn around(triple: [Sample; 3], new: Sample, (low, high): (Sample, Sample)) -> Option<[Sample; 3]> {
-    let mut points: Vec<Sample> =
-        triple.into_iter().chain([new, low, high]).filter(|point| point.0 >= 0.0).collect();
+    let mut points: Vec<Sample> = triple.into_iter().chain([new, low, high]).filter(|point| point.0 >= 0.0).collect();
     points.sort_by(|a, b| a.0.total_cmp(&b.0));
     points.dedup_by(|a, b| a.0 == b.0);
     let lowest = (0..points.len()).min_by(|a, b| points[*a].1.total_cmp(&points[*b].1))?;

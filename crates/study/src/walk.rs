@@ -63,10 +63,7 @@ pub(crate) fn walk(
     let walk = Walk { points: Vec::new(), events: Vec::new(), end: end(EndReason::Stuck, start_value, String::new()) };
     match Follower::start_along(problem, first.0, first.1, plan.settings.clone()) {
         Ok(mut follower) => {
-            let seen = Seen {
-                motions: vec![motion(&mut follower)],
-                periods: vec![period(&follower)],
-            };
+            let seen = Seen { motions: vec![motion(&mut follower)], periods: vec![period(&follower)] };
             let account = follower.current().clone();
             Walker { follower, plan, sink, walk, seen, account, earlier: None, retries: 0, doubt_until: 0.0 }.run()
         }
@@ -174,7 +171,8 @@ impl Walker<'_, '_> {
         if sure || on_edge {
             let findings = events_of_step(problem, (&self.account, &after), self.earlier.as_ref(), self.plan);
             if findings.jumped {
-                return self.retry_or_end("two branches come so near each other here that they could not be told apart");
+                return self
+                    .retry_or_end("two branches come so near each other here that they could not be told apart");
             }
             found = findings.found;
         }

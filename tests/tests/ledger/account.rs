@@ -29,8 +29,7 @@ pub fn adds_up(branch: &Branch) {
         let change = to.unstable_count as i64 - from.unstable_count as i64;
         // An event on a point to roundoff may belong to either side of it.
         let slack = 1e-9;
-        let between =
-            |event: &&Event| event.distance >= from.distance - slack && event.distance <= to.distance + slack;
+        let between = |event: &&Event| event.distance >= from.distance - slack && event.distance <= to.distance + slack;
         let on = |event: &Event| [from, to].iter().any(|point| (point.distance - event.distance).abs() <= slack);
         let (mut least, mut most, mut unresolved) = (0i64, 0i64, false);
         for event in branch.events.iter().filter(between) {

@@ -19,7 +19,12 @@ fn near(name: &str, found: &[f64], wanted: &[f64], tolerance: f64) {
 /// Growth `20 ((w/2)^2 - (p - c)^2)`: positive between `c - w/2` and `c + w/2`.
 fn growth((c, w): (f64, f64), name: char) -> String {
     let steep = 20.0;
-    format!(r#""{name}0": {:?}, "{name}1": {:?}, "{name}2": {:?}"#, steep * (0.25 * w * w - c * c), 2.0 * steep * c, -steep)
+    format!(
+        r#""{name}0": {:?}, "{name}1": {:?}, "{name}2": {:?}"#,
+        steep * (0.25 * w * w - c * c),
+        2.0 * steep * c,
+        -steep
+    )
 }
 
 fn doubling_bubble(c: f64, w: f64) -> Traced {
@@ -72,7 +77,12 @@ fn a_touch_is_told_as_unresolved() {
         let c = 0.1 + STRIDE * place as f64 / 3.0;
         let traced = doubling_bubble(c, 0.0);
         let a = branch(&traced, "a");
-        assert_eq!(thresholds(a), [EventKind::Unresolved], "at {place}: {:?}", a.events.iter().map(|e| (&e.name, e.value)).collect::<Vec<_>>());
+        assert_eq!(
+            thresholds(a),
+            [EventKind::Unresolved],
+            "at {place}: {:?}",
+            a.events.iter().map(|e| (&e.name, e.value)).collect::<Vec<_>>()
+        );
         let event = a.events.iter().find(|event| event.kind == EventKind::Unresolved).expect("one");
         assert!((event.value - c).abs() <= event.error.expect("an interval"), "{} for {c}", event.value);
     }

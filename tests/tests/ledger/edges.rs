@@ -1,14 +1,12 @@
 //! Events at a target, at an edge, near the start: located, told once, nothing lost.
 
-use armilla_record::{EndReason, Event, EventKind};
+use armilla_record::{EndReason, EventKind};
 use armilla_study::Traced;
 use armilla_tests::{branch, job};
 
 use crate::account::{adds_up, of, thresholds};
 
 fn told(traced: &Traced) -> Vec<(&str, f64, &str)> {
-    let name = |event: &'static Event| event;
-    let _ = name;
     traced.branches.iter().flat_map(|b| &b.events).map(|e| (e.name.as_str(), e.value, e.note.as_str())).collect()
 }
 
@@ -70,8 +68,7 @@ fn a_doubling_on_an_edge_gives_birth_inside_the_range() {
 #[test]
 fn a_fold_on_an_edge_is_told_once() {
     for edge in [-0.25, -0.25 - 1e-9, -0.25 - 1e-6] {
-        let fields =
-            format!(r#"start: Settle(at: {{"mu": 0.1}}), follow: (parameter: "mu", from: {edge:?}, to: 0.5)"#);
+        let fields = format!(r#"start: Settle(at: {{"mu": 0.1}}), follow: (parameter: "mu", from: {edge:?}, to: 0.5)"#);
         let traced = job("x2", &fields);
         let a = branch(&traced, "a");
         let folds = of(&traced, "a", EventKind::Fold);
@@ -82,8 +79,7 @@ fn a_fold_on_an_edge_is_told_once() {
     }
     for before in [1e-9, 1e-6] {
         let edge = -0.25 + before;
-        let fields =
-            format!(r#"start: Settle(at: {{"mu": 0.1}}), follow: (parameter: "mu", from: {edge:?}, to: 0.5)"#);
+        let fields = format!(r#"start: Settle(at: {{"mu": 0.1}}), follow: (parameter: "mu", from: {edge:?}, to: 0.5)"#);
         let traced = job("x2", &fields);
         let a = branch(&traced, "a");
         assert_eq!(thresholds(a), [], "{edge}: {:?}", told(&traced));

@@ -5,4 +5,3 @@ mod bubbles;
 mod edges;
 mod jumps;
 mod near;
-mod probe;

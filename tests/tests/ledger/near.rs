@@ -15,7 +15,12 @@ fn two_doublings_as_near_as_a_billionth_of_the_range() {
         );
         let traced = job("band", &fields);
         let found = of(&traced, "a", EventKind::Doubling);
-        assert_eq!(found.len(), 2, "{d}: {:?}", branch(&traced, "a").events.iter().map(|e| (&e.name, e.value, &e.note)).collect::<Vec<_>>());
+        assert_eq!(
+            found.len(),
+            2,
+            "{d}: {:?}",
+            branch(&traced, "a").events.iter().map(|e| (&e.name, e.value, &e.note)).collect::<Vec<_>>()
+        );
         for (event, exact) in found.iter().zip([0.0, d]) {
             let off = (event.value - exact).abs();
             assert!(off <= event.error.expect("an error"), "{d}: {} for {exact}, error {:?}", event.value, event.error);
@@ -48,7 +53,11 @@ fn two_doublings_that_hand_over_are_told() {
         };
         assert!([-0.2, 0.0, d].into_iter().all(covered), "{d}: {:?}", told());
         // Nearer to each other than the root of roundoff they are told as one unresolved event.
-        assert!(found.len() == 3 || d.abs() < 1e-6 && thresholds(a).contains(&EventKind::Unresolved), "{d}: {:?}", told());
+        assert!(
+            found.len() == 3 || d.abs() < 1e-6 && thresholds(a).contains(&EventKind::Unresolved),
+            "{d}: {:?}",
+            told()
+        );
         adds_up(a);
     }
 }
@@ -69,7 +78,12 @@ fn a_fold_and_a_doubling_as_near_as_a_billionth_of_the_range() {
             assert!(folds.len() == 1 && doublings.len() == 1 && thresholds(a).len() == 2, "{d} {sign}: {:?}", told());
             assert!(folds[0].value.abs() <= folds[0].error.expect("an error"), "{d} {sign}: {:?}", told());
             let off = (doublings[0].value - d * d).abs();
-            assert!(off <= doublings[0].error.expect("an error"), "{d} {sign}: {:?} off by {off}, error {:?}", told(), doublings[0].error);
+            assert!(
+                off <= doublings[0].error.expect("an error"),
+                "{d} {sign}: {:?} off by {off}, error {:?}",
+                told(),
+                doublings[0].error
+            );
             adds_up(a);
             assert!(traced.shortfalls.is_empty(), "{:?}", traced.shortfalls);
         }
@@ -110,7 +124,13 @@ fn neutral_saddles_are_no_torus_points() {
         assert!(a.points.iter().any(|point| point.value > 0.35 && point.unstable_count == 1));
         let product = |at: f64| {
             let point = a.points.iter().min_by(|x, y| (x.value - at).abs().total_cmp(&(y.value - at).abs()));
-            point.expect("points").multipliers.iter().map(|mu| mu.log_modulus).filter(|log| log.abs() < 3.0).sum::<f64>()
+            point
+                .expect("points")
+                .multipliers
+                .iter()
+                .map(|mu| mu.log_modulus)
+                .filter(|log| log.abs() < 3.0)
+                .sum::<f64>()
         };
         assert!(product(0.2) < 0.0 && product(0.4) > 0.0, "the saddle is passed");
         adds_up(a);
