@@ -27,13 +27,17 @@
 //! let before = estimate_error(&tables, &mesh, &sample(&mesh), &[0.0]);
 //! for _ in 0..3 {
 //!     let estimate = estimate_error(&tables, &mesh, &sample(&mesh), &[0.0]);
-//!     mesh = remesh(&tables, &mesh, &estimate, MeshSettings::new(1e-9)).mesh;
+//!     let settings = MeshSettings { degrees: (5, 5), ..MeshSettings::new(1e-9) };
+//!     mesh = remesh(&tables, &mesh, &estimate, settings).mesh;
 //! }
 //! let after = estimate_error(&tables, &mesh, &sample(&mesh), &[0.0]);
 //! assert!(before.error > 1e-9 && after.error < 1e-9, "{} {}", before.error, after.error);
 //! ```
 
+mod defect;
+mod direction;
 mod gauss;
+mod linear_mesh;
 mod mesh;
 mod metric;
 mod newton;
@@ -41,13 +45,17 @@ mod system;
 mod tables;
 mod variational;
 
+pub use defect::{Collocated, Defects};
 pub use gauss::{gauss, radau};
-pub use mesh::{ErrorEstimate, MeshChoice, MeshSettings, estimate_error, interpolate_nodes, remesh};
+pub use linear_mesh::TooStiff;
+pub use mesh::{
+    ErrorEstimate, MeshChoice, MeshSettings, estimate_error, interpolate_nodes, refine, remesh, scales_of, work,
+};
 pub use metric::Metric;
 pub use newton::{
     Closing, Failure, Iteration, LinearClosing, NewtonSettings, Report, Scalar, Task, Workspace, correct, correct_with,
     roundoff,
 };
 pub use system::{Fault, Iterate, Row, System, SystemSpec, Variation};
-pub use tables::Tables;
-pub use variational::{Variational, VariationalMaps};
+pub use tables::{DEGREES, Tables};
+pub use variational::{MapsFault, Variational, VariationalMaps};

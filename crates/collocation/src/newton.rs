@@ -4,7 +4,7 @@
 //! reference on the same mesh, and one [`Closing`]. Full steps; the contraction of the first two corrections is
 //! reported, since stride control lives on it (Deuflhard 2004, Newton Methods for Nonlinear Problems, sec. 5.1).
 
-use armilla_linalg::{Bordered, Right};
+use armilla_linalg::{Bordered, Right, Shape};
 
 use crate::system::{Fault, Iterate, Row, System};
 
@@ -117,6 +117,8 @@ impl From<Fault> for Failure {
 pub struct Workspace {
     bordered: Option<Bordered>,
     core: Vec<f64>,
+    /// What everything here is sized for.
+    shape: Option<Shape>,
     step: Option<Row>,
     row: Option<Row>,
     phase: Vec<f64>,
@@ -296,9 +298,10 @@ impl Workspace {
     fn fit(&mut self, system: &System) {
         let shape = system.shape();
         let len = shape.nodes_len();
-        if self.phase.len() == len && self.core.len() == shape.core_len() && self.bordered.is_some() {
+        if self.shape == Some(shape) {
             return;
         }
+        self.shape = Some(shape);
         self.bordered = Some(Bordered::new(shape, 2));
         self.core = vec![0.0; shape.core_len()];
         self.step = Some(Row::zero(len));

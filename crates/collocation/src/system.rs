@@ -127,7 +127,7 @@ pub struct Variation<'a> {
 pub struct System {
     spec: SystemSpec,
     evaluator: Box<dyn Evaluator>,
-    tables: Tables,
+    tables: &'static Tables,
     mesh: Vec<f64>,
     entries: Vec<(usize, usize)>,
     cyclic: Cyclic,
@@ -146,7 +146,7 @@ pub struct System {
 }
 
 impl System {
-    /// A system for degree `degree` on `mesh` (N+1 points ascending from 0 to 1).
+    /// A system for degree `degree` (one of [`crate::DEGREES`]) on `mesh` (N+1 points ascending from 0 to 1).
     pub fn new(spec: SystemSpec, degree: usize, mesh: &[f64]) -> Self {
         let evaluator = spec.field.evaluator(&[Column::Parameter(spec.free)]);
         let pattern = spec.field.pattern();
@@ -155,7 +155,7 @@ impl System {
         let mut system = Self {
             spec,
             evaluator,
-            tables: Tables::new(degree),
+            tables: Tables::of(degree),
             mesh: Vec::new(),
             entries,
             cyclic: Cyclic::new(shape),
@@ -172,15 +172,16 @@ impl System {
             period: 0.0,
             nodes: Vec::new(),
         };
-        system.set_mesh(mesh);
+        system.set_mesh(degree, mesh);
         system
     }
 
-    /// Moves to another mesh, keeping the degree.
-    pub fn set_mesh(&mut self, mesh: &[f64]) {
+    /// Moves to another mesh and degree.
+    pub fn set_mesh(&mut self, degree: usize, mesh: &[f64]) {
         let n = self.n();
         let intervals = mesh.len() - 1;
-        let same_size = self.mesh.len() == mesh.len();
+        let same_size = self.mesh.len() == mesh.len() && self.tables.degree == degree;
+        self.tables = Tables::of(degree);
         self.mesh.clear();
         self.mesh.extend_from_slice(mesh);
         if same_size {
@@ -213,8 +214,8 @@ impl System {
         self.spec.metric = metric;
     }
     /// Basis tables.
-    pub fn tables(&self) -> &Tables {
-        &self.tables
+    pub fn tables(&self) -> &'static Tables {
+        self.tables
     }
     /// The mesh, N+1 points.
     pub fn mesh(&self) -> &[f64] {
@@ -265,7 +266,7 @@ impl System {
         self.period = at.period;
         self.nodes.clear();
         self.nodes.extend_from_slice(&at.nodes);
-        to_points(&self.tables, self.spec.metric.scales.len(), &at.nodes, &mut self.states);
+        to_points(self.tables, self.spec.metric.scales.len(), &at.nodes, &mut self.states);
         let batch = Batch { len: points, time: &[], states: &self.states, parameters: &self.spec.parameters };
         let out =
             Linearisation { rates: &mut self.rates, jacobian: &mut self.jacobian, columns: &mut self.free_column };
@@ -403,7 +404,7 @@ impl System {
     /// sec. 4.3) by one reverse sweep of the field.
     pub fn variation_gradient(&mut self, variation: Variation<'_>, out: &mut Row) {
         let (n, m, points) = (self.n(), self.tables.degree, self.points());
-        to_points(&self.tables, n, variation.nodes, &mut self.variation_points);
+        to_points(self.tables, n, variation.nodes, &mut self.variation_points);
         for point in 0..points {
             for a in 0..n {
                 self.psi_points[a * points + point] = variation.psi[point * n + a];
@@ -447,8 +448,8 @@ impl System {
     /// numbers, point by point.
     pub fn quadratic(&mut self, u: &[f64], v: &[f64], out: &mut [f64]) {
         let (n, len) = (self.n(), self.points());
-        to_points(&self.tables, n, u, &mut self.psi_points);
-        to_points(&self.tables, n, v, &mut self.variation_points);
+        to_points(self.tables, n, u, &mut self.psi_points);
+        to_points(self.tables, n, v, &mut self.variation_points);
         let at = Batch { len, time: &[], states: &self.states, parameters: &self.spec.parameters };
         let u = Direction { states: &self.psi_points, columns: &[] };
         let v = Direction { states: &self.variation_points, columns: &[] };
@@ -462,7 +463,7 @@ impl System {
     /// [`NotProvided`] by a field without third derivatives.
     pub fn cubic(&mut self, v: &[f64], out: &mut [f64]) -> Result<(), NotProvided> {
         let (n, len) = (self.n(), self.points());
-        to_points(&self.tables, n, v, &mut self.variation_points);
+        to_points(self.tables, n, v, &mut self.variation_points);
         let at = Batch { len, time: &[], states: &self.states, parameters: &self.spec.parameters };
         let v = Direction { states: &self.variation_points, columns: &[] };
         self.evaluator.third(at, [v, v, v], &mut self.gradient_states)?;
@@ -473,7 +474,7 @@ impl System {
     /// `A v` at all Gauss points, as [`System::quadratic`].
     pub fn linear(&mut self, v: &[f64], out: &mut [f64]) {
         let (n, len) = (self.n(), self.points());
-        to_points(&self.tables, n, v, &mut self.variation_points);
+        to_points(self.tables, n, v, &mut self.variation_points);
         out.fill(0.0);
         for (entry, &(a, b)) in self.entries.iter().enumerate() {
             for point in 0..len {
@@ -485,7 +486,7 @@ impl System {
     /// Values of node data at all Gauss points, as [`System::quadratic`].
     pub fn values(&mut self, v: &[f64], out: &mut [f64]) {
         let n = self.n();
-        to_points(&self.tables, n, v, &mut self.variation_points);
+        to_points(self.tables, n, v, &mut self.variation_points);
         by_point(n, &self.variation_points, out);
     }
 

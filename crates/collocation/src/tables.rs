@@ -1,6 +1,8 @@
 //! What the basis of one degree knows: Lagrange polynomials on the profile's nodes at the Gauss points, their
 //! derivatives, the weights of the highest derivative, and the constant of the local error.
 
+use std::sync::OnceLock;
+
 use armilla_record::{barycentric_weights, lagrange_at, node_quadrature, nodes};
 
 use crate::gauss::gauss;
@@ -30,7 +32,19 @@ pub struct Tables {
     pub error_constant: f64,
 }
 
+/// Degrees a cycle may be computed with. Below 3 nothing is gained on any profile; above 8 the blocks of an interval
+/// cost more than the intervals they save, and rounding of high derivatives spoils the estimates.
+pub const DEGREES: (usize, usize) = (3, 8);
+
 impl Tables {
+    /// The tables of a degree from 1 to one beyond [`DEGREES`], made once; the nearest of them for others.
+    pub fn of(degree: usize) -> &'static Self {
+        const MOST: usize = DEGREES.1 + 1;
+        static ALL: [OnceLock<Tables>; MOST] = [const { OnceLock::new() }; MOST];
+        let degree = degree.clamp(1, MOST);
+        ALL[degree - 1].get_or_init(|| Self::new(degree))
+    }
+
     /// Computes the tables of degree `degree` (1 or more).
     pub fn new(degree: usize) -> Self {
         let (points, weights) = gauss(degree);
@@ -67,7 +81,7 @@ impl Tables {
 
 /// Slopes of all Lagrange polynomials at a place where their values are `value_at_s`: rows of the barycentric
 /// differentiation matrix, interpolated (exact, since slopes are polynomials of lower degree).
-fn lagrange_slopes(nodes: &[f64], bary: &[f64], value_at_s: &[f64], out: &mut [f64]) {
+pub(crate) fn lagrange_slopes(nodes: &[f64], bary: &[f64], value_at_s: &[f64], out: &mut [f64]) {
     out.fill(0.0);
     for (i, &weight_of_row) in value_at_s.iter().enumerate() {
         let mut diagonal = 0.0;

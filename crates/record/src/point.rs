@@ -107,6 +107,8 @@ pub enum Reached {
     Accuracy,
     /// No: the rounding of 64-bit numbers stands in the way.
     RoundoffFloor,
+    /// No: finer meshes do not help, as with rates that have kinks or jumps.
+    Rough,
     /// No: the largest mesh allowed is too coarse.
     MeshLimit,
     /// No: the mesh fixed by the study is too coarse.
@@ -120,6 +122,7 @@ impl Reached {
             Self::Unstated => "unstated",
             Self::Accuracy => "accuracy",
             Self::RoundoffFloor => "roundoff-floor",
+            Self::Rough => "rough",
             Self::MeshLimit => "mesh-limit",
             Self::GivenMesh => "given-mesh",
         }

@@ -8,7 +8,7 @@ impl CycleProblem {
     /// where it is a shorter cycle told that often.
     pub fn unlike_copies(&self, point: &CyclePoint, copies: usize) -> f64 {
         let nodes = self.shift_nodes(point, copies);
-        self.metric.nodes_inner(self.system.tables(), &point.mesh, &nodes, &nodes).sqrt()
+        self.metric.nodes_inner(point.tables(), &point.mesh, &nodes, &nodes).sqrt()
     }
 
     /// Half the difference between each node value and the cycle one part in `copies` of the period later.

@@ -103,21 +103,21 @@ impl CycleProblem {
 
     /// The doubling function with borders made at a station.
     fn borders(&mut self, station: &CycleStation) -> Option<Borders> {
-        let mesh = station.point.mesh.clone();
-        self.system.set_mesh(&mesh);
+        let CyclePoint { degree, mesh, .. } = station.point.clone();
+        self.system.set_mesh(degree, &mesh);
         self.system.linearise(&station.point.unknowns).ok()?;
         let function = TestFunction::new(CriticalKind::Doubling, &self.system, &station.point.unknowns).ok()?;
         let gradient = Row::zero(station.point.unknowns.nodes.len());
-        Some(Borders { function, mesh, gradient })
+        Some(Borders { function, degree, mesh, gradient })
     }
 
     /// Value and slope at a station, which is carried to the mesh of the borders.
     fn end(&mut self, borders: &mut Borders, station: CycleStation) -> Option<End> {
-        let Borders { function, mesh, gradient } = borders;
-        let point = station.point.on_mesh(self.system.tables(), mesh);
-        let tangent = station.tangent.on_mesh(self.system.tables(), mesh).row;
-        let length = self.metric.inner(self.system.tables(), mesh, &tangent, &tangent).sqrt();
-        self.system.set_mesh(mesh);
+        let Borders { function, degree, mesh, gradient } = borders;
+        let point = station.point.on_mesh(*degree, mesh);
+        let tangent = station.tangent.on_mesh(*degree, mesh).row;
+        let length = self.metric.inner(point.tables(), mesh, &tangent, &tangent).sqrt();
+        self.system.set_mesh(*degree, mesh);
         self.system.linearise(&point.unknowns).ok()?;
         let value = function.fill(&mut self.system, &point.unknowns, gradient).ok()?;
         let nodes: f64 = gradient.nodes.iter().zip(&tangent.nodes).map(|(a, b)| a * b).sum();
@@ -129,6 +129,7 @@ impl CycleProblem {
 /// The doubling function with fixed borders.
 struct Borders {
     function: TestFunction,
+    degree: usize,
     mesh: Arc<[f64]>,
     gradient: Row,
 }

@@ -38,6 +38,7 @@
 //! assert!((point.multipliers[0].log_modulus + std::f64::consts::PI).abs() < 1e-9);
 //! ```
 
+mod agreement;
 mod copies;
 mod dip;
 mod locate;
@@ -45,12 +46,13 @@ mod measure;
 mod normal_form;
 mod point;
 mod problem;
+mod resolution;
 mod scale;
 mod spectrum;
 mod switch;
 mod test_function;
 
-pub use armilla_collocation::Fault;
+pub use armilla_collocation::{Fault, MapsFault, TooStiff};
 pub use dip::Dip;
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;

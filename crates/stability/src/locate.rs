@@ -6,7 +6,7 @@
 
 use std::sync::Arc;
 
-use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, Row, Scalar, interpolate_nodes};
+use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, Row, Scalar};
 use armilla_follow::{Closing, Failure, Orientation, Problem, Station};
 
 use crate::point::{CyclePoint, CycleTangent};
@@ -96,7 +96,7 @@ impl CycleProblem {
     fn secant_point(&self, index: usize, low: &CycleStation, high: &CycleStation) -> CyclePoint {
         let (a, b) = (low.watch.values[index].value, high.watch.values[index].value);
         let share = if a == b { 0.5 } else { (a / (a - b)).clamp(0.05, 0.95) };
-        let first = low.point.on_mesh(self.system.tables(), &high.point.mesh);
+        let first = low.point.on_mesh(high.point.degree, &high.point.mesh);
         let mix = |x: f64, y: f64| x + share * (y - x);
         let nodes = first.unknowns.nodes.iter().zip(&high.point.unknowns.nodes).map(|(x, y)| mix(*x, *y)).collect();
         let unknowns = Iterate {
@@ -104,7 +104,7 @@ impl CycleProblem {
             period: mix(first.unknowns.period, high.point.unknowns.period),
             parameter: mix(first.unknowns.parameter, high.point.unknowns.parameter),
         };
-        CyclePoint { mesh: high.point.mesh.clone(), unknowns }
+        CyclePoint { unknowns, ..high.point.clone() }
     }
 
     /// Newton on the augmented system; accepted only between the ends of the bracket.
@@ -130,18 +130,17 @@ impl CycleProblem {
         /// Distances on one mesh are known to this.
         const ROUNDOFF: f64 = 1e-11;
         let ahead = |station: &CycleStation, sign: f64| {
-            let tables = self.system.tables();
-            let from = station.point.on_mesh(tables, &point.mesh);
-            let tangent = station.tangent.on_mesh(tables, &point.mesh);
+            let from = station.point.on_mesh(point.degree, &point.mesh);
+            let tangent = station.tangent.on_mesh(point.degree, &point.mesh);
             let mut step = Row::zero(point.unknowns.nodes.len());
             for ((step, to), from) in step.nodes.iter_mut().zip(&point.unknowns.nodes).zip(&from.unknowns.nodes) {
                 *step = to - from;
             }
             step.period = point.unknowns.period - from.unknowns.period;
             step.parameter = point.unknowns.parameter - from.unknowns.parameter;
-            let same = station.point.mesh == point.mesh;
+            let same = station.point.degree == point.degree && station.point.mesh == point.mesh;
             let slack = if same { ROUNDOFF } else { self.settings.mesh.accuracy.max(ROUNDOFF) };
-            sign * self.metric.inner(tables, &point.mesh, &tangent.row, &step) >= -slack
+            sign * self.metric.inner(point.tables(), &point.mesh, &tangent.row, &step) >= -slack
         };
         ahead(low, 1.0) && ahead(high, -1.0)
     }
@@ -152,7 +151,7 @@ impl CycleProblem {
         kind: CriticalKind,
         point: &mut CyclePoint,
     ) -> Result<(Report, NullVectors), NewtonFailure> {
-        self.system.set_mesh(&point.mesh);
+        self.system.set_mesh(point.degree, &point.mesh);
         self.system.linearise(&point.unknowns)?;
         let mut function = TestFunction::new(kind, &self.system, &point.unknowns)?;
         let reference = point.unknowns.nodes.clone();
@@ -167,13 +166,24 @@ impl CycleProblem {
         coarse: &CyclePoint,
     ) -> Result<(CyclePoint, f64, f64, NullVectors), NewtonFailure> {
         let mesh: Arc<[f64]> = halved(&coarse.mesh).into();
-        let mut fine = coarse.on_mesh(self.system.tables(), &mesh);
+        let mut fine = coarse.on_mesh(coarse.degree, &mesh);
         let (_, vectors) = self.augmented(kind, &mut fine)?;
-        let value_error = (coarse.unknowns.parameter - fine.unknowns.parameter).abs()
+        let left = self.left_over(coarse, &fine);
+        let value_error = left * (coarse.unknowns.parameter - fine.unknowns.parameter).abs()
             + self.rounding(Scalar::Parameter, fine.unknowns.parameter);
-        let period_error =
-            (coarse.unknowns.period - fine.unknowns.period).abs() + self.rounding(Scalar::Period, fine.unknowns.period);
+        let period_error = left * (coarse.unknowns.period - fine.unknowns.period).abs()
+            + self.rounding(Scalar::Period, fine.unknowns.period);
         Ok((fine, value_error, period_error, vectors))
+    }
+
+    /// Share of the difference between a number on a mesh and on the halved one that may be left on the latter.
+    ///
+    /// Numbers converge at least as fast as the profile, mostly with twice its order, and how fast the profile converges
+    /// is measured on these two meshes; [`CANCELLING`] is the margin. Where the profile gains nothing, all of it.
+    fn left_over(&mut self, coarse: &CyclePoint, fine: &CyclePoint) -> f64 {
+        let gain = self.profile_error(fine) / self.profile_error(coarse);
+        // Written so that NaN leaves all.
+        if gain * CANCELLING < 1.0 { gain * CANCELLING } else { 1.0 }
     }
 
     /// Roundoff of a scalar of the last corrected point: that of the rows through the conditioning, and of the number.
@@ -211,17 +221,12 @@ impl CycleProblem {
     /// [`Failure`] where that does not converge.
     pub fn refine(&mut self, point: &CyclePoint) -> Result<(CyclePoint, f64), Failure<armilla_collocation::Fault>> {
         let mesh: Arc<[f64]> = halved(&point.mesh).into();
-        let nodes = interpolate_nodes(
-            (self.system.tables(), &point.mesh),
-            &point.unknowns.nodes,
-            (self.system.tables(), &mesh),
-            self.system.n(),
-        );
-        let mut fine = CyclePoint { mesh, unknowns: Iterate { nodes, ..point.unknowns.clone() } };
+        let mut fine = point.on_mesh(point.degree, &mesh);
         let value = point.unknowns.parameter;
         self.correct_at(&mut fine, value).map_err(|_| Failure::NotConverged)?;
-        let error =
-            (fine.unknowns.period - point.unknowns.period).abs() + self.rounding(Scalar::Period, fine.unknowns.period);
+        let left = self.left_over(point, &fine);
+        let error = left * (fine.unknowns.period - point.unknowns.period).abs()
+            + self.rounding(Scalar::Period, fine.unknowns.period);
         Ok((fine, error))
     }
 }
@@ -230,11 +235,14 @@ impl CycleProblem {
 /// the difference and the truth if rows round independently. Twice that, since they need not: on X3 the doubling was
 /// found a little beyond four from its exact place.
 const ROUNDOFF_MARGIN: f64 = 8.0;
+/// Margin of the share that is left of a difference: parts of the error on the coarse mesh may cancel each other, and the
+/// difference is smaller by such a factor then.
+const CANCELLING: f64 = 4.0;
 /// Units in the last place, of the value or of the range of its parameter, for rounding that acts on every row alike and
 /// that the sum of independent errors leaves out: the basis tables are correct to a few units each.
 const COHERENT_UNITS: f64 = 16.0;
 
-fn halved(mesh: &[f64]) -> Vec<f64> {
+pub(crate) fn halved(mesh: &[f64]) -> Vec<f64> {
     let mut out = Vec::with_capacity(2 * mesh.len());
     for pair in mesh.windows(2) {
         out.extend([pair[0], 0.5 * (pair[0] + pair[1])]);

@@ -106,7 +106,7 @@ impl CycleProblem {
     }
 
     fn linearise_at(&mut self, located: &Located) -> Option<f64> {
-        self.system.set_mesh(&located.point.mesh);
+        self.system.set_mesh(located.point.degree, &located.point.mesh);
         self.system.linearise(&located.point.unknowns).ok()?;
         Some(located.point.unknowns.period)
     }

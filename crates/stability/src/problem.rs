@@ -3,16 +3,18 @@
 use std::sync::Arc;
 
 use armilla_collocation::{
-    ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric, NewtonSettings, Report, Row,
-    Scalar, System, SystemSpec, Task, Workspace, correct_with, estimate_error, remesh, roundoff,
+    Collocated, DEGREES, Defects, ErrorEstimate, Failure as NewtonFailure, Fault, LinearClosing, MeshSettings, Metric,
+    NewtonSettings, Report, Row, Scalar, System, SystemSpec, Tables, Task, Workspace, correct_with, estimate_error,
+    roundoff, scales_of,
 };
 use armilla_follow::{Closing, Corrected, Failure, Orientation, Problem, Watch, Watched};
-use armilla_linalg::{Bordered, Right};
+use armilla_linalg::{Bordered, Right, Shape};
 use armilla_model::VectorField;
-use armilla_record::{Point, Profile};
+use armilla_record::{MeshReason, Point, Profile, Reached};
 
 use crate::measure::Measures;
 use crate::point::{CyclePoint, CycleTangent};
+use crate::resolution::Resolution;
 use crate::scale::{STILL, STILL_AT_FIRST, first_metric, natural_sizes};
 use crate::spectrum::{Spectrum, SpectrumSolver};
 
@@ -43,30 +45,39 @@ pub struct CycleSpec {
 /// Numerical settings of cycles.
 #[derive(Clone, Copy, Debug)]
 pub struct CycleSettings {
-    /// Degree of the pieces.
+    /// Degree of a first guess; along a branch it is chosen with the mesh.
     pub degree: usize,
-    /// How the mesh is chosen.
+    /// How degree and mesh are chosen.
     pub mesh: MeshSettings,
     /// Limits of Newton's method.
     pub newton: NewtonSettings,
 }
 
-/// Degree used at every accuracy. Six carries 1e-6 and 1e-12 alike within a factor two of the best degree's cost,
-/// and its superconvergence (order 12) keeps thresholds at roundoff.
-pub const DEGREE: usize = 6;
-
 impl CycleSettings {
     /// Defaults for an accuracy.
     pub fn new(accuracy: f64) -> Self {
-        Self { degree: DEGREE, mesh: MeshSettings::new(accuracy), newton: NewtonSettings::default() }
+        let mesh = MeshSettings::new(accuracy);
+        Self { degree: first_degree(accuracy), mesh, newton: NewtonSettings::default() }
     }
+
+    /// The same with the degree fixed.
+    #[must_use]
+    pub fn with_degree(mut self, degree: usize) -> Self {
+        self.degree = degree.clamp(DEGREES.0, DEGREES.1);
+        self.mesh.degrees = (self.degree, self.degree);
+        self
+    }
+}
+
+/// Degree with the least work on a smooth cycle: measured on three models, six decimal digits ask for 6, nine and more
+/// for 8.
+fn first_degree(accuracy: f64) -> usize {
+    let digits = -accuracy.log10();
+    ((2.0 + 0.7 * digits).round().max(0.0) as usize).clamp(DEGREES.0, DEGREES.1)
 }
 
 /// Share of a state's range at the start of the branch below which its accuracy is no longer relative to its own range.
 const LEAST_RANGE: f64 = 1e-3;
-/// A new mesh must bring the estimated error below this share of the old one, or the floor of roundoff is reached.
-const WORTH: f64 = 0.8;
-
 /// Length of branch over which a change of the parameter must rise above its roundoff for the branch to count as moving
 /// in it: a tenth of the longest stride.
 const TURNING_LENGTH: f64 = 0.005;
@@ -74,9 +85,6 @@ const TURNING_LENGTH: f64 = 0.005;
 const SHRINK_TO: f64 = 0.3;
 /// A scale off by more than this factor is renewed.
 const OUT_OF_SCALE: f64 = 1.5;
-/// Meshes tried at one point: the estimate on the second is already that of a suitable one.
-const RENEWALS: usize = 3;
-
 /// Why a first cycle could not be made.
 #[derive(Clone, Debug, PartialEq)]
 pub enum StartFault {
@@ -114,12 +122,18 @@ pub struct CycleProblem {
     /// Largest range of each state seen on the branch.
     largest: Vec<f64>,
     pub(crate) newton: Workspace,
-    spectrum: SpectrumSolver,
-    /// Spectrum of the point watched last, with its parameter and period: `describe` asks for the same one.
-    watched: Option<(f64, f64, Spectrum)>,
+    defects: Defects,
+    /// Solvers of multipliers, one for each degree met.
+    spectra: Vec<Option<SpectrumSolver>>,
+    /// Spectrum of the point it was last asked of, with that point: `watch` and `describe` ask again.
+    watched: Option<(CyclePoint, Spectrum)>,
     bordered: Option<Bordered>,
+    /// Shape of the bordered system above.
+    sized_for: Option<Shape>,
     /// Roundoff of the parameter at the last tangent.
     parameter_roundoff: f64,
+    /// State of the choice of meshes.
+    pub(crate) resolution: Resolution,
     work: Row,
 }
 
@@ -135,23 +149,14 @@ impl CycleProblem {
         profile: &Profile,
         parameter: f64,
     ) -> Result<(Self, CyclePoint), StartFault> {
+        let guess = within_degrees(profile, settings.mesh.degrees);
         // The given profile carries the errors of its origin, the corrected one only roundoff: sizes are read twice.
-        let mut problem = Self::with_metric(spec, settings, Sizes::Natural(STILL_AT_FIRST), profile, parameter)?;
-        let mut point = CyclePoint::from_profile(profile, parameter);
+        let mut problem = Self::with_metric(spec, settings, Sizes::Natural(STILL_AT_FIRST), &guess, parameter)?;
+        let mut point = CyclePoint::from_profile(&guess, parameter);
         problem.correct_at(&mut point, parameter).map_err(StartFault::Newton)?;
         let corrected = problem.profile(&point);
         problem = Self::with_metric(problem.spec, settings, Sizes::Natural(STILL), &corrected, parameter)?;
-        // Each round the estimate comes from a better mesh; the choice settles in two or three.
-        const ROUNDS: usize = 8;
-        for _ in 0..ROUNDS {
-            let Some(mesh) = problem.better_mesh(&point) else { break };
-            let mut next = point.on_mesh(problem.system.tables(), &mesh);
-            problem.correct_at(&mut next, parameter).map_err(StartFault::Newton)?;
-            if !problem.is_worth(&point, &next) {
-                break;
-            }
-            point = next;
-        }
+        let point = problem.first_mesh(point);
         Ok((problem, point))
     }
 
@@ -178,8 +183,8 @@ impl CycleProblem {
             free: spec.free,
             metric: metric.clone(),
         };
-        let system = System::new(system_spec, settings.degree, &profile.mesh);
-        let spectrum = SpectrumSolver::new(spec.field.as_ref(), settings.degree);
+        let system = System::new(system_spec, profile.degree, &profile.mesh);
+        let defects = Defects::new(spec.field.as_ref());
         Ok(Self {
             spec,
             settings,
@@ -187,10 +192,13 @@ impl CycleProblem {
             largest: metric.scales.clone(),
             metric,
             newton: Workspace::default(),
-            spectrum,
+            defects,
+            spectra: (0..=DEGREES.1).map(|_| None).collect(),
             watched: None,
             bordered: None,
+            sized_for: None,
             parameter_roundoff: 0.0,
+            resolution: Resolution::default(),
             work: Row::zero(0),
         })
     }
@@ -207,7 +215,7 @@ impl CycleProblem {
 
     /// A cycle as a profile.
     pub fn profile(&self, point: &CyclePoint) -> Profile {
-        point.profile(self.settings.degree)
+        point.profile()
     }
 
     /// Values of all parameters at a point.
@@ -223,18 +231,53 @@ impl CycleProblem {
     /// [`crate::SpectrumFault`].
     pub fn spectrum(&mut self, point: &CyclePoint) -> Result<Spectrum, crate::SpectrumFault> {
         let parameters = self.parameters_at(point);
-        let profile = point.profile(self.settings.degree);
-        self.spectrum.spectrum(&profile, &parameters, &self.metric.scales, self.settings.mesh.accuracy)
+        let profile = point.profile();
+        let solver = &mut self.spectra[point.degree];
+        let solver = solver.get_or_insert_with(|| SpectrumSolver::new(self.spec.field.as_ref(), point.degree));
+        solver.spectrum(&profile, &parameters, &self.metric.scales, self.settings.mesh.accuracy)
     }
 
-    /// Estimated error of a cycle's profile, relative to the range of each state.
-    pub fn profile_error(&self, point: &CyclePoint) -> f64 {
-        self.estimate(point).error
+    /// Multipliers of a cycle, computed once where they are asked for again.
+    pub(crate) fn known_spectrum(&mut self, point: &CyclePoint) -> Result<Spectrum, crate::SpectrumFault> {
+        if let Some((known, spectrum)) = &self.watched
+            && known.unknowns == point.unknowns
+            && known.mesh == point.mesh
+        {
+            return Ok(spectrum.clone());
+        }
+        let spectrum = self.spectrum(point)?;
+        self.watched = Some((point.clone(), spectrum.clone()));
+        Ok(spectrum)
     }
 
-    fn estimate(&self, point: &CyclePoint) -> ErrorEstimate {
-        let least: Vec<f64> = self.metric.scales.iter().map(|scale| LEAST_RANGE * scale).collect();
-        estimate_error(self.system.tables(), &point.mesh, &point.unknowns.nodes, &least)
+    /// Estimated error of a cycle's profile, relative to the range of each state: what a finer mesh would remove, and
+    /// rounding.
+    pub fn profile_error(&mut self, point: &CyclePoint) -> f64 {
+        self.estimate(point).error + self.rounding_of_nodes(point)
+    }
+
+    /// What rounding leaves of a profile: a state far from zero that hardly moves has few digits.
+    pub(crate) fn rounding_of_nodes(&self, point: &CyclePoint) -> f64 {
+        /// Units in the last place of the largest state, conditioning included.
+        const UNITS: f64 = 8.0;
+        let n = self.metric.scales.len();
+        let scales = scales_of(&point.unknowns.nodes, &self.least_ranges());
+        let values = point.unknowns.nodes.iter().enumerate();
+        UNITS * f64::EPSILON * values.map(|(k, value)| value.abs() / scales[k % n]).fold(0.0, f64::max)
+    }
+
+    fn least_ranges(&self) -> Vec<f64> {
+        self.metric.scales.iter().map(|scale| LEAST_RANGE * scale).collect()
+    }
+
+    /// Local errors of a cycle, measured by its defect.
+    pub(crate) fn estimate(&mut self, point: &CyclePoint) -> ErrorEstimate {
+        let least = self.least_ranges();
+        let (tables, mesh, nodes) = (point.tables(), &point.mesh, &point.unknowns.nodes);
+        let parameters = self.parameters_at(point);
+        let cycle = Collocated { mesh, nodes, period: point.unknowns.period, parameters: &parameters };
+        let local = self.defects.local_errors(tables, cycle, &scales_of(nodes, &least));
+        estimate_error(tables, mesh, nodes, &least).measured(tables, mesh, &local)
     }
 
     /// A point as a row of the branch table.
@@ -242,16 +285,17 @@ impl CycleProblem {
     /// # Errors
     /// [`crate::SpectrumFault`] where the multipliers fail.
     pub fn describe(&mut self, point: &CyclePoint, turns: usize, distance: f64) -> Result<Point, crate::SpectrumFault> {
-        let spectrum = match &self.watched {
-            Some((value, period, spectrum))
-                if *value == point.unknowns.parameter && *period == point.unknowns.period =>
-            {
-                spectrum.clone()
-            }
-            _ => self.spectrum(point)?,
-        };
+        let spectrum = self.known_spectrum(point)?;
         let profile = self.profile(point);
         let measures = Measures::of(&profile);
+        let (discretisation, rounding) = (self.estimate(point).error, self.rounding_of_nodes(point));
+        let error = discretisation + rounding;
+        let accuracy = self.settings.mesh.accuracy;
+        let reached = match () {
+            () if error <= accuracy => Reached::Accuracy,
+            () if discretisation <= accuracy => Reached::RoundoffFloor,
+            () => point.reached,
+        };
         Ok(Point {
             value: point.unknowns.parameter,
             period: point.unknowns.period,
@@ -260,15 +304,17 @@ impl CycleProblem {
             unstable_count: spectrum.unstable_count(),
             trivial_defect: spectrum.trivial_defect,
             liouville_defect: spectrum.liouville_defect,
-            profile_error: self.profile_error(point),
+            profile_error: error,
             maxima: measures.maxima,
             minima: measures.minima,
             means: measures.means,
             spreads: measures.spreads,
             multipliers: spectrum.multipliers,
+            unresolved: spectrum.unresolved,
             intervals: profile.intervals(),
             degree: profile.degree,
-            ..Point::default()
+            choice: point.choice,
+            reached,
         })
     }
 
@@ -291,23 +337,9 @@ impl CycleProblem {
         reference: &[f64],
         closing: &mut dyn armilla_collocation::Closing,
     ) -> Result<Report, NewtonFailure> {
-        self.system.set_mesh(&point.mesh);
+        self.system.set_mesh(point.degree, &point.mesh);
         let task = Task { reference, closing, settings: self.settings.newton };
         correct_with(&mut self.newton, &mut self.system, &mut point.unknowns, task)
-    }
-
-    /// A mesh that suits the point, or none where the present one does: its error is within the accuracy and it has
-    /// not many more intervals than needed.
-    pub(crate) fn better_mesh(&self, point: &CyclePoint) -> Option<Arc<[f64]>> {
-        /// Share of intervals that must become superfluous before the mesh shrinks: less would swing to and fro.
-        const SHRINK_BELOW: f64 = 0.6;
-        let estimate = self.estimate(point);
-        let choice = remesh(self.system.tables(), &point.mesh, &estimate, self.settings.mesh);
-        let (now, wanted) = (point.mesh.len() - 1, choice.mesh.len() - 1);
-        let too_coarse = estimate.error > self.settings.mesh.accuracy && !(choice.limited && now == wanted);
-        let too_fine = (wanted as f64) < SHRINK_BELOW * now as f64;
-        let settled = self.settings.mesh.fixed == Some(now) && estimate.imbalance < 2.0;
-        ((too_coarse || too_fine) && !settled).then(|| choice.mesh.into())
     }
 
     /// Lets the metric follow the cycle where its size or period has changed much, so that a stride stays a stride;
@@ -350,42 +382,18 @@ impl CycleProblem {
 
     /// The same direction with length 1 in the present metric.
     pub(crate) fn normalised(&self, mut tangent: CycleTangent) -> CycleTangent {
-        let length = self.metric.inner(self.system.tables(), &tangent.mesh, &tangent.row, &tangent.row).sqrt();
+        let length = self.metric.inner(Tables::of(tangent.degree), &tangent.mesh, &tangent.row, &tangent.row).sqrt();
         tangent.row.nodes.iter_mut().for_each(|value| *value /= length);
         tangent.row.period /= length;
         tangent.row.parameter /= length;
         tangent
     }
 
-    /// Corrects a point carried to a new mesh: at its parameter value, which an edge or target needs exactly, or, where
-    /// the branch turns back in the parameter, normal to its tangent.
-    fn settle_on_mesh(&mut self, point: &mut CyclePoint, tangent: &CycleTangent) -> Result<Report, NewtonFailure> {
-        /// Share of the parameter in the tangent below which the branch turns back: nearer than this to a fold the
-        /// change of mesh may move the fold past the value.
-        const TURNING: f64 = 1e-6;
-        if tangent.row.parameter.abs() > TURNING * self.metric.parameter_scale {
-            let mut held = point.clone();
-            let value = point.unknowns.parameter;
-            if let Ok(report) = self.correct_at(&mut held, value) {
-                *point = held;
-                return Ok(report);
-            }
-        }
-        let row = self.arclength_row(tangent, &point.mesh.clone());
-        let target = row.apply(&point.unknowns);
-        let reference = point.unknowns.nodes.clone();
-        self.newton(point, &reference, &mut LinearClosing { row, target })
-    }
-
-    /// Whether a change of mesh helped: fewer intervals, or a smaller error.
-    fn is_worth(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
-        after.mesh.len() < before.mesh.len() || self.profile_error(after) < WORTH * self.profile_error(before)
-    }
-
-    fn arclength_row(&mut self, direction: &CycleTangent, mesh: &Arc<[f64]>) -> Row {
-        let direction = direction.on_mesh(self.system.tables(), mesh);
+    /// The functional `x -> <direction, x>` on the mesh of `point`.
+    pub(crate) fn arclength_row(&mut self, direction: &CycleTangent, point: &CyclePoint) -> Row {
+        let direction = direction.on_mesh(point.degree, &point.mesh);
         let mut row = Row::zero(direction.row.nodes.len());
-        self.metric.functional(self.system.tables(), mesh, &direction.row, &mut row);
+        self.metric.functional(point.tables(), &point.mesh, &direction.row, &mut row);
         row
     }
 
@@ -404,7 +412,7 @@ impl Problem for CycleProblem {
 
     fn advance(&self, point: &CyclePoint, tangent: &CycleTangent, stride: f64) -> CyclePoint {
         let mut ahead = point.clone();
-        let tangent = tangent.on_mesh(self.system.tables(), &point.mesh);
+        let tangent = tangent.on_mesh(point.degree, &point.mesh);
         ahead.unknowns.add(stride, &tangent.row);
         ahead
     }
@@ -414,13 +422,13 @@ impl Problem for CycleProblem {
         prediction: &CyclePoint,
         closing: Closing<'_, CyclePoint, CycleTangent>,
     ) -> Result<Corrected<CyclePoint>, Failure<Fault>> {
-        let mut point = prediction.clone();
+        let mut point = CyclePoint { choice: MeshReason::Kept, ..prediction.clone() };
         let report = match closing {
             Closing::Parameter(value) => self.correct_at(&mut point, value),
             Closing::Arclength { from, tangent: direction, stride: amount }
             | Closing::Component { from, direction, amount } => {
-                let from = from.on_mesh(self.system.tables(), &prediction.mesh);
-                let row = self.arclength_row(direction, &prediction.mesh);
+                let from = from.on_mesh(prediction.degree, &prediction.mesh);
+                let row = self.arclength_row(direction, prediction);
                 let target = row.apply(&from.unknowns) + amount;
                 let mut closing = LinearClosing { row, target };
                 self.newton(&mut point, &from.unknowns.nodes, &mut closing)
@@ -443,14 +451,14 @@ impl Problem for CycleProblem {
     ) -> Result<CycleTangent, Failure<Fault>> {
         let len = point.unknowns.nodes.len();
         let row = match orientation {
-            Orientation::Along(old) => self.arclength_row(old, &point.mesh),
+            Orientation::Along(old) => self.arclength_row(old, point),
             Orientation::Parameter(sign) => Row { parameter: sign, ..Row::zero(len) },
         };
-        self.system.set_mesh(&point.mesh);
+        self.system.set_mesh(point.degree, &point.mesh);
         self.system.linearise(&point.unknowns).map_err(|fault| Self::follow_failure(fault.into()))?;
         let shape = self.system.shape();
-        let fits = self.work.nodes.len() == len && self.bordered.is_some();
-        if !fits {
+        if self.sized_for != Some(shape) {
+            self.sized_for = Some(shape);
             self.bordered = Some(Bordered::new(shape, 2));
             self.work = Row::zero(len);
         }
@@ -466,23 +474,23 @@ impl Problem for CycleProblem {
         bordered.solve(self.system.cyclic(), right, &mut self.work.nodes, &mut scalars);
         let tangent = Row { nodes: self.work.nodes.clone(), period: scalars[0], parameter: scalars[1] };
         self.parameter_roundoff = roundoff(bordered, &self.system, Scalar::Parameter, 0.0);
-        let tangent = self.normalised(CycleTangent { mesh: point.mesh.clone(), row: tangent });
+        let tangent = self.normalised(CycleTangent { degree: point.degree, mesh: point.mesh.clone(), row: tangent });
         if tangent.row.nodes.iter().all(|value| value.is_finite()) { Ok(tangent) } else { Err(Failure::NotConverged) }
     }
 
     fn inner(&self, a: &CycleTangent, b: &CycleTangent) -> f64 {
-        let b = b.on_mesh(self.system.tables(), &a.mesh);
-        self.metric.inner(self.system.tables(), &a.mesh, &a.row, &b.row)
+        let b = b.on_mesh(a.degree, &a.mesh);
+        self.metric.inner(Tables::of(a.degree), &a.mesh, &a.row, &b.row)
     }
 
     fn distance(&self, a: &CyclePoint, b: &CyclePoint) -> f64 {
-        let b = b.on_mesh(self.system.tables(), &a.mesh);
+        let b = b.on_mesh(a.degree, &a.mesh);
         let difference = Row {
             nodes: a.unknowns.nodes.iter().zip(&b.unknowns.nodes).map(|(a, b)| a - b).collect(),
             period: a.unknowns.period - b.unknowns.period,
             parameter: a.unknowns.parameter - b.unknowns.parameter,
         };
-        self.metric.inner(self.system.tables(), &a.mesh, &difference, &difference).sqrt()
+        self.metric.inner(a.tables(), &a.mesh, &difference, &difference).sqrt()
     }
 
     fn parameter(&self, point: &CyclePoint) -> f64 {
@@ -490,7 +498,7 @@ impl Problem for CycleProblem {
     }
 
     fn watch(&mut self, point: &CyclePoint, tangent: &CycleTangent) -> Result<Watch, Failure<Fault>> {
-        let spectrum = self.spectrum(point).map_err(|_| Failure::NotConverged)?;
+        let spectrum = self.known_spectrum(point).map_err(|_| Failure::NotConverged)?;
         let value = |value: f64| Watched { value, slope: None };
         let turning = tangent.row.parameter / self.metric.parameter_scale;
         let noise = self.turning_noise();
@@ -504,27 +512,30 @@ impl Problem for CycleProblem {
             ],
             unstable_count: spectrum.unstable_count(),
         };
-        self.watched = Some((point.unknowns.parameter, point.unknowns.period, spectrum));
         Ok(watch)
     }
 
     fn renew(&mut self, point: &CyclePoint, tangents: &[&CycleTangent]) -> Option<(CyclePoint, Vec<CycleTangent>)> {
-        let mut best = self.adapt_metric(point).then(|| {
+        let adapted = self.adapt_metric(point).then(|| {
             let tangents = tangents.iter().map(|tangent| self.normalised((*tangent).clone())).collect();
             (point.clone(), tangents)
         });
-        for _ in 0..RENEWALS {
-            let now = best.as_ref().map_or(point, |(point, _)| point);
-            let Some(mesh) = self.better_mesh(now) else { break };
-            let mut renewed = now.on_mesh(self.system.tables(), &mesh);
-            let carry = |tangent: &&CycleTangent| self.normalised(tangent.on_mesh(self.system.tables(), &mesh));
-            let carried: Vec<CycleTangent> = tangents.iter().map(carry).collect();
-            // Where the new mesh does not converge the old point stands, with its larger error shown.
-            if self.settle_on_mesh(&mut renewed, carried.first()?).is_err() || !self.is_worth(now, &renewed) {
-                break;
-            }
-            best = Some((renewed, carried));
-        }
-        best
+        self.renew_mesh(point, tangents, adapted)
     }
+}
+
+/// The profile itself where its degree is allowed, or the same cycle with the nearest allowed one.
+fn within_degrees(profile: &Profile, (low, high): (usize, usize)) -> Profile {
+    let degree = profile.degree.clamp(low, high);
+    if degree == profile.degree {
+        return profile.clone();
+    }
+    let mut guess = Profile { degree, values: Vec::new(), ..profile.clone() };
+    let mut evaluator = profile.evaluator();
+    let mut state = vec![0.0; profile.n_states];
+    for time in guess.node_times() {
+        evaluator.at(time, &mut state);
+        guess.values.extend(&state);
+    }
+    guess
 }

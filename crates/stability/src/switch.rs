@@ -88,29 +88,29 @@ impl CycleProblem {
     /// cycle that is a shorter one told twice.
     pub fn split(&self, point: &CyclePoint) -> f64 {
         let nodes = self.split_nodes(point);
-        self.metric.nodes_inner(self.system.tables(), &point.mesh, &nodes, &nodes).sqrt()
+        self.metric.nodes_inner(point.tables(), &point.mesh, &nodes, &nodes).sqrt()
     }
 
     /// Whether a doubled branch went through its birth between two neighbouring points: the part that tells one half
     /// of the period from the other has changed its sign.
     pub fn passed_birth(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
-        let before = before.on_mesh(self.system.tables(), &after.mesh);
+        let before = before.on_mesh(after.degree, &after.mesh);
         let (a, b) = (self.split_nodes(&before), self.split_nodes(after));
-        self.metric.nodes_inner(self.system.tables(), &after.mesh, &a, &b) < 0.0
+        self.metric.nodes_inner(after.tables(), &after.mesh, &a, &b) < 0.0
     }
 
     /// Whether a branch went through an equilibrium between two neighbouring points: the motion about its mean has
     /// changed its sign.
     pub fn passed_equilibrium(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
-        let before = before.on_mesh(self.system.tables(), &after.mesh);
+        let before = before.on_mesh(after.degree, &after.mesh);
         let (a, b) = (self.motion_nodes(&before), self.motion_nodes(after));
-        self.metric.nodes_inner(self.system.tables(), &after.mesh, &a, &b) < 0.0
+        self.metric.nodes_inner(after.tables(), &after.mesh, &a, &b) < 0.0
     }
 
     /// Size of the motion about the mean, in the metric.
     pub fn motion(&self, point: &CyclePoint) -> f64 {
         let nodes = self.motion_nodes(point);
-        self.metric.nodes_inner(self.system.tables(), &point.mesh, &nodes, &nodes).sqrt()
+        self.metric.nodes_inner(point.tables(), &point.mesh, &nodes, &nodes).sqrt()
     }
 
     fn motion_nodes(&self, point: &CyclePoint) -> Vec<f64> {
@@ -135,7 +135,7 @@ struct Forecast {
 impl Forecast {
     fn new(problem: &CycleProblem, located: &Located, form: &DoublingForm) -> Option<Self> {
         let n = problem.system.n();
-        let tables = problem.system.tables();
+        let tables = located.point.tables();
         let (v, mesh) = (&located.vectors.nodes, &located.point.mesh);
         let period = located.point.unknowns.period;
         // Lengths of v in the metric, which is the same over one turn and two, and in the norm of the normal form.
@@ -159,9 +159,9 @@ fn direction(problem: &CycleProblem, birth: &CyclePoint, located: &Located) -> C
     let mut nodes = v[..v.len() - n].to_vec();
     nodes.extend(v.iter().map(|value| -value));
     let mut row = Row { nodes, period: 0.0, parameter: 0.0 };
-    let length = problem.metric.inner(problem.system.tables(), &birth.mesh, &row, &row).sqrt();
+    let length = problem.metric.inner(birth.tables(), &birth.mesh, &row, &row).sqrt();
     row.nodes.iter_mut().for_each(|value| *value /= length);
-    CycleTangent { mesh: birth.mesh.clone(), row }
+    CycleTangent { degree: birth.degree, mesh: birth.mesh.clone(), row }
 }
 
 /// The start of the branch on a mesh and in a metric of its own; amplitudes are measured in the new metric then.

@@ -2,9 +2,10 @@
 
 use armilla_follow::{FollowEnd, Follower};
 use armilla_record::{End, EndReason, EventKind};
-use armilla_stability::{CycleProblem, Fault};
+use armilla_stability::{CyclePoint, CycleProblem, Fault};
 
 use crate::approach::Approach;
+use crate::rest::{Motion, Rest, extrapolate_to_rest};
 use crate::step_events::{Found, SUPERCONVERGENCE, unresolved};
 use crate::study::Study;
 use crate::walk::{CycleStation, WalkPlan};
@@ -20,8 +21,8 @@ pub(crate) enum Passage {
     None,
     /// An equilibrium, in a stride so long that nothing tells where: to be tried again shorter.
     TooLong,
-    /// An equilibrium, with the value and error of its parameter, or the branch's own birth.
-    End(End, Option<(f64, f64)>),
+    /// An equilibrium, with what was extrapolated, or the branch's own birth.
+    End(End, Option<Rest>),
 }
 
 /// Whether the last step went through an equilibrium or through the branch's own birth; the walk is over then, and the
@@ -29,7 +30,7 @@ pub(crate) enum Passage {
 pub(crate) fn passed_through(
     follower: &mut Follower<'_, CycleProblem>,
     plan: &WalkPlan<'_>,
-    motions: &[(f64, f64)],
+    motions: &[Motion],
 ) -> Passage {
     /// Share of the largest motion of the walk that the last cycle before the passage must have fallen below.
     const SMALL: f64 = 0.3;
@@ -37,14 +38,16 @@ pub(crate) fn passed_through(
     let Some(before) = before else { return Passage::None };
     let last = before.point.unknowns.parameter;
     if problem.passed_equilibrium(&before.point, &after.point) {
-        let largest = motions.iter().map(|motion| motion.0).fold(0.0, f64::max);
+        let largest = motions.iter().map(|motion| motion.size).fold(0.0, f64::max);
         if problem.motion(&before.point) > SMALL * largest || motions.len() < 4 {
             return Passage::TooLong;
         }
-        let value = extrapolate_to_rest(motions);
+        let point = before.point.clone();
+        let uncertainty = uncertainty(problem, &point, motions, plan);
+        let Some(rest) = extrapolate_to_rest(motions, uncertainty) else { return Passage::TooLong };
+        let value = rest.value;
         let words = format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), short(plan.study, value));
-        let error = rest_error(motions, value, plan);
-        return Passage::End(end(EndReason::Equilibrium { value }, last, words), Some((value, error)));
+        return Passage::End(end(EndReason::Equilibrium { value }, last, words), Some(rest));
     }
     if plan.turns.is_multiple_of(2) && problem.passed_birth(&before.point, &after.point) {
         let value = birth_value(problem, before, after);
@@ -80,44 +83,16 @@ pub(crate) fn short(study: &Study, value: f64) -> String {
     format!("{shown}")
 }
 
-/// Parameter at amplitude 0 from the last three points: near a Hopf point the parameter is an even function of the
-/// amplitude (Hopf 1942), so a polynomial in its square through them is extrapolated.
-fn extrapolate_to_rest(motions: &[(f64, f64)]) -> f64 {
-    let last = &motions[motions.len().saturating_sub(3)..];
-    let mut value = 0.0;
-    for (i, (motion, parameter)) in last.iter().enumerate() {
-        let weight: f64 = last
-            .iter()
-            .enumerate()
-            .filter(|(j, _)| *j != i)
-            .map(|(_, (other, _))| other * other / (other * other - motion * motion))
-            .product();
-        value += weight * parameter;
-    }
-    // Two equal amplitudes leave no weights; the last point then stands for the end.
-    if value.is_finite() { value } else { last[last.len() - 1].1 }
-}
-
-/// Estimated error of the extrapolated birth: how far the value moves when the point farthest from rest is left out, and
-/// the share of the profiles' own error.
-fn rest_error(motions: &[(f64, f64)], value: f64, plan: &WalkPlan<'_>) -> f64 {
-    let last = &motions[motions.len().saturating_sub(3)..];
-    let farthest = last.iter().enumerate().max_by(|a, b| a.1.0.total_cmp(&b.1.0)).map_or(0, |(index, _)| index);
-    let without: Vec<(f64, f64)> =
-        last.iter().enumerate().filter(|(index, _)| *index != farthest).map(|(_, motion)| *motion).collect();
-    let scale = (plan.study.range.1 - plan.study.range.0).max(value.abs());
-    (extrapolate_to_rest(&without) - value).abs() + SUPERCONVERGENCE * plan.study.file.accuracy * scale
-}
-
 /// The birth of the cycle at an equilibrium as an event: the last cycle shrunk to its mean.
 pub(crate) fn birth_of_cycle(
     before: &CycleStation,
     problem: &CycleProblem,
-    (value, error): (f64, f64),
+    rest: Rest,
     plan: &WalkPlan<'_>,
 ) -> Found {
     let note = "extrapolated from the last cycles".to_string();
-    let mut event = unresolved(before, (value, error), note, plan);
+    let mut event = unresolved(before, (rest.value, rest.error), note, plan);
+    (event.point.unknowns.period, event.period_error) = (rest.period, Some(rest.period_error));
     let means = problem.profile(&before.point).means();
     for (k, node) in event.point.unknowns.nodes.iter_mut().enumerate() {
         *node = means[k % means.len()];
@@ -137,6 +112,42 @@ pub(crate) fn blown_up(current: &CycleStation, plan: &WalkPlan<'_>, approach: Ap
     let words =
         format!("the period grows without bound towards {name} = {} ({law})", short(plan.study, approach.limit));
     (event, end(EndReason::PeriodBlowUp, current.point.unknowns.parameter, words))
+}
+
+/// Errors of the parameter and of the period of a small cycle on its own mesh, at its size of motion: from how both move
+/// on the mesh with every interval halved, at the same parameter.
+fn uncertainty(
+    problem: &mut CycleProblem,
+    point: &CyclePoint,
+    motions: &[Motion],
+    plan: &WalkPlan<'_>,
+) -> (f64, f64) {
+    /// What moves one way here may move the other way at a neighbour.
+    const MARGIN: f64 = 4.0;
+    /// Units in the last place. The conditioning of a small cycle would tell some hundred times more: it counts roundoff
+    /// that turns the phase, which neither parameter nor period see.
+    const UNITS: f64 = 64.0;
+    let (period, scale) = (point.unknowns.period, scale(plan));
+    let Ok((fine, _)) = problem.refine(point) else {
+        let relative = SUPERCONVERGENCE * problem.profile_error(point);
+        return (relative * scale, relative * period);
+    };
+    let square = |size: f64| size * size;
+    // The last point lies beyond the equilibrium; the two before tell how the parameter goes with the motion.
+    let slope = match motions {
+        [.., far, near, _] => (far.parameter - near.parameter) / (square(far.size) - square(near.size)),
+        _ => 0.0,
+    };
+    let moved = slope * (square(problem.motion(&fine)) - square(problem.motion(point)));
+    let drift = (fine.unknowns.period - period).abs() / period;
+    let relative = MARGIN * drift + UNITS * f64::EPSILON;
+    (MARGIN * moved.abs() + relative * scale, relative * period)
+}
+
+/// Size of the parameter for roundoff.
+fn scale(plan: &WalkPlan<'_>) -> f64 {
+    let (low, high) = plan.study.range;
+    (high - low).max(low.abs()).max(high.abs())
 }
 
 fn with_unit_name(plan: &WalkPlan<'_>) -> String {
@@ -162,13 +173,13 @@ const NEARLY_AT_REST: f64 = 0.02;
 pub(crate) fn end_of_follower(
     follower: &Follower<'_, CycleProblem>,
     plan: &WalkPlan<'_>,
-    motions: &[(f64, f64)],
+    motions: &[Motion],
 ) -> End {
     let value = follower.current().point.unknowns.parameter;
     let name = with_unit_name(plan);
     let here = short(plan.study, value);
-    let largest = motions.iter().map(|m| m.0).fold(0.0, f64::max);
-    let shrunk = motions.last().is_some_and(|m| m.0 < NEARLY_AT_REST * largest) && motions.len() > 2;
+    let largest = motions.iter().map(|m| m.size).fold(0.0, f64::max);
+    let shrunk = motions.last().is_some_and(|m| m.size < NEARLY_AT_REST * largest) && motions.len() > 2;
     match follower.end() {
         Some(FollowEnd::Edge(edge)) => {
             end(EndReason::Edge, *edge, format!("reaches the edge of the asked range, {name} = {edge}"))
@@ -178,7 +189,8 @@ pub(crate) fn end_of_follower(
             end(EndReason::Budget, value, format!("all points allowed by `pursue` were used at {name} = {here}"))
         }
         Some(FollowEnd::Stuck | FollowEnd::Outside(_)) if shrunk => {
-            let rest = extrapolate_to_rest(motions);
+            let accuracy = plan.study.file.accuracy * scale(plan);
+            let rest = extrapolate_to_rest(motions, (accuracy, accuracy)).map_or(value, |rest| rest.value);
             let words = format!("shrinks to an equilibrium at {name} = {}", short(plan.study, rest));
             end(EndReason::Equilibrium { value: rest }, value, words)
         }

@@ -30,6 +30,7 @@ mod guards;
 mod ledger;
 mod near_miss;
 mod progress;
+mod rest;
 mod settings;
 mod start;
 mod step_events;

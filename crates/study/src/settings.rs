@@ -14,7 +14,9 @@ const COARSEST: f64 = 1e-6;
 pub(crate) fn cycle_settings(study: &Study, turns: usize) -> CycleSettings {
     let mut settings = CycleSettings::new(study.file.accuracy.min(COARSEST));
     if let Some(mesh) = study.file.mesh {
-        settings.degree = mesh.degree.unwrap_or(settings.degree);
+        if let Some(degree) = mesh.degree {
+            settings = settings.with_degree(degree);
+        }
         settings.mesh.fixed = mesh.intervals.map(|intervals| intervals.saturating_mul(turns));
     }
     settings

@@ -5,7 +5,7 @@ use std::path::{Path, PathBuf};
 use std::sync::atomic::{AtomicBool, Ordering};
 
 use armilla_figure::Figure;
-use armilla_record::{Branch, CascadeRow, EndReason, EventKind, RecordError, Results, Threshold};
+use armilla_record::{Branch, CascadeRow, EndReason, EventKind, Reached, RecordError, Results, Threshold};
 use armilla_stability::Doubled;
 
 use crate::branch::{Entry, Finished, Lineage, Run, Switchable, follow_branch};
@@ -285,10 +285,7 @@ fn shortfalls(study: &Study, branches: &[Branch], cascade_only: bool) -> Vec<Str
                 event.name
             ));
         }
-        let worst = branch.points.iter().map(|point| point.profile_error).fold(0.0, f64::max);
-        if worst > study.file.accuracy {
-            found.push(format!("branch {} reaches a profile error of {worst:.1e} only", branch.name));
-        }
+        found.extend(missed_accuracy(study, branch));
     }
     for target in &study.file.targets {
         // An edge or the start at the same value is the cycle that was wanted there too.
@@ -301,4 +298,17 @@ fn shortfalls(study: &Study, branches: &[Branch], cascade_only: bool) -> Vec<Str
         }
     }
     found
+}
+
+/// What the points of a branch say that miss the accuracy.
+fn missed_accuracy(study: &Study, branch: &Branch) -> Option<String> {
+    let missed = branch.points.iter().filter(|point| point.profile_error > study.file.accuracy);
+    let worst = missed.max_by(|a, b| a.profile_error.total_cmp(&b.profile_error))?;
+    let why = match worst.reached {
+        Reached::GivenMesh => "the mesh fixed by the study is too coarse",
+        Reached::MeshLimit => "the largest mesh allowed is too coarse",
+        Reached::Rough => "finer meshes did not help, as where the rates have kinks",
+        _ => "rounding stands in the way",
+    };
+    Some(format!("branch {} reaches a profile error of {:.1e} only: {why}", branch.name, worst.profile_error))
 }

@@ -12,6 +12,7 @@ use crate::guards::{falls_on_shorter, leaps};
 use crate::ledger::{Change, is_off_folds, is_sure};
 use crate::near_miss::near_miss_by_mean;
 use crate::step_events::{Found, events_of_step, events_on_edge, landing_event};
+use crate::rest::{Motion, Rest};
 use crate::study::Study;
 
 pub(crate) type CycleStation = Station<CyclePoint, CycleTangent>;
@@ -76,8 +77,8 @@ pub(crate) fn walk(
 
 /// What was seen at each station, the first included.
 struct Seen {
-    /// Size of the motion, and parameter.
-    motions: Vec<(f64, f64)>,
+    /// The motion about the mean.
+    motions: Vec<Motion>,
     /// Parameter and period.
     periods: Vec<(f64, f64)>,
 }
@@ -233,7 +234,7 @@ impl Walker<'_, '_> {
         true
     }
 
-    fn come_to_rest(&mut self, rest: Option<(f64, f64)>) {
+    fn come_to_rest(&mut self, rest: Option<Rest>) {
         let Some(rest) = rest else { return };
         let (problem, before, _) = self.follower.parts();
         let event = birth_of_cycle(before.expect("a step has a station before it"), problem, rest, self.plan);
@@ -285,9 +286,10 @@ enum Taken {
     Ended(End),
 }
 
-fn motion(follower: &mut Follower<'_, CycleProblem>) -> (f64, f64) {
+fn motion(follower: &mut Follower<'_, CycleProblem>) -> Motion {
     let (problem, _, current) = follower.parts();
-    (problem.motion(&current.point), current.point.unknowns.parameter)
+    let unknowns = &current.point.unknowns;
+    Motion { size: problem.motion(&current.point), parameter: unknowns.parameter, period: unknowns.period }
 }
 
 fn period(follower: &Follower<'_, CycleProblem>) -> (f64, f64) {
