@@ -24,6 +24,8 @@ pub const WATCH_FOLD: usize = 0;
 pub const WATCH_DOUBLING: usize = 1;
 /// Index of the torus function: `Prod (|mu|^2 - 1)` over complex pairs, scaled.
 pub const WATCH_TORUS: usize = 2;
+/// Index of the branching function: `Prod (mu - 1)`, scaled.
+pub const WATCH_BRANCHING: usize = 3;
 
 /// The model as the cycle problem needs it.
 #[derive(Clone)]
@@ -522,6 +524,7 @@ impl Problem for CycleProblem {
                 value(if turning.abs() < noise { 0.0 } else { turning }),
                 value(spectrum.doubling_product()),
                 value(spectrum.torus_product()),
+                value(spectrum.branching_product()),
             ],
             unstable_count: spectrum.unstable_count(),
         };

@@ -140,15 +140,7 @@ impl CycleProblem {
     }
 
     fn split_nodes(&self, point: &CyclePoint) -> Vec<f64> {
-        let profile = self.profile(point);
-        let mut evaluator = profile.evaluator();
-        let mut shifted = vec![0.0; profile.n_states];
-        let mut nodes = Vec::with_capacity(profile.values.len());
-        for (node, time) in profile.node_times().iter().enumerate() {
-            evaluator.at(time + 0.5, &mut shifted);
-            nodes.extend(profile.node(node).iter().zip(&shifted).map(|(a, b)| 0.5 * (a - b)));
-        }
-        nodes
+        self.shift_nodes(point, 2)
     }
 }
 
