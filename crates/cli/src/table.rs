@@ -101,10 +101,12 @@ pub fn sequence(rows: &[CascadeRow]) -> String {
             supported(row.value, row.error),
             row.error.map_or(String::new(), |error| format!("{error:.1e}")),
             row.ratio.map_or(String::new(), |ratio| format!("{ratio:.6}")),
+            row.predicted.map_or(String::new(), |value| supported(value, row.predicted_error)),
+            row.predicted_error.map_or(String::new(), |error| format!("{error:.1e}")),
         ]
     };
-    let head = ["turns".into(), "threshold".into(), "error".into(), "ratio of intervals".into()];
-    let table: Vec<[String; 4]> = std::iter::once(head).chain(rows.iter().map(cell)).collect();
+    let head = ["turns", "threshold", "error", "ratio of intervals", "predicted", "its error"].map(String::from);
+    let table: Vec<[String; 6]> = std::iter::once(head).chain(rows.iter().map(cell)).collect();
     format!("\n{}", crate::columns::section("doubling sequence", &table))
 }
 

@@ -20,13 +20,17 @@
 //! assert!(wrong.expect_err("no such field").to_string().starts_with("level.study.ron:4:"));
 //! ```
 
+mod ahead;
 mod approach;
 mod branch;
 mod cascade;
 mod ends;
 mod error;
 mod file;
+mod guards;
+mod ledger;
 mod near_miss;
+mod prediction;
 mod progress;
 mod rest;
 mod settings;
@@ -34,6 +38,7 @@ mod start;
 mod step_events;
 mod study;
 mod trace;
+mod valley;
 mod walk;
 mod words;
 
