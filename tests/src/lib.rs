@@ -2,7 +2,8 @@
 //!
 //! The tests under `tests/` check what the program finds against exact cases, published values and independent
 //! computations, each with its source beside it; this library is what they share. It goes through the public face of
-//! the crates only and knows no reference value. Models are in `models/`.
+//! the crates only. It knows no reference value but those of the table of errors (`errors`), which a program prints and a
+//! test checks. Models are in `models/`.
 //!
 //! ```
 //! use armilla_tests::{Case, relative, settings};
@@ -17,8 +18,12 @@ mod bracket;
 mod case;
 mod change;
 mod check;
+pub mod curve;
+mod decimal;
+mod errors;
 mod job;
 mod ledger;
+mod matching;
 mod order;
 mod planted;
 mod random;
@@ -30,8 +35,11 @@ pub use bracket::{station, stations};
 pub use case::{Case, settings};
 pub use change::{Bend, Change, Move};
 pub use check::{absolute, multiplier, relative};
-pub use job::{branch, event, job};
+pub use decimal::difference;
+pub use errors::{Row, Source, WIDEST, page, rows};
+pub use job::{branch, cascade_job, event, job};
 pub use ledger::Ratios;
+pub use matching::{Curve, profile_error};
 pub use order::Orders;
 pub use planted::{Beneath, Exact, Planted, Sheet};
 pub use random::Random;

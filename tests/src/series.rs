@@ -14,16 +14,18 @@ pub struct VanDerPol {
     pub state: [f64; 2],
 }
 
-/// Terms of the series: with steps of [`STEP`] the last is far below roundoff for mu of order 1.
+/// Terms of the series: with steps of [`STEP`], [`SHARE`] of the fast time, the last is far below roundoff.
 const TERMS: usize = 30;
 /// Longest step.
 const STEP: f64 = 0.02;
+/// Share of 1/mu, the time in which a large mu makes the oscillator jump, that a step is at most.
+const SHARE: f64 = 0.1;
 
 impl VanDerPol {
     /// The state after a time of either sign.
     #[must_use]
     pub fn after(self, time: f64) -> Self {
-        let steps = (time.abs() / STEP).ceil().max(1.0);
+        let steps = (time.abs() / STEP.min(SHARE / self.mu)).ceil().max(1.0);
         (0..steps as usize).fold(self, |at, _| at.step(time / steps))
     }
 

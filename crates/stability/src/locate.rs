@@ -135,11 +135,23 @@ impl CycleProblem {
         let mut fine = coarse.on_mesh(coarse.degree, &mesh);
         let (_, function) = self.augmented(kind, &mut fine)?;
         let size = function.size(&mut self.system);
-        let value_error = (coarse.unknowns.parameter - fine.unknowns.parameter).abs()
-            + self.rounding(Scalar::Parameter, fine.unknowns.parameter, size);
-        let period_error = (coarse.unknowns.period - fine.unknowns.period).abs()
-            + self.rounding(Scalar::Period, fine.unknowns.period, size);
+        // Roundoff first: it refers to what was solved last.
+        let value_rounding = self.rounding(Scalar::Parameter, fine.unknowns.parameter, size);
+        let period_rounding = self.rounding(Scalar::Period, fine.unknowns.period, size);
+        let left = self.left_over(coarse, &fine);
+        let value_error = left * (coarse.unknowns.parameter - fine.unknowns.parameter).abs() + value_rounding;
+        let period_error = left * (coarse.unknowns.period - fine.unknowns.period).abs() + period_rounding;
         Ok((fine, value_error, period_error, function.vectors().clone()))
+    }
+
+    /// Share of the difference between a number on a mesh and on the halved one that may be left on the latter.
+    ///
+    /// Numbers converge at least as fast as the profile, mostly with twice its order, and how fast the profile converges
+    /// is measured on these two meshes; [`CANCELLING`] is the margin. Where the profile gains nothing, all of it.
+    fn left_over(&mut self, coarse: &CyclePoint, fine: &CyclePoint) -> f64 {
+        let gain = self.profile_error(fine) / self.profile_error(coarse);
+        // Written so that NaN leaves all.
+        if gain * CANCELLING < 1.0 { gain * CANCELLING } else { 1.0 }
     }
 
     /// Roundoff of a scalar of the last corrected point: that of the rows and of a closing with terms of size `closing`
@@ -194,8 +206,9 @@ impl CycleProblem {
         let value = point.unknowns.parameter;
         self.correct_at(&mut fine, value).map_err(|_| Failure::NotConverged)?;
         // The closing holds the parameter exactly.
-        let error = (fine.unknowns.period - point.unknowns.period).abs()
-            + self.rounding(Scalar::Period, fine.unknowns.period, 0.0);
+        let rounding = self.rounding(Scalar::Period, fine.unknowns.period, 0.0);
+        let left = self.left_over(point, &fine);
+        let error = left * (fine.unknowns.period - point.unknowns.period).abs() + rounding;
         Ok((fine, error))
     }
 }
@@ -204,6 +217,9 @@ impl CycleProblem {
 /// the difference and the truth if rows round independently. Twice that, since they need not: on X3 the doubling was
 /// found a little beyond four from its exact place.
 const ROUNDOFF_MARGIN: f64 = 8.0;
+/// Margin of the share that is left of a difference: parts of the error on the coarse mesh may cancel each other, and the
+/// difference is smaller by such a factor then.
+const CANCELLING: f64 = 4.0;
 /// Units in the last place, of the value or of the range of its parameter, for rounding that acts on every row alike and
 /// that the sum of independent errors leaves out: the basis tables are correct to a few units each.
 const COHERENT_UNITS: f64 = 16.0;
