@@ -64,13 +64,15 @@ pub struct Report {
     pub corrections: Vec<f64>,
     /// Residual of the closing before each correction.
     pub closing_residuals: Vec<f64>,
+    /// Scaled size below which a correction may be roundoff.
+    pub floor: f64,
 }
 
 impl Report {
-    /// |second correction| / |first|, 0 where one was enough.
+    /// |second correction| / |first|, 0 where one was enough or the second is roundoff, which no shorter step makes smaller.
     pub fn contraction(&self) -> f64 {
         match self.corrections[..] {
-            [first, second, ..] if first > 0.0 => second / first,
+            [first, second, ..] if first > 0.0 && second > self.floor => second / first,
             _ => 0.0,
         }
     }
@@ -168,7 +170,7 @@ pub fn correct_with(
     settings.floor = settings.floor.max(FLOOR_UNITS * f64::EPSILON * system.spec().metric.largest(&at.nodes));
     workspace.fit(system);
     system.phase_row(task.reference, &mut workspace.phase);
-    let mut report = Report::default();
+    let mut report = Report { floor: settings.floor, ..Report::default() };
     report.corrections.reserve(settings.most);
     report.closing_residuals.reserve(settings.most);
     for iteration in 1..=settings.most {

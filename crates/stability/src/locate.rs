@@ -169,11 +169,12 @@ impl CycleProblem {
         let mut fine = coarse.on_mesh(coarse.degree, &mesh);
         let (_, function) = self.augmented(kind, &mut fine)?;
         let size = function.size(&mut self.system);
+        // Roundoff first: it refers to what was solved last.
+        let value_rounding = self.rounding(Scalar::Parameter, fine.unknowns.parameter, size);
+        let period_rounding = self.rounding(Scalar::Period, fine.unknowns.period, size);
         let left = self.left_over(coarse, &fine);
-        let value_error = left * (coarse.unknowns.parameter - fine.unknowns.parameter).abs()
-            + self.rounding(Scalar::Parameter, fine.unknowns.parameter, size);
-        let period_error = left * (coarse.unknowns.period - fine.unknowns.period).abs()
-            + self.rounding(Scalar::Period, fine.unknowns.period, size);
+        let value_error = left * (coarse.unknowns.parameter - fine.unknowns.parameter).abs() + value_rounding;
+        let period_error = left * (coarse.unknowns.period - fine.unknowns.period).abs() + period_rounding;
         Ok((fine, value_error, period_error, function.vectors().clone()))
     }
 
@@ -226,10 +227,10 @@ impl CycleProblem {
         let mut fine = point.on_mesh(point.degree, &mesh);
         let value = point.unknowns.parameter;
         self.correct_at(&mut fine, value).map_err(|_| Failure::NotConverged)?;
-        let left = self.left_over(point, &fine);
         // The closing holds the parameter exactly.
-        let error = left * (fine.unknowns.period - point.unknowns.period).abs()
-            + self.rounding(Scalar::Period, fine.unknowns.period, 0.0);
+        let rounding = self.rounding(Scalar::Period, fine.unknowns.period, 0.0);
+        let left = self.left_over(point, &fine);
+        let error = left * (fine.unknowns.period - point.unknowns.period).abs() + rounding;
         Ok((fine, error))
     }
 }

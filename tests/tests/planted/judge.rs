@@ -25,19 +25,19 @@ pub fn judge(problem: &mut CycleProblem, cycle: &CyclePoint, wanted: Wanted<'_>,
     let distance = profile_distance(&problem.profile(cycle), wanted, (point.value, &sizes));
     let name = format!("{} N={}", wanted.name, point.intervals);
     ratios.add("profile", &name, (distance, point.profile_error));
-    multipliers(&point, &exact.multipliers, wanted.name, ratios);
+    multipliers(&point, &exact.multipliers, (wanted.name, problem.settings().mesh.accuracy), ratios);
 }
 
 /// Every multiplier, its sign, and the unstable count.
 ///
 /// What is claimed of multipliers: Liouville's formula holds to `liouville_defect`, the trivial one to `trivial_defect`,
-/// and the cycle they are taken along has the error of its profile, to which logarithms are as sensitive as they are
-/// large.
-fn multipliers(point: &Point, exact: &[(f64, bool)], name: &str, ratios: &mut Ratios) {
+/// and they are computed to the accuracy relative to the sum of all |log mu|, unless the cycle they are taken along has a
+/// larger error. The audits alone would not do: errors of two multipliers that cancel in their sum escape Liouville.
+fn multipliers(point: &Point, exact: &[(f64, bool)], (name, accuracy): (&str, f64), ratios: &mut Ratios) {
     assert!(point.unresolved.is_none(), "{name}: {:?}", point.unresolved);
     assert_eq!(point.multipliers.len(), exact.len(), "{name}");
     let size: f64 = exact.iter().map(|(log, _)| log.abs()).sum();
-    let claimed = point.liouville_defect + point.trivial_defect + point.profile_error * size.max(1.0);
+    let claimed = point.liouville_defect + point.trivial_defect + accuracy.max(point.profile_error) * size.max(1.0);
     for (found, (log, negative)) in point.multipliers.iter().zip(exact) {
         ratios.add("multiplier", name, ((found.log_modulus - log).abs(), claimed));
         // Two of nearly equal modulus may come as a pair.
