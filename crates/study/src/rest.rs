@@ -5,8 +5,10 @@
 //! points are extrapolated to 0; each point more gains about a factor of that square, until the errors of the points
 //! themselves, enlarged by the weights, outgrow the gain.
 
+use armilla_stability::{CyclePoint, CycleProblem};
+
 /// A cycle on the way to rest.
-#[derive(Clone, Copy, Debug)]
+#[derive(Clone, Debug)]
 pub(crate) struct Motion {
     /// Size of its motion about its mean.
     pub size: f64,
@@ -14,6 +16,65 @@ pub(crate) struct Motion {
     pub parameter: f64,
     /// Period.
     pub period: f64,
+    /// The cycle, of the last [`MOST`] only.
+    pub cycle: Option<CyclePoint>,
+}
+
+impl Motion {
+    /// Of a cycle.
+    pub fn of(problem: &CycleProblem, cycle: &CyclePoint) -> Self {
+        let unknowns = &cycle.unknowns;
+        Self {
+            size: problem.motion(cycle),
+            parameter: unknowns.parameter,
+            period: unknowns.period,
+            cycle: Some(cycle.clone()),
+        }
+    }
+}
+
+/// Adds a motion and lets go of the cycles that are not needed any more.
+pub(crate) fn push(motions: &mut Vec<Motion>, motion: Motion) {
+    motions.push(motion);
+    if let Some(old) = motions.len().checked_sub(MOST + 1) {
+        motions[old].cycle = None;
+    }
+}
+
+/// The last motions on meshes with every interval halved, and their errors: of the parameter at a given motion, and of the
+/// period. `scale` is the size of the parameter for roundoff.
+pub(crate) fn refined(problem: &mut CycleProblem, motions: &[Motion], scale: f64) -> (Vec<Motion>, (f64, f64)) {
+    /// What moves one way at one cycle may move the other way at a neighbour.
+    const MARGIN: f64 = 4.0;
+    /// Units in the last place. The conditioning of a small cycle would tell some hundred times more: it counts roundoff
+    /// that turns the phase, which neither parameter nor period see.
+    const UNITS: f64 = 128.0;
+    let mut fine = Vec::new();
+    let mut errors = (0.0f64, 0.0f64);
+    let mut last_slope = 0.0;
+    for (k, motion) in motions.iter().enumerate().skip(motions.len().saturating_sub(MOST)) {
+        let Some(coarse) = &motion.cycle else { continue };
+        if k > 0 {
+            let (a, b) = (&motions[k - 1], motion);
+            let slope = (b.parameter - a.parameter) / (b.size * b.size - a.size * a.size);
+            last_slope = if slope.is_finite() { slope } else { last_slope };
+        }
+        // Where the finer mesh fails all of the error is left, and nothing tells how large it is but the profile's.
+        let (better, left) = match problem.refine(coarse) {
+            Ok((better, _)) => {
+                let left = problem.left_over(coarse, &better);
+                (Motion::of(problem, &better), left)
+            }
+            Err(_) => (motion.clone(), 1.0),
+        };
+        let moved = last_slope * (better.size * better.size - motion.size * motion.size);
+        errors.0 = errors.0.max(MARGIN * left * moved.abs());
+        errors.1 = errors.1.max(MARGIN * left * (better.period - motion.period).abs());
+        fine.push(better);
+    }
+    let roundoff = UNITS * f64::EPSILON;
+    let period = fine.last().map_or(0.0, |motion| motion.period);
+    (fine, (errors.0 + roundoff * scale, errors.1 + roundoff * period))
 }
 
 /// The birth of a cycle, extrapolated.
@@ -78,7 +139,12 @@ mod tests {
 
     fn motions(parameter: impl Fn(f64) -> f64, period: impl Fn(f64) -> f64) -> Vec<Motion> {
         let sizes = [0.6, 0.5, 0.41, 0.31, 0.22, 0.13, 0.06, 0.04];
-        sizes.map(|size| Motion { size, parameter: parameter(size), period: period(size) }).to_vec()
+        sizes.map(|size| Motion {
+            size,
+            parameter: parameter(size),
+            period: period(size),
+            cycle: None,
+        }).to_vec()
     }
 
     /// Exact by construction: the limits at amplitude 0 of even functions.

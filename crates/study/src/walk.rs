@@ -9,7 +9,7 @@ use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_DOUBLING, 
 use crate::approach::approach;
 use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through};
 use crate::near_miss::{Sample, near_miss};
-use crate::rest::{Motion, Rest};
+use crate::rest::{Motion, Rest, push};
 use crate::step_events::{Found, events_of_step, is_explained};
 use crate::study::Study;
 
@@ -125,7 +125,7 @@ impl Walker<'_, '_> {
         if self.retries == 0 {
             drop_idle_turns(&mut step);
         }
-        self.seen.motions.push(motion(&mut self.follower));
+        push(&mut self.seen.motions, motion(&mut self.follower));
         let passage = passed_through(&mut self.follower, self.plan, &self.seen.motions);
         if matches!(passage, Passage::TooLong) && self.retry() {
             return Taken::On;
@@ -222,8 +222,7 @@ enum Taken {
 
 fn motion(follower: &mut Follower<'_, CycleProblem>) -> Motion {
     let (problem, _, current) = follower.parts();
-    let unknowns = &current.point.unknowns;
-    Motion { size: problem.motion(&current.point), parameter: unknowns.parameter, period: unknowns.period }
+    Motion::of(problem, &current.point)
 }
 
 fn period(follower: &Follower<'_, CycleProblem>) -> (f64, f64) {
