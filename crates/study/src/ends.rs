@@ -5,7 +5,7 @@ use armilla_record::{End, EndReason, EventKind};
 use armilla_stability::{CycleProblem, Fault};
 
 use crate::approach::Approach;
-use crate::rest::{Motion, Rest, extrapolate_to_rest, refined};
+use crate::rest::{Motion, Rest, birth, guess};
 use crate::step_events::{Found, unresolved};
 use crate::study::Study;
 use crate::walk::{CycleStation, WalkPlan};
@@ -42,8 +42,7 @@ pub(crate) fn passed_through(
         if problem.motion(&before.point) > SMALL * largest || motions.len() < 4 {
             return Passage::TooLong;
         }
-        let (fine, errors) = refined(problem, motions, scale(plan));
-        let Some(rest) = extrapolate_to_rest(&fine, errors) else { return Passage::TooLong };
+        let Some(rest) = birth(problem, motions, scale(plan)) else { return Passage::TooLong };
         let value = rest.value;
         let words = format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), short(plan.study, value));
         return Passage::End(end(EndReason::Equilibrium { value }, last, words), Some(rest));
@@ -158,8 +157,7 @@ pub(crate) fn end_of_follower(
             end(EndReason::Budget, value, format!("all points allowed by `pursue` were used at {name} = {here}"))
         }
         Some(FollowEnd::Stuck | FollowEnd::Outside(_)) if shrunk => {
-            let accuracy = plan.study.file.accuracy * scale(plan);
-            let rest = extrapolate_to_rest(motions, (accuracy, accuracy)).map_or(value, |rest| rest.value);
+            let rest = guess(motions).unwrap_or(value);
             let words = format!("shrinks to an equilibrium at {name} = {}", short(plan.study, rest));
             end(EndReason::Equilibrium { value: rest }, value, words)
         }
