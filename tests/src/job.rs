@@ -10,12 +10,24 @@ use armilla_study::{Silent, Study, TraceOptions, Traced, trace};
 /// # Panics
 /// Where the study is refused or fails.
 pub fn job(model: &str, fields: &str) -> Traced {
+    run(model, fields, false)
+}
+
+/// The same with every branch followed to its first doubling only.
+///
+/// # Panics
+/// Where the study is refused or fails.
+pub fn cascade_job(model: &str, fields: &str) -> Traced {
+    run(model, fields, true)
+}
+
+fn run(model: &str, fields: &str, cascade: bool) -> Traced {
     let place = tempfile::tempdir().expect("a temporary folder");
     let path = place.path().join("test.study.ron");
     let model = crate::case::model_path(model);
     std::fs::write(&path, format!("(model: {:?}, {fields})", model.display().to_string())).expect("a study written");
     let study = Study::read(&path).unwrap_or_else(|fault| panic!("{fault}"));
-    let options = TraceOptions { folder: None, replace: false, cascade: false, abort: &AtomicBool::new(false) };
+    let options = TraceOptions { folder: None, replace: false, cascade, abort: &AtomicBool::new(false) };
     trace(&study, &options, &mut Silent).unwrap_or_else(|fault| panic!("{fault}"))
 }
 

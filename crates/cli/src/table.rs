@@ -1,6 +1,6 @@
 //! The closing table of a run.
 
-use armilla_record::{Branch, CascadeRow, Event};
+use armilla_record::{Branch, CascadeRow, Event, Unresolved};
 
 use crate::columns::aligned;
 
@@ -69,8 +69,25 @@ pub fn closing(branches: &[Branch]) -> String {
         let stable = branch.points.iter().filter(|point| point.is_stable()).count();
         text.push_str(&format!("branch {}: {} points, {stable} of them stable\n", branch.name, branch.points.len()));
         text.push_str(&format!("  one end: {}\n  other end: {}\n", branch.ends.0.words, branch.ends.1.words));
+        text.extend(not_resolved(branch));
     }
     text
+}
+
+/// A line on multipliers that are not resolved, where the branch has some.
+fn not_resolved(branch: &Branch) -> Option<String> {
+    let found: Vec<Unresolved> = branch.points.iter().filter_map(|point| point.unresolved).collect();
+    let most = found.iter().map(|unresolved| unresolved.count).max()?;
+    let below = found.iter().map(|unresolved| unresolved.below).fold(f64::NEG_INFINITY, f64::max);
+    let (points, multipliers) = (plural(found.len(), "point"), plural(most, "multiplier"));
+    Some(format!(
+        "  not resolved at {points}: up to {multipliers}, damped more strongly than log-modulus {below:.1}; only their sum \
+         is known, and stability does not depend on them\n"
+    ))
+}
+
+fn plural(count: usize, word: &str) -> String {
+    if count == 1 { format!("1 {word}") } else { format!("{count} {word}s") }
 }
 
 /// The doubling sequence as lines of text; empty where there is none.
@@ -84,10 +101,12 @@ pub fn sequence(rows: &[CascadeRow]) -> String {
             supported(row.value, row.error),
             row.error.map_or(String::new(), |error| format!("{error:.1e}")),
             row.ratio.map_or(String::new(), |ratio| format!("{ratio:.6}")),
+            row.predicted.map_or(String::new(), |value| supported(value, row.predicted_error)),
+            row.predicted_error.map_or(String::new(), |error| format!("{error:.1e}")),
         ]
     };
-    let head = ["turns".into(), "threshold".into(), "error".into(), "ratio of intervals".into()];
-    let table: Vec<[String; 4]> = std::iter::once(head).chain(rows.iter().map(cell)).collect();
+    let head = ["turns", "threshold", "error", "ratio of intervals", "predicted", "its error"].map(String::from);
+    let table: Vec<[String; 6]> = std::iter::once(head).chain(rows.iter().map(cell)).collect();
     format!("\n{}", crate::columns::section("doubling sequence", &table))
 }
 

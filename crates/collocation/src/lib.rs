@@ -35,7 +35,9 @@
 //! ```
 
 mod defect;
+mod direction;
 mod gauss;
+mod linear_mesh;
 mod mesh;
 mod metric;
 mod newton;
@@ -45,6 +47,7 @@ mod variational;
 
 pub use defect::{Collocated, Defects};
 pub use gauss::{gauss, radau};
+pub use linear_mesh::TooStiff;
 pub use mesh::{
     ErrorEstimate, MeshChoice, MeshSettings, estimate_error, interpolate_nodes, refine, remesh, scales_of, work,
 };
@@ -55,4 +58,4 @@ pub use newton::{
 };
 pub use system::{Fault, Iterate, Row, System, SystemSpec, Variation};
 pub use tables::{DEGREES, Tables};
-pub use variational::{Variational, VariationalMaps};
+pub use variational::{MapsFault, Variational, VariationalMaps};

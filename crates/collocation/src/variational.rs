@@ -1,16 +1,19 @@
 //! Interval maps of the linear variational equation along a profile.
 //!
 //! `v' = T A(t) v` is linear, so its maps need no Newton and no mesh of the profile: every mesh interval is cut
-//! until `h T |A|` is at most m/2, where Gauss collocation of degree m is as accurate as the profile. Where that
-//! would take more pieces than allowed, the interval is merely strongly damped and Radau IIA collocation,
-//! L-stable, keeps signs and counts right; where it is strongly repelling, the same scheme run backwards in time does (Hairer & Wanner 1996, Solving ODEs II, sec. IV.5, IV.3). Gauss steps
-//! would not: for stiff decay they tend to modulus 1 with sign (-1)^m.
+//! until `h T |A|` is at most m/2, where Gauss collocation of degree m is as accurate as the profile. Where that is
+//! not worth its pieces (`linear_mesh.rs`), some direction is merely strongly damped, and Radau IIA collocation,
+//! L-stable, keeps signs and counts right, and the other directions accurate; where it is strongly repelling, the
+//! same scheme run backwards in time does (Hairer & Wanner 1996, Solving ODEs II, sec. IV.5, IV.3). Gauss steps would
+//! not: for stiff decay they tend to modulus 1 with sign (-1)^m.
 
 use armilla_linalg::{Lu, Singular};
 use armilla_model::{Batch, Evaluator, Linearisation, VectorField};
 use armilla_record::Profile;
 
+use crate::direction::Directions;
 use crate::gauss::{gauss, radau};
+use crate::linear_mesh::{LinearMesh, Plan, Samples, Stiffness, TooStiff};
 
 /// The maps and what goes with them.
 #[derive(Clone, Debug, Default)]
@@ -19,13 +22,18 @@ pub struct VariationalMaps {
     pub n: usize,
     /// The maps, n x n row-major, in the order of time.
     pub maps: Vec<f64>,
-    /// Rates at the start of each map, n numbers each: the known direction of the trivial multiplier.
+    /// Direction of the trivial multiplier at the start of each map, n numbers each: the rates at mesh points, carried on
+    /// inside.
     pub flow: Vec<f64>,
     /// Integral of the divergence over one period.
     pub divergence: f64,
-    /// Whether some interval was too stiff to cut finely and was passed by the L-stable scheme: then multipliers
-    /// far below 1 are not accurate.
+    /// Whether some stretch was passed by an L-stable scheme: multipliers damped (or repelled) that strongly have the
+    /// right sign and side of the unit circle, and not the right size.
     pub damped: bool,
+    /// Largest number of directions at one place that may be concerned.
+    pub dropped: usize,
+    /// `Int |A| dt` over one period.
+    pub stiffness: f64,
 }
 
 /// A stage scheme on `[0, 1]`.
@@ -54,8 +62,40 @@ impl Scheme {
     }
 }
 
-/// Pieces one mesh interval may be cut into before the L-stable scheme takes over.
-const MOST_PIECES: usize = 64;
+/// Pieces evaluated together: memory of the points of a long cycle stays small, and a batch stays in the cache.
+const PIECES_AT_ONCE: usize = 256;
+
+/// Why there are no maps.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum MapsFault {
+    /// A stage system is singular or not finite.
+    Singular(Singular),
+    /// A stretch is too stiff.
+    TooStiff(TooStiff),
+}
+
+impl From<Singular> for MapsFault {
+    fn from(fault: Singular) -> Self {
+        Self::Singular(fault)
+    }
+}
+
+impl From<TooStiff> for MapsFault {
+    fn from(fault: TooStiff) -> Self {
+        Self::TooStiff(fault)
+    }
+}
+
+impl std::fmt::Display for MapsFault {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        match self {
+            Self::Singular(fault) => fault.fmt(f),
+            Self::TooStiff(fault) => fault.fmt(f),
+        }
+    }
+}
+
+impl std::error::Error for MapsFault {}
 
 /// Integrates the variational equation; owns its workspace.
 pub struct Variational {
@@ -65,6 +105,7 @@ pub struct Variational {
     accurate: Scheme,
     damping: Scheme,
     repelling: Scheme,
+    mesh: LinearMesh,
     states: Vec<f64>,
     rates: Vec<f64>,
     jacobian: Vec<f64>,
@@ -82,17 +123,6 @@ struct Piece {
     stiffness: Stiffness,
 }
 
-/// What a piece is like.
-#[derive(Clone, Copy, PartialEq, Eq)]
-enum Stiffness {
-    /// Cut finely enough for the accurate scheme.
-    None,
-    /// Strongly damped on balance.
-    Damped,
-    /// Strongly repelling on balance.
-    Repelling,
-}
-
 impl Variational {
     /// For a field and the degree of its profiles.
     pub fn new(field: &dyn VectorField, degree: usize) -> Self {
@@ -104,6 +134,7 @@ impl Variational {
             accurate: Scheme::new(gauss(degree).0),
             damping: Scheme::new(radau(degree)),
             repelling: Scheme::new(radau(degree).iter().rev().map(|c| 1.0 - c).collect()),
+            mesh: LinearMesh::new(degree),
             states: Vec::new(),
             rates: Vec::new(),
             jacobian: Vec::new(),
@@ -113,30 +144,75 @@ impl Variational {
         }
     }
 
+    /// Fineness at which a piece of constant A has a relative error of `accuracy` in each log multiplier. Gauss collocation
+    /// gives `exp(z)` up to `c z^(2m+1)`, `c = m!^2/((2m)! (2m+1)!)` (Hairer & Wanner 1996, theorem IV.3.12). The sum of
+    /// log-moduli does not see it where a rate and its opposite occur: their errors cancel.
+    pub fn fineness_for(&self, accuracy: f64) -> f64 {
+        let m = self.accurate.points.len();
+        let factorial = |k: usize| (1..=k).map(|k| k as f64).product::<f64>();
+        let c = factorial(m).powi(2) / factorial(2 * m) / factorial(2 * m + 1);
+        let reach = (accuracy.max(f64::EPSILON) / c).powf(0.5 / m as f64);
+        (0.5 * m as f64 / reach).max(1.0)
+    }
+
     /// Maps along `profile` with all `parameters`; `scales` are the sizes of the states, `fineness` divides the
     /// largest `h T |A|` of a piece (1 is as accurate as the profile as a rule).
     ///
     /// # Errors
-    /// [`Singular`] with the mesh interval where a stage system is singular or not finite.
+    /// [`MapsFault`] with the mesh interval.
     pub fn maps(
         &mut self,
         profile: &Profile,
         parameters: &[f64],
         scales: &[f64],
         fineness: f64,
-    ) -> Result<VariationalMaps, Singular> {
-        let pieces = self.cut(profile, parameters, scales, fineness);
-        let (n, m) = (self.n, self.accurate.points.len());
+    ) -> Result<VariationalMaps, MapsFault> {
+        let plan = self.plan(profile, parameters, (scales, fineness))?;
+        let (n, count) = (self.n, plan.cuts.iter().map(|cut| cut.pieces).sum::<usize>());
         let mut out = VariationalMaps {
             n,
-            maps: Vec::with_capacity(pieces.len() * n * n),
-            flow: vec![0.0; pieces.len() * n],
+            maps: Vec::with_capacity(count * n * n),
+            flow: Vec::with_capacity(count * n),
             divergence: 0.0,
-            damped: pieces.iter().any(|piece| piece.stiffness != Stiffness::None),
+            damped: plan.cuts.iter().any(|cut| cut.stiffness != Stiffness::None),
+            dropped: plan.dropped,
+            stiffness: plan.stiffness,
         };
+        let pieces = plan.cuts.iter().enumerate().flat_map(|(interval, cut)| {
+            let count = cut.pieces as f64;
+            (0..cut.pieces).map(move |k| Piece {
+                interval,
+                from: k as f64 / count,
+                length: 1.0 / count,
+                stiffness: cut.stiffness,
+            })
+        });
+        let mut batch: Vec<Piece> = Vec::with_capacity(PIECES_AT_ONCE);
+        for piece in pieces {
+            batch.push(piece);
+            if batch.len() == PIECES_AT_ONCE {
+                self.pass(profile, parameters, &batch, &mut out)?;
+                batch.clear();
+            }
+        }
+        self.pass(profile, parameters, &batch, &mut out)?;
+        let directions = Directions { maps: &out.maps, scales };
+        directions.carry(&mut out.flow, plan.cuts.iter().map(|cut| cut.pieces));
+        Ok(out)
+    }
+
+    /// Appends the maps of some pieces.
+    fn pass(
+        &mut self,
+        profile: &Profile,
+        parameters: &[f64],
+        pieces: &[Piece],
+        out: &mut VariationalMaps,
+    ) -> Result<(), Singular> {
+        let m = self.accurate.points.len();
         // Per piece: its start (for the flow direction), then its stages.
         self.places.clear();
-        for piece in &pieces {
+        for piece in pieces {
             let scheme = match piece.stiffness {
                 Stiffness::None => &self.accurate,
                 Stiffness::Damped => &self.damping,
@@ -149,14 +225,12 @@ impl Variational {
         self.evaluate(profile, parameters);
         for (index, piece) in pieces.iter().enumerate() {
             let first = index * (m + 1);
-            for a in 0..n {
-                out.flow[index * n + a] = self.rates[a * points + first];
-            }
+            out.flow.extend((0..self.n).map(|a| self.rates[a * points + first]));
             let interval_length = profile.mesh[piece.interval + 1] - profile.mesh[piece.interval];
             let step = piece.length * interval_length * profile.period;
-            self.map_of_piece(*piece, (first + 1, points), step, &mut out)?;
+            self.map_of_piece(*piece, (first + 1, points), step, out)?;
         }
-        Ok(out)
+        Ok(())
     }
 
     /// Evaluates rates and Jacobian at `self.places`, pairs of mesh interval and local place.
@@ -178,46 +252,29 @@ impl Variational {
         self.evaluator.linearise(batch, out);
     }
 
-    /// Cuts every mesh interval by the size of the scaled Jacobian on it.
-    fn cut(&mut self, profile: &Profile, parameters: &[f64], scales: &[f64], fineness: f64) -> Vec<Piece> {
+    /// Cuts every mesh interval by the scaled Jacobian on it.
+    fn plan(
+        &mut self,
+        profile: &Profile,
+        parameters: &[f64],
+        (scales, fineness): (&[f64], f64),
+    ) -> Result<Plan, TooStiff> {
         let m = self.accurate.points.len();
         self.places.clear();
         for interval in 0..profile.intervals() {
             self.places.push((interval, 0.0));
             self.places.extend(self.accurate.points.iter().map(|&c| (interval, c)));
         }
-        let points = self.places.len();
         self.evaluate(profile, parameters);
-        let mut pieces = Vec::with_capacity(profile.intervals());
-        let mut row_sums = vec![0.0; self.n];
-        for interval in 0..profile.intervals() {
-            let (mut norm, mut trace) = (0.0f64, 0.0);
-            for point in interval * (m + 1)..(interval + 1) * (m + 1) {
-                row_sums.fill(0.0);
-                for (entry, &(a, b)) in self.entries.iter().enumerate() {
-                    if a == b {
-                        trace += self.jacobian[entry * points + point];
-                    }
-                    row_sums[a] += (self.jacobian[entry * points + point] * scales[b] / scales[a]).abs();
-                }
-                norm = row_sums.iter().fold(norm, |norm, sum| norm.max(*sum));
-            }
-            let length = (profile.mesh[interval + 1] - profile.mesh[interval]) * profile.period;
-            let wanted = (norm * length * fineness / (0.5 * m as f64)).ceil();
-            let stiffness = match () {
-                () if wanted <= MOST_PIECES as f64 => Stiffness::None,
-                () if trace > 0.0 => Stiffness::Repelling,
-                () => Stiffness::Damped,
-            };
-            let count = if stiffness == Stiffness::None { (wanted as usize).max(1) } else { MOST_PIECES };
-            pieces.extend((0..count).map(|k| Piece {
-                interval,
-                from: k as f64 / count as f64,
-                length: 1.0 / count as f64,
-                stiffness,
-            }));
-        }
-        pieces
+        let lengths: Vec<f64> = profile.mesh.windows(2).map(|pair| (pair[1] - pair[0]) * profile.period).collect();
+        let samples = Samples {
+            lengths: &lengths,
+            per_interval: m + 1,
+            entries: &self.entries,
+            jacobian: &self.jacobian,
+            scales,
+        };
+        self.mesh.plan(&samples, fineness)
     }
 
     /// Solves `K_l - step A_l Sum_j a_lj K_j = A_l` (scaled) for all n right sides and appends `I + step Sum b_j K_j`.

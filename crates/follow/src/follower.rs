@@ -159,6 +159,10 @@ impl<'a, Q: Problem> Follower<'a, Q> {
     pub fn stride(&self) -> f64 {
         self.stride
     }
+    /// Asks for another next stride, within the shortest and the longest; the control of strides goes on from there.
+    pub fn ask_stride(&mut self, stride: f64) {
+        self.stride = stride.clamp(self.settings.shortest, self.settings.longest);
+    }
     /// The problem with the last two stations, to ask it something about the step between them.
     #[allow(clippy::type_complexity)]
     pub fn parts(&mut self) -> (&mut Q, Option<&Station<Q::Point, Q::Tangent>>, &Station<Q::Point, Q::Tangent>) {
@@ -336,12 +340,12 @@ impl<'a, Q: Problem> Follower<'a, Q> {
         const FEWEST: usize = 8;
         /// Part of the last step within which the plane's point is the start itself.
         const SAME: f64 = 1e-4;
-        let near = self.problem.distance(&self.current.point, &self.first.point) <= length;
-        if self.taken < FEWEST || !near {
+        if self.taken < FEWEST {
             return false;
         }
+        let Some(near) = self.problem.met_again(&self.current.point, &self.first.point, length) else { return false };
         let closing = Closing::Component { from: &self.first.point, direction: &self.first.tangent, amount: 0.0 };
-        match self.problem.correct(&self.current.point, closing) {
+        match self.problem.correct(&near, closing) {
             Ok(met) => self.problem.distance(&met.point, &self.first.point) <= SAME * length,
             Err(_) => false,
         }

@@ -107,6 +107,10 @@ pub trait Problem {
     fn inner(&self, a: &Self::Tangent, b: &Self::Tangent) -> f64;
     /// Distance of two points of one branch in the same metric.
     fn distance(&self, a: &Self::Point, b: &Self::Point) -> f64;
+    /// `point` told as `first` is told where a solution has several descriptions, if it is within a distance of it then.
+    fn met_again(&self, point: &Self::Point, first: &Self::Point, within: f64) -> Option<Self::Point> {
+        (self.distance(point, first) <= within).then(|| point.clone())
+    }
     /// Value of the parameter.
     fn parameter(&self, point: &Self::Point) -> f64;
     /// Watched values and the unstable count, the tangent given.

@@ -38,6 +38,8 @@
 //! assert!((point.multipliers[0].log_modulus + std::f64::consts::PI).abs() < 1e-9);
 //! ```
 
+mod agreement;
+mod align;
 mod locate;
 mod measure;
 mod normal_form;
@@ -49,7 +51,7 @@ mod spectrum;
 mod switch;
 mod test_function;
 
-pub use armilla_collocation::Fault;
+pub use armilla_collocation::{Fault, MapsFault, TooStiff};
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;
 pub use normal_form::DoublingForm;

@@ -308,11 +308,11 @@ impl CycleProblem {
             means: measures.means,
             spreads: measures.spreads,
             multipliers: spectrum.multipliers,
+            unresolved: spectrum.unresolved,
             intervals: profile.intervals(),
             degree: profile.degree,
             choice: point.choice,
             reached,
-            unresolved: None,
         })
     }
 
@@ -370,6 +370,11 @@ impl CycleProblem {
         self.metric =
             Metric { scales: self.largest.clone(), period_scale: point.unknowns.period, ..self.metric.clone() };
         self.system.set_metric(self.metric.clone());
+    }
+
+    /// Estimated roundoff of the parameter, as a standard deviation, where the last tangent was computed.
+    pub fn parameter_roundoff(&self) -> f64 {
+        self.parameter_roundoff + f64::EPSILON * self.metric.parameter_scale
     }
 
     /// Parameter component of a unit tangent below which its sign is roundoff: that of the parameter at the last tangent,
@@ -489,6 +494,10 @@ impl Problem for CycleProblem {
             parameter: a.unknowns.parameter - b.unknowns.parameter,
         };
         self.metric.inner(a.tables(), &a.mesh, &difference, &difference).sqrt()
+    }
+
+    fn met_again(&self, point: &CyclePoint, first: &CyclePoint, within: f64) -> Option<CyclePoint> {
+        self.shifted_towards(point, first, within)
     }
 
     fn parameter(&self, point: &CyclePoint) -> f64 {

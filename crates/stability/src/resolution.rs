@@ -150,6 +150,11 @@ impl CycleProblem {
         }
     }
 
+    /// Degree and mesh better than those of a point, if there are such.
+    pub(crate) fn grid_for(&mut self, point: &CyclePoint) -> Option<(usize, Arc<[f64]>)> {
+        self.better_grid(point).map(|grid| (grid.degree, grid.mesh))
+    }
+
     /// A degree and a mesh that suit the point, or none where the present ones do: its error is within the accuracy, it
     /// has not many more intervals than needed, and no other degree does it with clearly less work.
     fn better_grid(&mut self, point: &CyclePoint) -> Option<Grid> {

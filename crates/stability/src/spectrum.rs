@@ -7,41 +7,51 @@
 //! deflated multiplier is from 1, and how far the sum of all log-moduli is from the integral of the divergence
 //! (Liouville's formula).
 
-use armilla_collocation::{Variational, VariationalMaps};
-use armilla_linalg::{NotConverged, PeriodicSchur, ScaledMultiplier, Singular};
+use armilla_collocation::{MapsFault, Variational, VariationalMaps};
+use armilla_linalg::{NotConverged, PeriodicSchur, ScaledMultiplier};
 use armilla_model::VectorField;
-use armilla_record::{Multiplier, Profile};
+use armilla_record::{Multiplier, Profile, Unresolved};
+
+use crate::agreement::{Reading, Resolved, SideUnknown};
 
 /// Multipliers of a cycle with their audits.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Spectrum {
-    /// The n-1 multipliers besides the trivial one, largest modulus first.
+    /// The n-1 multipliers besides the trivial one and those that are not resolved, largest modulus first.
     pub multipliers: Vec<Multiplier>,
     /// |trivial multiplier - 1|.
     pub trivial_defect: f64,
-    /// |sum of log-moduli - integral of the divergence|.
+    /// |sum of log-moduli - integral of the divergence|. Where a multiplier is given by that integral: by how much it
+    /// may be off, from the trivial multiplier and from how far two linear meshes agree on the others.
     pub liouville_defect: f64,
-    /// Whether a stretch was too stiff for the accurate scheme: moduli far below 1 are then not resolved.
+    /// Whether a stretch was too stiff for the accurate scheme.
     pub damped: bool,
+    /// Multipliers too small to be told from each other; never outside the unit circle.
+    pub unresolved: Option<Unresolved>,
 }
 
 /// Why there are no multipliers.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum SpectrumFault {
-    /// A stage system of the variational equation is singular or not finite.
-    Singular(Singular),
+    /// The variational equation could not be passed.
+    Maps(MapsFault),
     /// The periodic QR iteration did not converge.
     NotConverged(NotConverged),
     /// The rate vanishes at a mesh point: the cycle touches an equilibrium.
     AtRest,
+    /// Damping and repulsion along the cycle are too strong to tell on which side of the unit circle a multiplier lies.
+    SideUnknown,
 }
 
 impl std::fmt::Display for SpectrumFault {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         match self {
-            Self::Singular(fault) => fault.fmt(f),
+            Self::Maps(fault) => fault.fmt(f),
             Self::NotConverged(fault) => fault.fmt(f),
             Self::AtRest => write!(f, "the cycle touches an equilibrium"),
+            Self::SideUnknown => {
+                write!(f, "damping and repulsion along the cycle are too strong to tell whether it is stable")
+            }
         }
     }
 }
@@ -109,7 +119,8 @@ impl SpectrumSolver {
     }
 
     /// Spectrum of the cycle `profile` of an autonomous field; `scales` are the sizes of the states, `accuracy` the wanted
-    /// agreement with Liouville's formula relative to the sum of all |log mu|: the linear mesh is refined until it holds.
+    /// agreement with Liouville's formula relative to the sum of all |log mu|, or of two linear meshes: the linear mesh
+    /// is refined until it holds.
     ///
     /// # Errors
     /// [`SpectrumFault`].
@@ -120,54 +131,107 @@ impl SpectrumSolver {
         scales: &[f64],
         accuracy: f64,
     ) -> Result<Spectrum, SpectrumFault> {
-        let mut best: Option<Spectrum> = None;
-        for fineness in FINENESS {
-            let spectrum = self.spectrum_on(profile, parameters, (scales, fineness))?;
-            let size: f64 = spectrum.multipliers.iter().map(|mu| mu.log_modulus.abs()).filter(|x| x.is_finite()).sum();
-            let before = best.as_ref().map_or(f64::INFINITY, |best| best.liouville_defect);
-            let good = spectrum.liouville_defect <= accuracy * size.max(1.0);
-            // Past roundoff, or where a stretch is too stiff to resolve, more pieces do not help.
-            let planar = profile.n_states == 2;
-            let stalled = !(spectrum.liouville_defect < 0.5 * before) || spectrum.damped || planar;
-            if best.is_none() || spectrum.liouville_defect < before {
-                best = Some(spectrum);
-            }
-            if good || stalled {
-                break;
-            }
+        let enough = self.variational.fineness_for(accuracy);
+        let mut on = |refinement: f64| self.reading(profile, parameters, (scales, enough * refinement));
+        let coarse = on(FINENESS[0])?;
+        match () {
+            () if profile.n_states == 2 => Ok(planar(&coarse)),
+            () if coarse.dropped == 0 => by_formula(coarse, on, accuracy),
+            () => by_comparison(coarse, on, accuracy),
         }
-        best.ok_or(SpectrumFault::NotConverged(NotConverged))
     }
 
-    fn spectrum_on(
+    /// What the linear mesh of one fineness gives.
+    fn reading(
         &mut self,
         profile: &Profile,
         parameters: &[f64],
         (scales, fineness): (&[f64], f64),
-    ) -> Result<Spectrum, SpectrumFault> {
-        let maps = self.variational.maps(profile, parameters, scales, fineness).map_err(SpectrumFault::Singular)?;
+    ) -> Result<Reading, SpectrumFault> {
+        let maps = self.variational.maps(profile, parameters, scales, fineness).map_err(SpectrumFault::Maps)?;
         let trivial = deflate(&maps, scales, &mut self.reduced)?;
-        let n = maps.n;
-        self.schur.multipliers(n - 1, &self.reduced, &mut self.found).map_err(SpectrumFault::NotConverged)?;
-        let sum: f64 = trivial + self.found.iter().map(|mu| mu.log_modulus).sum::<f64>();
-        let multipliers: Vec<Multiplier> = if n == 2 {
-            // In the plane Liouville's formula is the multiplier itself, and it is positive: the flow keeps orientation.
-            // The audit below then tells how far the interval maps are from it.
-            vec![Multiplier { log_modulus: maps.divergence, angle: 0.0 }]
-        } else {
-            self.found.iter().map(|mu| Multiplier { log_modulus: mu.log_modulus, angle: mu.angle }).collect()
-        };
-        // Maps of a stretch passed by the L-stable scheme are not meant to satisfy the formula.
-        let planar_and_stiff = n == 2 && maps.damped;
-        let liouville_defect = if planar_and_stiff { trivial.abs() } else { (sum - maps.divergence).abs() };
-        Ok(Spectrum {
-            multipliers,
-            trivial_defect: trivial.exp_m1().abs(),
-            // An exact zero multiplier has no logarithm to compare.
-            liouville_defect: if liouville_defect.is_nan() { f64::INFINITY } else { liouville_defect },
-            damped: maps.damped,
+        self.schur.multipliers(maps.n - 1, &self.reduced, &mut self.found).map_err(SpectrumFault::NotConverged)?;
+        let multiplier = |mu: &ScaledMultiplier| Multiplier { log_modulus: mu.log_modulus, angle: mu.angle };
+        Ok(Reading {
+            multipliers: self.found.iter().map(multiplier).collect(),
+            trivial,
+            divergence: maps.divergence,
+            stiffness: maps.stiffness,
+            dropped: maps.dropped,
         })
     }
+}
+
+/// In the plane Liouville's formula is the multiplier itself, and it is positive: the flow keeps orientation. The audit
+/// then tells how far the interval maps are from it, unless an L-stable scheme is not meant to be near.
+fn planar(reading: &Reading) -> Spectrum {
+    let liouville_defect = if reading.dropped > 0 { reading.trivial.abs() } else { reading.defect() };
+    Spectrum {
+        multipliers: vec![Multiplier { log_modulus: reading.divergence, angle: 0.0 }],
+        trivial_defect: reading.trivial.exp_m1().abs(),
+        liouville_defect,
+        damped: reading.dropped > 0,
+        unresolved: None,
+    }
+}
+
+/// Everything is resolved: refined until Liouville's formula holds, or roundoff forbids.
+fn by_formula(
+    mut best: Reading,
+    mut refined: impl FnMut(f64) -> Result<Reading, SpectrumFault>,
+    accuracy: f64,
+) -> Result<Spectrum, SpectrumFault> {
+    for &fineness in &FINENESS[1..] {
+        if best.defect() <= accuracy * best.size().max(1.0) {
+            break;
+        }
+        let finer = refined(fineness)?;
+        // Past roundoff more pieces do not help.
+        let stalled = !(finer.defect() < 0.5 * best.defect());
+        if finer.defect() < best.defect() {
+            best = finer;
+        }
+        if stalled {
+            break;
+        }
+    }
+    Ok(Spectrum {
+        trivial_defect: best.trivial.exp_m1().abs(),
+        liouville_defect: best.defect(),
+        multipliers: best.multipliers,
+        damped: false,
+        unresolved: None,
+    })
+}
+
+/// Some directions are not: refined until no more multipliers differ from mesh to mesh than were left to an L-stable
+/// scheme.
+fn by_comparison(
+    mut coarse: Reading,
+    mut refined: impl FnMut(f64) -> Result<Reading, SpectrumFault>,
+    accuracy: f64,
+) -> Result<Spectrum, SpectrumFault> {
+    let mut fine = refined(FINENESS[1])?;
+    for &fineness in &FINENESS[2..] {
+        if fine.n_doubtful(&coarse, accuracy) <= fine.dropped {
+            break;
+        }
+        match refined(fineness) {
+            Ok(finer) => (coarse, fine) = (fine, finer),
+            // More pieces than allowed: what is known must do.
+            Err(SpectrumFault::Maps(MapsFault::TooStiff(_))) => break,
+            Err(fault) => return Err(fault),
+        }
+    }
+    let Resolved { multipliers, unresolved, defect } =
+        fine.resolve(&coarse, accuracy).map_err(|SideUnknown| SpectrumFault::SideUnknown)?;
+    Ok(Spectrum {
+        multipliers,
+        trivial_defect: fine.trivial.exp_m1().abs(),
+        liouville_defect: defect,
+        damped: true,
+        unresolved,
+    })
 }
 
 /// Refinements of the linear mesh tried in turn.
@@ -250,7 +314,7 @@ mod tests {
 
     fn of(multipliers: &[(f64, f64)]) -> Spectrum {
         let multipliers = multipliers.iter().map(|&(log_modulus, angle)| Multiplier { log_modulus, angle }).collect();
-        Spectrum { multipliers, trivial_defect: 0.0, liouville_defect: 0.0, damped: false }
+        Spectrum { multipliers, trivial_defect: 0.0, liouville_defect: 0.0, damped: false, unresolved: None }
     }
 
     #[test]

@@ -18,7 +18,7 @@ use crate::problem::{CycleProblem, Sizes};
 pub struct Doubled {
     /// The problem of the doubled branch, with its own metric.
     pub problem: CycleProblem,
-    /// The critical cycle told twice: where the branch is born.
+    /// The critical cycle told twice, on the mesh of the branch: where the branch is born.
     pub birth: CyclePoint,
     /// The first cycle with a split between its turns.
     pub point: CyclePoint,
@@ -70,18 +70,38 @@ impl CycleProblem {
         let birth = CyclePoint::from_profile(&birth_profile, value);
         let outwards = direction(&problem, &birth, located);
         let forecast = form.and_then(|form| Forecast::new(&problem, located, form));
-        let mut amplitude = forecast.as_ref().map_or(AMPLITUDE, |forecast| forecast.amplitude.min(LARGEST));
-        for _ in 0..HALVINGS {
-            let offset = forecast.as_ref().map_or(0.0, |forecast| forecast.offset_at(amplitude));
-            let found = first_cycle(&mut problem, (&birth, &outwards), amplitude, offset);
-            // A branch on the side the normal form denies is one of the discretisation.
-            let sided = |point: &CyclePoint| offset == 0.0 || (point.unknowns.parameter - value) * offset > 0.0;
-            if let Some(point) = found.filter(sided) {
-                return Ok(on_own_mesh(Doubled { problem, birth, point, outwards, amplitude }));
+        // The located cycle stands on a mesh refined for its error; one for the accuracy alone has several times fewer
+        // intervals. Where the branch has no cycle on it (a coarse accuracy shifts the birth), the fine one remains.
+        let own = problem.own_mesh(&birth).map(|own| {
+            let outwards = outwards.on_mesh(own.degree, &own.mesh);
+            (own, outwards)
+        });
+        for (birth, outwards) in own.into_iter().chain([(birth, outwards)]) {
+            let mut amplitude = forecast.as_ref().map_or(AMPLITUDE, |forecast| forecast.amplitude.min(LARGEST));
+            for _ in 0..HALVINGS {
+                let offset = forecast.as_ref().map_or(0.0, |forecast| forecast.offset_at(amplitude));
+                let found = first_cycle(&mut problem, (&birth, &outwards), amplitude, offset);
+                // A branch on the side the normal form denies is one of the discretisation.
+                let sided = |point: &CyclePoint| offset == 0.0 || (point.unknowns.parameter - value) * offset > 0.0;
+                if let Some(point) = found.filter(sided) {
+                    return Ok(on_own_mesh(Doubled { problem, birth, point, outwards, amplitude }));
+                }
+                amplitude *= 0.5;
             }
-            amplitude *= 0.5;
         }
         Err(SwitchFault)
+    }
+
+    /// `fine` carried to a mesh that holds it to the accuracy with less work, if there is one. Each round the estimate comes
+    /// from a better mesh, the values from the fine one.
+    fn own_mesh(&mut self, fine: &CyclePoint) -> Option<CyclePoint> {
+        const ROUNDS: usize = 4;
+        let mut own: Option<CyclePoint> = None;
+        for _ in 0..ROUNDS {
+            let Some((degree, mesh)) = self.grid_for(own.as_ref().unwrap_or(fine)) else { break };
+            own = Some(fine.on_mesh(degree, &mesh));
+        }
+        own.filter(|own| own.unknowns.nodes.len() < fine.unknowns.nodes.len())
     }
 
     /// Size of the part of a cycle that changes sign from one half of the period to the other, in the metric: 0 for a

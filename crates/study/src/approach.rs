@@ -2,7 +2,10 @@
 //!
 //! Near a saddle loop `T = a - b ln|p - p*|`; near a saddle-node on a loop `T = a + b |p - p*|^(-1/2)` (Shilnikov,
 //! Shilnikov, Turaev & Chua 2001, Methods of Qualitative Theory in Nonlinear Dynamics II, ch. 12 and 13; from memory);
-//! where a frequency goes to zero, `T = a + b / |p - p*|`. Each has three constants; three points fix them, two further ones judge them.
+//! where a frequency goes to zero, `T = a + b / |p - p*|`. Each has three constants; three points fix
+//! them, those before judge them.
+
+use crate::walk::Walked;
 
 /// A law of approach.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -54,9 +57,25 @@ const STILL: f64 = 1e-12;
 const STEEP: f64 = 1e3;
 /// See [`STEEP`].
 const GROWN_STEEPLY: f64 = 20.0;
+/// Change of the extremes of the states over the window, relative to their ranges, per growth of the logarithm of the
+/// period: on the way to a loop the orbit stands still while its period grows. In a canard explosion the parameter stands
+/// still too, but the orbit grows with the period.
+const SHAPE: f64 = 0.1;
 
-/// Tells an approach from the history of (parameter, period), oldest first; `width` is that of the asked range.
-pub(crate) fn approach(history: &[(f64, f64)], width: f64) -> Option<Approach> {
+/// How well the numbers of a history are known.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Known {
+    /// Width of the asked range.
+    pub width: f64,
+    /// Relative error of periods.
+    pub period: f64,
+    /// Error of the parameter on a branch.
+    pub parameter: f64,
+}
+
+/// Tells an approach from the history of (parameter, period), oldest first.
+pub(crate) fn approach(history: &[(f64, f64)], known: Known) -> Option<Approach> {
+    let width = known.width;
     let least = history.iter().map(|point| point.1).fold(f64::INFINITY, f64::min);
     let window = &history[history.len().checked_sub(WINDOW)?..];
     let (first, last) = (window[0], window[WINDOW - 1]);
@@ -67,27 +86,47 @@ pub(crate) fn approach(history: &[(f64, f64)], width: f64) -> Option<Approach> {
     if !growing || !(still || steep) {
         return None;
     }
-    let moving = moving_part(history, width);
+    let moving = moving_part(history, known);
     [Law::Logarithm, Law::InverseRoot, Law::Inverse]
         .into_iter()
         .filter_map(|law| fit(law, &moving).map(|(limit, misfit)| (law, limit, misfit)))
         .min_by(|a, b| a.2.total_cmp(&b.2))
-        .map(|(law, limit, _)| Approach { law, limit, error: error(law, limit, &moving, width) })
+        .map(|(law, limit, _)| Approach { law, limit, error: error(law, limit, &moving, known) })
         .or(Some(Approach { law: Law::Logarithm, limit: last.0, error: travelled * width + f64::EPSILON * width }))
 }
 
-/// The last points whose parameters still differ by more than roundoff.
-fn moving_part(history: &[(f64, f64)], width: f64) -> Vec<(f64, f64)> {
-    let resolved = 1e4 * f64::EPSILON * width;
+/// Whether the orbit stands still over the last points while its period grows.
+pub(crate) fn orbit_stands(points: &[Walked]) -> bool {
+    let Some(start) = points.len().checked_sub(WINDOW) else { return false };
+    let (first, last) = (&points[start].point, &points[points.len() - 1].point);
+    let range = |k: usize| last.maxima[k] - last.minima[k];
+    let moved = |k: usize| (last.maxima[k] - first.maxima[k]).abs().max((last.minima[k] - first.minima[k]).abs());
+    let allowed = SHAPE * (last.period / first.period).ln();
+    (0..last.maxima.len()).all(|k| moved(k) <= allowed * range(k))
+}
+
+/// The points whose parameters still differ by much more than their error.
+fn moving_part(history: &[(f64, f64)], known: Known) -> Vec<(f64, f64)> {
+    let resolved = (1e4 * f64::EPSILON * known.width).max(RESOLVED * known.parameter);
     let mut end = history.len();
     while end >= 2 && (history[end - 1].0 - history[end - 2].0).abs() < resolved {
         end -= 1;
     }
-    history[end.saturating_sub(WINDOW)..end].to_vec()
+    // Only the last stretch on which the period grows and the parameter goes one way belongs to the approach.
+    let goes_on = |k: usize| {
+        let step = |k: usize| history[k + 1].0 - history[k].0;
+        history[k + 1].1 > history[k].1 && (k + 2 >= end || step(k) * step(k + 1) > 0.0)
+    };
+    let mut start = end.saturating_sub(1);
+    while start > 0 && goes_on(start - 1) {
+        start -= 1;
+    }
+    history[start..end].to_vec()
 }
 
-/// Limit from the last three points, and how far the two before miss the law, relative to the growth of the period.
+/// Limit from the last three points, and how far the window before misses the law, relative to the growth of the period.
 fn fit(law: Law, points: &[(f64, f64)]) -> Option<(f64, f64)> {
+    let points = &points[points.len().saturating_sub(WINDOW)..];
     let [.., (p1, t1), (p2, t2), (p3, t3)] = *points else { return None };
     let step = p3 - p2;
     let wanted = (t2 - t1) / (t3 - t2);
@@ -114,17 +153,41 @@ fn fit(law: Law, points: &[(f64, f64)]) -> Option<(f64, f64)> {
     Some((p3 + distance * step.signum(), misfit))
 }
 
-/// Difference to the limit without the last point, and roundoff of the parameter.
-fn error(law: Law, limit: f64, points: &[(f64, f64)], width: f64) -> f64 {
-    let without = fit(law, &points[..points.len().saturating_sub(1)]);
-    let spread =
-        without.map_or(points.last().map_or(width, |last| (limit - last.0).abs()), |(other, _)| (limit - other).abs());
-    spread + 16.0 * f64::EPSILON * width.max(limit.abs())
+/// Difference to the limit told from points twice as far away, what errors of the periods move, and roundoff of the
+/// parameter.
+///
+/// What the law leaves out is smaller than its growing term by the square of the distance (by its square times a
+/// logarithm at a saddle loop), and moves the limit by as much: the limit from twice as far away is off at least three
+/// times as far, and the difference covers the error.
+fn error(law: Law, limit: f64, points: &[(f64, f64)], known: Known) -> f64 {
+    let last = points.last().map_or(limit, |last| last.0);
+    let distance = (limit - last).abs();
+    let farther = points.iter().rposition(|(p, _)| (limit - p).abs() >= 2.0 * distance);
+    let before = farther.and_then(|at| fit(law, &points[..=at]));
+    // Without points that far away nothing tells how well the law holds.
+    let by_law = before.map_or(distance, |(other, _)| (limit - other).abs());
+    // The worst for a ratio of differences: the middle of three against its neighbours.
+    let moved = |value: f64, period: f64| {
+        let mut points = points.to_vec();
+        if let [.., middle, _] = &mut points[..] {
+            *middle = (middle.0 + value, middle.1 * (1.0 + period));
+        }
+        fit(law, &points).map_or(distance, |(other, _)| (limit - other).abs())
+    };
+    let value = known.parameter;
+    let by_noise = moved(value, 0.0).max(moved(-value, 0.0)) + moved(0.0, known.period).max(moved(0.0, -known.period));
+    by_law + by_noise + value + 16.0 * f64::EPSILON * known.width.max(limit.abs())
 }
+
+/// Differences of neighbouring parameters, in their errors, that a limit is told from: larger leaves more of what the law
+/// leaves out, smaller more noise.
+const RESOLVED: f64 = 100.0;
 
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    const KNOWN: Known = Known { width: 1.0, period: 1e-12, parameter: 1e-15 };
 
     fn history(law: Law, limit: f64, steps: usize) -> Vec<(f64, f64)> {
         // Strides of about equal growth of the period, as a follower makes them.
@@ -143,10 +206,10 @@ mod tests {
     /// Exact by construction: each law with a planted limit.
     #[test]
     fn planted_limits_return() {
-        let found = approach(&history(Law::Logarithm, 0.7, 40), 1.0).expect("grows without bound");
+        let found = approach(&history(Law::Logarithm, 0.7, 40), KNOWN).expect("grows without bound");
         assert_eq!(found.law, Law::Logarithm);
         assert!((found.limit - 0.7).abs() <= found.error && found.error < 1e-9, "{found:?}");
-        let found = approach(&history(Law::InverseRoot, -0.2, 120), 1.0).expect("grows without bound");
+        let found = approach(&history(Law::InverseRoot, -0.2, 120), KNOWN).expect("grows without bound");
         assert_eq!(found.law, Law::InverseRoot);
         assert!((found.limit + 0.2).abs() <= found.error && found.error < 1e-4, "{found:?}");
     }
@@ -154,7 +217,7 @@ mod tests {
     /// Exact by construction: a rotation whose frequency is the parameter.
     #[test]
     fn a_vanishing_frequency_is_told() {
-        let found = approach(&history(Law::Inverse, 0.0, 400), 1.0).expect("grows without bound");
+        let found = approach(&history(Law::Inverse, 0.0, 400), KNOWN).expect("grows without bound");
         assert_eq!(found.law, Law::Inverse);
         assert!(found.limit.abs() <= found.error && found.error < 1e-3, "{found:?}");
     }
@@ -163,6 +226,6 @@ mod tests {
     #[test]
     fn proportional_growth_is_no_blow_up() {
         let history: Vec<(f64, f64)> = (1..200).map(|k| (5.0 * k as f64, 8.0 * k as f64)).collect();
-        assert_eq!(approach(&history, 1000.0), None);
+        assert_eq!(approach(&history, Known { width: 1000.0, ..KNOWN }), None);
     }
 }

@@ -7,8 +7,10 @@ use armilla_follow::{Orientation, Problem};
 use armilla_record::{BRANCH_FORMAT, Branch, End, EndReason, Event, EventKind, Point, Quantity, StoredProfile};
 use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, Doubled, DoublingForm, Located, Measures};
 
+use crate::ahead::Ahead;
 use crate::ends::{end, short};
 use crate::error::StudyError;
+use crate::prediction::{Estimate, next_doubling};
 use crate::progress::{Observer, Progress};
 use crate::settings::follow_settings;
 use crate::step_events::{Found, at_parameter};
@@ -18,6 +20,10 @@ use crate::walk::{Walk, WalkPlan, WalkSink, Walked, walk};
 /// Every k-th profile is kept in a branch file; the first and the last always.
 const KEEP_EVERY: usize = 10;
 
+/// Longest first stride of a doubled branch, in distances already travelled from its birth, where the next doubling is
+/// predicted: as much as a stride may grow from one to the next.
+const TOWARDS_PREDICTED: f64 = 3.0;
+
 /// Where a branch comes from.
 #[derive(Clone, Debug)]
 pub(crate) struct Lineage {
@@ -25,6 +31,8 @@ pub(crate) struct Lineage {
     pub born_at: Option<String>,
     pub doublings: usize,
     pub turns: usize,
+    /// Thresholds of the doublings it descends from, its own birth last.
+    pub line: Vec<Estimate>,
 }
 
 /// A doubling at which a branch is born.
@@ -149,6 +157,7 @@ fn plan<'a>(run: &Run<'a>, lineage: &Lineage, sign: f64) -> WalkPlan<'a> {
         sign,
         abort: run.abort,
         to_first_doubling: run.to_first_doubling,
+        ahead: None,
     }
 }
 
@@ -162,9 +171,9 @@ fn both_ways(
     let first = problem.describe(&start, lineage.turns, 0.0).map_err(|fault| no_cycle(fault.to_string()))?;
     let stuck = || no_cycle("the cycle at the start cannot be continued in the followed parameter".into());
     let up = problem.tangent(&start, Orientation::Parameter(1.0)).map_err(|_| stuck())?;
-    let plans = (plan(run, lineage, 1.0), -1.0);
     let mut collector = collector(run, lineage);
     collector.point(&first);
+    let plans = (plan(collector.run, lineage, 1.0), -1.0);
     let found = at_parameter(&mut problem, EventKind::Start, &start, 0.0);
     collector.event(&problem, &found);
     if plans.0.settings.targets.contains(&start.unknowns.parameter) {
@@ -197,11 +206,18 @@ fn outwards(run: &mut Run<'_>, lineage: &Lineage, doubled: Doubled) -> Result<Fi
     let tangent = problem
         .tangent(&point, Orientation::Along(&outwards))
         .map_err(|_| no_cycle("the doubled cycle cannot be continued".into()))?;
-    let mut plan = plan(run, lineage, 1.0);
-    plan.settings.initial = amplitude.clamp(plan.settings.shortest, plan.settings.longest);
     let mut collector = collector(run, lineage);
     collector.point(&first);
     collector.point(&second);
+    let mut plan = plan(collector.run, lineage, 1.0);
+    plan.ahead = next_doubling(&lineage.line).map(|predicted| Ahead {
+        birth: birth.unknowns.parameter,
+        value: predicted.value,
+        offset: amplitude,
+    });
+    let known = plan.ahead.is_some_and(|ahead| ahead.leads_from(point.unknowns.parameter));
+    let initial = if known { TOWARDS_PREDICTED * amplitude } else { amplitude };
+    plan.settings.initial = initial.clamp(plan.settings.shortest, plan.settings.longest);
     let mut found = at_parameter(&mut problem, EventKind::Start, &point, amplitude);
     found.note = lineage.born_at.as_ref().map(|parent| format!("first cycle beyond {parent}")).unwrap_or_default();
     collector.event(&problem, &found);

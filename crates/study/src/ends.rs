@@ -1,14 +1,14 @@
 //! Why a walk ends: at rest, at its own birth, without bound, or as the follower says; in words.
 
 use armilla_follow::{FollowEnd, Follower};
-use armilla_record::{End, EndReason, EventKind};
-use armilla_stability::{CycleProblem, Fault};
+use armilla_record::{End, EndReason, EventKind, Point};
+use armilla_stability::{CyclePoint, CycleProblem, Fault};
 
 use crate::approach::Approach;
 use crate::rest::{Motion, Rest, birth, guess};
-use crate::step_events::{Found, unresolved};
+use crate::step_events::{Found, SUPERCONVERGENCE, unresolved};
 use crate::study::Study;
-use crate::walk::{CycleStation, WalkPlan};
+use crate::walk::{CycleStation, WalkPlan, Walked};
 
 /// An end from its parts.
 pub(crate) fn end(reason: EndReason, value: f64, words: String) -> End {
@@ -26,11 +26,12 @@ pub(crate) enum Passage {
 }
 
 /// Whether the last step went through an equilibrium or through the branch's own birth; the walk is over then, and the
-/// last point, already on the way back, is not kept.
+/// last point, already on the way back, is not kept. `motions` and `points` are what was seen before.
 pub(crate) fn passed_through(
     follower: &mut Follower<'_, CycleProblem>,
     plan: &WalkPlan<'_>,
     motions: &[Motion],
+    points: &[Walked],
 ) -> Passage {
     /// Share of the largest motion of the walk that the last cycle before the passage must have fallen below.
     const SMALL: f64 = 0.3;
@@ -44,33 +45,72 @@ pub(crate) fn passed_through(
         }
         let Some(rest) = birth(problem, motions, scale(plan)) else { return Passage::TooLong };
         let value = rest.value;
-        let words = format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), short(plan.study, value));
+        let words =
+            format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), known(plan, (value, rest.error)));
         return Passage::End(end(EndReason::Equilibrium { value }, last, words), Some(rest));
     }
-    if plan.turns.is_multiple_of(2) && problem.passed_birth(&before.point, &after.point) {
-        let value = birth_value(problem, before, after);
+    // Whatever its turns: they count crossings of one state, which may have the longer period alone.
+    if problem.passed_birth(&before.point, &after.point) {
+        let sizes = sizes(points, (before, after), |point| problem.split(point));
+        let limit = even_limit(&sizes, worst_profile(points, problem.profile_error(&before.point)), plan);
+        let at = format!("{} = {}", with_unit_name(plan), known(plan, limit));
         let words = if plan.doubled {
-            format!("returns to its parent at {} = {}", with_unit_name(plan), short(plan.study, value))
+            format!("returns to its parent at {at}")
         } else {
-            format!(
-                "returns to the cycle of half its turns it was born from by a period doubling, at {} = {}",
-                with_unit_name(plan),
-                short(plan.study, value)
-            )
+            format!("returns to the cycle of half its period that it was born from by a period doubling, at {at}")
         };
-        return Passage::End(end(EndReason::ReturnsToParent, value, words), None);
+        return Passage::End(end(EndReason::ReturnsToParent, limit.0, words), None);
     }
     Passage::None
 }
 
-/// Parameter where the split between the turns vanishes: even in the split, so linear in its square.
-fn birth_value(problem: &CycleProblem, before: &CycleStation, after: &CycleStation) -> f64 {
-    let squares = [before, after].map(|station| problem.split(&station.point).powi(2));
-    let values = [before, after].map(|station| station.point.unknowns.parameter);
-    let value = (values[0] * squares[1] - values[1] * squares[0]) / (squares[1] - squares[0]);
-    let spread = (values[0] - values[1]).abs();
-    // Nearly equal splits on both sides leave the quotient to roundoff; the birth lies close to both then.
-    if (value - values[0]).abs() <= 10.0 * spread { value } else { values[0] }
+/// Sizes of what vanishes, with the parameter, at the last stations: in the metric of now, which may not be that of each
+/// station when it was passed.
+fn sizes(
+    points: &[Walked],
+    (before, after): (&CycleStation, &CycleStation),
+    size: impl Fn(&CyclePoint) -> f64,
+) -> Vec<(f64, f64)> {
+    /// Difference of two sizes, relative, below which their weights are roundoff.
+    const DIFFERENT: f64 = 0.1;
+    // `before` is the last of the points, unless it is the first station of the walk.
+    let earlier = &points[points.len().saturating_sub(EVEN_POINTS + WITNESSES)..];
+    let mut stations: Vec<&CyclePoint> = earlier.iter().map(|walked| &walked.cycle).collect();
+    if stations.is_empty() {
+        stations.push(&before.point);
+    }
+    stations.push(&after.point);
+    let mut kept: Vec<(f64, f64)> = Vec::new();
+    for point in stations {
+        let found = (size(point), point.unknowns.parameter);
+        // Of two of about the same size the smaller one, nearer to the end.
+        kept.retain(|(other, _)| (other - found.0).abs() > DIFFERENT * other.max(found.0) || *other < found.0);
+        if kept.iter().all(|(other, _)| (other - found.0).abs() > DIFFERENT * other.max(found.0)) {
+            kept.push(found);
+        }
+    }
+    kept
+}
+
+/// Largest error of a profile among the last stations.
+fn worst_profile(points: &[Walked], last: f64) -> f64 {
+    let earlier = &points[points.len().saturating_sub(EVEN_POINTS + WITNESSES)..];
+    earlier.iter().map(|walked| walked.point.profile_error).fold(last, f64::max)
+}
+
+/// A limit with its error, in the digits that the error leaves.
+fn known(plan: &WalkPlan<'_>, (value, error): (f64, f64)) -> String {
+    let shown = if value.abs() < error {
+        "0".to_string()
+    } else if error > 0.0 {
+        let digits = (value.abs().log10().floor() - error.log10().floor()).clamp(0.0, 14.0) as usize + 1;
+        format!("{value:.digits$e}")
+            .parse::<f64>()
+            .map_or_else(|_| short(plan.study, value), |value| format!("{value}"))
+    } else {
+        short(plan.study, value)
+    };
+    format!("{shown} ± {error:.0e}")
 }
 
 /// A number for a sentence: ten digits, and 0 where it is 0 to the roundoff of the asked range.
@@ -81,13 +121,47 @@ pub(crate) fn short(study: &Study, value: f64) -> String {
     format!("{shown}")
 }
 
+/// Stations a limit is told from.
+const EVEN_POINTS: usize = 3;
+/// Further stations its error is told from: one could agree by chance where two orders cancel.
+const WITNESSES: usize = 2;
+/// Factor on the change that a further station makes to a limit: the change is its error to leading order.
+const ORDER_MARGIN: f64 = 2.0;
+
+/// Parameter where a size vanishes, and its error: near a Hopf point the parameter is an even function of the amplitude
+/// (Hopf 1942), near a period doubling of the difference between the turns, so a polynomial in the square of the size
+/// through the nearest stations is extrapolated; further stations tell what it is off. Errors of the sizes, integrals over
+/// the cycle, and of the parameter converge as fast as thresholds do.
+fn even_limit(sizes: &[(f64, f64)], profile_error: f64, plan: &WalkPlan<'_>) -> (f64, f64) {
+    let mut sizes = sizes.to_vec();
+    sizes.sort_by(|a, b| a.0.total_cmp(&b.0));
+    sizes.truncate(EVEN_POINTS + WITNESSES);
+    // Where stations are few, the last one stays a witness.
+    let told = EVEN_POINTS.min(sizes.len() - 1).max(1);
+    let value = at_rest(&sizes[..told]);
+    let moved = (told..=sizes.len()).map(|count| (at_rest(&sizes[..count]) - value).abs()).fold(0.0, f64::max);
+    let by_order = ORDER_MARGIN * moved;
+    let scale = (plan.study.range.1 - plan.study.range.0).max(value.abs());
+    (value, by_order + (SUPERCONVERGENCE * profile_error + ROUNDOFF_UNITS * f64::EPSILON) * scale)
+}
+
+/// Units in the last place that a parameter is known to.
+const ROUNDOFF_UNITS: f64 = 16.0;
+
+/// Lagrange's polynomial in the square of the size, at 0.
+fn at_rest(sizes: &[(f64, f64)]) -> f64 {
+    let mut value = 0.0;
+    for (i, (size, parameter)) in sizes.iter().enumerate() {
+        let others = sizes.iter().enumerate().filter(|(j, _)| *j != i);
+        let weight: f64 = others.map(|(_, (other, _))| other * other / (other * other - size * size)).product();
+        value += weight * parameter;
+    }
+    // Two equal sizes leave no weights; the last station then stands for the end.
+    if value.is_finite() { value } else { sizes[sizes.len() - 1].1 }
+}
+
 /// The birth of the cycle at an equilibrium as an event: the last cycle shrunk to its mean.
-pub(crate) fn birth_of_cycle(
-    before: &CycleStation,
-    problem: &CycleProblem,
-    rest: Rest,
-    plan: &WalkPlan<'_>,
-) -> Found {
+pub(crate) fn birth_of_cycle(before: &CycleStation, problem: &CycleProblem, rest: Rest, plan: &WalkPlan<'_>) -> Found {
     let note = "extrapolated from the last cycles".to_string();
     let mut event = unresolved(before, (rest.value, rest.error), note, plan);
     (event.point.unknowns.period, event.period_error) = (rest.period, Some(rest.period_error));
@@ -107,8 +181,8 @@ pub(crate) fn blown_up(current: &CycleStation, plan: &WalkPlan<'_>, approach: Ap
     let mut event = unresolved(current, (approach.limit, approach.error), format!("the period grows {law}"), plan);
     event.kind = EventKind::PeriodBlowUp;
     let name = with_unit_name(plan);
-    let words =
-        format!("the period grows without bound towards {name} = {} ({law})", short(plan.study, approach.limit));
+    let limit = known(plan, (approach.limit, approach.error));
+    let words = format!("the period grows without bound towards {name} = {limit} ({law})");
     (event, end(EndReason::PeriodBlowUp, current.point.unknowns.parameter, words))
 }
 
@@ -120,6 +194,25 @@ fn scale(plan: &WalkPlan<'_>) -> f64 {
 
 fn with_unit_name(plan: &WalkPlan<'_>) -> String {
     plan.study.file.follow.parameter.clone()
+}
+
+/// The end of a walk whose last cycle is not resolved any more: what follows from it would be the mesh's doing.
+pub(crate) fn resolution_lost(point: &Point, plan: &WalkPlan<'_>) -> Option<End> {
+    /// Error of a profile, relative to the range of a state, that shows in a figure. Accuracies asked for lie below, and a
+    /// mesh that may grow keeps to them; one fixed by the study, or at its limit, may come here.
+    const LOST: f64 = 1e-2;
+    // Written so that NaN is lost, too.
+    let resolved = point.profile_error <= LOST.max(plan.study.file.accuracy);
+    let words = || {
+        format!(
+            "resolution limit: the cycle is not resolved any more at {} = {}: on {} intervals its error is {:.1e} of its range",
+            with_unit_name(plan),
+            short(plan.study, point.value),
+            point.intervals,
+            point.profile_error
+        )
+    };
+    (!resolved).then(|| end(EndReason::ResolutionLost, point.value, words()))
 }
 
 /// What stopped the evaluation, with the names of the model.
@@ -138,11 +231,7 @@ fn fault_words(study: &Study, fault: &Fault) -> String {
 /// Motion, relative to the largest along the walk, below which a walk that is stuck has shrunk to an equilibrium.
 const NEARLY_AT_REST: f64 = 0.02;
 
-pub(crate) fn end_of_follower(
-    follower: &Follower<'_, CycleProblem>,
-    plan: &WalkPlan<'_>,
-    motions: &[Motion],
-) -> End {
+pub(crate) fn end_of_follower(follower: &Follower<'_, CycleProblem>, plan: &WalkPlan<'_>, motions: &[Motion]) -> End {
     let value = follower.current().point.unknowns.parameter;
     let name = with_unit_name(plan);
     let here = short(plan.study, value);
@@ -157,16 +246,19 @@ pub(crate) fn end_of_follower(
             end(EndReason::Budget, value, format!("all points allowed by `pursue` were used at {name} = {here}"))
         }
         Some(FollowEnd::Stuck | FollowEnd::Outside(_)) if shrunk => {
-            let rest = guess(motions).unwrap_or(value);
-            let words = format!("shrinks to an equilibrium at {name} = {}", short(plan.study, rest));
-            end(EndReason::Equilibrium { value: rest }, value, words)
+            let accuracy = plan.study.file.accuracy * scale(plan);
+            let rest = (guess(motions).unwrap_or(value), accuracy);
+            let words = format!("shrinks to an equilibrium at {name} = {}", known(plan, rest));
+            end(EndReason::Equilibrium { value: rest.0 }, value, words)
         }
         Some(FollowEnd::Outside(fault)) => {
             end(EndReason::NotFinite, value, format!("{} beyond {name} = {here}", fault_words(plan.study, fault)))
         }
-        Some(FollowEnd::Stuck) => {
-            end(EndReason::Stuck, value, format!("the corrector fails at the shortest stride at {name} = {here}"))
-        }
+        Some(FollowEnd::Stuck) => end(
+            EndReason::Stuck,
+            value,
+            format!("resolution limit: the corrector fails at the shortest stride at {name} = {here}"),
+        ),
         None => end(EndReason::Stuck, value, format!("the multipliers could not be computed at {name} = {here}")),
     }
 }

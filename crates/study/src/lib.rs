@@ -20,6 +20,7 @@
 //! assert!(wrong.expect_err("no such field").to_string().starts_with("level.study.ron:4:"));
 //! ```
 
+mod ahead;
 mod approach;
 mod branch;
 mod cascade;
@@ -27,6 +28,7 @@ mod ends;
 mod error;
 mod file;
 mod near_miss;
+mod prediction;
 mod progress;
 mod rest;
 mod settings;

@@ -89,9 +89,9 @@ pub(crate) fn birth(problem: &mut CycleProblem, motions: &[Motion], scale: f64) 
 
 /// What moves one way at one cycle may move the other way at a neighbour.
 const MARGIN: f64 = 4.0;
-/// Roundoff of the parameter at a given motion, relative, over that of the period at a given parameter: seen between a tenth
-/// and a fiftieth at the births of a membrane's spikes.
-const CONDITIONING: f64 = 0.25;
+/// Roundoff of the parameter at a given motion, relative, over that of the period at a given parameter: a tenth and a
+/// fiftieth were seen at the births of a membrane's spikes.
+const CONDITIONING: f64 = 1.0;
 /// The difference between two meshes is one sample of roundoff; so many times that, plus a share of the bound by the
 /// conditioning, which for small cycles is some hundred times too large, since it counts what only turns the phase.
 const SAMPLE: f64 = 16.0;

@@ -6,10 +6,12 @@ use std::sync::atomic::{AtomicBool, Ordering};
 
 use armilla_figure::Figure;
 use armilla_record::{Branch, CascadeRow, EndReason, EventKind, Reached, RecordError, Results, Threshold};
+use armilla_stability::Located;
 
 use crate::branch::{Entry, Finished, Lineage, Run, Switchable, follow_branch};
 use crate::cascade::cascade;
 use crate::error::StudyError;
+use crate::prediction::Estimate;
 use crate::progress::Observer;
 use crate::start::first_cycle;
 use crate::step_events::LOCATED_BY_BRACKET;
@@ -78,7 +80,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         notes: first.notes,
         interrupted: false,
     };
-    let lineage = Lineage { name: "a".into(), born_at: None, doublings: 0, turns: first.turns };
+    let lineage = Lineage { name: "a".into(), born_at: None, doublings: 0, turns: first.turns, line: Vec::new() };
     let entry = Entry::Cycle(Box::new(first.problem), Box::new(first.point));
     let mut queue = VecDeque::from([Waiting { lineage, entry }]);
     let mut points_left = study.file.pursue.points;
@@ -144,8 +146,10 @@ fn drop_other_end(study: &Study, lineage: &Lineage, branch: &mut Branch, queue: 
         return;
     };
     if let Some(at) = queue.iter().position(|waiting| waiting.lineage.name == name)
-        && let Some(met) = queue.remove(at).and_then(|waiting| waiting.lineage.born_at)
+        && let Some(waiting) = queue.remove(at)
+        && let Some(met) = &waiting.lineage.born_at
     {
+        branch.ends.1.value = waiting.birth_value();
         branch.ends.1.words = format!("returns to its parent at {met}; the branch born there is this one");
     }
 }
@@ -172,20 +176,24 @@ fn children(
         }
         match finished.problem.double(located, form.as_ref()) {
             Err(fault) => shortfalls.push(format!("at {event} {fault}")),
-            Ok(doubled) => children
-                .push(Waiting { lineage: child_lineage(lineage, event), entry: Entry::Birth(Box::new(doubled)) }),
+            Ok(doubled) => children.push(Waiting {
+                lineage: child_lineage(lineage, event, located),
+                entry: Entry::Birth(Box::new(doubled)),
+            }),
         }
     }
     children
 }
 
-fn child_lineage(parent: &Lineage, event: &str) -> Lineage {
+fn child_lineage(parent: &Lineage, event: &str, located: &Located) -> Lineage {
+    let threshold = Estimate { value: located.point.unknowns.parameter, error: located.error };
     // `a/doubling1` gives birth to `a.doubling1`.
     Lineage {
         name: event.replace('/', "."),
         born_at: Some(event.to_string()),
         doublings: parent.doublings + 1,
         turns: 2 * parent.turns,
+        line: parent.line.iter().copied().chain([threshold]).collect(),
     }
 }
 

@@ -6,11 +6,12 @@ use armilla_follow::{Follower, Outcome, Settings, Station, Step};
 use armilla_record::{End, EndReason, EventKind, Point};
 use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_DOUBLING, WATCH_FOLD};
 
-use crate::approach::approach;
-use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through};
+use crate::ahead::Ahead;
+use crate::approach::{Known, approach, orbit_stands};
+use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost};
 use crate::near_miss::{Sample, near_miss};
 use crate::rest::{Motion, Rest, push};
-use crate::step_events::{Found, events_of_step, is_explained};
+use crate::step_events::{Found, SUPERCONVERGENCE, events_of_step, is_explained};
 use crate::study::Study;
 
 pub(crate) type CycleStation = Station<CyclePoint, CycleTangent>;
@@ -33,6 +34,8 @@ pub(crate) struct WalkPlan<'a> {
     pub abort: &'a AtomicBool,
     /// Whether the walk ends at its first doubling.
     pub to_first_doubling: bool,
+    /// Where the next doubling is expected.
+    pub ahead: Option<Ahead>,
 }
 
 /// What a walk brings back.
@@ -106,6 +109,7 @@ impl Walker<'_, '_> {
                 self.walk.end = end(EndReason::Interrupted, value, "stopped by the user".into());
                 return self.walk;
             }
+            self.aim();
             let Outcome::Step(step) = self.follower.step() else { break };
             match self.take(step) {
                 Taken::On => {}
@@ -116,8 +120,22 @@ impl Walker<'_, '_> {
                 }
             }
         }
-        self.walk.end = end_of_follower(&self.follower, self.plan, &self.seen.motions);
+        self.walk.end = end_of_follower(&mut self.follower, self.plan, &self.seen.motions);
         self.walk
+    }
+
+    /// Plans the next stride so that the doubling expected ahead is met in few steps, as long as none was met.
+    fn aim(&mut self) {
+        let Some(ahead) = &self.plan.ahead else { return };
+        // A stride in doubt is not to be made longer again.
+        if self.retries > 0 || self.walk.events.iter().any(|event| event.kind == EventKind::Doubling) {
+            return;
+        }
+        let station = self.follower.current();
+        let stride = ahead.stride(station.point.unknowns.parameter, station.distance, self.follower.stride());
+        if let Some(stride) = stride {
+            self.follower.ask_stride(stride);
+        }
     }
 
     /// Judges a step: takes it, takes it back, or ends the walk with it.
@@ -126,7 +144,7 @@ impl Walker<'_, '_> {
             drop_idle_turns(&mut step);
         }
         push(&mut self.seen.motions, motion(&mut self.follower));
-        let passage = passed_through(&mut self.follower, self.plan, &self.seen.motions);
+        let passage = passed_through(&mut self.follower, self.plan, &self.seen.motions, &self.walk.points);
         if matches!(passage, Passage::TooLong) && self.retry() {
             return Taken::On;
         }
@@ -190,14 +208,22 @@ impl Walker<'_, '_> {
             return Taken::NoMultipliers;
         };
         self.sink.point(&point);
+        let lost = resolution_lost(&point, self.plan);
         self.walk.points.push(Walked { point, cycle: after.point.clone() });
+        if let Some(lost) = lost {
+            return Taken::Ended(lost);
+        }
         if self.plan.to_first_doubling && doubles {
             let words = "followed to its first doubling only, as a cascade asks".into();
             return Taken::Ended(end(EndReason::Budget, after.point.unknowns.parameter, words));
         }
         self.seen.periods.push(period(&self.follower));
         let width = self.plan.study.range.1 - self.plan.study.range.0;
-        match approach(&self.seen.periods, width).filter(|_| self.follower.end().is_none()) {
+        let share = SUPERCONVERGENCE * self.walk.points.last().map_or(0.0, |last| last.point.profile_error);
+        let known =
+            Known { width, period: share, parameter: share * width + self.follower.parts().0.parameter_roundoff() };
+        let grows = self.follower.end().is_none() && orbit_stands(&self.walk.points);
+        match approach(&self.seen.periods, known).filter(|_| grows) {
             Some(approach) => {
                 let (event, ended) = blown_up(&after, self.plan, approach);
                 let (problem, _, _) = self.follower.parts();

@@ -38,7 +38,7 @@ fn a_circle_takes_as_many_intervals_as_predicted() {
     let case = Case::new("x1", "mu", 1.0).with("k", 0.5);
     for degree in 3..=8 {
         let predicted = TAU * (error_constant(degree) / 2e-9).powf(1.0 / (degree as f64 + 1.0));
-        let settings = CycleSettings { degree, ..settings(1e-9) };
+        let settings = settings(1e-9).with_degree(degree);
         // Fewer than the least number of intervals are never taken, whatever the prediction.
         let predicted = predicted.max(settings.mesh.fewest as f64);
         let found = intervals(&case, settings, 0.5, 0.25) as f64;

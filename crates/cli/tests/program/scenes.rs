@@ -29,6 +29,23 @@ pub const X3_STUDY: &str = r#"(
 )
 "#;
 
+/// A circle of radius sqrt(mu) beside two fast states, the second pair of names mixing both.
+pub const FAST_MODEL: &str = r#"(
+    states: { "x": (begin: 0.7), "y": (begin: 0), "p": (begin: 0.1), "q": (begin: 0.1) },
+    parameters: { "mu": (value: 0.5) },
+    expressions: { "gap": "mu - x^2 - y^2", "v": "p - q", "v_rate": "-1e5*v", "q_rate": "-1e6*(q - x)" },
+    rates: { "x": "x*gap - y", "y": "y*gap + x", "p": "v_rate + q_rate", "q": "q_rate" },
+)
+"#;
+
+pub const FAST_STUDY: &str = r#"(
+    model: "fast.model.ron",
+    start: Settle(),
+    follow: (parameter: "mu", from: 0.4, to: 0.6),
+    figures: [Diagram(measure: LargestMultiplier)],
+)
+"#;
+
 /// X1 with its study.
 pub fn x1() -> [(&'static str, &'static str); 2] {
     [("x1.model.ron", X1_MODEL), ("x1.study.ron", X1_STUDY)]

@@ -1,0 +1,101 @@
+//! The choice of the degree: against all degrees tried in turn, along a branch, and what each point says of it.
+
+use armilla_collocation::work;
+use armilla_record::{MeshReason, Reached};
+use armilla_stability::CyclePoint;
+use armilla_tests::{Case, branch, job, settings};
+
+/// Work of the cycle as chosen, over the least work among all degrees with their own numbers of intervals.
+fn excess(case: &Case, guess: &armilla_record::Profile, accuracy: f64, at: f64) -> f64 {
+    let of = |cycle: &CyclePoint| work(cycle.degree, cycle.intervals());
+    let chosen = case.start(guess, settings(accuracy), at).1;
+    let others = (3..=8).map(|degree| case.start(guess, settings(accuracy).with_degree(degree), at).1);
+    let tried: Vec<(usize, usize)> = others.map(|cycle| (cycle.degree, cycle.intervals())).collect();
+    let least = tried.iter().map(|&(degree, intervals)| work(degree, intervals)).fold(f64::INFINITY, f64::min);
+    let excess = of(&chosen) / least;
+    eprintln!(
+        "{accuracy:e}: degree {} with {} intervals, {excess:.2} of the least among {tried:?}",
+        chosen.degree,
+        chosen.intervals()
+    );
+    excess
+}
+
+/// Independent: every degree tried. The choice sees its neighbours only and changes for a gain of 15 %: half more work than
+/// the least is what may be left.
+#[test]
+fn the_degree_chosen_does_with_hardly_more_work_than_the_best() {
+    let circle = Case::new("x1", "mu", 1.0).with("k", 0.5);
+    let relaxing = Case::new("vanderpol", "mu", 1.0);
+    let kinked = Case::new("softened_kink", "width", 1.0);
+    let cases = [
+        (&circle, circle.circle(0.5, std::f64::consts::TAU), 0.25),
+        (&relaxing, relaxing.settled(5.0), 5.0),
+        (&kinked, kinked.settled(0.01), 0.01),
+    ];
+    for (case, guess, at) in &cases {
+        for accuracy in [1e-6, 1e-9, 1e-12] {
+            assert!(excess(case, guess, accuracy, *at) < 1.5);
+        }
+    }
+}
+
+/// As the kink sharpens the degree falls, as it softens the degree rises: high derivatives are worth nothing at a kink.
+#[test]
+fn the_degree_goes_down_and_up_along_a_branch() {
+    let study = |from: f64| {
+        format!(
+            "start: Settle(at: {{ \"width\": {from} }}), follow: (parameter: \"width\", from: 0.002, to: 0.6), accuracy: 1e-6"
+        )
+    };
+    let traced = job("softened_kink", &study(0.5));
+    let points = &branch(&traced, "a").points;
+    let degrees: Vec<usize> = points.iter().map(|point| point.degree).collect();
+    eprintln!("{degrees:?}");
+    let start = points.iter().find(|point| point.choice == MeshReason::Start).expect("a start");
+    assert!(points.iter().filter(|point| point.value < 0.1).all(|point| point.degree < start.degree), "{degrees:?}");
+    let back = job("softened_kink", &study(0.01));
+    let points = &branch(&back, "a").points;
+    let start = points.iter().find(|point| point.choice == MeshReason::Start).expect("a start");
+    let last = points.last().expect("points");
+    eprintln!("{} at {}, {} at {}", start.degree, start.value, last.degree, last.value);
+    assert!(last.degree > start.degree, "{} {}", start.degree, last.degree);
+}
+
+/// Every point says why its mesh is what it is, and whether the accuracy is reached.
+#[test]
+fn each_point_says_what_was_chosen_and_why() {
+    let fields = r#"start: Settle(at: { "mu": 1 }), follow: (parameter: "mu", from: 1, to: 20), accuracy: 1e-9"#;
+    let traced = job("vanderpol", fields);
+    let points = &branch(&traced, "a").points;
+    let count = |choice: MeshReason| points.iter().filter(|point| point.choice == choice).count();
+    assert_eq!(count(MeshReason::Start), 1);
+    assert!(count(MeshReason::Kept) > 0 && count(MeshReason::ProfileError) > 0);
+    assert_eq!(count(MeshReason::Unstated) + count(MeshReason::Given), 0);
+    assert!(points.iter().all(|point| point.reached == Reached::Accuracy && point.profile_error <= 1e-9));
+    for pair in points.windows(2) {
+        let same = (pair[0].degree, pair[0].intervals) == (pair[1].degree, pair[1].intervals);
+        assert!(same || pair[1].choice != MeshReason::Kept, "{pair:?}");
+    }
+
+    let given = job("vanderpol", &format!("{fields}, mesh: (intervals: 8, degree: 3)"));
+    let points = &branch(&given, "a").points;
+    assert!(points.iter().any(|point| point.reached == Reached::GivenMesh && point.profile_error > 1e-9));
+    assert!(points.iter().all(|point| (point.degree, point.intervals) == (3, 8)));
+    assert!(
+        given.shortfalls.iter().any(|words| words.contains("the mesh fixed by the study")),
+        "{:?}",
+        given.shortfalls
+    );
+}
+
+/// A cycle of range 2e-4 about 1e9 has four digits less than 1e-9 of its range: rounding stands in the way, and the points
+/// say so.
+#[test]
+fn a_floor_of_roundoff_is_named() {
+    let fields = r#"start: Settle(at: { "mu": 0.25 }), follow: (parameter: "mu", from: 0.2, to: 0.3), accuracy: 1e-10"#;
+    let traced = job("far_circle", fields);
+    let points = &branch(&traced, "a").points;
+    assert!(points.iter().all(|point| point.reached == Reached::RoundoffFloor && point.profile_error > 1e-10));
+    assert!(traced.shortfalls.iter().any(|words| words.contains("rounding")), "{:?}", traced.shortfalls);
+}
