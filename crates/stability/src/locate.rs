@@ -182,7 +182,7 @@ impl CycleProblem {
     ///
     /// Numbers converge at least as fast as the profile, mostly with twice its order, and how fast the profile converges
     /// is measured on these two meshes; [`CANCELLING`] is the margin. Where the profile gains nothing, all of it.
-    fn left_over(&mut self, coarse: &CyclePoint, fine: &CyclePoint) -> f64 {
+    pub fn left_over(&mut self, coarse: &CyclePoint, fine: &CyclePoint) -> f64 {
         let gain = self.profile_error(fine) / self.profile_error(coarse);
         // Written so that NaN leaves all.
         if gain * CANCELLING < 1.0 { gain * CANCELLING } else { 1.0 }
@@ -218,18 +218,24 @@ impl CycleProblem {
         Some(Station { point, tangent, watch, distance: low.distance + share * (high.distance - low.distance) })
     }
 
-    /// The cycle re-solved on a mesh with every interval halved, at the same parameter: its period's error.
+    /// The cycle re-solved on a mesh with every interval halved, at the same parameter, and its period's error. Where
+    /// roundoff stands in the way of that, as close to a loop through a state of rest, on its own mesh once more: what is in
+    /// doubt then is what roundoff does.
     ///
     /// # Errors
-    /// [`Failure`] where that does not converge.
+    /// [`Failure`] where that does not converge either.
     pub fn refine(&mut self, point: &CyclePoint) -> Result<(CyclePoint, f64), Failure<armilla_collocation::Fault>> {
         let mesh: Arc<[f64]> = halved(&point.mesh).into();
         let mut fine = point.on_mesh(point.degree, &mesh);
         let value = point.unknowns.parameter;
-        self.correct_at(&mut fine, value).map_err(|_| Failure::NotConverged)?;
-        // The closing holds the parameter exactly.
+        let solved = self.correct_at(&mut fine, value).is_ok();
+        if !solved {
+            fine = point.clone();
+            self.correct_at(&mut fine, value).map_err(|_| Failure::NotConverged)?;
+        }
+        // The closing holds the parameter exactly. Roundoff first: it refers to what was solved last.
         let rounding = self.rounding(Scalar::Period, fine.unknowns.period, 0.0);
-        let left = self.left_over(point, &fine);
+        let left = if solved { self.left_over(point, &fine) } else { 1.0 };
         let error = left * (fine.unknowns.period - point.unknowns.period).abs() + rounding;
         Ok((fine, error))
     }
@@ -241,7 +247,7 @@ impl CycleProblem {
 const ROUNDOFF_MARGIN: f64 = 8.0;
 /// Margin of the share that is left of a difference: parts of the error on the coarse mesh may cancel each other, and the
 /// difference is smaller by such a factor then.
-const CANCELLING: f64 = 4.0;
+const CANCELLING: f64 = 2.0;
 /// Units in the last place, of the value or of the range of its parameter, for rounding that acts on every row alike and
 /// that the sum of independent errors leaves out: the basis tables are correct to a few units each.
 const COHERENT_UNITS: f64 = 16.0;

@@ -5,7 +5,7 @@ use armilla_record::{End, EndReason, EventKind, Point};
 use armilla_stability::{CyclePoint, CycleProblem, Fault};
 
 use crate::approach::Approach;
-use crate::rest::{Motion, Rest, extrapolate_to_rest};
+use crate::rest::{Motion, Rest, birth, guess};
 use crate::step_events::{Found, SUPERCONVERGENCE, unresolved};
 use crate::study::Study;
 use crate::walk::{CycleStation, WalkPlan, Walked};
@@ -43,9 +43,7 @@ pub(crate) fn passed_through(
         if problem.motion(&before.point) > SMALL * largest || motions.len() < 4 {
             return Passage::TooLong;
         }
-        let point = before.point.clone();
-        let uncertainty = uncertainty(problem, &point, motions, plan);
-        let Some(rest) = extrapolate_to_rest(motions, uncertainty) else { return Passage::TooLong };
+        let Some(rest) = birth(problem, motions, scale(plan)) else { return Passage::TooLong };
         let value = rest.value;
         let words =
             format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), known(plan, (value, rest.error)));
@@ -188,31 +186,6 @@ pub(crate) fn blown_up(current: &CycleStation, plan: &WalkPlan<'_>, approach: Ap
     (event, end(EndReason::PeriodBlowUp, current.point.unknowns.parameter, words))
 }
 
-/// Errors of the parameter and of the period of a small cycle on its own mesh, at its size of motion: from how both move
-/// on the mesh with every interval halved, at the same parameter.
-fn uncertainty(problem: &mut CycleProblem, point: &CyclePoint, motions: &[Motion], plan: &WalkPlan<'_>) -> (f64, f64) {
-    /// What moves one way here may move the other way at a neighbour.
-    const MARGIN: f64 = 4.0;
-    /// Units in the last place. The conditioning of a small cycle would tell some hundred times more: it counts roundoff
-    /// that turns the phase, which neither parameter nor period see.
-    const UNITS: f64 = 64.0;
-    let (period, scale) = (point.unknowns.period, scale(plan));
-    let Ok((fine, _)) = problem.refine(point) else {
-        let relative = SUPERCONVERGENCE * problem.profile_error(point);
-        return (relative * scale, relative * period);
-    };
-    let square = |size: f64| size * size;
-    // The last point lies beyond the equilibrium; the two before tell how the parameter goes with the motion.
-    let slope = match motions {
-        [.., far, near, _] => (far.parameter - near.parameter) / (square(far.size) - square(near.size)),
-        _ => 0.0,
-    };
-    let moved = slope * (square(problem.motion(&fine)) - square(problem.motion(point)));
-    let drift = (fine.unknowns.period - period).abs() / period;
-    let relative = MARGIN * drift + UNITS * f64::EPSILON;
-    (MARGIN * moved.abs() + relative * scale, relative * period)
-}
-
 /// Size of the parameter for roundoff.
 fn scale(plan: &WalkPlan<'_>) -> f64 {
     let (low, high) = plan.study.range;
@@ -274,8 +247,7 @@ pub(crate) fn end_of_follower(follower: &Follower<'_, CycleProblem>, plan: &Walk
         }
         Some(FollowEnd::Stuck | FollowEnd::Outside(_)) if shrunk => {
             let accuracy = plan.study.file.accuracy * scale(plan);
-            let rest = extrapolate_to_rest(motions, (accuracy, accuracy))
-                .map_or((value, accuracy), |rest| (rest.value, rest.error));
+            let rest = (guess(motions).unwrap_or(value), accuracy);
             let words = format!("shrinks to an equilibrium at {name} = {}", known(plan, rest));
             end(EndReason::Equilibrium { value: rest.0 }, value, words)
         }

@@ -12,7 +12,7 @@ use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passe
 use crate::guards::{falls_on_shorter, leaps};
 use crate::ledger::{Change, is_off_folds, is_sure};
 use crate::near_miss::near_miss_by_mean;
-use crate::rest::{Motion, Rest};
+use crate::rest::{Motion, Rest, push};
 use crate::step_events::{Found, SUPERCONVERGENCE, events_of_step, events_on_edge, landing_event};
 use crate::study::Study;
 
@@ -141,7 +141,7 @@ impl Walker<'_, '_> {
 
     /// Judges a step: takes it, takes it back, or ends the walk with it.
     fn take(&mut self, step: Step) -> Taken {
-        self.seen.motions.push(motion(&mut self.follower));
+        push(&mut self.seen.motions, motion(&mut self.follower));
         let (problem, before, after) = self.follower.parts();
         let before = before.expect("a step has a station before it").clone();
         let after = after.clone();
@@ -314,8 +314,7 @@ enum Taken {
 
 fn motion(follower: &mut Follower<'_, CycleProblem>) -> Motion {
     let (problem, _, current) = follower.parts();
-    let unknowns = &current.point.unknowns;
-    Motion { size: problem.motion(&current.point), parameter: unknowns.parameter, period: unknowns.period }
+    Motion::of(problem, &current.point)
 }
 
 fn period(follower: &Follower<'_, CycleProblem>) -> (f64, f64) {
