@@ -154,8 +154,8 @@ mod tests {
             let time = k as f64 / 37.0;
             let around = [-2.0, -1.0, 1.0, 2.0].map(|j| at(time + j * STEP));
             for (j, rate) in rates(&at(time)).into_iter().enumerate() {
-                let slope = (around[0][j] - 8.0 * around[1][j] + 8.0 * around[2][j] - around[3][j])
-                    / (12.0 * STEP * period);
+                let slope =
+                    (around[0][j] - 8.0 * around[1][j] + 8.0 * around[2][j] - around[3][j]) / (12.0 * STEP * period);
                 assert!((slope - rate).abs() < 1e-8, "state {j} at {time}: {slope} for {rate}");
             }
         }

@@ -84,12 +84,7 @@ pub(crate) fn short(study: &Study, value: f64) -> String {
 }
 
 /// The birth of the cycle at an equilibrium as an event: the last cycle shrunk to its mean.
-pub(crate) fn birth_of_cycle(
-    before: &CycleStation,
-    problem: &CycleProblem,
-    rest: Rest,
-    plan: &WalkPlan<'_>,
-) -> Found {
+pub(crate) fn birth_of_cycle(before: &CycleStation, problem: &CycleProblem, rest: Rest, plan: &WalkPlan<'_>) -> Found {
     let note = "extrapolated from the last cycles".to_string();
     let mut event = unresolved(before, (rest.value, rest.error), note, plan);
     (event.point.unknowns.period, event.period_error) = (rest.period, Some(rest.period_error));
@@ -116,12 +111,7 @@ pub(crate) fn blown_up(current: &CycleStation, plan: &WalkPlan<'_>, approach: Ap
 
 /// Errors of the parameter and of the period of a small cycle on its own mesh, at its size of motion: from how both move
 /// on the mesh with every interval halved, at the same parameter.
-fn uncertainty(
-    problem: &mut CycleProblem,
-    point: &CyclePoint,
-    motions: &[Motion],
-    plan: &WalkPlan<'_>,
-) -> (f64, f64) {
+fn uncertainty(problem: &mut CycleProblem, point: &CyclePoint, motions: &[Motion], plan: &WalkPlan<'_>) -> (f64, f64) {
     /// What moves one way here may move the other way at a neighbour.
     const MARGIN: f64 = 4.0;
     /// Units in the last place. The conditioning of a small cycle would tell some hundred times more: it counts roundoff
@@ -170,11 +160,7 @@ fn fault_words(study: &Study, fault: &Fault) -> String {
 /// Motion, relative to the largest along the walk, below which a walk that is stuck has shrunk to an equilibrium.
 const NEARLY_AT_REST: f64 = 0.02;
 
-pub(crate) fn end_of_follower(
-    follower: &Follower<'_, CycleProblem>,
-    plan: &WalkPlan<'_>,
-    motions: &[Motion],
-) -> End {
+pub(crate) fn end_of_follower(follower: &Follower<'_, CycleProblem>, plan: &WalkPlan<'_>, motions: &[Motion]) -> End {
     let value = follower.current().point.unknowns.parameter;
     let name = with_unit_name(plan);
     let here = short(plan.study, value);

@@ -11,8 +11,8 @@ use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passe
 use crate::guards::{falls_on_shorter, leaps};
 use crate::ledger::{Change, is_off_folds, is_sure};
 use crate::near_miss::near_miss_by_mean;
-use crate::step_events::{Found, events_of_step, events_on_edge, landing_event};
 use crate::rest::{Motion, Rest};
+use crate::step_events::{Found, events_of_step, events_on_edge, landing_event};
 use crate::study::Study;
 
 pub(crate) type CycleStation = Station<CyclePoint, CycleTangent>;

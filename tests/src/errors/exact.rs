@@ -6,8 +6,8 @@ use armilla_record::Point;
 
 use super::Source::Exact;
 use super::{Kept, Run};
-use crate::matching::Curve;
 use crate::curve::{branched, circle, near_loop, twisted};
+use crate::matching::Curve;
 
 /// 2 pi.
 const TURN: &str = "6.2831853071795864769252867666";
@@ -17,10 +17,8 @@ const ACCURACIES: [f64; 3] = [1e-6, 1e-9, 1e-12];
 
 pub(super) fn runs() -> Vec<Run> {
     let cases = [hopf, fold, twisted_band, supercritical, subcritical, transcritical, pitchfork, torus];
-    let mut runs: Vec<Run> = cases
-        .into_iter()
-        .flat_map(|case| ACCURACIES.map(|accuracy| case().accuracy(accuracy)))
-        .collect();
+    let mut runs: Vec<Run> =
+        cases.into_iter().flat_map(|case| ACCURACIES.map(|accuracy| case().accuracy(accuracy))).collect();
     runs.push(saddle_loop());
     runs.extend(births());
     runs

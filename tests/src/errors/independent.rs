@@ -16,7 +16,15 @@ pub(super) fn runs() -> Vec<Run> {
     runs.extend([1e-6, 1e-9, 1e-12].map(|accuracy| oscillator().accuracy(accuracy)));
     runs.push(strong_relaxation());
     runs.extend([1e-6, 1e-9, 1e-12].map(|accuracy| roessler().accuracy(accuracy)));
-    runs.extend([roessler_window(), lorenz_window(), lorenz_symmetric(), brusselator(), cell_cycle(), membrane(), canard()]);
+    runs.extend([
+        roessler_window(),
+        lorenz_window(),
+        lorenz_symmetric(),
+        brusselator(),
+        cell_cycle(),
+        membrane(),
+        canard(),
+    ]);
     runs
 }
 
@@ -146,14 +154,10 @@ fn membrane() -> Run {
 }
 
 fn canard() -> Run {
-    Run::new(
-        "canard",
-        "canard",
-        r#"start: Settle(at: {"a": 0.9}), follow: (parameter: "a", from: 0.8, to: 1.05)"#,
-    )
-    // By hand: the state of rest x = a loses its stability where x^2 = 1.
-    .value("a/hopf1", "1.0", Exact)
-    // By hand: frequency 1/sqrt(eps), so T = 2 pi sqrt(0.05).
-    .period("a/hopf1", "1.4049629462081452831094397", Exact)
-    .finer("a", 0.8)
+    Run::new("canard", "canard", r#"start: Settle(at: {"a": 0.9}), follow: (parameter: "a", from: 0.8, to: 1.05)"#)
+        // By hand: the state of rest x = a loses its stability where x^2 = 1.
+        .value("a/hopf1", "1.0", Exact)
+        // By hand: frequency 1/sqrt(eps), so T = 2 pi sqrt(0.05).
+        .period("a/hopf1", "1.4049629462081452831094397", Exact)
+        .finer("a", 0.8)
 }

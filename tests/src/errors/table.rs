@@ -17,7 +17,8 @@ pub fn page(rows: &[Row]) -> String {
 }
 
 fn introduction() -> String {
-    format!("# Errors: true beside reported
+    format!(
+        "# Errors: true beside reported
 
 Every number that armilla prints carries an estimated error. This page holds them against the truth where that is
 known; it is written by
@@ -46,7 +47,8 @@ published; `finer`, the same study with accuracy 1e-12. A truth with fewer digit
 of its last digit; the row then shows `<` that unit where the error is smaller, and is called inside if the two
 agree within the reported error and that unit.
 
-")
+"
+    )
 }
 
 fn summary(page: &mut String, rows: &[Row]) {

@@ -70,7 +70,12 @@ fn the_bare_corrector_falls_onto_the_parent() {
     }
     let mut fell = 0;
     for at in &arch {
-        assert!(problem.split(&at.point) > 1e-3, "on the arch at {}: {}", at.point.unknowns.parameter, problem.split(&at.point));
+        assert!(
+            problem.split(&at.point) > 1e-3,
+            "on the arch at {}: {}",
+            at.point.unknowns.parameter,
+            problem.split(&at.point)
+        );
         let landed: Vec<CyclePoint> = (1..20).filter_map(|k| raw(problem, at, 0.05 * f64::from(k))).collect();
         fell += usize::from(landed.iter().any(|point| problem.split(point) < 1e-8));
     }

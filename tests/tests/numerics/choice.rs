@@ -13,7 +13,11 @@ fn excess(case: &Case, guess: &armilla_record::Profile, accuracy: f64, at: f64) 
     let tried: Vec<(usize, usize)> = others.map(|cycle| (cycle.degree, cycle.intervals())).collect();
     let least = tried.iter().map(|&(degree, intervals)| work(degree, intervals)).fold(f64::INFINITY, f64::min);
     let excess = of(&chosen) / least;
-    eprintln!("{accuracy:e}: degree {} with {} intervals, {excess:.2} of the least among {tried:?}", chosen.degree, chosen.intervals());
+    eprintln!(
+        "{accuracy:e}: degree {} with {} intervals, {excess:.2} of the least among {tried:?}",
+        chosen.degree,
+        chosen.intervals()
+    );
     excess
 }
 
@@ -40,7 +44,9 @@ fn the_degree_chosen_does_with_hardly_more_work_than_the_best() {
 #[test]
 fn the_degree_goes_down_and_up_along_a_branch() {
     let study = |from: f64| {
-        format!("start: Settle(at: {{ \"width\": {from} }}), follow: (parameter: \"width\", from: 0.002, to: 0.6), accuracy: 1e-6")
+        format!(
+            "start: Settle(at: {{ \"width\": {from} }}), follow: (parameter: \"width\", from: 0.002, to: 0.6), accuracy: 1e-6"
+        )
     };
     let traced = job("softened_kink", &study(0.5));
     let points = &branch(&traced, "a").points;
@@ -76,7 +82,11 @@ fn each_point_says_what_was_chosen_and_why() {
     let points = &branch(&given, "a").points;
     assert!(points.iter().any(|point| point.reached == Reached::GivenMesh && point.profile_error > 1e-9));
     assert!(points.iter().all(|point| (point.degree, point.intervals) == (3, 8)));
-    assert!(given.shortfalls.iter().any(|words| words.contains("the mesh fixed by the study")), "{:?}", given.shortfalls);
+    assert!(
+        given.shortfalls.iter().any(|words| words.contains("the mesh fixed by the study")),
+        "{:?}",
+        given.shortfalls
+    );
 }
 
 /// A cycle of range 2e-4 about 1e9 has four digits less than 1e-9 of its range: rounding stands in the way, and the points
