@@ -167,14 +167,19 @@ impl CycleProblem {
     ) -> Result<(CyclePoint, f64, f64, NullVectors), NewtonFailure> {
         let mesh: Arc<[f64]> = halved(&coarse.mesh).into();
         let mut fine = coarse.on_mesh(coarse.degree, &mesh);
-        let (_, function) = self.augmented(kind, &mut fine)?;
+        let (report, function) = self.augmented(kind, &mut fine)?;
         let size = function.size(&mut self.system);
         // Roundoff first: it refers to what was solved last.
         let value_rounding = self.rounding(Scalar::Parameter, fine.unknowns.parameter, size);
         let period_rounding = self.rounding(Scalar::Period, fine.unknowns.period, size);
         let left = self.left_over(coarse, &fine);
-        let value_error = left * (coarse.unknowns.parameter - fine.unknowns.parameter).abs() + value_rounding;
-        let period_error = left * (coarse.unknowns.period - fine.unknowns.period).abs() + period_rounding;
+        let to_correct = to_correct(&report);
+        let value_error = left * (coarse.unknowns.parameter - fine.unknowns.parameter).abs()
+            + to_correct * self.metric.parameter_scale
+            + value_rounding;
+        let period_error = left * (coarse.unknowns.period - fine.unknowns.period).abs()
+            + to_correct * self.metric.period_scale
+            + period_rounding;
         Ok((fine, value_error, period_error, function.vectors().clone()))
     }
 
@@ -251,6 +256,15 @@ const CANCELLING: f64 = 2.0;
 /// Units in the last place, of the value or of the range of its parameter, for rounding that acts on every row alike and
 /// that the sum of independent errors leaves out: the basis tables are correct to a few units each.
 const COHERENT_UNITS: f64 = 16.0;
+
+/// Scaled size of what Newton's method left to correct: nothing to speak of where it went on falling, the last correction
+/// where it had come to stand still, as beside a second event.
+fn to_correct(report: &Report) -> f64 {
+    match report.corrections[..] {
+        [.., before, last] => last * (last / before).powi(2).min(1.0),
+        _ => 0.0,
+    }
+}
 
 pub(crate) fn halved(mesh: &[f64]) -> Vec<f64> {
     let mut out = Vec::with_capacity(2 * mesh.len());
