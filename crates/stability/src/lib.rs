@@ -57,5 +57,5 @@ pub use normal_form::DoublingForm;
 pub use point::{CyclePoint, CycleTangent};
 pub use problem::{CycleProblem, CycleSettings, CycleSpec, StartFault, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS};
 pub use spectrum::{Spectrum, SpectrumFault, SpectrumSolver};
-pub use switch::{Doubled, SwitchFault};
+pub use switch::{Doubled, SplitChange, SwitchFault};
 pub use test_function::{CriticalKind, NullVectors, TestFunction};

@@ -44,6 +44,9 @@ pub struct LocateFault {
 /// Halvings of the bracket: 40 take any stride to the shortest.
 const HALVINGS: usize = 40;
 
+/// Share of a bracket by which an event may miss it: events on a station belong to it, to what a mesh moves them.
+const ON_STATION: f64 = 1e-4;
+
 type CycleStation = Station<CyclePoint, CycleTangent>;
 
 impl CycleProblem {
@@ -104,11 +107,23 @@ impl CycleProblem {
     ) -> Option<(CyclePoint, Report)> {
         let mut point = guess.clone();
         let report = self.augmented(kind, &mut point).ok()?.0;
+        // Between the planes through both stations normal to their tangents: a second event beyond one of them may attract
+        // Newton's method from here.
         let length = self.distance(&low.point, &high.point);
-        // A chord is shorter than the branch between its ends; twice its length still excludes anything else.
-        let inside =
-            self.distance(&low.point, &point) <= 2.0 * length && self.distance(&high.point, &point) <= 2.0 * length;
+        let slack = ON_STATION * length;
+        let between = self.beyond(low, &point) >= -slack && self.beyond(high, &point) <= slack;
+        // A chord is shorter than the branch between its ends; twice its length still excludes anything aside.
+        let inside = between
+            && self.distance(&low.point, &point) <= 2.0 * length
+            && self.distance(&high.point, &point) <= 2.0 * length;
         inside.then_some((point, report))
+    }
+
+    /// How far a point lies beyond a station, along its tangent.
+    fn beyond(&mut self, station: &CycleStation, point: &CyclePoint) -> f64 {
+        let row = self.arclength_row(&station.tangent, point);
+        let from = station.point.on_mesh(point.degree, &point.mesh);
+        row.apply(&point.unknowns) - row.apply(&from.unknowns)
     }
 
     /// Solves the augmented system in place on the point's mesh.
