@@ -117,6 +117,8 @@ impl CycleProblem {
     ) -> Option<(CyclePoint, Report)> {
         let mut point = guess.clone();
         let report = self.augmented(kind, &mut point).ok()?.0;
+        // Between the planes through both stations normal to their tangents: a second event beyond one of them may attract
+        // Newton's method from here.
         let length = self.distance(&low.point, &high.point);
         // A chord is shorter than the branch between its ends; twice its length still excludes other branches.
         let near =

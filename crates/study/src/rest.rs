@@ -67,7 +67,11 @@ pub(crate) fn birth(problem: &mut CycleProblem, motions: &[Motion], scale: f64) 
     let square = |refined: &Refined| refined.motion.size * refined.motion.size;
     let periods: Vec<Place> = refined
         .iter()
-        .map(|refined| Place { square: square(refined), value: refined.motion.period, error: refined.period_error.0 + refined.period_error.1 })
+        .map(|refined| Place {
+            square: square(refined),
+            value: refined.motion.period,
+            error: refined.period_error.0 + refined.period_error.1,
+        })
         .collect();
     // A change of all squares by one factor leaves the limit where it is: only its variation counts.
     let common = refined.iter().map(|refined| refined.change).sum::<f64>() / refined.len() as f64;

@@ -152,9 +152,13 @@ impl Walker<'_, '_> {
         if matches!(passage, Passage::TooLong) && self.retry() {
             return Taken::On;
         }
-        if let Passage::End(ended, rest) = passage {
-            self.come_to_rest(rest);
-            return Taken::Ended(ended);
+        match passage {
+            Passage::Fell(ended) => return if self.retry() { Taken::On } else { Taken::Ended(ended) },
+            Passage::End(ended, rest) => {
+                self.come_to_rest(rest);
+                return Taken::Ended(ended);
+            }
+            Passage::None | Passage::TooLong => {}
         }
         if self.is_doubtful(&before, &after) && self.retry() {
             return Taken::On;
