@@ -190,7 +190,7 @@ impl CycleProblem {
     /// Numbers converge at least as fast as the profile, mostly with twice its order, and how fast the profile converges
     /// is measured on these two meshes; [`CANCELLING`] is the margin. Where the profile gains nothing, all of it.
     pub fn left_over(&mut self, coarse: &CyclePoint, fine: &CyclePoint) -> f64 {
-        let gain = self.profile_error(fine) / self.profile_error(coarse);
+        let gain = self.estimate(fine).error / self.estimate(coarse).error;
         // Written so that NaN leaves all.
         if gain * CANCELLING < 1.0 { gain * CANCELLING } else { 1.0 }
     }

@@ -257,10 +257,15 @@ impl CycleProblem {
         Ok(spectrum)
     }
 
-    /// Estimated error of a cycle's profile, relative to the range of each state: what a finer mesh would remove, and
-    /// rounding.
+    /// Estimated error of a cycle's profile, relative to the range of each state: what a finer mesh would remove, what
+    /// Newton's method leaves, and rounding.
     pub fn profile_error(&mut self, point: &CyclePoint) -> f64 {
-        self.estimate(point).error + self.rounding_of_nodes(point)
+        self.estimate(point).error + self.left_by_newton(point)
+    }
+
+    /// Where Newton's method stops, and rounding.
+    fn left_by_newton(&self, point: &CyclePoint) -> f64 {
+        self.settings.newton.tolerance + self.rounding_of_nodes(point)
     }
 
     /// What rounding leaves of a profile: a state far from zero that hardly moves has few digits.
@@ -295,7 +300,7 @@ impl CycleProblem {
         let spectrum = self.known_spectrum(point)?;
         let profile = self.profile(point);
         let measures = Measures::of(&profile);
-        let (discretisation, rounding) = (self.estimate(point).error, self.rounding_of_nodes(point));
+        let (discretisation, rounding) = (self.estimate(point).error, self.left_by_newton(point));
         let error = discretisation + rounding;
         let accuracy = self.settings.mesh.accuracy;
         let reached = match () {

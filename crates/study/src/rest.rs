@@ -73,13 +73,15 @@ pub(crate) fn birth(problem: &mut CycleProblem, motions: &[Motion], scale: f64) 
             error: refined.period_error.0 + refined.period_error.1,
         })
         .collect();
-    // A change of all squares by one factor leaves the limit where it is: only its variation counts.
-    let common = refined.iter().map(|refined| refined.change).sum::<f64>() / refined.len() as f64;
+    // A change of all squares by one factor leaves the limit where it is: only what differs from that counts. Close to
+    // rest the factor is lost, and all that is left of the square counts.
+    let common = median(refined.iter().map(|refined| refined.change).collect());
     let slope = slope(&refined, &square);
     let parameters: Vec<Place> = refined
         .iter()
         .map(|refined| {
-            let discretisation = MARGIN * refined.left * (slope * square(refined) * (refined.change - common)).abs();
+            let change = refined.change.abs().min((refined.change - common).abs());
+            let discretisation = MARGIN * refined.left * (slope * square(refined) * change).abs();
             let value = refined.motion.parameter;
             let conditioning = CONDITIONING * refined.period_error.1 / refined.motion.period * value.abs();
             let error = discretisation + conditioning + UNITS * f64::EPSILON * scale;
@@ -103,6 +105,11 @@ const SAMPLE: f64 = 16.0;
 const UNLIKELY: f64 = 32.0;
 /// Units in the last place by which a parameter is off whatever the conditioning.
 const UNITS: f64 = 32.0;
+
+fn median(mut numbers: Vec<f64>) -> f64 {
+    numbers.sort_by(f64::total_cmp);
+    numbers.get(numbers.len() / 2).copied().unwrap_or(0.0)
+}
 
 /// Change of the parameter with the square of the motion, over all points.
 fn slope(refined: &[Refined], square: &impl Fn(&Refined) -> f64) -> f64 {
@@ -140,7 +147,7 @@ pub(crate) struct Rest {
 }
 
 /// Most points used: errors of the points come to outweigh the gain before that.
-const MOST: usize = 7;
+const MOST: usize = 10;
 
 /// The parameter at rest from the motions as they are, without an error: for a walk that got stuck before it. None for less
 /// than two.

@@ -309,7 +309,19 @@ fn remaining_change(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>
     };
     let mut event = unresolved(&low, (0.5 * (a + b), half_width), note.into(), plan);
     (event.kind, event.angle) = (kind, angle);
+    event.period_error = Some(period_error_between(problem, &low, &high));
     event
+}
+
+/// Error of the period at the lower end of an interval for one anywhere inside: the change over the interval, and the error
+/// of the cycle itself on its own mesh.
+fn period_error_between(problem: &mut CycleProblem, low: &CycleStation, high: &CycleStation) -> f64 {
+    let period = low.point.unknowns.period;
+    let own = match problem.refine(&low.point) {
+        Ok((fine, error)) => (fine.unknowns.period - period).abs() + error,
+        Err(_) => PERIOD_OF_INTERVAL * period,
+    };
+    (high.point.unknowns.period - period).abs() + own
 }
 
 /// Angle from the real axis within which a pair may be two real multipliers that the accuracy does not tell apart.
