@@ -348,7 +348,9 @@ impl<'a, Q: Problem> Follower<'a, Q> {
         let length = self.problem.distance(&self.current.point, &point);
         if let Some((renewed, mut tangents)) = self.problem.renew(&point, &[&tangent]) {
             point = renewed;
-            tangent = tangents.pop().expect("renew returns as many tangents as it gets");
+            let carried = tangents.pop().expect("renew returns as many tangents as it gets");
+            // What is normal to the branch's own freedom (a phase) may be another direction now.
+            tangent = self.problem.tangent(&point, Orientation::Along(&carried))?;
         }
         let mut watch = self.problem.watch(&point, &tangent)?;
         keep_signs(&self.current.watch, &mut watch);

@@ -264,7 +264,7 @@ impl CycleProblem {
     }
 
     /// Where Newton's method stops, and rounding.
-    fn left_by_newton(&self, point: &CyclePoint) -> f64 {
+    pub(crate) fn left_by_newton(&self, point: &CyclePoint) -> f64 {
         self.settings.newton.tolerance + self.rounding_of_nodes(point)
     }
 
@@ -306,6 +306,8 @@ impl CycleProblem {
         let reached = match () {
             () if error <= accuracy => Reached::Accuracy,
             () if discretisation <= accuracy => Reached::RoundoffFloor,
+            () if point.reached == Reached::Accuracy && self.settings.mesh.fixed.is_some() => Reached::GivenMesh,
+            () if point.reached == Reached::Accuracy => Reached::Rough,
             () => point.reached,
         };
         Ok(Point {

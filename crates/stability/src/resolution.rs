@@ -106,7 +106,8 @@ impl CycleProblem {
                 return Some(kept);
             };
             renewed.reached = obstacle;
-            if renewed.degree != now.degree {
+            // The first point of a branch has none before it to swing back to.
+            if renewed.degree != now.degree && !tangents.is_empty() {
                 self.resolution.hold = HOLD;
             }
             best = Some((renewed, carried));
@@ -121,7 +122,7 @@ impl CycleProblem {
         if grid.reason != MeshReason::ProfileError || grid.limited {
             return None;
         }
-        let accuracy = self.settings.mesh.accuracy;
+        let accuracy = self.allowance(now);
         let mut tried: Carried = (now.clone(), tangents.iter().map(|tangent| (*tangent).clone()).collect());
         for _ in 0..PATIENCE {
             let estimate = self.estimate(&tried.0);
@@ -138,6 +139,12 @@ impl CycleProblem {
             tried = next;
         }
         self.is_worth(now, &tried.0).then_some(tried)
+    }
+
+    /// The error a mesh may leave: the accuracy less what Newton's method and rounding leave, or all of it where that is hopeless.
+    fn allowance(&self, point: &CyclePoint) -> f64 {
+        let (accuracy, rest) = (self.settings.mesh.accuracy, self.left_by_newton(point));
+        if rest < 0.5 * accuracy { accuracy - rest } else { accuracy }
     }
 
     /// What stands in the way of the accuracy at a point that no better mesh was found for.
@@ -160,6 +167,7 @@ impl CycleProblem {
     fn better_grid(&mut self, point: &CyclePoint) -> Option<Grid> {
         let estimate = self.estimate(point);
         let mut settings = self.settings.mesh;
+        settings.accuracy = self.allowance(point);
         settings.fewest = settings.fewest.max(self.resolution.least);
         if self.resolution.hold > 0 {
             settings.degrees = (point.degree, point.degree);
@@ -245,7 +253,7 @@ impl CycleProblem {
     fn is_worth(&mut self, before: &CyclePoint, after: &CyclePoint) -> bool {
         let (old, new) = (self.estimate(before).error, self.estimate(after).error);
         let work = |point: &CyclePoint| work(point.degree, point.intervals());
-        let accuracy = self.settings.mesh.accuracy;
+        let accuracy = self.allowance(before);
         if old > accuracy { new <= accuracy || new < WORTH * old } else { work(after) < work(before) }
     }
 

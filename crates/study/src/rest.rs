@@ -33,6 +33,9 @@ impl Motion {
     }
 }
 
+/// Units in the last place that a period is known to at best.
+const PERIOD_UNITS: f64 = 8.0;
+
 /// Adds a motion and lets go of the cycles that are not needed any more.
 pub(crate) fn push(motions: &mut Vec<Motion>, motion: Motion) {
     motions.push(motion);
@@ -90,6 +93,8 @@ pub(crate) fn birth(problem: &mut CycleProblem, motions: &[Motion], scale: f64) 
         .collect();
     let (value, error) = limit(&parameters)?;
     let (period, period_error) = limit(&periods)?;
+    // Sums over a cycle round alike at every point.
+    let period_error = period_error + PERIOD_UNITS * f64::EPSILON * period;
     Some(Rest { value, error, period, period_error })
 }
 

@@ -154,8 +154,8 @@ fn events_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, 
 /// Whether the ends of a part that could not be cut any further are apart: there is no way along one branch between them.
 fn is_gap(problem: &CycleProblem, part: &Part) -> bool {
     /// Distance within which two cycles count as one: beside a crossing of branches, where the equations are nearly
-    /// singular, cycles are known to the root of roundoff.
-    const APART: f64 = 1e-7;
+    /// singular, cycles are known to the root of roundoff, and that of Lorenz's equations is some 1e-12.
+    const APART: f64 = 3e-6;
     problem.distance(&part.before.point, &part.after.point) > APART
 }
 

@@ -134,14 +134,14 @@ fn the_accumulation_is_covered_by_its_error() {
 }
 
 /// The predicted place is met in few strides, and not far behind: each deeper branch has its birth, its first cycle and
-/// at most three points more.
+/// a few points more, some of which the watch over multipliers asks for.
 #[test]
 fn few_points_on_deep_branches() {
     let rows = thresholds();
     for (k, branch) in roessler().branches.iter().enumerate().skip(5) {
-        assert!(branch.points.len() <= 5, "{}: {} points", branch.name, branch.points.len());
+        assert!(branch.points.len() <= 9, "{}: {} points", branch.name, branch.points.len());
         let last = branch.points.last().expect("points").value;
         let passed = (last - rows[k - 1].value) / (rows[k].value - rows[k - 1].value);
-        assert!((1.0..1.6).contains(&passed), "{}: {passed}", branch.name);
+        assert!((1.0..2.0).contains(&passed), "{}: {passed}", branch.name);
     }
 }
