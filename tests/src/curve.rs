@@ -125,7 +125,7 @@ pub fn van_der_pol(mu: f64, period: f64) -> Curve {
     const CHECKPOINTS: usize = 4000;
     // A disturbance decays by exp(-0.63) a period at mu = 0.1, faster beyond: to 1e-17 in 62 periods.
     let periods = if mu < 1.0 { 70 } else { 7 };
-    let settled = VanDerPol { mu, state: [2.0, 0.0] }.after(f64::from(periods) * period);
+    let settled = VanDerPol::new(mu, [2.0, 0.0]).after(f64::from(periods) * period);
     let mut checkpoints = vec![settled];
     for k in 1..CHECKPOINTS {
         checkpoints.push(checkpoints[k - 1].after(period / CHECKPOINTS as f64));

@@ -67,7 +67,7 @@ enum Claim {
     /// The period at an event.
     Period(Place, &'static str, Source),
     /// A cycle of a branch; the curve is that of a point.
-    Cycle(&'static str, Kept, Box<dyn Fn(&Point) -> Curve>),
+    Cycle(&'static str, Kept, Box<dyn Fn(&Point) -> Curve>, Source),
     /// The cycle of a branch at an edge of the range, by the same study with [`FINEST`].
     FinerCycle(&'static str, f64),
 }
@@ -78,22 +78,16 @@ struct Run {
     model: &'static str,
     fields: String,
     accuracy: f64,
-    /// Size of the terms of the model that the parameter stands beside: a threshold at 0 is known to roundoff of these.
-    scale: f64,
     claims: Vec<Claim>,
 }
 
 impl Run {
     fn new(case: &'static str, model: &'static str, fields: &str) -> Self {
-        Self { case, model, fields: fields.into(), accuracy: 1e-9, scale: 0.0, claims: Vec::new() }
+        Self { case, model, fields: fields.into(), accuracy: 1e-9, claims: Vec::new() }
     }
 
     fn accuracy(self, accuracy: f64) -> Self {
         Self { accuracy, ..self }
-    }
-
-    fn scale(self, scale: f64) -> Self {
-        Self { scale, ..self }
     }
 
     fn claim(mut self, claim: Claim) -> Self {
@@ -116,9 +110,9 @@ impl Run {
         self.claim(Claim::Period(Place::At(branch, value), digits, source))
     }
 
-    /// A cycle of a branch.
+    /// A cycle of a branch, known by hand.
     fn cycle(self, branch: &'static str, kept: Kept, curve: impl Fn(&Point) -> Curve + 'static) -> Self {
-        self.claim(Claim::Cycle(branch, kept, Box::new(curve)))
+        self.claim(Claim::Cycle(branch, kept, Box::new(curve), Source::Exact))
     }
 
     /// The cycle of a branch at an edge of the range, against a finer study.
@@ -143,17 +137,20 @@ impl Run {
             Claim::Value(name, digits, source) => {
                 let event = found(traced, Place::Named(name), self.case);
                 let row = self.number(event.value, digits, *source);
-                Row { number: format!("value of {}", named(event)), reported: event.error, ..row }
+                // A parameter is known relative to the width of the asked range, where that is larger than itself.
+                let range = traced.branches[0].range;
+                let roundoff = row.roundoff.max(f64::EPSILON * (range.1 - range.0));
+                Row { number: format!("value of {}", named(event)), reported: event.error, roundoff, ..row }
             }
             Claim::Period(place, digits, source) => {
                 let event = found(traced, *place, self.case);
                 let row = self.number(event.period, digits, *source);
                 Row { number: format!("period at {}", named(event)), reported: event.period_error, ..row }
             }
-            Claim::Cycle(name, which, curve) => {
+            Claim::Cycle(name, which, curve, source) => {
                 let (point, profile) = kept(crate::branch(traced, name), *which);
                 let error = profile_error(profile, &curve(point));
-                Row { error, source: Source::Exact.word(), ..self.cycle_row(name, point) }
+                Row { error, source: source.word(), ..self.cycle_row(name, point) }
             }
             Claim::FinerCycle(name, edge) => {
                 let (point, profile) = kept(crate::branch(traced, name), Kept::Near(*edge));
@@ -177,7 +174,7 @@ impl Run {
             source: source.word(),
             error: error.abs(),
             unit: if source == Source::Exact { 0.0 } else { unit },
-            roundoff: f64::EPSILON * found.abs().max(self.scale),
+            roundoff: f64::EPSILON * found.abs(),
             ..Row::default()
         }
     }

@@ -18,7 +18,7 @@ mod bracket;
 mod case;
 mod change;
 mod check;
-pub mod curve;
+mod curve;
 mod decimal;
 mod errors;
 mod job;

@@ -56,7 +56,8 @@ impl Tables {
             let of = k * size..(k + 1) * size;
             lagrange_at(&nodes, &bary, point, &mut value[of.clone()]);
             lagrange_slopes(&nodes, &bary, &value[of.clone()], &mut slope[of.clone()]);
-            balance(&mut slope[of]);
+            balance(&mut slope[of.clone()], 0.0);
+            balance(&mut value[of], 1.0);
         }
         let mut node_slope = vec![0.0; size * size];
         for i in 0..size {
@@ -97,20 +98,26 @@ pub(crate) fn lagrange_slopes(nodes: &[f64], bary: &[f64], value_at_s: &[f64], o
     }
 }
 
-/// Makes a row of slopes add up to zero, as it must on constants, by its smallest entry: what is left is half a unit in
-/// the last place of that one. Every interval uses the same rows, so what they are wrong on constants adds up over the
-/// intervals: with sums as rounding left them, periods of Roessler's cycles were off by N times 2e-15 times the states.
-fn balance(row: &mut [f64]) {
-    let Some(smallest) = (0..row.len()).min_by(|&a, &b| row[a].abs().total_cmp(&row[b].abs())) else { return };
-    // The sum and its rounding errors apart (Knuth 1969, The Art of Computer Programming 2, sec. 4.2.2, theorem B).
-    let (mut sum, mut errors) = (0.0, 0.0);
-    for &value in row.iter().enumerate().filter(|(j, _)| *j != smallest).map(|(_, value)| value) {
-        let next: f64 = sum + value;
-        let part = next - sum;
-        errors += (sum - (next - part)) + (value - part);
+/// Makes numbers add up to `wanted` as nearly as 64-bit numbers can: the slopes of a constant to 0, its values to 1. What is
+/// left of the slopes acts on every interval alike, as a growth from nowhere, and moved the doubling of a twisted band
+/// by N units in the last place.
+fn balance(numbers: &mut [f64], wanted: f64) {
+    let finest = (0..numbers.len()).min_by(|a, b| numbers[*a].abs().total_cmp(&numbers[*b].abs())).unwrap_or(0);
+    // The correction itself is rounded, to the finest number there is.
+    for _ in 0..2 {
+        numbers[finest] -= exact_sum(numbers, -wanted);
+    }
+}
+
+/// Sum, on top of `from`, with the rounding of every addition carried along (Neumaier 1974, Z. Angew. Math. Mech. 54:39).
+fn exact_sum(numbers: &[f64], from: f64) -> f64 {
+    let (mut sum, mut lost) = (from, 0.0);
+    for &number in numbers {
+        let next = sum + number;
+        lost += if sum.abs() >= number.abs() { (sum - next) + number } else { (number - next) + sum };
         sum = next;
     }
-    row[smallest] = -(sum + errors);
+    sum + lost
 }
 
 /// m! times the divided-difference weights of the nodes.

@@ -24,6 +24,8 @@ pub const WATCH_FOLD: usize = 0;
 pub const WATCH_DOUBLING: usize = 1;
 /// Index of the torus function: `Prod (|mu|^2 - 1)` over complex pairs, scaled.
 pub const WATCH_TORUS: usize = 2;
+/// Index of the branching function: `Prod (mu - 1)`, scaled.
+pub const WATCH_BRANCHING: usize = 3;
 
 /// The model as the cycle problem needs it.
 #[derive(Clone)]
@@ -255,10 +257,15 @@ impl CycleProblem {
         Ok(spectrum)
     }
 
-    /// Estimated error of a cycle's profile, relative to the range of each state: what a finer mesh would remove, and
-    /// rounding.
+    /// Estimated error of a cycle's profile, relative to the range of each state: what a finer mesh would remove, what
+    /// Newton's method leaves, and rounding.
     pub fn profile_error(&mut self, point: &CyclePoint) -> f64 {
-        self.estimate(point).error + self.rounding_of_nodes(point)
+        self.estimate(point).error + self.left_by_newton(point)
+    }
+
+    /// Where Newton's method stops, and rounding.
+    fn left_by_newton(&self, point: &CyclePoint) -> f64 {
+        self.settings.newton.tolerance + self.rounding_of_nodes(point)
     }
 
     /// What rounding leaves of a profile: a state far from zero that hardly moves has few digits.
@@ -293,7 +300,7 @@ impl CycleProblem {
         let spectrum = self.known_spectrum(point)?;
         let profile = self.profile(point);
         let measures = Measures::of(&profile);
-        let (discretisation, rounding) = (self.estimate(point).error, self.rounding_of_nodes(point));
+        let (discretisation, rounding) = (self.estimate(point).error, self.left_by_newton(point));
         let error = discretisation + rounding;
         let accuracy = self.settings.mesh.accuracy;
         let reached = match () {
@@ -522,6 +529,7 @@ impl Problem for CycleProblem {
                 value(if turning.abs() < noise { 0.0 } else { turning }),
                 value(spectrum.doubling_product()),
                 value(spectrum.torus_product()),
+                value(spectrum.branching_product()),
             ],
             unstable_count: spectrum.unstable_count(),
         };

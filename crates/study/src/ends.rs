@@ -2,10 +2,10 @@
 
 use armilla_follow::{FollowEnd, Follower};
 use armilla_record::{End, EndReason, EventKind, Point};
-use armilla_stability::{CyclePoint, CycleProblem, Fault};
+use armilla_stability::{CyclePoint, CycleProblem, Fault, SplitChange};
 
 use crate::approach::Approach;
-use crate::rest::{Motion, Rest, extrapolate_to_rest};
+use crate::rest::{Motion, Rest, birth, guess};
 use crate::step_events::{Found, SUPERCONVERGENCE, unresolved};
 use crate::study::Study;
 use crate::walk::{CycleStation, WalkPlan, Walked};
@@ -23,6 +23,8 @@ pub(crate) enum Passage {
     TooLong,
     /// An equilibrium, with what was extrapolated, or the branch's own birth.
     End(End, Option<Rest>),
+    /// The branch's own birth, but the step ended on its parent: to be tried again shorter, and an end only then.
+    Fell(End),
 }
 
 /// Whether the last step went through an equilibrium or through the branch's own birth; the walk is over then, and the
@@ -43,34 +45,44 @@ pub(crate) fn passed_through(
         if problem.motion(&before.point) > SMALL * largest || motions.len() < 4 {
             return Passage::TooLong;
         }
-        let point = before.point.clone();
-        let uncertainty = uncertainty(problem, &point, motions, plan);
-        let Some(rest) = extrapolate_to_rest(motions, uncertainty) else { return Passage::TooLong };
+        let Some(rest) = birth(problem, motions, scale(plan)) else { return Passage::TooLong };
         let value = rest.value;
         let words =
             format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), known(plan, (value, rest.error)));
         return Passage::End(end(EndReason::Equilibrium { value }, last, words), Some(rest));
     }
     // Whatever its turns: they count crossings of one state, which may have the longer period alone.
-    if problem.passed_birth(&before.point, &after.point) {
-        let sizes = sizes(points, (before, after), |point| problem.split(point));
-        let limit = even_limit(&sizes, worst_profile(points, problem.profile_error(&before.point)), plan);
-        let at = format!("{} = {}", with_unit_name(plan), known(plan, limit));
-        let words = if plan.doubled {
-            format!("returns to its parent at {at}")
-        } else {
-            format!("returns to the cycle of half its period that it was born from by a period doubling, at {at}")
-        };
-        return Passage::End(end(EndReason::ReturnsToParent, limit.0, words), None);
+    match problem.split_between(&before.point, &after.point) {
+        SplitChange::None => Passage::None,
+        SplitChange::Turned => {
+            let sizes = sizes(points, before, Some(after), |point| problem.split(point));
+            Passage::End(returned(&sizes, worst_profile(points, problem.profile_error(&before.point)), plan), None)
+        }
+        SplitChange::Gone => {
+            let sizes = sizes(points, before, None, |point| problem.split(point));
+            Passage::Fell(returned(&sizes, worst_profile(points, problem.profile_error(&before.point)), plan))
+        }
     }
-    Passage::None
+}
+
+/// The end of a walk at the birth of its branch by a period doubling.
+fn returned(sizes: &[(f64, f64)], profile_error: f64, plan: &WalkPlan<'_>) -> End {
+    let limit = even_limit(sizes, profile_error, plan);
+    let at = format!("{} = {}", with_unit_name(plan), known(plan, limit));
+    let words = if plan.doubled {
+        format!("returns to its parent at {at}")
+    } else {
+        format!("returns to the cycle of half its period that it was born from by a period doubling, at {at}")
+    };
+    end(EndReason::ReturnsToParent, limit.0, words)
 }
 
 /// Sizes of what vanishes, with the parameter, at the last stations: in the metric of now, which may not be that of each
 /// station when it was passed.
 fn sizes(
     points: &[Walked],
-    (before, after): (&CycleStation, &CycleStation),
+    before: &CycleStation,
+    after: Option<&CycleStation>,
     size: impl Fn(&CyclePoint) -> f64,
 ) -> Vec<(f64, f64)> {
     /// Difference of two sizes, relative, below which their weights are roundoff.
@@ -81,7 +93,7 @@ fn sizes(
     if stations.is_empty() {
         stations.push(&before.point);
     }
-    stations.push(&after.point);
+    stations.extend(after.map(|after| &after.point));
     let mut kept: Vec<(f64, f64)> = Vec::new();
     for point in stations {
         let found = (size(point), point.unknowns.parameter);
@@ -188,31 +200,6 @@ pub(crate) fn blown_up(current: &CycleStation, plan: &WalkPlan<'_>, approach: Ap
     (event, end(EndReason::PeriodBlowUp, current.point.unknowns.parameter, words))
 }
 
-/// Errors of the parameter and of the period of a small cycle on its own mesh, at its size of motion: from how both move
-/// on the mesh with every interval halved, at the same parameter.
-fn uncertainty(problem: &mut CycleProblem, point: &CyclePoint, motions: &[Motion], plan: &WalkPlan<'_>) -> (f64, f64) {
-    /// What moves one way here may move the other way at a neighbour.
-    const MARGIN: f64 = 4.0;
-    /// Units in the last place. The conditioning of a small cycle would tell some hundred times more: it counts roundoff
-    /// that turns the phase, which neither parameter nor period see.
-    const UNITS: f64 = 64.0;
-    let (period, scale) = (point.unknowns.period, scale(plan));
-    let Ok((fine, _)) = problem.refine(point) else {
-        let relative = SUPERCONVERGENCE * problem.profile_error(point);
-        return (relative * scale, relative * period);
-    };
-    let square = |size: f64| size * size;
-    // The last point lies beyond the equilibrium; the two before tell how the parameter goes with the motion.
-    let slope = match motions {
-        [.., far, near, _] => (far.parameter - near.parameter) / (square(far.size) - square(near.size)),
-        _ => 0.0,
-    };
-    let moved = slope * (square(problem.motion(&fine)) - square(problem.motion(point)));
-    let drift = (fine.unknowns.period - period).abs() / period;
-    let relative = MARGIN * drift + UNITS * f64::EPSILON;
-    (MARGIN * moved.abs() + relative * scale, relative * period)
-}
-
 /// Size of the parameter for roundoff.
 fn scale(plan: &WalkPlan<'_>) -> f64 {
     let (low, high) = plan.study.range;
@@ -274,8 +261,7 @@ pub(crate) fn end_of_follower(follower: &Follower<'_, CycleProblem>, plan: &Walk
         }
         Some(FollowEnd::Stuck | FollowEnd::Outside(_)) if shrunk => {
             let accuracy = plan.study.file.accuracy * scale(plan);
-            let rest = extrapolate_to_rest(motions, (accuracy, accuracy))
-                .map_or((value, accuracy), |rest| (rest.value, rest.error));
+            let rest = (guess(motions).unwrap_or(value), accuracy);
             let words = format!("shrinks to an equilibrium at {name} = {}", known(plan, rest));
             end(EndReason::Equilibrium { value: rest.0 }, value, words)
         }

@@ -31,7 +31,6 @@ fn hopf() -> Run {
         "x1",
         r#"start: Settle(at: {"mu": 0.25}), follow: (parameter: "mu", from: -0.5, to: 1.5)"#,
     )
-    .scale(1.0)
     .value("a/hopf1", "0.0", Exact)
     .period("a/hopf1", TURN, Exact)
     .period_at("a", 0.25, "5.5850536063818546461558105", Exact)
@@ -47,7 +46,6 @@ fn fold() -> Run {
         "x2",
         r#"start: Settle(at: {"mu": 0.1}), follow: (parameter: "mu", from: -0.4, to: 0.5), targets: [-0.1]"#,
     )
-    .scale(1.0)
     .value("a/fold1", "-0.25", Exact)
     .period("a/fold1", TURN, Exact)
     .value("a/hopf1", "0.0", Exact)
@@ -73,7 +71,6 @@ fn twisted_band() -> Run {
         "x3",
         r#"set: {"kap": 0.5, "om": 1.3}, start: Settle(at: {"mu": -0.1}), follow: (parameter: "mu", from: -0.2, to: 0.2), pursue: (doublings: 1), targets: [0.1]"#,
     )
-    .scale(1.0)
     .value("a/doubling1", "0.0", Exact)
     .period("a/doubling1", "4.8332194670612202017594041", Exact)
     .period_at("a", -0.1, "4.8332194670612202017594041", Exact)
@@ -92,7 +89,6 @@ fn supercritical() -> Run {
         "x4",
         r#"set: {"g": -1.3, "e": 0.7}, start: Settle(at: {"l": -0.05}), follow: (parameter: "l", from: -0.15, to: 0.15), pursue: (doublings: 1), targets: [0.1]"#,
     )
-    .scale(1.0)
     .value("a/doubling1", "0.0", Exact)
     .period("a/doubling1", TURN, Exact)
     .cycle("a", Kept::Near(0.1), |_| circle(1.0, &[0.0]))
@@ -109,7 +105,6 @@ fn subcritical() -> Run {
         "x4",
         r#"set: {"g": 1.3, "e": 0.7}, start: Settle(at: {"l": -0.05}), follow: (parameter: "l", from: -0.15, to: 0.15), pursue: (doublings: 1), targets: [-0.1]"#,
     )
-    .scale(1.0)
     .value("a/doubling1", "0.0", Exact)
     .cycle("a", Kept::Near(-0.1), |_| circle(1.0, &[0.0]))
     .period_at("a.doubling1", -0.1, "11.924293283698485310320452", Exact)
@@ -124,7 +119,6 @@ fn transcritical() -> Run {
         "x12",
         r#"start: Settle(at: {"mu": 0.2}), follow: (parameter: "mu", from: -0.1, to: 0.5)"#,
     )
-    .scale(1.0)
     .value("a/branching1", "0.0", Exact)
     .period_at("a", 0.2, "4.1887902047863909846168578", Exact)
     .cycle("a", Kept::Near(0.2), |point| branched(1, (point.value, 0.7, 1.5)))
@@ -173,7 +167,6 @@ fn saddle_loop() -> Run {
         "x14",
         r#"start: Settle(at: {"h": -0.2}), follow: (parameter: "h", from: -0.24, to: 0.1), targets: [-0.1, -0.01, -1e-4, -1e-6, -1e-8]"#,
     )
-    .scale(1.0)
     .period_at("a", -0.24, "4.4769541468745459682819765", Exact)
     .period_at("a", -0.2, "4.6306753041491334277025820", Exact)
     .cycle("a", Kept::Near(-0.2), |point| near_loop(point.value))

@@ -4,12 +4,9 @@
 //! arithmetic and Newton's method on the extended system, two settings agreeing on the digits shown. A last digit may be
 //! rounded either way, so a truth is known to one unit of it.
 
-use armilla_record::Point;
-
 use super::Source::{Exact, Independent};
-use super::{Kept, Run};
+use super::{Claim, Kept, Run};
 use crate::curve::van_der_pol;
-use crate::matching::Curve;
 
 pub(super) fn runs() -> Vec<Run> {
     let mut runs = Vec::new();
@@ -28,9 +25,9 @@ pub(super) fn runs() -> Vec<Run> {
     runs
 }
 
-/// By its Taylor series.
-fn relaxation(point: &Point) -> Curve {
-    van_der_pol(point.value, point.period)
+/// The cycle by its Taylor series.
+fn relaxation(kept: Kept) -> Claim {
+    Claim::Cycle("a", kept, Box::new(|point| van_der_pol(point.value, point.period)), Independent)
 }
 
 fn oscillator() -> Run {
@@ -40,13 +37,13 @@ fn oscillator() -> Run {
         r#"start: Settle(at: {"mu": 1.0}), follow: (parameter: "mu", from: 0.1, to: 20), targets: [5]"#,
     )
     .period_at("a", 0.1, "6.28711127228872680605394", Independent)
-    .cycle("a", Kept::Near(0.1), relaxation)
+    .claim(relaxation(Kept::Near(0.1)))
     .period_at("a", 1.0, "6.66328685932313018969968", Independent)
-    .cycle("a", Kept::Near(1.0), relaxation)
+    .claim(relaxation(Kept::Near(1.0)))
     .period_at("a", 5.0, "11.6122306677195700346", Independent)
-    .cycle("a", Kept::Near(5.0), relaxation)
+    .claim(relaxation(Kept::Near(5.0)))
     .period_at("a", 20.0, "34.6823233116526835671", Independent)
-    .cycle("a", Kept::Near(20.0), relaxation)
+    .claim(relaxation(Kept::Near(20.0)))
 }
 
 fn strong_relaxation() -> Run {

@@ -28,24 +28,29 @@ known; it is written by
 which runs the main job on each case and compares. The same comparison is a test.
 
 What is claimed: the true error is at most the reported one, and the reported one is at most {WIDEST} times the true
-one, or {WIDEST} times the roundoff unit of the number (its size times 2.2e-16) where the true error is smaller than
-that by luck.
+one, or {WIDEST} times the roundoff unit of the number where the true error is smaller than that by luck. The unit is
+2.2e-16 times the size of the number, for a parameter times the width of the asked range if that is larger.
 
 How each error is estimated:
 
-- `error` of a fold or a doubling, `period_error` there and at starts, targets and edges: the number is computed again
-  on a mesh with every interval halved, and that is what is printed; the error is the difference, plus the roundoff of
-  both solutions carried through the linear system, which measures the conditioning.
-- `error` of an event found by bisection (`torus`, `branching`): half the width of the bracket.
-- `error` of a birth at a state of rest (`hopf`) and of a `period-blow-up`: how far the extrapolation moves when a
-  point is left out.
-- `profile_error` of a cycle: from the jumps of the highest derivative between intervals (de Boor 1973), relative to
-  the range of each state. It is held against the largest error over all states and times at the best common phase.
+- `period_error` at starts, targets and edges, `error` and `period_error` of a fold or a doubling: the number is
+  computed again on a mesh with every interval halved, and that is what is printed. Its error is a share of the
+  difference, twice the factor by which the error of the profile fell from the one mesh to the other (numbers converge
+  faster than profiles), plus the roundoff of both solutions carried through the linear system.
+- `error` of an event found by bisection (`torus`, `branching`): half the width of the bracket; its `period_error`: the
+  change of the period over the bracket, and the error at its end.
+- `hopf`: parameter and period of the last ten cycles, on halved meshes, are extrapolated in the square of the
+  amplitude; the error is what the last point used changes, plus the errors of all enlarged by their weights.
+- `period-blow-up`: how far the limit moves when a point is left out.
+- `profile_error` of a cycle: the largest local error, one and a half times what the defect of the equation
+  between the Gauss points integrates to in each interval, plus what Newton's method and rounding leave; relative to the
+  range of each state. It is held against the largest error over all states and times at the best common phase.
 
-Sources of truth: `exact`, by hand; `independent`, single shooting with a Taylor integrator in 113-bit arithmetic, or
-published; `finer`, the same study with accuracy 1e-12. A truth with fewer digits tells the true error only to a unit
-of its last digit; the row then shows `<` that unit where the error is smaller, and is called inside if the two
-agree within the reported error and that unit.
+Sources of truth: `exact`, by hand; `independent`, another method in higher precision, or published; `finer`, the same
+study with accuracy 1e-12. A truth with fewer digits tells the true error only to a unit of its last digit, a finer
+study to its own reported error: the row then shows `<`, and counts as inside if the two agree within the reported
+error and that unit. The ratio takes the largest of true error, unit and roundoff unit below. A cycle is one of
+those that the branch file keeps.
 
 "
     )

@@ -15,7 +15,7 @@ const LOG_MULTIPLIER: f64 = -7.058_932_808_798_959;
 /// The phase of a collocated cycle is its own: it is read off at the first mesh point and taken out.
 fn profile_errors(solved: &Uniform) -> (f64, f64) {
     let profile = solved.profile();
-    let on_cycle = VanDerPol { mu: 1.0, state: [AMPLITUDE, 0.0] };
+    let on_cycle = VanDerPol::new(1.0, [AMPLITUDE, 0.0]);
     let start = profile.node(0);
     let mut phase = nearest_phase(on_cycle, start);
     // Newton's method for the time at which the cycle passes nearest to the first mesh point.
