@@ -16,13 +16,16 @@
 
 mod bracket;
 mod case;
+mod change;
 mod check;
 mod curve;
 mod decimal;
 mod errors;
 mod job;
+mod ledger;
 mod matching;
 mod order;
+mod planted;
 mod random;
 mod series;
 mod uniform;
@@ -30,12 +33,15 @@ mod walk;
 
 pub use bracket::{station, stations};
 pub use case::{Case, settings};
+pub use change::{Bend, Change, Move};
 pub use check::{absolute, multiplier, relative};
 pub use decimal::difference;
 pub use errors::{Row, Source, WIDEST, page, rows};
 pub use job::{branch, cascade_job, event, job};
+pub use ledger::Ratios;
 pub use matching::{Curve, profile_error};
 pub use order::Orders;
+pub use planted::{Beneath, Exact, Planted, Sheet};
 pub use random::Random;
 pub use series::{VanDerPol, divergence_integral};
 pub use uniform::{Uniform, uniform_mesh};

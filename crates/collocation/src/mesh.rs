@@ -49,9 +49,10 @@ pub struct ErrorEstimate {
     pub imbalance: f64,
 }
 
-/// Share by which measured local errors are enlarged: what they leave out is smaller than half of them wherever the mesh
-/// resolves the cycle.
-const COVER: f64 = 1.5;
+/// Factor by which measured local errors are enlarged: what they leave out, `h T A e`, is a share of them that grows as
+/// intervals get few. On 410 planted cycles the true error was the measured one in the median and 1.94 times it at most,
+/// on 8 intervals.
+const COVER: f64 = 2.5;
 
 impl ErrorEstimate {
     /// The same with the local errors of all intervals measured ([`crate::Defects`]) instead of estimated; left as it is

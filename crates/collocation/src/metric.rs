@@ -25,6 +25,12 @@ impl Metric {
             + a.parameter * b.parameter / self.parameter_scale.powi(2)
     }
 
+    /// Largest modulus of any node value over the scale of its state.
+    pub fn largest(&self, nodes: &[f64]) -> f64 {
+        let sizes = nodes.chunks_exact(self.scales.len()).flat_map(|node| node.iter().zip(&self.scales));
+        sizes.fold(0.0, |largest: f64, (value, scale)| largest.max((value / scale).abs()))
+    }
+
     /// The part of the inner product over the nodes.
     pub fn nodes_inner(&self, tables: &Tables, mesh: &[f64], a: &[f64], b: &[f64]) -> f64 {
         let (n, m) = (self.scales.len(), tables.degree);

@@ -64,13 +64,15 @@ pub struct Report {
     pub corrections: Vec<f64>,
     /// Residual of the closing before each correction.
     pub closing_residuals: Vec<f64>,
+    /// Scaled size below which a correction may be roundoff.
+    pub floor: f64,
 }
 
 impl Report {
-    /// |second correction| / |first|, 0 where one was enough.
+    /// |second correction| / |first|, 0 where one was enough or the second is roundoff, which no shorter step makes smaller.
     pub fn contraction(&self) -> f64 {
         match self.corrections[..] {
-            [first, second, ..] if first > 0.0 => second / first,
+            [first, second, ..] if first > 0.0 && second > self.floor => second / first,
             _ => 0.0,
         }
     }
@@ -140,6 +142,10 @@ pub fn correct(
     correct_with(&mut workspace, system, at, Task { reference, closing, settings })
 }
 
+/// Units in the last place of the largest state over its scale at which stagnation is taken for roundoff in any case: a
+/// state far from zero that hardly moves cannot be had to more digits. A conditioning of a hundred is allowed for.
+const FLOOR_UNITS: f64 = 100.0;
+
 /// What [`correct_with`] is to do.
 pub struct Task<'a> {
     /// Node values of the phase condition.
@@ -160,10 +166,11 @@ pub fn correct_with(
     at: &mut Iterate,
     task: Task<'_>,
 ) -> Result<Report, Failure> {
-    let settings = task.settings;
+    let mut settings = task.settings;
+    settings.floor = settings.floor.max(FLOOR_UNITS * f64::EPSILON * system.spec().metric.largest(&at.nodes));
     workspace.fit(system);
     system.phase_row(task.reference, &mut workspace.phase);
-    let mut report = Report::default();
+    let mut report = Report { floor: settings.floor, ..Report::default() };
     report.corrections.reserve(settings.most);
     report.closing_residuals.reserve(settings.most);
     for iteration in 1..=settings.most {
@@ -210,6 +217,11 @@ enum Verdict {
     Lost,
 }
 
+/// Least c for which the next correction is trusted to be `c size^2`. A first correction often goes where the equations
+/// are nearly straight and says too little: on planted cycles it left 20 times the tolerance. Larger costs an iteration
+/// more often.
+const CURVATURE: f64 = 10.0;
+
 fn judge(size: f64, before: Option<f64>, settings: NewtonSettings) -> Verdict {
     /// A correction that shrinks by less than this is no convergence.
     const SLOWEST: f64 = 0.9;
@@ -229,8 +241,8 @@ fn judge(size: f64, before: Option<f64>, settings: NewtonSettings) -> Verdict {
                 Verdict::Lost
             }
         }
-        // Quadratic convergence: the next correction would be about size^3 / before^2.
-        Some(before) if size * (size / before).powi(2) <= settings.tolerance => Verdict::Last,
+        // Quadratic convergence: the next correction would be about c size^2, c being at least what was seen.
+        Some(before) if (size / before.powi(2)).max(CURVATURE) * size.powi(2) <= settings.tolerance => Verdict::Last,
         Some(_) => Verdict::Go,
     }
 }
@@ -260,13 +272,8 @@ pub fn roundoff(bordered: &mut Bordered, system: &System, scalar: Scalar, closin
 
 impl Workspace {
     /// [`roundoff`] after [`correct_with`] has converged on the system's mesh; 0 before any correction.
-    pub fn roundoff(&mut self, system: &System, scalar: Scalar) -> f64 {
-        // The closing is of size 1 where it is a bordered test function, and exact where it holds the parameter.
-        let touches_nodes = self.row.as_ref().is_some_and(|row| row.nodes.iter().any(|value| *value != 0.0));
-        match self.bordered.as_mut() {
-            Some(bordered) => roundoff(bordered, system, scalar, if touches_nodes { 1.0 } else { 0.0 }),
-            None => 0.0,
-        }
+    pub fn roundoff(&mut self, system: &System, scalar: Scalar, closing: f64) -> f64 {
+        self.bordered.as_mut().map_or(0.0, |bordered| roundoff(bordered, system, scalar, closing))
     }
 
     /// One Newton iteration with a full step, applied to `at` whatever its size; no allocation once sized. For callers

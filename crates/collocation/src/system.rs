@@ -130,6 +130,8 @@ pub struct System {
     tables: &'static Tables,
     mesh: Vec<f64>,
     entries: Vec<(usize, usize)>,
+    /// Of each entry of the Jacobian: size of the column's state over that of the row's, the units of the blocks.
+    ratios: Vec<f64>,
     cyclic: Cyclic,
     states: Vec<f64>,
     rates: Vec<f64>,
@@ -150,13 +152,14 @@ impl System {
     pub fn new(spec: SystemSpec, degree: usize, mesh: &[f64]) -> Self {
         let evaluator = spec.field.evaluator(&[Column::Parameter(spec.free)]);
         let pattern = spec.field.pattern();
-        let entries = pattern.entries().collect();
+        let entries: Vec<(usize, usize)> = pattern.entries().collect();
         let shape = Shape { n: spec.field.n_states(), inner: 0, intervals: 1 };
         let mut system = Self {
             spec,
             evaluator,
             tables: Tables::of(degree),
             mesh: Vec::new(),
+            ratios: vec![1.0; entries.len()],
             entries,
             cyclic: Cyclic::new(shape),
             states: Vec::new(),
@@ -253,6 +256,10 @@ impl System {
     pub fn linearise(&mut self, at: &Iterate) -> Result<(), Fault> {
         self.evaluate(at)?;
         self.fill_residual(at);
+        self.cyclic.set_sizes(&self.spec.metric.scales);
+        for (ratio, &(a, b)) in self.ratios.iter_mut().zip(&self.entries) {
+            *ratio = self.cyclic.sizes()[b] / self.cyclic.sizes()[a];
+        }
         for i in 0..self.mesh.len() - 1 {
             self.fill_block(i);
         }
@@ -297,8 +304,12 @@ impl System {
             for k in 0..m {
                 let row = &mut self.residual[(i * m + k) * n..(i * m + k + 1) * n];
                 row.fill(0.0);
-                for (node, &slope) in nodes.chunks_exact(n).zip(&self.tables.slope[k * size..(k + 1) * size]) {
-                    row.iter_mut().zip(node).for_each(|(r, u)| *r += slope * u);
+                // Differences from the first node: slopes of a constant vanish, and its rounding with them.
+                let (first, others) = nodes.split_at(n);
+                for (node, &slope) in others.chunks_exact(n).zip(&self.tables.slope[k * size + 1..(k + 1) * size]) {
+                    for (r, (u, from)) in row.iter_mut().zip(node.iter().zip(first)) {
+                        *r += slope * (u - from);
+                    }
                 }
                 for (a, r) in row.iter_mut().enumerate() {
                     *r -= step * self.rates[a * points + i * m + k];
@@ -323,7 +334,7 @@ impl System {
             let values = &self.tables.value[k * size..(k + 1) * size];
             let slopes = &self.tables.slope[k * size..(k + 1) * size];
             for (entry, &(a, b)) in self.entries.iter().enumerate() {
-                let factor = -step * self.jacobian[entry * points + i * m + k];
+                let factor = -step * self.jacobian[entry * points + i * m + k] * self.ratios[entry];
                 let row = &mut block[(k * n + a) * width..(k * n + a + 1) * width];
                 for (j, value) in values.iter().enumerate() {
                     row[column(j) + b] += factor * value;
@@ -338,8 +349,9 @@ impl System {
         }
     }
 
-    /// Writes the size of the terms each interval row is summed from, `Sum_j |L'_j u_j| + h T |f|`: its rounding is that
-    /// times the unit of the last place.
+    /// Writes the size of the terms each interval row is summed from: its rounding is that times the unit of the last
+    /// place. `Sum_j |L'_j (u_j - u_0)| + h T (|f| + Sum_b |A_ab u_b|)`, the last because the rate is taken at a rounded
+    /// state.
     pub fn row_sizes(&self, out: &mut [f64]) {
         let (n, m, points) = (self.n(), self.tables.degree, self.points());
         let size = m + 1;
@@ -347,11 +359,43 @@ impl System {
             let (i, k) = (point / m, point % m);
             let slopes = &self.tables.slope[k * size..(k + 1) * size];
             for a in 0..n {
+                let value = |j: usize| self.nodes[(i * m + j) * n + a];
                 let terms: f64 =
-                    slopes.iter().enumerate().map(|(j, slope)| (slope * self.nodes[(i * m + j) * n + a]).abs()).sum();
+                    slopes.iter().enumerate().map(|(j, slope)| (slope * (value(j) - value(0))).abs()).sum();
                 out[point * n + a] = terms + (self.h(i) * self.period * self.rates[a * points + point]).abs();
             }
         }
+        self.add_jacobian_sizes(&self.states, out);
+    }
+
+    /// Adds `h T Sum_b |A_ab v_b|` to all rows, v given at the Gauss points.
+    fn add_jacobian_sizes(&self, values: &[f64], out: &mut [f64]) {
+        let (n, m, points) = (self.n(), self.tables.degree, self.points());
+        for (entry, &(a, b)) in self.entries.iter().enumerate() {
+            for point in 0..points {
+                let step = self.h(point / m) * self.period;
+                let term = self.jacobian[entry * points + point] * values[b * points + point];
+                out[point * n + a] += (step * term).abs();
+            }
+        }
+    }
+
+    /// The same for the rows of a variation (v, S), `Sum_j |L'_j v_j| + h T Sum_b |A_ab v_b| + h |S f|`, at the last
+    /// linearisation.
+    pub fn variation_sizes(&mut self, nodes: &[f64], period: f64, out: &mut [f64]) {
+        let (n, m, points) = (self.n(), self.tables.degree, self.points());
+        let size = m + 1;
+        to_points(self.tables, n, nodes, &mut self.variation_points);
+        for point in 0..points {
+            let (i, k) = (point / m, point % m);
+            let slopes = &self.tables.slope[k * size..(k + 1) * size];
+            for a in 0..n {
+                let terms: f64 =
+                    slopes.iter().enumerate().map(|(j, slope)| (slope * nodes[(i * m + j) * n + a]).abs()).sum();
+                out[point * n + a] = terms + (self.h(i) * period * self.rates[a * points + point]).abs();
+            }
+        }
+        self.add_jacobian_sizes(&self.variation_points, out);
     }
 
     /// Writes the column of the period, `-h_i f`, over all interval rows.

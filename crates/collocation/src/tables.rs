@@ -173,6 +173,19 @@ mod tests {
         }
     }
 
+    /// Exact: sums in whole multiples of 2^-80, which all entries are.
+    #[test]
+    fn slopes_of_constants_vanish_but_for_half_a_unit_of_the_smallest() {
+        let whole = |value: f64| (value * 2f64.powi(80)) as i128;
+        for degree in 3..=8 {
+            for row in Tables::new(degree).slope.chunks_exact(degree + 1) {
+                let sum: i128 = row.iter().map(|value| whole(*value)).sum();
+                let smallest = row.iter().fold(f64::INFINITY, |least, value| least.min(value.abs()));
+                assert!(sum.abs() <= whole(0.5 * f64::EPSILON * smallest), "{degree}: {sum} {row:?}");
+            }
+        }
+    }
+
     /// Exact: for m = 1, P(s) = s^2/2 - s/2 with largest modulus 1/8; for m = 2, P = (x^3/3 - x^2/2 + x/6)/2.
     #[test]
     fn error_constants_are_those_of_small_degrees() {

@@ -1,5 +1,6 @@
 //! The walk along a branch.
 
+use crate::hermite::Hermite;
 use crate::problem::{Closing, Corrected, Failure, Orientation, Problem, Watch};
 use crate::settings::{Settings, SettingsFault};
 use crate::stride::{Finished, StrideControl};
@@ -94,6 +95,18 @@ pub enum StartFault<E> {
     Problem(Failure<E>),
 }
 
+/// Contraction of the corrector above which its point is not taken, between the wanted 1/4 and the 1/2 at which Newton's
+/// method meets two solutions at once. Lower costs shorter strides where equations are hard.
+const SLOW: f64 = 0.45;
+/// Length of a correction, in a metric in which solutions are about 1, under which its contraction may be roundoff's.
+const ROUNDOFF: f64 = 1e-7;
+/// Share of the bending of a step by which it may miss the curve of its tangents; a curve of constant bending misses by
+/// none of it to leading order, the jump to a parallel curve by all.
+const CURVE_SHARE: f64 = 0.5;
+/// Share of the stride under which a miss is no reason: where the bending changes its sign the share alone would never be
+/// met. Jumps to a parallel branch nearer than this are left to the contraction and to the orientation.
+const CURVE_FLOOR: f64 = 2e-3;
+
 /// A corrected candidate for the next point.
 struct Candidate<Q: Problem> {
     point: Q::Point,
@@ -178,6 +191,10 @@ impl<'a, Q: Problem> Follower<'a, Q> {
         }
         let Some(previous) = self.previous.take() else { return false };
         self.current = previous;
+        // The problem may measure otherwise since; a tangent of another length would make strides of another one.
+        if let Ok(tangent) = self.problem.tangent(&self.current.point, Orientation::Along(&self.current.tangent)) {
+            self.current.tangent = tangent;
+        }
         self.stride = (0.5 * length).max(self.settings.shortest);
         self.control = StrideControl::default();
         self.taken = self.taken.saturating_sub(1);
@@ -228,7 +245,15 @@ impl<'a, Q: Problem> Follower<'a, Q> {
         let prediction = self.problem.advance(&self.current.point, &self.current.tangent, stride);
         let closing = Closing::Arclength { from: &self.current.point, tangent: &self.current.tangent, stride };
         let corrected = self.problem.correct(&prediction, closing)?;
+        // A correction that shrinks this slowly comes from as far away as another solution lies (Newton and Kantorovich:
+        // under contraction 1/2 there is one solution only in the ball that the corrections span).
+        if corrected.contraction > SLOW && self.problem.distance(&prediction, &corrected.point) > ROUNDOFF {
+            return Err(Failure::Jumped);
+        }
         let candidate = self.judge(corrected)?;
+        if self.leaves_its_curve(&candidate, stride) {
+            return Err(Failure::Jumped);
+        }
         if self.turns_back_beyond(&candidate) {
             return Err(Failure::NotConverged);
         }
@@ -250,6 +275,19 @@ impl<'a, Q: Problem> Follower<'a, Q> {
         Ok(Candidate { point, tangent, cosine, contraction })
     }
 
+    /// Whether the step to the candidate is none along a curve with the tangents of its ends: the trapezoidal rule over
+    /// the tangents then misses it by as much as the prediction does, or the prediction hits what it should miss. On a
+    /// smooth branch the misses fall with the cube and the square of the stride.
+    fn leaves_its_curve(&self, candidate: &Candidate<Q>, stride: f64) -> bool {
+        let Station { point, tangent, .. } = &self.current;
+        let half = self.problem.advance(point, tangent, 0.5 * stride);
+        let missed =
+            self.problem.distance(&self.problem.advance(&half, &candidate.tangent, 0.5 * stride), &candidate.point);
+        let predicted = self.problem.distance(&self.problem.advance(&half, tangent, 0.5 * stride), &candidate.point);
+        let bend = 0.5 * stride * (2.0 - 2.0 * candidate.cosine.min(1.0)).sqrt();
+        missed > CURVE_SHARE * predicted.max(bend) && missed > CURVE_FLOOR * stride
+    }
+
     /// Whether the parameter turns back inside the step beyond an edge or target that neither end passes: the cubic
     /// through both ends tells; a shorter stride then separates the passages.
     fn turns_back_beyond(&mut self, candidate: &Candidate<Q>) -> bool {
@@ -265,7 +303,7 @@ impl<'a, Q: Problem> Follower<'a, Q> {
         if start * stop >= 0.0 || length <= 4.0 * self.settings.shortest {
             return false;
         }
-        let extreme = cubic_extreme((from, start), (to, stop));
+        let Some(extreme) = turning((from, start), (to, stop)) else { return false };
         let reached = if start > 0.0 { (from.max(to), extreme) } else { (extreme, from.min(to)) };
         self.stops().any(|stop| stop > reached.0 && stop < reached.1)
     }
@@ -379,25 +417,22 @@ fn crossings(before: &Watch, after: &Watch) -> Vec<Crossing> {
 }
 
 /// Extreme value on (0, 1) of the cubic with the given values and slopes at 0 and 1, the slopes of opposite sign.
-fn cubic_extreme((from, start): (f64, f64), (to, stop): (f64, f64)) -> f64 {
-    let (c2, c3) = (3.0 * (to - from) - 2.0 * start - stop, 2.0 * (from - to) + start + stop);
-    // Zero of the derivative start + 2 c2 x + 3 c3 x^2 in (0, 1), in the form that does not cancel.
-    let root = (c2 * c2 - 3.0 * c3 * start).max(0.0).sqrt();
-    let x = if c2 * start > 0.0 { -start / (c2 + root.copysign(c2)) } else { start / (root.copysign(start) - c2) };
-    let x = x.clamp(0.0, 1.0);
-    from + x * (start + x * (c2 + x * c3))
+fn turning(from: (f64, f64), to: (f64, f64)) -> Option<f64> {
+    let cubic = Hermite::new(from, to);
+    let extremes = cubic.stationary().into_iter().flatten().map(|x| cubic.at(x));
+    extremes.max_by(|a, b| (from.1 * a).total_cmp(&(from.1 * b)))
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
 
-    /// Exact: parabola x (1 - x), extreme 1/4 at 1/2; and a cubic x - x^3 + ... with its extreme by calculus.
+    /// Exact: parabola x (1 - x), extreme 1/4 at 1/2; and a cubic x - x^3 with its extreme by calculus.
     #[test]
-    fn cubic_extremes_are_exact() {
-        assert!((cubic_extreme((0.0, 1.0), (0.0, -1.0)) - 0.25).abs() < 1e-15);
-        assert!((cubic_extreme((0.0, -1.0), (0.0, 1.0)) + 0.25).abs() < 1e-15);
+    fn turnings_are_exact() {
+        assert!((turning((0.0, 1.0), (0.0, -1.0)).expect("turns") - 0.25).abs() < 1e-15);
+        assert!((turning((0.0, -1.0), (0.0, 1.0)).expect("turns") + 0.25).abs() < 1e-15);
         let exact = 2.0 / (3.0 * 3.0f64.sqrt());
-        assert!((cubic_extreme((0.0, 1.0), (0.0, -2.0)) - exact).abs() < 1e-15);
+        assert!((turning((0.0, 1.0), (0.0, -2.0)).expect("turns") - exact).abs() < 1e-15);
     }
 }

@@ -63,10 +63,12 @@
 //! ```
 
 mod follower;
+mod hermite;
 mod problem;
 mod settings;
 mod stride;
 
 pub use follower::{Crossing, FollowEnd, Follower, Landing, Outcome, StartFault, Station, Step};
+pub use hermite::Hermite;
 pub use problem::{Closing, Corrected, Failure, Orientation, Problem, Watch, Watched};
 pub use settings::{Settings, SettingsFault};

@@ -7,7 +7,8 @@
 //! ```
 //! The core is reduced to `A u_0 + E u_N + C' s = r'`; the borders stay in the final dense block of
 //! 2n + k rows, which keeps them accurate where the core is nearly singular (Govaerts & Pryce 1993, IMA J.
-//! Numer. Anal. 13:161, on why block elimination needs care there).
+//! Numer. Anal. 13:161, on why block elimination needs care there). Vectors come and go in the caller's units; the sizes of
+//! [`Cyclic`] are applied here.
 
 use crate::cyclic::{Cyclic, Shape, Singular};
 use crate::dense::Lu;
@@ -76,7 +77,7 @@ impl Bordered {
         &mut self.columns[j * len..(j + 1) * len]
     }
 
-    /// Column `j` over the closing rows (n numbers).
+    /// Column `j` over the closing rows (n numbers). Overwritten by [`Bordered::prepare`].
     pub fn closing_column_mut(&mut self, j: usize) -> &mut [f64] {
         let n = self.shape.n;
         &mut self.closing_columns[j * n..(j + 1) * n]
@@ -101,9 +102,14 @@ impl Bordered {
     pub fn prepare(&mut self, cyclic: &Cyclic, sigma: f64) -> Result<(), Singular> {
         let (core_len, nodes_len) = (self.shape.core_len(), self.shape.nodes_len());
         for column in self.columns.chunks_exact_mut(core_len) {
+            divide(column, cyclic.sizes());
             cyclic.reduce_column(column);
         }
+        for column in self.closing_columns.chunks_exact_mut(self.shape.n) {
+            divide(column, cyclic.sizes());
+        }
         for row in self.rows.chunks_exact_mut(nodes_len) {
+            multiply(row, cyclic.sizes());
             cyclic.reduce_row(row);
         }
         self.fill_last(cyclic, sigma);
@@ -151,6 +157,7 @@ impl Bordered {
             column.fill(0.0);
         } else {
             column.copy_from_slice(right.core);
+            divide(column, cyclic.sizes());
             cyclic.reduce_column(column);
         }
         let last = &mut self.work_last;
@@ -159,6 +166,7 @@ impl Bordered {
             last[n..2 * n].fill(0.0);
         } else {
             last[n..2 * n].copy_from_slice(right.closing);
+            divide(&mut last[n..2 * n], cyclic.sizes());
         }
         for b in 0..k {
             let border = &self.rows[b * nodes_len..(b + 1) * nodes_len];
@@ -172,6 +180,7 @@ impl Bordered {
         nodes[..n].copy_from_slice(&last[..n]);
         nodes[nodes_len - n..].copy_from_slice(&last[n..2 * n]);
         cyclic.back_substitute(column, nodes);
+        multiply(nodes, cyclic.sizes());
     }
 
     /// Solves the transposed system `(psi, chi_closing, chi)^T [..] = (nodes, scalars)^T`: `psi` gets N R numbers,
@@ -191,6 +200,7 @@ impl Bordered {
             row.fill(0.0);
         } else {
             row.copy_from_slice(nodes);
+            multiply(row, cyclic.sizes());
             cyclic.reduce_row(row);
         }
         let last = &mut self.work_last;
@@ -206,6 +216,7 @@ impl Bordered {
             crate::dense::axpy(row, -multiplier, &self.rows[b * nodes_len..(b + 1) * nodes_len]);
         }
         cyclic.expand_row(row, &last[..n], psi);
+        divide(psi, cyclic.sizes());
     }
 
     /// Sign of det(final block) / det(E) after [`Bordered::prepare`].
@@ -216,6 +227,15 @@ impl Bordered {
         }
         DeterminantSign(self.last.determinant_sign() * self.e_block.determinant_sign())
     }
+}
+
+/// Node by node, or row group by row group.
+fn multiply(values: &mut [f64], sizes: &[f64]) {
+    values.chunks_exact_mut(sizes.len()).for_each(|group| group.iter_mut().zip(sizes).for_each(|(v, s)| *v *= s));
+}
+
+fn divide(values: &mut [f64], sizes: &[f64]) {
+    values.chunks_exact_mut(sizes.len()).for_each(|group| group.iter_mut().zip(sizes).for_each(|(v, s)| *v /= s));
 }
 
 #[cfg(test)]
@@ -231,12 +251,15 @@ mod tests {
     }
 
     /// A random bordered system and the same matrix written out densely.
-    fn planted(shape: Shape, k: usize, sigma: f64, seed: u64) -> Planted {
+    fn planted(shape: Shape, k: usize, sigma: f64, seed: u64, spread: f64) -> Planted {
         let mut random = Random::new(seed);
         let (n, inner, rows, core, nodes) = (shape.n, shape.inner, shape.rows(), shape.core_len(), shape.nodes_len());
         let size = nodes + k;
         let mut dense = vec![0.0; size * size];
         let mut cyclic = Cyclic::new(shape);
+        // State a has the size spread^a: well balanced in these units, eight decades apart in those of the dense matrix.
+        let sizes: Vec<f64> = (0..n).map(|a| spread.powi(a as i32)).collect();
+        cyclic.set_sizes(&sizes);
         let mut bordered = Bordered::new(shape, k);
         for i in 0..shape.intervals {
             for r in 0..rows {
@@ -250,23 +273,23 @@ mod tests {
                     } else {
                         rows + c - inner - n
                     };
-                    dense[(i * rows + r) * size + i * rows + place] = value;
+                    dense[(i * rows + r) * size + i * rows + place] = value * sizes[r % n] / sizes[c % n];
                 }
             }
         }
         for j in 0..k {
             for r in 0..core {
-                let value = random.next();
+                let value = random.next() * sizes[r % n];
                 bordered.column_mut(j)[r] = value;
                 dense[r * size + nodes + j] = value;
             }
             for r in 0..n {
-                let value = random.next();
+                let value = random.next() * sizes[r];
                 bordered.closing_column_mut(j)[r] = value;
                 dense[(core + r) * size + nodes + j] = value;
             }
             for c in 0..nodes {
-                let value = random.next();
+                let value = random.next() / sizes[c % n];
                 bordered.row_mut(j)[c] = value;
                 dense[(nodes + j) * size + c] = value;
             }
@@ -285,32 +308,42 @@ mod tests {
         Planted { cyclic, bordered, dense, size }
     }
 
-    /// Independent: the matrix written out and multiplied with a planted solution, both ways.
+    /// Independent: the matrix written out and multiplied with a planted solution, both ways; also with states that differ
+    /// in size by two decades each, where the solution must be as good relative to the sizes.
     #[test]
     fn planted_solutions_return_straight_and_transposed() {
-        for (seed, (n, inner, intervals, k, sigma)) in
-            [(1, 0, 1, 1, 1.0), (2, 4, 3, 2, 1.0), (3, 6, 40, 2, -1.0), (4, 12, 33, 3, 1.0), (2, 2, 64, 0, 0.3)]
-                .into_iter()
-                .enumerate()
-        {
+        let cases = [
+            (1, 0, 1, 1, 1.0, 1.0),
+            (2, 4, 3, 2, 1.0, 1.0),
+            (3, 6, 40, 2, -1.0, 1.0),
+            (4, 12, 33, 3, 1.0, 1.0),
+            (2, 2, 64, 0, 0.3, 1.0),
+            (4, 12, 33, 3, 1.0, 128.0),
+            (5, 5, 40, 2, -1.0, 1.0 / 128.0),
+        ];
+        for (seed, (n, inner, intervals, k, sigma, spread)) in cases.into_iter().enumerate() {
             let shape = Shape { n, inner, intervals };
-            let Planted { cyclic, mut bordered, dense, size } = planted(shape, k, sigma, seed as u64 + 1);
+            let Planted { cyclic, mut bordered, dense, size } = planted(shape, k, sigma, seed as u64 + 1, spread);
             let mut random = Random::new(77);
-            let x: Vec<f64> = (0..size).map(|_| random.next()).collect();
             let (core, nodes) = (shape.core_len(), shape.nodes_len());
+            let scale = |at: usize| if at < nodes { cyclic.sizes()[at % n] } else { 1.0 };
+            let x: Vec<f64> = (0..size).map(|at| scale(at) * random.next()).collect();
             let b: Vec<f64> = (0..size).map(|r| (0..size).map(|c| dense[r * size + c] * x[c]).sum()).collect();
             let (mut found, mut scalars) = (vec![0.0; nodes], vec![0.0; k]);
             let right = Right { core: &b[..core], closing: &b[core..nodes], border: &b[nodes..] };
             bordered.solve(&cyclic, right, &mut found, &mut scalars);
-            let worst = found.iter().chain(&scalars).zip(&x).fold(0.0f64, |w, (a, b)| w.max((a - b).abs()));
-            assert!(worst < 1e-8, "straight {n} {inner} {intervals} {k}: {worst}");
+            let pairs = found.iter().chain(&scalars).zip(&x).enumerate();
+            let worst = pairs.fold(0.0f64, |w, (at, (a, b))| w.max(((a - b) / scale(at)).abs()));
+            assert!(worst < 1e-8, "straight {n} {inner} {intervals} {k} {spread}: {worst}");
 
+            let x: Vec<f64> = x.iter().enumerate().map(|(at, x)| x / scale(at).powi(2)).collect();
             let c: Vec<f64> = (0..size).map(|c| (0..size).map(|r| dense[r * size + c] * x[r]).sum()).collect();
             let (mut psi, mut chi) = (vec![0.0; core], vec![0.0; k]);
             bordered.solve_transposed(&cyclic, &c[..nodes], &c[nodes..], &mut psi, &mut chi);
             let pairs = psi.iter().zip(&x[..core]).chain(chi.iter().zip(&x[nodes..]));
-            let worst = pairs.fold(0.0f64, |w, (a, b)| w.max((a - b).abs()));
-            assert!(worst < 1e-8, "transposed {n} {inner} {intervals} {k}: {worst}");
+            let places = (0..core).chain(nodes..size);
+            let worst = pairs.zip(places).fold(0.0f64, |w, ((a, b), at)| w.max(((a - b) * scale(at)).abs()));
+            assert!(worst < 1e-8, "transposed {n} {inner} {intervals} {k} {spread}: {worst}");
         }
     }
 }

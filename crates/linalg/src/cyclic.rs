@@ -5,6 +5,10 @@
 //! intervals and reducing the chain leaves `A u_0 + E u_N = r`. With S the product of all row operations,
 //! `S M = [U V; 0 (A E)]`, and the four uses are: S on columns, `U^-1` on columns, `U^-1` on rows, S^T on rows.
 //!
+//! The n unknowns of a node have sizes of their own, and so have the rows, which are increments of them: pivoting and
+//! reflections compare them, so everything is eliminated in units of the sizes ([`Cyclic::set_sizes`]). Without that,
+//! rows of large states drown those of small ones: with eight decades between them all digits go.
+//!
 //! Cost O(N (R^2 W + n^3)) to factor, O(N R W) per use; memory O(N R W).
 //! Source: methods of de Boor & Weiss 1980 (ACM TOMS 6:80) and S. J. Wright 1992 (SIAM J. Sci. Stat. Comput. 13:742).
 
@@ -61,6 +65,7 @@ impl std::error::Error for Singular {}
 #[derive(Clone, Debug)]
 pub struct Cyclic {
     shape: Shape,
+    sizes: Vec<f64>,
     blocks: Vec<f64>,
     swaps: Vec<u32>,
     links: Vec<f64>,
@@ -75,6 +80,7 @@ impl Cyclic {
         let (n, intervals) = (shape.n, shape.intervals);
         Self {
             shape,
+            sizes: vec![1.0; n],
             blocks: vec![0.0; intervals * shape.rows() * shape.width()],
             swaps: vec![0; intervals * shape.inner],
             links: vec![0.0; intervals * 2 * n * n],
@@ -89,7 +95,22 @@ impl Cyclic {
         self.shape
     }
 
-    /// Block of interval `i`, row-major R x (inner + 2n), columns `[w | u_i | u_(i+1)]`.
+    /// Sets the sizes of the n unknowns of a node, rounded to powers of two, which scale without rounding; 1 at first.
+    /// Rows and unknowns come in groups of n, w and all. Blocks must be filled anew in the new units.
+    pub fn set_sizes(&mut self, sizes: &[f64]) {
+        for (own, size) in self.sizes.iter_mut().zip(sizes) {
+            let rounded = size.log2().round().exp2();
+            *own = if rounded.is_normal() { rounded } else { 1.0 };
+        }
+    }
+
+    /// Units of the n unknowns of a node.
+    pub fn sizes(&self) -> &[f64] {
+        &self.sizes
+    }
+
+    /// Block of interval `i`, row-major R x (inner + 2n), columns `[w | u_i | u_(i+1)]`, in units of the sizes: the entry
+    /// in a row of state a and a column of state b is that of the plain system times size b over size a.
     pub fn block_mut(&mut self, i: usize) -> &mut [f64] {
         let len = self.shape.rows() * self.shape.width();
         &mut self.blocks[i * len..(i + 1) * len]

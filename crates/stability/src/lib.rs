@@ -40,6 +40,8 @@
 
 mod agreement;
 mod align;
+mod copies;
+mod dip;
 mod locate;
 mod measure;
 mod normal_form;
@@ -52,11 +54,14 @@ mod switch;
 mod test_function;
 
 pub use armilla_collocation::{Fault, MapsFault, TooStiff};
+pub use dip::Dip;
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;
 pub use normal_form::DoublingForm;
 pub use point::{CyclePoint, CycleTangent};
-pub use problem::{CycleProblem, CycleSettings, CycleSpec, StartFault, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS};
+pub use problem::{
+    CycleProblem, CycleSettings, CycleSpec, StartFault, WATCH_BRANCHING, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS,
+};
 pub use spectrum::{Spectrum, SpectrumFault, SpectrumSolver};
-pub use switch::{Doubled, SwitchFault};
+pub use switch::{Doubled, SplitChange, SwitchFault};
 pub use test_function::{CriticalKind, NullVectors, TestFunction};

@@ -6,7 +6,7 @@
 
 use std::sync::Arc;
 
-use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, Scalar};
+use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, Row, Scalar};
 use armilla_follow::{Closing, Failure, Orientation, Problem, Station};
 
 use crate::point::{CyclePoint, CycleTangent};
@@ -75,6 +75,19 @@ impl CycleProblem {
         Err(LocateFault { bracket: (low.point.unknowns.parameter, high.point.unknowns.parameter) })
     }
 
+    /// Locates the event of a kind that a station stands on, to within roundoff of its own.
+    pub fn locate_at(&mut self, kind: CriticalKind, station: &CycleStation) -> Option<Located> {
+        /// Distance from the station within which the event is the one it stands on.
+        const ON: f64 = 1e-7;
+        let mut point = station.point.clone();
+        let report = self.augmented(kind, &mut point).ok()?.0;
+        if !(self.distance(&station.point, &point) <= ON) {
+            return None;
+        }
+        let (point, error, period_error, vectors) = self.refine_event(kind, &point).ok()?;
+        Some(Located { kind, point, error, period_error, vectors, report, share: 1.0, halvings: 0 })
+    }
+
     fn share(&self, before: &CycleStation, point: &CyclePoint, total: f64) -> f64 {
         if total > 0.0 { (self.distance(&before.point, point) / total).clamp(0.0, 1.0) } else { 0.0 }
     }
@@ -94,7 +107,7 @@ impl CycleProblem {
         CyclePoint { unknowns, ..high.point.clone() }
     }
 
-    /// Newton on the augmented system; accepted only inside the bracket's neighbourhood.
+    /// Newton on the augmented system; accepted only between the ends of the bracket.
     fn newton_event(
         &mut self,
         kind: CriticalKind,
@@ -104,11 +117,34 @@ impl CycleProblem {
     ) -> Option<(CyclePoint, Report)> {
         let mut point = guess.clone();
         let report = self.augmented(kind, &mut point).ok()?.0;
+        // Between the planes through both stations normal to their tangents: a second event beyond one of them may attract
+        // Newton's method from here.
         let length = self.distance(&low.point, &high.point);
-        // A chord is shorter than the branch between its ends; twice its length still excludes anything else.
-        let inside =
+        // A chord is shorter than the branch between its ends; twice its length still excludes other branches.
+        let near =
             self.distance(&low.point, &point) <= 2.0 * length && self.distance(&high.point, &point) <= 2.0 * length;
-        inside.then_some((point, report))
+        (near && self.lies_between(&point, low, high)).then_some((point, report))
+    }
+
+    /// Whether a point lies ahead of one station and behind another, so that it is the event they bracket and not a
+    /// neighbour of it.
+    fn lies_between(&self, point: &CyclePoint, low: &CycleStation, high: &CycleStation) -> bool {
+        /// Distances on one mesh are known to this.
+        const ROUNDOFF: f64 = 1e-11;
+        let ahead = |station: &CycleStation, sign: f64| {
+            let from = station.point.on_mesh(point.degree, &point.mesh);
+            let tangent = station.tangent.on_mesh(point.degree, &point.mesh);
+            let mut step = Row::zero(point.unknowns.nodes.len());
+            for ((step, to), from) in step.nodes.iter_mut().zip(&point.unknowns.nodes).zip(&from.unknowns.nodes) {
+                *step = to - from;
+            }
+            step.period = point.unknowns.period - from.unknowns.period;
+            step.parameter = point.unknowns.parameter - from.unknowns.parameter;
+            let same = station.point.degree == point.degree && station.point.mesh == point.mesh;
+            let slack = if same { ROUNDOFF } else { self.settings.mesh.accuracy.max(ROUNDOFF) };
+            sign * self.metric.inner(point.tables(), &point.mesh, &tangent.row, &step) >= -slack
+        };
+        ahead(low, 1.0) && ahead(high, -1.0)
     }
 
     /// Solves the augmented system in place on the point's mesh.
@@ -116,13 +152,13 @@ impl CycleProblem {
         &mut self,
         kind: CriticalKind,
         point: &mut CyclePoint,
-    ) -> Result<(Report, NullVectors), NewtonFailure> {
+    ) -> Result<(Report, TestFunction), NewtonFailure> {
         self.system.set_mesh(point.degree, &point.mesh);
         self.system.linearise(&point.unknowns)?;
         let mut function = TestFunction::new(kind, &self.system, &point.unknowns)?;
         let reference = point.unknowns.nodes.clone();
         let report = self.newton(point, &reference, &mut function)?;
-        Ok((report, function.vectors().clone()))
+        Ok((report, function))
     }
 
     /// The event again with every interval halved: the better value, and the difference as the error of it.
@@ -133,13 +169,20 @@ impl CycleProblem {
     ) -> Result<(CyclePoint, f64, f64, NullVectors), NewtonFailure> {
         let mesh: Arc<[f64]> = halved(&coarse.mesh).into();
         let mut fine = coarse.on_mesh(coarse.degree, &mesh);
-        let (_, vectors) = self.augmented(kind, &mut fine)?;
+        let (report, function) = self.augmented(kind, &mut fine)?;
+        let size = function.size(&mut self.system);
+        // Roundoff first: it refers to what was solved last.
+        let value_rounding = self.rounding(Scalar::Parameter, fine.unknowns.parameter, size);
+        let period_rounding = self.rounding(Scalar::Period, fine.unknowns.period, size);
         let left = self.left_over(coarse, &fine);
+        let to_correct = to_correct(&report);
         let value_error = left * (coarse.unknowns.parameter - fine.unknowns.parameter).abs()
-            + self.rounding(Scalar::Parameter, fine.unknowns.parameter);
+            + to_correct * self.metric.parameter_scale
+            + value_rounding;
         let period_error = left * (coarse.unknowns.period - fine.unknowns.period).abs()
-            + self.rounding(Scalar::Period, fine.unknowns.period);
-        Ok((fine, value_error, period_error, vectors))
+            + to_correct * self.metric.period_scale
+            + period_rounding;
+        Ok((fine, value_error, period_error, function.vectors().clone()))
     }
 
     /// Share of the difference between a number on a mesh and on the halved one that may be left on the latter.
@@ -152,45 +195,34 @@ impl CycleProblem {
         if gain * CANCELLING < 1.0 { gain * CANCELLING } else { 1.0 }
     }
 
-    /// Roundoff of a scalar of the last corrected point: that of the rows through the conditioning, and of the number.
-    fn rounding(&mut self, scalar: Scalar, value: f64) -> f64 {
+    /// Roundoff of a scalar of the last corrected point: that of the rows and of a closing with terms of size `closing`
+    /// through the conditioning, and of the number.
+    fn rounding(&mut self, scalar: Scalar, value: f64, closing: f64) -> f64 {
         let scale = match scalar {
             Scalar::Parameter => self.metric.parameter_scale,
             Scalar::Period => 0.0,
         };
-        ROUNDOFF_MARGIN * self.newton.roundoff(&self.system, scalar)
+        ROUNDOFF_MARGIN * self.newton.roundoff(&self.system, scalar, closing)
             + COHERENT_UNITS * f64::EPSILON * value.abs().max(scale)
     }
 
-    /// A station halfway along the branch between two stations.
     fn middle(&mut self, low: &CycleStation, high: &CycleStation) -> Option<CycleStation> {
-        let stride = 0.5 * self.distance(&low.point, &high.point);
-        let prediction = self.advance(&low.point, &low.tangent, stride);
-        let closing = Closing::Arclength { from: &low.point, tangent: &low.tangent, stride };
+        self.between(low, high, 0.5)
+    }
+
+    /// A station on the branch between two stations, at a share of the chord from `low` to `high`; none where it does not
+    /// correct or where the corrected cycle does not lie between them.
+    pub fn between(&mut self, low: &CycleStation, high: &CycleStation, share: f64) -> Option<CycleStation> {
+        let length = self.distance(&low.point, &high.point);
+        let stride = share * length;
+        // The metric may have changed since the station was made.
+        let tangent = self.normalised(low.tangent.clone());
+        let prediction = self.advance(&low.point, &tangent, stride);
+        let closing = Closing::Arclength { from: &low.point, tangent: &tangent, stride };
         let point = self.correct(&prediction, closing).ok()?.point;
         let tangent = self.tangent(&point, Orientation::Along(&low.tangent)).ok()?;
         let watch = self.watch(&point, &tangent).ok()?;
-        Some(Station { point, tangent, watch, distance: low.distance + stride })
-    }
-
-    /// Narrows a bracket over which `differs` tells its ends apart, for changes without a defining system: returns
-    /// the narrowest pair of stations.
-    pub fn narrow(
-        &mut self,
-        before: &CycleStation,
-        after: &CycleStation,
-        same_as_before: impl Fn(&CycleStation) -> bool,
-    ) -> (CycleStation, CycleStation) {
-        let (mut low, mut high) = (before.clone(), after.clone());
-        for _ in 0..HALVINGS {
-            // Bisection along the chord: past this length the ends agree to the profile's accuracy.
-            if self.distance(&low.point, &high.point) < self.settings.mesh.accuracy.max(1e-10) {
-                break;
-            }
-            let Some(middle) = self.middle(&low, &high) else { break };
-            if same_as_before(&middle) { low = middle } else { high = middle }
-        }
-        (low, high)
+        Some(Station { point, tangent, watch, distance: low.distance + share * (high.distance - low.distance) })
     }
 
     /// The cycle re-solved on a mesh with every interval halved, at the same parameter, and its period's error. Where
@@ -203,16 +235,15 @@ impl CycleProblem {
         let mesh: Arc<[f64]> = halved(&point.mesh).into();
         let mut fine = point.on_mesh(point.degree, &mesh);
         let value = point.unknowns.parameter;
-        let left = match self.correct_at(&mut fine, value) {
-            Ok(_) => self.left_over(point, &fine),
-            Err(_) => {
-                fine = point.clone();
-                self.correct_at(&mut fine, value).map_err(|_| Failure::NotConverged)?;
-                1.0
-            }
-        };
-        let error = left * (fine.unknowns.period - point.unknowns.period).abs()
-            + self.rounding(Scalar::Period, fine.unknowns.period);
+        let solved = self.correct_at(&mut fine, value).is_ok();
+        if !solved {
+            fine = point.clone();
+            self.correct_at(&mut fine, value).map_err(|_| Failure::NotConverged)?;
+        }
+        // The closing holds the parameter exactly. Roundoff first: it refers to what was solved last.
+        let rounding = self.rounding(Scalar::Period, fine.unknowns.period, 0.0);
+        let left = if solved { self.left_over(point, &fine) } else { 1.0 };
+        let error = left * (fine.unknowns.period - point.unknowns.period).abs() + rounding;
         Ok((fine, error))
     }
 }
@@ -227,6 +258,15 @@ const CANCELLING: f64 = 2.0;
 /// Units in the last place, of the value or of the range of its parameter, for rounding that acts on every row alike and
 /// that the sum of independent errors leaves out: the basis tables are correct to a few units each.
 const COHERENT_UNITS: f64 = 16.0;
+
+/// Scaled size of what Newton's method left to correct: nothing to speak of where it went on falling, the last correction
+/// where it had come to stand still, as beside a second event.
+fn to_correct(report: &Report) -> f64 {
+    match report.corrections[..] {
+        [.., before, last] => last * (last / before).powi(2).min(1.0),
+        _ => 0.0,
+    }
+}
 
 pub(crate) fn halved(mesh: &[f64]) -> Vec<f64> {
     let mut out = Vec::with_capacity(2 * mesh.len());

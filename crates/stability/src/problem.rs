@@ -24,6 +24,8 @@ pub const WATCH_FOLD: usize = 0;
 pub const WATCH_DOUBLING: usize = 1;
 /// Index of the torus function: `Prod (|mu|^2 - 1)` over complex pairs, scaled.
 pub const WATCH_TORUS: usize = 2;
+/// Index of the branching function: `Prod (mu - 1)`, scaled.
+pub const WATCH_BRANCHING: usize = 3;
 
 /// The model as the cycle problem needs it.
 #[derive(Clone)]
@@ -83,6 +85,9 @@ const TURNING_LENGTH: f64 = 0.005;
 const SHRINK_TO: f64 = 0.3;
 /// A scale off by more than this factor is renewed.
 const OUT_OF_SCALE: f64 = 1.5;
+/// Readings of the states' sizes from the first cycle: on the mesh of the guess, and on its own.
+const READINGS: usize = 2;
+
 /// Why a first cycle could not be made.
 #[derive(Clone, Debug, PartialEq)]
 pub enum StartFault {
@@ -148,13 +153,17 @@ impl CycleProblem {
         parameter: f64,
     ) -> Result<(Self, CyclePoint), StartFault> {
         let guess = within_degrees(profile, settings.mesh.degrees);
-        // The given profile carries the errors of its origin, the corrected one only roundoff: sizes are read twice.
         let mut problem = Self::with_metric(spec, settings, Sizes::Natural(STILL_AT_FIRST), &guess, parameter)?;
         let mut point = CyclePoint::from_profile(&guess, parameter);
         problem.correct_at(&mut point, parameter).map_err(StartFault::Newton)?;
-        let corrected = problem.profile(&point);
-        problem = Self::with_metric(problem.spec, settings, Sizes::Natural(STILL), &corrected, parameter)?;
-        let point = problem.first_mesh(point);
+        // The given profile carries the errors of its origin, the corrected one those of its mesh, the last one next to
+        // none: sizes are read anew each time, and what is no larger than the error is no motion.
+        for _ in 0..READINGS {
+            let still = STILL.max(problem.profile_error(&point));
+            let profile = problem.profile(&point);
+            problem = Self::with_metric(problem.spec, settings, Sizes::Natural(still), &profile, parameter)?;
+            point = problem.first_mesh(point);
+        }
         Ok((problem, point))
     }
 
@@ -520,6 +529,7 @@ impl Problem for CycleProblem {
                 value(if turning.abs() < noise { 0.0 } else { turning }),
                 value(spectrum.doubling_product()),
                 value(spectrum.torus_product()),
+                value(spectrum.branching_product()),
             ],
             unstable_count: spectrum.unstable_count(),
         };

@@ -70,6 +70,12 @@ impl Spectrum {
         self.multipliers.iter().filter(|mu| mu.angle >= 0.0).map(|mu| distance_to_unit(*mu, -1.0)).product()
     }
 
+    /// `Prod (mu - 1)` over the multipliers besides the trivial one, scaled alike: a real multiplier that passes +1, at a
+    /// fold or where another branch crosses, makes it change sign.
+    pub fn branching_product(&self) -> f64 {
+        self.multipliers.iter().filter(|mu| mu.angle >= 0.0).map(|mu| distance_to_unit(*mu, 1.0)).product()
+    }
+
     /// `Prod (|mu|^2 - 1)` over complex pairs, scaled; 1 where there is none. A pair crossing the unit circle makes it
     /// change sign; a pair that becomes real only makes it jump without one where that happens off the circle.
     pub fn torus_product(&self) -> f64 {

@@ -28,6 +28,17 @@ pub struct Doubled {
     pub amplitude: f64,
 }
 
+/// How the part of a cycle that tells one half of its period from the other changes along a branch.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum SplitChange {
+    /// It goes on.
+    None,
+    /// It has changed its sign: the branch went through its birth.
+    Turned,
+    /// It is gone: the step fell onto the shorter cycle told twice.
+    Gone,
+}
+
 /// Why no doubled cycle was found.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct SwitchFault;
@@ -111,12 +122,22 @@ impl CycleProblem {
         self.metric.nodes_inner(point.tables(), &point.mesh, &nodes, &nodes).sqrt()
     }
 
-    /// Whether a doubled branch went through its birth between two neighbouring points: the part that tells one half
-    /// of the period from the other has changed its sign.
-    pub fn passed_birth(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
+    /// What became of the part that tells one half of the period from the other between two neighbouring points.
+    pub fn split_between(&self, before: &CyclePoint, after: &CyclePoint) -> SplitChange {
+        /// Share of the part that no step leaves of it but by chance; Newton's method leaves far less where it has met the
+        /// shorter cycle told twice.
+        const GONE: f64 = 1e-3;
+        /// Multiple of the accuracy of profiles, relative to them, that cannot be told from nothing.
+        const UNTOLD: f64 = 10.0;
         let before = before.on_mesh(after.degree, &after.mesh);
         let (a, b) = (self.split_nodes(&before), self.split_nodes(after));
-        self.metric.nodes_inner(after.tables(), &after.mesh, &a, &b) < 0.0
+        let inner = |x: &[f64], y: &[f64]| self.metric.nodes_inner(after.tables(), &after.mesh, x, y);
+        let least = UNTOLD * self.settings.mesh.accuracy;
+        match () {
+            () if inner(&b, &b).sqrt() < (GONE * inner(&a, &a).sqrt()).max(least) => SplitChange::Gone,
+            () if inner(&a, &b) < 0.0 => SplitChange::Turned,
+            () => SplitChange::None,
+        }
     }
 
     /// Whether a branch went through an equilibrium between two neighbouring points: the motion about its mean has
@@ -140,15 +161,7 @@ impl CycleProblem {
     }
 
     fn split_nodes(&self, point: &CyclePoint) -> Vec<f64> {
-        let profile = self.profile(point);
-        let mut evaluator = profile.evaluator();
-        let mut shifted = vec![0.0; profile.n_states];
-        let mut nodes = Vec::with_capacity(profile.values.len());
-        for (node, time) in profile.node_times().iter().enumerate() {
-            evaluator.at(time + 0.5, &mut shifted);
-            nodes.extend(profile.node(node).iter().zip(&shifted).map(|(a, b)| 0.5 * (a - b)));
-        }
-        nodes
+        self.shift_nodes(point, 2)
     }
 }
 

@@ -100,6 +100,15 @@ impl TestFunction {
         &self.vectors
     }
 
+    /// Size of the terms the value is summed from, in which it is as uncertain as their last places: `psi^T` times the
+    /// rows of the variation, added as independent errors. The bordered solves themselves are backward stable: what they
+    /// round is a change of the rows of this size.
+    pub fn size(&self, system: &mut System) -> f64 {
+        let mut sizes = vec![0.0; self.vectors.psi.len()];
+        system.variation_sizes(&self.vectors.nodes, self.vectors.period, &mut sizes);
+        sizes.iter().zip(&self.vectors.psi).map(|(size, psi)| (size * psi).powi(2)).sum::<f64>().sqrt()
+    }
+
     /// Starting borders without special direction: an equidistributed sequence (Weyl 1916, Math. Ann. 77:313), which
     /// no null vector of a model is orthogonal to.
     fn generic_borders(&mut self, system: &System) {

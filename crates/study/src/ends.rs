@@ -2,7 +2,7 @@
 
 use armilla_follow::{FollowEnd, Follower};
 use armilla_record::{End, EndReason, EventKind, Point};
-use armilla_stability::{CyclePoint, CycleProblem, Fault};
+use armilla_stability::{CyclePoint, CycleProblem, Fault, SplitChange};
 
 use crate::approach::Approach;
 use crate::rest::{Motion, Rest, birth, guess};
@@ -23,6 +23,8 @@ pub(crate) enum Passage {
     TooLong,
     /// An equilibrium, with what was extrapolated, or the branch's own birth.
     End(End, Option<Rest>),
+    /// The branch's own birth, but the step ended on its parent: to be tried again shorter, and an end only then.
+    Fell(End),
 }
 
 /// Whether the last step went through an equilibrium or through the branch's own birth; the walk is over then, and the
@@ -50,25 +52,37 @@ pub(crate) fn passed_through(
         return Passage::End(end(EndReason::Equilibrium { value }, last, words), Some(rest));
     }
     // Whatever its turns: they count crossings of one state, which may have the longer period alone.
-    if problem.passed_birth(&before.point, &after.point) {
-        let sizes = sizes(points, (before, after), |point| problem.split(point));
-        let limit = even_limit(&sizes, worst_profile(points, problem.profile_error(&before.point)), plan);
-        let at = format!("{} = {}", with_unit_name(plan), known(plan, limit));
-        let words = if plan.doubled {
-            format!("returns to its parent at {at}")
-        } else {
-            format!("returns to the cycle of half its period that it was born from by a period doubling, at {at}")
-        };
-        return Passage::End(end(EndReason::ReturnsToParent, limit.0, words), None);
+    match problem.split_between(&before.point, &after.point) {
+        SplitChange::None => Passage::None,
+        SplitChange::Turned => {
+            let sizes = sizes(points, before, Some(after), |point| problem.split(point));
+            Passage::End(returned(&sizes, worst_profile(points, problem.profile_error(&before.point)), plan), None)
+        }
+        SplitChange::Gone => {
+            let sizes = sizes(points, before, None, |point| problem.split(point));
+            Passage::Fell(returned(&sizes, worst_profile(points, problem.profile_error(&before.point)), plan))
+        }
     }
-    Passage::None
+}
+
+/// The end of a walk at the birth of its branch by a period doubling.
+fn returned(sizes: &[(f64, f64)], profile_error: f64, plan: &WalkPlan<'_>) -> End {
+    let limit = even_limit(sizes, profile_error, plan);
+    let at = format!("{} = {}", with_unit_name(plan), known(plan, limit));
+    let words = if plan.doubled {
+        format!("returns to its parent at {at}")
+    } else {
+        format!("returns to the cycle of half its period that it was born from by a period doubling, at {at}")
+    };
+    end(EndReason::ReturnsToParent, limit.0, words)
 }
 
 /// Sizes of what vanishes, with the parameter, at the last stations: in the metric of now, which may not be that of each
 /// station when it was passed.
 fn sizes(
     points: &[Walked],
-    (before, after): (&CycleStation, &CycleStation),
+    before: &CycleStation,
+    after: Option<&CycleStation>,
     size: impl Fn(&CyclePoint) -> f64,
 ) -> Vec<(f64, f64)> {
     /// Difference of two sizes, relative, below which their weights are roundoff.
@@ -79,7 +93,7 @@ fn sizes(
     if stations.is_empty() {
         stations.push(&before.point);
     }
-    stations.push(&after.point);
+    stations.extend(after.map(|after| &after.point));
     let mut kept: Vec<(f64, f64)> = Vec::new();
     for point in stations {
         let found = (size(point), point.unknowns.parameter);

@@ -27,6 +27,8 @@ mod cascade;
 mod ends;
 mod error;
 mod file;
+mod guards;
+mod ledger;
 mod near_miss;
 mod prediction;
 mod progress;
@@ -36,6 +38,7 @@ mod start;
 mod step_events;
 mod study;
 mod trace;
+mod valley;
 mod walk;
 mod words;
 

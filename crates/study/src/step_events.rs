@@ -1,11 +1,15 @@
 //! The events of one step: located, bracketed, or narrowed, before they have names.
 
-use armilla_follow::{Landing, Step};
+use armilla_follow::{Landing, Problem};
 use armilla_record::{Criticality, EventKind};
 use armilla_stability::{
-    CriticalKind, CyclePoint, CycleProblem, DoublingForm, Located, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS,
+    CriticalKind, CyclePoint, CycleProblem, Dip, DoublingForm, Located, WATCH_BRANCHING, WATCH_DOUBLING, WATCH_FOLD,
+    WATCH_TORUS,
 };
 
+use crate::guards::smooth_values;
+use crate::ledger::{Change, Part, narrowed, parts, stands_on};
+use crate::valley::valley;
 use crate::walk::{CycleStation, WalkPlan};
 
 /// An event as found, before it has a name.
@@ -24,60 +28,163 @@ pub(crate) struct Found {
     pub form: Option<DoublingForm>,
 }
 
-/// Whether the events of a step account for the change of the unstable count: each fold or doubling moves one multiplier
-/// across the unit circle, a torus point two. A pair that crosses in the same step as a fold or doubling leaves the count
-/// ambiguous; a shorter stride separates them.
-pub(crate) fn is_explained(step: &Step) -> bool {
-    let count = |index: usize| step.crossings.iter().filter(|crossing| crossing.index == index).count();
-    let single = count(WATCH_FOLD) + count(WATCH_DOUBLING);
-    let change = step.unstable.0.abs_diff(step.unstable.1);
-    match (single, count(WATCH_TORUS)) {
-        (0, 0) => change == 0,
-        (0, _) => change == 0 || change == 2,
-        (_, 0) => change <= single && change % 2 == single % 2,
-        (_, _) => false,
+/// What a step brings.
+pub(crate) struct Findings {
+    /// The events in the order of the walk.
+    pub found: Vec<Found>,
+    /// Whether the step ends on another branch: the orientation of the branch changes, and not at one place.
+    pub jumped: bool,
+}
+
+/// The events of a step, in the order of the walk; `earlier` is the station before it.
+pub(crate) fn events_of_step(
+    problem: &mut CycleProblem,
+    ends: (&CycleStation, &CycleStation),
+    earlier: Option<&CycleStation>,
+    plan: &WalkPlan<'_>,
+) -> Findings {
+    let mut findings = Findings { found: Vec::new(), jumped: false };
+    let mut stations = vec![ends.0.clone()];
+    // What does not add up is cut into parts anyway; its values dip to zero because of what is found there.
+    let explained = Change::between(ends.0, ends.1).is_explained();
+    for (dip, angle) in explained.then(|| dips(problem, ends, earlier)).into_iter().flatten() {
+        match dip {
+            Dip::Clear => {}
+            Dip::Split(station) => stations.push(*station),
+            Dip::Touch(station) => findings.found.push(touch(&station, angle, plan)),
+        }
+    }
+    stations.push(ends.1.clone());
+    let along = (ends.1.distance - ends.0.distance).signum();
+    stations.sort_by(|a, b| (along * a.distance).total_cmp(&(along * b.distance)));
+    for pair in stations.windows(2) {
+        for part in parts(problem, &pair[0], &pair[1]) {
+            events_of_part(problem, &part, plan, &mut findings);
+        }
+    }
+    findings.found.sort_by(|a, b| (plan.sign * a.distance).total_cmp(&(plan.sign * b.distance)));
+    findings
+}
+
+/// Events on the very edge of the range, where the walk ends and no change of sign can follow.
+pub(crate) fn events_on_edge(
+    problem: &mut CycleProblem,
+    ends: (&CycleStation, &CycleStation),
+    plan: &WalkPlan<'_>,
+) -> Vec<Found> {
+    let after = ends.1;
+    let change = Change::between(ends.0, after);
+    let mut found = Vec::new();
+    if stands_on(after, WATCH_DOUBLING) && !change.doubles {
+        found.extend(
+            problem.locate_at(CriticalKind::Doubling, after).map(|located| located_event(problem, located, ends, plan)),
+        );
+    }
+    let bracketed =
+        [(WATCH_TORUS, EventKind::Torus, change.pair), (WATCH_BRANCHING, EventKind::Branching, change.passes_one)];
+    for (index, kind, seen) in bracketed {
+        if stands_on(after, index) && !seen {
+            let width = plan.study.range.1 - plan.study.range.0;
+            let note = "on the edge of the range to within what the multipliers tell";
+            let mut event = unresolved(after, (after.point.unknowns.parameter, EDGE * width), note.into(), plan);
+            (event.kind, event.angle) = (kind, critical_angle(problem, after));
+            found.push(event);
+        }
+    }
+    found
+}
+
+/// Share of the range within which an event on the edge is not located further: multipliers there are 1 to 1e-10.
+const EDGE: f64 = 1e-9;
+
+/// Angle of the multiplier nearest to the unit circle.
+fn critical_angle(problem: &mut CycleProblem, station: &CycleStation) -> Option<f64> {
+    let spectrum = problem.spectrum(&station.point).ok()?;
+    let nearest = spectrum.multipliers.iter().min_by(|x, y| x.log_modulus.abs().total_cmp(&y.log_modulus.abs()));
+    nearest.map(|mu| mu.angle.abs())
+}
+
+/// Pairs of events that cancel inside a step, with the angle of the critical multiplier where it is known.
+fn dips(
+    problem: &mut CycleProblem,
+    ends: (&CycleStation, &CycleStation),
+    earlier: Option<&CycleStation>,
+) -> [(Dip, Option<f64>); 3] {
+    let product = |station: &CycleStation| Some(station.watch.values[WATCH_DOUBLING].value);
+    let doubling = match problem.doubling_dip(ends.0, ends.1) {
+        // Where two multipliers are near -1 at once the bordered scalar has poles; their product has none.
+        None | Some(Dip::Clear) => valley(problem, ends, earlier, &product),
+        Some(dip) => dip,
+    };
+    let [torus, branching] = [0, 1].map(|index| {
+        let value = move |station: &CycleStation| smooth_values(station)[index];
+        valley(problem, ends, earlier, &value)
+    });
+    [(doubling, Some(std::f64::consts::PI)), (torus, None), (branching, Some(0.0))]
+}
+
+/// A watched value that touches zero. Two events at a distance d from each other make it dip by d^2 only.
+fn touch(at: &CycleStation, angle: Option<f64>, plan: &WalkPlan<'_>) -> Found {
+    let width = plan.study.range.1 - plan.study.range.0;
+    let interval = (at.point.unknowns.parameter, TOUCHING * width);
+    let note = "a multiplier touches the unit circle: two events closer to each other than can be told, or none";
+    let mut event = unresolved(at, interval, note.into(), plan);
+    event.angle = angle;
+    event
+}
+
+/// Share of the range within which two events that cancel cannot be told apart: the root of roundoff, with a margin.
+const TOUCHING: f64 = 1e-6;
+
+fn events_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, findings: &mut Findings) {
+    let change = part.change;
+    if change.turns {
+        findings.found.extend(turning(problem, part, plan));
+    }
+    if change.doubles {
+        findings.found.push(located(problem, CriticalKind::Doubling, part, plan));
+    }
+    if change.passes_one && !change.turns && is_gap(problem, part) {
+        findings.jumped = true;
+    } else if !change.is_explained() && !change.turns || change.pair && change.count > 0 {
+        findings.found.push(remaining_change(problem, part, plan));
     }
 }
 
-/// The events of a step, in the order of the walk.
-pub(crate) fn events_of_step(
-    problem: &mut CycleProblem,
-    step: &Step,
-    (before, after): (&CycleStation, &CycleStation),
-    plan: &WalkPlan<'_>,
-) -> Vec<Found> {
-    let mut found = Vec::new();
-    // The parameter turns back, yet no multiplier changes side: the mirror image of this branch goes on from there.
-    let turns_at_crossing =
-        step.unstable.0 == step.unstable.1 && step.crossings.len() == 1 && step.crossings[0].index == WATCH_FOLD;
-    // Where none is near +1 at all, the parameter stands still to roundoff and its direction is noise.
-    let idle = turns_at_crossing && !is_near_one(problem, after) && !is_near_one(problem, before);
-    for crossing in step.crossings.iter().filter(|_| !idle) {
-        let kind = match crossing.index {
-            WATCH_FOLD => CriticalKind::Fold,
-            WATCH_DOUBLING => CriticalKind::Doubling,
-            _ => continue,
-        };
-        found.push(match problem.locate(kind, crossing.index, before, after) {
-            Ok(located) => located_event(problem, located, (before, after), plan),
-            Err(fault) => bracketed(problem, kind, fault.bracket, (before, after), plan),
-        });
+/// Whether the ends of a part that could not be cut any further are apart: there is no way along one branch between them.
+fn is_gap(problem: &CycleProblem, part: &Part) -> bool {
+    /// Distance within which two cycles count as one: beside a crossing of branches, where the equations are nearly
+    /// singular, cycles are known to the root of roundoff.
+    const APART: f64 = 1e-7;
+    problem.distance(&part.before.point, &part.after.point) > APART
+}
+
+fn located(problem: &mut CycleProblem, kind: CriticalKind, part: &Part, plan: &WalkPlan<'_>) -> Found {
+    let ends = (&part.before, &part.after);
+    let index = if kind == CriticalKind::Fold { WATCH_FOLD } else { WATCH_DOUBLING };
+    match problem.locate(kind, index, ends.0, ends.1) {
+        Ok(located) => located_event(problem, located, ends, plan),
+        Err(fault) => bracketed(problem, kind, fault.bracket, ends, plan),
     }
-    if turns_at_crossing && let Some(event) = found.last_mut() {
-        event.kind = EventKind::Branching;
-        event.located = None;
-        event.note = "the parameter turns back but no multiplier changes side: another branch crosses here, as at a \
-                      pitchfork met from one of its two sides; not followed"
-            .into();
+}
+
+/// The event where the parameter turns back; none where that is noise.
+fn turning(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>) -> Option<Found> {
+    if part.change.passes_one {
+        return Some(located(problem, CriticalKind::Fold, part, plan));
     }
-    if let Some(event) = remaining_change(problem, step, (before, after), plan) {
-        found.push(event);
+    // The parameter turns back, yet no multiplier changes side: the mirror image of this branch goes on from there. Where
+    // none is near +1 at all, the parameter stands still to roundoff and its direction is noise.
+    if !is_near_one(problem, &part.after) && !is_near_one(problem, &part.before) {
+        return None;
     }
-    found.sort_by(|a, b| (plan.sign * a.distance).total_cmp(&(plan.sign * b.distance)));
-    if let Some(landing) = step.landing {
-        found.push(landing_event(problem, landing, after, plan));
-    }
-    found
+    let mut event = located(problem, CriticalKind::Fold, part, plan);
+    event.kind = EventKind::Branching;
+    event.located = None;
+    event.note = "the parameter turns back but no multiplier changes side: another branch crosses here, as at a \
+                  pitchfork met from one of its two sides; not followed"
+        .into();
+    Some(event)
 }
 
 /// Whether some real multiplier is near +1, as it must be beside a crossing of branches.
@@ -171,21 +278,10 @@ fn criticality(c: f64) -> Criticality {
     if c < 0.0 { Criticality::Supercritical } else { Criticality::Subcritical }
 }
 
-/// A change of the unstable count that folds and doublings leave over: narrowed by bisection and told as what crosses.
-fn remaining_change(
-    problem: &mut CycleProblem,
-    step: &Step,
-    (before, after): (&CycleStation, &CycleStation),
-    plan: &WalkPlan<'_>,
-) -> Option<Found> {
-    let single = step.crossings.iter().filter(|c| c.index == WATCH_FOLD || c.index == WATCH_DOUBLING).count();
-    let change = step.unstable.0.abs_diff(step.unstable.1);
-    // With folds or doublings in the same step the count cannot be split; they were located above.
-    if change == 0 || (single > 0 && is_explained(step)) {
-        return None;
-    }
-    let count = before.watch.unstable_count;
-    let (low, high) = problem.narrow(before, after, |station| station.watch.unstable_count == count);
+/// A change of the unstable count that is neither fold nor doubling: narrowed by bisection and told as what crosses.
+fn remaining_change(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>) -> Found {
+    let Part { before: low, after: high, .. } = narrowed(problem, part);
+    let change = low.watch.unstable_count.abs_diff(high.watch.unstable_count);
     let (a, b) = (low.point.unknowns.parameter, high.point.unknowns.parameter);
     // The count itself hangs on multipliers of profiles with their own error.
     let resolution = SUPERCONVERGENCE * problem.profile_error(&high.point);
@@ -194,8 +290,9 @@ fn remaining_change(
     let critical = problem.spectrum(&high.point).ok().and_then(|spectrum| {
         spectrum.multipliers.into_iter().min_by(|x, y| x.log_modulus.abs().total_cmp(&y.log_modulus.abs()))
     });
+    let is_pair = |angle: f64| angle.abs() > REAL && angle.abs() < std::f64::consts::PI - REAL;
     let (kind, angle, note) = match critical {
-        Some(mu) if change == 2 && mu.angle != 0.0 && mu.angle != std::f64::consts::PI => {
+        Some(mu) if change == 2 && is_pair(mu.angle) => {
             (EventKind::Torus, Some(mu.angle.abs()), "located by bisection of the unstable count")
         }
         Some(mu) if change == 1 && mu.angle == 0.0 => (
@@ -203,12 +300,17 @@ fn remaining_change(
             Some(0.0),
             "a multiplier passes +1 without a fold; located by bisection, kind not decided, crossing branch not followed",
         ),
+        Some(mu) if change == 2 => (
+            EventKind::Unresolved,
+            Some(if mu.angle.abs() < 1.0 { 0.0 } else { std::f64::consts::PI }),
+            "two multipliers leave the unit circle at one place: two events closer to each other than the accuracy tells",
+        ),
         _ => (EventKind::Unresolved, None, "the number of unstable multipliers changes here for a reason not resolved"),
     };
     let mut event = unresolved(&low, (0.5 * (a + b), half_width), note.into(), plan);
     (event.kind, event.angle) = (kind, angle);
     event.period_error = Some(period_error_between(problem, &low, &high));
-    Some(event)
+    event
 }
 
 /// Error of the period at the lower end of an interval for one anywhere inside: the change over the interval, and the error
@@ -221,6 +323,9 @@ fn period_error_between(problem: &mut CycleProblem, low: &CycleStation, high: &C
     };
     (high.point.unknowns.period - period).abs() + own
 }
+
+/// Angle from the real axis within which a pair may be two real multipliers that the accuracy does not tell apart.
+const REAL: f64 = 1e-4;
 
 /// An event that is known by an interval of the parameter; its period is that of the station, known to its profile's
 /// accuracy only.
@@ -247,7 +352,12 @@ pub(crate) fn unresolved(
     }
 }
 
-fn landing_event(problem: &mut CycleProblem, landing: Landing, after: &CycleStation, plan: &WalkPlan<'_>) -> Found {
+pub(crate) fn landing_event(
+    problem: &mut CycleProblem,
+    landing: Landing,
+    after: &CycleStation,
+    plan: &WalkPlan<'_>,
+) -> Found {
     let kind = match landing {
         Landing::Edge(_) => EventKind::Edge,
         Landing::Target(_) => EventKind::Target,

@@ -6,7 +6,7 @@ use std::sync::atomic::{AtomicBool, Ordering};
 
 use armilla_figure::Figure;
 use armilla_record::{Branch, CascadeRow, EndReason, EventKind, Reached, RecordError, Results, Threshold};
-use armilla_stability::Located;
+use armilla_stability::{Doubled, Located};
 
 use crate::branch::{Entry, Finished, Lineage, Run, Switchable, follow_branch};
 use crate::cascade::cascade;
@@ -176,6 +176,8 @@ fn children(
         }
         match finished.problem.double(located, form.as_ref()) {
             Err(fault) => shortfalls.push(format!("at {event} {fault}")),
+            // Born on the edge of the range and leading out of it: nothing to follow.
+            Ok(doubled) if is_outside(study, &doubled) => {}
             Ok(doubled) => children.push(Waiting {
                 lineage: child_lineage(lineage, event, located),
                 entry: Entry::Birth(Box::new(doubled)),
@@ -183,6 +185,12 @@ fn children(
         }
     }
     children
+}
+
+/// Whether a branch begins outside the asked range though it is born on its edge.
+fn is_outside(study: &Study, doubled: &Doubled) -> bool {
+    let value = doubled.point.unknowns.parameter;
+    value < study.range.0 || value > study.range.1
 }
 
 fn child_lineage(parent: &Lineage, event: &str, located: &Located) -> Lineage {

@@ -2,16 +2,18 @@
 
 use std::sync::atomic::{AtomicBool, Ordering};
 
-use armilla_follow::{Follower, Outcome, Settings, Station, Step};
+use armilla_follow::{Follower, Landing, Outcome, Problem, Settings, Station, Step};
 use armilla_record::{End, EndReason, EventKind, Point};
-use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_DOUBLING, WATCH_FOLD};
+use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_FOLD};
 
 use crate::ahead::Ahead;
 use crate::approach::{Known, approach, orbit_stands};
-use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost};
-use crate::near_miss::{Sample, near_miss};
+use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short};
+use crate::guards::{falls_on_shorter, leaps};
+use crate::ledger::{Change, is_off_folds, is_sure};
+use crate::near_miss::near_miss_by_mean;
 use crate::rest::{Motion, Rest, push};
-use crate::step_events::{Found, SUPERCONVERGENCE, events_of_step, is_explained};
+use crate::step_events::{Found, SUPERCONVERGENCE, events_of_step, events_on_edge, landing_event};
 use crate::study::Study;
 
 pub(crate) type CycleStation = Station<CyclePoint, CycleTangent>;
@@ -65,12 +67,9 @@ pub(crate) fn walk(
     let walk = Walk { points: Vec::new(), events: Vec::new(), end: end(EndReason::Stuck, start_value, String::new()) };
     match Follower::start_along(problem, first.0, first.1, plan.settings.clone()) {
         Ok(mut follower) => {
-            let seen = Seen {
-                motions: vec![motion(&mut follower)],
-                periods: vec![period(&follower)],
-                samples: vec![samples_at(&follower)],
-            };
-            Walker { follower, plan, sink, walk, seen, retries: 0, doubt_until: 0.0 }.run()
+            let seen = Seen { motions: vec![motion(&mut follower)], periods: vec![period(&follower)] };
+            let account = follower.current().clone();
+            Walker { follower, plan, sink, walk, seen, account, earlier: None, retries: 0, doubt_until: 0.0 }.run()
         }
         Err(_) => {
             let words = "the multipliers at its first cycle could not be computed".into();
@@ -85,8 +84,6 @@ struct Seen {
     motions: Vec<Motion>,
     /// Parameter and period.
     periods: Vec<(f64, f64)>,
-    /// Watched values.
-    samples: Vec<[Sample; 2]>,
 }
 
 /// A walk under way.
@@ -96,6 +93,10 @@ struct Walker<'w, 'p> {
     sink: &'w mut dyn WalkSink,
     walk: Walk,
     seen: Seen,
+    /// The last station at which the side of every multiplier was known: from there on changes are accounted for.
+    account: CycleStation,
+    /// The one before it.
+    earlier: Option<CycleStation>,
     retries: usize,
     /// Distance up to which the last doubt reaches.
     doubt_until: f64,
@@ -139,28 +140,68 @@ impl Walker<'_, '_> {
     }
 
     /// Judges a step: takes it, takes it back, or ends the walk with it.
-    fn take(&mut self, mut step: Step) -> Taken {
-        if self.retries == 0 {
-            drop_idle_turns(&mut step);
-        }
+    fn take(&mut self, step: Step) -> Taken {
         push(&mut self.seen.motions, motion(&mut self.follower));
+        let (problem, before, after) = self.follower.parts();
+        let before = before.expect("a step has a station before it").clone();
+        let after = after.clone();
+        if falls_on_shorter(problem, &before, &after, self.plan.turns) {
+            return self.retry_or_end("a neighbouring cycle of fewer turns could not be told from this one");
+        }
         let passage = passed_through(&mut self.follower, self.plan, &self.seen.motions, &self.walk.points);
         if matches!(passage, Passage::TooLong) && self.retry() {
             return Taken::On;
         }
-        if let Passage::End(ended, rest) = passage {
-            self.come_to_rest(rest);
-            return Taken::Ended(ended);
+        match passage {
+            Passage::Fell(ended) => return if self.retry() { Taken::On } else { Taken::Ended(ended) },
+            Passage::End(ended, rest) => {
+                self.come_to_rest(rest);
+                return Taken::Ended(ended);
+            }
+            Passage::None | Passage::TooLong => {}
         }
-        self.seen.samples.truncate(self.walk.points.len() + 1);
-        self.seen.samples.push(samples_at(&self.follower));
-        if (!is_explained(&step) || touches_zero(&self.seen.samples)) && self.retry() {
+        if self.is_doubtful(&before, &after) && self.retry() {
             return Taken::On;
         }
-        let (problem, before, after) = self.follower.parts();
-        let before = before.expect("a step has a station before it").clone();
-        let after = after.clone();
-        let found = events_of_step(problem, &step, (&before, &after), self.plan);
+        self.judge(&step, after)
+    }
+
+    /// Whether a shorter stride may tell more of what happens in a step.
+    fn is_doubtful(&mut self, before: &CycleStation, after: &CycleStation) -> bool {
+        let explained = !is_sure(after) || Change::between(&self.account, after).is_explained();
+        !explained || leaps(before, after) || self.may_turn_twice(before, after)
+    }
+
+    /// Whether the parameter may turn back twice inside a step.
+    fn may_turn_twice(&mut self, before: &CycleStation, after: &CycleStation) -> bool {
+        let (problem, _, _) = self.follower.parts();
+        let length = problem.distance(&before.point, &after.point);
+        let mean = (after.point.unknowns.parameter - before.point.unknowns.parameter) / length;
+        // The metric may have changed since the first of them was made.
+        let slope = |station: &CycleStation| {
+            station.tangent.row.parameter / problem.inner(&station.tangent, &station.tangent).sqrt()
+        };
+        let (from, to) = (slope(before), slope(after));
+        near_miss_by_mean((from, to), mean)
+    }
+
+    /// Finds the events of a step that is to stay, unless they show that it must not.
+    fn judge(&mut self, step: &Step, after: CycleStation) -> Taken {
+        let (problem, _, _) = self.follower.parts();
+        let sure = is_sure(&after);
+        let on_edge = matches!(step.landing, Some(Landing::Edge(_))) && !sure && is_off_folds(&after);
+        let mut found = Vec::new();
+        if sure || on_edge {
+            let findings = events_of_step(problem, (&self.account, &after), self.earlier.as_ref(), self.plan);
+            if findings.jumped {
+                return self
+                    .retry_or_end("two branches come so near each other here that they could not be told apart");
+            }
+            found = findings.found;
+        }
+        if on_edge {
+            found.extend(events_on_edge(problem, (&self.account, &after), self.plan));
+        }
         // A fold beyond the edge: the walk should have ended on the edge before it, and does so in shorter strides.
         let (low, high) = self.plan.study.range;
         let outside = |value: f64| value < low || value > high;
@@ -168,12 +209,39 @@ impl Walker<'_, '_> {
         if found.iter().any(beyond) && self.retry() {
             return Taken::On;
         }
+        let (problem, _, _) = self.follower.parts();
+        if let Some(landing) = step.landing {
+            found.push(landing_event(problem, landing, &after, self.plan));
+        }
         // The budget of retries belongs to the whole stretch that was in doubt, or the walk would creep towards a
         // singular point in ever shorter strides.
         if after.distance >= self.doubt_until {
             self.retries = 0;
         }
-        self.keep(found, after)
+        let count = if sure || after.watch.values[WATCH_FOLD].value * self.account.watch.values[WATCH_FOLD].value < 0.0
+        {
+            after.watch.unstable_count
+        } else {
+            self.account.watch.unstable_count
+        };
+        if sure {
+            self.earlier = Some(std::mem::replace(&mut self.account, after.clone()));
+        }
+        self.keep(found, after, count)
+    }
+
+    /// Takes the last step back as long as there are shorter strides; ends the walk before it where there are none.
+    fn retry_or_end(&mut self, why: &str) -> Taken {
+        let reached = self.follower.current().distance;
+        let (_, before, _) = self.follower.parts();
+        let value = before.expect("a step has a station before it").point.unknowns.parameter;
+        if self.follower.retract() {
+            self.seen.motions.pop();
+            self.doubt_until = self.doubt_until.max(reached);
+            return Taken::On;
+        }
+        let words = format!("{why}, {} = {}", self.plan.study.file.follow.parameter, short(self.plan.study, value));
+        Taken::Ended(end(EndReason::Stuck, value, words))
     }
 
     /// Takes the last step back, to be tried again in half the stride, where that is allowed.
@@ -197,16 +265,18 @@ impl Walker<'_, '_> {
     }
 
     /// Passes on what a good step brought, and looks whether the walk ends with it.
-    fn keep(&mut self, found: Vec<Found>, after: CycleStation) -> Taken {
+    fn keep(&mut self, found: Vec<Found>, after: CycleStation, unstable_count: usize) -> Taken {
         let doubles = found.iter().any(|event| event.kind == EventKind::Doubling);
         let (problem, _, _) = self.follower.parts();
         for event in found {
             self.sink.event(problem, &event);
             self.walk.events.push(event);
         }
-        let Ok(point) = problem.describe(&after.point, self.plan.turns, self.plan.sign * after.distance) else {
+        let Ok(mut point) = problem.describe(&after.point, self.plan.turns, self.plan.sign * after.distance) else {
             return Taken::NoMultipliers;
         };
+        // On a fold the spectrum does not know the side of a multiplier; the walk does.
+        point.unstable_count = unstable_count;
         self.sink.point(&point);
         let lost = resolution_lost(&point, self.plan);
         self.walk.points.push(Walked { point, cycle: after.point.clone() });
@@ -254,27 +324,4 @@ fn motion(follower: &mut Follower<'_, CycleProblem>) -> Motion {
 fn period(follower: &Follower<'_, CycleProblem>) -> (f64, f64) {
     let unknowns = &follower.current().point.unknowns;
     (unknowns.parameter, unknowns.period)
-}
-
-/// The values that folds and doublings are watched by, at the present station.
-fn samples_at(follower: &Follower<'_, CycleProblem>) -> [Sample; 2] {
-    let station = follower.current();
-    [WATCH_FOLD, WATCH_DOUBLING]
-        .map(|index| Sample { distance: station.distance, value: station.watch.values[index].value })
-}
-
-/// Whether one of the watched values may have touched zero and turned back within the last step.
-fn touches_zero(samples: &[[Sample; 2]]) -> bool {
-    let [.., a, b, c] = samples else { return false };
-    (0..2).any(|watched| near_miss([a[watched], b[watched], c[watched]]))
-}
-
-/// Takes out turnings of the parameter that are none: where it stands still to roundoff over a whole stride (in the
-/// middle of a canard explosion, say) its sign flips at random, and no multiplier passes 1.
-fn drop_idle_turns(step: &mut Step) {
-    /// Parameter component of the unit tangent that no true fold stays below at both ends of a stride.
-    const IDLE: f64 = 1e-6;
-    if step.unstable.0 == step.unstable.1 {
-        step.crossings.retain(|c| c.index != WATCH_FOLD || c.before.abs() > IDLE || c.after.abs() > IDLE);
-    }
 }

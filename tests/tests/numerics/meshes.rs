@@ -1,9 +1,9 @@
-//! The number of intervals: against what the error formula predicts, with the accuracy, and overridden.
+//! The number of intervals: against what the error formula predicts, with the accuracy.
 
 use std::f64::consts::TAU;
 
 use armilla_stability::CycleSettings;
-use armilla_tests::{Case, branch, event, job, relative, settings};
+use armilla_tests::{Case, branch, job, settings};
 
 /// Largest |P| on [0, 1], `P(s) = (1/m!) Int_0^s Prod (x - rho_l) dx` over the Gauss points.
 ///
@@ -79,23 +79,4 @@ fn intervals_follow_the_branch() {
     let (first, last) = (&a.points[0], &a.points[a.points.len() - 1]);
     assert!(last.intervals > 2 * first.intervals, "{} to {}", first.intervals, last.intervals);
     assert!(a.points.iter().all(|point| point.profile_error <= 1e-9));
-}
-
-/// The same thresholds and periods from any degree on meshes set by hand. Source: Roessler's first doubling, independent
-/// (single shooting with a Taylor integrator in 113-bit arithmetic).
-#[test]
-fn results_do_not_depend_on_the_mesh() {
-    for (degree, intervals) in [(3, 200), (4, 100), (5, 70), (6, 50), (7, 40), (8, 36)] {
-        let traced = job(
-            "roessler",
-            &format!(
-                r#"start: Settle(at: {{"c": 2.7}}), follow: (parameter: "c", from: 2.6, to: 3.0), pursue: (doublings: 0),
-                   mesh: (intervals: {intervals}, degree: {degree})"#
-            ),
-        );
-        assert!(branch(&traced, "a").points.iter().all(|point| point.degree == degree && point.intervals == intervals));
-        let doubling = event(&traced, "a/doubling1");
-        relative(&format!("doubling, degree {degree}"), doubling.value, 2.832_445_027_862_539, 1e-10);
-        relative(&format!("its period, degree {degree}"), doubling.period, 5.769_820_016_506_563, 1e-10);
-    }
 }

@@ -77,7 +77,7 @@ impl Planted {
         if !self.mixed {
             return (unit(&|_, _| 0.0), unit(&|_, _| 0.0));
         }
-        let entry = |i: usize, j: usize| if (i + 2 * j) % 3 == 0 { -0.25 } else { 0.5 };
+        let entry = |i: usize, j: usize| if (i + 2 * j).is_multiple_of(3) { -0.25 } else { 0.5 };
         let lower = unit(&|i, j| if i > j { entry(i, j) } else { 0.0 });
         let upper = unit(&|i, j| if i < j { -entry(i, j) } else { 0.0 });
         (product(&lower, &upper), product(&inverse_upper(&upper), &inverse_lower(&lower)))

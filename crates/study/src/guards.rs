@@ -1,0 +1,67 @@
+//! Guards against landing on another branch, beside those of the follower: what no single step of a branch does.
+//!
+//! Of two branches that come near each other one has the other orientation, which the ledger sees ([`crate::ledger`]).
+//! Here: the period neither halves nor doubles, a cycle of several turns does not become a shorter one told several
+//! times, and multipliers move by a bounded amount from point to point.
+
+use armilla_stability::{CycleProblem, WATCH_BRANCHING, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS};
+
+use crate::walk::CycleStation;
+
+/// Change of the logarithm of the period in one step beyond which it is taken again shorter: half the way to a copy.
+const PERIOD: f64 = 0.35;
+/// Change of a product of scaled multipliers (at most about 1 in size) in one step beyond which it is taken again shorter:
+/// a multiplier on its way from 1 to -1 is seen at two points between at least.
+const MULTIPLIERS: f64 = 0.5;
+/// Share of the difference between turns that a step must leave of it.
+const LEFT: f64 = 1e-3;
+
+/// Whether a step changes more than a stride should; a shorter one tells.
+pub(crate) fn leaps(before: &CycleStation, after: &CycleStation) -> bool {
+    let period = |station: &CycleStation| station.point.unknowns.period.ln();
+    let leaps = |index: usize| {
+        let (a, b) = (before.watch.values[index].value, after.watch.values[index].value);
+        (a - b).abs() > MULTIPLIERS
+    };
+    (period(before) - period(after)).abs() > PERIOD || leaps(WATCH_DOUBLING) || leaps(WATCH_BRANCHING)
+}
+
+/// Whether a step from a cycle of several turns landed on a shorter one told several times.
+pub(crate) fn falls_on_shorter(
+    problem: &CycleProblem,
+    before: &CycleStation,
+    after: &CycleStation,
+    turns: usize,
+) -> bool {
+    prime_factors(turns).any(|copies| {
+        let [was, is] = [before, after].map(|station| problem.unlike_copies(&station.point, copies));
+        is < LEFT * was
+    })
+}
+
+fn prime_factors(number: usize) -> impl Iterator<Item = usize> {
+    let prime = |candidate: &usize| (2..*candidate).all(|divisor| !candidate.is_multiple_of(divisor));
+    (2..=number).filter(move |candidate| number.is_multiple_of(*candidate)).filter(prime)
+}
+
+/// Values near zero of which are looked at by the parabola through three stations; none where the value means something
+/// else at one of them.
+pub(crate) fn smooth_values(station: &CycleStation) -> [Option<f64>; 2] {
+    /// Parameter component of the tangent below which the ratio to it says nothing.
+    const TURNING: f64 = 0.05;
+    let value = |index: usize| station.watch.values[index].value;
+    let (turning, torus) = (value(WATCH_FOLD), value(WATCH_TORUS));
+    // Without pairs the product over them is 1 exactly. Through a fold the branching function changes its sign together
+    // with the parameter's component; their ratio does at branchings only.
+    [(torus != 1.0).then_some(torus), (turning.abs() > TURNING).then(|| value(WATCH_BRANCHING) / turning)]
+}
+
+#[cfg(test)]
+mod tests {
+    #[test]
+    fn primes_of_turns() {
+        assert_eq!(super::prime_factors(12).collect::<Vec<_>>(), [2, 3]);
+        assert_eq!(super::prime_factors(7).collect::<Vec<_>>(), [7]);
+        assert_eq!(super::prime_factors(1).count(), 0);
+    }
+}
