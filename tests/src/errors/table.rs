@@ -85,7 +85,7 @@ fn line(page: &mut String, row: &Row) {
         row.case,
         row.accuracy,
         row.number,
-        row.found.map_or(String::new(), |found| found.to_string()),
+        row.found.map_or(String::new(), |found| format!("{found:?}")),
         row.truth.as_deref().unwrap_or(""),
         row.source,
         row.ratio(),
