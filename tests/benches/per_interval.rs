@@ -39,7 +39,9 @@ fn bench_of(criterion: &mut Criterion, case: &Case, cycle: &Profile, turns: usiz
     let mut solver = SpectrumSolver::new(spec.field.as_ref(), DEGREE);
     let parameters = case.parameters(AT);
     group.bench_function("spectrum", |bencher| {
-        bencher.iter(|| solver.spectrum(black_box(&told), &parameters, &spec.metric.scales, ACCURACY).expect("multipliers"));
+        bencher.iter(|| {
+            solver.spectrum(black_box(&told), &parameters, &spec.metric.scales, ACCURACY).expect("multipliers")
+        });
     });
     group.finish();
 }

@@ -208,8 +208,10 @@ fn found<'a>(traced: &'a Traced, place: Place, case: &str) -> &'a Event {
         Place::Named(name) => return crate::event(traced, name),
         Place::At(branch, value) => (branch, value),
     };
-    let mut events = crate::branch(traced, branch).events.iter();
-    events.find(|event| event.value == value).unwrap_or_else(|| panic!("{case}: nothing at {value}"))
+    let branch = crate::branch(traced, branch);
+    let found = branch.events.iter().find(|event| event.value == value);
+    let words = || (&branch.ends.0.words, &branch.ends.1.words, &traced.shortfalls);
+    found.unwrap_or_else(|| panic!("{case}: nothing at {value}: {:?}", words()))
 }
 
 fn kept(branch: &Branch, which: Kept) -> (&Point, &Profile) {

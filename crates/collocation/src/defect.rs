@@ -6,8 +6,8 @@
 //! points. With `r = Pi g`, Pi the product over the Gauss points, g is interpolated at m+1 stations that interlace with them,
 //! so E is a fixed combination of m+1 defects. Where g hardly varies this is the leading term from the (m+1)-th
 //! derivative; on coarse meshes it still holds, where jumps of the m-th derivative see a tenth of the error or less
-//! (van der Pol's oscillator, degree 8, accuracy 1e-6). Shampine & Muir (2004, Scalable Computing 5:27) compare such
-//! estimates. Not seen: the error of the mesh points, of order 2m.
+//! (van der Pol's oscillator, degree 8, accuracy 1e-6). Kierzenka & Shampine (2001, ACM Trans. Math. Softw. 27:299)
+//! control residuals in this spirit. Not seen: the error of the mesh points, of order 2m.
 
 use armilla_model::{Batch, Evaluator, VectorField};
 use armilla_record::{barycentric_weights, lagrange_at};

@@ -143,3 +143,24 @@ fn three_turn_window_settled_inside() {
         assert!(!point.is_stable() || between, "{point:?}");
     }
 }
+
+/// Asked for 1e-12 the thresholds have it.
+#[test]
+#[expect(clippy::excessive_precision, reason = "the digits of the source")]
+fn thresholds_to_twelve_digits() {
+    let cascade = job(
+        "roessler",
+        r#"start: Settle(at: {"c": 2.5}), follow: (parameter: "c", from: 2.5, to: 4.2), accuracy: 1e-12, pursue: (doublings: 2)"#,
+    );
+    let one = threshold(&cascade, "a/doubling1", 2.832_445_027_862_538_913_673_846, 1e-12);
+    relative("period at the first doubling", one.period, 5.769_820_016_506_563_190_538_408, 1e-12);
+    threshold(&cascade, "a.doubling1/doubling1", 3.837_358_168_410_093_765_696_702, 1e-12);
+    threshold(&cascade, "a.doubling1.doubling1/doubling1", 4.124_214_732_075_501_691_678_446, 1e-12);
+    let window = job(
+        "roessler",
+        r#"start: Settle(at: {"c": 5.25}), follow: (parameter: "c", from: 5.1, to: 5.45), accuracy: 1e-12, pursue: (doublings: 0)"#,
+    );
+    threshold(&window, "a/fold1", 5.185_085_784_084_436_575_567_018, 1e-12);
+    let doubling = threshold(&window, "a/doubling1", 5.379_419_820_792_818_286_172_024, 1e-12);
+    relative("period at the doubling", doubling.period, 17.452_437_630_153_145_92, 1e-12);
+}

@@ -142,3 +142,34 @@ fn frequency_for_small_mu() {
         );
     }
 }
+
+/// From nearly harmonic to relaxation in one study. Source as above.
+#[test]
+#[expect(clippy::excessive_precision, reason = "the digits of the source")]
+fn one_study_up_to_1000() {
+    let traced = job(
+        "vanderpol",
+        r#"start: Settle(at: {"mu": 1.0}), follow: (parameter: "mu", from: 1, to: 1000), targets: [20, 100]"#,
+    );
+    let a = branch(&traced, "a");
+    for (mu, period) in [
+        (20.0, 34.682_323_311_652_683_567_1),
+        (100.0, 162.837_071_092_370_012_132),
+        (1000.0, 1614.401_125_808_333_983_07),
+    ] {
+        let event = a.events.iter().find(|event| event.value == mu).expect("an event at the value");
+        relative(&format!("period at mu = {mu}"), event.period, period, 1e-12);
+        let error = event.period_error.expect("an error");
+        assert!((event.period - period).abs() <= error, "{:e} is not covered: {event:?}", event.period - period);
+    }
+    for (mu, log_multiplier) in [(100.0, -28_997.988_457_287_026_5), (1000.0, -2_886_973.413_087_451_65)] {
+        let point = a.points.iter().find(|point| point.value == mu).expect("a point at the value");
+        relative(&format!("log multiplier at {mu}"), point.multipliers[0].log_modulus, log_multiplier, 1e-8);
+    }
+    assert!(a.points.iter().all(|point| point.is_stable()));
+    // Published: T ~ (3 - 2 ln 2) mu + 7.014322 mu^(-1/3) (Grasman 1987, Asymptotic Methods for Relaxation Oscillations; from
+    // memory); what follows is of order ln(mu)/mu.
+    let law = |mu: f64| (3.0 - 2.0 * 2f64.ln()) * mu + 7.014_322 * mu.powf(-1.0 / 3.0);
+    let last = &a.points[a.points.len() - 1];
+    absolute("against the law of large mu", last.period, law(last.value), last.value.ln() / last.value);
+}
