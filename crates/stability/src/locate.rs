@@ -188,7 +188,7 @@ impl CycleProblem {
     /// Share of the difference between a number on a mesh and on the halved one that may be left on the latter.
     ///
     /// Numbers converge at least as fast as the profile, mostly with twice its order, and how fast the profile converges
-    /// is measured on these two meshes; [`CANCELLING`] is the margin. Where the profile gains nothing, all of it.
+    /// is measured on these two meshes; `CANCELLING` is the margin. Where the profile gains nothing, all of it.
     pub fn left_over(&mut self, coarse: &CyclePoint, fine: &CyclePoint) -> f64 {
         let gain = self.estimate(fine).error / self.estimate(coarse).error;
         // Written so that NaN leaves all.

@@ -121,7 +121,7 @@ impl Walker<'_, '_> {
                 }
             }
         }
-        self.walk.end = end_of_follower(&mut self.follower, self.plan, &self.seen.motions);
+        self.walk.end = end_of_follower(&self.follower, self.plan, &self.seen.motions);
         self.walk
     }
 

@@ -155,7 +155,7 @@ fn one_study_up_to_1000() {
     for (mu, period) in [
         (20.0, 34.682_323_311_652_683_567_1),
         (100.0, 162.837_071_092_370_012_132),
-        (1000.0, 1614.401_125_808_333_983_07),
+        (1000.0, 1_614.401_125_808_333_983_07),
     ] {
         let event = a.events.iter().find(|event| event.value == mu).expect("an event at the value");
         relative(&format!("period at mu = {mu}"), event.period, period, 1e-12);
