@@ -266,7 +266,7 @@ impl Row {
         self.reported.map_or(f64::INFINITY, |reported| reported / self.error.max(self.unit).max(self.roundoff))
     }
 
-    /// Whether the rule holds: inside, and not more than [`WIDEST`] times too wide.
+    /// Whether it is inside, and not more than [`WIDEST`] times too wide.
     pub fn holds(&self) -> bool {
         self.is_inside() && self.ratio() <= WIDEST
     }

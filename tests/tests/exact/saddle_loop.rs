@@ -41,7 +41,12 @@ fn the_period_grows_fivefold_and_every_cycle_is_exact() {
         // The parameter stands beside H of size 1/4, known to 1e-16: that moves the period by 1e-16/|h|.
         let roundoff = 1e-15 / point.value.abs();
         if roundoff < 1e-2 {
-            absolute(&format!("period at h = {:e}", point.value), point.period, period(point.value), 1e-9 + roundoff);
+            absolute(
+                &format!("period at h = {:e}", point.value),
+                point.period,
+                period(point.value),
+                1e-9 * point.period + roundoff,
+            );
         }
         assert!(point.is_stable(), "{point:?}");
     }

