@@ -49,8 +49,8 @@ const PATIENCE: usize = 8;
 const NEAR_ROUNDOFF: f64 = 1e3;
 /// Multiple of the known floor up to which an error counts as that floor still.
 const FLOOR_KNOWN: f64 = 2.0;
-/// Meshes tried at one point: the estimate on the second is already that of a suitable one.
-const RENEWALS: usize = 3;
+/// Meshes tried at one point: mostly one is enough; fronts that move from point to point take some more.
+const RENEWALS: usize = 6;
 /// Meshes tried at the first point of a branch: each estimate comes from a better mesh, the choice settles in three or
 /// four.
 const FIRST_ROUNDS: usize = 8;
