@@ -70,6 +70,10 @@ fn each_point_says_what_was_chosen_and_why() {
     assert!(count(MeshReason::Kept) > 0 && count(MeshReason::ProfileError) > 0);
     assert_eq!(count(MeshReason::Unstated) + count(MeshReason::Given), 0);
     assert!(points.iter().all(|point| point.reached == Reached::Accuracy && point.profile_error <= 1e-9));
+    // A relaxation cycle at mu = 20 has fronts that the round one at mu = 1 has not.
+    let intervals = points.iter().map(|point| point.intervals);
+    let (fewest, most) = (intervals.clone().min().expect("points"), intervals.max().expect("points"));
+    assert!(most >= 4 * fewest, "{fewest} to {most} intervals");
     for pair in points.windows(2) {
         let same = (pair[0].degree, pair[0].intervals) == (pair[1].degree, pair[1].intervals);
         assert!(same || pair[1].choice != MeshReason::Kept, "{pair:?}");
