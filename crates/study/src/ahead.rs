@@ -3,9 +3,10 @@
 //! Near its birth at `p_0` a doubled branch is a parabola: the parameter moves with the square of the distance s travelled,
 //! `p - p_0 ~ s^2` (a period doubling is a pitchfork of the return map taken twice; Kuznetsov 2004, Elements of Applied
 //! Bifurcation Theory, sec. 4.5; from memory). So one station tells at which distance a parameter value ahead is met. The
-//! strides left to a little beyond it are then made equal, and never longer than the control of strides allows: the
-//! doubling is met after few steps, and no step carries on far behind it. A wrong prediction costs little: one too far away
-//! bounds nothing, one too near shortens two strides, after which the control is alone.
+//! multiplier that is 1 at the birth and -1 at the doubling goes about evenly with the parameter: the way left to a little
+//! behind the doubling is cut into equal parts of the parameter, as few as the guards against jumps let pass, and never
+//! longer than the control of strides allows. A wrong prediction costs little: one too far away bounds nothing, one too
+//! near shortens a few strides, after which the control is alone.
 
 /// A doubling expected ahead on a doubled branch.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -18,9 +19,12 @@ pub(crate) struct Ahead {
     pub offset: f64,
 }
 
-/// How far behind the expected place the strides reach, as a factor on the distance from the birth: enough for a
-/// prediction off by a third of the interval, and for a bracket whose ends are both clear of the doubling.
-const PASS: f64 = 1.15;
+/// How far behind the expected place the strides reach, as a share of the parameter's way from the birth: enough for a
+/// prediction off by a tenth of the interval, and for a bracket whose ends are both clear of the doubling.
+const PASS: f64 = 1.1;
+/// Largest part of that way in one stride: the multiplier then moves by some 0.45, which is what the guards against jumps
+/// let pass ([`crate::guards`]). Larger parts are taken back there and cost more than they save.
+const PART: f64 = 0.22;
 
 impl Ahead {
     /// Whether the place lies farther on where the branch has come to a parameter value.
@@ -36,9 +40,11 @@ impl Ahead {
             return None;
         }
         let travelled = self.offset + distance;
-        let share = (self.value - self.birth) / (value - self.birth);
-        let remaining = PASS * travelled * share.sqrt() - travelled;
-        Some(remaining / (remaining / proposed).ceil())
+        let share = (value - self.birth) / (self.value - self.birth);
+        let left = PASS - share;
+        let part = left / (left / PART).ceil();
+        let reach = travelled * ((share + part) / share).sqrt();
+        Some((reach - travelled).min(proposed))
     }
 }
 
@@ -48,16 +54,19 @@ mod tests {
 
     /// Exact: on the parabola p = s^2 from s = 0.2, the place 1 lies at s = 1.
     #[test]
-    fn equal_strides_end_behind_the_place() {
+    fn equal_parts_end_behind_the_place() {
         let ahead = Ahead { birth: 0.0, value: 1.0, offset: 0.2 };
-        let (mut s, mut steps) = (0.2, 0);
-        while let Some(stride) = ahead.stride(s * s, s - 0.2, 0.3) {
-            assert!(stride <= 0.3 && stride > 0.2, "{stride}");
+        let mut s: f64 = 0.2;
+        let mut passed = Vec::new();
+        while let Some(stride) = ahead.stride(s * s, s - 0.2, 1.0) {
             s += stride;
-            steps += 1;
+            passed.push(s * s);
         }
-        assert_eq!(steps, 4);
-        assert!((s - PASS).abs() < 1e-12, "{s}");
+        // From 0.04 to 1.1 in parts of at most 0.22.
+        assert_eq!(passed.len(), 5, "{passed:?}");
+        let wanted = (1..=5).map(|k| 0.04 + 1.06 * f64::from(k) / 5.0);
+        assert!(passed.iter().zip(wanted).all(|(p, wanted)| (p - wanted).abs() < 1e-12), "{passed:?}");
+        assert_eq!(ahead.stride(0.04, 0.0, 0.1), Some(0.1), "never longer than proposed");
     }
 
     #[test]
