@@ -334,7 +334,6 @@ impl Workspace {
         bordered.row_mut(0).copy_from_slice(&self.phase);
         bordered.row_mut(1).copy_from_slice(&row.nodes);
         bordered.corner_mut().copy_from_slice(&[0.0, 0.0, row.period, row.parameter]);
-        bordered.prepare(system.cyclic(), 1.0)?;
         self.core.iter_mut().zip(system.residual()).for_each(|(c, r)| *c = -r);
         let n = system.n();
         let len = at.nodes.len();
@@ -346,7 +345,7 @@ impl Workspace {
         let phase: f64 = self.phase.iter().zip(at.nodes.iter().zip(reference)).map(|(p, (u, r))| p * (r - u)).sum();
         let mut scalars = [0.0; 2];
         let right = Right { core: &self.core, closing: &self.gap, border: &[phase, -residual] };
-        bordered.solve(system.cyclic(), right, &mut step.nodes, &mut scalars);
+        bordered.prepare_and_solve(system.cyclic(), 1.0, right, (&mut step.nodes, &mut scalars))?;
         (step.period, step.parameter) = (scalars[0], scalars[1]);
         Ok(residual)
     }

@@ -262,8 +262,9 @@ impl System {
         }
         for i in 0..self.mesh.len() - 1 {
             self.fill_block(i);
+            self.cyclic.condense(i)?;
         }
-        self.cyclic.factor()?;
+        self.cyclic.join();
         Ok(())
     }
 

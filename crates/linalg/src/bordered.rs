@@ -36,12 +36,12 @@ pub struct DeterminantSign(
 pub struct Bordered {
     shape: Shape,
     k: usize,
+    /// The k columns, and one more for a right side.
     columns: Vec<f64>,
     closing_columns: Vec<f64>,
     rows: Vec<f64>,
     corner: Vec<f64>,
     last: Lu,
-    work_column: Vec<f64>,
     work_row: Vec<f64>,
     work_last: Vec<f64>,
     e_block: Lu,
@@ -54,12 +54,11 @@ impl Bordered {
         Self {
             shape,
             k,
-            columns: vec![0.0; k * shape.core_len()],
+            columns: vec![0.0; (k + 1) * shape.core_len()],
             closing_columns: vec![0.0; k * shape.n],
             rows: vec![0.0; k * shape.nodes_len()],
             corner: vec![0.0; k * k],
             last: Lu::new(size),
-            work_column: vec![0.0; shape.core_len()],
             work_row: vec![0.0; shape.nodes_len()],
             work_last: vec![0.0; size],
             e_block: Lu::new(shape.n),
@@ -100,20 +99,50 @@ impl Bordered {
     /// # Errors
     /// [`Singular`] (interval = N) where the bordered system is singular or not finite.
     pub fn prepare(&mut self, cyclic: &Cyclic, sigma: f64) -> Result<(), Singular> {
-        let (core_len, nodes_len) = (self.shape.core_len(), self.shape.nodes_len());
-        for column in self.columns.chunks_exact_mut(core_len) {
-            divide(column, cyclic.sizes());
-            cyclic.reduce_column(column);
-        }
-        for column in self.closing_columns.chunks_exact_mut(self.shape.n) {
-            divide(column, cyclic.sizes());
-        }
-        for row in self.rows.chunks_exact_mut(nodes_len) {
-            multiply(row, cyclic.sizes());
-            cyclic.reduce_row(row);
-        }
+        self.reduce(cyclic, self.k);
+        self.close(cyclic, sigma)
+    }
+
+    /// [`Bordered::prepare`] and [`Bordered::solve`] with one pass over the factors fewer.
+    ///
+    /// # Errors
+    /// [`Singular`] (interval = N) where the bordered system is singular or not finite.
+    pub fn prepare_and_solve(
+        &mut self,
+        cyclic: &Cyclic,
+        sigma: f64,
+        right: Right<'_>,
+        (nodes, scalars): (&mut [f64], &mut [f64]),
+    ) -> Result<(), Singular> {
+        self.take_right(right);
+        self.reduce(cyclic, self.k + 1);
+        self.close(cyclic, sigma)?;
+        self.finish(cyclic, right, nodes, scalars);
+        Ok(())
+    }
+
+    /// Reduces the first `count` columns and all rows.
+    fn reduce(&mut self, cyclic: &Cyclic, count: usize) {
+        let columns = &mut self.columns[..count * self.shape.core_len()];
+        divide(columns, cyclic.sizes());
+        multiply(&mut self.rows, cyclic.sizes());
+        cyclic.reduce(columns, &mut self.rows);
+    }
+
+    fn close(&mut self, cyclic: &Cyclic, sigma: f64) -> Result<(), Singular> {
+        divide(&mut self.closing_columns, cyclic.sizes());
         self.fill_last(cyclic, sigma);
         if self.last.factor() { Ok(()) } else { Err(Singular { interval: self.shape.intervals }) }
+    }
+
+    /// The right side's rows of the intervals to their place behind the columns.
+    fn take_right(&mut self, right: Right<'_>) {
+        let column = &mut self.columns[self.k * self.shape.core_len()..];
+        if right.core.is_empty() {
+            column.fill(0.0);
+        } else {
+            column.copy_from_slice(right.core);
+        }
     }
 
     fn fill_last(&mut self, cyclic: &Cyclic, sigma: f64) {
@@ -150,16 +179,20 @@ impl Bordered {
 
     /// Solves for the unknowns (N R + n numbers) and the k scalars.
     pub fn solve(&mut self, cyclic: &Cyclic, right: Right<'_>, nodes: &mut [f64], scalars: &mut [f64]) {
+        self.take_right(right);
+        if !right.core.is_empty() {
+            let column = &mut self.columns[self.k * self.shape.core_len()..];
+            divide(column, cyclic.sizes());
+            cyclic.reduce(column, &mut []);
+        }
+        self.finish(cyclic, right, nodes, scalars);
+    }
+
+    /// The solution from the reduced right side.
+    fn finish(&mut self, cyclic: &Cyclic, right: Right<'_>, nodes: &mut [f64], scalars: &mut [f64]) {
         let (n, k) = (self.shape.n, self.k);
         let (core_len, nodes_len) = (self.shape.core_len(), self.shape.nodes_len());
-        let column = &mut self.work_column;
-        if right.core.is_empty() {
-            column.fill(0.0);
-        } else {
-            column.copy_from_slice(right.core);
-            divide(column, cyclic.sizes());
-            cyclic.reduce_column(column);
-        }
+        let (columns, column) = self.columns.split_at_mut(k * core_len);
         let last = &mut self.work_last;
         last[..n].copy_from_slice(cyclic.reduced_right(column));
         if right.closing.is_empty() {
@@ -174,8 +207,8 @@ impl Bordered {
         }
         self.last.solve(last);
         scalars.copy_from_slice(&last[2 * n..]);
-        for (j, &scalar) in scalars.iter().enumerate() {
-            crate::dense::axpy(column, -scalar, &self.columns[j * core_len..(j + 1) * core_len]);
+        for (&scalar, border) in scalars.iter().zip(columns.chunks_exact(core_len)) {
+            crate::dense::axpy(column, -scalar, border);
         }
         nodes[..n].copy_from_slice(&last[..n]);
         nodes[nodes_len - n..].copy_from_slice(&last[n..2 * n]);
@@ -201,7 +234,7 @@ impl Bordered {
         } else {
             row.copy_from_slice(nodes);
             multiply(row, cyclic.sizes());
-            cyclic.reduce_row(row);
+            cyclic.reduce(&mut [], row);
         }
         let last = &mut self.work_last;
         last[..n].copy_from_slice(&row[..n]);

@@ -130,28 +130,42 @@ impl Cyclic {
         &self.merges[right * len..(right + 1) * len]
     }
 
-    /// Factors the blocks in place.
+    /// Factors the blocks in place: [`Cyclic::condense`] for each, then [`Cyclic::join`].
     ///
     /// # Errors
     /// [`Singular`] with the first interval whose inner columns are dependent or not finite.
     pub fn factor(&mut self) -> Result<(), Singular> {
+        (0..self.shape.intervals).try_for_each(|i| self.condense(i))?;
+        self.join();
+        Ok(())
+    }
+
+    /// Condenses interval `i`; right after its block is filled that finds it in the cache still.
+    ///
+    /// # Errors
+    /// [`Singular`] where its inner columns are dependent or not finite.
+    pub fn condense(&mut self, i: usize) -> Result<(), Singular> {
         let shape = self.shape;
         let (n, inner, width) = (shape.n, shape.inner, shape.width());
         let block_len = shape.rows() * width;
-        for i in 0..shape.intervals {
-            let block = &mut self.blocks[i * block_len..(i + 1) * block_len];
-            let swaps = &mut self.swaps[i * inner..(i + 1) * inner];
-            if !interval::factor(shape, block, swaps) {
-                return Err(Singular { interval: i });
-            }
-            let link = &mut self.links[i * 2 * n * n..(i + 1) * 2 * n * n];
-            let (a, e) = link.split_at_mut(n * n);
-            for r in 0..n {
-                let row = &block[(inner + r) * width + inner..(inner + r + 1) * width];
-                a[r * n..(r + 1) * n].copy_from_slice(&row[..n]);
-                e[r * n..(r + 1) * n].copy_from_slice(&row[n..]);
-            }
+        let block = &mut self.blocks[i * block_len..(i + 1) * block_len];
+        let swaps = &mut self.swaps[i * inner..(i + 1) * inner];
+        if !interval::factor(shape, block, swaps) {
+            return Err(Singular { interval: i });
         }
+        let link = &mut self.links[i * 2 * n * n..(i + 1) * 2 * n * n];
+        let (a, e) = link.split_at_mut(n * n);
+        for r in 0..n {
+            let row = &block[(inner + r) * width + inner..(inner + r + 1) * width];
+            a[r * n..(r + 1) * n].copy_from_slice(&row[..n]);
+            e[r * n..(r + 1) * n].copy_from_slice(&row[n..]);
+        }
+        Ok(())
+    }
+
+    /// Reduces the chain of links, all intervals condensed.
+    pub fn join(&mut self) {
+        let n = self.shape.n;
         let (link_len, store_len) = (2 * n * n, chain::merge_len(n));
         for &Merge { left, right, .. } in &self.plan {
             let (head, tail) = self.links.split_at_mut(right * link_len);
@@ -159,7 +173,6 @@ impl Cyclic {
             let left = &mut head[left * link_len..(left + 1) * link_len];
             chain::merge(n, left, &tail[..link_len], store, &mut self.scratch);
         }
-        Ok(())
     }
 
     /// The reduced link `A`, `E` (n x n row-major each) of `A u_0 + E u_N = r`.
@@ -168,16 +181,37 @@ impl Cyclic {
         (&self.links[..n * n], &self.links[n * n..2 * n * n])
     }
 
-    /// Applies the row operations S to a right side (N R numbers, interval by interval). Afterwards
-    /// [`Cyclic::reduced_right`] of it belongs to the reduced link.
-    pub fn reduce_column(&self, column: &mut [f64]) {
-        let (shape, rows) = (self.shape, self.shape.rows());
-        for (i, r) in column.chunks_exact_mut(rows).enumerate() {
-            interval::reduce_column(shape, self.block(i), self.swaps_of(i), r);
+    /// Reduces any number of columns (N R numbers each, one after the other) and border rows (N R + n each) in one pass over
+    /// the factors: on long meshes their way from memory is what a pass costs.
+    ///
+    /// A column is a right side: the row operations S are applied to it, and [`Cyclic::reduced_right`] of it then belongs
+    /// to the reduced link. A row loses everything but u_0 and u_N: the places of these hold its reduced coefficients then,
+    /// all others y = row U^-1.
+    pub fn reduce(&self, columns: &mut [f64], rows: &mut [f64]) {
+        let (shape, n, per) = (self.shape, self.shape.n, self.shape.rows());
+        let (core_len, nodes_len) = (shape.core_len(), shape.nodes_len());
+        for i in 0..shape.intervals {
+            let (block, swaps) = (self.block(i), self.swaps_of(i));
+            for column in columns.chunks_exact_mut(core_len) {
+                interval::reduce_column(shape, block, swaps, &mut column[i * per..(i + 1) * per]);
+            }
+            for row in rows.chunks_exact_mut(nodes_len) {
+                interval::reduce_row(shape, block, &mut row[i * per..(i + 1) * per + n]);
+            }
         }
-        for &Merge { left, right, .. } in &self.plan {
-            let (left_part, right_part) = self.two_links(column, left, right);
-            chain::reduce_column(shape.n, self.merge_store(right), left_part, right_part);
+        for merge in &self.plan {
+            let store = self.merge_store(merge.right);
+            for column in columns.chunks_exact_mut(core_len) {
+                let (left, right) = self.two_links(column, merge.left, merge.right);
+                chain::reduce_column(n, store, left, right);
+            }
+            for row in rows.chunks_exact_mut(nodes_len) {
+                let (head, tail) = row.split_at_mut(merge.right * per);
+                let (middle, after) = tail.split_at_mut(n);
+                let end_at = (merge.end - merge.right) * per - n;
+                let ends = (&mut head[merge.left * per..merge.left * per + n], &mut after[end_at..end_at + n]);
+                chain::reduce_row(n, store, middle, ends);
+            }
         }
     }
 
@@ -206,22 +240,6 @@ impl Cyclic {
         for i in 0..shape.intervals {
             let g = &column[i * rows..i * rows + inner];
             interval::back_substitute(shape, self.block(i), g, &mut nodes[i * rows..(i + 1) * rows + n]);
-        }
-    }
-
-    /// Eliminates everything but u_0 and u_N from a border row over the unknowns (N R + n numbers), in place:
-    /// the places of u_0 and u_N then hold its reduced coefficients, all others y = row U^-1.
-    pub fn reduce_row(&self, row: &mut [f64]) {
-        let (shape, n, rows) = (self.shape, self.shape.n, self.shape.rows());
-        for i in 0..shape.intervals {
-            interval::reduce_row(shape, self.block(i), &mut row[i * rows..(i + 1) * rows + n]);
-        }
-        for &Merge { left, right, end } in &self.plan {
-            let (head, tail) = row.split_at_mut(right * rows);
-            let (middle, after) = tail.split_at_mut(n);
-            let end_at = end * rows - right * rows - n;
-            let ends = (&mut head[left * rows..left * rows + n], &mut after[end_at..end_at + n]);
-            chain::reduce_row(n, self.merge_store(right), middle, ends);
         }
     }
 

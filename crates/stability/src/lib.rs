@@ -63,5 +63,5 @@ pub use problem::{
     CycleProblem, CycleSettings, CycleSpec, StartFault, WATCH_BRANCHING, WATCH_DOUBLING, WATCH_FOLD, WATCH_TORUS,
 };
 pub use spectrum::{Spectrum, SpectrumFault, SpectrumSolver};
-pub use switch::{Doubled, SplitChange, SwitchFault};
+pub use switch::{Born, SplitChange, SwitchFault};
 pub use test_function::{CriticalKind, NullVectors, TestFunction};

@@ -16,7 +16,7 @@ use crate::measure::Measures;
 use crate::point::{CyclePoint, CycleTangent};
 use crate::resolution::Resolution;
 use crate::scale::{STILL, STILL_AT_FIRST, first_metric, natural_sizes};
-use crate::spectrum::{Spectrum, SpectrumSolver};
+use crate::spectrum::{Spectrum, SpectrumFault, SpectrumSolver};
 
 /// Index of the fold function in the watch list: the parameter's component of the tangent.
 pub const WATCH_FOLD: usize = 0;
@@ -130,6 +130,8 @@ pub struct CycleProblem {
     spectra: Vec<Option<SpectrumSolver>>,
     /// Spectrum of the point it was last asked of, with that point: `watch` and `describe` ask again.
     watched: Option<(CyclePoint, Spectrum)>,
+    /// Why the multipliers asked for last could not be computed.
+    spectrum_fault: Option<SpectrumFault>,
     bordered: Option<Bordered>,
     /// Shape of the bordered system above.
     sized_for: Option<Shape>,
@@ -202,6 +204,7 @@ impl CycleProblem {
             defects,
             spectra: (0..=DEGREES.1).map(|_| None).collect(),
             watched: None,
+            spectrum_fault: None,
             bordered: None,
             sized_for: None,
             parameter_roundoff: 0.0,
@@ -235,17 +238,24 @@ impl CycleProblem {
     /// Multipliers of a cycle.
     ///
     /// # Errors
-    /// [`crate::SpectrumFault`].
-    pub fn spectrum(&mut self, point: &CyclePoint) -> Result<Spectrum, crate::SpectrumFault> {
+    /// [`SpectrumFault`].
+    pub fn spectrum(&mut self, point: &CyclePoint) -> Result<Spectrum, SpectrumFault> {
         let parameters = self.parameters_at(point);
         let profile = point.profile();
         let solver = &mut self.spectra[point.degree];
         let solver = solver.get_or_insert_with(|| SpectrumSolver::new(self.spec.field.as_ref(), point.degree));
-        solver.spectrum(&profile, &parameters, &self.metric.scales, self.settings.mesh.accuracy)
+        let found = solver.spectrum(&profile, &parameters, &self.metric.scales, self.settings.mesh.accuracy);
+        self.spectrum_fault = found.as_ref().err().copied();
+        found
+    }
+
+    /// Why the multipliers asked for last could not be computed; none where they could.
+    pub fn spectrum_fault(&self) -> Option<&SpectrumFault> {
+        self.spectrum_fault.as_ref()
     }
 
     /// Multipliers of a cycle, computed once where they are asked for again.
-    pub(crate) fn known_spectrum(&mut self, point: &CyclePoint) -> Result<Spectrum, crate::SpectrumFault> {
+    pub(crate) fn known_spectrum(&mut self, point: &CyclePoint) -> Result<Spectrum, SpectrumFault> {
         if let Some((known, spectrum)) = &self.watched
             && known.unknowns == point.unknowns
             && known.mesh == point.mesh
@@ -295,8 +305,8 @@ impl CycleProblem {
     /// A point as a row of the branch table.
     ///
     /// # Errors
-    /// [`crate::SpectrumFault`] where the multipliers fail.
-    pub fn describe(&mut self, point: &CyclePoint, turns: usize, distance: f64) -> Result<Point, crate::SpectrumFault> {
+    /// [`SpectrumFault`] where the multipliers fail.
+    pub fn describe(&mut self, point: &CyclePoint, turns: usize, distance: f64) -> Result<Point, SpectrumFault> {
         let spectrum = self.known_spectrum(point)?;
         let profile = self.profile(point);
         let measures = Measures::of(&profile);

@@ -42,6 +42,9 @@ type Carried = (CyclePoint, Vec<CycleTangent>);
 const WORTH: f64 = 0.8;
 /// Share of intervals that must become superfluous before the mesh shrinks: less would swing to and fro.
 const SHRINK_BELOW: f64 = 0.6;
+/// The same for the first point of a branch, which has none before it to swing back to: what the estimates of two meshes
+/// differ by.
+const SHRINK_BELOW_AT_FIRST: f64 = 0.9;
 /// Rounds of cuts: each shortens the interval of a kink by four at most, and its error falls at least like a square.
 const PATIENCE: usize = 8;
 /// Multiple of the rounding of the error estimate up to which an error that no mesh lowers counts as roundoff: Newton's
@@ -87,7 +90,8 @@ impl CycleProblem {
         let mut best: Option<Carried> = None;
         for _ in 0..rounds {
             let now = best.as_ref().map_or(point, |(point, _)| point).clone();
-            let Some(grid) = self.better_grid(&now) else { break };
+            let shrink_below = if tangents.is_empty() { SHRINK_BELOW_AT_FIRST } else { SHRINK_BELOW };
+            let Some(grid) = self.better_grid(&now, shrink_below) else { break };
             let next = self.moved(&now, tangents, &grid).filter(|(next, _)| self.is_worth(&now, next));
             let next = next.or_else(|| self.with_patience(&now, tangents, &grid));
             let obstacle = self.obstacle(next.as_ref().map_or(&now, |(next, _)| next), grid.limited);
@@ -159,12 +163,12 @@ impl CycleProblem {
 
     /// Degree and mesh better than those of a point, if there are such.
     pub(crate) fn grid_for(&mut self, point: &CyclePoint) -> Option<(usize, Arc<[f64]>)> {
-        self.better_grid(point).map(|grid| (grid.degree, grid.mesh))
+        self.better_grid(point, SHRINK_BELOW).map(|grid| (grid.degree, grid.mesh))
     }
 
     /// A degree and a mesh that suit the point, or none where the present ones do: its error is within the accuracy, it
     /// has not many more intervals than needed, and no other degree does it with clearly less work.
-    fn better_grid(&mut self, point: &CyclePoint) -> Option<Grid> {
+    fn better_grid(&mut self, point: &CyclePoint, shrink_below: f64) -> Option<Grid> {
         let estimate = self.estimate(point);
         let mut settings = self.settings.mesh;
         settings.accuracy = self.allowance(point);
@@ -177,7 +181,7 @@ impl CycleProblem {
         let other_degree = choice.degree != point.degree;
         let above_floor = estimate.error > FLOOR_KNOWN * self.resolution.floor;
         let too_coarse = estimate.error > settings.accuracy && above_floor && !(choice.limited && now == wanted);
-        let too_fine = (wanted as f64) < SHRINK_BELOW * now as f64;
+        let too_fine = (wanted as f64) < shrink_below * now as f64;
         let settled = settings.fixed == Some(now) && estimate.imbalance < 2.0 && !other_degree;
         let reason = match () {
             () if settings.fixed.is_some() => MeshReason::Given,

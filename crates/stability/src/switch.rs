@@ -14,13 +14,13 @@ use crate::normal_form::DoublingForm;
 use crate::point::{CyclePoint, CycleTangent};
 use crate::problem::{CycleProblem, Sizes};
 
-/// The start of a doubled branch.
-pub struct Doubled {
-    /// The problem of the doubled branch, with its own metric.
+/// A branch of cycles at its birth.
+pub struct Born {
+    /// The problem of the branch, with its own metric.
     pub problem: CycleProblem,
-    /// The critical cycle told twice, on the mesh of the branch: where the branch is born.
+    /// The critical cycle (told twice at a doubling), on the mesh of the branch: where the branch is born.
     pub birth: CyclePoint,
-    /// The first cycle with a split between its turns.
+    /// The first cycle of the branch.
     pub point: CyclePoint,
     /// Unit direction from the birth to the first cycle: the way outwards.
     pub outwards: CycleTangent,
@@ -70,7 +70,7 @@ impl CycleProblem {
     ///
     /// # Errors
     /// [`SwitchFault`].
-    pub fn double(&self, located: &Located, form: Option<&DoublingForm>) -> Result<Doubled, SwitchFault> {
+    pub fn double(&self, located: &Located, form: Option<&DoublingForm>) -> Result<Born, SwitchFault> {
         let birth_profile = self.profile(&located.point).repeated(2);
         let (value, sizes) = (located.point.unknowns.parameter, Sizes::Parent(&self.metric.scales));
         let mut settings = self.settings;
@@ -95,7 +95,7 @@ impl CycleProblem {
                 // A branch on the side the normal form denies is one of the discretisation.
                 let sided = |point: &CyclePoint| offset == 0.0 || (point.unknowns.parameter - value) * offset > 0.0;
                 if let Some(point) = found.filter(sided) {
-                    return Ok(on_own_mesh(Doubled { problem, birth, point, outwards, amplitude }));
+                    return Ok(on_own_mesh(Born { problem, birth, point, outwards, amplitude }));
                 }
                 amplitude *= 0.5;
             }
@@ -206,7 +206,7 @@ fn direction(problem: &CycleProblem, birth: &CyclePoint, located: &Located) -> C
 }
 
 /// The start of the branch on a mesh and in a metric of its own; amplitudes are measured in the new metric then.
-fn on_own_mesh(mut doubled: Doubled) -> Doubled {
+fn on_own_mesh(mut doubled: Born) -> Born {
     let renewed = doubled.problem.renew(&doubled.point, &[&doubled.outwards]);
     if let Some((point, mut tangents)) = renewed {
         doubled.point = point;

@@ -5,6 +5,8 @@
 //! where a frequency goes to zero, `T = a + b / |p - p*|`. Each has three constants; three points fix
 //! them, those before judge them.
 
+use armilla_stability::CycleProblem;
+
 use crate::walk::Walked;
 
 /// A law of approach.
@@ -62,27 +64,50 @@ const GROWN_STEEPLY: f64 = 20.0;
 /// still too, but the orbit grows with the period.
 const SHAPE: f64 = 0.1;
 
-/// How well the numbers of a history are known.
+/// How well the parameters of a history are known.
 #[derive(Clone, Copy, Debug)]
 pub(crate) struct Known {
     /// Width of the asked range.
     pub width: f64,
-    /// Relative error of periods.
-    pub period: f64,
     /// Error of the parameter on a branch.
     pub parameter: f64,
 }
 
-/// Tells an approach from the history of (parameter, period), oldest first.
-pub(crate) fn approach(history: &[(f64, f64)], known: Known) -> Option<Approach> {
+/// A point of the history of a branch.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Past {
+    /// Parameter.
+    pub value: f64,
+    /// Period.
+    pub period: f64,
+    /// Estimated error of the period, absolute.
+    pub error: f64,
+}
+
+/// The history with the last cycles of a walk solved again on meshes with every interval halved; `history` ends with the
+/// points of the walk.
+pub(crate) fn resolved(problem: &mut CycleProblem, history: &[Past], points: &[Walked]) -> Vec<Past> {
+    /// Points told anew: those a limit and its error are told from, twice as far away as the last one included.
+    const TOLD: usize = 24;
+    let mut history = history.to_vec();
+    for (past, walked) in history.iter_mut().rev().zip(points.iter().rev()).take(TOLD) {
+        if let Ok((fine, error)) = problem.refine(&walked.cycle) {
+            (past.period, past.error) = (fine.unknowns.period, error);
+        }
+    }
+    history
+}
+
+/// Tells an approach from a history, oldest first.
+pub(crate) fn approach(history: &[Past], known: Known) -> Option<Approach> {
     let width = known.width;
-    let least = history.iter().map(|point| point.1).fold(f64::INFINITY, f64::min);
+    let least = history.iter().map(|point| point.period).fold(f64::INFINITY, f64::min);
     let window = &history[history.len().checked_sub(WINDOW)?..];
     let (first, last) = (window[0], window[WINDOW - 1]);
-    let growing = window.windows(2).all(|pair| pair[1].1 > pair[0].1);
-    let travelled = (last.0 - first.0).abs() / width;
-    let still = travelled < STILL && last.1 > GROWN * least;
-    let steep = (last.1 / first.1).ln() > STEEP * travelled && last.1 > GROWN_STEEPLY * least;
+    let growing = window.windows(2).all(|pair| pair[1].period > pair[0].period);
+    let travelled = (last.value - first.value).abs() / width;
+    let still = travelled < STILL && last.period > GROWN * least;
+    let steep = (last.period / first.period).ln() > STEEP * travelled && last.period > GROWN_STEEPLY * least;
     if !growing || !(still || steep) {
         return None;
     }
@@ -92,7 +117,7 @@ pub(crate) fn approach(history: &[(f64, f64)], known: Known) -> Option<Approach>
         .filter_map(|law| fit(law, &moving).map(|(limit, misfit)| (law, limit, misfit)))
         .min_by(|a, b| a.2.total_cmp(&b.2))
         .map(|(law, limit, _)| Approach { law, limit, error: error(law, limit, &moving, known) })
-        .or(Some(Approach { law: Law::Logarithm, limit: last.0, error: travelled * width + f64::EPSILON * width }))
+        .or(Some(Approach { law: Law::Logarithm, limit: last.value, error: travelled * width + f64::EPSILON * width }))
 }
 
 /// Whether the orbit stands still over the last points while its period grows.
@@ -106,16 +131,16 @@ pub(crate) fn orbit_stands(points: &[Walked]) -> bool {
 }
 
 /// The points whose parameters still differ by much more than their error.
-fn moving_part(history: &[(f64, f64)], known: Known) -> Vec<(f64, f64)> {
+fn moving_part(history: &[Past], known: Known) -> Vec<Past> {
     let resolved = (1e4 * f64::EPSILON * known.width).max(RESOLVED * known.parameter);
     let mut end = history.len();
-    while end >= 2 && (history[end - 1].0 - history[end - 2].0).abs() < resolved {
+    while end >= 2 && (history[end - 1].value - history[end - 2].value).abs() < resolved {
         end -= 1;
     }
     // Only the last stretch on which the period grows and the parameter goes one way belongs to the approach.
     let goes_on = |k: usize| {
-        let step = |k: usize| history[k + 1].0 - history[k].0;
-        history[k + 1].1 > history[k].1 && (k + 2 >= end || step(k) * step(k + 1) > 0.0)
+        let step = |k: usize| history[k + 1].value - history[k].value;
+        history[k + 1].period > history[k].period && (k + 2 >= end || step(k) * step(k + 1) > 0.0)
     };
     let mut start = end.saturating_sub(1);
     while start > 0 && goes_on(start - 1) {
@@ -125,9 +150,11 @@ fn moving_part(history: &[(f64, f64)], known: Known) -> Vec<(f64, f64)> {
 }
 
 /// Limit from the last three points, and how far the window before misses the law, relative to the growth of the period.
-fn fit(law: Law, points: &[(f64, f64)]) -> Option<(f64, f64)> {
+fn fit(law: Law, points: &[Past]) -> Option<(f64, f64)> {
     let points = &points[points.len().saturating_sub(WINDOW)..];
-    let [.., (p1, t1), (p2, t2), (p3, t3)] = *points else { return None };
+    let [.., first, second, third] = *points else { return None };
+    let (p1, p2, p3) = (first.value, second.value, third.value);
+    let (t1, t2, t3) = (first.period, second.period, third.period);
     let step = p3 - p2;
     let wanted = (t2 - t1) / (t3 - t2);
     // Distance x of the last point from the limit; the ratio of differences is monotone in it.
@@ -148,7 +175,7 @@ fn fit(law: Law, points: &[(f64, f64)]) -> Option<(f64, f64)> {
     let slope = (t3 - t2) / (shape(p3) - shape(p2));
     let misfit = points
         .iter()
-        .map(|(p, t)| (t3 + slope * (shape(*p) - shape(p3)) - t).abs() / (t3 - points[0].1))
+        .map(|past| (t3 + slope * (shape(past.value) - shape(p3)) - past.period).abs() / (t3 - points[0].period))
         .fold(0.0, f64::max);
     Some((p3 + distance * step.signum(), misfit))
 }
@@ -159,10 +186,10 @@ fn fit(law: Law, points: &[(f64, f64)]) -> Option<(f64, f64)> {
 /// What the law leaves out is smaller than its growing term by the square of the distance (by its square times a
 /// logarithm at a saddle loop), and moves the limit by as much: the limit from twice as far away is off at least three
 /// times as far, and the difference covers the error.
-fn error(law: Law, limit: f64, points: &[(f64, f64)], known: Known) -> f64 {
-    let last = points.last().map_or(limit, |last| last.0);
+fn error(law: Law, limit: f64, points: &[Past], known: Known) -> f64 {
+    let last = points.last().map_or(limit, |last| last.value);
     let distance = (limit - last).abs();
-    let farther = points.iter().rposition(|(p, _)| (limit - p).abs() >= 2.0 * distance);
+    let farther = points.iter().rposition(|past| (limit - past.value).abs() >= 2.0 * distance);
     let before = farther.and_then(|at| fit(law, &points[..=at]));
     // Without points that far away nothing tells how well the law holds.
     let by_law = before.map_or(distance, |(other, _)| (limit - other).abs());
@@ -170,12 +197,13 @@ fn error(law: Law, limit: f64, points: &[(f64, f64)], known: Known) -> f64 {
     let moved = |value: f64, period: f64| {
         let mut points = points.to_vec();
         if let [.., middle, _] = &mut points[..] {
-            *middle = (middle.0 + value, middle.1 * (1.0 + period));
+            (middle.value, middle.period) = (middle.value + value, middle.period + period);
         }
         fit(law, &points).map_or(distance, |(other, _)| (limit - other).abs())
     };
     let value = known.parameter;
-    let by_noise = moved(value, 0.0).max(moved(-value, 0.0)) + moved(0.0, known.period).max(moved(0.0, -known.period));
+    let period = points.iter().rev().take(3).map(|past| past.error).fold(0.0, f64::max);
+    let by_noise = moved(value, 0.0).max(moved(-value, 0.0)) + moved(0.0, period).max(moved(0.0, -period));
     by_law + by_noise + value + 16.0 * f64::EPSILON * known.width.max(limit.abs())
 }
 
@@ -187,9 +215,13 @@ const RESOLVED: f64 = 100.0;
 mod tests {
     use super::*;
 
-    const KNOWN: Known = Known { width: 1.0, period: 1e-12, parameter: 1e-15 };
+    const KNOWN: Known = Known { width: 1.0, parameter: 1e-15 };
 
-    fn history(law: Law, limit: f64, steps: usize) -> Vec<(f64, f64)> {
+    fn past(value: f64, period: f64) -> Past {
+        Past { value, period, error: 1e-12 * period }
+    }
+
+    fn history(law: Law, limit: f64, steps: usize) -> Vec<Past> {
         // Strides of about equal growth of the period, as a follower makes them.
         (0..steps)
             .map(|k| {
@@ -198,7 +230,7 @@ mod tests {
                     Law::InverseRoot => 0.1 / (1.0 + 0.7 * k as f64).powi(2),
                     Law::Inverse => 0.1 / (1.0 + 0.7 * k as f64),
                 };
-                (limit - distance, 3.0 + 1.5 * law.shape(distance))
+                past(limit - distance, 3.0 + 1.5 * law.shape(distance))
             })
             .collect()
     }
@@ -225,7 +257,7 @@ mod tests {
     /// A relaxation oscillation's period grows like its parameter: no blow-up.
     #[test]
     fn proportional_growth_is_no_blow_up() {
-        let history: Vec<(f64, f64)> = (1..200).map(|k| (5.0 * k as f64, 8.0 * k as f64)).collect();
+        let history: Vec<Past> = (1..200).map(|k| past(5.0 * k as f64, 8.0 * k as f64)).collect();
         assert_eq!(approach(&history, Known { width: 1000.0, ..KNOWN }), None);
     }
 }

@@ -5,7 +5,7 @@ use std::sync::atomic::AtomicBool;
 
 use armilla_follow::{Orientation, Problem};
 use armilla_record::{BRANCH_FORMAT, Branch, End, EndReason, Event, EventKind, Point, Quantity, StoredProfile};
-use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, Doubled, DoublingForm, Located, Measures};
+use armilla_stability::{Born, CyclePoint, CycleProblem, CycleTangent, DoublingForm, Located, Measures};
 
 use crate::ahead::Ahead;
 use crate::ends::{end, short};
@@ -35,18 +35,34 @@ pub(crate) struct Lineage {
     pub line: Vec<Estimate>,
 }
 
-/// A doubling at which a branch is born.
+/// An event at which a branch is born.
 pub(crate) struct Switchable {
     /// Name of the event.
     pub event: String,
-    pub located: Located,
-    pub form: Option<DoublingForm>,
+    pub way: Way,
 }
 
-/// A finished branch with the doublings that can be switched at.
+/// How the new branch is entered.
+pub(crate) enum Way {
+    /// By a period doubling.
+    Doubling { located: Box<Located>, form: Option<DoublingForm> },
+}
+
+impl Way {
+    /// The threshold at which the branch is born.
+    pub(crate) fn threshold(&self) -> Estimate {
+        match self {
+            Self::Doubling { located, .. } => {
+                Estimate { value: located.point.unknowns.parameter, error: located.error }
+            }
+        }
+    }
+}
+
+/// A finished branch with the events that can be switched at.
 pub(crate) struct Finished {
     pub branch: Branch,
-    pub doublings: Vec<Switchable>,
+    pub births: Vec<Switchable>,
     pub problem: CycleProblem,
 }
 
@@ -54,8 +70,8 @@ pub(crate) struct Finished {
 pub(crate) enum Entry {
     /// A cycle; the branch goes both ways from it.
     Cycle(Box<CycleProblem>, Box<CyclePoint>),
-    /// A doubling; the branch goes outwards from its birth.
-    Birth(Box<Doubled>),
+    /// A birth on another branch; the branch goes outwards from it.
+    Birth(Box<Born>),
 }
 
 /// What every branch of a run shares.
@@ -77,7 +93,7 @@ struct Collector<'r, 'a> {
     lineage: &'r Lineage,
     numbers: HashMap<EventKind, usize>,
     events: Vec<Event>,
-    doublings: Vec<Switchable>,
+    births: Vec<Switchable>,
     points: usize,
     fault: Option<StudyError>,
 }
@@ -101,8 +117,8 @@ impl WalkSink for Collector<'_, '_> {
     fn event(&mut self, problem: &CycleProblem, found: &Found) {
         let event = event_record(problem, found, self.name(found.kind), self.lineage.turns);
         if let (EventKind::Doubling, Some(located)) = (found.kind, &found.located) {
-            let (event, located, form) = (event.name.clone(), located.clone(), found.form);
-            self.doublings.push(Switchable { event, located, form });
+            let way = Way::Doubling { located: Box::new(located.clone()), form: found.form };
+            self.births.push(Switchable { event: event.name.clone(), way });
         }
         if event.kind.is_threshold() {
             self.run.observer.notice(Progress::Event { name: &event.name, value: event.value });
@@ -196,8 +212,8 @@ fn both_ways(
     finish(collector, problem, walked, (backward.end, forward.end))
 }
 
-fn outwards(run: &mut Run<'_>, lineage: &Lineage, doubled: Doubled) -> Result<Finished, StudyError> {
-    let Doubled { mut problem, birth, point, outwards, amplitude } = doubled;
+fn outwards(run: &mut Run<'_>, lineage: &Lineage, doubled: Born) -> Result<Finished, StudyError> {
+    let Born { mut problem, birth, point, outwards, amplitude } = doubled;
     let no_cycle = |reason: String| StudyError::NoCycle { reason };
     let mut first = problem.describe(&birth, lineage.turns, 0.0).map_err(|fault| no_cycle(fault.to_string()))?;
     let second = problem.describe(&point, lineage.turns, amplitude).map_err(|fault| no_cycle(fault.to_string()))?;
@@ -257,15 +273,7 @@ fn walk_shifted(
 }
 
 fn collector<'r, 'a>(run: &'r mut Run<'a>, lineage: &'r Lineage) -> Collector<'r, 'a> {
-    Collector {
-        run,
-        lineage,
-        numbers: HashMap::new(),
-        events: Vec::new(),
-        doublings: Vec::new(),
-        points: 0,
-        fault: None,
-    }
+    Collector { run, lineage, numbers: HashMap::new(), events: Vec::new(), births: Vec::new(), points: 0, fault: None }
 }
 
 fn finish(
@@ -274,7 +282,7 @@ fn finish(
     walked: Vec<Walked>,
     ends: (End, End),
 ) -> Result<Finished, StudyError> {
-    let Collector { run, lineage, mut events, doublings, fault, .. } = collector;
+    let Collector { run, lineage, mut events, births, fault, .. } = collector;
     if let Some(fault) = fault {
         return Err(fault);
     }
@@ -290,7 +298,7 @@ fn finish(
     let points: Vec<Point> = walked.into_iter().map(|walked| walked.point).collect();
     run.observer.notice(Progress::Finished { name: &lineage.name, points: points.len() });
     let branch = branch_record(run.study, lineage, Parts { points, events, ends, profiles });
-    Ok(Finished { branch, doublings, problem })
+    Ok(Finished { branch, births, problem })
 }
 
 struct Parts {

@@ -112,19 +112,29 @@ fn worst_profile(points: &[Walked], last: f64) -> f64 {
     earlier.iter().map(|walked| walked.point.profile_error).fold(last, f64::max)
 }
 
-/// A limit with its error, in the digits that the error leaves.
+/// A limit with its error, in the digits that the error leaves; the error is rounded up, with what the digits leave out.
 fn known(plan: &WalkPlan<'_>, (value, error): (f64, f64)) -> String {
     let shown = if value.abs() < error {
-        "0".to_string()
+        0.0
     } else if error > 0.0 {
         let digits = (value.abs().log10().floor() - error.log10().floor()).clamp(0.0, 14.0) as usize + 1;
-        format!("{value:.digits$e}")
-            .parse::<f64>()
-            .map_or_else(|_| short(plan.study, value), |value| format!("{value}"))
+        format!("{value:.digits$e}").parse::<f64>().unwrap_or(value)
     } else {
-        short(plan.study, value)
+        return short(plan.study, value);
     };
-    format!("{shown} ± {error:.0e}")
+    format!("{shown} ± {}", rounded_up(error + (shown - value).abs()))
+}
+
+/// A positive number in one digit, rounded up.
+fn rounded_up(number: f64) -> String {
+    let near = format!("{number:.0e}");
+    if near.parse::<f64>().is_ok_and(|near| near >= number) {
+        return near;
+    }
+    // The next digit up; 9 turns into 1 of the next decade.
+    let decade = number.log10().floor();
+    let digit = (number / 10f64.powf(decade)).floor() + 1.0;
+    if digit > 9.0 { format!("1e{}", decade + 1.0) } else { format!("{digit}e{decade}") }
 }
 
 /// A number for a sentence: ten digits, and 0 where it is 0 to the roundoff of the asked range.
@@ -245,7 +255,12 @@ fn fault_words(study: &Study, fault: &Fault) -> String {
 /// Motion, relative to the largest along the walk, below which a walk that is stuck has shrunk to an equilibrium.
 const NEARLY_AT_REST: f64 = 0.02;
 
-pub(crate) fn end_of_follower(follower: &Follower<'_, CycleProblem>, plan: &WalkPlan<'_>, motions: &[Motion]) -> End {
+pub(crate) fn end_of_follower(
+    follower: &mut Follower<'_, CycleProblem>,
+    plan: &WalkPlan<'_>,
+    motions: &[Motion],
+) -> End {
+    let no_multipliers = follower.parts().0.spectrum_fault().map(ToString::to_string);
     let value = follower.current().point.unknowns.parameter;
     let name = with_unit_name(plan);
     let here = short(plan.study, value);
@@ -268,11 +283,28 @@ pub(crate) fn end_of_follower(follower: &Follower<'_, CycleProblem>, plan: &Walk
         Some(FollowEnd::Outside(fault)) => {
             end(EndReason::NotFinite, value, format!("{} beyond {name} = {here}", fault_words(plan.study, fault)))
         }
-        Some(FollowEnd::Stuck) => end(
-            EndReason::Stuck,
-            value,
-            format!("resolution limit: the corrector fails at the shortest stride at {name} = {here}"),
-        ),
-        None => end(EndReason::Stuck, value, format!("the multipliers could not be computed at {name} = {here}")),
+        Some(FollowEnd::Stuck) | None => {
+            let words = match no_multipliers {
+                Some(why) => format!("the multipliers could not be computed beyond {name} = {here}: {why}"),
+                None => format!("resolution limit: the corrector fails at the shortest stride at {name} = {here}"),
+            };
+            end(EndReason::Stuck, value, words)
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::rounded_up;
+
+    #[test]
+    fn errors_are_rounded_up() {
+        for (number, text) in
+            [(1.2e-9, "2e-9"), (9.4e-3, "1e-2"), (3e-7, "3e-7"), (0.96, "1e0"), (5.5, "6e0"), (1e-12, "1e-12")]
+        {
+            let shown = rounded_up(number);
+            assert_eq!(shown, text);
+            assert!(shown.parse::<f64>().expect("a number") >= number);
+        }
     }
 }

@@ -6,12 +6,11 @@ use std::sync::atomic::{AtomicBool, Ordering};
 
 use armilla_figure::Figure;
 use armilla_record::{Branch, CascadeRow, EndReason, EventKind, Reached, RecordError, Results, Threshold};
-use armilla_stability::{Doubled, Located};
+use armilla_stability::Born;
 
-use crate::branch::{Entry, Finished, Lineage, Run, Switchable, follow_branch};
+use crate::branch::{Entry, Finished, Lineage, Run, Switchable, Way, follow_branch};
 use crate::cascade::cascade;
 use crate::error::StudyError;
-use crate::prediction::Estimate;
 use crate::progress::Observer;
 use crate::start::first_cycle;
 use crate::step_events::LOCATED_BY_BRACKET;
@@ -57,7 +56,7 @@ impl Waiting {
     fn birth_value(&self) -> f64 {
         match &self.entry {
             Entry::Cycle(_, point) => point.unknowns.parameter,
-            Entry::Birth(doubled) => doubled.birth.unknowns.parameter,
+            Entry::Birth(born) => born.birth.unknowns.parameter,
         }
     }
 }
@@ -154,7 +153,7 @@ fn drop_other_end(study: &Study, lineage: &Lineage, branch: &mut Branch, queue: 
     }
 }
 
-/// The branches born at the doublings of a finished one.
+/// The branches born at the events of a finished one.
 fn children(
     study: &Study,
     lineage: &Lineage,
@@ -163,10 +162,10 @@ fn children(
     shortfalls: &mut Vec<String>,
 ) -> Vec<Waiting> {
     let mut children = Vec::new();
-    if lineage.doublings >= study.file.pursue.doublings {
-        return children;
-    }
-    for Switchable { event, located, form } in &finished.doublings {
+    for Switchable { event, way } in &finished.births {
+        if matches!(way, Way::Doubling { .. }) && lineage.doublings >= study.file.pursue.doublings {
+            continue;
+        }
         if children.len() >= room {
             shortfalls.push(format!(
                 "the branch born at {event} was not followed: `pursue` allows {} branches",
@@ -174,34 +173,37 @@ fn children(
             ));
             continue;
         }
-        match finished.problem.double(located, form.as_ref()) {
+        let born = match way {
+            Way::Doubling { located, form } => finished.problem.double(located, form.as_ref()),
+        };
+        match born {
             Err(fault) => shortfalls.push(format!("at {event} {fault}")),
             // Born on the edge of the range and leading out of it: nothing to follow.
-            Ok(doubled) if is_outside(study, &doubled) => {}
-            Ok(doubled) => children.push(Waiting {
-                lineage: child_lineage(lineage, event, located),
-                entry: Entry::Birth(Box::new(doubled)),
-            }),
+            Ok(born) if is_outside(study, &born) => {}
+            Ok(born) => children
+                .push(Waiting { lineage: child_lineage(lineage, event, way), entry: Entry::Birth(Box::new(born)) }),
         }
     }
     children
 }
 
 /// Whether a branch begins outside the asked range though it is born on its edge.
-fn is_outside(study: &Study, doubled: &Doubled) -> bool {
-    let value = doubled.point.unknowns.parameter;
+fn is_outside(study: &Study, born: &Born) -> bool {
+    let value = born.point.unknowns.parameter;
     value < study.range.0 || value > study.range.1
 }
 
-fn child_lineage(parent: &Lineage, event: &str, located: &Located) -> Lineage {
-    let threshold = Estimate { value: located.point.unknowns.parameter, error: located.error };
+fn child_lineage(parent: &Lineage, event: &str, way: &Way) -> Lineage {
     // `a/doubling1` gives birth to `a.doubling1`.
-    Lineage {
-        name: event.replace('/', "."),
-        born_at: Some(event.to_string()),
-        doublings: parent.doublings + 1,
-        turns: 2 * parent.turns,
-        line: parent.line.iter().copied().chain([threshold]).collect(),
+    let (name, born_at) = (event.replace('/', "."), Some(event.to_string()));
+    match way {
+        Way::Doubling { .. } => Lineage {
+            name,
+            born_at,
+            doublings: parent.doublings + 1,
+            turns: 2 * parent.turns,
+            line: parent.line.iter().copied().chain([way.threshold()]).collect(),
+        },
     }
 }
 

@@ -7,13 +7,13 @@ use armilla_record::{End, EndReason, EventKind, Point};
 use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_FOLD};
 
 use crate::ahead::Ahead;
-use crate::approach::{Known, approach, orbit_stands};
+use crate::approach::{Approach, Known, Past, approach, orbit_stands, resolved};
 use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short};
 use crate::guards::{falls_on_shorter, leaps};
 use crate::ledger::{Change, is_off_folds, is_sure};
 use crate::near_miss::near_miss_by_mean;
 use crate::rest::{Motion, Rest, push};
-use crate::step_events::{Found, SUPERCONVERGENCE, events_of_step, events_on_edge, landing_event};
+use crate::step_events::{Found, PERIOD_OF_INTERVAL, events_of_step, events_on_edge, landing_event};
 use crate::study::Study;
 
 pub(crate) type CycleStation = Station<CyclePoint, CycleTangent>;
@@ -83,7 +83,7 @@ struct Seen {
     /// The motion about the mean.
     motions: Vec<Motion>,
     /// Parameter and period.
-    periods: Vec<(f64, f64)>,
+    periods: Vec<Past>,
 }
 
 /// A walk under way.
@@ -121,7 +121,7 @@ impl Walker<'_, '_> {
                 }
             }
         }
-        self.walk.end = end_of_follower(&self.follower, self.plan, &self.seen.motions);
+        self.walk.end = end_of_follower(&mut self.follower, self.plan, &self.seen.motions);
         self.walk
     }
 
@@ -288,12 +288,7 @@ impl Walker<'_, '_> {
             return Taken::Ended(end(EndReason::Budget, after.point.unknowns.parameter, words));
         }
         self.seen.periods.push(period(&self.follower));
-        let width = self.plan.study.range.1 - self.plan.study.range.0;
-        let share = SUPERCONVERGENCE * self.walk.points.last().map_or(0.0, |last| last.point.profile_error);
-        let known =
-            Known { width, period: share, parameter: share * width + self.follower.parts().0.parameter_roundoff() };
-        let grows = self.follower.end().is_none() && orbit_stands(&self.walk.points);
-        match approach(&self.seen.periods, known).filter(|_| grows) {
+        match self.approach() {
             Some(approach) => {
                 let (event, ended) = blown_up(&after, self.plan, approach);
                 let (problem, _, _) = self.follower.parts();
@@ -303,6 +298,19 @@ impl Walker<'_, '_> {
             }
             None => Taken::On,
         }
+    }
+
+    /// How the period grows without bound, if it does.
+    fn approach(&mut self) -> Option<Approach> {
+        if self.follower.end().is_some() || !orbit_stands(&self.walk.points) {
+            return None;
+        }
+        let width = self.plan.study.range.1 - self.plan.study.range.0;
+        let (problem, _, _) = self.follower.parts();
+        let known = Known { width, parameter: problem.parameter_roundoff() };
+        let seen = approach(&self.seen.periods, known)?;
+        // Asked once on a walk, so that the better periods may cost what they cost.
+        Some(approach(&resolved(problem, &self.seen.periods, &self.walk.points), known).unwrap_or(seen))
     }
 }
 
@@ -321,7 +329,7 @@ fn motion(follower: &mut Follower<'_, CycleProblem>) -> Motion {
     Motion::of(problem, &current.point)
 }
 
-fn period(follower: &Follower<'_, CycleProblem>) -> (f64, f64) {
+fn period(follower: &Follower<'_, CycleProblem>) -> Past {
     let unknowns = &follower.current().point.unknowns;
-    (unknowns.parameter, unknowns.period)
+    Past { value: unknowns.parameter, period: unknowns.period, error: PERIOD_OF_INTERVAL * unknowns.period }
 }

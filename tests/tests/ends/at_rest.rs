@@ -37,7 +37,7 @@ fn birth_of_circles() {
         eprintln!("{what}: {value:?} off {off:.1e}, error {error:.1e}");
         ratios.push(error / off);
         let (said, within) = value_with_error(&a.ends.0.words);
-        assert!((said - mu0).abs() <= 1.5 * within, "{what}: {}", a.ends.0.words);
+        assert!((said - mu0).abs() <= within, "{what}: {}", a.ends.0.words);
     }
     check_ratios("births of circles", ratios, 1000.0);
 }

@@ -41,10 +41,9 @@ fn towards_a_saddle_loop() {
         assert!(error < 1e-8, "{what}: {error:e}");
         ratios.push(error / found.value.abs().max(f64::EPSILON * (to - from)));
         let (said, within) = value_with_error(&a.ends.1.words);
-        assert!(said.abs() <= 1.5 * within, "{}", a.ends.1.words);
+        assert!(said.abs() <= within, "{}", a.ends.1.words);
     }
-    // Three of four within 3000: the limit inherits the cover of the profiles it is told from.
-    check_ratios("saddle loop", ratios, 10_000.0);
+    check_ratios("saddle loop", ratios, 1000.0);
 }
 
 #[test]
@@ -78,7 +77,7 @@ fn towards_a_saddle_node_on_a_loop() {
         eprintln!("{what}: off {off:.1e}, error {error:.1e}");
         ratios.push(error / off);
         let (said, within) = value_with_error(&a.ends.0.words);
-        assert!((said - p0).abs() <= 1.5 * within, "{}", a.ends.0.words);
+        assert!((said - p0).abs() <= within, "{}", a.ends.0.words);
     }
     check_ratios("saddle-node on a loop", ratios, 1000.0);
 }
