@@ -36,6 +36,7 @@
 
 mod defect;
 mod direction;
+mod forced;
 mod gauss;
 mod linear_mesh;
 mod mesh;
@@ -46,6 +47,7 @@ mod tables;
 mod variational;
 
 pub use defect::{Collocated, Defects};
+pub use forced::Forced;
 pub use gauss::{gauss, radau};
 pub use linear_mesh::TooStiff;
 pub use mesh::{

@@ -25,6 +25,11 @@ pub trait DualRates: Send + Sync + 'static {
         false
     }
 
+    /// Period of the forcing of rates that use the time.
+    fn forcing_period<D: DualNum<Primitive = f64> + Copy>(&self, _p: &[D]) -> Option<D> {
+        None
+    }
+
     /// Entries of the Jacobian that can differ from zero; none stands for all.
     fn pattern(&self) -> Option<SparsityPattern> {
         None
@@ -71,6 +76,13 @@ impl<R: DualRates> VectorField for CodedField<R> {
 
     fn is_forced(&self) -> bool {
         self.rates.is_forced()
+    }
+
+    fn forcing_period(&self, parameters: &[f64], along: usize) -> Option<[f64; 2]> {
+        let slope = |index: usize| if index == along { 1.0 } else { 0.0 };
+        let numbers = parameters.iter().enumerate().map(|(index, value)| Dual64::new(*value, slope(index)));
+        let period = self.rates.forcing_period(&numbers.collect::<Vec<_>>()).filter(|_| self.is_forced())?;
+        Some([period.re, period.eps])
     }
 
     fn pattern(&self) -> &SparsityPattern {

@@ -42,6 +42,7 @@ mod agreement;
 mod align;
 mod copies;
 mod dip;
+mod forced;
 mod locate;
 mod measure;
 mod normal_form;

@@ -15,7 +15,8 @@ use armilla_record::{MeshReason, Point, Profile, Reached};
 use crate::measure::Measures;
 use crate::point::{CyclePoint, CycleTangent};
 use crate::resolution::Resolution;
-use crate::scale::{STILL, STILL_AT_FIRST, first_metric, natural_sizes};
+use crate::forced::forcing_periods;
+use crate::scale::{STILL, STILL_AT_FIRST, first_metric, metric_under_forcing, natural_sizes};
 use crate::spectrum::{Spectrum, SpectrumFault, SpectrumSolver};
 
 /// Index of the fold function in the watch list: the parameter's component of the tangent.
@@ -95,6 +96,8 @@ pub enum StartFault {
     Newton(NewtonFailure),
     /// The profile has no extent: it is an equilibrium.
     NoExtent,
+    /// The rates use the time, and the model states no period of its forcing.
+    NoForcingPeriod,
 }
 
 impl std::fmt::Display for StartFault {
@@ -102,6 +105,7 @@ impl std::fmt::Display for StartFault {
         match self {
             Self::Newton(failure) => failure.fmt(f),
             Self::NoExtent => write!(f, "the start does not move: it is an equilibrium, not a cycle"),
+            Self::NoForcingPeriod => write!(f, "the rates use the time, but the model states no period of its forcing"),
         }
     }
 }
@@ -185,14 +189,20 @@ impl CycleProblem {
                 (natural_sizes(spec.field.as_ref(), &parameters, profile, (&spec.typical, still)), still)
             }
         };
-        let metric = first_metric(profile, (&sizes, still), spec.parameter_scale).ok_or(StartFault::NoExtent)?;
+        let forcing = forcing_periods(spec.field.as_ref(), (&parameters, spec.free), profile.period)?;
+        let metric = if forcing.is_some() {
+            metric_under_forcing(profile, (&sizes, still), spec.parameter_scale)
+        } else {
+            first_metric(profile, (&sizes, still), spec.parameter_scale).ok_or(StartFault::NoExtent)?
+        };
         let system_spec = SystemSpec {
             field: spec.field.clone(),
             parameters: spec.parameters.clone(),
             free: spec.free,
             metric: metric.clone(),
         };
-        let system = System::new(system_spec, profile.degree, &profile.mesh);
+        let mut system = System::new(system_spec, profile.degree, &profile.mesh);
+        system.set_forcing(forcing.unwrap_or(0));
         let defects = Defects::new(spec.field.as_ref());
         Ok(Self {
             spec,
@@ -351,6 +361,7 @@ impl CycleProblem {
         let report = self.newton(point, &reference, &mut closing)?;
         // The linear row meets the value up to rounding; the user asked for the value.
         point.unknowns.parameter = parameter;
+        self.system.keep_time(&mut point.unknowns);
         Ok(report)
     }
 
@@ -496,7 +507,8 @@ impl Problem for CycleProblem {
         self.system.parameter_column(bordered.column_mut(1));
         self.system.phase_row(&point.unknowns.nodes, bordered.row_mut(0));
         bordered.row_mut(1).copy_from_slice(&row.nodes);
-        bordered.corner_mut().copy_from_slice(&[0.0, 0.0, row.period, row.parameter]);
+        let [by_period, by_parameter] = self.system.phase_corner();
+        bordered.corner_mut().copy_from_slice(&[by_period, by_parameter, row.period, row.parameter]);
         bordered.prepare(self.system.cyclic(), 1.0).map_err(|_| Failure::NotConverged)?;
         let mut scalars = [0.0; 2];
         let right = Right { core: &[], closing: &[], border: &[0.0, 1.0] };

@@ -33,7 +33,8 @@ pub(crate) fn natural_sizes(
         node.iter().enumerate().for_each(|(a, value)| states[a * points + point] = *value);
     }
     let (mut rates, mut jacobian) = (vec![0.0; n * points], vec![0.0; field.pattern().nnz() * points]);
-    let batch = Batch { len: points, time: &[], states: &states, parameters };
+    let time: Vec<f64> = profile.node_times().iter().map(|share| share * profile.period).collect();
+    let batch = Batch { len: points, time: &time, states: &states, parameters };
     let out = Linearisation { rates: &mut rates, jacobian: &mut jacobian, columns: &mut [] };
     field.evaluator(&[]).linearise(batch, out);
     let mut sizes = vec![0.0; n];
@@ -58,6 +59,21 @@ pub(crate) fn natural_sizes(
 
 fn ranges(profile: &Profile) -> Vec<f64> {
     profile.extremes().into_iter().map(|(low, high)| high - low).collect()
+}
+
+/// The metric of a branch under a forcing, whose cycles need not move: a state that neither moves nor has any size is
+/// measured in units, as in an equation that is linear and has no size of its own.
+pub(crate) fn metric_under_forcing(
+    profile: &Profile,
+    (sizes, still): (&[f64], f64),
+    parameter_scale: f64,
+) -> Metric {
+    let known: Vec<f64> = sizes.iter().map(|size| if *size > 0.0 { *size } else { 1.0 }).collect();
+    first_metric(profile, (&known, still), parameter_scale).unwrap_or_else(|| Metric {
+        scales: known,
+        period_scale: profile.period,
+        parameter_scale,
+    })
 }
 
 /// The metric of a branch: ranges of `profile`, or `sizes` for states that do not move. None where nothing moves.

@@ -265,7 +265,9 @@ pub(crate) fn end_of_follower(
     let name = with_unit_name(plan);
     let here = short(plan.study, value);
     let largest = motions.iter().map(|m| m.size).fold(0.0, f64::max);
-    let shrunk = motions.last().is_some_and(|m| m.size < NEARLY_AT_REST * largest) && motions.len() > 2;
+    // A motion under a forcing has no state of rest to shrink to.
+    let forced = follower.parts().0.is_forced();
+    let shrunk = !forced && motions.last().is_some_and(|m| m.size < NEARLY_AT_REST * largest) && motions.len() > 2;
     match follower.end() {
         Some(FollowEnd::Edge(edge)) => {
             end(EndReason::Edge, *edge, format!("reaches the edge of the asked range, {name} = {edge}"))

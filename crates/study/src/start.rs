@@ -43,16 +43,11 @@ pub(crate) fn first_cycle(study: &Study, abort: &AtomicBool, observer: &mut dyn 
             });
         }
     };
-    if study.model.forcing().is_some() {
-        return Err(StudyError::NotInThisVersion {
-            what: "following the cycles of a forced model",
-            instead: "`armilla settle` shows what the motion settles on; following needs rates without the time `t`",
-        });
-    }
     check_rates(study)?;
     observer.notice(Progress::Settling);
-    let options = SettleOptions { transient, abort, ..SettleOptions::default() };
     let field = study.model.field();
+    let forcing_period = field.forcing_period(&study.start_parameters, study.free).map(|[period, _]| period);
+    let options = SettleOptions { transient, forcing_period, abort, ..SettleOptions::default() };
     let settled = settle(field.as_ref(), &study.start_parameters, &study.model.begin(), &options)
         .map_err(|error| StudyError::Settling { words: settling_words(&error, &study.model), error })?;
     let notes: Vec<String> = settled.pushes.iter().map(|push| push_note(study, push)).collect();
