@@ -254,8 +254,11 @@ fn located_event(
         CriticalKind::Doubling => match problem.doubling_form(&located) {
             Some(found) => {
                 form = Some(found);
-                let note = format!("normal form coefficient c = {:.6e}", found.c);
-                (EventKind::Doubling, std::f64::consts::PI, Some(criticality(found.c)), Some(note))
+                let note = match found.c {
+                    0.0 => NO_SIDE.to_string(),
+                    c => format!("normal form coefficient c = {c:.6e}"),
+                };
+                (EventKind::Doubling, std::f64::consts::PI, criticality(found.c), Some(note))
             }
             None => (EventKind::Doubling, std::f64::consts::PI, None, None),
         },
@@ -274,8 +277,12 @@ fn located_event(
     }
 }
 
-fn criticality(c: f64) -> Criticality {
-    if c < 0.0 { Criticality::Supercritical } else { Criticality::Subcritical }
+/// Note of a doubling whose normal form has no cubic term.
+const NO_SIDE: &str = "normal form coefficient c = 0: as in a linear equation, doubled motions of every size exist at this \
+                       very value; not followed";
+
+fn criticality(c: f64) -> Option<Criticality> {
+    (c != 0.0).then_some(if c < 0.0 { Criticality::Supercritical } else { Criticality::Subcritical })
 }
 
 /// A change of the unstable count that is neither fold nor doubling: narrowed by bisection and told as what crosses.
