@@ -34,6 +34,7 @@
 //! assert!(before.error > 1e-9 && after.error < 1e-9, "{} {}", before.error, after.error);
 //! ```
 
+mod damped;
 mod defect;
 mod direction;
 mod forced;
@@ -46,6 +47,7 @@ mod system;
 mod tables;
 mod variational;
 
+pub use damped::approach;
 pub use defect::{Collocated, Defects};
 pub use forced::Forced;
 pub use gauss::{gauss, radau};

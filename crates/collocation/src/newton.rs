@@ -121,9 +121,9 @@ pub struct Workspace {
     core: Vec<f64>,
     /// What everything here is sized for.
     shape: Option<Shape>,
-    step: Option<Row>,
+    pub(crate) step: Option<Row>,
     row: Option<Row>,
-    phase: Vec<f64>,
+    pub(crate) phase: Vec<f64>,
     gap: Vec<f64>,
 }
 
@@ -299,12 +299,12 @@ impl Workspace {
     }
 
     /// Scaled size of the last step.
-    fn size(&self, system: &System) -> f64 {
+    pub(crate) fn size(&self, system: &System) -> f64 {
         let step = self.step.as_ref().expect("fitted before");
         system.spec().metric.inner(system.tables(), system.mesh(), step, step).sqrt()
     }
 
-    fn fit(&mut self, system: &System) {
+    pub(crate) fn fit(&mut self, system: &System) {
         let shape = system.shape();
         let len = shape.nodes_len();
         if self.shape == Some(shape) {
@@ -320,7 +320,7 @@ impl Workspace {
     }
 
     /// Linearises at the iterate and leaves the Newton correction in `self.step`; returns the closing's residual.
-    fn step(
+    pub(crate) fn step(
         &mut self,
         system: &mut System,
         at: &Iterate,

@@ -49,6 +49,7 @@ mod normal_form;
 mod point;
 mod problem;
 mod resolution;
+mod rough;
 mod scale;
 mod spectrum;
 mod switch;

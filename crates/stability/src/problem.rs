@@ -162,6 +162,17 @@ impl CycleProblem {
         let mut problem = Self::with_metric(spec, settings, Sizes::Natural(STILL_AT_FIRST), &guess, parameter)?;
         let mut point = CyclePoint::from_profile(&guess, parameter);
         problem.correct_at(&mut point, parameter).map_err(StartFault::Newton)?;
+        problem.with_own_sizes(point, parameter)
+    }
+
+    /// A first cycle with the sizes of states read from itself, on a mesh chosen for the accuracy.
+    pub(crate) fn with_own_sizes(
+        self,
+        mut point: CyclePoint,
+        parameter: f64,
+    ) -> Result<(Self, CyclePoint), StartFault> {
+        let settings = self.settings;
+        let mut problem = self;
         // The given profile carries the errors of its origin, the corrected one those of its mesh, the last one next to
         // none: sizes are read anew each time, and what is no larger than the error is no motion.
         for _ in 0..READINGS {
@@ -570,7 +581,7 @@ impl Problem for CycleProblem {
 }
 
 /// The profile itself where its degree is allowed, or the same cycle with the nearest allowed one.
-fn within_degrees(profile: &Profile, (low, high): (usize, usize)) -> Profile {
+pub(crate) fn within_degrees(profile: &Profile, (low, high): (usize, usize)) -> Profile {
     let degree = profile.degree.clamp(low, high);
     if degree == profile.degree {
         return profile.clone();
