@@ -19,7 +19,7 @@ const AWAY: f64 = 0.25;
 /// of the range of a sine gives 0.02.
 const RETURNS: f64 = 0.15;
 /// Share of the samples that must have a partner a lag later.
-const OVERLAP: f64 = 0.15;
+const OVERLAP: f64 = 0.01;
 /// Lags refined.
 const LAGS: usize = 6;
 /// A longer period must explain the samples better than chance does by so many standard deviations of the variance of noise,
@@ -27,6 +27,8 @@ const LAGS: usize = 6;
 const SURE: f64 = 3.0;
 /// Misfit, as a share of the variance, that is none: 0.3 % of the standard deviations.
 const ALIKE: f64 = 1e-5;
+/// Ratio below which two periods are two guesses of one.
+const MULTIPLE: f64 = 1.4;
 /// Golden sections of a stretch of periods in a round: to a thousandth of it.
 const SECTIONS: usize = 15;
 /// Share of a period by which all periods together may be off before the fold is refined around a given period.
@@ -53,8 +55,11 @@ pub(crate) fn best_of(samples: &Samples, n: usize, candidates: &[f64]) -> Option
         candidates.iter().map(|period| (*period, fold(samples, n, *period).smooth(1.0).score)).collect();
     let least = scored.iter().map(|(_, score)| *score).fold(f64::INFINITY, f64::min);
     let chance = 1.0 + SURE * (2.0 / samples.states.len() as f64).sqrt();
-    let good = scored.into_iter().filter(|(_, score)| *score <= chance * least + ALIKE);
-    good.map(|(period, _)| period).min_by(f64::total_cmp)
+    let good = || scored.iter().filter(|(_, score)| *score <= chance * least + ALIKE);
+    let shortest = good().map(|(period, _)| *period).min_by(f64::total_cmp)?;
+    // Guesses of one period, as from a single turn with noise, are no multiples of each other: the best of them.
+    let alike = good().filter(|(period, _)| *period < MULTIPLE * shortest);
+    alike.min_by(|a, b| a.1.total_cmp(&b.1)).map(|(period, _)| *period)
 }
 
 /// A given period, made better where the samples tell more than one of it.

@@ -57,7 +57,7 @@ pub(crate) fn first_from_samples(
         match corrected(study, &orbit, turns, finer) {
             Ok((problem, point, turns)) => {
                 let shift = if problem.is_forced() { 0.0 } else { SHIFT };
-                let distance = measured.distance(&problem.profile(&point), &folded, shift);
+                let distance = measured.distance(&problem.profile(&point), (&folded, period), shift);
                 if distance <= ELSEWHERE {
                     let told = Told { period, estimated: given.is_none() && periods.is_none(), distance };
                     let notes = table.notes(&told, &measured, &smooth);
@@ -79,7 +79,7 @@ pub(crate) fn first_from_samples(
     smooth.at(0.0, &mut state);
     if let Ok(mut first) = settled(study, &state, None, (abort, &mut *observer)) {
         let shift = if first.problem.is_forced() { 0.0 } else { 0.5 };
-        let distance = measured.distance(&first.problem.profile(&first.point), &folded, shift);
+        let distance = measured.distance(&first.problem.profile(&first.point), (&folded, period), shift);
         if distance <= ELSEWHERE {
             let told = Told { period, estimated: given.is_none() && periods.is_none(), distance };
             first.notes = table.notes(&told, &measured, &smooth);
@@ -245,16 +245,18 @@ impl Measured {
     }
 
     /// Distance of a cycle from the samples, root mean square, in ranges, in the nearest phase within `shift`.
-    fn distance(&self, cycle: &Profile, folded: &Folded, shift: f64) -> f64 {
+    /// The samples may tell the cycle several times.
+    fn distance(&self, cycle: &Profile, (folded, period): (&Folded, f64), shift: f64) -> f64 {
         /// Shifts looked at on either side, and rounds of them, each in the middle of the round before.
         const SHIFTS: i32 = 50;
         const ROUNDS: i32 = 3;
+        let copies = (period / cycle.period).round().max(1.0);
         let mut evaluator = cycle.evaluator();
         let mut state = vec![0.0; folded.n];
         let mut apart = |shift: f64| {
             let (mut sum, mut count) = (0.0, 0.0);
             for (k, phase) in folded.phases.iter().enumerate() {
-                evaluator.at(phase + shift, &mut state);
+                evaluator.at(copies * phase + shift, &mut state);
                 for (a, range) in self.moving() {
                     sum += folded.weights[k] * ((state[a] - folded.states[k * folded.n + a]) / range).powi(2);
                     count += folded.weights[k];
