@@ -1,0 +1,7 @@
+//! Cycles under a forcing.
+
+mod duffing;
+mod ends;
+mod load;
+mod mathieu;
+mod planted;
