@@ -2,10 +2,11 @@
 //!
 //! A state's size is its range over the cycle. A state that does not move (a plane of symmetry, a variable at rest)
 //! has only roundoff for a range; its size is then what its rate could move it by over a period, `T Sum_b |df_a/dx_b|
-//! range_b`, which has the right unit.
+//! range_b`, which has the right unit, and what it could at second order, `T |D^2 f_a[range, range]|`: a state that others move
+//! by their squares has no slope where they rest.
 
 use armilla_collocation::Metric;
-use armilla_model::{Batch, Linearisation, VectorField};
+use armilla_model::{Batch, Direction, Linearisation, VectorField};
 use armilla_record::Profile;
 
 /// A range below this share of the size is roundoff, not motion: Newton's method leaves about 1e-13.
@@ -36,8 +37,14 @@ pub(crate) fn natural_sizes(
     let time: Vec<f64> = profile.node_times().iter().map(|share| share * profile.period).collect();
     let batch = Batch { len: points, time: &time, states: &states, parameters };
     let out = Linearisation { rates: &mut rates, jacobian: &mut jacobian, columns: &mut [] };
-    field.evaluator(&[]).linearise(batch, out);
-    let mut sizes = vec![0.0; n];
+    let mut evaluator = field.evaluator(&[]);
+    evaluator.linearise(batch, out);
+    let mut bends = rates;
+    let displaced: Vec<f64> = ranges.iter().flat_map(|range| std::iter::repeat_n(*range, points)).collect();
+    let direction = Direction { states: &displaced, columns: &[] };
+    evaluator.second(batch, direction, direction, &mut bends);
+    let finite = |values: &[f64]| values.iter().filter(|value| value.is_finite()).fold(0.0f64, |most, x| most.max(x.abs()));
+    let mut sizes: Vec<f64> = bends.chunks_exact(points).map(|bends| profile.period * finite(bends)).collect();
     for ((a, b), values) in field.pattern().entries().zip(jacobian.chunks_exact(points)) {
         let largest = values.iter().fold(0.0f64, |largest, value| largest.max(value.abs()));
         if a != b && largest.is_finite() {
