@@ -44,6 +44,7 @@ mod copies;
 mod dip;
 mod locate;
 mod measure;
+mod meeting;
 mod normal_form;
 mod point;
 mod problem;

@@ -28,6 +28,7 @@ mod ends;
 mod error;
 mod file;
 mod guards;
+mod joins;
 mod ledger;
 mod near_miss;
 mod prediction;

@@ -10,6 +10,7 @@ use crate::ahead::Ahead;
 use crate::approach::{Approach, Known, Past, approach, orbit_stands, resolved};
 use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short};
 use crate::guards::{falls_on_shorter, leaps};
+use crate::joins::Atlas;
 use crate::ledger::{Change, is_off_folds, is_sure};
 use crate::near_miss::near_miss_by_mean;
 use crate::rest::{Motion, Rest, push};
@@ -34,6 +35,8 @@ pub(crate) struct WalkPlan<'a> {
     /// +1 where distances grow with the walk, -1 where they fall.
     pub sign: f64,
     pub abort: &'a AtomicBool,
+    /// The branches followed before.
+    pub atlas: &'a Atlas,
     /// Whether the walk ends at its first doubling.
     pub to_first_doubling: bool,
     /// Where the next doubling is expected.
@@ -76,7 +79,8 @@ pub(crate) fn walk(
         Ok(mut follower) => {
             let seen = Seen { motions: vec![motion(&mut follower)], periods: vec![past(&mut follower, plan.width())] };
             let account = follower.current().clone();
-            Walker { follower, plan, sink, walk, seen, account, earlier: None, retries: 0, doubt_until: 0.0 }.run()
+            Walker { follower, plan, sink, walk, seen, account, earlier: None, retries: 0, doubt_until: 0.0, met: None }
+                .run()
         }
         Err(_) => {
             let words = "the multipliers at its first cycle could not be computed".into();
@@ -107,6 +111,8 @@ struct Walker<'w, 'p> {
     retries: usize,
     /// Distance up to which the last doubt reaches.
     doubt_until: f64,
+    /// The branch followed before that the last point lies on.
+    met: Option<String>,
 }
 
 impl Walker<'_, '_> {
@@ -304,6 +310,9 @@ impl Walker<'_, '_> {
         }
         let past = past(&mut self.follower, self.plan.width());
         self.seen.periods.push(past);
+        if let Some(joined) = self.joined() {
+            return Taken::Ended(joined);
+        }
         match self.approach() {
             Some(approach) => {
                 let (event, ended) = blown_up(&after, self.plan, approach);
@@ -314,6 +323,19 @@ impl Walker<'_, '_> {
             }
             None => Taken::On,
         }
+    }
+
+    /// The end of a walk whose last two points lie on a branch followed before: one alone may be a crossing.
+    fn joined(&mut self) -> Option<End> {
+        let last = self.walk.points.last()?;
+        let (problem, _, _) = self.follower.parts();
+        let met = self.plan.atlas.branch_of(problem, &last.point, &last.cycle).map(str::to_string);
+        let before = std::mem::replace(&mut self.met, met.clone());
+        let branch = met.filter(|met| before.as_ref() == Some(met))?;
+        let value = last.point.value;
+        let here = short(self.plan.study, value);
+        let words = format!("joins `{branch}` at {} = {here}", self.plan.study.file.follow.parameter);
+        Some(end(EndReason::Joins { branch }, value, words))
     }
 
     /// How the period grows without bound, if it does.
