@@ -41,6 +41,7 @@
 mod agreement;
 mod align;
 mod copies;
+mod degenerate;
 mod dip;
 mod locate;
 mod measure;
@@ -55,6 +56,7 @@ mod switch;
 mod test_function;
 
 pub use armilla_collocation::{Fault, MapsFault, TooStiff};
+pub use degenerate::{Degeneracy, Term, degeneracy};
 pub use dip::Dip;
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;

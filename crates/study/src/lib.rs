@@ -26,6 +26,7 @@ mod branch;
 mod cascade;
 mod ends;
 mod error;
+mod families;
 mod file;
 mod guards;
 mod joins;
