@@ -29,7 +29,7 @@ impl CycleProblem {
         }
         let (profile, wanted) = (self.profile(point), self.profile(to));
         let shift = match self.system.forced() {
-            Some(forced) => self.best_of_shifts(&profile, &wanted, forced.periods),
+            Some(_) => self.best_of_shifts(&profile, &wanted, self.periods_of(point)),
             None => self.best_shift(&profile, &wanted),
         };
         let mut evaluator = profile.evaluator();

@@ -1,8 +1,10 @@
 //! What differs for cycles under a forcing.
 
+use armilla_collocation::{Failure, Report};
 use armilla_model::VectorField;
 use armilla_record::Profile;
 
+use crate::point::CyclePoint;
 use crate::problem::{CycleProblem, StartFault};
 
 impl CycleProblem {
@@ -15,6 +17,22 @@ impl CycleProblem {
     /// periods.
     pub fn may_have_halves(&self) -> bool {
         self.system.forced().is_none_or(|forced| forced.periods % 2 == 0)
+    }
+
+    /// Forcing periods that a cycle lasts, whatever branch it is of; 1 without a forcing.
+    pub(crate) fn periods_of(&self, point: &CyclePoint) -> usize {
+        let parameters = self.parameters_at(point);
+        let of = (&parameters[..], self.spec.free);
+        forcing_periods(self.spec.field.as_ref(), of, point.unknowns.period).ok().flatten().unwrap_or(1)
+    }
+
+    /// Corrects a cycle of another branch at a parameter value: it may last another number of forcing periods.
+    pub(crate) fn correct_foreign(&mut self, point: &mut CyclePoint, parameter: f64) -> Result<Report, Failure> {
+        let own = self.system.forced();
+        self.system.set_forcing(self.periods_of(point));
+        let report = self.correct_at(point, parameter);
+        self.system.set_forcing(own.map_or(0, |forced| forced.periods));
+        report
     }
 
     /// The shift by whole forcing periods, as a share of the period, by which `profile` lies nearest to `wanted`.

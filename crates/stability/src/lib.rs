@@ -41,10 +41,12 @@
 mod agreement;
 mod align;
 mod copies;
+mod degenerate;
 mod dip;
 mod forced;
 mod locate;
 mod measure;
+mod meeting;
 mod normal_form;
 mod point;
 mod problem;
@@ -56,6 +58,7 @@ mod switch;
 mod test_function;
 
 pub use armilla_collocation::{Fault, MapsFault, TooStiff};
+pub use degenerate::{Degeneracy, Term, degeneracy};
 pub use dip::Dip;
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;
