@@ -1,0 +1,6 @@
+//! Starts from samples of a cycle.
+
+mod faults;
+mod forced;
+mod kuramoto;
+mod noisy;
