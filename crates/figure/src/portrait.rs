@@ -6,7 +6,7 @@ use crate::canvas::{Canvas, Pen};
 use crate::caption;
 use crate::error::FigureError;
 use crate::geometry::{Place, at_fraction, length};
-use crate::legend::{Entry, NUMBER_RADIUS, Sample, numbered, dot};
+use crate::legend::{Entry, NUMBER_RADIUS, Sample, dot, numbered};
 use crate::measure::{find, sound};
 use crate::page::{Page, Scale, points};
 use crate::palette::{Ink, ink, lettering};
@@ -44,7 +44,8 @@ pub(crate) fn draw(portrait: &Portrait, branches: &[Branch]) -> Result<String, F
     let lines: Vec<Vec<Place>> = orbits.iter().map(|orbit| orbit.line.clone()).collect();
     let window = asked.window(&lines, &[]);
     // Where nothing moves, as with the zero solution of a linear equation under a forcing, each orbit is a place.
-    let still: Vec<Place> = if window.is_some() { Vec::new() } else { lines.iter().filter_map(|line| place(line)).collect() };
+    let still: Vec<Place> =
+        if window.is_some() { Vec::new() } else { lines.iter().filter_map(|line| place(line)).collect() };
     let window = window.or_else(|| asked.window(&[], &still)).ok_or_else(|| nothing_inside(portrait, &lines))?;
     let cut: Vec<Line> = orbits
         .iter()

@@ -46,11 +46,19 @@ impl std::fmt::Display for ForcingFault {
             Self::Period { period } => write!(f, "the period of the forcing is {period}"),
             Self::NotPeriodic { state, period, time, rates: [now, later] } => write!(
                 f,
-                "the rate of `{state}` does not repeat with the period of the forcing, {period}: it is {now} at t = {time} \
-                 and {later} one period later"
+                "the rate of `{state}` does not repeat with the period of the forcing, {period}: it is {} at t = {} and {} \
+                 one period later",
+                short(*now),
+                short(*time),
+                short(*later)
             ),
         }
     }
+}
+
+/// A number for a sentence.
+fn short(value: f64) -> f64 {
+    format!("{value:.5e}").parse().unwrap_or(value)
 }
 
 impl std::error::Error for ForcingFault {}

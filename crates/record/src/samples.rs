@@ -128,7 +128,8 @@ impl Table<'_> {
         let there: Vec<String> = names.iter().map(|name| format!("`{name}`")).collect();
         let there = there.join(", ");
         if !missing.is_empty() {
-            let (noun, names) = if missing.len() == 1 { ("state", &missing[0]) } else { ("states", &missing.join(", ")) };
+            let (noun, names) =
+                if missing.len() == 1 { ("state", &missing[0]) } else { ("states", &missing.join(", ")) };
             let help = format!(
                 "samples must hold every state of the model, in columns named as the states; the columns are {there}"
             );

@@ -12,10 +12,10 @@ use armilla_linalg::{Bordered, Right, Shape};
 use armilla_model::VectorField;
 use armilla_record::{MeshReason, Point, Profile, Reached};
 
+use crate::forced::forcing_periods;
 use crate::measure::Measures;
 use crate::point::{CyclePoint, CycleTangent};
 use crate::resolution::Resolution;
-use crate::forced::forcing_periods;
 use crate::scale::{STILL, STILL_AT_FIRST, first_metric, metric_under_forcing, natural_sizes};
 use crate::spectrum::{Spectrum, SpectrumFault, SpectrumSolver};
 

@@ -43,7 +43,8 @@ pub(crate) fn natural_sizes(
     let displaced: Vec<f64> = ranges.iter().flat_map(|range| std::iter::repeat_n(*range, points)).collect();
     let direction = Direction { states: &displaced, columns: &[] };
     evaluator.second(batch, direction, direction, &mut bends);
-    let finite = |values: &[f64]| values.iter().filter(|value| value.is_finite()).fold(0.0f64, |most, x| most.max(x.abs()));
+    let finite =
+        |values: &[f64]| values.iter().filter(|value| value.is_finite()).fold(0.0f64, |most, x| most.max(x.abs()));
     let mut sizes: Vec<f64> = bends.chunks_exact(points).map(|bends| profile.period * finite(bends)).collect();
     for ((a, b), values) in field.pattern().entries().zip(jacobian.chunks_exact(points)) {
         let largest = values.iter().fold(0.0f64, |largest, value| largest.max(value.abs()));
@@ -70,11 +71,7 @@ fn ranges(profile: &Profile) -> Vec<f64> {
 
 /// The metric of a branch under a forcing, whose cycles need not move: a state that neither moves nor has any size is
 /// measured in units, as in an equation that is linear and has no size of its own.
-pub(crate) fn metric_under_forcing(
-    profile: &Profile,
-    (sizes, still): (&[f64], f64),
-    parameter_scale: f64,
-) -> Metric {
+pub(crate) fn metric_under_forcing(profile: &Profile, (sizes, still): (&[f64], f64), parameter_scale: f64) -> Metric {
     let known: Vec<f64> = sizes.iter().map(|size| if *size > 0.0 { *size } else { 1.0 }).collect();
     first_metric(profile, (&known, still), parameter_scale).unwrap_or_else(|| Metric {
         scales: known,

@@ -41,10 +41,8 @@ const CLOSES: f64 = 0.3;
 /// Estimates the period of samples; none where they do not come back.
 pub(crate) fn estimate(samples: &Samples, n: usize) -> Option<f64> {
     let span = span(samples);
-    let mut candidates: Vec<f64> = lags(samples, n)
-        .into_iter()
-        .map(|(lag, step)| best_near(samples, n, (lag - step, lag + step)))
-        .collect();
+    let mut candidates: Vec<f64> =
+        lags(samples, n).into_iter().map(|(lag, step)| best_near(samples, n, (lag - step, lag + step))).collect();
     candidates.extend(closing(samples, n).filter(|period| *period > 0.5 * span));
     best_of(samples, n, &candidates)
 }
@@ -93,7 +91,8 @@ pub(crate) fn fold(samples: &Samples, n: usize, period: f64) -> Folded {
     let turns = span(samples) / period;
     let per_turn = samples.times.len() as f64 / turns.max(1.0);
     let apart = if turns > 1.2 { TOGETHER * turns / samples.times.len() as f64 } else { SAME };
-    let mut folded = Folded { phases: Vec::new(), weights: Vec::new(), states: Vec::new(), scatter: vec![0.0; n], per_turn, n };
+    let mut folded =
+        Folded { phases: Vec::new(), weights: Vec::new(), states: Vec::new(), scatter: vec![0.0; n], per_turn, n };
     let mut first = f64::NEG_INFINITY;
     for (phase, k) in order {
         let state = &samples.states[k * n..(k + 1) * n];
@@ -132,7 +131,8 @@ pub(crate) fn fold(samples: &Samples, n: usize, period: f64) -> Folded {
 fn best_near(samples: &Samples, n: usize, (low, high): (f64, f64)) -> f64 {
     /// Periods looked at by neighbours in phase, and by the curve.
     const LOOKS: (usize, usize) = (61, 13);
-    let scales: Vec<f64> = deviations(samples, n).iter().map(|size| if *size > 0.0 { 1.0 / size } else { 0.0 }).collect();
+    let scales: Vec<f64> =
+        deviations(samples, n).iter().map(|size| if *size > 0.0 { 1.0 / size } else { 0.0 }).collect();
     let evenly = |count: usize| (0..count).map(move |k| low + (high - low) * k as f64 / (count - 1) as f64);
     let score = |period: f64| fold(samples, n, period).smooth(1.0).score;
     let by_neighbours = lowest_of(evenly(LOOKS.0), |period| apart_in_phase(samples, &scales, period)).unwrap_or(low);

@@ -161,7 +161,9 @@ impl Table<'_> {
                     digits(period),
                     digits(forcing)
                 );
-                return Err(self.error(message, "leave the period out to have it found, or set the parameters of the forcing"));
+                return Err(
+                    self.error(message, "leave the period out to have it found, or set the parameters of the forcing")
+                );
             }
             return Ok(periods as usize);
         }

@@ -336,7 +336,8 @@ mod tests {
     fn noise_is_measured_and_smoothed() {
         // Sums of equidistributed numbers are nearly normal (12 of them have variance 1).
         let noise = |k: usize| {
-            let part = |j: usize| (((12 * k + j) as f64 + 0.5) * 0.754_877_666_246_692_8 * (j as f64 + 1.37)).fract() - 0.5;
+            let part =
+                |j: usize| (((12 * k + j) as f64 + 0.5) * 0.754_877_666_246_692_8 * (j as f64 + 1.37)).fract() - 0.5;
             0.1 * (0..12).map(part).sum::<f64>()
         };
         let smooth = folded(400, noise).smooth(1.0);

@@ -304,7 +304,9 @@ fn located_event(
                 form = Some(found);
                 let (side, note) = match found.c {
                     0.0 => (None, NO_SIDE.to_string()),
-                    _ if !found.certain => (None, "normal form coefficient c = 0 to roundoff: no side is claimed".into()),
+                    _ if !found.certain => {
+                        (None, "normal form coefficient c = 0 to roundoff: no side is claimed".into())
+                    }
                     c => (Some(criticality(c)), format!("normal form coefficient c = {c:.6e}")),
                 };
                 (EventKind::Doubling, std::f64::consts::PI, side, Some(note))

@@ -257,7 +257,9 @@ impl Place<'_> {
         let name = &file.follow.parameter;
         let message = format!("the start has `{name}` = {value}, outside the asked range from {low} to {high}");
         let help = match file.start {
-            Start::Settle { .. } => format!("widen `follow`, or start inside it: start: Settle(at: {{ \"{name}\": ... }})"),
+            Start::Settle { .. } => {
+                format!("widen `follow`, or start inside it: start: Settle(at: {{ \"{name}\": ... }})")
+            }
             _ => format!("widen `follow`, or give the value of the start: set: {{ \"{name}\": ... }}"),
         };
         Err(self.error("follow", "from", message).with_help(help))

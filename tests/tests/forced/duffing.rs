@@ -15,7 +15,9 @@ fn folds_of_the_duffing_oscillator() {
         r#"start: Settle(at: {"omega": 2.0}), follow: (parameter: "omega", from: 0.5, to: 2.5), accuracy: 1e-10"#,
     );
     assert!(traced.shortfalls.is_empty(), "{:?}", traced.shortfalls);
-    for (name, exact) in [("a/fold1", 1.252_014_959_107_248_308_885_176), ("a/fold2", 1.522_448_029_044_930_745_390_372)] {
+    for (name, exact) in
+        [("a/fold1", 1.252_014_959_107_248_308_885_176), ("a/fold2", 1.522_448_029_044_930_745_390_372)]
+    {
         let fold = event(&traced, name);
         relative(name, fold.value, exact, 1e-9);
         let error = fold.error.expect("an error");

@@ -31,7 +31,10 @@ fn wherever_the_study_goes() {
     assert_eq!(refusal(place.path(), "4*pi/omega", omega), None);
     // Wrong with the values of the model.
     let message = refusal(place.path(), "pi/omega", strength).expect("a refusal");
-    assert!(message.contains("a.model.ron:5:") && message.contains("^^^") && message.contains("help: state a period"), "{message}");
+    assert!(
+        message.contains("a.model.ron:5:") && message.contains("^^^") && message.contains("help: state a period"),
+        "{message}"
+    );
     // Right at both ends of the range, wrong between.
     let message = refusal(place.path(), "2*pi", omega).expect("a refusal");
     assert!(message.contains("a.study.ron:1:") && message.contains("`omega` = 1."), "{message}");

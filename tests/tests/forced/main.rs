@@ -5,3 +5,4 @@ mod ends;
 mod load;
 mod mathieu;
 mod planted;
+mod sieve;

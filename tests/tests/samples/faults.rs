@@ -20,7 +20,11 @@ fn the_input_is_wrong() {
         (table("time,x,y", good), FIELDS, "cycle.csv:1: the samples lack the time `t`"),
         (table("t,x,y", good).replace("0.36,", "0.24,"), FIELDS, "cycle.csv:5: the time 0.24 does not lie after"),
         (table("t,x,y", good), &FIELDS.replace("cycle.csv", "other.csv"), "the samples cannot be read"),
-        (table("t,x,y", good), &FIELDS.replace("csv\"", "csv\", period: -1.0"), "the period must be a finite time above 0"),
+        (
+            table("t,x,y", good),
+            &FIELDS.replace("csv\"", "csv\", period: -1.0"),
+            "the period must be a finite time above 0",
+        ),
         (table("t,x,y", line), FIELDS, "they show no period"),
         (table("t,x,y", good), &FIELDS.replace("csv\"", "csv\", period: 30.0"), "of the period without a sample"),
     ] {

@@ -19,7 +19,8 @@ fn the_answer_that_was_measured() {
         let settled = motion.state_after(&start, 0.0, 80.0 * TAU / omega);
         let span = if count > 200 { 17.0 } else { TAU / omega };
         let table = motion.table(&["x", "y"], &settled, (0.0, span, count), 0.0);
-        let largest = table.lines().skip(1).filter_map(|line| line.split(',').nth(1)?.parse::<f64>().ok()).fold(0.0, f64::max);
+        let largest =
+            table.lines().skip(1).filter_map(|line| line.split(',').nth(1)?.parse::<f64>().ok()).fold(0.0, f64::max);
         // From the middle of a period on, told by `t` alone.
         let later = motion.state_after(&settled, 0.0, 1.1);
         let table = motion.table(&["x", "y"], &later, (1.1, span, count), noise);
@@ -75,10 +76,9 @@ fn two_forcing_periods_are_found() {
         relative("multiplier", at.multipliers[0].log_modulus, -4.0 * l * period, 1e-8);
     }
     // A stated period that is none of the forcing, and samples of less than one.
-    for (stated, span, words) in [
-        (", period: 5.5", 2.0, "no whole number of forcing periods"),
-        ("", 0.6, "less than one forcing period"),
-    ] {
+    for (stated, span, words) in
+        [(", period: 5.5", 2.0, "no whole number of forcing periods"), ("", 0.6, "less than one forcing period")]
+    {
         let table = motion.table(&["x", "y", "w"], &settled, (0.0, span * period, 300), 0.0);
         let fields = format!(
             r#"set: {{"l": {l}}}, start: Samples(file: "cycle.csv"{stated}), follow: (parameter: "l", from: 0.1, to: 0.2)"#

@@ -4,3 +4,4 @@ mod faults;
 mod forced;
 mod kuramoto;
 mod noisy;
+mod pond;

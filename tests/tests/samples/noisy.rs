@@ -89,7 +89,8 @@ fn roessler_with_noise() {
                follow: (parameter: "c", from: 5.379419820792818, to: 5.38), pursue: (doublings: 0)"#,
         )
         .unwrap_or_else(|fault| panic!("noise {noise}: {fault}"));
-        let at = branch(&traced, "a").points.iter().find(|point| point.value == 5.379_419_820_792_818).expect("the start");
+        let at =
+            branch(&traced, "a").points.iter().find(|point| point.value == 5.379_419_820_792_818).expect("the start");
         relative("period", at.period, 17.452_437_630_153_145_92, 1e-9);
         assert_eq!(at.turns, 3);
         let first = at.multipliers[0];
