@@ -82,8 +82,12 @@ fn check_point(point: &Point, n: usize) -> Result<(), String> {
             return Err(format!("{name} are missing"));
         }
     }
-    if point.unstable_count > point.multipliers.len() {
-        return Err("more multipliers are unstable than there are".into());
+    if point.unstable_count > point.multipliers.len().max(point.eigenvalues.len()) {
+        return Err("more multipliers or eigenvalues are unstable than there are".into());
+    }
+    for eigenvalue in &point.eigenvalues {
+        finite("real part of an eigenvalue", eigenvalue.re)?;
+        finite("imaginary part of an eigenvalue", eigenvalue.im)?;
     }
     if let Some(unresolved) = point.unresolved {
         finite("modulus below which multipliers are not resolved", unresolved.below)?;

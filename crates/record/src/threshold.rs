@@ -41,7 +41,7 @@ pub struct Threshold {
     pub value: f64,
     /// Estimated absolute error of `value`, in the same unit.
     pub error: Option<f64>,
-    /// Period, in the model's time unit; infinite where it grows without bound.
+    /// Period, in the model's time unit; infinite where it grows without bound, none at an equilibrium but a Hopf point.
     pub period: Option<f64>,
     /// Estimated absolute error of `period`.
     pub period_error: Option<f64>,
@@ -76,7 +76,7 @@ impl Threshold {
             parameter: branch.parameter.name.clone(),
             value: event.value,
             error: event.error,
-            period: Some(event.period),
+            period: Some(event.period).filter(|period| *period != 0.0),
             period_error: event.period_error,
             turns: event.turns,
             angle: event.angle,

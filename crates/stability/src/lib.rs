@@ -42,6 +42,7 @@ mod agreement;
 mod align;
 mod copies;
 mod dip;
+mod equilibrium;
 mod locate;
 mod measure;
 mod normal_form;
@@ -55,6 +56,10 @@ mod test_function;
 
 pub use armilla_collocation::{Fault, MapsFault, TooStiff};
 pub use dip::Dip;
+pub use equilibrium::{
+    BranchingForm, Crossing, CriticalSlope, EquilibriumPoint, EquilibriumProblem, EquilibriumSpec, EquilibriumTangent,
+    HopfForm, LocatedRest, RestEvent, RestFault, WATCH_CROSSING, WATCH_TURN, birth_row,
+};
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;
 pub use normal_form::DoublingForm;

@@ -240,7 +240,7 @@ pub(crate) fn resolution_lost(point: &Point, plan: &WalkPlan<'_>) -> Option<End>
 }
 
 /// What stopped the evaluation, with the names of the model.
-fn fault_words(study: &Study, fault: &Fault) -> String {
+pub(crate) fn fault_words(study: &Study, fault: &Fault) -> String {
     match fault {
         Fault::NotFinite { state, states, .. } => {
             let name = &study.model.states()[*state].name;

@@ -57,6 +57,11 @@ pub enum StudyError {
         /// Why.
         reason: String,
     },
+    /// No equilibrium was found, or it cannot be followed.
+    NoEquilibrium {
+        /// Why.
+        reason: String,
+    },
     /// Something this version does not do.
     NotInThisVersion {
         /// What was asked.
@@ -91,9 +96,8 @@ impl StudyError {
             Self::Settling { error: FlowError::Setting { .. } | FlowError::ForcingPeriodMissing, .. } => {
                 ErrorClass::Input
             }
-            Self::Settling { .. } | Self::SettlesAtRest { .. } | Self::DidNotSettle { .. } | Self::NoCycle { .. } => {
-                ErrorClass::NotReached
-            }
+            Self::Settling { .. } | Self::SettlesAtRest { .. } | Self::DidNotSettle { .. } => ErrorClass::NotReached,
+            Self::NoCycle { .. } | Self::NoEquilibrium { .. } => ErrorClass::NotReached,
         }
     }
 }
@@ -141,6 +145,11 @@ impl std::fmt::Display for StudyError {
                 f,
                 "no cycle was found from the settled motion: {reason}\n    help: start at parameter values where the \
                  cycle attracts more strongly, or allow a longer `transient`"
+            ),
+            Self::NoEquilibrium { reason } => write!(
+                f,
+                "no equilibrium to follow: {reason}\n    help: give states nearer to one, `start: Equilibrium(near: {{ ... \
+                 }})`, or let the motion settle, `start: Settle(at: {{ ... }})`"
             ),
             Self::NotInThisVersion { what, instead } => {
                 write!(f, "{what} is not built in this version\n    help: {instead}")
