@@ -9,7 +9,7 @@ use armilla_record::{
 };
 use armilla_stability::{
     BranchingForm, Born, CyclePoint, CycleProblem, CycleTangent, DoublingForm, EquilibriumPoint, EquilibriumProblem,
-    EquilibriumTangent, HopfForm, Located, LocatedRest, Measures,
+    HopfForm, Located, LocatedRest, Measures,
 };
 
 use crate::ahead::Ahead;
@@ -96,7 +96,7 @@ pub(crate) enum Entry {
     /// An equilibrium; the branch goes both ways from it.
     Equilibrium(Box<EquilibriumProblem>, Box<EquilibriumPoint>),
     /// A branching of equilibria; the branch goes both ways along a direction.
-    Crossing(Box<EquilibriumProblem>, Box<(EquilibriumPoint, EquilibriumTangent)>),
+    Crossing(Box<EquilibriumProblem>, Box<equilibrium_branch::Start>),
 }
 
 /// What every branch of a run shares.

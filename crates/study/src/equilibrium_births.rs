@@ -7,6 +7,7 @@ use armilla_record::{Branch, EndReason, EventKind};
 use armilla_stability::{EquilibriumPoint, EquilibriumProblem, birth_row};
 
 use crate::branch::{Entry, Finished, Way};
+use crate::equilibrium_branch::Start;
 use crate::settings::cycle_settings;
 use crate::study::Study;
 
@@ -77,7 +78,8 @@ pub(crate) fn enter(study: &Study, parent: &EquilibriumProblem, way: &Way) -> Re
             Ok(Entry::Hopf(Box::new(born), Box::new(row)))
         }
         Way::Crossing { located, form } => {
-            let from = (located.point.clone(), form.other.clone());
+            let (birth, direction) = (located.point.clone(), form.other.clone());
+            let from = Start { birth, direction, state_error: located.state_error };
             Ok(Entry::Crossing(Box::new(parent.sibling()), Box::new(from)))
         }
         Way::Doubling { .. } => Err("equilibria do not double".into()),

@@ -115,7 +115,10 @@ pub(crate) fn both_ways(
         RestWalk { points: Vec::new(), end: forward.end.clone() }
     } else {
         let back = plan(collector.run, -1.0, 0.0);
-        walk(&mut problem, (start.clone(), up.reversed()), &back, &mut collector)
+        // The metric has followed the first walk; strides are to be measured as at the start again.
+        problem.anchor(&start);
+        let down = problem.tangent(&start, Orientation::Along(&up.reversed())).map_err(|_| stuck())?;
+        walk(&mut problem, (start.clone(), down), &back, &mut collector)
     };
     finish(collector, problem, (backward, vec![first], forward))
 }
@@ -136,19 +139,33 @@ fn events_at_start(
     search.found.into_iter().for_each(|found| collector.event(found));
 }
 
+/// Where a branch of equilibria begins that goes through a branching.
+pub(crate) struct Start {
+    /// The branching.
+    pub birth: EquilibriumPoint,
+    /// Direction of the branch there.
+    pub direction: EquilibriumTangent,
+    /// Error of the states there, relative to their sizes.
+    pub state_error: f64,
+}
+
 /// Follows a branch both ways from the branching that it goes through.
 pub(crate) fn through_branching(
     run: &mut Run<'_>,
     lineage: &Lineage,
     mut problem: EquilibriumProblem,
-    (birth, direction): (EquilibriumPoint, EquilibriumTangent),
+    from: Start,
 ) -> Result<Finished, StudyError> {
+    let Start { birth, direction, state_error } = from;
     let unknown = || no_equilibrium("the eigenvalues where it is born could not be computed");
     let mut at_birth = problem.describe(&birth, 0.0).map_err(|_| unknown())?;
+    // Its states are known from the defining system: the branch's own equations are singular there.
+    at_birth.profile_error = state_error;
     let mut collector = collector(run, lineage);
     let mut sides = Vec::new();
     for sign in [1.0, -1.0] {
         let closed = matches!(&sides[..], [Some(RestWalk { end, .. })] if end.reason == EndReason::Closed);
+        problem.anchor(&birth);
         let along = if sign > 0.0 { direction.clone() } else { direction.reversed() };
         let entered = if closed { None } else { problem.enter(&birth, &along) };
         sides.push(entered.and_then(|entered| one_side(&mut collector, &mut problem, entered, sign)));

@@ -59,7 +59,7 @@ impl Waiting {
             Entry::Cycle(_, point) => point.unknowns.parameter,
             Entry::Birth(born) | Entry::Hopf(born, _) => born.birth.unknowns.parameter,
             Entry::Equilibrium(_, point) => point.parameter,
-            Entry::Crossing(_, from) => from.0.parameter,
+            Entry::Crossing(_, from) => from.birth.parameter,
         }
     }
 }

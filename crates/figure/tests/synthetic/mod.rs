@@ -40,6 +40,7 @@ pub fn branch(name: &str, length: f64, count: usize, cycle: impl Fn(f64) -> Cycl
         ends: (end(cycle(0.0).value), end(cycle(length).value)),
         points,
         profiles: Vec::new(),
+        of: Solutions::Cycles,
     }
 }
 

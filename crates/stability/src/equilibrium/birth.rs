@@ -210,5 +210,6 @@ pub fn birth_row(problem: &mut EquilibriumProblem, hopf: &LocatedRest) -> Option
         .collect();
     multipliers.push(Multiplier { log_modulus: 0.0, angle: 0.0 });
     multipliers.sort_by(|a, b| b.log_modulus.total_cmp(&a.log_modulus));
-    Some(Point { period, turns: 1, eigenvalues: Vec::new(), multipliers, ..rest })
+    let profile_error = hopf.state_error;
+    Some(Point { period, turns: 1, eigenvalues: Vec::new(), multipliers, profile_error, ..rest })
 }

@@ -16,7 +16,7 @@ use armilla_follow::{Closing, Orientation, Problem, Station};
 use super::local::Along;
 use super::null::{BorderSizes, ComplexNull, RealNull};
 use super::point::{EquilibriumPoint, EquilibriumTangent};
-use super::problem::{Course, EquilibriumProblem};
+use super::problem::{Course, EquilibriumProblem, any_sign};
 use super::systems::Complex;
 
 /// What happens to the eigenvalues at an event of equilibria.
@@ -54,6 +54,8 @@ pub struct LocatedRest {
     pub error: f64,
     /// Frequency of a Hopf point and its estimated error; 0 otherwise.
     pub frequency: (f64, f64),
+    /// Estimated error of the states, largest over the size of its state.
+    pub state_error: f64,
     /// Where between the two stations the event lies, 0 to 1.
     pub share: f64,
     /// How often Newton's method corrected.
@@ -231,8 +233,12 @@ impl EquilibriumProblem {
             UNITS * f64::EPSILON * row.iter().zip(&sizes).map(|(w, size)| (w * size).abs()).sum::<f64>()
         };
         let (by_value, by_extra) = (rounding(n), rounding(n + 1));
+        let mut moved: Vec<f64> =
+            sizes.iter().enumerate().map(|(k, size)| any_sign(k) * UNITS * f64::EPSILON * size).collect();
+        system.solve(&mut moved);
         let left = course.left();
         let error = by_value + left * self.metric.parameter_scale + UNITS * f64::EPSILON * at.point.parameter.abs();
+        let state_error = self.metric.largest(&moved[..n], moved[n]) + left + UNITS * f64::EPSILON;
         let omega = if event == RestEvent::Hopf { at.extra } else { 0.0 };
         let frequency = (omega, by_extra + (left + UNITS * f64::EPSILON) * omega);
         error.is_finite().then(|| LocatedRest {
@@ -240,6 +246,7 @@ impl EquilibriumProblem {
             point: at.point.clone(),
             error,
             frequency,
+            state_error,
             share: 0.0,
             iterations: course.corrections.len(),
             vectors: defining.vectors.clone(),

@@ -130,6 +130,14 @@ impl EquilibriumProblem {
         self.metric.scales = sizes.map(|(k, (size, t))| if tells(*size, *t) { *size } else { moved(k) }).collect();
     }
 
+    /// Sets the metric to that of a point, forgetting what was seen elsewhere on the branch: before a second walk from the
+    /// same start. Where the parameter does not close the equations, as at a branching, the metric stays.
+    pub fn anchor(&mut self, point: &EquilibriumPoint) {
+        if self.tangent(point, Orientation::Parameter(1.0)).is_ok() {
+            self.measure(point);
+        }
+    }
+
     /// Number of states.
     pub fn n_states(&self) -> usize {
         self.spec.typical.len()
@@ -227,9 +235,8 @@ impl EquilibriumProblem {
         let border = Border { column: &self.local.column, row: &row.state, corner: row.parameter };
         let Some(system) = self.systems.single(&self.local.jacobian, 0.0, &border) else { return f64::INFINITY };
         let mut moved = vec![0.0; n + 1];
-        // Signs without a pattern: roundings are independent.
-        let sign = |k: usize| if (k.wrapping_mul(0x9E37_79B9) >> 7) & 1 == 0 { 1.0 } else { -1.0 };
-        moved.iter_mut().zip(&sizes).enumerate().for_each(|(k, (m, size))| *m = sign(k) * UNITS * f64::EPSILON * size);
+        let rounded = |(k, size): (usize, &f64)| any_sign(k) * UNITS * f64::EPSILON * size;
+        moved.iter_mut().zip(sizes.iter().enumerate().map(rounded)).for_each(|(m, size)| *m = size);
         system.solve(&mut moved);
         self.metric.largest(&moved[..n], moved[n]) + UNITS * f64::EPSILON
     }
@@ -269,7 +276,7 @@ impl EquilibriumProblem {
         })
     }
 
-    /// A unit direction orthogonal to nothing in particular is never asked for: the tangent from `row`.
+    /// The unit tangent that `row` is positive on, at the point linearised last.
     fn tangent_by(&mut self, point: &EquilibriumPoint, row: &EquilibriumTangent) -> Option<EquilibriumTangent> {
         let n = point.state.len();
         let border = Border { column: &self.local.column, row: &row.state, corner: row.parameter };
@@ -281,6 +288,11 @@ impl EquilibriumProblem {
         let tangent = self.metric.normalised(tangent);
         tangent.is_finite().then_some(tangent)
     }
+}
+
+/// Signs without a pattern: roundings of different rows are independent.
+pub(crate) fn any_sign(k: usize) -> f64 {
+    if (k.wrapping_mul(0x9E37_79B9) >> 7) & 1 == 0 { 1.0 } else { -1.0 }
 }
 
 /// Number of eigenvalues to the right of the imaginary axis.
