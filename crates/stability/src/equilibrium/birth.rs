@@ -17,7 +17,6 @@ use super::point::EquilibriumPoint;
 use super::problem::{EquilibriumProblem, EquilibriumSpec};
 use crate::point::{CyclePoint, CycleTangent};
 use crate::problem::{CycleProblem, CycleSettings, CycleSpec, Sizes};
-use crate::scale::STILL_AT_FIRST;
 use crate::switch::{Born, SwitchFault};
 
 /// Amplitude of the first cycle, largest share of the size of a state.
@@ -108,7 +107,8 @@ impl EquilibriumProblem {
             typical: self.spec.typical.clone(),
             parameter_scale: self.spec.parameter_scale,
         };
-        let (sizes, value) = (Sizes::Natural(STILL_AT_FIRST), sprout.value);
+        // A state that the cycle does not move keeps the size it has at rest.
+        let (sizes, value) = (Sizes::Parent(&self.metric.scales), sprout.value);
         let mut problem = CycleProblem::with_metric(spec, settings, sizes, &sprout.profile, value).ok()?;
         let guess = CyclePoint::from_profile(&sprout.profile, value);
         let birth = still(hopf, &guess);

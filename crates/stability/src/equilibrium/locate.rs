@@ -131,10 +131,19 @@ impl EquilibriumProblem {
         let share = if share.is_finite() { share } else { 0.5 };
         let guess = low.point.plus(share, &high.point.minus(&low.point));
         let located = self.solve(event, guess, from.1 + share * (to.1 - from.1))?;
+        self.lies_between(&located.point, low, high).then_some(located)
+    }
+
+    /// Whether a point lies ahead of one station and behind another and not far from both, so that it is the event they
+    /// bracket: a neighbour of it, on this branch or another, may attract Newton's method as well.
+    fn lies_between(&self, point: &EquilibriumPoint, low: &RestStation, high: &RestStation) -> bool {
+        /// Distances are known to this.
+        const ROUNDOFF: f64 = 1e-12;
         // A chord is shorter than the branch between its ends; twice its length still excludes other branches.
         let reach = 2.0 * self.distance(&low.point, &high.point);
-        let near = |station: &RestStation| self.distance(&station.point, &located.point) <= reach;
-        (near(low) && near(high)).then_some(located)
+        let near = |station: &RestStation| self.distance(&station.point, point) <= reach;
+        let along = |station: &RestStation| self.metric.inner(&station.tangent, &point.minus(&station.point));
+        near(low) && near(high) && along(low) >= -ROUNDOFF && along(high) <= ROUNDOFF
     }
 
     /// A number that changes its sign at an event, roughly, and the frequency of the critical pair.
@@ -216,7 +225,7 @@ impl EquilibriumProblem {
     /// The located event with its errors, from the defining system factored last.
     fn told(&mut self, event: RestEvent, at: &Iterate, defining: &Defining, course: &Course) -> Option<LocatedRest> {
         let n = at.point.state.len();
-        let norm = self.border_norm();
+        let norm = self.norm();
         if event == RestEvent::Hopf && !(at.extra > SLOWEST * norm) {
             return None;
         }
@@ -251,16 +260,6 @@ impl EquilibriumProblem {
             iterations: course.corrections.len(),
             vectors: defining.vectors.clone(),
         })
-    }
-
-    /// Largest row sum of the Jacobian in the units of the metric.
-    fn border_norm(&self) -> f64 {
-        let scales = &self.metric.scales;
-        let mut rows = vec![0.0; scales.len()];
-        for ((row, column), value) in self.local.entries.iter().zip(&self.local.jacobian) {
-            rows[*row] += (value * scales[*column] / scales[*row]).abs();
-        }
-        rows.into_iter().fold(0.0, f64::max)
     }
 
     /// `g` of the real null vectors, and for a branching `s = psi^T f_p`.

@@ -45,17 +45,11 @@ fn sequence(k: usize) -> f64 {
 }
 
 impl BorderSizes {
-    /// Rates are measured by what the Jacobian makes of the sizes of the states.
-    pub(crate) fn new(scales: &[f64], entries: &[(usize, usize)], jacobian: &[f64]) -> Self {
-        let mut rates = vec![0.0; scales.len()];
-        for ((row, column), value) in entries.iter().zip(jacobian) {
-            rates[*row] += value.abs() * scales[*column];
-        }
-        let largest = rates.iter().copied().fold(0.0, f64::max);
-        // A rate that nothing moves has a row of zeros; any size serves it.
-        let filled = if largest > 0.0 { largest } else { 1.0 };
-        rates.iter_mut().for_each(|rate| *rate = if *rate > 0.0 { *rate } else { filled });
-        Self { states: scales.to_vec(), rates }
+    /// Rates are measured by the sizes of their own states times the norm of the Jacobian in these sizes: a row of its own
+    /// vanishes just where an eigenvalue does.
+    pub(crate) fn new(scales: &[f64], norm: f64) -> Self {
+        let norm = if norm > 0.0 { norm } else { 1.0 };
+        Self { states: scales.to_vec(), rates: scales.iter().map(|scale| scale * norm).collect() }
     }
 
     /// A right vector as the next border row, of such length that its product with the vector is 1.

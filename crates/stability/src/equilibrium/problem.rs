@@ -179,7 +179,17 @@ impl EquilibriumProblem {
 
     /// Sizes for borders at the last point linearised.
     pub(crate) fn border_sizes(&self) -> BorderSizes {
-        BorderSizes::new(&self.metric.scales, &self.local.entries, &self.local.jacobian)
+        BorderSizes::new(&self.metric.scales, self.norm())
+    }
+
+    /// Largest row sum of the Jacobian in the units of the metric, at the last point linearised.
+    pub(crate) fn norm(&self) -> f64 {
+        let scales = &self.metric.scales;
+        let mut rows = vec![0.0; scales.len()];
+        for ((row, column), value) in self.local.entries.iter().zip(&self.local.jacobian) {
+            rows[*row] += (value * scales[*column] / scales[*row]).abs();
+        }
+        rows.into_iter().fold(0.0, f64::max)
     }
 
     /// Newton's method on `f = 0` and `row (x, p) = target`, in place.
