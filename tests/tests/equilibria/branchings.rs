@@ -36,7 +36,7 @@ fn a_parabola_across_a_line() {
     assert_eq!(names, ["a", "a.transcritical1"]);
     let parabola = branch(&traced, "a.transcritical1");
     assert!(parabola.ends.0.reason == EndReason::Edge && parabola.ends.1.reason == EndReason::Edge);
-    assert_eq!((parabola.points[0].value, parabola.points[parabola.points.len() - 1].value), (3.0, -3.0));
+    assert_eq!((parabola.points[0].value, parabola.points[parabola.points.len() - 1].value), (-3.0, 3.0));
     for point in &parabola.points {
         assert!((point.maxima[0] - (point.value.powi(2) - 1.0)).abs() < 1e-11, "{point:?}");
         // At the birth itself the count is that of its neighbours.

@@ -129,7 +129,7 @@ fn repressilator() {
 /// Exact: rest at x = a loses its stability where x^2 = 1, frequency 1/sqrt(eps), eps = 0.05.
 #[test]
 fn fast_slow_pair() {
-    let traced = job("canard", r#"start: Equilibrium(near: {}), follow: (parameter: "a", from: 0.95, to: 1.2)"#);
+    let traced = job("canard", r#"start: Equilibrium(near: {}), follow: (parameter: "a", from: 0.85, to: 1.2)"#);
     check(event(&traced, "a/hopf1"), (1.0, 0.0), (std::f64::consts::TAU * 0.05f64.sqrt(), 0.0), 1e-13);
     born_there(&traced, "a.hopf1");
 }

@@ -15,7 +15,7 @@ fn ring(folder: &Path, n: usize, (from, to): (f64, f64), branches: usize) -> Tra
     };
     let rates: Vec<String> = (0..n).map(rate).collect();
     let model = format!(
-        "(states: {{{}}}, parameters: {{\"F\": (value: 0.5)}}, rates: {{{}}})",
+        "(states: {{{}}}, parameters: {{\"F\": (value: 0.85)}}, rates: {{{}}})",
         states.join(", "),
         rates.join(", ")
     );

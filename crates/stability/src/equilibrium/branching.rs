@@ -10,7 +10,7 @@ use armilla_follow::{Closing, Orientation, Problem};
 use super::local::Along;
 use super::locate::{LocatedRest, RestStation, Vectors};
 use super::null::RealNull;
-use super::point::{EquilibriumPoint, EquilibriumTangent};
+use super::point::{EquilibriumPoint, EquilibriumTangent, RestMetric};
 use super::problem::EquilibriumProblem;
 
 /// Kind of a simple branching.
@@ -98,6 +98,7 @@ impl EquilibriumProblem {
         }
         let [other, own] = tangents;
         let own = if self.metric.inner(&own, &chord) < 0.0 { own.reversed() } else { own };
+        let other = oriented(other, &self.metric);
         let is_supercritical = if crossing == Crossing::Pitchfork { self.pitchfork_side(located) } else { None };
         Some(BranchingForm { crossing, other, own, is_supercritical })
     }
@@ -160,6 +161,17 @@ impl EquilibriumProblem {
         other.metric = self.metric.clone();
         other
     }
+}
+
+/// The direction of a branch in which the parameter rises, or the largest state where it stands still.
+fn oriented(tangent: EquilibriumTangent, metric: &RestMetric) -> EquilibriumTangent {
+    /// Scaled component under which the parameter stands still.
+    const STILL: f64 = 1e-9;
+    let rise = tangent.parameter / metric.parameter_scale;
+    let scaled = tangent.state.iter().zip(&metric.scales).map(|(x, s)| x / s);
+    let largest = scaled.fold(0.0, |largest: f64, x| if x.abs() > largest.abs() { x } else { largest });
+    let leading = if rise.abs() > STILL { rise } else { largest };
+    if leading < 0.0 { tangent.reversed() } else { tangent }
 }
 
 fn along(tangent: &EquilibriumTangent) -> Along<'_> {

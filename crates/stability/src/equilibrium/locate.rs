@@ -246,7 +246,8 @@ impl EquilibriumProblem {
             sizes.iter().enumerate().map(|(k, size)| any_sign(k) * UNITS * f64::EPSILON * size).collect();
         system.solve(&mut moved);
         let left = course.left();
-        let error = by_value + left * self.metric.parameter_scale + UNITS * f64::EPSILON * at.point.parameter.abs();
+        let size = at.point.parameter.abs().max(self.metric.parameter_scale);
+        let error = by_value + left * self.metric.parameter_scale + UNITS * f64::EPSILON * size;
         let state_error = self.metric.largest(&moved[..n], moved[n]) + left + UNITS * f64::EPSILON;
         let omega = if event == RestEvent::Hopf { at.extra } else { 0.0 };
         let frequency = (omega, by_extra + (left + UNITS * f64::EPSILON) * omega);
