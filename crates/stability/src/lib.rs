@@ -41,10 +41,12 @@
 mod agreement;
 mod align;
 mod copies;
+mod degenerate;
 mod dip;
 mod equilibrium;
 mod locate;
 mod measure;
+mod meeting;
 mod normal_form;
 mod point;
 mod problem;
@@ -55,6 +57,7 @@ mod switch;
 mod test_function;
 
 pub use armilla_collocation::{Fault, MapsFault, TooStiff};
+pub use degenerate::{Degeneracy, Term, degeneracy};
 pub use dip::Dip;
 pub use equilibrium::{
     BranchingForm, Crossing, CriticalSlope, EquilibriumPoint, EquilibriumProblem, EquilibriumSpec, EquilibriumTangent,

@@ -6,7 +6,7 @@
 
 use std::sync::Arc;
 
-use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, Row, Scalar};
+use armilla_collocation::{Failure as NewtonFailure, Iterate, LinearClosing, Report, Row, Scalar};
 use armilla_follow::{Closing, Failure, Orientation, Problem, Station};
 
 use crate::point::{CyclePoint, CycleTangent};
@@ -210,6 +210,21 @@ impl CycleProblem {
         self.between(low, high, 0.5)
     }
 
+    /// Share of the chord between two stations at which a point beside it lies, counted along the first one's tangent as
+    /// [`CycleProblem::between`] counts it.
+    pub fn share_of(&self, (low, high): (&CycleStation, &CycleStation), point: &CyclePoint) -> f64 {
+        let on = &low.point;
+        let (point, tangent) =
+            (point.on_mesh(on.degree, &on.mesh), self.normalised(low.tangent.on_mesh(on.degree, &on.mesh)));
+        let (here, there) = (&on.unknowns, &point.unknowns);
+        let step = Row {
+            nodes: there.nodes.iter().zip(&here.nodes).map(|(to, from)| to - from).collect(),
+            period: there.period - here.period,
+            parameter: there.parameter - here.parameter,
+        };
+        self.metric.inner(on.tables(), &on.mesh, &tangent.row, &step) / self.distance(on, &high.point)
+    }
+
     /// A station on the branch between two stations, at a share of the chord from `low` to `high`; none where it does not
     /// correct or where the corrected cycle does not lie between them.
     pub fn between(&mut self, low: &CycleStation, high: &CycleStation, share: f64) -> Option<CycleStation> {
@@ -244,6 +259,29 @@ impl CycleProblem {
         let rounding = self.rounding(Scalar::Period, fine.unknowns.period, 0.0);
         let left = if solved { self.left_over(point, &fine) } else { 1.0 };
         let error = left * (fine.unknowns.period - point.unknowns.period).abs() + rounding;
+        Ok((fine, error))
+    }
+
+    /// The cycle re-solved on a mesh with every interval halved, at the same period, and its parameter's error: near a loop
+    /// through a state of rest the period is no function of the parameter that rounding leaves, but the parameter one of
+    /// the period.
+    ///
+    /// # Errors
+    /// [`Failure`] where that does not converge.
+    pub fn refine_at_period(
+        &mut self,
+        point: &CyclePoint,
+    ) -> Result<(CyclePoint, f64), Failure<armilla_collocation::Fault>> {
+        let mesh: Arc<[f64]> = halved(&point.mesh).into();
+        let mut fine = point.on_mesh(point.degree, &mesh);
+        let reference = fine.unknowns.nodes.clone();
+        let row = Row { period: 1.0, ..Row::zero(reference.len()) };
+        let mut closing = LinearClosing { row, target: point.unknowns.period };
+        let report = self.newton(&mut fine, &reference, &mut closing).map_err(|_| Failure::NotConverged)?;
+        let rounding = self.rounding(Scalar::Parameter, fine.unknowns.parameter, 0.0);
+        let difference = (fine.unknowns.parameter - point.unknowns.parameter).abs();
+        let error =
+            self.left_over(point, &fine) * difference + to_correct(&report) * self.metric.parameter_scale + rounding;
         Ok((fine, error))
     }
 }

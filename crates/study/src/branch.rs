@@ -16,6 +16,7 @@ use crate::ahead::Ahead;
 use crate::ends::{end, short};
 use crate::equilibrium_branch;
 use crate::error::StudyError;
+use crate::joins::{Atlas, Followed};
 use crate::prediction::{Estimate, next_doubling};
 use crate::progress::{Observer, Progress};
 use crate::settings::follow_settings;
@@ -76,6 +77,8 @@ impl Way {
 pub(crate) struct Finished {
     pub branch: Branch,
     pub births: Vec<Switchable>,
+    /// To be known again by; nothing for equilibria.
+    pub followed: Followed,
     pub problem: Parent,
 }
 
@@ -110,6 +113,8 @@ pub(crate) struct Run<'a> {
     pub to_first_doubling: bool,
     /// Points still allowed.
     pub points_left: usize,
+    /// The branches followed before.
+    pub atlas: &'a Atlas,
 }
 
 /// Collects what a walk finds, names events, and passes the news on.
@@ -200,6 +205,7 @@ fn plan<'a>(run: &Run<'a>, lineage: &Lineage, sign: f64) -> WalkPlan<'a> {
         doubled: lineage.doublings > 0,
         sign,
         abort: run.abort,
+        atlas: run.atlas,
         to_first_doubling: run.to_first_doubling,
         ahead: None,
     }
@@ -332,10 +338,11 @@ fn finish(
         .filter(|(index, _)| keep(*index))
         .map(|(point, walked)| StoredProfile { point, profile: problem.profile(&walked.cycle) })
         .collect();
-    let points: Vec<Point> = walked.into_iter().map(|walked| walked.point).collect();
+    let (points, cycles): (Vec<Point>, _) = walked.into_iter().map(|walked| (walked.point, walked.cycle)).unzip();
+    let followed = Followed::of(&lineage.name, &points, cycles);
     run.observer.notice(Progress::Finished { name: &lineage.name, points: points.len() });
     let branch = branch_record(run.study, lineage, Parts { points, events, ends, profiles });
-    Ok(Finished { branch, births, problem: Parent::Cycles(Box::new(problem)) })
+    Ok(Finished { branch, births, followed, problem: Parent::Cycles(Box::new(problem)) })
 }
 
 /// What walks bring to the record of a branch.

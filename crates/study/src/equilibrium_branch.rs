@@ -10,6 +10,7 @@ use crate::branch::{Finished, Lineage, Parent, Parts, Run, Switchable, Way, bran
 use crate::equilibrium_events::{RestBirth, RestFound, Search, is_sure};
 use crate::equilibrium_walk::{RestPlan, RestSink, RestWalk, at_parameter, walk};
 use crate::error::StudyError;
+use crate::joins::Followed;
 use crate::progress::Progress;
 use crate::settings::follow_settings;
 
@@ -231,5 +232,5 @@ fn finish(
     run.observer.notice(Progress::Finished { name: &lineage.name, points: points.len() });
     let parts = Parts { points, events, ends: (backward.end, forward.end), profiles: Vec::new() };
     let branch = Branch { of: Solutions::Equilibria, ..branch_record(run.study, lineage, parts) };
-    Ok(Finished { branch, births, problem: Parent::Equilibria(Box::new(problem)) })
+    Ok(Finished { branch, births, followed: Followed::default(), problem: Parent::Equilibria(Box::new(problem)) })
 }

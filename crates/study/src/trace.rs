@@ -12,6 +12,7 @@ use crate::branch::{Entry, Finished, Lineage, Parent, Run, Switchable, Way, foll
 use crate::cascade::cascade;
 use crate::equilibrium_births::{Crossings, ends_where_born, enter};
 use crate::error::StudyError;
+use crate::joins::Atlas;
 use crate::progress::Observer;
 use crate::start::first_solution;
 use crate::step_events::LOCATED_BY_BRACKET;
@@ -86,6 +87,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
     let mut queue = VecDeque::from([Waiting { lineage, entry: first.entry }]);
     let mut crossings = Crossings::default();
     let mut points_left = study.file.pursue.points;
+    let mut atlas = Atlas::default();
     while let Some(waiting) = queue.pop_front() {
         let mut keep = |event: &armilla_record::Event| results.write_event(event).map_err(StudyError::from);
         let mut run = Run {
@@ -95,6 +97,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
             keep: &mut keep,
             to_first_doubling: options.cascade,
             points_left,
+            atlas: &atlas,
         };
         let lineage = waiting.lineage.clone();
         let mut finished = match follow_branch(&mut run, &lineage, waiting.entry) {
@@ -106,6 +109,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
             Err(fault) => return Err(fault),
         };
         points_left = run.points_left;
+        atlas.add(std::mem::take(&mut finished.followed));
         drop_other_end(study, &lineage, &mut finished.branch, &mut queue);
         drop_born_here(study, &mut finished.branch, &mut queue);
         let met = crossings.sift(study, &mut finished);
@@ -301,6 +305,7 @@ fn shortfalls(study: &Study, branches: &[Branch], cascade_only: bool) -> Vec<Str
                     | EndReason::Closed
                     | EndReason::Equilibrium { .. }
                     | EndReason::ReturnsToParent
+                    | EndReason::Joins { .. }
                     | EndReason::PeriodBlowUp
             );
             if !reached && !cascade_only {

@@ -13,7 +13,7 @@ use crate::walk::CycleStation;
 /// several multipliers, which parabolas do not follow far: half, where a tenth would do for a parabola itself.
 const LOW: f64 = 0.5;
 /// Value above which, at both ends, no multiplier passes and comes back inside a stride; the guards bound its change.
-const NEAR: f64 = 0.3;
+const NEAR: f64 = 0.6;
 /// Strides by which the lowest place of a parabola may lie outside of the one it was made for and still be looked for
 /// inside: half a stride is what a smooth value may shift it by.
 const BESIDE: f64 = 0.5;
