@@ -37,6 +37,8 @@ pub enum EndReason {
     Interrupted,
     /// A rate was not finite.
     NotFinite,
+    /// A state of the equilibria grows without bound.
+    Unbounded,
 }
 
 impl EndReason {
@@ -54,6 +56,7 @@ impl EndReason {
             Self::Budget => "budget",
             Self::Interrupted => "interrupted",
             Self::NotFinite => "not-finite",
+            Self::Unbounded => "unbounded",
         }
     }
 }

@@ -9,6 +9,7 @@ use armilla_stability::{EquilibriumPoint, EquilibriumProblem, EquilibriumTangent
 use crate::ends::{end, fault_words, short};
 use crate::equilibrium_events::{RestFound, RestStation, Search, is_sure};
 use crate::study::Study;
+use crate::words::digits;
 
 /// What a walk needs to know besides the problem.
 pub(crate) struct RestPlan<'a> {
@@ -45,8 +46,9 @@ pub(crate) fn walk(
         Ok(mut follower) => {
             let (problem, _, station) = follower.parts();
             let station = station.clone();
+            let sizes = problem.sizes().to_vec();
             let account = is_sure(problem, &station).then_some(station);
-            Walker { follower, plan, sink, account, points: Vec::new() }.run()
+            Walker { follower, plan, sink, account, points: Vec::new(), sizes }.run()
         }
         Err(_) => {
             let words = "the eigenvalues at its first equilibrium could not be computed".into();
@@ -63,7 +65,13 @@ struct Walker<'w, 'p> {
     /// The last station at which the side of every eigenvalue was known: from there on changes are accounted for.
     account: Option<RestStation>,
     points: Vec<Point>,
+    /// Sizes of the states at the start.
+    sizes: Vec<f64>,
 }
+
+/// Multiple of its size at the start beyond which a state grows without bound. Strides grow with the state, so that a branch
+/// that comes back from there is rare, and one that does not would use up all points.
+const UNBOUNDED: f64 = 1e6;
 
 impl Walker<'_, '_> {
     fn run(mut self) -> RestWalk {
@@ -76,6 +84,9 @@ impl Walker<'_, '_> {
             let Outcome::Step(step) = self.follower.step() else { break };
             if !self.take(&step) {
                 break;
+            }
+            if let Some(end) = self.unbounded() {
+                return RestWalk { points: self.points, end };
             }
         }
         let end = self.ended();
@@ -118,6 +129,17 @@ impl Walker<'_, '_> {
         self.sink.point(&point);
         self.points.push(point);
         true
+    }
+
+    /// The end of a walk on which a state has left all bounds.
+    fn unbounded(&self) -> Option<End> {
+        let point = &self.follower.current().point;
+        let grown = point.state.iter().zip(&self.sizes).position(|(x, size)| x.abs() > UNBOUNDED * size)?;
+        let study = self.plan.study;
+        let (state, name) = (&study.model.states()[grown].name, &study.file.follow.parameter);
+        let here = short(study, point.parameter);
+        let words = format!("`{state}` grows without bound: it is {} at {name} = {here}", digits(point.state[grown]));
+        Some(end(EndReason::Unbounded, point.parameter, words))
     }
 
     /// Why the walk ends, in words.

@@ -306,6 +306,7 @@ fn shortfalls(study: &Study, branches: &[Branch], cascade_only: bool) -> Vec<Str
                     | EndReason::Equilibrium { .. }
                     | EndReason::ReturnsToParent
                     | EndReason::Joins { .. }
+                    | EndReason::Unbounded
                     | EndReason::PeriodBlowUp
             );
             if !reached && !cascade_only {

@@ -143,6 +143,11 @@ impl EquilibriumProblem {
         self.spec.typical.len()
     }
 
+    /// Sizes of the states in the metric.
+    pub fn sizes(&self) -> &[f64] {
+        &self.metric.scales
+    }
+
     /// Size of the followed parameter in the metric.
     pub fn parameter_scale(&self) -> f64 {
         self.metric.parameter_scale
