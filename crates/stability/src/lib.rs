@@ -60,7 +60,7 @@ pub use armilla_collocation::{Fault, MapsFault, TooStiff};
 pub use degenerate::{Degeneracy, Term, degeneracy};
 pub use dip::Dip;
 pub use equilibrium::{
-    BranchingForm, Crossing, CriticalSlope, EquilibriumPoint, EquilibriumProblem, EquilibriumSpec, EquilibriumTangent,
+    BranchingForm, CriticalSlope, Crossing, EquilibriumPoint, EquilibriumProblem, EquilibriumSpec, EquilibriumTangent,
     HopfForm, LocatedRest, RestEvent, RestFault, WATCH_CROSSING, WATCH_TURN, birth_row,
 };
 pub use locate::{LocateFault, Located};

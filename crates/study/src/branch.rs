@@ -8,7 +8,7 @@ use armilla_record::{
     BRANCH_FORMAT, Branch, End, EndReason, Event, EventKind, Point, Quantity, Solutions, StoredProfile,
 };
 use armilla_stability::{
-    BranchingForm, Born, CyclePoint, CycleProblem, CycleTangent, DoublingForm, EquilibriumPoint, EquilibriumProblem,
+    Born, BranchingForm, CyclePoint, CycleProblem, CycleTangent, DoublingForm, EquilibriumPoint, EquilibriumProblem,
     HopfForm, Located, LocatedRest, Measures,
 };
 
@@ -247,12 +247,7 @@ fn both_ways(
 }
 
 /// `at_birth` is the birth as a row, where it is no cycle with multipliers of its own.
-fn outwards(
-    run: &mut Run<'_>,
-    lineage: &Lineage,
-    born: Born,
-    at_birth: Option<Point>,
-) -> Result<Finished, StudyError> {
+fn outwards(run: &mut Run<'_>, lineage: &Lineage, born: Born, at_birth: Option<Point>) -> Result<Finished, StudyError> {
     let Born { mut problem, birth, point, outwards, amplitude } = born;
     let no_cycle = |reason: String| StudyError::NoCycle { reason };
     let at_rest = at_birth.is_some();

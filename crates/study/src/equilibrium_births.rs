@@ -46,7 +46,11 @@ impl Crossings {
                     } else {
                         met.push(event.clone());
                         let branch = event.split('/').next().unwrap_or_default();
-                        if branch == own { format!("the same as {event}") } else { format!("{branch} crosses here, at {event}") }
+                        if branch == own {
+                            format!("the same as {event}")
+                        } else {
+                            format!("{branch} crosses here, at {event}")
+                        }
                     };
                     if let Some(event) = finished.branch.events.iter_mut().find(|found| found.name == birth.event) {
                         event.note = other;

@@ -9,7 +9,7 @@
 use armilla_follow::{Hermite, Problem, Station};
 use armilla_record::{Criticality, EventKind};
 use armilla_stability::{
-    BranchingForm, Crossing, CriticalSlope, EquilibriumPoint, EquilibriumProblem, EquilibriumTangent, HopfForm,
+    BranchingForm, CriticalSlope, Crossing, EquilibriumPoint, EquilibriumProblem, EquilibriumTangent, HopfForm,
     LocatedRest, RestEvent, WATCH_CROSSING, WATCH_TURN,
 };
 
@@ -55,11 +55,7 @@ impl Change {
     fn between(before: &RestStation, after: &RestStation) -> Self {
         let changes = |index: usize| before.watch.values[index].value * after.watch.values[index].value < 0.0;
         let count = |station: &RestStation| station.watch.unstable_count as isize;
-        Self {
-            turns: changes(WATCH_TURN),
-            crosses: changes(WATCH_CROSSING),
-            count: count(after) - count(before),
-        }
+        Self { turns: changes(WATCH_TURN), crosses: changes(WATCH_CROSSING), count: count(after) - count(before) }
     }
 
     fn is_none(self) -> bool {
@@ -239,7 +235,9 @@ pub(crate) fn hopf_side(form: Option<&HopfForm>) -> (Option<Criticality>, String
         Some(form) if form.is_sure => {
             (Some(side(form.l1 < 0.0)), format!("first Lyapunov coefficient l1 = {:.6e}", form.l1))
         }
-        Some(_) => (None, "the first Lyapunov coefficient vanishes to rounding: degenerate, the side is not told".into()),
+        Some(_) => {
+            (None, "the first Lyapunov coefficient vanishes to rounding: degenerate, the side is not told".into())
+        }
         None => (None, "its normal form could not be computed: the side is not told".into()),
     }
 }

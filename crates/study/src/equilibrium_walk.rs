@@ -165,7 +165,9 @@ impl Walker<'_, '_> {
             Some(FollowEnd::Stuck) | None if no_eigenvalues => end(
                 EndReason::Stuck,
                 value,
-                format!("the eigenvalues could not be computed beyond {name} = {here}: the bounded iteration did not end"),
+                format!(
+                    "the eigenvalues could not be computed beyond {name} = {here}: the bounded iteration did not end"
+                ),
             ),
             Some(FollowEnd::Stuck) | None => end(
                 EndReason::Stuck,

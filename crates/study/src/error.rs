@@ -132,9 +132,9 @@ impl std::fmt::Display for StudyError {
             Self::Settling { words, .. } => write!(f, "settling failed: {words}"),
             Self::SettlesAtRest { states, growth } => write!(
                 f,
-                "the motion settles at rest ({}){}; there is no cycle to start from\n    help: start at parameter values \
-                 where the model oscillates (`start: Settle(at: ...)`), or begin farther from rest (`begin` in the \
-                 model file)",
+                "the motion settles at rest ({}){}, but no isolated equilibrium was found there to follow\n    help: start at \
+                 parameter values where the model oscillates (`start: Settle(at: ...)`), or begin farther from rest (`begin` \
+                 in the model file)",
                 listed(states),
                 // At a degenerate state of rest there is no rate of decay to tell.
                 if *growth < 0.0 {

@@ -65,8 +65,7 @@ pub(crate) fn first_solution(
     let cycle = match settled.verdict {
         Verdict::Cycle(cycle) => cycle,
         Verdict::Equilibrium(rest) => {
-            let at_rest =
-                || StudyError::SettlesAtRest { growth: rest.growth(), states: named(study, &rest.state) };
+            let at_rest = || StudyError::SettlesAtRest { growth: rest.growth(), states: named(study, &rest.state) };
             let (problem, point) = equilibrium_at(study, &rest.state).map_err(|_| at_rest())?;
             let entry = Entry::Equilibrium(Box::new(problem), Box::new(point));
             return Ok(First { entry, turns: 1, notes });

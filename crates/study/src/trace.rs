@@ -229,9 +229,7 @@ fn child_lineage(parent: &Lineage, event: &str, way: &Way) -> Lineage {
             turns: 2 * parent.turns,
             line: parent.line.iter().copied().chain([way.threshold()]).collect(),
         },
-        Way::Hopf { .. } | Way::Crossing { .. } => {
-            Lineage { name, born_at, doublings: 0, turns: 1, line: Vec::new() }
-        }
+        Way::Hopf { .. } | Way::Crossing { .. } => Lineage { name, born_at, doublings: 0, turns: 1, line: Vec::new() },
     }
 }
 

@@ -9,8 +9,7 @@ use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_FOLD};
 use crate::ahead::Ahead;
 use crate::approach::{Approach, Known, Past, approach, orbit_stands, resolved};
 use crate::ends::{
-    Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short,
-    stuck_at_rest,
+    Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short, stuck_at_rest,
 };
 use crate::guards::{bends, falls_on_shorter, leaps};
 use crate::joins::Atlas;

@@ -50,10 +50,8 @@ fn a_parabola_across_a_line() {
 /// Lorenz 1963: the origin loses its stability at r = 1 exactly, and a pair x = y = ±sqrt(b (r - 1)), z = r - 1 is born.
 #[test]
 fn the_pair_of_convection() {
-    let traced = job(
-        "lorenz",
-        r#"start: Equilibrium(near: {}), set: {"r": 0.5}, follow: (parameter: "r", from: 0.1, to: 20)"#,
-    );
+    let traced =
+        job("lorenz", r#"start: Equilibrium(near: {}), set: {"r": 0.5}, follow: (parameter: "r", from: 0.1, to: 20)"#);
     assert!(traced.shortfalls.is_empty(), "{:?}", traced.shortfalls);
     let found = event(&traced, "a/pitchfork1");
     within("pitchfork", (found.value, found.error), (1.0, 0.0), 1e-12);

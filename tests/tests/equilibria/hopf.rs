@@ -95,7 +95,8 @@ fn on_the_way_to_a_torus() {
 /// 7.156919921179870 (independent: shooting with a Taylor integrator in 113-bit arithmetic).
 #[test]
 fn brusselator() {
-    let traced = job("x10", r#"start: Equilibrium(near: {}), follow: (parameter: "B", from: 1.5, to: 4), targets: [3]"#);
+    let traced =
+        job("x10", r#"start: Equilibrium(near: {}), follow: (parameter: "B", from: 1.5, to: 4), targets: [3]"#);
     told(&traced);
     check(event(&traced, "a/hopf1"), (2.0, 0.0), (std::f64::consts::TAU, 0.0), 1e-13);
     born_there(&traced, "a.hopf1");

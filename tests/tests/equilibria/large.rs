@@ -10,9 +10,7 @@ use armilla_tests::{branch, within};
 fn ring(folder: &Path, n: usize, (from, to): (f64, f64), branches: usize) -> Traced {
     let at = |k: usize| format!("x{}", k % n);
     let states: Vec<String> = (0..n).map(|k| format!("\"x{k}\": (begin: 0.5)")).collect();
-    let rate = |k: usize| {
-        format!("\"x{k}\": \"{}*({} - {}) - x{k} + F\"", at(k + n - 1), at(k + 1), at(k + n - 2))
-    };
+    let rate = |k: usize| format!("\"x{k}\": \"{}*({} - {}) - x{k} + F\"", at(k + n - 1), at(k + 1), at(k + n - 2));
     let rates: Vec<String> = (0..n).map(rate).collect();
     let model = format!(
         "(states: {{{}}}, parameters: {{\"F\": (value: 0.85)}}, rates: {{{}}})",
@@ -46,10 +44,14 @@ fn exact(n: usize, (from, to): (f64, f64)) -> Vec<(f64, f64)> {
 fn check(n: usize, range: (f64, f64), branches: usize) -> Traced {
     let place = tempfile::tempdir().expect("a temporary folder");
     let traced = ring(place.path(), n, range, branches);
-    let found: Vec<&Event> =
-        branch(&traced, "a").events.iter().filter(|event| event.kind == EventKind::Hopf).collect();
+    let found: Vec<&Event> = branch(&traced, "a").events.iter().filter(|event| event.kind == EventKind::Hopf).collect();
     let exact = exact(n, range);
-    assert_eq!(found.len(), exact.len(), "{n} states: {:?} for {exact:?}", found.iter().map(|e| e.value).collect::<Vec<_>>());
+    assert_eq!(
+        found.len(),
+        exact.len(),
+        "{n} states: {:?} for {exact:?}",
+        found.iter().map(|e| e.value).collect::<Vec<_>>()
+    );
     for (hopf, (value, period)) in found.iter().zip(exact) {
         // The cosines of the reference are good to some units in the last place.
         within(&hopf.name, (hopf.value, hopf.error), (value, 1e-14), 1e-12);

@@ -21,7 +21,8 @@ fn settling_at_rest_goes_on() {
 /// A start on the Hopf point itself still finds it: X1 at mu = 0.
 #[test]
 fn a_start_on_an_event() {
-    let fields = r#"start: Equilibrium(near: {"x": 0, "y": 0}), set: {"mu": 0}, follow: (parameter: "mu", from: -0.5, to: 0.5)"#;
+    let fields =
+        r#"start: Equilibrium(near: {"x": 0, "y": 0}), set: {"mu": 0}, follow: (parameter: "mu", from: -0.5, to: 0.5)"#;
     let traced = job("x1", fields);
     let hopfs = || traced.branches.iter().flat_map(|branch| &branch.events).filter(|e| e.kind == EventKind::Hopf);
     assert_eq!(hopfs().count(), 1, "{:?}", hopfs().map(|e| (&e.name, e.value)).collect::<Vec<_>>());
@@ -32,7 +33,8 @@ fn a_start_on_an_event() {
 /// A range that ends on the Hopf point: X1 up to mu = 0, where the cycles lead out of it.
 #[test]
 fn an_event_on_the_edge() {
-    let fields = r#"start: Equilibrium(near: {"x": 0}), set: {"mu": -0.2}, follow: (parameter: "mu", from: -0.5, to: 0)"#;
+    let fields =
+        r#"start: Equilibrium(near: {"x": 0}), set: {"mu": -0.2}, follow: (parameter: "mu", from: -0.5, to: 0)"#;
     let traced = job("x1", fields);
     let hopf = event(&traced, "a/hopf1");
     assert!(hopf.value.abs() < 1e-14);

@@ -84,11 +84,12 @@ impl EquilibriumProblem {
             let (sine, cosine) = (TAU * time).sin_cos();
             let (sine2, cosine2) = (2.0 * TAU * time).sin_cos();
             for i in 0..n {
-                let mut value = hopf.point.state[i] + match form {
-                    // In the phase of the normal form's own q.
-                    Some(form) => 2.0 * modulus * (form.q.re[i] * cosine - form.q.im[i] * sine),
-                    None => r * (q.re[i] * cosine - q.im[i] * sine),
-                };
+                let mut value = hopf.point.state[i]
+                    + match form {
+                        // In the phase of the normal form's own q.
+                        Some(form) => 2.0 * modulus * (form.q.re[i] * cosine - form.q.im[i] * sine),
+                        None => r * (q.re[i] * cosine - q.im[i] * sine),
+                    };
                 if let Some(form) = form {
                     let bent = form.h11[i] + form.h20.re[i] * cosine2 - form.h20.im[i] * sine2;
                     value += modulus * modulus * bent + offset * form.shift[i];

@@ -65,8 +65,7 @@ impl Local {
     /// [`Fault::NotFinite`].
     pub(crate) fn linearise(&mut self, point: &EquilibriumPoint) -> Result<(), Fault> {
         let at = Self::batch(&mut self.parameters, self.free, point);
-        let out =
-            Linearisation { rates: &mut self.rates, jacobian: &mut self.jacobian, columns: &mut self.column };
+        let out = Linearisation { rates: &mut self.rates, jacobian: &mut self.jacobian, columns: &mut self.column };
         self.evaluator.linearise(at, out);
         let bad_entry = || {
             let bad = self.entries.iter().zip(&self.jacobian).find(|(_, value)| !value.is_finite());

@@ -34,11 +34,7 @@ pub enum RestEvent {
 #[derive(Clone, Debug, PartialEq)]
 pub(crate) enum Vectors {
     /// `A v = 0`, `psi^T A = 0`; at a branching besides y with `A y = f_p`.
-    Real {
-        v: Vec<f64>,
-        psi: Vec<f64>,
-        y: Vec<f64>,
-    },
+    Real { v: Vec<f64>, psi: Vec<f64>, y: Vec<f64> },
     /// `A q = i omega q`, `psi^H A = i omega psi^H`.
     Complex { q: Complex, psi: Complex },
 }

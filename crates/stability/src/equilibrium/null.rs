@@ -81,13 +81,8 @@ impl BorderSizes {
 impl RealNull {
     /// Vectors of the eigenvalue nearest to `lambda`.
     pub(crate) fn find(systems: &mut Systems, jacobian: &[f64], lambda: f64, sizes: &BorderSizes) -> Option<Self> {
-        let mut null = Self {
-            v: Vec::new(),
-            psi: Vec::new(),
-            g: 0.0,
-            column: sizes.generic_column(3),
-            row: sizes.generic_row(2),
-        };
+        let mut null =
+            Self { v: Vec::new(), psi: Vec::new(), g: 0.0, column: sizes.generic_column(3), row: sizes.generic_row(2) };
         for round in 0..ROUNDS {
             if round > 0 {
                 null.refresh(sizes);

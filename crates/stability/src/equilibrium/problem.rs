@@ -226,11 +226,7 @@ impl EquilibriumProblem {
     }
 
     /// Corrects with the parameter held.
-    pub(crate) fn correct_at(
-        &mut self,
-        point: &mut EquilibriumPoint,
-        value: f64,
-    ) -> Result<Course, Failure<Fault>> {
+    pub(crate) fn correct_at(&mut self, point: &mut EquilibriumPoint, value: f64) -> Result<Course, Failure<Fault>> {
         let row = EquilibriumTangent { state: vec![0.0; point.state.len()], parameter: 1.0 };
         let course = self.newton(point, &row, value)?;
         // The row meets the value up to rounding; the user asked for the value.

@@ -48,7 +48,9 @@ impl EquilibriumProblem {
         let mut problem = Self::new(spec);
         let guess = EquilibriumPoint { state: near.to_vec(), parameter };
         let scales = problem.metric.scales.iter_mut().zip(near).zip(&problem.spec.typical);
-        scales.for_each(|((scale, x), typical)| *scale = if *typical > 0.0 { typical.max(x.abs()) } else { scale.max(x.abs()) });
+        scales.for_each(|((scale, x), typical)| {
+            *scale = if *typical > 0.0 { typical.max(x.abs()) } else { scale.max(x.abs()) }
+        });
         let mut point = problem.damped(guess)?;
         let near = point.clone();
         if problem.correct_at(&mut point, parameter).is_err() {

@@ -132,10 +132,7 @@ impl Complex {
     /// `self^H other`.
     pub(crate) fn product(&self, other: &Self) -> (f64, f64) {
         let sum = |a: &[f64], b: &[f64]| a.iter().zip(b).map(|(a, b)| a * b).sum::<f64>();
-        (
-            sum(&self.re, &other.re) + sum(&self.im, &other.im),
-            sum(&self.re, &other.im) - sum(&self.im, &other.re),
-        )
+        (sum(&self.re, &other.re) + sum(&self.im, &other.im), sum(&self.re, &other.im) - sum(&self.im, &other.re))
     }
 
     /// Times a complex number.
