@@ -34,7 +34,7 @@ fn a_line_of_equilibria() {
         assert!((point.state[2] - point.parameter.powi(2)).abs() < 1e-13, "{point:?}");
         let row = problem.describe(&point, 0.0).expect("eigenvalues");
         assert_eq!(count, if point.parameter > 0.0 { 2 } else { 0 });
-        let mut exact = [(point.parameter, 1.0), (point.parameter, -1.0), (-1.0, 0.0)];
+        let mut exact: [(f64, f64); 3] = [(point.parameter, 1.0), (point.parameter, -1.0), (-1.0, 0.0)];
         exact.sort_by(|a, b| b.0.total_cmp(&a.0).then(b.1.total_cmp(&a.1)));
         for (found, (re, im)) in row.eigenvalues.iter().zip(exact) {
             assert!((found.re - re).abs() < 1e-13 && (found.im - im).abs() < 1e-13, "{found:?} for {re} {im}");

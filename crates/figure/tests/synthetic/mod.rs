@@ -1,7 +1,7 @@
 //! Branches made by formula, with the shapes that figures must show.
 
 use armilla_record::{
-    Branch, Criticality, End, EndReason, Event, EventKind, Multiplier, Point, Profile, Quantity, nodes,
+    Branch, Criticality, End, EndReason, Event, EventKind, Multiplier, Point, Profile, Quantity, Solutions, nodes,
 };
 
 /// What a synthetic cycle is at a distance along its branch.
