@@ -96,6 +96,16 @@ fn a_crossing_is_decided_and_entered() {
     }
 }
 
+/// Between x0 = 0.4 and the root x = -1.3247... of x^3 - x + 1 the derivative 3 x^2 - 1 vanishes twice: a damped iteration stands
+/// at x = 0.577, and the way round it finds the root (by hand, Cardano's formula).
+#[test]
+fn a_start_beyond_a_singular_place() {
+    let model = r#"(states: {"x": (begin: 0.4)}, parameters: {"p": (value: 1)}, rates: {"x": "x^3 - x + p"})"#;
+    let (_, found) = EquilibriumProblem::start(spec(model, 1.0), &[0.7], 1.0).expect("a root");
+    let root = (69f64.sqrt() / 18.0 + 0.5).cbrt() + (0.5 - 69f64.sqrt() / 18.0).cbrt();
+    assert!((found.state[0] + root).abs() < 1e-14, "{found:?} for {}", -root);
+}
+
 /// No root: x^2 + 1; no isolated root: a rate of zeros.
 #[test]
 fn starts_without_an_equilibrium() {

@@ -2,6 +2,7 @@
 
 mod birth;
 mod branching;
+mod homotopy;
 mod hopf;
 mod local;
 mod locate;

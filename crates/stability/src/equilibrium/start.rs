@@ -2,10 +2,12 @@
 //!
 //! Newton's method, damped by the natural monotonicity test: a step is halved until the correction that the next iterate
 //! asks for, with the same Jacobian, is shorter (Deuflhard 2004, Newton Methods for Nonlinear Problems, Springer, sec.
-//! 3.3). The test does not depend on the units of the rates.
+//! 3.3). The test does not depend on the units of the rates. Where the iteration comes to stand at a singular Jacobian, the
+//! curve of [`super::homotopy`] goes round it.
 
 use armilla_collocation::Fault;
 
+use super::homotopy::lead;
 use super::point::EquilibriumPoint;
 use super::problem::{EquilibriumProblem, EquilibriumSpec};
 use super::systems::Border;
@@ -51,7 +53,15 @@ impl EquilibriumProblem {
         scales.for_each(|((scale, x), typical)| {
             *scale = if *typical > 0.0 { typical.max(x.abs()) } else { scale.max(x.abs()) }
         });
-        let mut point = problem.damped(guess)?;
+        let mut point = match problem.damped(guess.clone()) {
+            Ok(point) => point,
+            Err(fault @ RestFault::NotFinite { .. }) => return Err(fault),
+            // The damped iteration stands where the Jacobian is singular; the curve goes on through there.
+            Err(fault) => match lead(&problem.spec, &guess) {
+                Some(state) => EquilibriumPoint { state, parameter },
+                None => return Err(fault),
+            },
+        };
         let near = point.clone();
         if problem.correct_at(&mut point, parameter).is_err() {
             return Err(RestFault::NotConverged { states: near.state, correction: NEAR });
