@@ -1,6 +1,6 @@
 //! The closing table of a run.
 
-use armilla_record::{Branch, CascadeRow, Event, Solutions, Unresolved};
+use armilla_record::{Branch, CascadeRow, Event, EventKind, Solutions, Unresolved};
 
 use crate::columns::aligned;
 
@@ -33,7 +33,11 @@ fn row(event: &Event) -> [String; 7] {
         None => String::new(),
     };
     // An equilibrium has no period and no turns; at a Hopf point those of the cycles born are told.
-    let period = if event.period == 0.0 { String::new() } else { supported(event.period, event.period_error) };
+    let period = match event.kind {
+        EventKind::PeriodBlowUp => "unbounded".into(),
+        _ if event.period == 0.0 => String::new(),
+        _ => supported(event.period, event.period_error),
+    };
     let turns = if event.turns == 0 { String::new() } else { event.turns.to_string() };
     [
         event.name.clone(),

@@ -17,7 +17,7 @@ const MULTIPLIERS: f64 = 0.5;
 /// Share of a watched value by which it may miss the straight line through the two stations before: a bump half as wide as a
 /// stride shows by more at the stations beside it, while the values of ordinary branches bend by less. More misses bumps,
 /// less costs strides.
-const STRAIGHT: f64 = 0.2;
+const STRAIGHT: f64 = 0.15;
 /// Watched value below which that is not asked: an event is near, and dips are searched for there anyway.
 const FAR: f64 = 0.1;
 /// Share of the difference between turns that a step must leave of it.
