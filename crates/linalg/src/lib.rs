@@ -3,7 +3,8 @@
 //! One elimination serves everything the cycle problem asks except its spectrum: [`Cyclic`] condenses
 //! each interval and reduces the chain, [`Bordered`] closes it with a factor sigma and k border rows and
 //! columns, and solves or solves transposed as often as asked. The spectrum comes from the sequence of
-//! interval maps, [`PeriodicSchur`]. This crate does not know where matrices come from.
+//! interval maps, [`PeriodicSchur`]. States of rest ask for [`eigenvalues()`] and for systems of fixed sparsity,
+//! [`Patterned`]. This crate does not know where matrices come from.
 //!
 //! ```
 //! use armilla_linalg::{Bordered, Cyclic, Right, Shape};
@@ -29,11 +30,15 @@ mod bordered;
 mod chain;
 mod cyclic;
 mod dense;
+mod eigenvalues;
 mod factors;
 mod interval;
+mod patterned;
 mod periodic;
 
 pub use bordered::{Bordered, DeterminantSign, Right};
 pub use cyclic::{Cyclic, Shape, Singular};
 pub use dense::Lu;
+pub use eigenvalues::{Eigenvalue, Eigenvalues, eigenvalues};
+pub use patterned::Patterned;
 pub use periodic::{NotConverged, PeriodicSchur, ScaledMultiplier};

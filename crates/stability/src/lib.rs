@@ -43,6 +43,7 @@ mod align;
 mod copies;
 mod degenerate;
 mod dip;
+mod equilibrium;
 mod forced;
 mod locate;
 mod measure;
@@ -60,6 +61,10 @@ mod test_function;
 pub use armilla_collocation::{Fault, MapsFault, TooStiff};
 pub use degenerate::{Degeneracy, Term, degeneracy};
 pub use dip::Dip;
+pub use equilibrium::{
+    BranchingForm, CriticalSlope, Crossing, EquilibriumPoint, EquilibriumProblem, EquilibriumSpec, EquilibriumTangent,
+    HopfForm, LocatedRest, RestEvent, RestFault, WATCH_CROSSING, WATCH_TURN, birth_row,
+};
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;
 pub use normal_form::DoublingForm;

@@ -64,6 +64,11 @@ pub enum StudyError {
         /// Why.
         reason: String,
     },
+    /// No equilibrium was found, or it cannot be followed.
+    NoEquilibrium {
+        /// Why.
+        reason: String,
+    },
     /// Cycles come in families, so that none is singled out by the parameters.
     Families {
         /// Why.
@@ -106,7 +111,7 @@ impl StudyError {
                 ErrorClass::Input
             }
             Self::Settling { .. } | Self::SettlesAtRest { .. } | Self::DidNotSettle { .. } => ErrorClass::NotReached,
-            Self::NoCycle { .. } | Self::NoCycleInSamples { .. } => ErrorClass::NotReached,
+            Self::NoCycle { .. } | Self::NoCycleInSamples { .. } | Self::NoEquilibrium { .. } => ErrorClass::NotReached,
         }
     }
 }
@@ -134,9 +139,9 @@ impl std::fmt::Display for StudyError {
             Self::Settling { words, .. } => write!(f, "settling failed: {words}"),
             Self::SettlesAtRest { states, growth } => write!(
                 f,
-                "the motion settles at rest ({}){}; there is no cycle to start from\n    help: start at parameter values \
-                 where the model oscillates (`start: Settle(at: ...)`), or begin farther from rest (`begin` in the \
-                 model file)",
+                "the motion settles at rest ({}){}, but no isolated equilibrium was found there to follow\n    help: start at \
+                 parameter values where the model oscillates (`start: Settle(at: ...)`), or begin farther from rest (`begin` \
+                 in the model file)",
                 listed(states),
                 // At a degenerate state of rest there is no rate of decay to tell.
                 if *growth < 0.0 {
@@ -160,6 +165,11 @@ impl std::fmt::Display for StudyError {
                 f,
                 "no cycle of the model was found near the samples: {reason}\n    help: check that the parameters (`set`) are \
                  those of the samples and their units those of the model, and state the `period` where it is known"
+            ),
+            Self::NoEquilibrium { reason } => write!(
+                f,
+                "no equilibrium to follow: {reason}\n    help: give states nearer to one, `start: Equilibrium(near: {{ ... \
+                 }})`, or let the motion settle, `start: Settle(at: {{ ... }})`"
             ),
             Self::Families { reason, instead } => write!(
                 f,

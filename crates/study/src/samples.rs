@@ -11,6 +11,7 @@ use armilla_flow::{on_mesh_of_motion, turns_of};
 use armilla_record::{Profile, Samples, SamplesError};
 use armilla_stability::{CyclePoint, CycleProblem};
 
+use crate::branch::Entry;
 use crate::error::StudyError;
 use crate::file::Start;
 use crate::progress::{Observer, Progress};
@@ -62,7 +63,8 @@ pub(crate) fn first_from_samples(
                     let told = Told { period, estimated: given.is_none() && periods.is_none(), distance };
                     let notes = table.notes(&told, &measured, &smooth);
                     notes.iter().for_each(|note| observer.notice(Progress::Note(note)));
-                    return Ok(First { problem, point, turns, notes });
+                    let entry = Entry::Cycle(Box::new(problem), Box::new(point));
+                    return Ok(First { entry, turns, notes });
                 }
                 why = format!(
                     "the nearest one that was met lies {} of the range from them, root mean square",
@@ -77,14 +79,16 @@ pub(crate) fn first_from_samples(
     let smooth = folded.smooth(1.0);
     let mut state = vec![0.0; folded.n];
     smooth.at(0.0, &mut state);
-    if let Ok(mut first) = settled(study, &state, None, (abort, &mut *observer)) {
-        let shift = if first.problem.is_forced() { 0.0 } else { 0.5 };
-        let distance = measured.distance(&first.problem.profile(&first.point), (&folded, period), shift);
+    if let Ok(First { entry: Entry::Cycle(problem, point), turns, .. }) =
+        settled(study, &state, None, (abort, &mut *observer))
+    {
+        let shift = if problem.is_forced() { 0.0 } else { 0.5 };
+        let distance = measured.distance(&problem.profile(&point), (&folded, period), shift);
         if distance <= ELSEWHERE {
             let told = Told { period, estimated: given.is_none() && periods.is_none(), distance };
-            first.notes = table.notes(&told, &measured, &smooth);
-            first.notes.iter().for_each(|note| observer.notice(Progress::Note(note)));
-            return Ok(first);
+            let notes = table.notes(&told, &measured, &smooth);
+            notes.iter().for_each(|note| observer.notice(Progress::Note(note)));
+            return Ok(First { entry: Entry::Cycle(problem, point), turns, notes });
         }
     }
     Err(StudyError::NoCycleInSamples { reason: why })

@@ -8,12 +8,13 @@ use armilla_figure::Figure;
 use armilla_record::{Branch, CascadeRow, EndReason, EventKind, Reached, RecordError, Results, Threshold};
 use armilla_stability::Born;
 
-use crate::branch::{Entry, Finished, Lineage, Run, Switchable, Way, follow_branch};
+use crate::branch::{Entry, Finished, Lineage, Parent, Run, Switchable, Way, follow_branch};
 use crate::cascade::cascade;
+use crate::equilibrium_births::{Crossings, ends_where_born, enter};
 use crate::error::StudyError;
 use crate::joins::Atlas;
 use crate::progress::Observer;
-use crate::start::first_cycle;
+use crate::start::first_solution;
 use crate::step_events::LOCATED_BY_BRACKET;
 use crate::study::Study;
 
@@ -57,7 +58,9 @@ impl Waiting {
     fn birth_value(&self) -> f64 {
         match &self.entry {
             Entry::Cycle(_, point) => point.unknowns.parameter,
-            Entry::Birth(born) => born.birth.unknowns.parameter,
+            Entry::Birth(born) | Entry::Hopf(born, _) => born.birth.unknowns.parameter,
+            Entry::Equilibrium(_, point) => point.parameter,
+            Entry::Crossing(_, from) => from.birth.parameter,
         }
     }
 }
@@ -70,7 +73,7 @@ impl Waiting {
 pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Observer) -> Result<Traced, StudyError> {
     let folder = options.folder.clone().unwrap_or_else(|| study.results_folder());
     let mut results = Results::create(&folder, options.replace)?;
-    let first = first_cycle(study, options.abort, observer)?;
+    let first = first_solution(study, options.abort, observer)?;
     results.write_study(&study.understood())?;
     let mut traced = Traced {
         branches: Vec::new(),
@@ -81,8 +84,8 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         interrupted: false,
     };
     let lineage = Lineage { name: "a".into(), born_at: None, doublings: 0, turns: first.turns, line: Vec::new() };
-    let entry = Entry::Cycle(Box::new(first.problem), Box::new(first.point));
-    let mut queue = VecDeque::from([Waiting { lineage, entry }]);
+    let mut queue = VecDeque::from([Waiting { lineage, entry: first.entry }]);
+    let mut crossings = Crossings::default();
     let mut points_left = study.file.pursue.points;
     let mut atlas = Atlas::default();
     while let Some(waiting) = queue.pop_front() {
@@ -99,7 +102,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         let lineage = waiting.lineage.clone();
         let mut finished = match follow_branch(&mut run, &lineage, waiting.entry) {
             Ok(finished) => finished,
-            Err(StudyError::NoCycle { reason }) if lineage.born_at.is_some() => {
+            Err(StudyError::NoCycle { reason } | StudyError::NoEquilibrium { reason }) if lineage.born_at.is_some() => {
                 traced.shortfalls.push(format!("branch {} could not be followed: {reason}", lineage.name));
                 continue;
             }
@@ -108,6 +111,9 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         points_left = run.points_left;
         atlas.add(std::mem::take(&mut finished.followed));
         drop_other_end(study, &lineage, &mut finished.branch, &mut queue);
+        drop_born_here(study, &mut finished.branch, &mut queue);
+        let met = crossings.sift(study, &mut finished);
+        queue.retain(|waiting| waiting.lineage.born_at.as_ref().is_none_or(|event| !met.contains(event)));
         results.write_branch(&finished.branch)?;
         if options.abort.load(Ordering::Relaxed) {
             traced.branches.push(finished.branch);
@@ -157,6 +163,17 @@ fn drop_other_end(study: &Study, lineage: &Lineage, branch: &mut Branch, queue: 
     }
 }
 
+/// A branch of cycles that ends at a Hopf point where another waits to be entered has been followed from both ends.
+fn drop_born_here(study: &Study, branch: &mut Branch, queue: &mut VecDeque<Waiting>) {
+    let here = |waiting: &Waiting| ends_where_born(study, branch, &waiting.entry);
+    if let Some(at) = queue.iter().position(here)
+        && let Some(waiting) = queue.remove(at)
+        && let Some(met) = &waiting.lineage.born_at
+    {
+        branch.ends.1.words.push_str(&format!("; this is {met}, and the branch born there is this one"));
+    }
+}
+
 /// The branches born at the events of a finished one.
 fn children(
     study: &Study,
@@ -177,15 +194,19 @@ fn children(
             ));
             continue;
         }
-        let born = match way {
-            Way::Doubling { located, form } => finished.problem.double(located, form.as_ref()),
+        let entry = match (way, &finished.problem) {
+            (Way::Doubling { located, form }, Parent::Cycles(problem)) => problem
+                .double(located, form.as_ref())
+                .map(|born| Entry::Birth(Box::new(born)))
+                .map_err(|fault| fault.to_string()),
+            (way, Parent::Equilibria(problem)) => enter(study, problem, way),
+            (_, Parent::Cycles(_)) => continue,
         };
-        match born {
+        match entry {
             Err(fault) => shortfalls.push(format!("at {event} {fault}")),
             // Born on the edge of the range and leading out of it: nothing to follow.
-            Ok(born) if is_outside(study, &born) => {}
-            Ok(born) => children
-                .push(Waiting { lineage: child_lineage(lineage, event, way), entry: Entry::Birth(Box::new(born)) }),
+            Ok(Entry::Birth(born) | Entry::Hopf(born, _)) if is_outside(study, &born) => {}
+            Ok(entry) => children.push(Waiting { lineage: child_lineage(lineage, event, way), entry }),
         }
     }
     children
@@ -208,6 +229,7 @@ fn child_lineage(parent: &Lineage, event: &str, way: &Way) -> Lineage {
             turns: 2 * parent.turns,
             line: parent.line.iter().copied().chain([way.threshold()]).collect(),
         },
+        Way::Hopf { .. } | Way::Crossing { .. } => Lineage { name, born_at, doublings: 0, turns: 1, line: Vec::new() },
     }
 }
 
@@ -282,6 +304,7 @@ fn shortfalls(study: &Study, branches: &[Branch], cascade_only: bool) -> Vec<Str
                     | EndReason::Equilibrium { .. }
                     | EndReason::ReturnsToParent
                     | EndReason::Joins { .. }
+                    | EndReason::Unbounded
                     | EndReason::PeriodBlowUp
             );
             if !reached && !cascade_only {
