@@ -73,7 +73,7 @@ fn ranges(profile: &Profile) -> Vec<f64> {
 /// measured in units, as in an equation that is linear and has no size of its own.
 pub(crate) fn metric_under_forcing(profile: &Profile, (sizes, still): (&[f64], f64), parameter_scale: f64) -> Metric {
     let known: Vec<f64> = sizes.iter().map(|size| if *size > 0.0 { *size } else { 1.0 }).collect();
-    first_metric(profile, (&known, still), parameter_scale).unwrap_or_else(|| Metric {
+    first_metric(profile, (&known, still), parameter_scale).unwrap_or(Metric {
         scales: known,
         period_scale: profile.period,
         parameter_scale,
