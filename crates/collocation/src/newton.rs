@@ -262,8 +262,14 @@ pub enum Scalar {
 /// system's last factors.
 pub fn roundoff(bordered: &mut Bordered, system: &System, scalar: Scalar, closing: f64) -> f64 {
     let asked = if scalar == Scalar::Period { [1.0, 0.0] } else { [0.0, 1.0] };
+    roundoff_of(bordered, system, (&[], asked), closing)
+}
+
+/// [`roundoff`] of a linear functional of the unknowns: its part over the nodes (empty for none), and over period and
+/// parameter.
+fn roundoff_of(bordered: &mut Bordered, system: &System, (nodes, scalars): (&[f64], [f64; 2]), closing: f64) -> f64 {
     let (mut psi, mut chi) = (vec![0.0; system.shape().core_len()], [0.0; 2]);
-    bordered.solve_transposed(system.cyclic(), &[], &asked, &mut psi, &mut chi);
+    bordered.solve_transposed(system.cyclic(), nodes, &scalars, &mut psi, &mut chi);
     let mut sizes = vec![0.0; psi.len()];
     system.row_sizes(&mut sizes);
     let sum: f64 = psi.iter().zip(&sizes).map(|(psi, size)| (psi * size).powi(2)).sum();
@@ -274,6 +280,12 @@ impl Workspace {
     /// [`roundoff`] after [`correct_with`] has converged on the system's mesh; 0 before any correction.
     pub fn roundoff(&mut self, system: &System, scalar: Scalar, closing: f64) -> f64 {
         self.bordered.as_mut().map_or(0.0, |bordered| roundoff(bordered, system, scalar, closing))
+    }
+
+    /// Roundoff of a linear functional of the unknowns, as [`Workspace::roundoff`].
+    pub fn roundoff_along(&mut self, system: &System, row: &Row, closing: f64) -> f64 {
+        let asked = (&row.nodes[..], [row.period, row.parameter]);
+        self.bordered.as_mut().map_or(0.0, |bordered| roundoff_of(bordered, system, asked, closing))
     }
 
     /// One Newton iteration with a full step, applied to `at` whatever its size; no allocation once sized. For callers

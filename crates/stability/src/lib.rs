@@ -52,6 +52,8 @@ mod scale;
 mod spectrum;
 mod switch;
 mod test_function;
+mod torus;
+mod torus_function;
 
 pub use armilla_collocation::{Fault, MapsFault, TooStiff};
 pub use dip::Dip;
@@ -65,3 +67,5 @@ pub use problem::{
 pub use spectrum::{Spectrum, SpectrumFault, SpectrumSolver};
 pub use switch::{Born, SplitChange, SwitchFault};
 pub use test_function::{CriticalKind, NullVectors, TestFunction};
+pub use torus::{LocatedTorus, TorusForm};
+pub use torus_function::ComplexVectors;

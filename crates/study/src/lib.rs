@@ -22,6 +22,7 @@
 
 mod ahead;
 mod approach;
+mod beyond;
 mod branch;
 mod cascade;
 mod ends;
@@ -37,11 +38,13 @@ mod settings;
 mod start;
 mod step_events;
 mod study;
+mod torus_event;
 mod trace;
 mod valley;
 mod walk;
 mod words;
 
+pub use beyond::beyond;
 pub use error::{ErrorClass, StudyError};
 pub use file::{DEFAULT_ACCURACY, Follow, MeshOverride, Pursue, Start, StrideOverride, StudyFile, Values};
 pub use progress::{Observer, Progress, Silent};

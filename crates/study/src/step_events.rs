@@ -9,6 +9,7 @@ use armilla_stability::{
 
 use crate::guards::smooth_values;
 use crate::ledger::{Change, Part, narrowed, parts, stands_on};
+use crate::torus_event::{self, REAL};
 use crate::valley::valley;
 use crate::walk::{CycleStation, WalkPlan};
 
@@ -84,6 +85,10 @@ pub(crate) fn events_on_edge(
         [(WATCH_TORUS, EventKind::Torus, change.pair), (WATCH_BRANCHING, EventKind::Branching, change.passes_one)];
     for (index, kind, seen) in bracketed {
         if stands_on(after, index) && !seen {
+            if let Some(torus) = (index == WATCH_TORUS).then(|| torus_event::at(problem, after, plan)).flatten() {
+                found.push(torus);
+                continue;
+            }
             let width = plan.study.range.1 - plan.study.range.0;
             let note = "on the edge of the range to within what the multipliers tell";
             let mut event = unresolved(after, (after.point.unknowns.parameter, EDGE * width), note.into(), plan);
@@ -147,7 +152,8 @@ fn events_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, 
     if change.passes_one && !change.turns && is_gap(problem, part) {
         findings.jumped = true;
     } else if !change.is_explained() && !change.turns || change.pair && change.count > 0 {
-        findings.found.push(remaining_change(problem, part, plan));
+        let torus = if change.pair { torus_event::between(problem, (&part.before, &part.after), plan) } else { None };
+        findings.found.push(torus.unwrap_or_else(|| remaining_change(problem, part, plan)));
     }
 }
 
@@ -323,9 +329,6 @@ fn period_error_between(problem: &mut CycleProblem, low: &CycleStation, high: &C
     };
     (high.point.unknowns.period - period).abs() + own
 }
-
-/// Angle from the real axis within which a pair may be two real multipliers that the accuracy does not tell apart.
-const REAL: f64 = 1e-4;
 
 /// An event that is known by an interval of the parameter; its period is that of the station, known to its profile's
 /// accuracy only.
