@@ -146,6 +146,15 @@ pub fn correct(
 /// state far from zero that hardly moves cannot be had to more digits. A conditioning of a hundred is allowed for.
 const FLOOR_UNITS: f64 = 100.0;
 
+impl NewtonSettings {
+    /// The same with a floor that allows for the rounding of these node values.
+    #[must_use]
+    pub fn for_nodes(self, system: &System, nodes: &[f64]) -> Self {
+        let floor = FLOOR_UNITS * f64::EPSILON * system.spec().metric.largest(nodes);
+        Self { floor: self.floor.max(floor), ..self }
+    }
+}
+
 /// What [`correct_with`] is to do.
 pub struct Task<'a> {
     /// Node values of the phase condition.
@@ -166,8 +175,7 @@ pub fn correct_with(
     at: &mut Iterate,
     task: Task<'_>,
 ) -> Result<Report, Failure> {
-    let mut settings = task.settings;
-    settings.floor = settings.floor.max(FLOOR_UNITS * f64::EPSILON * system.spec().metric.largest(&at.nodes));
+    let settings = task.settings.for_nodes(system, &at.nodes);
     workspace.fit(system);
     system.phase_row(task.reference, &mut workspace.phase);
     let mut report = Report { floor: settings.floor, ..Report::default() };
@@ -206,7 +214,9 @@ pub struct Iteration {
     pub closing_residual: f64,
 }
 
-enum Verdict {
+/// What is to become of a correction.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Verdict {
     /// Apply and go on.
     Go,
     /// Apply: the error left is below the tolerance.
@@ -222,7 +232,8 @@ enum Verdict {
 /// more often.
 const CURVATURE: f64 = 10.0;
 
-fn judge(size: f64, before: Option<f64>, settings: NewtonSettings) -> Verdict {
+/// Judges a correction by its scaled size and that of the one before; for callers with a loop of their own.
+pub fn judge(size: f64, before: Option<f64>, settings: NewtonSettings) -> Verdict {
     /// A correction that shrinks by less than this is no convergence.
     const SLOWEST: f64 = 0.9;
     if !size.is_finite() {

@@ -41,6 +41,9 @@
 mod agreement;
 mod align;
 mod copies;
+mod cross;
+mod crossing;
+mod crossing_system;
 mod dip;
 mod locate;
 mod measure;
@@ -51,11 +54,14 @@ mod resolution;
 mod scale;
 mod spectrum;
 mod switch;
+mod symmetry;
 mod test_function;
 mod torus;
 mod torus_function;
 
 pub use armilla_collocation::{Fault, MapsFault, TooStiff};
+pub use cross::{Crossed, CrossedWay};
+pub use crossing::{Crossing, Estimated, Meeting};
 pub use dip::Dip;
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;
@@ -66,6 +72,7 @@ pub use problem::{
 };
 pub use spectrum::{Spectrum, SpectrumFault, SpectrumSolver};
 pub use switch::{Born, SplitChange, SwitchFault};
+pub use symmetry::{Parity, Symmetry};
 pub use test_function::{CriticalKind, NullVectors, TestFunction};
 pub use torus::{LocatedTorus, TorusForm};
 pub use torus_function::ComplexVectors;

@@ -265,13 +265,13 @@ impl CycleProblem {
 /// Both the coarse and the fine value carry roundoff of the estimated size as a standard deviation; four of them cover
 /// the difference and the truth if rows round independently. Twice that, since they need not: on X3 the doubling was
 /// found a little beyond four from its exact place.
-const ROUNDOFF_MARGIN: f64 = 8.0;
+pub(crate) const ROUNDOFF_MARGIN: f64 = 8.0;
 /// Margin of the share that is left of a difference: parts of the error on the coarse mesh may cancel each other, and the
 /// difference is smaller by such a factor then.
 const CANCELLING: f64 = 2.0;
 /// Units in the last place, of the value or of the range of its parameter, for rounding that acts on every row alike and
 /// that the sum of independent errors leaves out: the basis tables are correct to a few units each.
-const COHERENT_UNITS: f64 = 16.0;
+pub(crate) const COHERENT_UNITS: f64 = 16.0;
 
 /// Scaled size of what Newton's method left to correct: nothing to speak of where it went on falling, the last correction
 /// where it had come to stand still, as beside a second event.

@@ -38,14 +38,14 @@ fn sentences(branch: &Branch, event: &Event) -> String {
     let name = &branch.parameter.name;
     let value = shown(branch.range, event.value);
     let Sides { fewer, unstable_above } = sides(branch, event).unwrap_or(Sides { fewer: 0, unstable_above: None });
-    let side = |above: bool| format!("{name} {} {value}", if above { "above" } else { "below" });
+    let side = |above: bool| format!("for {name} {} {value}", if above { "above" } else { "below" });
     let unstable = unstable_above.map_or_else(|| "where the cycle is unstable".into(), side);
     let stable = unstable_above.map_or_else(|| "where the cycle is stable".into(), |above| side(!above));
     let beat = event.angle.map_or(f64::INFINITY, |angle| event.period * TAU / angle);
     let rhythm = format!("rotation of {} rad a period: a beat every {}", digits(event.angle.unwrap_or(0.0)), digits(beat));
     match event.criticality {
         None => format!(
-            "what lies {unstable} is not decided here (see the note); cycles of several turns, tori and jumps are all \
+            "what comes {unstable} is not decided here (see the note); cycles of several turns, tori and jumps are all \
              possible: simulate there"
         ),
         Some(_) if fewer > 0 => format!(

@@ -5,9 +5,11 @@ use std::sync::atomic::AtomicBool;
 
 use armilla_follow::{Orientation, Problem};
 use armilla_record::{BRANCH_FORMAT, Branch, End, EndReason, Event, EventKind, Point, Quantity, StoredProfile};
-use armilla_stability::{Born, CyclePoint, CycleProblem, CycleTangent, DoublingForm, Located, Measures};
+use armilla_stability::{Born, Crossed, CyclePoint, CycleProblem, CycleTangent, DoublingForm, Located, Measures};
 
 use crate::ahead::Ahead;
+use crate::crossing_event::{Met, symmetry_words};
+use crate::crossings::both_sides;
 use crate::ends::{end, short};
 use crate::error::StudyError;
 use crate::prediction::{Estimate, next_doubling};
@@ -31,7 +33,7 @@ pub(crate) struct Lineage {
     pub born_at: Option<String>,
     pub doublings: usize,
     pub turns: usize,
-    /// Thresholds of the doublings it descends from, its own birth last.
+    /// Thresholds of the doublings in a row that it descends from, its own birth last.
     pub line: Vec<Estimate>,
 }
 
@@ -46,6 +48,8 @@ pub(crate) struct Switchable {
 pub(crate) enum Way {
     /// By a period doubling.
     Doubling { located: Box<Located>, form: Option<DoublingForm> },
+    /// Where it crosses this one.
+    Crossing(Box<Met>),
 }
 
 impl Way {
@@ -54,6 +58,9 @@ impl Way {
         match self {
             Self::Doubling { located, .. } => {
                 Estimate { value: located.point.unknowns.parameter, error: located.error }
+            }
+            Self::Crossing(met) => {
+                Estimate { value: met.crossing.point.unknowns.parameter, error: met.crossing.error }
             }
         }
     }
@@ -72,6 +79,8 @@ pub(crate) enum Entry {
     Cycle(Box<CycleProblem>, Box<CyclePoint>),
     /// A birth on another branch; the branch goes outwards from it.
     Birth(Box<Born>),
+    /// A crossing; the branch goes both ways from it.
+    Crossing(Box<Crossed>),
 }
 
 /// What every branch of a run shares.
@@ -88,9 +97,9 @@ pub(crate) struct Run<'a> {
 }
 
 /// Collects what a walk finds, names events, and passes the news on.
-struct Collector<'r, 'a> {
-    run: &'r mut Run<'a>,
-    lineage: &'r Lineage,
+pub(crate) struct Collector<'r, 'a> {
+    pub(crate) run: &'r mut Run<'a>,
+    pub(crate) lineage: &'r Lineage,
     numbers: HashMap<EventKind, usize>,
     events: Vec<Event>,
     births: Vec<Switchable>,
@@ -119,6 +128,9 @@ impl WalkSink for Collector<'_, '_> {
         if let (EventKind::Doubling, Some(located)) = (found.kind, &found.located) {
             let way = Way::Doubling { located: Box::new(located.clone()), form: found.form };
             self.births.push(Switchable { event: event.name.clone(), way });
+        }
+        if let Some(met) = &found.crossing {
+            self.births.push(Switchable { event: event.name.clone(), way: Way::Crossing(met.clone()) });
         }
         if event.kind.is_threshold() {
             self.run.observer.notice(Progress::Event { name: &event.name, value: event.value });
@@ -159,17 +171,18 @@ pub(crate) fn follow_branch(run: &mut Run<'_>, lineage: &Lineage, entry: Entry) 
     match entry {
         Entry::Cycle(problem, point) => both_ways(run, lineage, *problem, *point),
         Entry::Birth(doubled) => outwards(run, lineage, *doubled),
+        Entry::Crossing(crossed) => both_sides(run, lineage, *crossed),
     }
 }
 
-fn plan<'a>(run: &Run<'a>, lineage: &Lineage, sign: f64) -> WalkPlan<'a> {
+pub(crate) fn plan<'a>(run: &Run<'a>, lineage: &Lineage, sign: f64) -> WalkPlan<'a> {
     let mut settings = follow_settings(run.study);
     settings.points = run.points_left;
     WalkPlan {
         study: run.study,
         settings,
         turns: lineage.turns,
-        doubled: lineage.born_at.is_some(),
+        doubled: !lineage.line.is_empty(),
         sign,
         abort: run.abort,
         to_first_doubling: run.to_first_doubling,
@@ -190,7 +203,10 @@ fn both_ways(
     let mut collector = collector(run, lineage);
     collector.point(&first);
     let plans = (plan(collector.run, lineage, 1.0), -1.0);
-    let found = at_parameter(&mut problem, EventKind::Start, &start, 0.0);
+    let mut found = at_parameter(&mut problem, EventKind::Start, &start, 0.0);
+    if let Some(symmetry) = problem.symmetry(&start) {
+        found.note = format!("symmetric: {}", symmetry_words(&symmetry, &collector.run.study.model));
+    }
     collector.event(&problem, &found);
     if plans.0.settings.targets.contains(&start.unknowns.parameter) {
         let target = Found { kind: EventKind::Target, ..at_parameter(&mut problem, EventKind::Target, &start, 0.0) };
@@ -258,7 +274,7 @@ fn run_parameter(plan: &WalkPlan<'_>) -> String {
 }
 
 /// A walk whose distances count from the birth instead of from its first cycle.
-fn walk_shifted(
+pub(crate) fn walk_shifted(
     problem: &mut CycleProblem,
     first: (CyclePoint, CycleTangent),
     plan: &WalkPlan<'_>,
@@ -272,11 +288,11 @@ fn walk_shifted(
     walk
 }
 
-fn collector<'r, 'a>(run: &'r mut Run<'a>, lineage: &'r Lineage) -> Collector<'r, 'a> {
+pub(crate) fn collector<'r, 'a>(run: &'r mut Run<'a>, lineage: &'r Lineage) -> Collector<'r, 'a> {
     Collector { run, lineage, numbers: HashMap::new(), events: Vec::new(), births: Vec::new(), points: 0, fault: None }
 }
 
-fn finish(
+pub(crate) fn finish(
     collector: Collector<'_, '_>,
     problem: CycleProblem,
     walked: Vec<Walked>,

@@ -25,6 +25,8 @@ mod approach;
 mod beyond;
 mod branch;
 mod cascade;
+mod crossing_event;
+mod crossings;
 mod ends;
 mod error;
 mod file;

@@ -7,8 +7,9 @@ use armilla_stability::{
     WATCH_TORUS,
 };
 
+use crate::crossing_event::{self, Looked, Met};
 use crate::guards::smooth_values;
-use crate::ledger::{Change, Part, narrowed, parts, stands_on};
+use crate::ledger::{Change, Part, Whole, narrowed, parts, stands_on};
 use crate::torus_event::{self, REAL};
 use crate::valley::valley;
 use crate::walk::{CycleStation, WalkPlan};
@@ -27,6 +28,8 @@ pub(crate) struct Found {
     pub located: Option<Located>,
     /// Normal form of a doubling.
     pub form: Option<DoublingForm>,
+    /// Where another branch crosses.
+    pub crossing: Option<Box<Met>>,
 }
 
 /// What a step brings.
@@ -59,7 +62,7 @@ pub(crate) fn events_of_step(
     let along = (ends.1.distance - ends.0.distance).signum();
     stations.sort_by(|a, b| (along * a.distance).total_cmp(&(along * b.distance)));
     for pair in stations.windows(2) {
-        for part in parts(problem, &pair[0], &pair[1]) {
+        for part in parts(problem, (&pair[0], &pair[1]), Whole::Crossings) {
             events_of_part(problem, &part, plan, &mut findings);
         }
     }
@@ -142,6 +145,27 @@ fn touch(at: &CycleStation, angle: Option<f64>, plan: &WalkPlan<'_>) -> Found {
 const TOUCHING: f64 = 1e-6;
 
 fn events_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, findings: &mut Findings) {
+    let change = part.change;
+    if change.may_cross() {
+        match crossing_event::between(problem, (&part.before, &part.after), plan) {
+            Looked::Found(found) => return findings.found.push(*found),
+            Looked::Gap => {
+                findings.jumped = true;
+                return;
+            }
+            Looked::NotLocated => {}
+        }
+        // Cut further, as far as cycles can be told from each other.
+        for part in parts(problem, (&part.before, &part.after), Whole::Explained) {
+            rest_of_part(problem, &part, plan, findings);
+        }
+        return;
+    }
+    rest_of_part(problem, part, plan, findings);
+}
+
+/// The events of a part but crossings that are located.
+fn rest_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, findings: &mut Findings) {
     let change = part.change;
     if change.turns {
         findings.found.extend(turning(problem, part, plan));
@@ -277,6 +301,7 @@ fn located_event(
         note: note.unwrap_or_default(),
         located: Some(located),
         form,
+        crossing: None,
     }
 }
 
@@ -352,6 +377,7 @@ pub(crate) fn unresolved(
         note,
         located: None,
         form: None,
+        crossing: None,
     }
 }
 
@@ -385,6 +411,7 @@ pub(crate) fn at_parameter(problem: &mut CycleProblem, kind: EventKind, point: &
         note: String::new(),
         located: None,
         form: None,
+        crossing: None,
     }
 }
 

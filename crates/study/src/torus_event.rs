@@ -42,6 +42,7 @@ fn event(problem: &mut CycleProblem, located: LocatedTorus, distance: f64, plan:
         note: format!("angle known to {}; {note}", rounded_up(located.angle_error)),
         located: None,
         form: None,
+        crossing: None,
         point: located.point,
     })
 }

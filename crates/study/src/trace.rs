@@ -6,10 +6,11 @@ use std::sync::atomic::{AtomicBool, Ordering};
 
 use armilla_figure::Figure;
 use armilla_record::{Branch, CascadeRow, EndReason, EventKind, Reached, RecordError, Results, Threshold};
-use armilla_stability::Born;
+use armilla_stability::{Born, CycleProblem, SwitchFault};
 
 use crate::branch::{Entry, Finished, Lineage, Run, Switchable, Way, follow_branch};
 use crate::cascade::cascade;
+use crate::crossings::leave_out_known;
 use crate::error::StudyError;
 use crate::progress::Observer;
 use crate::start::first_cycle;
@@ -46,8 +47,8 @@ pub struct Traced {
 }
 
 /// A branch waiting to be followed.
-struct Waiting {
-    lineage: Lineage,
+pub(crate) struct Waiting {
+    pub lineage: Lineage,
     entry: Entry,
 }
 
@@ -57,6 +58,7 @@ impl Waiting {
         match &self.entry {
             Entry::Cycle(_, point) => point.unknowns.parameter,
             Entry::Birth(born) => born.birth.unknowns.parameter,
+            Entry::Crossing(crossed) => crossed.birth.unknowns.parameter,
         }
     }
 }
@@ -103,6 +105,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
             Err(fault) => return Err(fault),
         };
         points_left = run.points_left;
+        leave_out_known(&mut finished, &traced.branches, &mut queue);
         drop_other_end(study, &lineage, &mut finished.branch, &mut queue);
         results.write_branch(&finished.branch)?;
         if options.abort.load(Ordering::Relaxed) {
@@ -173,18 +176,23 @@ fn children(
             ));
             continue;
         }
-        let born = match way {
-            Way::Doubling { located, form } => finished.problem.double(located, form.as_ref()),
-        };
-        match born {
+        match entry(&finished.problem, way) {
             Err(fault) => shortfalls.push(format!("at {event} {fault}")),
             // Born on the edge of the range and leading out of it: nothing to follow.
-            Ok(born) if is_outside(study, &born) => {}
-            Ok(born) => children
-                .push(Waiting { lineage: child_lineage(lineage, event, way), entry: Entry::Birth(Box::new(born)) }),
+            Ok(Entry::Birth(born)) if is_outside(study, &born) => {}
+            Ok(entry) => children.push(Waiting { lineage: child_lineage(lineage, event, way), entry }),
         }
     }
     children
+}
+
+fn entry(problem: &CycleProblem, way: &Way) -> Result<Entry, SwitchFault> {
+    Ok(match way {
+        Way::Doubling { located, form } => Entry::Birth(Box::new(problem.double(located, form.as_ref())?)),
+        Way::Crossing(met) if met.both => Entry::Crossing(Box::new(problem.cross(&met.crossing)?)),
+        // The other side is the mirror image.
+        Way::Crossing(met) => Entry::Birth(Box::new(problem.cross(&met.crossing)?.born())),
+    })
 }
 
 /// Whether a branch begins outside the asked range though it is born on its edge.
@@ -204,6 +212,9 @@ fn child_lineage(parent: &Lineage, event: &str, way: &Way) -> Lineage {
             turns: 2 * parent.turns,
             line: parent.line.iter().copied().chain([way.threshold()]).collect(),
         },
+        Way::Crossing(_) => {
+            Lineage { name, born_at, doublings: parent.doublings, turns: parent.turns, line: Vec::new() }
+        }
     }
 }
 

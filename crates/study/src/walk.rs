@@ -8,6 +8,7 @@ use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_FOLD};
 
 use crate::ahead::Ahead;
 use crate::approach::{Approach, Known, Past, approach, orbit_stands, resolved};
+use crate::crossing_event::mirror_image;
 use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short};
 use crate::guards::{falls_on_shorter, leaps};
 use crate::ledger::{Change, is_off_folds, is_sure};
@@ -168,7 +169,8 @@ impl Walker<'_, '_> {
 
     /// Whether a shorter stride may tell more of what happens in a step.
     fn is_doubtful(&mut self, before: &CycleStation, after: &CycleStation) -> bool {
-        let explained = !is_sure(after) || Change::between(&self.account, after).is_explained();
+        let change = Change::between(&self.account, after);
+        let explained = !is_sure(after) || change.is_explained() || change.may_cross();
         !explained || leaps(before, after) || self.may_turn_twice(before, after)
     }
 
@@ -269,8 +271,12 @@ impl Walker<'_, '_> {
         let doubles = found.iter().any(|event| event.kind == EventKind::Doubling);
         let (problem, _, _) = self.follower.parts();
         for event in found {
+            let mirror = mirror_image(self.plan.study, &event);
             self.sink.event(problem, &event);
             self.walk.events.push(event);
+            if let Some(ended) = mirror {
+                return Taken::Ended(ended);
+            }
         }
         let Ok(mut point) = problem.describe(&after.point, self.plan.turns, self.plan.sign * after.distance) else {
             return Taken::NoMultipliers;

@@ -1,0 +1,111 @@
+//! From a located crossing onto the branch that crosses, on either side.
+//!
+//! A first cycle is corrected with its component held along the part of the crossing tangent that is normal to the tangent
+//! of the known branch, everything else free (Keller 1977, in Applications of Bifurcation Theory, 359): the known branch
+//! meets that plane at second order only.
+
+use armilla_follow::{Closing, Problem};
+
+use crate::crossing::{Crossing, reversed};
+use crate::crossing_system::mixed;
+use crate::point::{CyclePoint, CycleTangent};
+use crate::problem::{CycleProblem, Sizes};
+use crate::switch::{Born, SwitchFault};
+
+/// The branch that crosses, at the crossing.
+pub struct Crossed {
+    /// The problem of the branch, with its own metric.
+    pub problem: CycleProblem,
+    /// The cycle both branches share, on the mesh of the branch.
+    pub birth: CyclePoint,
+    /// A first cycle on either side, along the crossing tangent and against it.
+    pub ways: [CrossedWay; 2],
+}
+
+/// A side of the crossing.
+#[derive(Clone, Debug)]
+pub struct CrossedWay {
+    /// The first cycle.
+    pub point: CyclePoint,
+    /// Unit direction from the crossing to it.
+    pub outwards: CycleTangent,
+    /// Distance from the crossing.
+    pub amplitude: f64,
+}
+
+/// First amplitude tried, 1 being the size of the cycle: well above the root of roundoff, to which cycles are known beside
+/// a crossing, and small against the cycle.
+const AMPLITUDE: f64 = 0.02;
+/// Halvings of it before giving up.
+const HALVINGS: usize = 10;
+/// Distance of the first cycle from the crossing, in units of the predicted one, beyond which it belongs elsewhere.
+const NEAR: f64 = 2.0;
+/// Largest |log mu| of the multiplier that is 1 at the crossing.
+const NEAR_ONE: f64 = 0.3;
+
+impl CycleProblem {
+    /// Enters the branch that crosses, on both sides.
+    ///
+    /// # Errors
+    /// [`SwitchFault`] where no cycle of it is found.
+    pub fn cross(&self, crossing: &Crossing) -> Result<Crossed, SwitchFault> {
+        let (mut problem, birth) = self.at_crossing(crossing)?;
+        let fine = (birth, crossing.tangents.clone());
+        // Of the located cycle's fine mesh the branch needs a part only; where it has no cycle on that, the fine one remains.
+        let own = problem.own_mesh(&fine.0).map(|own| {
+            let tangents = crossing.tangents.clone().map(|tangent| tangent.on_mesh(own.degree, &own.mesh));
+            (own, tangents)
+        });
+        for (birth, tangents) in own.into_iter().chain([fine]) {
+            let tangents = tangents.map(|tangent| problem.normalised(tangent));
+            let mut amplitude = AMPLITUDE;
+            for _ in 0..HALVINGS {
+                let [forward, backward] = [1.0, -1.0].map(|side| problem.beside(&birth, &tangents, side * amplitude));
+                if let (Some(forward), Some(backward)) = (forward, backward) {
+                    return Ok(Crossed { problem, birth, ways: [forward, backward] });
+                }
+                amplitude *= 0.5;
+            }
+        }
+        Err(SwitchFault)
+    }
+
+    fn at_crossing(&self, crossing: &Crossing) -> Result<(CycleProblem, CyclePoint), SwitchFault> {
+        let profile = self.profile(&crossing.point);
+        let value = crossing.point.unknowns.parameter;
+        let sizes = Sizes::Parent(&self.metric.scales);
+        let problem = CycleProblem::with_metric(self.spec.clone(), self.settings, sizes, &profile, value)
+            .map_err(|_| SwitchFault)?;
+        Ok((problem, CyclePoint::from_profile(&profile, value)))
+    }
+
+    /// The cycle beside a crossing at an amplitude along the second tangent.
+    fn beside(&mut self, birth: &CyclePoint, [along, across]: &[CycleTangent; 2], amplitude: f64) -> Option<CrossedWay> {
+        let common = self.inner(along, across);
+        let normal = mixed((1.0, &across.row), (-common, &along.row));
+        let normal = self.normalised(CycleTangent { row: normal, ..across.clone() });
+        let share = self.inner(&normal, across);
+        let prediction = self.advance(birth, across, amplitude);
+        let closing = Closing::Component { from: birth, direction: &normal, amount: share * amplitude };
+        let point = self.correct(&prediction, closing).ok()?.point;
+        if !(self.distance(birth, &point) <= NEAR * amplitude.abs()) {
+            return None;
+        }
+        let near = self.spectrum(&point).ok()?.nearest_to_one()?;
+        let outwards = if amplitude < 0.0 { reversed(across.clone()) } else { across.clone() };
+        (near.abs() < NEAR_ONE).then_some(CrossedWay { point, outwards, amplitude: amplitude.abs() })
+    }
+}
+
+impl Crossed {
+    /// Log-modulus of the multiplier that is 1 at the crossing, on the first cycle of a side.
+    pub fn exchange(&mut self, way: usize) -> Option<f64> {
+        self.problem.spectrum(&self.ways[way].point).ok()?.nearest_to_one()
+    }
+
+    /// One side only, as a branch that is born.
+    pub fn born(self) -> Born {
+        let Crossed { problem, birth, ways: [CrossedWay { point, outwards, amplitude }, _] } = self;
+        Born { problem, birth, point, outwards, amplitude }
+    }
+}
