@@ -38,10 +38,15 @@ pub struct CrossedWay {
 const AMPLITUDE: f64 = 0.02;
 /// Halvings of it before giving up.
 const HALVINGS: usize = 10;
+/// |log mu| of the multiplier that is 1 at the crossing, up to which the first cycle is moved outwards in doubled steps:
+/// far enough for a regular start.
+const WANTED: f64 = 0.02;
+/// Most doublings of the amplitude on the way there.
+const GROWTHS: usize = 5;
 /// Distance of the first cycle from the crossing, in units of the predicted one, beyond which it belongs elsewhere.
 const NEAR: f64 = 2.0;
-/// Largest |log mu| of the multiplier that is 1 at the crossing.
-const NEAR_ONE: f64 = 0.3;
+/// Largest |log mu| of the multiplier that is 1 at the crossing: beyond, a next event may have been passed.
+const NEAR_ONE: f64 = 0.15;
 
 impl CycleProblem {
     /// Enters the branch that crosses, on both sides.
@@ -79,21 +84,43 @@ impl CycleProblem {
         Ok((problem, CyclePoint::from_profile(&profile, value)))
     }
 
-    /// The cycle beside a crossing at an amplitude along the second tangent.
-    fn beside(&mut self, birth: &CyclePoint, [along, across]: &[CycleTangent; 2], amplitude: f64) -> Option<CrossedWay> {
+    /// A cycle beside a crossing, at an amplitude along the second tangent or moved outwards from there.
+    fn beside(&mut self, birth: &CyclePoint, tangents: &[CycleTangent; 2], from: f64) -> Option<CrossedWay> {
+        let (mut point, mut near) = self.at_amplitude(birth, tangents, from)?;
+        let mut amplitude = from;
+        for _ in 0..GROWTHS {
+            if near > WANTED {
+                break;
+            }
+            let Some(farther) = self.at_amplitude(birth, tangents, 2.0 * amplitude) else { break };
+            (point, near) = farther;
+            amplitude *= 2.0;
+        }
+        let across = tangents[1].clone();
+        let mut outwards = if amplitude < 0.0 { reversed(across) } else { across };
+        if let Some((renewed, mut tangents)) = self.renew(&point, &[&outwards]) {
+            (point, outwards) = (renewed, tangents.pop().expect("renew returns as many tangents as it gets"));
+        }
+        Some(CrossedWay { point, outwards, amplitude: amplitude.abs() })
+    }
+
+    /// The cycle at an amplitude, with the |log mu| of the multiplier that is 1 at the crossing.
+    fn at_amplitude(
+        &mut self,
+        birth: &CyclePoint,
+        [along, across]: &[CycleTangent; 2],
+        amplitude: f64,
+    ) -> Option<(CyclePoint, f64)> {
         let common = self.inner(along, across);
         let normal = mixed((1.0, &across.row), (-common, &along.row));
         let normal = self.normalised(CycleTangent { row: normal, ..across.clone() });
-        let share = self.inner(&normal, across);
+        let amount = self.inner(&normal, across) * amplitude;
         let prediction = self.advance(birth, across, amplitude);
-        let closing = Closing::Component { from: birth, direction: &normal, amount: share * amplitude };
+        let closing = Closing::Component { from: birth, direction: &normal, amount };
         let point = self.correct(&prediction, closing).ok()?.point;
-        if !(self.distance(birth, &point) <= NEAR * amplitude.abs()) {
-            return None;
-        }
-        let near = self.spectrum(&point).ok()?.nearest_to_one()?;
-        let outwards = if amplitude < 0.0 { reversed(across.clone()) } else { across.clone() };
-        (near.abs() < NEAR_ONE).then_some(CrossedWay { point, outwards, amplitude: amplitude.abs() })
+        let near = self.spectrum(&point).ok()?.nearest_to_one()?.abs();
+        let belongs = self.distance(birth, &point) <= NEAR * amplitude.abs() && near < NEAR_ONE;
+        belongs.then_some((point, near))
     }
 }
 
@@ -101,6 +128,11 @@ impl Crossed {
     /// Log-modulus of the multiplier that is 1 at the crossing, on the first cycle of a side.
     pub fn exchange(&mut self, way: usize) -> Option<f64> {
         self.problem.spectrum(&self.ways[way].point).ok()?.nearest_to_one()
+    }
+
+    /// Parameter of the first cycle of a side less that of the crossing.
+    pub fn offset(&self, way: usize) -> f64 {
+        self.ways[way].point.unknowns.parameter - self.birth.unknowns.parameter
     }
 
     /// One side only, as a branch that is born.

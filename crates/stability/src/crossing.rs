@@ -92,6 +92,22 @@ impl CycleProblem {
         Err(LocateFault { bracket: (low.point.unknowns.parameter, high.point.unknowns.parameter) })
     }
 
+    /// Locates the crossing that a station stands on.
+    pub fn locate_crossing_at(&mut self, station: &CycleStation) -> Option<Box<Crossing>> {
+        /// Distance from the station within which the crossing is the one it stands on: beside it cycles are known to the
+        /// root of roundoff, times what the equations amplify.
+        const ON: f64 = 1e-5;
+        let mut point = station.point.clone();
+        let solved = self.solve_crossing(&mut point, 0.0).ok()?;
+        if !(self.distance(&station.point, &point) <= ON) {
+            return None;
+        }
+        match self.refine_crossing(&point, &solved, &station.tangent)? {
+            Meeting::Crossing(crossing) => Some(Box::new(Crossing { share: 1.0, ..*crossing })),
+            Meeting::Gap => None,
+        }
+    }
+
     fn crossing_from(&mut self, low: &CycleStation, high: &CycleStation) -> Option<Meeting> {
         let turns = low.watch.values[WATCH_FOLD].value * high.watch.values[WATCH_FOLD].value < 0.0;
         let mut point = self.secant_point(if turns { WATCH_FOLD } else { WATCH_BRANCHING }, low, high);

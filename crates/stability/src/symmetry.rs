@@ -90,20 +90,18 @@ impl CycleProblem {
         let n = profile.n_states;
         let shift = if symmetry.half_period { 0.5 } else { 0.0 };
         let (mut now, mut later, mut image) = (vec![0.0; n], vec![0.0; n], vec![0.0; n]);
-        let (mut product, mut square, mut whole) = (0.0, 0.0, 0.0);
+        let mut pairs = Vec::with_capacity(SAMPLES * n);
         for k in 0..SAMPLES {
             let time = k as f64 / SAMPLES as f64;
             evaluator.at(time, &mut now);
             evaluator.at(time + shift, &mut later);
             symmetry.apply(&now, &mut image);
-            for ((later, image), scale) in later.iter().zip(&image).zip(&self.metric.scales) {
-                product += later * image / scale.powi(2);
-                square += (image / scale).powi(2);
-                whole += (later / scale).powi(2);
-            }
+            let scaled = later.iter().zip(&image).zip(&self.metric.scales);
+            pairs.extend(scaled.map(|((later, image), scale)| (later / scale, image / scale)));
         }
-        let multiplier = product / square;
-        let rest = (whole - multiplier * product).max(0.0);
+        let square: f64 = pairs.iter().map(|(_, image)| image * image).sum();
+        let multiplier = pairs.iter().map(|(later, image)| later * image).sum::<f64>() / square;
+        let rest: f64 = pairs.iter().map(|(later, image)| (later - multiplier * image).powi(2)).sum();
         Parity { multiplier, residue: (rest / square).sqrt() }
     }
 

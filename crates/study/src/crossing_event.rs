@@ -44,23 +44,44 @@ pub(crate) fn between(
     }
 }
 
+/// The crossing a station stands on.
+pub(crate) fn at(problem: &mut CycleProblem, station: &CycleStation, plan: &WalkPlan<'_>) -> Option<Found> {
+    let crossing = problem.locate_crossing_at(station)?;
+    Some(event(problem, *crossing, station.distance, plan))
+}
+
+/// What is said of a crossing besides its numbers.
+struct Told {
+    kind: EventKind,
+    criticality: Option<Criticality>,
+    note: String,
+    /// How to go on from there; none where there is nothing to follow.
+    ways: Option<Ways>,
+}
+
+/// See [`Met`].
+struct Ways {
+    both: bool,
+    mirror: bool,
+}
+
 fn event(problem: &mut CycleProblem, crossing: Crossing, distance: f64, plan: &WalkPlan<'_>) -> Found {
-    let model = &plan.study.model;
     let [along, across] = crossing.parameter_parts;
-    // The direction in which the parameter stands still is the one that breaks a symmetry, if any is broken.
-    let critical = &crossing.tangents[usize::from(!along.vanishes())];
-    let broken = problem.broken_symmetry(&crossing.point, &critical.row.nodes);
-    let (kind, said) = match (along.vanishes(), across.vanishes()) {
-        (false, false) => (EventKind::Transcritical, "another branch crosses, the parameter moves along both".to_string()),
-        (true, true) => (
-            EventKind::Branching,
-            "another branch crosses; the parameter stands still along both, so the kind is not decided".to_string(),
-        ),
-        _ => (EventKind::Pitchfork, pitchfork_words(broken.as_ref(), model)),
+    let Told { kind, criticality, note, ways } = match (along.vanishes(), across.vanishes()) {
+        (false, false) => Told {
+            kind: EventKind::Transcritical,
+            criticality: None,
+            note: "another branch crosses; the parameter moves along both".into(),
+            ways: Some(Ways { both: true, mirror: false }),
+        },
+        (true, true) => Told {
+            kind: EventKind::Branching,
+            criticality: None,
+            note: "another branch crosses; the parameter stands still along both, so the kind is not decided".into(),
+            ways: Some(Ways { both: true, mirror: false }),
+        },
+        (from_side, _) => pitchfork(problem, &crossing, from_side, plan.study),
     };
-    let from_side = kind == EventKind::Pitchfork && along.vanishes();
-    let mirrored = kind == EventKind::Pitchfork && broken.is_some();
-    let criticality = if kind == EventKind::Pitchfork { side(problem, &crossing, from_side) } else { None };
     Found {
         kind,
         distance: plan.sign * distance,
@@ -68,12 +89,37 @@ fn event(problem: &mut CycleProblem, crossing: Crossing, distance: f64, plan: &W
         period_error: Some(crossing.period_error),
         angle: Some(0.0),
         criticality,
-        note: if from_side { format!("met from the branch that is born here; {said}") } else { said },
+        note,
         located: None,
         form: None,
         point: crossing.point.clone(),
-        crossing: Some(Box::new(Met { crossing, both: from_side || !mirrored, mirror: from_side && mirrored })),
+        crossing: ways.map(|Ways { both, mirror }| Box::new(Met { crossing, both, mirror })),
     }
+}
+
+/// A crossing along one branch of which the parameter stands still: a pair of branches is born, or cycles fill a continuum.
+fn pitchfork(problem: &mut CycleProblem, crossing: &Crossing, from_side: bool, study: &Study) -> Told {
+    // The direction in which the parameter stands still is the one that breaks a symmetry, if any is broken.
+    let mut turned = crossing.clone();
+    if from_side {
+        turned.tangents.swap(0, 1);
+    }
+    let broken = problem.broken_symmetry(&crossing.point, &turned.tangents[1].row.nodes);
+    let said = pitchfork_words(broken.as_ref(), &study.model);
+    let side = side(problem, &turned, study);
+    if side == Side::Continuum {
+        let note = "cycles fill a continuum at this one value: the branch that crosses is not followed".into();
+        return Told { kind: EventKind::Branching, criticality: None, note, ways: None };
+    }
+    let criticality = match side {
+        Side::Stable => Some(Criticality::Supercritical),
+        Side::Unstable => Some(Criticality::Subcritical),
+        _ => None,
+    };
+    let note = if from_side { format!("met from the branch that is born here; {said}") } else { said };
+    // Of two sides that a symmetry exchanges one is enough.
+    let ways = Ways { both: from_side || broken.is_none(), mirror: from_side && broken.is_some() };
+    Told { kind: EventKind::Pitchfork, criticality, note, ways: Some(ways) }
 }
 
 fn pitchfork_words(broken: Option<&(Symmetry, Parity)>, model: &Model) -> String {
@@ -99,18 +145,28 @@ pub(crate) fn symmetry_words(symmetry: &Symmetry, model: &Model) -> String {
     format!("{}{when}", listed.join(", "))
 }
 
-/// On which side the pair is born: stable beside the crossing where the other branch is not, or the reverse.
-fn side(problem: &mut CycleProblem, crossing: &Crossing, from_side: bool) -> Option<Criticality> {
-    // From its side the tangents are told the other way round; the born branch is the one the walk is on.
-    let mut turned = crossing.clone();
-    if from_side {
-        turned.tangents.swap(0, 1);
-    }
-    let exchange = problem.cross(&turned).ok()?.exchange(0)?;
+/// What is born at a pitchfork.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+enum Side {
+    /// Stable cycles where the other branch is not, as far as the critical multiplier goes.
+    Stable,
+    /// The reverse.
+    Unstable,
+    /// Nothing moves with the parameter.
+    Continuum,
+    Unknown,
+}
+
+fn side(problem: &mut CycleProblem, crossing: &Crossing, study: &Study) -> Side {
+    /// |log mu| that multipliers beside a crossing are known to.
+    const ONE: f64 = 1e-7;
+    let Ok(mut crossed) = problem.cross(crossing) else { return Side::Unknown };
+    let Some(exchange) = crossed.exchange(0) else { return Side::Unknown };
+    let still = crossing.error + study.file.accuracy * (study.range.1 - study.range.0);
     match () {
-        () if exchange < 0.0 => Some(Criticality::Supercritical),
-        () if exchange > 0.0 => Some(Criticality::Subcritical),
-        () => None,
+        () if exchange.abs() <= ONE && crossed.offset(0).abs() <= still => Side::Continuum,
+        () if exchange < 0.0 => Side::Stable,
+        () => Side::Unstable,
     }
 }
 

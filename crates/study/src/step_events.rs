@@ -88,8 +88,12 @@ pub(crate) fn events_on_edge(
         [(WATCH_TORUS, EventKind::Torus, change.pair), (WATCH_BRANCHING, EventKind::Branching, change.passes_one)];
     for (index, kind, seen) in bracketed {
         if stands_on(after, index) && !seen {
-            if let Some(torus) = (index == WATCH_TORUS).then(|| torus_event::at(problem, after, plan)).flatten() {
-                found.push(torus);
+            let located = match kind {
+                EventKind::Torus => torus_event::at(problem, after, plan),
+                _ => crossing_event::at(problem, after, plan),
+            };
+            if let Some(located) = located {
+                found.push(located);
                 continue;
             }
             let width = plan.study.range.1 - plan.study.range.0;
