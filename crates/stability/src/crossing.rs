@@ -68,6 +68,13 @@ struct Solved {
     report: Report,
 }
 
+impl Solved {
+    /// The unfolding in a unit that does not depend on the mesh.
+    fn gap(&self) -> f64 {
+        self.unfolding * self.system.unit()
+    }
+}
+
 impl CycleProblem {
     /// Looks for the crossing between two stations between which the branch's orientation changes: where a multiplier
     /// passes +1 and the parameter goes on, or the parameter turns and no multiplier passes.
@@ -165,7 +172,10 @@ impl CycleProblem {
         let mut again = self.solve_crossing(&mut fine, found.unfolding).ok()?;
         let rounding = again.system.roundoff(&mut self.system).map(|error| ROUNDOFF_MARGIN * error);
         // The unfolding is what the equations are off by; their own errors show in its change from mesh to mesh.
-        let gap = Estimated { value: again.unfolding, error: (found.unfolding - again.unfolding).abs() + rounding[2] };
+        let [coarse_gap, fine_gap] = [found, &again].map(Solved::gap);
+        let sign = again.system.likeness(&found.system, coarse.intervals()).signum();
+        let roundoff = rounding[2] * again.system.unit();
+        let gap = Estimated { value: fine_gap, error: (fine_gap - sign * coarse_gap).abs() + roundoff };
         if !gap.vanishes() {
             return Some(Meeting::Gap);
         }

@@ -74,6 +74,27 @@ impl CrossingSystem {
         orthonormal(&system.spec().metric, system, self.directions.clone())
     }
 
+    /// Unit of the unfolding: the column has length 1 over all rows, while rows are increments, one over their number each.
+    pub(crate) fn unit(&self) -> f64 {
+        (self.border_column.len() as f64).sqrt()
+    }
+
+    /// Inner product of the unfolding column with that of another mesh, in sums over each of `intervals` parts that both
+    /// meshes have: its sign tells whether they point the same way.
+    pub(crate) fn likeness(&self, other: &Self, intervals: usize) -> f64 {
+        let sums = |system: &Self| -> Vec<f64> {
+            let n = system.bordered_states();
+            let rows = system.border_column.len() / intervals;
+            let of_part = |part: &[f64]| (0..n).map(|a| part.iter().skip(a).step_by(n).sum()).collect::<Vec<f64>>();
+            system.border_column.chunks_exact(rows).flat_map(of_part).collect()
+        };
+        sums(self).iter().zip(sums(other)).map(|(a, b)| a * b).sum()
+    }
+
+    fn bordered_states(&self) -> usize {
+        self.phase.len() - self.border_column.len()
+    }
+
     fn generic_borders(&mut self, system: &System) {
         // Equidistributed (Weyl 1916, Math. Ann. 77:313), orthogonal to no null vector of a model.
         const IRRATIONAL: f64 = 0.618_033_988_749_894_8;
