@@ -314,21 +314,18 @@ impl Variational {
         let start = out.maps.len();
         out.maps.resize(start + n * n, 0.0);
         let stages = &mut self.right;
-        stages.resize(size, 0.0);
-        for column in 0..n {
-            stages.fill(0.0);
-            for (entry, &(a, b)) in self.entries.iter().enumerate() {
-                if b == column {
-                    for l in 0..m {
-                        stages[l * n + a] = step * self.jacobian[entry * points + first + l];
-                    }
-                }
+        stages.resize(size * n, 0.0);
+        stages.fill(0.0);
+        for (entry, &(a, b)) in self.entries.iter().enumerate() {
+            for l in 0..m {
+                stages[(l * n + a) * n + b] = step * self.jacobian[entry * points + first + l];
             }
-            self.stages.solve(stages);
-            for a in 0..n {
-                let sum: f64 = (0..m).map(|j| scheme.weights[j] * stages[j * n + a]).sum();
-                out.maps[start + a * n + column] = sum + if a == column { 1.0 } else { 0.0 };
-            }
+        }
+        self.stages.solve_many(stages, n);
+        let map = &mut out.maps[start..];
+        (0..n).for_each(|a| map[a * n + a] = 1.0);
+        for (j, stage) in stages.chunks_exact(n * n).enumerate() {
+            map.iter_mut().zip(stage).for_each(|(map, stage)| *map += scheme.weights[j] * stage);
         }
         Ok(())
     }

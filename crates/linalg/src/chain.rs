@@ -44,7 +44,7 @@ pub(crate) fn merge_len(n: usize) -> usize {
 }
 
 /// Merges two links (each A then E, n x n row-major): factors into `store`, writes the new link into `left`; `scratch`
-/// has 2n numbers.
+/// has 5n numbers.
 pub(crate) fn merge(n: usize, left: &mut [f64], right: &[f64], store: &mut [f64], scratch: &mut [f64]) {
     let width = 3 * n;
     let (matrix, taus) = store.split_at_mut(6 * n * n);
@@ -76,7 +76,8 @@ pub(crate) fn merge(n: usize, left: &mut [f64], right: &[f64], store: &mut [f64]
 fn reflect_column(n: usize, q: usize, matrix: &mut [f64], scratch: &mut [f64]) -> f64 {
     let width = 3 * n;
     let length = 2 * n - q;
-    let column = &mut scratch[..length];
+    let (column, sums) = scratch.split_at_mut(2 * n);
+    let column = &mut column[..length];
     for (r, value) in column.iter_mut().enumerate() {
         *value = matrix[(q + r) * width + q];
     }
@@ -88,16 +89,16 @@ fn reflect_column(n: usize, q: usize, matrix: &mut [f64], scratch: &mut [f64]) -
     if tau == 0.0 {
         return 0.0;
     }
-    for c in q + 1..width {
-        let mut sum = matrix[q * width + c];
-        for r in 1..length {
-            sum += column[r] * matrix[(q + r) * width + c];
-        }
-        sum *= tau;
-        matrix[q * width + c] -= sum;
-        for r in 1..length {
-            matrix[(q + r) * width + c] -= sum * column[r];
-        }
+    let (sums, later) = (&mut sums[..width - q - 1], q * width + q + 1);
+    let row = |r: usize| later + r * width..later + r * width + width - q - 1;
+    sums.copy_from_slice(&matrix[row(0)]);
+    for r in 1..length {
+        axpy(sums, column[r], &matrix[row(r)]);
+    }
+    sums.iter_mut().for_each(|sum| *sum *= tau);
+    axpy(&mut matrix[row(0)], -1.0, sums);
+    for r in 1..length {
+        axpy(&mut matrix[row(r)], -column[r], sums);
     }
     tau
 }

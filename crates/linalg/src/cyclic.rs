@@ -86,7 +86,7 @@ impl Cyclic {
             links: vec![0.0; intervals * 2 * n * n],
             merges: vec![0.0; intervals * chain::merge_len(n)],
             plan: chain::plan(intervals),
-            scratch: vec![0.0; 2 * n],
+            scratch: vec![0.0; 5 * n],
         }
     }
 

@@ -16,10 +16,21 @@ pub(crate) fn axpy(y: &mut [f64], factor: f64, x: &[f64]) {
     y.iter_mut().zip(x).for_each(|(y, x)| *y += factor * x);
 }
 
-/// Inner product.
+/// Inner product, in eight partial sums where it is long: one after the other, additions wait for each other.
 #[inline(always)]
 pub(crate) fn dot(x: &[f64], y: &[f64]) -> f64 {
-    x.iter().zip(y).map(|(x, y)| x * y).sum()
+    const LANES: usize = 8;
+    let tail = |x: &[f64], y: &[f64]| x.iter().zip(y).map(|(x, y)| x * y).sum::<f64>();
+    if x.len() < 4 * LANES {
+        return tail(x, y);
+    }
+    let (x, x_rest) = x.as_chunks::<LANES>();
+    let (y, y_rest) = y.as_chunks::<LANES>();
+    let mut sums = [0.0; LANES];
+    for (x, y) in x.iter().zip(y) {
+        (0..LANES).for_each(|k| sums[k] += x[k] * y[k]);
+    }
+    sums.iter().sum::<f64>() + tail(x_rest, y_rest)
 }
 
 /// Two different rows of a row-major matrix, the first to read, the second to change (`read < change`).
@@ -194,6 +205,36 @@ impl Lu {
         }
     }
 
+    /// Solves `A X = B` in place for `count` right sides at once, row-major (size x count): each factor is read once.
+    pub fn solve_many(&self, b: &mut [f64], count: usize) {
+        let size = self.size;
+        for (row, scale) in b.chunks_exact_mut(count).zip(&self.row_scale) {
+            row.iter_mut().for_each(|b| *b *= scale);
+        }
+        for q in 0..size {
+            let other = self.swaps[q];
+            if other != q {
+                let (low, high) = b.split_at_mut(q.max(other) * count);
+                low[q.min(other) * count..][..count].swap_with_slice(&mut high[..count]);
+            }
+        }
+        for r in 1..size {
+            let (known, rest) = b.split_at_mut(r * count);
+            for (factor, known) in self.factors[r * size..r * size + r].iter().zip(known.chunks_exact(count)) {
+                axpy(&mut rest[..count], -factor, known);
+            }
+        }
+        for r in (0..size).rev() {
+            let row = &self.factors[r * size..(r + 1) * size];
+            let (rest, known) = b.split_at_mut((r + 1) * count);
+            let here = &mut rest[r * count..];
+            for (factor, known) in row[r + 1..].iter().zip(known.chunks_exact(count)) {
+                axpy(here, -factor, known);
+            }
+            here.iter_mut().for_each(|b| *b /= row[r]);
+        }
+    }
+
     /// Solves `A^T x = b` in place.
     pub fn solve_transposed(&mut self, b: &mut [f64]) {
         let size = self.size;
@@ -290,6 +331,14 @@ pub(crate) mod tests {
             let x: Vec<f64> = (0..size).map(|_| random.next()).collect();
             assert!(lu.factor());
             let mut b: Vec<f64> = (0..size).map(|r| dot(&a[r * size..(r + 1) * size], &x)).collect();
+            let mut many: Vec<f64> = b.iter().flat_map(|b| [*b, -2.0 * b, 0.0]).collect();
+            lu.solve_many(&mut many, 3);
+            for (row, x) in many.chunks_exact(3).zip(&x) {
+                assert!(
+                    (row[0] - x).abs() < 1e-11 && (row[1] + 2.0 * x).abs() < 1e-11 && row[2] == 0.0,
+                    "{size}: {row:?}"
+                );
+            }
             lu.solve(&mut b);
             let mut c: Vec<f64> = (0..size).map(|q| (0..size).map(|r| a[r * size + q] * x[r]).sum()).collect();
             lu.solve_transposed(&mut c);

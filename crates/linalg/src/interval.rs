@@ -6,13 +6,46 @@
 //! rows U and V, below it the multipliers L, in the last n rows and 2n columns A and E.
 //! Source: de Boor & Weiss 1980 (ACM TOMS 6:80) for the structure; Golub & Van Loan 2013, sec. 3.4.
 
+use faer::linalg::matmul::matmul;
+use faer::{Accum, MatMut, MatRef, Par};
+
 use crate::cyclic::Shape;
 use crate::dense::{axpy, dot, row_pair};
 
+/// Rows from which a block is factored in panels: below, the updates are too small to gain from it.
+const PANELS_FROM: usize = 64;
+/// Columns of a panel: enough for the product that follows to be limited by arithmetic, few enough to stay in the cache.
+const PANEL: usize = 32;
+
 /// Factors one block in place; false where the w columns are singular or not finite.
 pub(crate) fn factor(shape: Shape, block: &mut [f64], swaps: &mut [u32]) -> bool {
-    let (rows, width) = (shape.rows(), shape.width());
-    for q in 0..shape.inner {
+    let (width, rows) = (shape.width(), shape.rows());
+    let panel = if rows < PANELS_FROM { shape.inner } else { PANEL };
+    let mut from = 0;
+    while from < shape.inner {
+        let to = (from + panel).min(shape.inner);
+        // What lies right of the last panel is updated at once.
+        let reach = if to - from < shape.inner { to } else { width };
+        if !factor_columns(block, width, (from, to, reach), swaps) {
+            return false;
+        }
+        if reach < width {
+            update(block, width, (from, to));
+        }
+        from = to;
+    }
+    true
+}
+
+/// LU with row pivoting of columns `from..to` over the rows from `from` on, carried out up to column `reach`.
+fn factor_columns(
+    block: &mut [f64],
+    width: usize,
+    (from, to, reach): (usize, usize, usize),
+    swaps: &mut [u32],
+) -> bool {
+    let rows = block.len() / width;
+    for q in from..to {
         let mut pivot = q;
         let mut largest = block[q * width + q].abs();
         for r in q + 1..rows {
@@ -34,10 +67,28 @@ pub(crate) fn factor(shape: Shape, block: &mut [f64], swaps: &mut [u32]) -> bool
             let (source, target) = row_pair(block, width, q, r);
             let factor = target[q] * inverse;
             target[q] = factor;
-            axpy(&mut target[q + 1..], -factor, &source[q + 1..]);
+            axpy(&mut target[q + 1..reach], -factor, &source[q + 1..reach]);
         }
     }
     true
+}
+
+/// The operations of a panel on the columns right of it: on its own rows one by one, on those below as one product
+/// (Golub & Van Loan 2013, sec. 3.2.11).
+fn update(block: &mut [f64], width: usize, (from, to): (usize, usize)) {
+    for r in from + 1..to {
+        for q in from..r {
+            let (source, target) = row_pair(block, width, q, r);
+            let factor = target[q];
+            axpy(&mut target[to..], -factor, &source[to..]);
+        }
+    }
+    let below = block.len() / width - to;
+    let (top, bottom) = block.split_at_mut(to * width);
+    let upper = MatRef::from_row_major_slice(top, to, width).submatrix(from, to, to - from, width - to);
+    let (left, right) = MatMut::from_row_major_slice_mut(bottom, below, width).split_at_col_mut(to);
+    let lower = left.as_ref().submatrix(0, from, below, to - from);
+    matmul(right, Accum::Add, lower, upper, -1.0, Par::Seq);
 }
 
 /// Applies the row operations to a right side: the first `inner` numbers become those of the pivot rows,

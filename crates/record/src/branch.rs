@@ -22,6 +22,11 @@ pub enum EndReason {
     PeriodBlowUp,
     /// A doubled branch came back to the cycle it was born from.
     ReturnsToParent,
+    /// It has come onto a branch followed before.
+    Joins {
+        /// Name of that branch.
+        branch: String,
+    },
     /// The asked accuracy cannot be held on the largest mesh allowed.
     ResolutionLost,
     /// The corrector failed even at the shortest stride.
@@ -43,6 +48,7 @@ impl EndReason {
             Self::Equilibrium { .. } => "equilibrium",
             Self::PeriodBlowUp => "period-blow-up",
             Self::ReturnsToParent => "returns-to-parent",
+            Self::Joins { .. } => "joins",
             Self::ResolutionLost => "resolution-lost",
             Self::Stuck => "stuck",
             Self::Budget => "budget",

@@ -6,7 +6,7 @@
 
 use std::sync::Arc;
 
-use armilla_collocation::{Failure as NewtonFailure, Iterate, Report, Row, Scalar};
+use armilla_collocation::{Failure as NewtonFailure, Iterate, LinearClosing, Report, Row, Scalar};
 use armilla_follow::{Closing, Failure, Orientation, Problem, Station};
 
 use crate::point::{CyclePoint, CycleTangent};
@@ -258,6 +258,29 @@ impl CycleProblem {
         let rounding = self.rounding(Scalar::Period, fine.unknowns.period, 0.0);
         let left = if solved { self.left_over(point, &fine) } else { 1.0 };
         let error = left * (fine.unknowns.period - point.unknowns.period).abs() + rounding;
+        Ok((fine, error))
+    }
+
+    /// The cycle re-solved on a mesh with every interval halved, at the same period, and its parameter's error: near a loop
+    /// through a state of rest the period is no function of the parameter that rounding leaves, but the parameter one of
+    /// the period.
+    ///
+    /// # Errors
+    /// [`Failure`] where that does not converge.
+    pub fn refine_at_period(
+        &mut self,
+        point: &CyclePoint,
+    ) -> Result<(CyclePoint, f64), Failure<armilla_collocation::Fault>> {
+        let mesh: Arc<[f64]> = halved(&point.mesh).into();
+        let mut fine = point.on_mesh(point.degree, &mesh);
+        let reference = fine.unknowns.nodes.clone();
+        let row = Row { period: 1.0, ..Row::zero(reference.len()) };
+        let mut closing = LinearClosing { row, target: point.unknowns.period };
+        let report = self.newton(&mut fine, &reference, &mut closing).map_err(|_| Failure::NotConverged)?;
+        let rounding = self.rounding(Scalar::Parameter, fine.unknowns.parameter, 0.0);
+        let difference = (fine.unknowns.parameter - point.unknowns.parameter).abs();
+        let error =
+            self.left_over(point, &fine) * difference + to_correct(&report) * self.metric.parameter_scale + rounding;
         Ok((fine, error))
     }
 }

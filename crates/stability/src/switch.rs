@@ -87,6 +87,7 @@ impl CycleProblem {
             let outwards = outwards.on_mesh(own.degree, &own.mesh);
             (own, outwards)
         });
+        let fine = birth.clone();
         for (birth, outwards) in own.into_iter().chain([(birth, outwards)]) {
             let mut amplitude = forecast.as_ref().map_or(AMPLITUDE, |forecast| forecast.amplitude.min(LARGEST));
             for _ in 0..HALVINGS {
@@ -95,7 +96,7 @@ impl CycleProblem {
                 // A branch on the side the normal form denies is one of the discretisation.
                 let sided = |point: &CyclePoint| offset == 0.0 || (point.unknowns.parameter - value) * offset > 0.0;
                 if let Some(point) = found.filter(sided) {
-                    return Ok(on_own_mesh(Born { problem, birth, point, outwards, amplitude }));
+                    return Ok(on_own_mesh(Born { problem, birth, point, outwards, amplitude }, &fine));
                 }
                 amplitude *= 0.5;
             }
@@ -106,13 +107,15 @@ impl CycleProblem {
     /// `fine` carried to a mesh that holds it to the accuracy with less work, if there is one. Each round the estimate comes
     /// from a better mesh, the values from the fine one.
     pub(crate) fn own_mesh(&mut self, fine: &CyclePoint) -> Option<CyclePoint> {
-        const ROUNDS: usize = 4;
+        const ROUNDS: usize = 8;
         let mut own: Option<CyclePoint> = None;
         for _ in 0..ROUNDS {
             let Some((degree, mesh)) = self.grid_for(own.as_ref().unwrap_or(fine)) else { break };
             own = Some(fine.on_mesh(degree, &mesh));
         }
-        own.filter(|own| own.unknowns.nodes.len() < fine.unknowns.nodes.len())
+        let accuracy = self.settings.mesh.accuracy;
+        let suits = |own: &CyclePoint| own.unknowns.nodes.len() < fine.unknowns.nodes.len();
+        own.filter(suits).filter(|own| self.profile_error(own) <= accuracy)
     }
 
     /// Size of the part of a cycle that changes sign from one half of the period to the other, in the metric: 0 for a
@@ -205,13 +208,15 @@ fn direction(problem: &CycleProblem, birth: &CyclePoint, located: &Located) -> C
     CycleTangent { degree: birth.degree, mesh: birth.mesh.clone(), row }
 }
 
-/// The start of the branch on a mesh and in a metric of its own; amplitudes are measured in the new metric then.
-fn on_own_mesh(mut doubled: Born) -> Born {
+/// The start of the branch on a mesh and in a metric of its own; amplitudes are measured in the new metric then, and the
+/// birth, whose states may hardly move, has its errors measured anew.
+fn on_own_mesh(mut doubled: Born, fine: &CyclePoint) -> Born {
     let renewed = doubled.problem.renew(&doubled.point, &[&doubled.outwards]);
     if let Some((point, mut tangents)) = renewed {
         doubled.point = point;
         doubled.outwards = tangents.pop().expect("renew returns as many tangents as it gets");
         doubled.amplitude = doubled.problem.split(&doubled.point);
+        doubled.birth = doubled.problem.own_mesh(fine).unwrap_or_else(|| fine.clone());
     }
     doubled
 }

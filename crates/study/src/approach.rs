@@ -64,7 +64,7 @@ const GROWN_STEEPLY: f64 = 20.0;
 /// still too, but the orbit grows with the period.
 const SHAPE: f64 = 0.1;
 
-/// How well the parameters of a history are known.
+/// How well a history is known.
 #[derive(Clone, Copy, Debug)]
 pub(crate) struct Known {
     /// Width of the asked range.
@@ -80,7 +80,8 @@ pub(crate) struct Past {
     pub value: f64,
     /// Period.
     pub period: f64,
-    /// Estimated error of the period, absolute.
+    /// Estimated error of the parameter at this period, absolute: the longer the period, the less it tells of itself and the
+    /// more of the parameter.
     pub error: f64,
 }
 
@@ -91,8 +92,8 @@ pub(crate) fn resolved(problem: &mut CycleProblem, history: &[Past], points: &[W
     const TOLD: usize = 24;
     let mut history = history.to_vec();
     for (past, walked) in history.iter_mut().rev().zip(points.iter().rev()).take(TOLD) {
-        if let Ok((fine, error)) = problem.refine(&walked.cycle) {
-            (past.period, past.error) = (fine.unknowns.period, error);
+        if let Ok((fine, error)) = problem.refine_at_period(&walked.cycle) {
+            (past.value, past.error) = (fine.unknowns.parameter, error);
         }
     }
     history
@@ -194,16 +195,15 @@ fn error(law: Law, limit: f64, points: &[Past], known: Known) -> f64 {
     // Without points that far away nothing tells how well the law holds.
     let by_law = before.map_or(distance, |(other, _)| (limit - other).abs());
     // The worst for a ratio of differences: the middle of three against its neighbours.
-    let moved = |value: f64, period: f64| {
+    let moved = |value: f64| {
         let mut points = points.to_vec();
         if let [.., middle, _] = &mut points[..] {
-            (middle.value, middle.period) = (middle.value + value, middle.period + period);
+            middle.value += value;
         }
         fit(law, &points).map_or(distance, |(other, _)| (limit - other).abs())
     };
-    let value = known.parameter;
-    let period = points.iter().rev().take(3).map(|past| past.error).fold(0.0, f64::max);
-    let by_noise = moved(value, 0.0).max(moved(-value, 0.0)) + moved(0.0, period).max(moved(0.0, -period));
+    let value = points.iter().rev().take(3).map(|past| past.error).fold(0.0, f64::max);
+    let by_noise = moved(value).max(moved(-value));
     by_law + by_noise + value + 16.0 * f64::EPSILON * known.width.max(limit.abs())
 }
 
@@ -218,7 +218,7 @@ mod tests {
     const KNOWN: Known = Known { width: 1.0, parameter: 1e-15 };
 
     fn past(value: f64, period: f64) -> Past {
-        Past { value, period, error: 1e-12 * period }
+        Past { value, period, error: 1e-15 }
     }
 
     fn history(law: Law, limit: f64, steps: usize) -> Vec<Past> {

@@ -12,6 +12,7 @@ use crate::crossing_event::{Met, symmetry_words};
 use crate::crossings::both_sides;
 use crate::ends::{end, short};
 use crate::error::StudyError;
+use crate::joins::{Atlas, Followed};
 use crate::prediction::{Estimate, next_doubling};
 use crate::progress::{Observer, Progress};
 use crate::settings::follow_settings;
@@ -70,6 +71,8 @@ impl Way {
 pub(crate) struct Finished {
     pub branch: Branch,
     pub births: Vec<Switchable>,
+    /// To be known again by.
+    pub followed: Followed,
     pub problem: CycleProblem,
 }
 
@@ -94,6 +97,8 @@ pub(crate) struct Run<'a> {
     pub to_first_doubling: bool,
     /// Points still allowed.
     pub points_left: usize,
+    /// The branches followed before.
+    pub atlas: &'a Atlas,
 }
 
 /// Collects what a walk finds, names events, and passes the news on.
@@ -185,6 +190,7 @@ pub(crate) fn plan<'a>(run: &Run<'a>, lineage: &Lineage, sign: f64) -> WalkPlan<
         doubled: !lineage.line.is_empty(),
         sign,
         abort: run.abort,
+        atlas: run.atlas,
         to_first_doubling: run.to_first_doubling,
         ahead: None,
     }
@@ -311,10 +317,11 @@ pub(crate) fn finish(
         .filter(|(index, _)| keep(*index))
         .map(|(point, walked)| StoredProfile { point, profile: problem.profile(&walked.cycle) })
         .collect();
-    let points: Vec<Point> = walked.into_iter().map(|walked| walked.point).collect();
+    let (points, cycles): (Vec<Point>, _) = walked.into_iter().map(|walked| (walked.point, walked.cycle)).unzip();
+    let followed = Followed::of(&lineage.name, &points, cycles);
     run.observer.notice(Progress::Finished { name: &lineage.name, points: points.len() });
     let branch = branch_record(run.study, lineage, Parts { points, events, ends, profiles });
-    Ok(Finished { branch, births, problem })
+    Ok(Finished { branch, births, followed, problem })
 }
 
 struct Parts {

@@ -57,6 +57,13 @@ pub enum StudyError {
         /// Why.
         reason: String,
     },
+    /// Cycles come in families, so that none is singled out by the parameters.
+    Families {
+        /// Why.
+        reason: String,
+        /// What to do.
+        instead: &'static str,
+    },
     /// Something this version does not do.
     NotInThisVersion {
         /// What was asked.
@@ -84,7 +91,7 @@ impl StudyError {
     pub fn class(&self) -> ErrorClass {
         match self {
             Self::Invalid(_) | Self::RateAtStart { .. } | Self::NotInThisVersion { .. } => ErrorClass::Input,
-            Self::Unreadable { .. } | Self::Model(_) => ErrorClass::Input,
+            Self::Unreadable { .. } | Self::Model(_) | Self::Families { .. } => ErrorClass::Input,
             Self::Record(error) if error.is_machine_fault() => ErrorClass::Machine,
             Self::Record(_) => ErrorClass::Input,
             Self::Settling { error: FlowError::Aborted { .. }, .. } | Self::Interrupted => ErrorClass::NotReached,
@@ -141,6 +148,10 @@ impl std::fmt::Display for StudyError {
                 f,
                 "no cycle was found from the settled motion: {reason}\n    help: start at parameter values where the \
                  cycle attracts more strongly, or allow a longer `transient`"
+            ),
+            Self::Families { reason, instead } => write!(
+                f,
+                "the cycles of this model come in families: {reason}; the parameters single out none of them\n    help: {instead}"
             ),
             Self::NotInThisVersion { what, instead } => {
                 write!(f, "{what} is not built in this version\n    help: {instead}")

@@ -10,20 +10,24 @@ use crate::walk::CycleStation;
 
 /// Change of the logarithm of the period in one step beyond which it is taken again shorter: half the way to a copy.
 const PERIOD: f64 = 0.35;
-/// Change of a product of scaled multipliers (at most about 1 in size) in one step beyond which it is taken again shorter:
-/// a multiplier on its way from 1 to -1 is seen at two points between at least.
+/// Change of a product of scaled multipliers (`Prod (mu - at) / sqrt(1 + mu^2)`) in one step, beside the change expected, beyond which
+/// it is taken again shorter: a multiplier on its way from 1 to -1 is seen at two points between at least, unless it was
+/// known to come.
 const MULTIPLIERS: f64 = 0.5;
 /// Share of the difference between turns that a step must leave of it.
 const LEFT: f64 = 1e-3;
 
-/// Whether a step changes more than a stride should; a shorter one tells.
-pub(crate) fn leaps(before: &CycleStation, after: &CycleStation) -> bool {
+/// Whether a step changes more than a stride should; a shorter one tells. `foretold` is a multiplier on its way from 1 to -1
+/// at both ends, where a prediction tells it.
+pub(crate) fn leaps(before: &CycleStation, after: &CycleStation, foretold: Option<(f64, f64)>) -> bool {
     let period = |station: &CycleStation| station.point.unknowns.period.ln();
-    let leaps = |index: usize| {
+    let scaled = |mu: f64, at: f64| (mu - at) / (1.0 + mu * mu).sqrt();
+    let leaps = |index: usize, at: f64| {
+        let expected = foretold.map_or(0.0, |(from, to)| (scaled(from, at) - scaled(to, at)).abs());
         let (a, b) = (before.watch.values[index].value, after.watch.values[index].value);
-        (a - b).abs() > MULTIPLIERS
+        ((a - b).abs() - expected).abs() > MULTIPLIERS
     };
-    (period(before) - period(after)).abs() > PERIOD || leaps(WATCH_DOUBLING) || leaps(WATCH_BRANCHING)
+    (period(before) - period(after)).abs() > PERIOD || leaps(WATCH_DOUBLING, -1.0) || leaps(WATCH_BRANCHING, 1.0)
 }
 
 /// Whether a step from a cycle of several turns landed on a shorter one told several times.

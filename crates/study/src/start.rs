@@ -8,6 +8,7 @@ use armilla_record::Profile;
 use armilla_stability::{CyclePoint, CycleProblem, CycleSpec};
 
 use crate::error::StudyError;
+use crate::families::family;
 use crate::file::Start;
 use crate::progress::{Observer, Progress};
 use crate::settings::cycle_settings;
@@ -25,6 +26,9 @@ pub(crate) struct First {
 
 /// Intervals per turn of the first guess; the mesh is then chosen from the accuracy.
 const FIRST_INTERVALS: usize = 40;
+
+/// |log mu| of a second multiplier at 1 on a cycle of a family, as far as a badly conditioned cycle tells.
+const OF_A_FAMILY: f64 = 1e-4;
 
 /// Finds the first cycle.
 pub(crate) fn first_cycle(study: &Study, abort: &AtomicBool, observer: &mut dyn Observer) -> Result<First, StudyError> {
@@ -78,16 +82,17 @@ pub(crate) fn first_cycle(study: &Study, abort: &AtomicBool, observer: &mut dyn 
         parameter_scale: study.range.1 - study.range.0,
     };
     let value = study.start_parameters[study.free];
-    let (problem, point) = CycleProblem::start(spec, settings, &profile, value).map_err(|fault| {
-        let reason = if cycle.neutral {
-            "the model is conservative there (its divergence integrates to zero over the settled motion), so cycles come \
-             in families and none can be told from its neighbours; this version follows isolated cycles only"
-                .to_string()
-        } else {
-            fault.to_string()
-        };
-        StudyError::NoCycle { reason }
+    let (mut problem, point) = CycleProblem::start(spec, settings, &profile, value).map_err(|fault| {
+        let no_cycle = || StudyError::NoCycle { reason: fault.to_string() };
+        family(study, &profile, cycle.neutral).unwrap_or_else(no_cycle)
     })?;
+    // Newton's method may find one of a family all the same; all of them have a second multiplier at 1.
+    let near_one = problem.spectrum(&point).ok().and_then(|spectrum| spectrum.nearest_to_one());
+    if near_one.is_some_and(|log| log.abs() < OF_A_FAMILY)
+        && let Some(family) = family(study, &profile, false)
+    {
+        return Err(family);
+    }
     Ok(First { problem, point, turns, notes })
 }
 

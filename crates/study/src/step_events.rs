@@ -421,4 +421,4 @@ pub(crate) fn at_parameter(problem: &mut CycleProblem, kind: EventKind, point: &
 
 /// Relative error claimed for the period of an event known by an interval: the period varies along a stride of some
 /// hundredths, and nothing better was computed.
-pub(crate) const PERIOD_OF_INTERVAL: f64 = 1e-3;
+const PERIOD_OF_INTERVAL: f64 = 1e-3;

@@ -12,6 +12,7 @@ use crate::branch::{Entry, Finished, Lineage, Run, Switchable, Way, follow_branc
 use crate::cascade::cascade;
 use crate::crossings::leave_out_known;
 use crate::error::StudyError;
+use crate::joins::Atlas;
 use crate::progress::Observer;
 use crate::start::first_cycle;
 use crate::step_events::LOCATED_BY_BRACKET;
@@ -85,6 +86,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
     let entry = Entry::Cycle(Box::new(first.problem), Box::new(first.point));
     let mut queue = VecDeque::from([Waiting { lineage, entry }]);
     let mut points_left = study.file.pursue.points;
+    let mut atlas = Atlas::default();
     while let Some(waiting) = queue.pop_front() {
         let mut keep = |event: &armilla_record::Event| results.write_event(event).map_err(StudyError::from);
         let mut run = Run {
@@ -94,6 +96,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
             keep: &mut keep,
             to_first_doubling: options.cascade,
             points_left,
+            atlas: &atlas,
         };
         let lineage = waiting.lineage.clone();
         let mut finished = match follow_branch(&mut run, &lineage, waiting.entry) {
@@ -106,6 +109,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         };
         points_left = run.points_left;
         leave_out_known(&mut finished, &traced.branches, &mut queue);
+        atlas.add(std::mem::take(&mut finished.followed));
         drop_other_end(study, &lineage, &mut finished.branch, &mut queue);
         results.write_branch(&finished.branch)?;
         if options.abort.load(Ordering::Relaxed) {
@@ -288,6 +292,7 @@ fn shortfalls(study: &Study, branches: &[Branch], cascade_only: bool) -> Vec<Str
                     | EndReason::Closed
                     | EndReason::Equilibrium { .. }
                     | EndReason::ReturnsToParent
+                    | EndReason::Joins { .. }
                     | EndReason::PeriodBlowUp
             );
             if !reached && !cascade_only {

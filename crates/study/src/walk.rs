@@ -11,10 +11,11 @@ use crate::approach::{Approach, Known, Past, approach, orbit_stands, resolved};
 use crate::crossing_event::mirror_image;
 use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short};
 use crate::guards::{falls_on_shorter, leaps};
+use crate::joins::Atlas;
 use crate::ledger::{Change, is_off_folds, is_sure};
 use crate::near_miss::near_miss_by_mean;
 use crate::rest::{Motion, Rest, push};
-use crate::step_events::{Found, PERIOD_OF_INTERVAL, events_of_step, events_on_edge, landing_event};
+use crate::step_events::{Found, SUPERCONVERGENCE, events_of_step, events_on_edge, landing_event};
 use crate::study::Study;
 
 pub(crate) type CycleStation = Station<CyclePoint, CycleTangent>;
@@ -35,10 +36,19 @@ pub(crate) struct WalkPlan<'a> {
     /// +1 where distances grow with the walk, -1 where they fall.
     pub sign: f64,
     pub abort: &'a AtomicBool,
+    /// The branches followed before.
+    pub atlas: &'a Atlas,
     /// Whether the walk ends at its first doubling.
     pub to_first_doubling: bool,
     /// Where the next doubling is expected.
     pub ahead: Option<Ahead>,
+}
+
+impl WalkPlan<'_> {
+    /// Width of the asked range.
+    fn width(&self) -> f64 {
+        self.study.range.1 - self.study.range.0
+    }
 }
 
 /// What a walk brings back.
@@ -68,9 +78,10 @@ pub(crate) fn walk(
     let walk = Walk { points: Vec::new(), events: Vec::new(), end: end(EndReason::Stuck, start_value, String::new()) };
     match Follower::start_along(problem, first.0, first.1, plan.settings.clone()) {
         Ok(mut follower) => {
-            let seen = Seen { motions: vec![motion(&mut follower)], periods: vec![period(&follower)] };
+            let seen = Seen { motions: vec![motion(&mut follower)], periods: vec![past(&mut follower, plan.width())] };
             let account = follower.current().clone();
-            Walker { follower, plan, sink, walk, seen, account, earlier: None, retries: 0, doubt_until: 0.0 }.run()
+            Walker { follower, plan, sink, walk, seen, account, earlier: None, retries: 0, doubt_until: 0.0, met: None }
+                .run()
         }
         Err(_) => {
             let words = "the multipliers at its first cycle could not be computed".into();
@@ -101,6 +112,8 @@ struct Walker<'w, 'p> {
     retries: usize,
     /// Distance up to which the last doubt reaches.
     doubt_until: f64,
+    /// The branch followed before that the last point lies on.
+    met: Option<String>,
 }
 
 impl Walker<'_, '_> {
@@ -171,7 +184,15 @@ impl Walker<'_, '_> {
     fn is_doubtful(&mut self, before: &CycleStation, after: &CycleStation) -> bool {
         let change = Change::between(&self.account, after);
         let explained = !is_sure(after) || change.is_explained() || change.may_cross();
-        !explained || leaps(before, after) || self.may_turn_twice(before, after)
+        !explained || leaps(before, after, self.foretold(before, after)) || self.may_turn_twice(before, after)
+    }
+
+    /// The multiplier on its way from 1 at the birth to -1 at a foretold doubling that is still ahead.
+    fn foretold(&self, before: &CycleStation, after: &CycleStation) -> Option<(f64, f64)> {
+        let met = self.walk.events.iter().any(|event| event.kind == EventKind::Doubling);
+        let ahead = self.plan.ahead.filter(|_| !met)?;
+        let [from, to] = [before, after].map(|station| ahead.multiplier(station.point.unknowns.parameter));
+        Some((from, to))
     }
 
     /// Whether the parameter may turn back twice inside a step.
@@ -293,7 +314,11 @@ impl Walker<'_, '_> {
             let words = "followed to its first doubling only, as a cascade asks".into();
             return Taken::Ended(end(EndReason::Budget, after.point.unknowns.parameter, words));
         }
-        self.seen.periods.push(period(&self.follower));
+        let past = past(&mut self.follower, self.plan.width());
+        self.seen.periods.push(past);
+        if let Some(joined) = self.joined() {
+            return Taken::Ended(joined);
+        }
         match self.approach() {
             Some(approach) => {
                 let (event, ended) = blown_up(&after, self.plan, approach);
@@ -306,12 +331,25 @@ impl Walker<'_, '_> {
         }
     }
 
+    /// The end of a walk whose last two points lie on a branch followed before: one alone may be a crossing.
+    fn joined(&mut self) -> Option<End> {
+        let last = self.walk.points.last()?;
+        let (problem, _, _) = self.follower.parts();
+        let met = self.plan.atlas.branch_of(problem, &last.point, &last.cycle).map(str::to_string);
+        let before = std::mem::replace(&mut self.met, met.clone());
+        let branch = met.filter(|met| before.as_ref() == Some(met))?;
+        let value = last.point.value;
+        let here = short(self.plan.study, value);
+        let words = format!("joins `{branch}` at {} = {here}", self.plan.study.file.follow.parameter);
+        Some(end(EndReason::Joins { branch }, value, words))
+    }
+
     /// How the period grows without bound, if it does.
     fn approach(&mut self) -> Option<Approach> {
         if self.follower.end().is_some() || !orbit_stands(&self.walk.points) {
             return None;
         }
-        let width = self.plan.study.range.1 - self.plan.study.range.0;
+        let width = self.plan.width();
         let (problem, _, _) = self.follower.parts();
         let known = Known { width, parameter: problem.parameter_roundoff() };
         let seen = approach(&self.seen.periods, known)?;
@@ -335,7 +373,10 @@ fn motion(follower: &mut Follower<'_, CycleProblem>) -> Motion {
     Motion::of(problem, &current.point)
 }
 
-fn period(follower: &Follower<'_, CycleProblem>) -> Past {
-    let unknowns = &follower.current().point.unknowns;
-    Past { value: unknowns.parameter, period: unknowns.period, error: PERIOD_OF_INTERVAL * unknowns.period }
+fn past(follower: &mut Follower<'_, CycleProblem>, width: f64) -> Past {
+    let (problem, _, current) = follower.parts();
+    let unknowns = &current.point.unknowns;
+    // As far as a walk can tell without a finer mesh.
+    let error = SUPERCONVERGENCE * problem.settings().mesh.accuracy * width + problem.parameter_roundoff();
+    Past { value: unknowns.parameter, period: unknowns.period, error }
 }

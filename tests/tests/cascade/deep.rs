@@ -134,14 +134,15 @@ fn the_accumulation_is_covered_by_its_error() {
 }
 
 /// The predicted place is met in few strides, and not far behind: each deeper branch has its birth, its first cycle and
-/// a few points more, some of which the watch over multipliers asks for.
+/// two or three points more. On the first of them one stride more: Newton's method does not converge over half the way yet.
 #[test]
 fn few_points_on_deep_branches() {
     let rows = thresholds();
     for (k, branch) in roessler().branches.iter().enumerate().skip(5) {
-        assert!(branch.points.len() <= 9, "{}: {} points", branch.name, branch.points.len());
+        let most = if k == 5 { 6 } else { 5 };
+        assert!(branch.points.len() <= most, "{}: {} points", branch.name, branch.points.len());
         let last = branch.points.last().expect("points").value;
         let passed = (last - rows[k - 1].value) / (rows[k].value - rows[k - 1].value);
-        assert!((1.0..2.0).contains(&passed), "{}: {passed}", branch.name);
+        assert!((1.0..1.6).contains(&passed), "{}: {passed}", branch.name);
     }
 }
