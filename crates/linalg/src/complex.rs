@@ -172,8 +172,7 @@ impl ComplexBordered {
             *scalar = Complex::new(last[2 * n + j], last[size + 2 * n + j]);
             subtract(&mut right, *scalar, column);
         }
-        for (part, (values, right)) in
-            [(&mut nodes.re, &right.re), (&mut nodes.im, &right.im)].into_iter().enumerate()
+        for (part, (values, right)) in [(&mut nodes.re, &right.re), (&mut nodes.im, &right.im)].into_iter().enumerate()
         {
             values[..n].copy_from_slice(&last[part * size..part * size + n]);
             values[nodes_len - n..].copy_from_slice(&last[part * size + n..part * size + 2 * n]);
@@ -292,14 +291,16 @@ mod tests {
     #[test]
     fn solutions_satisfy_the_matrix_written_out() {
         let sigma = Number::from_polar(1.0, 2.1);
-        for (seed, (n, inner, intervals, k)) in [(2, 4, 3, 1), (3, 6, 40, 1), (3, 0, 17, 0), (4, 12, 33, 1)].into_iter().enumerate()
+        for (seed, (n, inner, intervals, k)) in
+            [(2, 4, 3, 1), (3, 6, 40, 1), (3, 0, 17, 0), (4, 12, 33, 1)].into_iter().enumerate()
         {
             let shape = Shape { n, inner, intervals };
             let (cyclic, mut bordered, dense) = planted(shape, k, sigma, seed as u64 + 5);
             let (core, nodes, size) = (shape.core_len(), shape.nodes_len(), shape.nodes_len() + k);
             let mut random = Random::new(99);
             let scale = |at: usize| if at < nodes { cyclic.sizes()[at % n] } else { 1.0 };
-            let right: Vec<Number> = (0..core).map(|at| Number::new(random.next(), random.next()) * scale(at)).collect();
+            let right: Vec<Number> =
+                (0..core).map(|at| Number::new(random.next(), random.next()) * scale(at)).collect();
             let border: Vec<Number> = (0..k).map(|_| Number::new(random.next(), random.next())).collect();
             let mut found = ComplexVector::zeros(nodes);
             let mut scalars = vec![Number::new(0.0, 0.0); k];
@@ -318,7 +319,10 @@ mod tests {
             let wanted = (0..nodes).map(|_| 0.0.into()).chain(border.iter().copied());
             for (c, wanted) in wanted.enumerate() {
                 let sum: Number = (0..size).map(|r| dense[r][c] * y[r]).sum();
-                assert!((sum - wanted).norm() * scale(c) < 1e-8, "column {c} of {n} {inner} {intervals}: {sum} {wanted}");
+                assert!(
+                    (sum - wanted).norm() * scale(c) < 1e-8,
+                    "column {c} of {n} {inner} {intervals}: {sum} {wanted}"
+                );
             }
         }
     }

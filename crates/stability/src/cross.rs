@@ -1,10 +1,10 @@
-//! From a located crossing onto the branch that crosses, on either side.
+//! Entrance a located crossing onto the branch that crosses, on either side.
 //!
 //! A first cycle is corrected with its component held along the part of the crossing tangent that is normal to the tangent
 //! of the known branch, everything else free (Keller 1977, in Applications of Bifurcation Theory, 359): the known branch
 //! meets that plane at second order only.
 
-use armilla_follow::{Closing, Problem};
+use armilla_follow::{Closing, Orientation, Problem};
 
 use crate::crossing::{Crossing, reversed};
 use crate::crossing_system::mixed;
@@ -55,18 +55,25 @@ impl CycleProblem {
     /// [`SwitchFault`] where no cycle of it is found.
     pub fn cross(&self, crossing: &Crossing) -> Result<Crossed, SwitchFault> {
         let (mut problem, birth) = self.at_crossing(crossing)?;
+        let whole = birth.clone();
         let fine = (birth, crossing.tangents.clone());
         // Of the located cycle's fine mesh the branch needs a part only; where it has no cycle on that, the fine one remains.
         let own = problem.own_mesh(&fine.0).map(|own| {
             let tangents = crossing.tangents.clone().map(|tangent| tangent.on_mesh(own.degree, &own.mesh));
             (own, tangents)
         });
+        let rises = !crossing.parameter_parts[1].vanishes();
         for (birth, tangents) in own.into_iter().chain([fine]) {
             let tangents = tangents.map(|tangent| problem.normalised(tangent));
+            let Ok(spectrum) = problem.spectrum(&birth) else { continue };
+            let products = [spectrum.doubling_product(), spectrum.torus_product()];
+            let from = Entrance { birth, tangents, rises, products };
             let mut amplitude = AMPLITUDE;
             for _ in 0..HALVINGS {
-                let [forward, backward] = [1.0, -1.0].map(|side| problem.beside(&birth, &tangents, side * amplitude));
+                let [forward, backward] = [1.0, -1.0].map(|side| problem.beside(&from, side * amplitude));
                 if let (Some(forward), Some(backward)) = (forward, backward) {
+                    // States that hardly move at the crossing may have another size beside it.
+                    let birth = problem.own_mesh(&whole).unwrap_or_else(|| whole.clone());
                     return Ok(Crossed { problem, birth, ways: [forward, backward] });
                 }
                 amplitude *= 0.5;
@@ -85,32 +92,28 @@ impl CycleProblem {
     }
 
     /// A cycle beside a crossing, at an amplitude along the second tangent or moved outwards from there.
-    fn beside(&mut self, birth: &CyclePoint, tangents: &[CycleTangent; 2], from: f64) -> Option<CrossedWay> {
-        let (mut point, mut near) = self.at_amplitude(birth, tangents, from)?;
-        let mut amplitude = from;
+    fn beside(&mut self, from: &Entrance, first: f64) -> Option<CrossedWay> {
+        let (mut point, mut near) = self.at_amplitude(from, first)?;
+        let mut amplitude = first;
         for _ in 0..GROWTHS {
             if near > WANTED {
                 break;
             }
-            let Some(farther) = self.at_amplitude(birth, tangents, 2.0 * amplitude) else { break };
+            let Some(farther) = self.at_amplitude(from, 2.0 * amplitude) else { break };
             (point, near) = farther;
             amplitude *= 2.0;
         }
-        let across = tangents[1].clone();
-        let mut outwards = if amplitude < 0.0 { reversed(across) } else { across };
+        let mut outwards = from.outwards(amplitude);
         if let Some((renewed, mut tangents)) = self.renew(&point, &[&outwards]) {
             (point, outwards) = (renewed, tangents.pop().expect("renew returns as many tangents as it gets"));
         }
         Some(CrossedWay { point, outwards, amplitude: amplitude.abs() })
     }
 
-    /// The cycle at an amplitude, with the |log mu| of the multiplier that is 1 at the crossing.
-    fn at_amplitude(
-        &mut self,
-        birth: &CyclePoint,
-        [along, across]: &[CycleTangent; 2],
-        amplitude: f64,
-    ) -> Option<(CyclePoint, f64)> {
+    /// The cycle at an amplitude, with the |log mu| of the multiplier that is 1 at the crossing; none where it does not
+    /// belong to the branch that crosses, or where an event may lie between.
+    fn at_amplitude(&mut self, from: &Entrance, amplitude: f64) -> Option<(CyclePoint, f64)> {
+        let Entrance { birth, tangents: [along, across], .. } = from;
         let common = self.inner(along, across);
         let normal = mixed((1.0, &across.row), (-common, &along.row));
         let normal = self.normalised(CycleTangent { row: normal, ..across.clone() });
@@ -118,9 +121,43 @@ impl CycleProblem {
         let prediction = self.advance(birth, across, amplitude);
         let closing = Closing::Component { from: birth, direction: &normal, amount };
         let point = self.correct(&prediction, closing).ok()?.point;
-        let near = self.spectrum(&point).ok()?.nearest_to_one()?.abs();
-        let belongs = self.distance(birth, &point) <= NEAR * amplitude.abs() && near < NEAR_ONE;
-        belongs.then_some((point, near))
+        let spectrum = self.spectrum(&point).ok()?;
+        let near = spectrum.nearest_to_one()?.abs();
+        if !(self.distance(birth, &point) <= NEAR * amplitude.abs()) || near > NEAR_ONE {
+            return None;
+        }
+        let products = [spectrum.doubling_product(), spectrum.torus_product()];
+        let passes = from.products.iter().zip(products).any(|(before, after)| before * after < 0.0);
+        (!passes && self.goes_straight(from, amplitude, &point)?).then_some((point, near))
+    }
+
+    /// Whether the parameter does not turn back between a crossing and a first cycle: it still goes away from its value
+    /// there, to the side the tangent says.
+    fn goes_straight(&mut self, from: &Entrance, amplitude: f64, point: &CyclePoint) -> Option<bool> {
+        let outwards = from.outwards(amplitude);
+        let moving = self.tangent(point, Orientation::Along(&outwards)).ok()?.row.parameter;
+        let offset = point.unknowns.parameter - from.birth.unknowns.parameter;
+        // Where nothing moves at all the signs are roundoff's.
+        let noise = self.parameter_roundoff();
+        let away = moving * offset > 0.0 || offset.abs() <= noise;
+        Some(away && (!from.rises || outwards.row.parameter * offset > 0.0))
+    }
+}
+
+/// A crossing as a branch is entered from it.
+struct Entrance {
+    birth: CyclePoint,
+    tangents: [CycleTangent; 2],
+    /// Whether the parameter moves along the second tangent.
+    rises: bool,
+    /// Doubling and torus function there.
+    products: [f64; 2],
+}
+
+impl Entrance {
+    fn outwards(&self, amplitude: f64) -> CycleTangent {
+        let across = self.tangents[1].clone();
+        if amplitude < 0.0 { reversed(across) } else { across }
     }
 }
 

@@ -52,6 +52,16 @@ pub struct Crossing {
     pub share: f64,
 }
 
+impl Crossing {
+    /// The same seen from the branch that crosses.
+    #[must_use]
+    pub fn turned(mut self) -> Self {
+        self.tangents.swap(0, 1);
+        self.parameter_parts.swap(0, 1);
+        self
+    }
+}
+
 /// What lies where a branch seems to be crossed.
 #[derive(Clone, Debug)]
 pub enum Meeting {

@@ -217,7 +217,8 @@ impl CycleProblem {
         let h11 = without_flow(system, &h11, (&phi, &point.unknowns.nodes), period);
         let h20 = second_harmonic(system, &v, Complex::from_polar(1.0, angle), period)?;
         let integrand = third_order(system, (&v, &h11, &h20), a)?;
-        let d = paired(system, &vectors.psi, &integrand, period) / pairing * 0.5 + Complex::new(0.0, a * angle / period);
+        let d =
+            paired(system, &vectors.psi, &integrand, period) / pairing * 0.5 + Complex::new(0.0, a * angle / period);
         (a.is_finite() && d.re.is_finite() && d.im.is_finite()).then_some(TorusForm { a, d: (d.re, d.im), error: 0.0 })
     }
 }
@@ -265,12 +266,7 @@ fn quadratic(system: &mut System, u: &[f64], v: &[f64]) -> Vec<f64> {
 }
 
 /// h20 at the nodes.
-fn second_harmonic(
-    system: &mut System,
-    v: &ComplexVector,
-    rho: Complex<f64>,
-    period: f64,
-) -> Option<ComplexVector> {
+fn second_harmonic(system: &mut System, v: &ComplexVector, rho: Complex<f64>, period: f64) -> Option<ComplexVector> {
     let (xx, yy) = (quadratic(system, &v.re, &v.re), quadratic(system, &v.im, &v.im));
     let re = combined(&[(1.0, &xx), (-1.0, &yy)]);
     let im = combined(&[(2.0, &quadratic(system, &v.re, &v.im))]);

@@ -42,15 +42,16 @@ fn sentences(branch: &Branch, event: &Event) -> String {
     let unstable = unstable_above.map_or_else(|| "where the cycle is unstable".into(), side);
     let stable = unstable_above.map_or_else(|| "where the cycle is stable".into(), |above| side(!above));
     let beat = event.angle.map_or(f64::INFINITY, |angle| event.period * TAU / angle);
-    let rhythm = format!("rotation of {} rad a period: a beat every {}", digits(event.angle.unwrap_or(0.0)), digits(beat));
+    let rhythm =
+        format!("rotation of {} rad a period: a beat every {}", digits(event.angle.unwrap_or(0.0)), digits(beat));
     match event.criticality {
         None => format!(
             "what comes {unstable} is not decided here (see the note); cycles of several turns, tori and jumps are all \
              possible: simulate there"
         ),
-        Some(_) if fewer > 0 => format!(
-            "the cycle is unstable on both sides, so no torus near it is seen in a simulation ({rhythm})"
-        ),
+        Some(_) if fewer > 0 => {
+            format!("the cycle is unstable on both sides, so no torus near it is seen in a simulation ({rhythm})")
+        }
         Some(Criticality::Supercritical) => format!(
             "{unstable} expect the oscillation to swell and shrink: a stable torus round the cycle, its width growing from \
              zero like the root of the distance ({rhythm}); further on it may lock to a cycle of several turns or break up"

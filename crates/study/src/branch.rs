@@ -60,9 +60,7 @@ impl Way {
             Self::Doubling { located, .. } => {
                 Estimate { value: located.point.unknowns.parameter, error: located.error }
             }
-            Self::Crossing(met) => {
-                Estimate { value: met.crossing.point.unknowns.parameter, error: met.crossing.error }
-            }
+            Self::Crossing(met) => Estimate { value: met.crossing.point.unknowns.parameter, error: met.crossing.error },
         }
     }
 }

@@ -100,10 +100,7 @@ fn event(problem: &mut CycleProblem, crossing: Crossing, distance: f64, plan: &W
 /// A crossing along one branch of which the parameter stands still: a pair of branches is born, or cycles fill a continuum.
 fn pitchfork(problem: &mut CycleProblem, crossing: &Crossing, from_side: bool, study: &Study) -> Told {
     // The direction in which the parameter stands still is the one that breaks a symmetry, if any is broken.
-    let mut turned = crossing.clone();
-    if from_side {
-        turned.tangents.swap(0, 1);
-    }
+    let turned = if from_side { crossing.clone().turned() } else { crossing.clone() };
     let broken = problem.broken_symmetry(&crossing.point, &turned.tangents[1].row.nodes);
     let said = pitchfork_words(broken.as_ref(), &study.model);
     let side = side(problem, &turned, study);
@@ -139,7 +136,9 @@ fn pitchfork_words(broken: Option<&(Symmetry, Parity)>, model: &Model) -> String
 pub(crate) fn symmetry_words(symmetry: &Symmetry, model: &Model) -> String {
     let name = |index: usize| model.states()[index].name.as_str();
     let moved = symmetry.image.iter().enumerate().filter(|(i, (j, sign))| i != j || *sign < 0.0);
-    let image = |(i, (j, sign)): (usize, &(usize, f64))| format!("{} -> {}{}", name(i), if *sign < 0.0 { "-" } else { "" }, name(*j));
+    let image = |(i, (j, sign)): (usize, &(usize, f64))| {
+        format!("{} -> {}{}", name(i), if *sign < 0.0 { "-" } else { "" }, name(*j))
+    };
     let listed: Vec<String> = moved.map(image).collect();
     let when = if symmetry.half_period { " half a period later" } else { "" };
     format!("{}{when}", listed.join(", "))

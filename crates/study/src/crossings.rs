@@ -36,7 +36,12 @@ pub(crate) fn both_sides(run: &mut Run<'_>, lineage: &Lineage, crossed: Crossed)
     finish(collector, problem, walked, (other_end, end))
 }
 
-fn described(problem: &mut CycleProblem, at: &CyclePoint, lineage: &Lineage, distance: f64) -> Result<Point, StudyError> {
+fn described(
+    problem: &mut CycleProblem,
+    at: &CyclePoint,
+    lineage: &Lineage,
+    distance: f64,
+) -> Result<Point, StudyError> {
     problem.describe(at, lineage.turns, distance).map_err(|fault| StudyError::NoCycle { reason: fault.to_string() })
 }
 
@@ -51,7 +56,10 @@ fn one_side(
     let value = way.point.unknowns.parameter;
     let (low, high) = collector.run.study.range;
     if value < low || value > high {
-        let words = format!("leads out of the asked range at the crossing, {} = {value}", collector.run.study.file.follow.parameter);
+        let words = format!(
+            "leads out of the asked range at the crossing, {} = {value}",
+            collector.run.study.file.follow.parameter
+        );
         return Ok((Vec::new(), end(EndReason::Edge, value, words)));
     }
     problem.anchor(&way.point);
