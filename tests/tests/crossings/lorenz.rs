@@ -3,10 +3,10 @@
 //! Source: independent, single shooting with a Taylor series of order 28 and 30 decimals, and again of order 34 and 36, by
 //! Newton's method and the secant method: the symmetric cycle as a fixed point of the half-period map followed by
 //! x -> -x, y -> -y, the breaking where that has the multiplier -1; the doubling where the period's map has -1. (Sparrow
-//! 1982, The Lorenz Equations, has them near 313 and 229.4; from memory.)
+//! 1982, The Lorenz Equations, has the breaking near 313; from memory.)
 
 use armilla_record::{Criticality, EndReason, EventKind};
-use armilla_tests::{branch, event, job, relative};
+use armilla_tests::{absolute, branch, cascade_job, event, job, relative};
 
 #[test]
 #[expect(clippy::excessive_precision, reason = "the digits of the source")]
@@ -60,4 +60,20 @@ fn the_same_from_one_of_the_pair() {
     let symmetric = branch(&traced, "a.pitchfork1");
     assert_eq!([symmetric.ends.0.value, symmetric.ends.1.value], [240.0, 320.0]);
     assert!(symmetric.events.iter().filter(|event| event.kind == EventKind::Start).count() == 2);
+}
+
+/// The whole sequence of the pair, from the symmetric cycle on; its second threshold by shooting as above, with 24 decimals.
+#[test]
+#[expect(clippy::excessive_precision, reason = "the digits of the source")]
+fn the_sequence_of_the_pair() {
+    let traced = cascade_job(
+        "lorenz",
+        r#"start: Settle(at: {"r": 350}), follow: (parameter: "r", from: 200, to: 360), pursue: (doublings: 5)"#,
+    );
+    let names: Vec<&str> = traced.cascade.iter().map(|row| row.event.as_str()).collect();
+    assert_eq!(names[..2], ["a.pitchfork1/doubling1", "a.pitchfork1.doubling1/doubling1"]);
+    assert_eq!(names.len(), 7, "six doublings and their limit: {names:?}");
+    relative("second doubling", traced.cascade[1].value, 218.210_127_777_820_751_848, 1e-12);
+    // Feigenbaum 1978 (J. Stat. Phys. 19:25): the ratios tend to 4.6692.
+    absolute("ratio", traced.cascade[5].ratio.expect("a ratio"), 4.6692, 0.02);
 }
