@@ -179,8 +179,13 @@ fn turning_pair() -> Run {
 
 /// A transcritical crossing and a pitchfork at mu = 0 in a bent coordinate, where no mesh keeps the cycle that is crossed.
 fn bent(case: &'static str, set: &str, event: &'static str) -> Run {
-    let fields = format!(r#"set: {{{set}}}, start: Settle(at: {{"mu": -0.2}}), follow: (parameter: "mu", from: -0.3, to: 0.5)"#);
-    Run::new(case, "bent_crossing", &fields).value(event, "0.0", Exact).period(event, "4.1887902047863909846168578", Exact)
+    let fields =
+        format!(r#"set: {{{set}}}, start: Settle(at: {{"mu": -0.2}}), follow: (parameter: "mu", from: -0.3, to: 0.5)"#);
+    Run::new(case, "bent_crossing", &fields).value(event, "0.0", Exact).period(
+        event,
+        "4.1887902047863909846168578",
+        Exact,
+    )
 }
 
 fn bent_transcritical() -> Run {

@@ -130,3 +130,31 @@ fn a_transcritical_crossing_beside_a_fold_is_told_from_a_pitchfork() {
         assert_eq!(ends(branch(&traced, "a.transcritical1")), [0.5, 0.5], "{q}");
     }
 }
+
+/// `c' = c (0.09 - p^2 - c^2)` beside a circle: the pair `c^2 = 0.09 - p^2` lives between two pitchforks, and is met from
+/// either of them, or from itself, once.
+#[test]
+fn a_pair_between_two_pitchforks_is_followed_once() {
+    let set = r#"set: {"c0": 0.09, "c1": 0.0, "c2": -1.0}"#;
+    for (at, pair, single) in [(-0.6, "a.pitchfork1", "a"), (0.05, "a", "a.pitchfork1")] {
+        let fields =
+            format!(r#"{set}, start: Settle(at: {{"p": {at}}}), follow: (parameter: "p", from: -0.7, to: 0.7)"#);
+        let traced = job("product", &fields);
+        assert!(traced.shortfalls.is_empty(), "{:?}", traced.shortfalls);
+        assert_eq!(names(&traced), ["a", "a.pitchfork1"]);
+        for event in traced.branches.iter().flat_map(|branch| &branch.events) {
+            if event.kind == EventKind::Pitchfork {
+                let off = (event.value.abs() - 0.3).abs();
+                assert!(off <= event.error.expect("an error") && off < 1e-12, "{event:?}");
+                assert_eq!(event.criticality, Some(Criticality::Supercritical));
+            }
+        }
+        let pair = branch(&traced, pair);
+        for point in &pair.points {
+            absolute("c^2", point.means[4].powi(2), 0.09 - point.value.powi(2), 1e-9);
+        }
+        assert!(pair.points.len() < 200, "{} points", pair.points.len());
+        assert_eq!([&pair.ends.0.reason, &pair.ends.1.reason], [&EndReason::ReturnsToParent; 2]);
+        assert_eq!(ends(branch(&traced, single)), [-0.7, 0.7]);
+    }
+}
