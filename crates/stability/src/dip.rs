@@ -31,7 +31,7 @@ pub enum Dip {
 
 /// `Prod (mu + 1)` above which, at both ends of a stride, no multiplier can reach -1 and come back inside it: the change
 /// of multipliers from point to point is bounded to about as much. Larger costs two more linear systems for more strides.
-const NEAR: f64 = 0.2;
+const NEAR: f64 = 0.6;
 /// Share of the larger end value under which the lowest value of the cubic is looked at.
 const LOW: f64 = 0.1;
 /// Share of the value at the bottom that the cubic may still promise below it once the bottom is found.

@@ -224,6 +224,21 @@ impl CycleProblem {
         self.between(low, high, 0.5)
     }
 
+    /// Share of the chord between two stations at which a point beside it lies, counted along the first one's tangent as
+    /// [`CycleProblem::between`] counts it.
+    pub fn share_of(&self, (low, high): (&CycleStation, &CycleStation), point: &CyclePoint) -> f64 {
+        let on = &low.point;
+        let (point, tangent) =
+            (point.on_mesh(on.degree, &on.mesh), self.normalised(low.tangent.on_mesh(on.degree, &on.mesh)));
+        let (here, there) = (&on.unknowns, &point.unknowns);
+        let step = Row {
+            nodes: there.nodes.iter().zip(&here.nodes).map(|(to, from)| to - from).collect(),
+            period: there.period - here.period,
+            parameter: there.parameter - here.parameter,
+        };
+        self.metric.inner(on.tables(), &on.mesh, &tangent.row, &step) / self.distance(on, &high.point)
+    }
+
     /// A station on the branch between two stations, at a share of the chord from `low` to `high`; none where it does not
     /// correct or where the corrected cycle does not lie between them.
     pub fn between(&mut self, low: &CycleStation, high: &CycleStation, share: f64) -> Option<CycleStation> {

@@ -14,6 +14,12 @@ const PERIOD: f64 = 0.35;
 /// it is taken again shorter: a multiplier on its way from 1 to -1 is seen at two points between at least, unless it was
 /// known to come.
 const MULTIPLIERS: f64 = 0.5;
+/// Share of a watched value by which it may miss the straight line through the two stations before: a bump half as wide as a
+/// stride shows by more at the stations beside it, while the values of ordinary branches bend by less. More misses bumps,
+/// less costs strides.
+const STRAIGHT: f64 = 0.15;
+/// Watched value below which that is not asked: an event is near, and dips are searched for there anyway.
+const FAR: f64 = 0.1;
 /// Share of the difference between turns that a step must leave of it.
 const LEFT: f64 = 1e-3;
 
@@ -28,6 +34,18 @@ pub(crate) fn leaps(before: &CycleStation, after: &CycleStation, foretold: Optio
         ((a - b).abs() - expected).abs() > MULTIPLIERS
     };
     (period(before) - period(after)).abs() > PERIOD || leaps(WATCH_DOUBLING, -1.0) || leaps(WATCH_BRANCHING, 1.0)
+}
+
+/// Whether a watched value bends so much that a bump beside the last station may hide inside a step; `earlier` is the station
+/// before the step.
+pub(crate) fn bends(earlier: &CycleStation, before: &CycleStation, after: &CycleStation) -> bool {
+    let [a, b, c] = [earlier, before, after].map(|station| station.distance);
+    [WATCH_DOUBLING, WATCH_TORUS, WATCH_BRANCHING].into_iter().any(|index| {
+        let [from, here, to] = [earlier, before, after].map(|station| station.watch.values[index].value);
+        let straight = here + (here - from) * (c - b) / (b - a);
+        let least = here.abs().min(to.abs());
+        here * to > 0.0 && least > FAR && (to - straight).abs() > STRAIGHT * least
+    })
 }
 
 /// Whether a step from a cycle of several turns landed on a shorter one told several times.

@@ -32,6 +32,7 @@ mod error;
 mod families;
 mod file;
 mod guards;
+mod hidden;
 mod joins;
 mod ledger;
 mod near_miss;

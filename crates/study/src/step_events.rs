@@ -9,6 +9,7 @@ use armilla_stability::{
 
 use crate::crossing_event::{self, Looked, Met};
 use crate::guards::smooth_values;
+use crate::hidden::beside;
 use crate::ledger::{Change, Part, Whole, narrowed, parts, stands_on};
 use crate::torus_event::{self, REAL};
 use crate::valley::valley;
@@ -48,23 +49,19 @@ pub(crate) fn events_of_step(
     plan: &WalkPlan<'_>,
 ) -> Findings {
     let mut findings = Findings { found: Vec::new(), jumped: false };
-    let mut stations = vec![ends.0.clone()];
+    let mut between = Vec::new();
     // What does not add up is cut into parts anyway; its values dip to zero because of what is found there.
-    let explained = Change::between(ends.0, ends.1).is_explained();
+    let change = Change::between(ends.0, ends.1);
+    let explained = change.is_explained() || change.may_cross();
     for (dip, angle) in explained.then(|| dips(problem, ends, earlier)).into_iter().flatten() {
         match dip {
             Dip::Clear => {}
-            Dip::Split(station) => stations.push(*station),
+            Dip::Split(station) => between.push(*station),
             Dip::Touch(station) => findings.found.push(touch(&station, angle, plan)),
         }
     }
-    stations.push(ends.1.clone());
-    let along = (ends.1.distance - ends.0.distance).signum();
-    stations.sort_by(|a, b| (along * a.distance).total_cmp(&(along * b.distance)));
-    for pair in stations.windows(2) {
-        for part in parts(problem, (&pair[0], &pair[1]), Whole::Crossings) {
-            events_of_part(problem, &part, plan, &mut findings);
-        }
+    for pair in in_order(ends.0, between, ends.1).windows(2) {
+        events_between(problem, (&pair[0], &pair[1]), plan, &mut findings);
     }
     findings.found.sort_by(|a, b| (plan.sign * a.distance).total_cmp(&(plan.sign * b.distance)));
     findings
@@ -147,6 +144,40 @@ fn touch(at: &CycleStation, angle: Option<f64>, plan: &WalkPlan<'_>) -> Found {
 
 /// Share of the range within which two events that cancel cannot be told apart: the root of roundoff, with a margin.
 const TOUCHING: f64 = 1e-6;
+
+/// Stations from one to another with those between them, in the order of the walk.
+fn in_order(from: &CycleStation, mut between: Vec<CycleStation>, to: &CycleStation) -> Vec<CycleStation> {
+    let along = (to.distance - from.distance).signum();
+    between.sort_by(|a, b| (along * a.distance).total_cmp(&(along * b.distance)));
+    std::iter::once(from.clone()).chain(between).chain([to.clone()]).collect()
+}
+
+/// The events of all parts between two stations; a part that holds more of a kind than one is cut between them.
+fn events_between(
+    problem: &mut CycleProblem,
+    ends: (&CycleStation, &CycleStation),
+    plan: &WalkPlan<'_>,
+    findings: &mut Findings,
+) {
+    /// Cuts between events in all: a step with more is no step of this branch.
+    const CUTS: usize = 30;
+    let mut waiting = parts(problem, ends, Whole::Crossings);
+    let mut cuts = 0;
+    while let Some(part) = waiting.pop() {
+        let mut own = Findings { found: Vec::new(), jumped: false };
+        events_of_part(problem, &part, plan, &mut own);
+        let between = if cuts < CUTS { beside(problem, &part, &own.found) } else { Vec::new() };
+        if !between.is_empty() {
+            cuts += 1;
+            for pair in in_order(&part.before, between, &part.after).windows(2) {
+                waiting.extend(parts(problem, (&pair[0], &pair[1]), Whole::Crossings));
+            }
+            continue;
+        }
+        findings.jumped |= own.jumped;
+        findings.found.extend(own.found);
+    }
+}
 
 fn events_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, findings: &mut Findings) {
     let change = part.change;

@@ -60,6 +60,18 @@ impl Study {
         Self::check(file, path.to_path_buf(), model, Source { file: &shown, text: &text })
     }
 
+    /// A study of a model that is at hand already, as one coded in Rust is: `text` is that of a study file, whose `model` is
+    /// a name only; `path` is where such a file would lie, results go beside it.
+    ///
+    /// # Errors
+    /// [`StudyError`] with the place of the first error.
+    pub fn of_model(text: &str, path: impl AsRef<Path>, model: Model) -> Result<Self, StudyError> {
+        let shown = path.as_ref().display().to_string();
+        let source = Source { file: &shown, text };
+        let file = parse(source)?;
+        Self::check(file, path.as_ref().to_path_buf(), model, source)
+    }
+
     fn check(mut file: StudyFile, path: PathBuf, model: Model, source: Source<'_>) -> Result<Self, StudyError> {
         let place = Place { source };
         place.numbers(&file)?;

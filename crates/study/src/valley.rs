@@ -13,7 +13,10 @@ use crate::walk::CycleStation;
 /// several multipliers, which parabolas do not follow far: half, where a tenth would do for a parabola itself.
 const LOW: f64 = 0.5;
 /// Value above which, at both ends, no multiplier passes and comes back inside a stride; the guards bound its change.
-const NEAR: f64 = 0.3;
+const NEAR: f64 = 0.6;
+/// Value under which, at one end, the middle of the stride is computed where the parabola through the station before tells of
+/// no low place: beyond an event that value has another sign there, and says little.
+const CLOSE: f64 = 0.05;
 /// Strides by which the lowest place of a parabola may lie outside of the one it was made for and still be looked for
 /// inside: half a stride is what a smooth value may shift it by.
 const BESIDE: f64 = 0.5;
@@ -63,7 +66,12 @@ fn search(
         let distance = problem.distance(&station.point, &before.point) / length;
         (distance > 0.0).then_some((-distance, value(station)? * side))
     });
-    let mut triple = match outer {
+    let hopeful = |outer: &Sample| {
+        let lowest = lowest([*outer, low, high]);
+        lowest.is_some_and(|(share, promised)| (-BESIDE..1.0 + BESIDE).contains(&share) && promised <= LOW * size)
+    };
+    let close = low.1.min(high.1) < CLOSE;
+    let mut triple = match outer.filter(|outer| !close || hopeful(outer)) {
         Some(outer) => [outer, low, high],
         None => {
             let middle = problem.between(before, after, 0.5)?;
@@ -88,10 +96,46 @@ fn search(
             return Some(Dip::Split(Box::new(station)));
         }
         // The next parabola goes through the lowest point and its neighbours.
-        triple = around(triple, (share, found), (low, high))?;
+        match around(triple, (share, found), (low, high)) {
+            Some(next) => triple = next,
+            None => match beside_end(problem, (before, after), value, (share, [low, high]))? {
+                Ok(station) => return Some(Dip::Split(Box::new(station))),
+                Err(next) => triple = next,
+            },
+        }
         best = Some(triple[1]);
     }
     Some(Dip::Clear)
+}
+
+/// Looks between the lower end and a point for a place below that end: one beyond zero, or three points around a low place.
+fn beside_end(
+    problem: &mut CycleProblem,
+    (before, after): (&CycleStation, &CycleStation),
+    value: Value<'_>,
+    (from, ends): (f64, [Sample; 2]),
+) -> Option<Result<CycleStation, [Sample; 3]>> {
+    /// Halvings of the distance to the end: two events a sixteenth of it apart are found.
+    const HALVINGS: usize = 4;
+    let (end, side) = (if ends[0].1 < ends[1].1 { ends[0] } else { ends[1] }, value(before)?.signum());
+    if end.1 >= CLOSE {
+        return None;
+    }
+    let mut inner: Option<Sample> = None;
+    let mut share = from;
+    for _ in 0..HALVINGS {
+        share = 0.5 * (share + end.0);
+        let station = problem.between(before, after, share)?;
+        let found = value(&station)? * side;
+        if found < 0.0 {
+            return Some(Ok(station));
+        }
+        if let Some(inner) = inner.filter(|_| found < end.1) {
+            return Some(Err(if end.0 > share { [inner, (share, found), end] } else { [end, (share, found), inner] }));
+        }
+        inner = Some((share, found));
+    }
+    None
 }
 
 /// Where the parabola through three points is lowest, and its value there; none where it has no lowest place.

@@ -10,7 +10,7 @@ use crate::ahead::Ahead;
 use crate::approach::{Approach, Known, Past, approach, orbit_stands, resolved};
 use crate::crossing_event::mirror_image;
 use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short};
-use crate::guards::{falls_on_shorter, leaps};
+use crate::guards::{bends, falls_on_shorter, leaps};
 use crate::joins::Atlas;
 use crate::ledger::{Change, is_off_folds, is_sure};
 use crate::near_miss::near_miss_by_mean;
@@ -184,7 +184,16 @@ impl Walker<'_, '_> {
     fn is_doubtful(&mut self, before: &CycleStation, after: &CycleStation) -> bool {
         let change = Change::between(&self.account, after);
         let explained = !is_sure(after) || change.is_explained() || change.may_cross();
-        !explained || leaps(before, after, self.foretold(before, after)) || self.may_turn_twice(before, after)
+        !explained
+            || self.may_hide(before, after)
+            || leaps(before, after, self.foretold(before, after))
+            || self.may_turn_twice(before, after)
+    }
+
+    /// Whether a bump of a watched value may hide inside a step; what a prediction tells is no surprise.
+    fn may_hide(&self, before: &CycleStation, after: &CycleStation) -> bool {
+        let told = self.foretold(before, after).is_some();
+        !told && self.earlier.as_ref().is_some_and(|earlier| bends(earlier, before, after))
     }
 
     /// The multiplier on its way from 1 at the birth to -1 at a foretold doubling that is still ahead.

@@ -3,5 +3,6 @@
 mod account;
 mod bubbles;
 mod edges;
+mod hidden;
 mod jumps;
 mod near;
