@@ -134,14 +134,24 @@ fn pitchfork_words(broken: Option<&(Symmetry, Parity)>, model: &Model) -> String
 
 /// A symmetry in the names of the states: what moves, and when.
 pub(crate) fn symmetry_words(symmetry: &Symmetry, model: &Model) -> String {
+    /// States named one by one; of more a reader sees the rule, or the beginning.
+    const NAMED: usize = 4;
     let name = |index: usize| model.states()[index].name.as_str();
     let moved = symmetry.image.iter().enumerate().filter(|(i, (j, sign))| i != j || *sign < 0.0);
     let image = |(i, (j, sign)): (usize, &(usize, f64))| {
         format!("{} -> {}{}", name(i), if *sign < 0.0 { "-" } else { "" }, name(*j))
     };
-    let listed: Vec<String> = moved.map(image).collect();
-    let when = if symmetry.half_period { " half a period later" } else { "" };
-    format!("{}{when}", listed.join(", "))
+    let mut listed: Vec<String> = moved.map(image).collect();
+    let flips = symmetry.image.iter().enumerate().all(|(i, (j, sign))| i == *j && *sign < 0.0);
+    let words = if flips && listed.len() > NAMED {
+        "every state changes its sign".to_string()
+    } else {
+        let more = listed.len().saturating_sub(NAMED);
+        listed.truncate(NAMED);
+        let rest = if more > 0 { format!(" and {more} more") } else { String::new() };
+        listed.join(", ") + &rest
+    };
+    format!("{words}{}", if symmetry.half_period { " half a period later" } else { "" })
 }
 
 /// What is born at a pitchfork.

@@ -84,18 +84,21 @@ pub(crate) fn events_on_edge(
     let bracketed =
         [(WATCH_TORUS, EventKind::Torus, change.pair), (WATCH_BRANCHING, EventKind::Branching, change.passes_one)];
     for (index, kind, seen) in bracketed {
-        if stands_on(after, index) && !seen {
-            let located = match kind {
-                EventKind::Torus => torus_event::at(problem, after, plan),
-                _ => crossing_event::at(problem, after, plan),
-            };
-            if let Some(located) = located {
-                found.push(located);
-                continue;
-            }
-            let width = plan.study.range.1 - plan.study.range.0;
+        if seen || after.watch.values[index].value.abs() > NEARLY_ON {
+            continue;
+        }
+        let located = match kind {
+            EventKind::Torus => torus_event::at(problem, after, plan),
+            _ => crossing_event::at(problem, after, plan),
+        };
+        let edge = after.point.unknowns.parameter;
+        let width = plan.study.range.1 - plan.study.range.0;
+        let slack = |event: &Found| event.error.unwrap_or(0.0) + f64::EPSILON * width.max(edge.abs());
+        if let Some(event) = located.filter(|event| (event.point.unknowns.parameter - edge).abs() <= slack(event)) {
+            found.push(event);
+        } else if stands_on(after, index) {
             let note = "on the edge of the range to within what the multipliers tell";
-            let mut event = unresolved(after, (after.point.unknowns.parameter, EDGE * width), note.into(), plan);
+            let mut event = unresolved(after, (edge, EDGE * width), note.into(), plan);
             (event.kind, event.angle) = (kind, critical_angle(problem, after));
             found.push(event);
         }
@@ -103,6 +106,8 @@ pub(crate) fn events_on_edge(
     found
 }
 
+/// Watched value under which an event is looked for on the edge of the range: multipliers are known to less in any case.
+const NEARLY_ON: f64 = 1e-6;
 /// Share of the range within which an event on the edge is not located further: multipliers there are 1 to 1e-10.
 const EDGE: f64 = 1e-9;
 

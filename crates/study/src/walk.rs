@@ -221,7 +221,7 @@ impl Walker<'_, '_> {
     fn judge(&mut self, step: &Step, after: CycleStation) -> Taken {
         let (problem, _, _) = self.follower.parts();
         let sure = is_sure(&after);
-        let on_edge = matches!(step.landing, Some(Landing::Edge(_))) && !sure && is_off_folds(&after);
+        let on_edge = matches!(step.landing, Some(Landing::Edge(_))) && is_off_folds(&after);
         let mut found = Vec::new();
         if sure || on_edge {
             let findings = events_of_step(problem, (&self.account, &after), self.earlier.as_ref(), self.plan);
