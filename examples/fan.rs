@@ -32,7 +32,7 @@ const READINGS: [(f64, f64); 11] = [
     (9.0, 3.4),
 ];
 /// Width of the weights, m^3/s.
-const WIDTH: f64 = 0.8;
+const WIDTH: f64 = 1.0;
 
 struct Fan;
 
@@ -86,7 +86,7 @@ fn model() -> Model {
             parameter("throttle", 1.0, "m^3/s/hPa^0.5"),
             parameter("inertia", 0.12, "hPa s^2/m^3"),
             parameter("plenum", 0.5, "m^3/hPa"),
-            parameter("lag", 0.05, "s"),
+            parameter("lag", 0.02, "s"),
         ],
     };
     Model::coded(declaration, Arc::new(CodedField::new(Fan)))

@@ -1,6 +1,6 @@
 //! The closing table of a run.
 
-use armilla_record::{Branch, CascadeRow, Event, Unresolved};
+use armilla_record::{Branch, CascadeRow, Event, EventKind, Unresolved};
 
 use crate::columns::aligned;
 
@@ -32,7 +32,8 @@ fn row(event: &Event) -> [String; 7] {
         Some(error) => format!("{error:.1e}"),
         None => String::new(),
     };
-    let period = supported(event.period, event.period_error);
+    let endless = event.kind == EventKind::PeriodBlowUp;
+    let period = if endless { "unbounded".into() } else { supported(event.period, event.period_error) };
     [
         event.name.clone(),
         supported(event.value, event.error),

@@ -107,7 +107,8 @@ pub enum Reached {
     Accuracy,
     /// No: the rounding of 64-bit numbers stands in the way.
     RoundoffFloor,
-    /// No: finer meshes do not help, as with rates that have kinks or jumps.
+    /// No: finer meshes do not help, as with rates that have kinks or jumps, or near a loop through a state of rest, where Newton's
+    /// method may find no cycle on them.
     Rough,
     /// No: the largest mesh allowed is too coarse.
     MeshLimit,

@@ -76,8 +76,9 @@ impl Threshold {
             parameter: branch.parameter.name.clone(),
             value: event.value,
             error: event.error,
-            period: Some(event.period),
-            period_error: event.period_error,
+            // That of a limit is infinite; the event's own is that of the last cycle before it.
+            period: (event.kind != EventKind::PeriodBlowUp).then_some(event.period),
+            period_error: event.period_error.filter(|_| event.kind != EventKind::PeriodBlowUp),
             turns: event.turns,
             angle: event.angle,
             criticality: event.criticality,

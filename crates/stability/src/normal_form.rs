@@ -15,6 +15,7 @@ use armilla_collocation::{Row, System, Variation};
 use armilla_linalg::{Bordered, Right};
 
 use crate::locate::Located;
+use crate::measure::Measures;
 use crate::problem::CycleProblem;
 use crate::test_function::CriticalKind;
 
@@ -27,7 +28,13 @@ pub struct DoublingForm {
     pub c: f64,
     /// Derivative of the critical exponent sigma in the parameter along the branch: `xi' = sigma xi + c xi^3`.
     pub slope: f64,
+    /// Whether c differs from 0 by more than roundoff.
+    pub certain: bool,
 }
+
+/// Change of a log multiplier, by the cubic term at an amplitude as large as the cycle, below which the coefficient is
+/// roundoff: that of sums over a cycle, with room.
+const NEGLIGIBLE: f64 = 1e-9;
 
 impl DoublingForm {
     /// Amplitude xi at which the multiplier that is 1 at the birth of the doubled cycle has this logarithm, to leading
@@ -97,7 +104,10 @@ impl CycleProblem {
         let integrand: Vec<f64> = (0..len).map(|k| cvvv[k] + 3.0 * bvh[k] - 6.0 * a * av[k]).collect();
         let c = period * system.pair(&raw.psi, &integrand) / (6.0 * pairing);
         let slope = exponent_slope(system, located, &phase)?;
-        (a.is_finite() && c.is_finite()).then_some(DoublingForm { a, c, slope })
+        let spreads = Measures::of(&located.point.profile()).spreads;
+        let square = period * spreads.iter().map(|spread| spread * spread).sum::<f64>();
+        let certain = (c * square * period).abs() > NEGLIGIBLE;
+        (a.is_finite() && c.is_finite()).then_some(DoublingForm { a, c, slope, certain })
     }
 
     fn linearise_at(&mut self, located: &Located) -> Option<f64> {

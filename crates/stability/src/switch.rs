@@ -59,6 +59,9 @@ const LARGEST: f64 = 0.1;
 /// Wanted |log mu| of the multiplier that is 1 at the birth: near enough for the normal form to hold, far enough from the
 /// birth for a regular start.
 const WANTED: f64 = 0.1;
+/// Share of the forecast offset of the parameter by which the first cycle's may miss it. More, and the cycle may belong to a
+/// branch born elsewhere; a smaller amplitude tells.
+const FORECAST_HOLDS: f64 = 0.5;
 /// Halvings of the amplitude before giving up.
 const HALVINGS: usize = 12;
 /// Largest |log mu| of the multiplier that is 1 at the birth: beyond, the first cycle is already far from it and a
@@ -94,7 +97,10 @@ impl CycleProblem {
                 let offset = forecast.as_ref().map_or(0.0, |forecast| forecast.offset_at(amplitude));
                 let found = first_cycle(&mut problem, (&birth, &outwards), amplitude, offset);
                 // A branch on the side the normal form denies is one of the discretisation.
-                let sided = |point: &CyclePoint| offset == 0.0 || (point.unknowns.parameter - value) * offset > 0.0;
+                let sided = |point: &CyclePoint| {
+                    let found = (point.unknowns.parameter - value) / offset;
+                    offset == 0.0 || (found > 0.0 && (found - 1.0).abs() < FORECAST_HOLDS)
+                };
                 if let Some(point) = found.filter(sided) {
                     return Ok(on_own_mesh(Born { problem, birth, point, outwards, amplitude }, &fine));
                 }

@@ -99,6 +99,30 @@ pub(crate) fn resolved(problem: &mut CycleProblem, history: &[Past], points: &[W
     history
 }
 
+/// Tells an approach from the history of a walk that got stuck, oldest first: the last points need not stand still yet, if
+/// their periods follow a law.
+pub(crate) fn approach_of_stuck(history: &[Past], known: Known) -> Option<Approach> {
+    /// Misfit of a law, relative to the growth of the period over the window, up to which noise of the last points may be
+    /// its cause.
+    const FOLLOWS: f64 = 0.05;
+    let least = history.iter().map(|point| point.period).fold(f64::INFINITY, f64::min);
+    let moving = moving_part(history, known);
+    let grown = moving.len() >= WINDOW && moving.last().is_some_and(|last| last.period > GROWN * least);
+    let law = best_law(&moving).filter(|(_, _, misfit)| grown && *misfit < FOLLOWS)?;
+    Some(of_law(law, &moving, known))
+}
+
+/// The law that fits best, with its limit and its misfit.
+fn best_law(points: &[Past]) -> Option<(Law, f64, f64)> {
+    let fitted = |law| fit(law, points).map(|(limit, misfit)| (law, limit, misfit));
+    let laws = [Law::Logarithm, Law::InverseRoot, Law::Inverse];
+    laws.into_iter().filter_map(fitted).min_by(|a, b| a.2.total_cmp(&b.2))
+}
+
+fn of_law((law, limit, _): (Law, f64, f64), moving: &[Past], known: Known) -> Approach {
+    Approach { law, limit, error: error(law, limit, moving, known) }
+}
+
 /// Tells an approach from a history, oldest first.
 pub(crate) fn approach(history: &[Past], known: Known) -> Option<Approach> {
     let width = known.width;
@@ -113,12 +137,12 @@ pub(crate) fn approach(history: &[Past], known: Known) -> Option<Approach> {
         return None;
     }
     let moving = moving_part(history, known);
-    [Law::Logarithm, Law::InverseRoot, Law::Inverse]
-        .into_iter()
-        .filter_map(|law| fit(law, &moving).map(|(limit, misfit)| (law, limit, misfit)))
-        .min_by(|a, b| a.2.total_cmp(&b.2))
-        .map(|(law, limit, _)| Approach { law, limit, error: error(law, limit, &moving, known) })
-        .or(Some(Approach { law: Law::Logarithm, limit: last.value, error: travelled * width + f64::EPSILON * width }))
+    let told = best_law(&moving).map(|law| of_law(law, &moving, known));
+    // Without a law the limit is as near as the parameter has come while the period grew by a third: by any law it has no
+    // farther to go.
+    let since = history.iter().rev().find(|past| past.period < last.period / 1.5).unwrap_or(&first);
+    let error = (last.value - since.value).abs() + known.parameter + last.error + f64::EPSILON * width;
+    told.or(Some(Approach { law: Law::Logarithm, limit: last.value, error }))
 }
 
 /// Whether the orbit stands still over the last points while its period grows.

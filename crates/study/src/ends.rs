@@ -209,6 +209,7 @@ pub(crate) fn blown_up(current: &CycleStation, plan: &WalkPlan<'_>, approach: Ap
     let law = approach.law.words();
     let mut event = unresolved(current, (approach.limit, approach.error), format!("the period grows {law}"), plan);
     event.kind = EventKind::PeriodBlowUp;
+    event.period_error = None;
     let name = with_unit_name(plan);
     let limit = known(plan, (approach.limit, approach.error));
     let words = format!("the period grows without bound towards {name} = {limit} ({law})");

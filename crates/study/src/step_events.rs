@@ -286,7 +286,9 @@ fn bracketed(
     // A fold may lie beyond both ends of its bracket; over the whole step it lies within the change of the parameter.
     let (p, q) = (before.point.unknowns.parameter, after.point.unknowns.parameter);
     let spread = if kind == CriticalKind::Fold { (p - q).abs() } else { 0.5 * (a - b).abs() };
-    let error = spread + profile_error * scale * SUPERCONVERGENCE + 1e2 * f64::EPSILON * scale;
+    let noise =
+        if kind == CriticalKind::Doubling { noise_of_doubling(problem, (a + b) / 2.0, (before, after)) } else { 0.0 };
+    let error = spread + noise + profile_error * scale * SUPERCONVERGENCE + 1e2 * f64::EPSILON * scale;
     let tight = error <= plan.study.file.accuracy * scale;
     let (word, event_kind, angle) = match kind {
         CriticalKind::Fold => ("fold", EventKind::Fold, 0.0),
@@ -298,10 +300,26 @@ fn bracketed(
         format!("a {word} lies in this interval but was not located")
     };
     let mut event = unresolved(before, (0.5 * (a + b), error), note, plan);
+    event.period_error = Some(period_error_between(problem, before, after));
     if tight {
         (event.kind, event.angle) = (event_kind, Some(angle));
     }
     event
+}
+
+/// What the noise of multipliers makes of the place where one of them is -1: beside a second such place their product is
+/// flat, and the smaller of its values at the ends of the step tells how flat.
+fn noise_of_doubling(problem: &mut CycleProblem, value: f64, (before, after): (&CycleStation, &CycleStation)) -> f64 {
+    /// Units in the last place that a multiplier near the unit circle is known to besides.
+    const UNITS: f64 = 8.0;
+    let mut worst = 0.0f64;
+    for station in [before, after] {
+        let Ok(spectrum) = problem.spectrum(&station.point) else { return f64::INFINITY };
+        let noise = spectrum.trivial_defect + UNITS * f64::EPSILON;
+        let height = station.watch.values[WATCH_DOUBLING].value.abs();
+        worst = worst.max(noise * (station.point.unknowns.parameter - value).abs() / height);
+    }
+    worst
 }
 
 /// Thresholds are far more accurate than profiles (order 2m against m+1), as long as the profile is resolved; a
@@ -324,8 +342,12 @@ fn located_event(
         CriticalKind::Doubling => match problem.doubling_form(&located) {
             Some(found) => {
                 form = Some(found);
-                let note = format!("normal form coefficient c = {:.6e}", found.c);
-                (EventKind::Doubling, std::f64::consts::PI, Some(criticality(found.c)), Some(note))
+                let (side, note) = if found.certain {
+                    (Some(criticality(found.c)), format!("normal form coefficient c = {:.6e}", found.c))
+                } else {
+                    (None, "normal form coefficient c = 0 to roundoff: no side is claimed".into())
+                };
+                (EventKind::Doubling, std::f64::consts::PI, side, Some(note))
             }
             None => (EventKind::Doubling, std::f64::consts::PI, None, None),
         },

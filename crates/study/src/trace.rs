@@ -332,7 +332,9 @@ fn missed_accuracy(study: &Study, branch: &Branch) -> Option<String> {
     let why = match worst.reached {
         Reached::GivenMesh => "the mesh fixed by the study is too coarse",
         Reached::MeshLimit => "the largest mesh allowed is too coarse",
-        Reached::Rough => "finer meshes did not help, as where the rates have kinks",
+        Reached::Rough => {
+            "finer meshes did not help, as where rates have kinks or a cycle comes very near a state of rest"
+        }
         _ => "rounding stands in the way",
     };
     Some(format!("branch {} reaches a profile error of {:.1e} only: {why}", branch.name, worst.profile_error))

@@ -2,12 +2,12 @@
 
 use std::sync::atomic::{AtomicBool, Ordering};
 
-use armilla_follow::{Follower, Landing, Outcome, Problem, Settings, Station, Step};
+use armilla_follow::{FollowEnd, Follower, Landing, Outcome, Problem, Settings, Station, Step};
 use armilla_record::{End, EndReason, EventKind, Point};
 use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_FOLD};
 
 use crate::ahead::Ahead;
-use crate::approach::{Approach, Known, Past, approach, orbit_stands, resolved};
+use crate::approach::{Approach, Known, Past, approach, approach_of_stuck, orbit_stands, resolved};
 use crate::crossing_event::mirror_image;
 use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short};
 use crate::guards::{bends, falls_on_shorter, leaps};
@@ -134,6 +134,10 @@ impl Walker<'_, '_> {
                     return self.walk;
                 }
             }
+        }
+        if let Some(ended) = self.stuck_on_the_way() {
+            self.walk.end = ended;
+            return self.walk;
         }
         self.walk.end = end_of_follower(&mut self.follower, self.plan, &self.seen.motions);
         self.walk
@@ -329,13 +333,7 @@ impl Walker<'_, '_> {
             return Taken::Ended(joined);
         }
         match self.approach() {
-            Some(approach) => {
-                let (event, ended) = blown_up(&after, self.plan, approach);
-                let (problem, _, _) = self.follower.parts();
-                self.sink.event(problem, &event);
-                self.walk.events.push(event);
-                Taken::Ended(ended)
-            }
+            Some(approach) => Taken::Ended(self.blow_up(&after, approach)),
             None => Taken::On,
         }
     }
@@ -351,6 +349,27 @@ impl Walker<'_, '_> {
         let here = short(self.plan.study, value);
         let words = format!("joins `{branch}` at {} = {here}", self.plan.study.file.follow.parameter);
         Some(end(EndReason::Joins { branch }, value, words))
+    }
+
+    /// The end of a walk that got stuck on the way to an unbounded period, where its periods tell.
+    fn stuck_on_the_way(&mut self) -> Option<End> {
+        if !matches!(self.follower.end(), Some(FollowEnd::Stuck)) || !orbit_stands(&self.walk.points) {
+            return None;
+        }
+        let width = self.plan.width();
+        let (problem, _, after) = self.follower.parts();
+        let after = after.clone();
+        let known = Known { width, parameter: problem.parameter_roundoff() };
+        let approach = approach_of_stuck(&resolved(problem, &self.seen.periods, &self.walk.points), known)?;
+        Some(self.blow_up(&after, approach))
+    }
+
+    fn blow_up(&mut self, after: &CycleStation, approach: Approach) -> End {
+        let (event, ended) = blown_up(after, self.plan, approach);
+        let (problem, _, _) = self.follower.parts();
+        self.sink.event(problem, &event);
+        self.walk.events.push(event);
+        ended
     }
 
     /// How the period grows without bound, if it does.
