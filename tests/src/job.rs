@@ -1,5 +1,6 @@
 //! The main job on a study written in a test.
 
+use std::path::Path;
 use std::sync::atomic::AtomicBool;
 
 use armilla_record::{Branch, Event};
@@ -26,7 +27,19 @@ fn run(model: &str, fields: &str, cascade: bool) -> Traced {
     let path = place.path().join("test.study.ron");
     let model = crate::case::model_path(model);
     std::fs::write(&path, format!("(model: {:?}, {fields})", model.display().to_string())).expect("a study written");
-    let study = Study::read(&path).unwrap_or_else(|fault| panic!("{fault}"));
+    done(&path, cascade)
+}
+
+/// Traces the study of a file.
+///
+/// # Panics
+/// Where the study is refused or fails.
+pub fn trace_file(path: &Path) -> Traced {
+    done(path, false)
+}
+
+fn done(path: &Path, cascade: bool) -> Traced {
+    let study = Study::read(path).unwrap_or_else(|fault| panic!("{fault}"));
     let options = TraceOptions { folder: None, replace: false, cascade, abort: &AtomicBool::new(false) };
     trace(&study, &options, &mut Silent).unwrap_or_else(|fault| panic!("{fault}"))
 }

@@ -1,6 +1,6 @@
 //! The closing table of a run.
 
-use armilla_record::{Branch, CascadeRow, Event, EventKind, Unresolved};
+use armilla_record::{Branch, CascadeRow, Event, EventKind, Solutions, Unresolved};
 
 use crate::columns::aligned;
 
@@ -32,14 +32,19 @@ fn row(event: &Event) -> [String; 7] {
         Some(error) => format!("{error:.1e}"),
         None => String::new(),
     };
-    let endless = event.kind == EventKind::PeriodBlowUp;
-    let period = if endless { "unbounded".into() } else { supported(event.period, event.period_error) };
+    // An equilibrium has no period and no turns; at a Hopf point those of the cycles born are told.
+    let period = match event.kind {
+        EventKind::PeriodBlowUp => "unbounded".into(),
+        _ if event.period == 0.0 => String::new(),
+        _ => supported(event.period, event.period_error),
+    };
+    let turns = if event.turns == 0 { String::new() } else { event.turns.to_string() };
     [
         event.name.clone(),
         supported(event.value, event.error),
         error,
         period,
-        event.turns.to_string(),
+        turns,
         event.criticality.map_or(String::new(), |side| side.word().to_string()),
         event.note.clone(),
     ]
@@ -68,7 +73,9 @@ pub fn closing(branches: &[Branch]) -> String {
     text.push('\n');
     for branch in branches {
         let stable = branch.points.iter().filter(|point| point.is_stable()).count();
-        text.push_str(&format!("branch {}: {} points, {stable} of them stable\n", branch.name, branch.points.len()));
+        let what = if branch.of == Solutions::Equilibria { " of equilibria" } else { "" };
+        let points = branch.points.len();
+        text.push_str(&format!("branch {}{what}: {points} points, {stable} of them stable\n", branch.name));
         text.push_str(&format!("  one end: {}\n  other end: {}\n", branch.ends.0.words, branch.ends.1.words));
         for (event, sentence) in armilla_study::beyond(branch) {
             text.push_str(&format!("  beyond {event}: {sentence}\n"));

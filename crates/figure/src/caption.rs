@@ -1,6 +1,6 @@
 //! The caption, kept inside the file for readers and for those who cannot see the picture.
 
-use armilla_record::{Branch, Quantity};
+use armilla_record::{Branch, Quantity, Solutions};
 
 use crate::number::plain;
 use crate::text;
@@ -28,13 +28,30 @@ pub(crate) fn not_searched(branches: &[Branch]) -> String {
     let (lo, hi) =
         branches.iter().fold(first.range, |(lo, hi), branch| (lo.min(branch.range.0), hi.max(branch.range.1)));
     format!(
-        "Followed: {}, for {} from {} to {}. Not searched: cycles not connected to these, equilibria, tori, and \
-         anything outside this range.",
+        "Followed: {}, for {} from {} to {}. Not searched: {}, tori, and anything outside this range.",
         listed(branches.iter().map(|branch| branch.name.as_str())),
         quantity(&first.parameter),
         plain(lo),
-        plain(hi)
+        plain(hi),
+        if has(branches, Solutions::Equilibria) {
+            "equilibria and cycles not connected to these"
+        } else {
+            "cycles not connected to these, equilibria"
+        }
     )
+}
+
+/// What was followed, in a word or two.
+pub(crate) fn solutions(branches: &[Branch]) -> &'static str {
+    match (has(branches, Solutions::Cycles), has(branches, Solutions::Equilibria)) {
+        (true, true) => "cycles and equilibria",
+        (false, true) => "equilibria",
+        _ => "cycles",
+    }
+}
+
+fn has(branches: &[Branch], of: Solutions) -> bool {
+    branches.iter().any(|branch| branch.of == of)
 }
 
 /// Name and unit of a quantity in running text.

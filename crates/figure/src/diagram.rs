@@ -88,9 +88,10 @@ fn description(branches: &[Branch], reader: &Reader, measure: &Measure) -> Strin
         _ => "",
     };
     format!(
-        "{} of cycles against {}; solid: stable, dashed: unstable; thresholds carry one marker shape for each kind.\
+        "{} of {} against {}; solid: stable, dashed: unstable; thresholds carry one marker shape for each kind.\
          {meaning} {} {}",
         plain_label(reader),
+        caption::solutions(branches),
         caption::quantity(&branches[0].parameter),
         caption::setting(branches),
         caption::not_searched(branches)

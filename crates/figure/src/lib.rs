@@ -29,6 +29,7 @@
 //! #     model_fingerprint: String::new(), states: vec![named("level", "m")], parameter: named("gain", "1/s"),
 //! #     range: (1.0, 2.0), fixed: vec![("lag".into(), 2.5)], accuracy: 1e-9, points: (0..10).map(point).collect(),
 //! #     events: vec![], ends: (end(1.0), end(1.9)), profiles: vec![],
+//! #     of: armilla_record::Solutions::Cycles,
 //! # };
 //! let figure = Figure::diagram(Measure::Max("level".into()));
 //! let svg = figure.draw(&[branch.clone()])?;

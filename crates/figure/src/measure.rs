@@ -83,7 +83,8 @@ impl<'a> Reader<'a> {
             Measure::LargestMultiplier => {
                 return cycle.log_modulus.map(|log| log / std::f64::consts::LN_10).filter(sound);
             }
-            Measure::Period => Some(cycle.period),
+            // Equilibria have none.
+            Measure::Period => Some(cycle.period).filter(|period| *period > 0.0),
             Measure::Mean(_) => of(cycle.means),
             Measure::Spread(_) => of(cycle.spreads),
             Measure::PeakToPeak(_) => of(cycle.maxima).zip(of(cycle.minima)).map(|(max, min)| max - min),

@@ -25,6 +25,9 @@ const LINES: [RGBColor; 7] = [
 /// the colours, so that 21 lines pass before a pair comes again.
 const WEIGHTS: [f64; 3] = [1.0, 1.5, 0.7];
 
+/// How equilibria are drawn: thin and grey beside the cycles, which carry the colours; dark enough for dashes.
+pub(crate) const AT_REST: Ink = Ink { color: RGBColor(80, 80, 80), weight: 0.7 };
+
 /// How the `index`-th line is drawn.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(crate) struct Ink {

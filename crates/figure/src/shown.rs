@@ -1,6 +1,6 @@
 //! A diagram's curves, dots, markers and legend.
 
-use armilla_record::{Branch, EventKind};
+use armilla_record::{Branch, EventKind, Solutions};
 
 use crate::canvas::Canvas;
 use crate::drawn::{Drawn, Mark};
@@ -9,7 +9,7 @@ use crate::label::Labels;
 use crate::legend::{Entry, ROW, Sample, dot, line_attributes};
 use crate::marker;
 use crate::page::{Page, frame_height, legend_beside};
-use crate::palette::{BLACK, GREY, Ink, ink};
+use crate::palette::{AT_REST, BLACK, GREY, Ink, ink};
 use crate::stroke::{self, Line, Stroke};
 use crate::text;
 
@@ -28,6 +28,14 @@ pub(crate) struct Shown<'a> {
 }
 
 impl Shown<'_> {
+    fn is_at_rest(&self, owner: usize) -> bool {
+        self.branches[owner].of == Solutions::Equilibria
+    }
+
+    fn ink(&self, owner: usize) -> Ink {
+        if self.is_at_rest(owner) { AT_REST } else { ink(owner) }
+    }
+
     fn dots_of(&self, owner: usize) -> impl Iterator<Item = (Place, bool)> + '_ {
         self.drawn[owner].dots().filter(|(dot, _)| self.window.contains(*dot))
     }
@@ -42,6 +50,9 @@ impl Shown<'_> {
     /// What every line and marker means.
     pub(crate) fn legend(&self, width: f64) -> Vec<Entry> {
         let mut entries = self.style_entries();
+        if self.owners().into_iter().any(|owner| self.is_at_rest(owner)) {
+            entries.push(Entry::new(Sample::Line { ink: AT_REST, dashed: false }, "equilibria"));
+        }
         if self.guide.is_some() {
             let ink = Ink { color: GREY, weight: GUIDE };
             entries.push(Entry::new(Sample::Line { ink, dashed: false }, "modulus one"));
@@ -78,7 +89,7 @@ impl Shown<'_> {
         let listed = if owners.len() > most { most.saturating_sub(1).max(1) } else { owners.len() };
         let row = |owner: &usize| {
             let name = text::clean(&self.branches[*owner].name);
-            Entry::new(Sample::Line { ink: ink(*owner), dashed: false }, name)
+            Entry::new(Sample::Line { ink: self.ink(*owner), dashed: false }, name)
         };
         let mut entries: Vec<Entry> = owners[..listed].iter().map(row).collect();
         if owners.len() > listed {
@@ -94,12 +105,12 @@ impl Shown<'_> {
         if !guide.is_empty() {
             canvas.group("class=\"guide\"", |pen| pen.line(&guide, GREY, GUIDE));
         }
-        let strokes: Vec<Stroke> = self.lines.iter().map(|line| line.on_page(page, ink(line.owner))).collect();
+        let strokes: Vec<Stroke> = self.lines.iter().map(|line| line.on_page(page, self.ink(line.owner))).collect();
         stroke::draw(canvas, &strokes);
         let owners = self.owners();
         for owner in &owners {
             canvas.group(&line_attributes("dot", false), |pen| {
-                self.dots_of(*owner).for_each(|(place, hollow)| dot(pen, ink(*owner), hollow, page.place(place)));
+                self.dots_of(*owner).for_each(|(place, hollow)| dot(pen, self.ink(*owner), hollow, page.place(place)));
             });
         }
         page.draw(canvas);

@@ -2,7 +2,7 @@
 
 use armilla_record::{Branch, Event, EventKind, Point};
 
-/// A part of a branch with one number of multipliers outside the unit circle.
+/// A part of a branch with one number of unstable multipliers or eigenvalues.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(crate) struct Stretch {
     pub(crate) from: f64,
@@ -56,7 +56,7 @@ fn between(before: &Point, after: &Point, events: &[&Event]) -> Vec<Stretch> {
         .collect()
 }
 
-/// Number of multipliers outside the unit circle before, between and after the events of one stride.
+/// Number of unstable multipliers or eigenvalues before, between and after the events of one stride.
 ///
 /// Each kind of event moves a known number of multipliers; the first way of signs that leads from the
 /// count before to the count after is taken. Where none does, the last event carries the change.
@@ -80,7 +80,11 @@ fn extend(counts: &mut Vec<usize>, after: usize, events: &[&Event]) -> bool {
     let moves: &[isize] = match event.kind {
         EventKind::Torus => &[2, -2],
         EventKind::Unresolved => &[1, -1, 2, -2, 0],
-        EventKind::Hopf | EventKind::PeriodBlowUp => &[0],
+        // Cycles end there without a change; equilibria change by a pair.
+        EventKind::Hopf => &[0, 2, -2],
+        EventKind::PeriodBlowUp => &[0],
+        // A branch that turns back at a pitchfork keeps its count.
+        EventKind::Pitchfork | EventKind::Branching => &[1, -1, 0],
         _ => &[1, -1],
     };
     for change in moves {

@@ -3,7 +3,7 @@
 mod synthetic;
 
 use armilla_figure::{Diagram, Figure, FigureError, Measure, Portrait, Width};
-use armilla_record::{Branch, EventKind};
+use armilla_record::{Branch, EventKind, Solutions};
 use roxmltree::{Document, Node};
 use synthetic::{Cycle, awkward, branch, cascade, event, folded, many};
 
@@ -478,4 +478,44 @@ fn unsound_numbers_are_left_out() {
         }
         Figure::portrait("level", "flow").draw(&branches).unwrap_or_else(|fault| panic!("{index}: {fault}"));
     }
+}
+
+/// Equilibria beside cycles: thin and grey, told in the legend and the caption, dashed exactly from the Hopf point on, which
+/// changes the count by two; without a period they leave a diagram of periods to the cycles.
+#[test]
+fn equilibria_stand_beside_cycles() {
+    let rest = |s: f64| Cycle {
+        value: s,
+        max: 0.5,
+        min: 0.5,
+        period: 0.0,
+        unstable_count: if s > 1.0 { 2 } else { 0 },
+        log_modulus: 0.0,
+    };
+    let mut line = branch("a", 2.0, 8, rest);
+    line.of = Solutions::Equilibria;
+    line.points.iter_mut().for_each(|point| point.multipliers.clear());
+    line.events = vec![event("a", EventKind::Hopf, 1, 1.0, &rest(1.0))];
+    let mut cycles = branch("a.hopf1", 1.0, 12, |s| Cycle {
+        value: 1.0 + s * s,
+        max: 0.5 + s,
+        min: 0.5 - s,
+        period: 6.0 + s,
+        unstable_count: 0,
+        log_modulus: -s,
+    });
+    cycles.born_at = Some("a/hopf1".into());
+    let branches = [line, cycles];
+    let svg = double(level(Measure::Max)).draw(&branches).expect("draws");
+    assert!(svg.contains(">equilibria<") && svg.contains("of cycles and equilibria against"), "{svg}");
+    let document = Document::parse(&svg).expect("valid XML");
+    let curves = groups(&document, "curve");
+    let classes: Vec<&str> = curves.iter().filter_map(|group| group.attribute("class")).collect();
+    assert_eq!(classes, ["curve stable", "curve unstable", "curve stable"]);
+    let (before, after) = (lines_in(curves[0]).swap_remove(0), lines_in(curves[1]).swap_remove(0));
+    let birth = lines_in(curves[2]).swap_remove(0)[0];
+    assert_eq!(before.last(), after.first());
+    assert!((after[0].0 - birth.0).hypot(after[0].1 - birth.1) <= 1.5, "{:?} {birth:?}", after[0]);
+    let periods = double(Diagram::new(Measure::Period)).draw(&branches).expect("draws");
+    assert!(!periods.contains(">equilibria<"), "equilibria have no period");
 }

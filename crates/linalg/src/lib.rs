@@ -2,8 +2,10 @@
 //!
 //! One elimination serves everything the cycle problem asks except its spectrum: [`Cyclic`] condenses
 //! each interval and reduces the chain, [`Bordered`] closes it with a factor sigma and k border rows and
-//! columns, and solves or solves transposed as often as asked; [`ComplexBordered`] does so with a complex sigma. The spectrum comes from the sequence of
-//! interval maps, [`PeriodicSchur`]. This crate does not know where matrices come from.
+//! columns, and solves or solves transposed as often as asked; [`ComplexBordered`] does so with a
+//! complex sigma. The spectrum comes from the sequence of
+//! interval maps, [`PeriodicSchur`]. States of rest ask for [`eigenvalues()`] and for systems of fixed sparsity,
+//! [`Patterned`]. This crate does not know where matrices come from.
 //!
 //! ```
 //! use armilla_linalg::{Bordered, Cyclic, Right, Shape};
@@ -30,13 +32,17 @@ mod chain;
 mod complex;
 mod cyclic;
 mod dense;
+mod eigenvalues;
 mod factors;
 mod interval;
+mod patterned;
 mod periodic;
 
 pub use bordered::{Bordered, DeterminantSign, Right};
 pub use complex::{ComplexBordered, ComplexVector};
 pub use cyclic::{Cyclic, Shape, Singular};
 pub use dense::Lu;
+pub use eigenvalues::{Eigenvalue, Eigenvalues, eigenvalues};
 pub use nalgebra::Complex;
+pub use patterned::Patterned;
 pub use periodic::{NotConverged, PeriodicSchur, ScaledMultiplier};

@@ -37,6 +37,8 @@ pub enum EndReason {
     Interrupted,
     /// A rate was not finite.
     NotFinite,
+    /// A state of the equilibria grows without bound.
+    Unbounded,
 }
 
 impl EndReason {
@@ -54,6 +56,7 @@ impl EndReason {
             Self::Budget => "budget",
             Self::Interrupted => "interrupted",
             Self::NotFinite => "not-finite",
+            Self::Unbounded => "unbounded",
         }
     }
 }
@@ -92,7 +95,28 @@ pub struct StoredProfile {
     pub profile: Profile,
 }
 
-/// A branch of cycles in one parameter.
+/// What the points of a branch are.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Solutions {
+    /// Cycles.
+    #[default]
+    Cycles,
+    /// Equilibria: no period, no multipliers; eigenvalues instead, all measures of a state equal.
+    Equilibria,
+}
+
+impl Solutions {
+    /// The word in files and text.
+    pub fn word(self) -> &'static str {
+        match self {
+            Self::Cycles => "cycles",
+            Self::Equilibria => "equilibria",
+        }
+    }
+}
+
+/// A branch of cycles or equilibria in one parameter.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub struct Branch {
@@ -126,4 +150,7 @@ pub struct Branch {
     pub ends: (End, End),
     /// Every k-th profile.
     pub profiles: Vec<StoredProfile>,
+    /// What its points are; files of format 1 and 2 hold cycles only.
+    #[serde(default)]
+    pub of: Solutions,
 }

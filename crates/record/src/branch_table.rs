@@ -43,7 +43,15 @@ pub fn branch_columns(branch: &Branch) -> Vec<String> {
         columns.extend(["log_modulus", "angle"].map(|part| format!("multiplier{k}_{part}")));
     }
     columns.extend(LAST_COLUMNS.map(String::from));
+    for k in 1..=n_eigenvalues(branch) {
+        columns.extend(["re", "im"].map(|part| format!("eigenvalue{k}_{part}")));
+    }
     columns
+}
+
+/// The largest number of eigenvalues of any point; 0 for a branch of cycles.
+fn n_eigenvalues(branch: &Branch) -> usize {
+    branch.points.iter().map(|point| point.eigenvalues.len()).max().unwrap_or(0)
 }
 
 /// The largest number of multipliers of any point; fewer leave cells empty.
@@ -54,7 +62,7 @@ fn n_multipliers(branch: &Branch) -> usize {
 fn table(out: &mut dyn Write, branch: &Branch) -> io::Result<()> {
     let mut writer = csv::Writer::from_writer(out);
     writer.write_record(branch_columns(branch))?;
-    let (n_states, n_multipliers) = (branch.states.len(), n_multipliers(branch));
+    let (n_states, n_multipliers, n_eigenvalues) = (branch.states.len(), n_multipliers(branch), n_eigenvalues(branch));
     for (k, point) in branch.points.iter().enumerate() {
         let cells = first_cells(k, point).into_iter();
         let states = (0..n_states).flat_map(|i| [&point.maxima, &point.minima, &point.means].map(|all| all.get(i)));
@@ -63,7 +71,11 @@ fn table(out: &mut dyn Write, branch: &Branch) -> io::Result<()> {
             [multiplier.map(|m| &m.log_modulus), multiplier.map(|m| &m.angle)]
         });
         let middle = states.chain(multipliers).map(|value| cell(value.copied()));
-        writer.write_record(cells.chain(middle).chain(last_cells(point)))?;
+        let eigenvalues = (0..n_eigenvalues).flat_map(|i| {
+            let eigenvalue = point.eigenvalues.get(i);
+            [eigenvalue.map(|value| value.re), eigenvalue.map(|value| value.im)].map(cell)
+        });
+        writer.write_record(cells.chain(middle).chain(last_cells(point)).chain(eigenvalues))?;
     }
     writer.flush()
 }
@@ -72,7 +84,7 @@ fn first_cells(k: usize, point: &Point) -> [String; FIRST_COLUMNS.len()] {
     [
         k.to_string(),
         cell(Some(point.value)),
-        cell(Some(point.period)),
+        cell(Some(point.period).filter(|period| *period != 0.0)),
         point.turns.to_string(),
         point.is_stable().to_string(),
         point.unstable_count.to_string(),

@@ -16,7 +16,7 @@ use crate::{Branch, End, EndReason, Event, Multiplier, Point, Profile, Quantity,
 pub(crate) const WHAT: &str = "branch";
 
 /// Format version of the branch files this crate writes.
-pub const BRANCH_FORMAT: u32 = 2;
+pub const BRANCH_FORMAT: u32 = 3;
 
 /// Writes a branch file, atomically.
 ///
@@ -42,7 +42,7 @@ pub fn parse_branch(path: &Path, bytes: &[u8]) -> Result<Branch, RecordError> {
         column: error.span.start.col,
         what: error.code.to_string(),
     })?;
-    // Fields that format 1 does not have take the values that say so; from here on the branch is one of today's.
+    // Fields that earlier formats do not have take the values that say so; from here on the branch is one of today's.
     if (1..BRANCH_FORMAT).contains(&branch.format) {
         branch.format = BRANCH_FORMAT;
     }
@@ -73,6 +73,9 @@ fn branch_text(pen: &mut Pen<'_>, branch: &Branch) -> io::Result<()> {
         pen.raw(",")?;
         pen.close(")")
     })?;
+    pen.field("of")?;
+    pen.variant(branch.of.word())?;
+    pen.raw(",")?;
     pen.close(")")?;
     pen.raw("\n")
 }
@@ -246,6 +249,15 @@ fn point_text(pen: &mut Pen<'_>, point: &Point) -> io::Result<()> {
         }
         None => pen.raw("None,")?,
     }
+    list(pen, "eigenvalues", &point.eigenvalues, |pen, eigenvalue| {
+        pen.raw("(")?;
+        pen.name("re")?;
+        pen.float(eigenvalue.re)?;
+        pen.raw(", ")?;
+        pen.name("im")?;
+        pen.float(eigenvalue.im)?;
+        pen.raw(")")
+    })?;
     pen.close(")")
 }
 

@@ -8,14 +8,14 @@ use std::f64::consts::PI;
 use crate::branch_text::BRANCH_FORMAT;
 use crate::descent::split_event;
 use crate::file_name::{NAMES_ALLOWED, is_branch_name};
-use crate::{Branch, Event, EventKind, Multiplier, Point};
+use crate::{Branch, Event, EventKind, Multiplier, Point, Solutions};
 
 /// The first contradiction found in a branch, in words.
 pub(crate) fn check_branch(branch: &Branch) -> Result<(), String> {
     check_head(branch)?;
     let n = branch.states.len();
     for (k, point) in branch.points.iter().enumerate() {
-        check_point(point, n).map_err(|what| format!("point {k}: {what}"))?;
+        check_point(point, n, branch.of).map_err(|what| format!("point {k}: {what}"))?;
     }
     in_order("points", branch.points.iter().map(|point| point.distance))?;
     let mut names = HashSet::new();
@@ -66,7 +66,7 @@ fn check_head(branch: &Branch) -> Result<(), String> {
     Ok(())
 }
 
-fn check_point(point: &Point, n: usize) -> Result<(), String> {
+fn check_point(point: &Point, n: usize, of: Solutions) -> Result<(), String> {
     finite("value", point.value)?;
     finite("period", point.period)?;
     finite("distance", point.distance)?;
@@ -82,8 +82,19 @@ fn check_point(point: &Point, n: usize) -> Result<(), String> {
             return Err(format!("{name} are missing"));
         }
     }
-    if point.unstable_count > point.multipliers.len() {
-        return Err("more multipliers are unstable than there are".into());
+    let (of, what) = match of {
+        Solutions::Cycles => (point.multipliers.len(), "multipliers"),
+        Solutions::Equilibria => (point.eigenvalues.len(), "eigenvalues"),
+    };
+    if point.unstable_count > of {
+        return Err(format!("more {what} are unstable than there are"));
+    }
+    if of != point.multipliers.len() + point.eigenvalues.len() {
+        return Err("cycles have multipliers, equilibria have eigenvalues, none has both".into());
+    }
+    for eigenvalue in &point.eigenvalues {
+        finite("real part of an eigenvalue", eigenvalue.re)?;
+        finite("imaginary part of an eigenvalue", eigenvalue.im)?;
     }
     if let Some(unresolved) = point.unresolved {
         finite("modulus below which multipliers are not resolved", unresolved.below)?;

@@ -10,17 +10,17 @@ use crate::Profile;
 pub enum EventKind {
     /// Where a branch was entered.
     Start,
-    /// A fold of cycles (multiplier +1, the parameter turns back).
+    /// A fold of cycles (multiplier +1) or of equilibria (eigenvalue 0): the parameter turns back.
     Fold,
     /// A period doubling (multiplier -1).
     Doubling,
     /// A torus (Neimark–Sacker) bifurcation.
     Torus,
-    /// Symmetry breaking with multiplier +1.
+    /// Two branches cross, one of them turning back there.
     Pitchfork,
     /// Two branches cross.
     Transcritical,
-    /// Multiplier +1, kind not decided.
+    /// Multiplier +1 or eigenvalue 0, kind not decided.
     Branching,
     /// The cycle is born at an equilibrium.
     Hopf,
@@ -107,11 +107,11 @@ pub struct Event {
     pub value: f64,
     /// Estimated absolute error of `value`, in the same unit, where one was estimated.
     pub error: Option<f64>,
-    /// Period there.
+    /// Period there; 0 where there is none. At a Hopf point that of the cycles born.
     pub period: f64,
     /// Estimated absolute error of `period`, where one was estimated.
     pub period_error: Option<f64>,
-    /// Turns of the cycle there.
+    /// Turns of the cycle there; 0 at an equilibrium.
     pub turns: usize,
     /// Angle of the critical multiplier, where the kind has one.
     pub angle: Option<f64>,

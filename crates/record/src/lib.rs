@@ -35,6 +35,7 @@
 //!     choice: MeshReason::Start,
 //!     reached: Reached::Accuracy,
 //!     unresolved: None,
+//!     eigenvalues: Vec::new(),
 //! };
 //! let end = |value: f64| End { reason: EndReason::Edge, value, words: "end of the range".into() };
 //! let branch = Branch {
@@ -53,6 +54,7 @@
 //!     events: Vec::new(),
 //!     ends: (end(0.5), end(4.0)),
 //!     profiles: Vec::new(),
+//!     of: Solutions::Cycles,
 //! };
 //!
 //! let place = tempfile::tempdir()?;
@@ -94,7 +96,7 @@ mod seal;
 mod threshold;
 
 pub use atomic::write_atomic;
-pub use branch::{Branch, End, EndReason, Quantity, StoredProfile};
+pub use branch::{Branch, End, EndReason, Quantity, Solutions, StoredProfile};
 pub use branch_table::{branch_columns, write_branch_table};
 pub use branch_text::{BRANCH_FORMAT, parse_branch, write_branch_file};
 pub use cascade::{CASCADE_COLUMNS, CascadeRow, write_cascade_table};
@@ -104,7 +106,7 @@ pub use event::{Criticality, Event, EventKind};
 pub use export::ExportFormat;
 pub use file_name::branch_file_stem;
 pub use journal::{Journal, JournalContent, JournalEntry};
-pub use point::{MeshReason, Multiplier, Point, Reached, Unresolved};
+pub use point::{Eigenvalue, MeshReason, Multiplier, Point, Reached, Unresolved};
 pub use profile::{Evaluator, Profile, ProfileFault, barycentric_weights, lagrange_at, node_quadrature, nodes};
 pub use results::Results;
 pub use threshold::{THRESHOLD_COLUMNS, Threshold, parse_threshold_table, write_threshold_table};

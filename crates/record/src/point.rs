@@ -12,25 +12,36 @@ pub struct Multiplier {
     pub angle: f64,
 }
 
-/// One cycle of a branch.
+/// An eigenvalue of the rates' Jacobian at an equilibrium, in the inverse of the model's time unit.
+#[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Eigenvalue {
+    /// Real part: the rate at which a disturbance grows.
+    pub re: f64,
+    /// Imaginary part; exactly 0 for a real one.
+    pub im: f64,
+}
+
+/// One cycle, or one equilibrium, of a branch.
 #[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub struct Point {
     /// Value of the followed parameter, in its unit.
     pub value: f64,
-    /// Period in the model's time unit.
+    /// Period in the model's time unit; 0 for an equilibrium.
     pub period: f64,
-    /// Turns the cycle makes before it closes.
+    /// Turns the cycle makes before it closes; 0 for an equilibrium.
     pub turns: usize,
     /// Signed distance along the branch from its start, in the branch's own metric.
     pub distance: f64,
-    /// Number of multipliers outside the unit circle; the branch is stable where it is 0.
+    /// Number of multipliers outside the unit circle, or of eigenvalues to the right of the imaginary axis; the branch is
+    /// stable where it is 0.
     pub unstable_count: usize,
     /// |trivial multiplier - 1| as the product of the interval maps gives it.
     pub trivial_defect: f64,
-    /// |sum of log-moduli - integral of the divergence|.
+    /// |sum of log-moduli - integral of the divergence|; of an equilibrium |sum of eigenvalues - divergence|.
     pub liouville_defect: f64,
-    /// Estimated error of the profile, relative to the range of each state.
+    /// Estimated error of the profile, relative to the range of each state; of an equilibrium relative to its size.
     pub profile_error: f64,
     /// Largest value of each state.
     pub maxima: Vec<f64>,
@@ -55,6 +66,9 @@ pub struct Point {
     /// Multipliers too small to be resolved, where there are some; they are missing from `multipliers`.
     #[serde(default)]
     pub unresolved: Option<Unresolved>,
+    /// The n eigenvalues of an equilibrium, by descending real part; empty for a cycle.
+    #[serde(default)]
+    pub eigenvalues: Vec<Eigenvalue>,
 }
 
 /// Why a point has the degree and the number of intervals it has.

@@ -41,7 +41,7 @@ pub struct Threshold {
     pub value: f64,
     /// Estimated absolute error of `value`, in the same unit.
     pub error: Option<f64>,
-    /// Period, in the model's time unit; infinite where it grows without bound.
+    /// Period, in the model's time unit; infinite where it grows without bound, none at an equilibrium but a Hopf point.
     pub period: Option<f64>,
     /// Estimated absolute error of `period`.
     pub period_error: Option<f64>,
@@ -77,7 +77,7 @@ impl Threshold {
             value: event.value,
             error: event.error,
             // That of a limit is infinite; the event's own is that of the last cycle before it.
-            period: (event.kind != EventKind::PeriodBlowUp).then_some(event.period),
+            period: (event.kind != EventKind::PeriodBlowUp && event.period != 0.0).then_some(event.period),
             period_error: event.period_error.filter(|_| event.kind != EventKind::PeriodBlowUp),
             turns: event.turns,
             angle: event.angle,

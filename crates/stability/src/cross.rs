@@ -6,7 +6,7 @@
 
 use armilla_follow::{Closing, Orientation, Problem};
 
-use crate::crossing::{Crossing, reversed};
+use crate::crossing::{CycleCrossing, reversed};
 use crate::crossing_system::mixed;
 use crate::point::{CyclePoint, CycleTangent};
 use crate::problem::{CycleProblem, Sizes};
@@ -53,7 +53,7 @@ impl CycleProblem {
     ///
     /// # Errors
     /// [`SwitchFault`] where no cycle of it is found.
-    pub fn cross(&self, crossing: &Crossing) -> Result<Crossed, SwitchFault> {
+    pub fn cross(&self, crossing: &CycleCrossing) -> Result<Crossed, SwitchFault> {
         let (mut problem, birth) = self.at_crossing(crossing)?;
         let whole = birth.clone();
         let fine = (birth, crossing.tangents.clone());
@@ -82,7 +82,7 @@ impl CycleProblem {
         Err(SwitchFault)
     }
 
-    fn at_crossing(&self, crossing: &Crossing) -> Result<(CycleProblem, CyclePoint), SwitchFault> {
+    fn at_crossing(&self, crossing: &CycleCrossing) -> Result<(CycleProblem, CyclePoint), SwitchFault> {
         let profile = self.profile(&crossing.point);
         let value = crossing.point.unknowns.parameter;
         let sizes = Sizes::Parent(&self.metric.scales);

@@ -35,7 +35,7 @@ impl Estimated {
 
 /// A located crossing.
 #[derive(Clone, Debug)]
-pub struct Crossing {
+pub struct CycleCrossing {
     /// The cycle both branches share, on the refined mesh.
     pub point: CyclePoint,
     /// Estimated absolute error of the parameter.
@@ -52,7 +52,7 @@ pub struct Crossing {
     pub share: f64,
 }
 
-impl Crossing {
+impl CycleCrossing {
     /// The same seen from the branch that crosses.
     #[must_use]
     pub fn turned(mut self) -> Self {
@@ -66,7 +66,7 @@ impl Crossing {
 #[derive(Clone, Debug)]
 pub enum Meeting {
     /// Another branch crosses.
-    Crossing(Box<Crossing>),
+    Crossing(Box<CycleCrossing>),
     /// Two branches pass each other without meeting: the stations stand on different ones.
     Gap,
 }
@@ -110,7 +110,7 @@ impl CycleProblem {
     }
 
     /// Locates the crossing that a station stands on.
-    pub fn locate_crossing_at(&mut self, station: &CycleStation) -> Option<Box<Crossing>> {
+    pub fn locate_crossing_at(&mut self, station: &CycleStation) -> Option<Box<CycleCrossing>> {
         /// Distance from the station within which the crossing is the one it stands on: beside it cycles are known to the
         /// root of roundoff, times what the equations amplify.
         const ON: f64 = 1e-5;
@@ -120,7 +120,7 @@ impl CycleProblem {
             return None;
         }
         match self.refine_crossing(&point, &solved, &station.tangent)? {
-            Meeting::Crossing(crossing) => Some(Box::new(Crossing { share: 1.0, ..*crossing })),
+            Meeting::Crossing(crossing) => Some(Box::new(CycleCrossing { share: 1.0, ..*crossing })),
             Meeting::Gap => None,
         }
     }
@@ -196,7 +196,7 @@ impl CycleProblem {
         let rest = to_correct(&again.report);
         let units = COHERENT_UNITS * f64::EPSILON;
         let scales = (self.metric.period_scale, self.metric.parameter_scale);
-        Some(Meeting::Crossing(Box::new(Crossing {
+        Some(Meeting::Crossing(Box::new(CycleCrossing {
             error: left * (a.parameter - b.parameter).abs()
                 + rest * scales.1
                 + rounding[1]

@@ -46,6 +46,7 @@ mod crossing;
 mod crossing_system;
 mod degenerate;
 mod dip;
+mod equilibrium;
 mod locate;
 mod measure;
 mod meeting;
@@ -63,9 +64,13 @@ mod torus_function;
 
 pub use armilla_collocation::{Fault, MapsFault, TooStiff};
 pub use cross::{Crossed, CrossedWay};
-pub use crossing::{Crossing, Estimated, Meeting};
+pub use crossing::{CycleCrossing, Estimated, Meeting};
 pub use degenerate::{Degeneracy, Term, degeneracy};
 pub use dip::Dip;
+pub use equilibrium::{
+    BranchingForm, CriticalSlope, Crossing, EquilibriumPoint, EquilibriumProblem, EquilibriumSpec, EquilibriumTangent,
+    HopfForm, LocatedRest, RestEvent, RestFault, WATCH_CROSSING, WATCH_TURN, birth_row,
+};
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;
 pub use normal_form::DoublingForm;

@@ -339,6 +339,7 @@ impl CycleProblem {
             degree: profile.degree,
             choice: point.choice,
             reached,
+            eigenvalues: Vec::new(),
         })
     }
 

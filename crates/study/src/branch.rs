@@ -4,13 +4,19 @@ use std::collections::HashMap;
 use std::sync::atomic::AtomicBool;
 
 use armilla_follow::{Orientation, Problem};
-use armilla_record::{BRANCH_FORMAT, Branch, End, EndReason, Event, EventKind, Point, Quantity, StoredProfile};
-use armilla_stability::{Born, Crossed, CyclePoint, CycleProblem, CycleTangent, DoublingForm, Located, Measures};
+use armilla_record::{
+    BRANCH_FORMAT, Branch, End, EndReason, Event, EventKind, Point, Quantity, Solutions, StoredProfile,
+};
+use armilla_stability::{
+    Born, BranchingForm, Crossed, CyclePoint, CycleProblem, CycleTangent, DoublingForm, EquilibriumPoint,
+    EquilibriumProblem, HopfForm, Located, LocatedRest, Measures,
+};
 
 use crate::ahead::Ahead;
 use crate::crossing_event::{Met, symmetry_words};
 use crate::crossings::both_sides;
 use crate::ends::{end, short};
+use crate::equilibrium_branch;
 use crate::error::StudyError;
 use crate::joins::{Atlas, Followed};
 use crate::prediction::{Estimate, next_doubling};
@@ -49,8 +55,12 @@ pub(crate) struct Switchable {
 pub(crate) enum Way {
     /// By a period doubling.
     Doubling { located: Box<Located>, form: Option<DoublingForm> },
+    /// As cycles born at an equilibrium.
+    Hopf { located: Box<LocatedRest>, form: Option<Box<HopfForm>> },
+    /// As equilibria that cross others.
+    Crossing { located: Box<LocatedRest>, form: Box<BranchingForm> },
     /// Where it crosses this one.
-    Crossing(Box<Met>),
+    CyclesCross(Box<Met>),
 }
 
 impl Way {
@@ -60,7 +70,12 @@ impl Way {
             Self::Doubling { located, .. } => {
                 Estimate { value: located.point.unknowns.parameter, error: located.error }
             }
-            Self::Crossing(met) => Estimate { value: met.crossing.point.unknowns.parameter, error: met.crossing.error },
+            Self::CyclesCross(met) => {
+                Estimate { value: met.crossing.point.unknowns.parameter, error: met.crossing.error }
+            }
+            Self::Hopf { located, .. } | Self::Crossing { located, .. } => {
+                Estimate { value: located.point.parameter, error: located.error }
+            }
         }
     }
 }
@@ -69,9 +84,15 @@ impl Way {
 pub(crate) struct Finished {
     pub branch: Branch,
     pub births: Vec<Switchable>,
-    /// To be known again by.
+    /// To be known again by; nothing for equilibria.
     pub followed: Followed,
-    pub problem: CycleProblem,
+    pub problem: Parent,
+}
+
+/// The problem of a finished branch, at whose events others are born.
+pub(crate) enum Parent {
+    Cycles(Box<CycleProblem>),
+    Equilibria(Box<EquilibriumProblem>),
 }
 
 /// What a branch is entered by.
@@ -80,8 +101,14 @@ pub(crate) enum Entry {
     Cycle(Box<CycleProblem>, Box<CyclePoint>),
     /// A birth on another branch; the branch goes outwards from it.
     Birth(Box<Born>),
-    /// A crossing; the branch goes both ways from it.
-    Crossing(Box<Crossed>),
+    /// A birth at a Hopf point, with the birth as a row of the table.
+    Hopf(Box<Born>, Box<Point>),
+    /// An equilibrium; the branch goes both ways from it.
+    Equilibrium(Box<EquilibriumProblem>, Box<EquilibriumPoint>),
+    /// A branching of equilibria; the branch goes both ways along a direction.
+    Crossing(Box<EquilibriumProblem>, Box<equilibrium_branch::Start>),
+    /// A crossing of cycles; the branch goes both ways from it.
+    CyclesCross(Box<Crossed>),
 }
 
 /// What every branch of a run shares.
@@ -133,7 +160,7 @@ impl WalkSink for Collector<'_, '_> {
             self.births.push(Switchable { event: event.name.clone(), way });
         }
         if let Some(met) = &found.crossing {
-            self.births.push(Switchable { event: event.name.clone(), way: Way::Crossing(met.clone()) });
+            self.births.push(Switchable { event: event.name.clone(), way: Way::CyclesCross(met.clone()) });
         }
         if event.kind.is_threshold() {
             self.run.observer.notice(Progress::Event { name: &event.name, value: event.value });
@@ -173,8 +200,11 @@ pub(crate) fn follow_branch(run: &mut Run<'_>, lineage: &Lineage, entry: Entry) 
     run.observer.notice(Progress::Branch { name: &lineage.name });
     match entry {
         Entry::Cycle(problem, point) => both_ways(run, lineage, *problem, *point),
-        Entry::Birth(doubled) => outwards(run, lineage, *doubled),
-        Entry::Crossing(crossed) => both_sides(run, lineage, *crossed),
+        Entry::Birth(doubled) => outwards(run, lineage, *doubled, None),
+        Entry::Hopf(born, birth) => outwards(run, lineage, *born, Some(*birth)),
+        Entry::Equilibrium(problem, point) => equilibrium_branch::both_ways(run, lineage, *problem, *point),
+        Entry::Crossing(problem, from) => equilibrium_branch::through_branching(run, lineage, *problem, *from),
+        Entry::CyclesCross(crossed) => both_sides(run, lineage, *crossed),
     }
 }
 
@@ -232,16 +262,21 @@ fn both_ways(
     finish(collector, problem, walked, (backward.end, forward.end))
 }
 
-fn outwards(run: &mut Run<'_>, lineage: &Lineage, doubled: Born) -> Result<Finished, StudyError> {
-    let Born { mut problem, birth, point, outwards, amplitude } = doubled;
+/// `at_birth` is the birth as a row, where it is no cycle with multipliers of its own.
+fn outwards(run: &mut Run<'_>, lineage: &Lineage, born: Born, at_birth: Option<Point>) -> Result<Finished, StudyError> {
+    let Born { mut problem, birth, point, outwards, amplitude } = born;
     let no_cycle = |reason: String| StudyError::NoCycle { reason };
-    let mut first = problem.describe(&birth, lineage.turns, 0.0).map_err(|fault| no_cycle(fault.to_string()))?;
+    let at_rest = at_birth.is_some();
+    let mut first = match at_birth {
+        Some(row) => Point { intervals: birth.intervals(), degree: birth.degree, choice: birth.choice, ..row },
+        None => problem.describe(&birth, lineage.turns, 0.0).map_err(|fault| no_cycle(fault.to_string()))?,
+    };
     let second = problem.describe(&point, lineage.turns, amplitude).map_err(|fault| no_cycle(fault.to_string()))?;
     // At the birth itself one multiplier is 1 to roundoff: the branch has the stability of its neighbouring cycles.
     first.unstable_count = second.unstable_count;
     let tangent = problem
         .tangent(&point, Orientation::Along(&outwards))
-        .map_err(|_| no_cycle("the doubled cycle cannot be continued".into()))?;
+        .map_err(|_| no_cycle("its first cycle cannot be continued".into()))?;
     let mut collector = collector(run, lineage);
     collector.point(&first);
     collector.point(&second);
@@ -259,15 +294,14 @@ fn outwards(run: &mut Run<'_>, lineage: &Lineage, doubled: Born) -> Result<Finis
     collector.event(&problem, &found);
     let forward = walk_shifted(&mut problem, (point.clone(), tangent), &plan, &mut collector, amplitude);
     let parent = lineage.born_at.clone().unwrap_or_default();
-    let born = end(
-        EndReason::ReturnsToParent,
-        birth.unknowns.parameter,
-        format!(
-            "returns to its parent: born at {parent}, {} = {}",
-            run_parameter(&plan),
-            short(plan.study, birth.unknowns.parameter)
-        ),
-    );
+    let value = birth.unknowns.parameter;
+    let (reason, what) = if at_rest {
+        (EndReason::Equilibrium { value }, "shrinks to an equilibrium")
+    } else {
+        (EndReason::ReturnsToParent, "returns to its parent")
+    };
+    let words = format!("{what}: born at {parent}, {} = {}", run_parameter(&plan), short(plan.study, value));
+    let born = end(reason, value, words);
     let mut walked = vec![Walked { point: first, cycle: birth }, Walked { point: second, cycle: point }];
     walked.extend(forward.points);
     finish(collector, problem, walked, (born, forward.end))
@@ -319,17 +353,19 @@ pub(crate) fn finish(
     let followed = Followed::of(&lineage.name, &points, cycles);
     run.observer.notice(Progress::Finished { name: &lineage.name, points: points.len() });
     let branch = branch_record(run.study, lineage, Parts { points, events, ends, profiles });
-    Ok(Finished { branch, births, followed, problem })
+    Ok(Finished { branch, births, followed, problem: Parent::Cycles(Box::new(problem)) })
 }
 
-struct Parts {
-    points: Vec<Point>,
-    events: Vec<Event>,
-    ends: (End, End),
-    profiles: Vec<StoredProfile>,
+/// What walks bring to the record of a branch.
+pub(crate) struct Parts {
+    pub points: Vec<Point>,
+    pub events: Vec<Event>,
+    pub ends: (End, End),
+    pub profiles: Vec<StoredProfile>,
 }
 
-fn branch_record(study: &Study, lineage: &Lineage, parts: Parts) -> Branch {
+/// A branch of cycles from its parts.
+pub(crate) fn branch_record(study: &Study, lineage: &Lineage, parts: Parts) -> Branch {
     let quantity =
         |name: &str, label: &str, unit: &str| Quantity { name: name.into(), label: label.into(), unit: unit.into() };
     let model = &study.model;
@@ -354,5 +390,6 @@ fn branch_record(study: &Study, lineage: &Lineage, parts: Parts) -> Branch {
         events: parts.events,
         ends: parts.ends,
         profiles: parts.profiles,
+        of: Solutions::Cycles,
     }
 }

@@ -2,7 +2,7 @@
 
 use armilla_model::Model;
 use armilla_record::{Criticality, End, EndReason, EventKind};
-use armilla_stability::{Crossing, CycleProblem, Meeting, Parity, Symmetry};
+use armilla_stability::{CycleCrossing, CycleProblem, Meeting, Parity, Symmetry};
 
 use crate::ends::{end, rounded_up, short};
 use crate::step_events::Found;
@@ -13,7 +13,7 @@ use crate::words::digits;
 /// A crossing with what a switch needs to know of it.
 #[derive(Clone)]
 pub(crate) struct Met {
-    pub crossing: Crossing,
+    pub crossing: CycleCrossing,
     /// Whether both sides of the branch that crosses are different, or the mirror images of each other.
     pub both: bool,
     /// Whether the branch it was met on goes on as its own mirror image.
@@ -65,7 +65,7 @@ struct Ways {
     mirror: bool,
 }
 
-fn event(problem: &mut CycleProblem, crossing: Crossing, distance: f64, plan: &WalkPlan<'_>) -> Found {
+fn event(problem: &mut CycleProblem, crossing: CycleCrossing, distance: f64, plan: &WalkPlan<'_>) -> Found {
     let [along, across] = crossing.parameter_parts;
     let Told { kind, criticality, note, ways } = match (along.vanishes(), across.vanishes()) {
         (false, false) => Told {
@@ -98,7 +98,7 @@ fn event(problem: &mut CycleProblem, crossing: Crossing, distance: f64, plan: &W
 }
 
 /// A crossing along one branch of which the parameter stands still: a pair of branches is born, or cycles fill a continuum.
-fn pitchfork(problem: &mut CycleProblem, crossing: &Crossing, from_side: bool, study: &Study) -> Told {
+fn pitchfork(problem: &mut CycleProblem, crossing: &CycleCrossing, from_side: bool, study: &Study) -> Told {
     // The direction in which the parameter stands still is the one that breaks a symmetry, if any is broken.
     let turned = if from_side { crossing.clone().turned() } else { crossing.clone() };
     let broken = problem.broken_symmetry(&crossing.point, &turned.tangents[1].row.nodes);
@@ -166,7 +166,7 @@ enum Side {
     Unknown,
 }
 
-fn side(problem: &mut CycleProblem, crossing: &Crossing, study: &Study) -> Side {
+fn side(problem: &mut CycleProblem, crossing: &CycleCrossing, study: &Study) -> Side {
     /// |log mu| that multipliers beside a crossing are known to.
     const ONE: f64 = 1e-7;
     let Ok(mut crossed) = problem.cross(crossing) else { return Side::Unknown };

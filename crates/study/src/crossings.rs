@@ -6,7 +6,9 @@ use armilla_follow::{Orientation, Problem};
 use armilla_record::{Branch, End, EndReason, Event, EventKind, Point};
 use armilla_stability::{Crossed, CrossedWay, CyclePoint, CycleProblem};
 
-use crate::branch::{Collector, Finished, Lineage, Run, Switchable, Way, collector, finish, plan, walk_shifted};
+use crate::branch::{
+    Collector, Finished, Lineage, Parent, Run, Switchable, Way, collector, finish, plan, walk_shifted,
+};
 use crate::ends::end;
 use crate::error::StudyError;
 use crate::step_events::at_parameter;
@@ -84,8 +86,8 @@ pub(crate) fn leave_out_known(finished: &mut Finished, others: &[Branch], queue:
     let mut kept = Vec::new();
     for birth in std::mem::take(&mut finished.births) {
         let known = match &birth.way {
-            Way::Crossing(_) => met_before(finished, &birth, others),
-            Way::Doubling { .. } => None,
+            Way::CyclesCross(_) => met_before(finished, &birth, others),
+            _ => None,
         };
         let Some((name, branch)) = known else {
             kept.push(birth);
@@ -102,12 +104,13 @@ pub(crate) fn leave_out_known(finished: &mut Finished, others: &[Branch], queue:
 
 /// The crossing of another branch, or an earlier one of the same, at which a crossing stands; with the branch's name.
 fn met_before(finished: &Finished, birth: &Switchable, others: &[Branch]) -> Option<(String, String)> {
+    let Parent::Cycles(problem) = &finished.problem else { return None };
     let own = &finished.branch;
     let event = own.events.iter().find(|event| event.name == birth.event)?;
     let number = own.events.iter().position(|event| event.name == birth.event)?;
     let earlier = own.events[..number].iter().map(|event| (event, own));
     let elsewhere = others.iter().flat_map(|branch| branch.events.iter().map(move |event| (event, branch)));
-    let found = elsewhere.chain(earlier).find(|(other, _)| is_same(&finished.problem, event, other))?;
+    let found = elsewhere.chain(earlier).find(|(other, _)| is_same(problem, event, other))?;
     Some((found.0.name.clone(), found.1.name.clone()))
 }
 

@@ -46,10 +46,8 @@ pub(crate) fn passed_through(
             return Passage::TooLong;
         }
         let Some(rest) = birth(problem, motions, scale(plan)) else { return Passage::TooLong };
-        let value = rest.value;
-        let words =
-            format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), known(plan, (value, rest.error)));
-        return Passage::End(end(EndReason::Equilibrium { value }, last, words), Some(rest));
+        let rest = rest.located(problem, &before.point, width(plan));
+        return Passage::End(at_rest_end(plan, last, &rest), Some(rest));
     }
     // Whatever its turns: they count crossings of one state, which may have the longer period alone.
     match problem.split_between(&before.point, &after.point) {
@@ -63,6 +61,42 @@ pub(crate) fn passed_through(
             Passage::Fell(returned(&sizes, worst_profile(points, problem.profile_error(&before.point)), plan))
         }
     }
+}
+
+/// The end of a walk at an equilibrium.
+fn at_rest_end(plan: &WalkPlan<'_>, last: f64, rest: &Rest) -> End {
+    let value = rest.value;
+    let words = format!("shrinks to an equilibrium at {} = {}", with_unit_name(plan), known(plan, (value, rest.error)));
+    end(EndReason::Equilibrium { value }, last, words)
+}
+
+fn width(plan: &WalkPlan<'_>) -> f64 {
+    plan.study.range.1 - plan.study.range.0
+}
+
+/// The Hopf point that a walk got stuck before, if its cycle had all but shrunk to an equilibrium and one is located there.
+pub(crate) fn stuck_at_rest(
+    follower: &mut Follower<'_, CycleProblem>,
+    plan: &WalkPlan<'_>,
+    motions: &[Motion],
+) -> Option<(End, Rest)> {
+    let stuck = matches!(follower.end(), Some(FollowEnd::Stuck | FollowEnd::Outside(_)));
+    if !stuck || !has_shrunk(motions) {
+        return None;
+    }
+    let (problem, _, current) = follower.parts();
+    let (last, period) = (current.point.unknowns.parameter, current.point.unknowns.period);
+    // No errors are known of what the walk did not reach; the range within which the located point counts is that of
+    // `Rest::located` alone.
+    let rest = Rest { value: guess(motions)?, error: 0.0, period, period_error: period, located: None };
+    let rest = rest.located(problem, &current.point, width(plan));
+    rest.located.is_some().then(|| (at_rest_end(plan, last, &rest), rest))
+}
+
+/// Whether the motion has all but come to rest.
+fn has_shrunk(motions: &[Motion]) -> bool {
+    let largest = motions.iter().map(|m| m.size).fold(0.0, f64::max);
+    motions.last().is_some_and(|m| m.size < NEARLY_AT_REST * largest) && motions.len() > 2
 }
 
 /// The end of a walk at the birth of its branch by a period doubling.
@@ -189,18 +223,22 @@ fn at_rest(sizes: &[(f64, f64)]) -> f64 {
     if value.is_finite() { value } else { sizes[sizes.len() - 1].1 }
 }
 
-/// The birth of the cycle at an equilibrium as an event: the last cycle shrunk to its mean.
+/// The birth of the cycle at an equilibrium as an event: the last cycle shrunk to the equilibrium, or to its mean where that
+/// was not located.
 pub(crate) fn birth_of_cycle(before: &CycleStation, problem: &CycleProblem, rest: Rest, plan: &WalkPlan<'_>) -> Found {
-    let note = "extrapolated from the last cycles".to_string();
+    let means = problem.profile(&before.point).means();
+    let (state, criticality, note) = match rest.located {
+        Some(birth) => (birth.state, birth.criticality, birth.note),
+        None => (means, None, "extrapolated from the last cycles".to_string()),
+    };
     let mut event = unresolved(before, (rest.value, rest.error), note, plan);
     (event.point.unknowns.period, event.period_error) = (rest.period, Some(rest.period_error));
-    let means = problem.profile(&before.point).means();
     for (k, node) in event.point.unknowns.nodes.iter_mut().enumerate() {
-        *node = means[k % means.len()];
+        *node = state[k % state.len()];
     }
     // One motion farther along the walk, so that the event stands behind the last point.
     event.distance = plan.sign * (before.distance + problem.motion(&before.point));
-    event.kind = EventKind::Hopf;
+    (event.kind, event.criticality) = (EventKind::Hopf, criticality);
     event
 }
 
@@ -246,7 +284,7 @@ pub(crate) fn resolution_lost(point: &Point, plan: &WalkPlan<'_>) -> Option<End>
 }
 
 /// What stopped the evaluation, with the names of the model.
-fn fault_words(study: &Study, fault: &Fault) -> String {
+pub(crate) fn fault_words(study: &Study, fault: &Fault) -> String {
     match fault {
         Fault::NotFinite { state, states, .. } => {
             let name = &study.model.states()[*state].name;
@@ -270,8 +308,7 @@ pub(crate) fn end_of_follower(
     let value = follower.current().point.unknowns.parameter;
     let name = with_unit_name(plan);
     let here = short(plan.study, value);
-    let largest = motions.iter().map(|m| m.size).fold(0.0, f64::max);
-    let shrunk = motions.last().is_some_and(|m| m.size < NEARLY_AT_REST * largest) && motions.len() > 2;
+    let shrunk = has_shrunk(motions);
     match follower.end() {
         Some(FollowEnd::Edge(edge)) => {
             end(EndReason::Edge, *edge, format!("reaches the edge of the asked range, {name} = {edge}"))

@@ -57,6 +57,11 @@ pub enum StudyError {
         /// Why.
         reason: String,
     },
+    /// No equilibrium was found, or it cannot be followed.
+    NoEquilibrium {
+        /// Why.
+        reason: String,
+    },
     /// Cycles come in families, so that none is singled out by the parameters.
     Families {
         /// Why.
@@ -98,9 +103,8 @@ impl StudyError {
             Self::Settling { error: FlowError::Setting { .. } | FlowError::ForcingPeriodMissing, .. } => {
                 ErrorClass::Input
             }
-            Self::Settling { .. } | Self::SettlesAtRest { .. } | Self::DidNotSettle { .. } | Self::NoCycle { .. } => {
-                ErrorClass::NotReached
-            }
+            Self::Settling { .. } | Self::SettlesAtRest { .. } | Self::DidNotSettle { .. } => ErrorClass::NotReached,
+            Self::NoCycle { .. } | Self::NoEquilibrium { .. } => ErrorClass::NotReached,
         }
     }
 }
@@ -128,9 +132,9 @@ impl std::fmt::Display for StudyError {
             Self::Settling { words, .. } => write!(f, "settling failed: {words}"),
             Self::SettlesAtRest { states, growth } => write!(
                 f,
-                "the motion settles at rest ({}){}; there is no cycle to start from\n    help: start at parameter values \
-                 where the model oscillates (`start: Settle(at: ...)`), or begin farther from rest (`begin` in the \
-                 model file)",
+                "the motion settles at rest ({}){}, but no isolated equilibrium was found there to follow\n    help: start at \
+                 parameter values where the model oscillates (`start: Settle(at: ...)`), or begin farther from rest (`begin` \
+                 in the model file)",
                 listed(states),
                 // At a degenerate state of rest there is no rate of decay to tell.
                 if *growth < 0.0 {
@@ -148,6 +152,11 @@ impl std::fmt::Display for StudyError {
                 f,
                 "no cycle was found from the settled motion: {reason}\n    help: start at parameter values where the \
                  cycle attracts more strongly, or allow a longer `transient`"
+            ),
+            Self::NoEquilibrium { reason } => write!(
+                f,
+                "no equilibrium to follow: {reason}\n    help: give states nearer to one, `start: Equilibrium(near: {{ ... \
+                 }})`, or let the motion settle, `start: Settle(at: {{ ... }})`"
             ),
             Self::Families { reason, instead } => write!(
                 f,

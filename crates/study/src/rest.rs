@@ -3,9 +3,13 @@
 //! Near its birth at a state of rest the parameter and the period of a cycle are smooth even functions of its amplitude
 //! (Hopf 1942, Berichte der Sächsischen Akademie 94:3). So polynomials in the square of the amplitude through the last
 //! points are extrapolated to 0; each point more gains about a factor of that square, until the errors of the points
-//! themselves, enlarged by the weights, outgrow the gain.
+//! themselves, enlarged by the weights, outgrow the gain. From there the Hopf point itself is located; what was
+//! extrapolated stands where there is none, as with rates that have kinks.
 
+use armilla_record::Criticality;
 use armilla_stability::{CyclePoint, CycleProblem};
+
+use crate::equilibrium_events::hopf_side;
 
 /// A cycle on the way to rest.
 #[derive(Clone, Debug)]
@@ -95,7 +99,7 @@ pub(crate) fn birth(problem: &mut CycleProblem, motions: &[Motion], scale: f64) 
     let (period, period_error) = limit(&periods)?;
     // Sums over a cycle round alike at every point.
     let period_error = period_error + PERIOD_UNITS * f64::EPSILON * period;
-    Some(Rest { value, error, period, period_error })
+    Some(Rest { value, error, period, period_error, located: None })
 }
 
 /// What moves one way at one cycle may move the other way at a neighbour.
@@ -138,8 +142,8 @@ fn refine(problem: &mut CycleProblem, motion: &Motion) -> Option<Refined> {
     Some(Refined { motion: fine, period_error: (discretisation, roundoff), change, left })
 }
 
-/// The birth of a cycle, extrapolated.
-#[derive(Clone, Copy, Debug, PartialEq)]
+/// The birth of a cycle, extrapolated or located.
+#[derive(Clone, Debug, PartialEq)]
 pub(crate) struct Rest {
     /// Parameter.
     pub value: f64,
@@ -149,6 +153,40 @@ pub(crate) struct Rest {
     pub period: f64,
     /// Estimated error of it.
     pub period_error: f64,
+    /// What the Hopf point itself tells, where it was located.
+    pub located: Option<Birth>,
+}
+
+/// A birth located as a Hopf point of equilibria.
+#[derive(Clone, Debug, PartialEq)]
+pub(crate) struct Birth {
+    /// The equilibrium.
+    pub state: Vec<f64>,
+    /// Side on which cycles are born.
+    pub criticality: Option<Criticality>,
+    /// The first Lyapunov coefficient, in words.
+    pub note: String,
+}
+
+impl Rest {
+    /// The same birth located on the defining system of Hopf points, begun from the extrapolated one and `cycle`, the last
+    /// before it; itself where that does not lead to a Hopf point near by, as with rates that have kinks.
+    pub(crate) fn located(self, problem: &CycleProblem, cycle: &CyclePoint, width: f64) -> Self {
+        /// Estimated errors of the extrapolation within which the located point is the same birth.
+        const ERRORS: f64 = 10.0;
+        /// Share of the range, and of the period, that are allowed besides.
+        const NEAR: f64 = 1e-4;
+        let Some((_, hopf, form)) = problem.hopf_near(cycle, self.value, self.period) else { return self };
+        let Some((period, period_error)) = hopf.period() else { return self };
+        let near = (hopf.point.parameter - self.value).abs() <= ERRORS * self.error + NEAR * width
+            && (period - self.period).abs() <= ERRORS * self.period_error + NEAR * self.period;
+        if !near {
+            return self;
+        }
+        let (criticality, note) = hopf_side(form.as_ref());
+        let located = Some(Birth { state: hopf.point.state, criticality, note });
+        Self { value: hopf.point.parameter, error: hopf.error, period, period_error, located }
+    }
 }
 
 /// Most points used: errors of the points come to outweigh the gain before that.

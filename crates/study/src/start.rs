@@ -1,24 +1,26 @@
-//! From the start of a study to a first cycle.
+//! From the start of a study to a first cycle or equilibrium.
 
 use std::sync::atomic::AtomicBool;
 
 use armilla_flow::{SettleOptions, Verdict, settle};
 use armilla_model::Batch;
 use armilla_record::Profile;
-use armilla_stability::{CyclePoint, CycleProblem, CycleSpec};
+use armilla_stability::{CycleProblem, CycleSpec};
 
+use crate::branch::Entry;
+use crate::equilibrium_start::{equilibrium_at, near_states};
 use crate::error::StudyError;
 use crate::families::family;
-use crate::file::Start;
+use crate::file::{Start, Values};
 use crate::progress::{Observer, Progress};
 use crate::settings::cycle_settings;
 use crate::study::Study;
 use crate::words::{digits, listed, settling_words, unsettled_words};
 
-/// The first cycle with the problem it belongs to.
+/// The first cycle or equilibrium with the problem it belongs to.
 pub(crate) struct First {
-    pub problem: CycleProblem,
-    pub point: CyclePoint,
+    pub entry: Entry,
+    /// Turns of a cycle; 1 for an equilibrium, as of the cycles born there.
     pub turns: usize,
     /// Anything the user must know about the start.
     pub notes: Vec<String>,
@@ -30,16 +32,15 @@ const FIRST_INTERVALS: usize = 40;
 /// |log mu| of a second multiplier at 1 on a cycle of a family, as far as a badly conditioned cycle tells.
 const OF_A_FAMILY: f64 = 1e-4;
 
-/// Finds the first cycle.
-pub(crate) fn first_cycle(study: &Study, abort: &AtomicBool, observer: &mut dyn Observer) -> Result<First, StudyError> {
+/// Finds the first cycle or equilibrium.
+pub(crate) fn first_solution(
+    study: &Study,
+    abort: &AtomicBool,
+    observer: &mut dyn Observer,
+) -> Result<First, StudyError> {
     let transient = match &study.file.start {
         Start::Settle { transient, .. } => *transient,
-        Start::Equilibrium { .. } => {
-            return Err(StudyError::NotInThisVersion {
-                what: "a start from an equilibrium",
-                instead: "start on a stable cycle: start: Settle(at: { ... })",
-            });
-        }
+        Start::Equilibrium { near } => return first_equilibrium(study, near),
         Start::Samples { .. } => {
             return Err(StudyError::NotInThisVersion {
                 what: "a start from samples",
@@ -64,7 +65,10 @@ pub(crate) fn first_cycle(study: &Study, abort: &AtomicBool, observer: &mut dyn 
     let cycle = match settled.verdict {
         Verdict::Cycle(cycle) => cycle,
         Verdict::Equilibrium(rest) => {
-            return Err(StudyError::SettlesAtRest { growth: rest.growth(), states: named(study, &rest.state) });
+            let at_rest = || StudyError::SettlesAtRest { growth: rest.growth(), states: named(study, &rest.state) };
+            let (problem, point) = equilibrium_at(study, &rest.state).map_err(|_| at_rest())?;
+            let entry = Entry::Equilibrium(Box::new(problem), Box::new(point));
+            return Ok(First { entry, turns: 1, notes });
         }
         other => return Err(StudyError::DidNotSettle { evidence: unsettled_words(&other, &study.model) }),
     };
@@ -93,7 +97,19 @@ pub(crate) fn first_cycle(study: &Study, abort: &AtomicBool, observer: &mut dyn 
     {
         return Err(family);
     }
-    Ok(First { problem, point, turns, notes })
+    Ok(First { entry: Entry::Cycle(Box::new(problem), Box::new(point)), turns, notes })
+}
+
+fn first_equilibrium(study: &Study, near: &Values) -> Result<First, StudyError> {
+    if study.model.forcing().is_some() {
+        return Err(StudyError::NotInThisVersion {
+            what: "an equilibrium of a forced model",
+            instead: "a model whose rates use the time `t` does not rest; start on a cycle: start: Settle(at: { ... })",
+        });
+    }
+    let (problem, point) = equilibrium_at(study, &near_states(study, near))?;
+    let entry = Entry::Equilibrium(Box::new(problem), Box::new(point));
+    Ok(First { entry, turns: 1, notes: Vec::new() })
 }
 
 /// How many copies of one cycle a settled motion is: 1 as a rule, more where something beside the cycle itself (a state

@@ -83,6 +83,9 @@ impl Study {
             place.set(&model, "at", at, &mut start_parameters)?;
             place.only_followed_differs(&model, free, (&parameters, &start_parameters), at)?;
         }
+        if let Start::Equilibrium { near } = &file.start {
+            place.states(&model, near)?;
+        }
         let range = (file.follow.from.min(file.follow.to), file.follow.from.max(file.follow.to));
         place.start_in_range(&file, start_parameters[free], range)?;
         if file.figures.is_empty() {
@@ -168,6 +171,24 @@ impl Place<'_> {
         Ok(())
     }
 
+    /// Checks names and values of `near`.
+    fn states(&self, model: &Model, near: &Values) -> Result<(), Diagnostic> {
+        let names: Vec<&str> = model.states().iter().map(|state| state.name.as_str()).collect();
+        for (name, value) in &near.0 {
+            if !names.contains(&name.as_str()) {
+                let help = match nearest_name(name, names.iter().copied()) {
+                    Some(near) => format!("did you mean `{near}`?"),
+                    None => format!("the model's states are {}", names.join(", ")),
+                };
+                return Err(self.error("near", name, format!("the model has no state `{name}`")).with_help(help));
+            }
+            if !value.is_finite() {
+                return Err(self.error("near", name, format!("the value of `{name}` is not finite")));
+            }
+        }
+        Ok(())
+    }
+
     fn only_followed_differs(
         &self,
         model: &Model,
@@ -237,7 +258,10 @@ impl Place<'_> {
         }
         let name = &file.follow.parameter;
         let message = format!("the start has `{name}` = {value}, outside the asked range from {low} to {high}");
-        let help = format!("widen `follow`, or start inside it: start: Settle(at: {{ \"{name}\": ... }})");
+        let help = match &file.start {
+            Start::Equilibrium { .. } => format!("widen `follow`, or start inside it: set: {{ \"{name}\": ... }}"),
+            _ => format!("widen `follow`, or start inside it: start: Settle(at: {{ \"{name}\": ... }})"),
+        };
         Err(self.error("follow", "from", message).with_help(help))
     }
 

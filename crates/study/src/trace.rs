@@ -8,13 +8,14 @@ use armilla_figure::Figure;
 use armilla_record::{Branch, CascadeRow, EndReason, EventKind, Reached, RecordError, Results, Threshold};
 use armilla_stability::{Born, CycleProblem, SwitchFault};
 
-use crate::branch::{Entry, Finished, Lineage, Run, Switchable, Way, follow_branch};
+use crate::branch::{Entry, Finished, Lineage, Parent, Run, Switchable, Way, follow_branch};
 use crate::cascade::cascade;
 use crate::crossings::leave_out_known;
+use crate::equilibrium_births::{Crossings, ends_where_born, enter};
 use crate::error::StudyError;
 use crate::joins::Atlas;
 use crate::progress::Observer;
-use crate::start::first_cycle;
+use crate::start::first_solution;
 use crate::step_events::LOCATED_BY_BRACKET;
 use crate::study::Study;
 
@@ -58,8 +59,10 @@ impl Waiting {
     fn birth_value(&self) -> f64 {
         match &self.entry {
             Entry::Cycle(_, point) => point.unknowns.parameter,
-            Entry::Birth(born) => born.birth.unknowns.parameter,
-            Entry::Crossing(crossed) => crossed.birth.unknowns.parameter,
+            Entry::Birth(born) | Entry::Hopf(born, _) => born.birth.unknowns.parameter,
+            Entry::Equilibrium(_, point) => point.parameter,
+            Entry::Crossing(_, from) => from.birth.parameter,
+            Entry::CyclesCross(crossed) => crossed.birth.unknowns.parameter,
         }
     }
 }
@@ -72,7 +75,7 @@ impl Waiting {
 pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Observer) -> Result<Traced, StudyError> {
     let folder = options.folder.clone().unwrap_or_else(|| study.results_folder());
     let mut results = Results::create(&folder, options.replace)?;
-    let first = first_cycle(study, options.abort, observer)?;
+    let first = first_solution(study, options.abort, observer)?;
     results.write_study(&study.understood())?;
     let mut traced = Traced {
         branches: Vec::new(),
@@ -83,8 +86,8 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         interrupted: false,
     };
     let lineage = Lineage { name: "a".into(), born_at: None, doublings: 0, turns: first.turns, line: Vec::new() };
-    let entry = Entry::Cycle(Box::new(first.problem), Box::new(first.point));
-    let mut queue = VecDeque::from([Waiting { lineage, entry }]);
+    let mut queue = VecDeque::from([Waiting { lineage, entry: first.entry }]);
+    let mut crossings = Crossings::default();
     let mut points_left = study.file.pursue.points;
     let mut atlas = Atlas::default();
     while let Some(waiting) = queue.pop_front() {
@@ -101,7 +104,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         let lineage = waiting.lineage.clone();
         let mut finished = match follow_branch(&mut run, &lineage, waiting.entry) {
             Ok(finished) => finished,
-            Err(StudyError::NoCycle { reason }) if lineage.born_at.is_some() => {
+            Err(StudyError::NoCycle { reason } | StudyError::NoEquilibrium { reason }) if lineage.born_at.is_some() => {
                 traced.shortfalls.push(format!("branch {} could not be followed: {reason}", lineage.name));
                 continue;
             }
@@ -111,6 +114,9 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         leave_out_known(&mut finished, &traced.branches, &mut queue);
         atlas.add(std::mem::take(&mut finished.followed));
         drop_other_end(study, &lineage, &mut finished.branch, &mut queue);
+        drop_born_here(study, &mut finished.branch, &mut queue);
+        let met = crossings.sift(study, &mut finished);
+        queue.retain(|waiting| waiting.lineage.born_at.as_ref().is_none_or(|event| !met.contains(event)));
         results.write_branch(&finished.branch)?;
         if options.abort.load(Ordering::Relaxed) {
             traced.branches.push(finished.branch);
@@ -160,6 +166,17 @@ fn drop_other_end(study: &Study, lineage: &Lineage, branch: &mut Branch, queue: 
     }
 }
 
+/// A branch of cycles that ends at a Hopf point where another waits to be entered has been followed from both ends.
+fn drop_born_here(study: &Study, branch: &mut Branch, queue: &mut VecDeque<Waiting>) {
+    let here = |waiting: &Waiting| ends_where_born(study, branch, &waiting.entry);
+    if let Some(at) = queue.iter().position(here)
+        && let Some(waiting) = queue.remove(at)
+        && let Some(met) = &waiting.lineage.born_at
+    {
+        branch.ends.1.words.push_str(&format!("; this is {met}, and the branch born there is this one"));
+    }
+}
+
 /// The branches born at the events of a finished one.
 fn children(
     study: &Study,
@@ -180,22 +197,29 @@ fn children(
             ));
             continue;
         }
-        match entry(&finished.problem, way) {
+        let entry = match &finished.problem {
+            Parent::Cycles(problem) => enter_from_cycles(problem, way).map_err(|fault| fault.to_string()),
+            Parent::Equilibria(problem) => enter(study, problem, way),
+        };
+        match entry {
             Err(fault) => shortfalls.push(format!("at {event} {fault}")),
             // Born on the edge of the range and leading out of it: nothing to follow.
-            Ok(Entry::Birth(born)) if is_outside(study, &born) => {}
+            Ok(Entry::Birth(born) | Entry::Hopf(born, _)) if is_outside(study, &born) => {}
             Ok(entry) => children.push(Waiting { lineage: child_lineage(lineage, event, way), entry }),
         }
     }
     children
 }
 
-fn entry(problem: &CycleProblem, way: &Way) -> Result<Entry, SwitchFault> {
+/// The way onto what is born at an event of cycles.
+fn enter_from_cycles(problem: &CycleProblem, way: &Way) -> Result<Entry, SwitchFault> {
     Ok(match way {
         Way::Doubling { located, form } => Entry::Birth(Box::new(problem.double(located, form.as_ref())?)),
-        Way::Crossing(met) if met.both => Entry::Crossing(Box::new(problem.cross(&met.crossing)?)),
+        Way::CyclesCross(met) if met.both => Entry::CyclesCross(Box::new(problem.cross(&met.crossing)?)),
         // The other side is the mirror image.
-        Way::Crossing(met) => Entry::Birth(Box::new(problem.cross(&met.crossing)?.born())),
+        Way::CyclesCross(met) => Entry::Birth(Box::new(problem.cross(&met.crossing)?.born())),
+        // Events of equilibria are met on branches of equilibria.
+        Way::Hopf { .. } | Way::Crossing { .. } => return Err(SwitchFault),
     })
 }
 
@@ -216,9 +240,10 @@ fn child_lineage(parent: &Lineage, event: &str, way: &Way) -> Lineage {
             turns: 2 * parent.turns,
             line: parent.line.iter().copied().chain([way.threshold()]).collect(),
         },
-        Way::Crossing(_) => {
+        Way::CyclesCross(_) => {
             Lineage { name, born_at, doublings: parent.doublings, turns: parent.turns, line: Vec::new() }
         }
+        Way::Hopf { .. } | Way::Crossing { .. } => Lineage { name, born_at, doublings: 0, turns: 1, line: Vec::new() },
     }
 }
 
@@ -293,6 +318,7 @@ fn shortfalls(study: &Study, branches: &[Branch], cascade_only: bool) -> Vec<Str
                     | EndReason::Equilibrium { .. }
                     | EndReason::ReturnsToParent
                     | EndReason::Joins { .. }
+                    | EndReason::Unbounded
                     | EndReason::PeriodBlowUp
             );
             if !reached && !cascade_only {

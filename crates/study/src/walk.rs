@@ -9,7 +9,9 @@ use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_FOLD};
 use crate::ahead::Ahead;
 use crate::approach::{Approach, Known, Past, approach, approach_of_stuck, orbit_stands, resolved};
 use crate::crossing_event::mirror_image;
-use crate::ends::{Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short};
+use crate::ends::{
+    Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short, stuck_at_rest,
+};
 use crate::guards::{bends, falls_on_shorter, leaps};
 use crate::joins::Atlas;
 use crate::ledger::{Change, is_off_folds, is_sure};
@@ -139,7 +141,14 @@ impl Walker<'_, '_> {
             self.walk.end = ended;
             return self.walk;
         }
-        self.walk.end = end_of_follower(&mut self.follower, self.plan, &self.seen.motions);
+        self.walk.end = match stuck_at_rest(&mut self.follower, self.plan, &self.seen.motions) {
+            Some((ended, rest)) => {
+                let last = self.follower.current().clone();
+                self.come_to_rest(&last, rest);
+                ended
+            }
+            None => end_of_follower(&mut self.follower, self.plan, &self.seen.motions),
+        };
         self.walk
     }
 
@@ -173,7 +182,9 @@ impl Walker<'_, '_> {
         match passage {
             Passage::Fell(ended) => return if self.retry() { Taken::On } else { Taken::Ended(ended) },
             Passage::End(ended, rest) => {
-                self.come_to_rest(rest);
+                if let Some(rest) = rest {
+                    self.come_to_rest(&before, rest);
+                }
                 return Taken::Ended(ended);
             }
             Passage::None | Passage::TooLong => {}
@@ -292,10 +303,10 @@ impl Walker<'_, '_> {
         true
     }
 
-    fn come_to_rest(&mut self, rest: Option<Rest>) {
-        let Some(rest) = rest else { return };
-        let (problem, before, _) = self.follower.parts();
-        let event = birth_of_cycle(before.expect("a step has a station before it"), problem, rest, self.plan);
+    /// The event at the equilibrium that a walk comes to behind its last station.
+    fn come_to_rest(&mut self, last: &CycleStation, rest: Rest) {
+        let (problem, _, _) = self.follower.parts();
+        let event = birth_of_cycle(last, problem, rest, self.plan);
         self.sink.event(problem, &event);
         self.walk.events.push(event);
     }

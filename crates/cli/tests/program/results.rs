@@ -179,10 +179,8 @@ fn replaced_results_are_the_same_bytes_and_nothing_else_stays() {
 fn a_run_that_fails_leaves_the_old_results() {
     let desk = Desk::with(&x1());
     traced(&desk, "x1.study.ron");
-    desk.write(
-        "x1.study.ron",
-        X1_STUDY.replace("from: 0.1", "from: -0.5").replace("Settle()", "Settle(at: { \"mu\": -0.25 })"),
-    );
+    // x' = x^2: the motion grows without bound.
+    desk.write("x1.model.ron", X1_MODEL.replace("x*(mu - r2) - y*(1 + k*r2)", "x^2"));
     let before = desk.files();
     let said = desk.run(&["trace", "x1.study.ron", "--replace"]);
     assert_eq!(said.code, 1, "{said:?}");
@@ -241,4 +239,15 @@ fn multipliers_that_are_not_resolved_are_said_so() {
         assert_eq!(row[column("unresolved_log_sum")], format!("{:?}", unresolved.log_sum));
         assert!(!table[0].iter().any(|head| head.starts_with("multiplier2")));
     }
+}
+
+/// At mu = -0.25 the origin attracts; exact: eigenvalues mu ± i, Hopf at 0.
+#[test]
+fn a_motion_at_rest_is_followed_from_there() {
+    let model = X1_MODEL.replace("value: 0.25", "value: -0.25");
+    let study = X1_STUDY.replace("from: 0.1", "from: -0.5");
+    let desk = Desk::with(&[("x1.model.ron", &model), ("x1.study.ron", &study)]);
+    let said = desk.run(&["trace", "x1.study.ron"]);
+    assert_eq!(said.code, 0, "{}", said.err);
+    assert!(said.out.contains("branch a of equilibria: ") && said.out.contains("a/hopf1"), "{}", said.out);
 }

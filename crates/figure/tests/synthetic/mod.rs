@@ -1,7 +1,7 @@
 //! Branches made by formula, with the shapes that figures must show.
 
 use armilla_record::{
-    Branch, Criticality, End, EndReason, Event, EventKind, Multiplier, Point, Profile, Quantity, nodes,
+    Branch, Criticality, End, EndReason, Event, EventKind, Multiplier, Point, Profile, Quantity, Solutions, nodes,
 };
 
 /// What a synthetic cycle is at a distance along its branch.
@@ -40,6 +40,7 @@ pub fn branch(name: &str, length: f64, count: usize, cycle: impl Fn(f64) -> Cycl
         ends: (end(cycle(0.0).value), end(cycle(length).value)),
         points,
         profiles: Vec::new(),
+        of: Solutions::Cycles,
     }
 }
 

@@ -67,9 +67,9 @@ fn a_lost_line_and_a_changed_digit_are_called_damage() {
 #[test]
 fn a_later_format_is_refused_in_words() {
     let text = String::from_utf8(bytes_of(&branch(5, "a", 3))).expect("text");
-    let later = text.replacen("format 2", "format 7", 1);
+    let later = text.replacen("format 3", "format 7", 1);
     let error = parse(&resealed(&later)).expect_err("format 7");
-    let words = "branches/a.ron has format version 7, this armilla reads versions up to 2; use a newer armilla";
+    let words = "branches/a.ron has format version 7, this armilla reads versions up to 3; use a newer armilla";
     assert_eq!(error.to_string(), words);
 }
 
@@ -99,7 +99,7 @@ type Spoil = fn(&mut Branch);
 
 #[test]
 fn contradictions_are_neither_written_nor_read() {
-    let spoils: [(&str, Spoil); 22] = [
+    let spoils: [(&str, Spoil); 24] = [
         ("value is NaN", |b| b.points[1].value = f64::NAN),
         ("period is inf", |b| b.points[0].period = f64::INFINITY),
         ("profile_error is not a number", |b| b.points[0].profile_error = f64::NAN),
@@ -109,6 +109,12 @@ fn contradictions_are_neither_written_nor_read() {
         ("maxima for", |b| b.points[2].maxima.push(0.0)),
         ("spreads are missing", |b| b.points[2].spreads.clear()),
         ("more multipliers are unstable", |b| b.points[0].unstable_count = 100),
+        ("more eigenvalues are unstable", |b| {
+            b.of = Solutions::Equilibria;
+            b.points[0].multipliers.clear();
+            b.points[0].unstable_count = 1;
+        }),
+        ("none has both", |b| b.points[0].eigenvalues.push(Eigenvalue { re: 0.0, im: 0.0 })),
         ("points are not in the order", |b| b.points.swap(0, 2)),
         ("two events are named", |b| b.events[1] = b.events[0].clone()),
         ("the name must be a/", |b| b.events[0].name = "b/fold1".into()),

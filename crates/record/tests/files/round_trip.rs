@@ -5,7 +5,7 @@ use std::path::Path;
 
 use armilla_record::*;
 
-use crate::sample::{all_bits, branch, branch_of_today};
+use crate::sample::{all_bits, branch, branch_of_format_2, branch_of_today};
 
 #[test]
 fn branches_of_random_bits_read_back_to_the_last_bit() {
@@ -39,6 +39,16 @@ fn a_kept_file_of_format_1_still_reads() {
 fn a_kept_file_of_format_2_still_reads() {
     let kept = include_bytes!("branch-format-2.ron");
     let read = parse_branch(Path::new("branch-format-2.ron"), kept).expect("format 2 is known");
+    let written = branch_of_format_2(15, "a.doubling1", 4);
+    assert_eq!(read, written);
+    assert_eq!(all_bits(&read), all_bits(&written));
+}
+
+/// The same for format 3.
+#[test]
+fn a_kept_file_of_format_3_still_reads() {
+    let kept = include_bytes!("branch-format-3.ron");
+    let read = parse_branch(Path::new("branch-format-3.ron"), kept).expect("format 3 is known");
     let written = branch_of_today(15, "a.doubling1", 4);
     assert_eq!(read, written);
     assert_eq!(all_bits(&read), all_bits(&written));
@@ -47,7 +57,7 @@ fn a_kept_file_of_format_2_still_reads() {
 /// Outside: any RON reader, here with no type of ours; the two comment lines do not disturb it.
 #[test]
 fn the_file_is_plain_ron_with_no_line_beyond_reason() {
-    let text = include_str!("branch-format-2.ron");
+    let text = include_str!("branch-format-3.ron");
     ron::from_str::<ron::Value>(text).expect("plain RON");
     let longest = text.lines().map(str::len).max();
     assert!(longest < Some(170), "{longest:?}");

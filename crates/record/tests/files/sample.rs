@@ -94,8 +94,23 @@ fn point(bits: &mut Bits, n: usize, distance: f64) -> Point {
     }
 }
 
-/// A branch as [`branch`] gives it, with what format 2 added.
+/// A branch as [`branch_of_format_2`] gives it, with what format 3 added: every second one is of equilibria.
 pub fn branch_of_today(seed: u64, name: &str, n_points: usize) -> Branch {
+    let mut branch = branch_of_format_2(seed, name, n_points);
+    if seed % 2 == 1 {
+        let bits = &mut Bits(seed + 177);
+        branch.of = Solutions::Equilibria;
+        let n = branch.states.len();
+        for point in &mut branch.points {
+            point.multipliers.clear();
+            point.eigenvalues = (0..n).map(|_| Eigenvalue { re: bits.finite(), im: bits.finite() }).collect();
+        }
+    }
+    branch
+}
+
+/// A branch as [`branch`] gives it, with what format 2 added.
+pub fn branch_of_format_2(seed: u64, name: &str, n_points: usize) -> Branch {
     use MeshReason::*;
     let choices = [Start, Kept, Given, ProfileError, Ease, Work, LiouvilleDefect];
     let reached = [Reached::Accuracy, Reached::RoundoffFloor, Reached::MeshLimit, Reached::GivenMesh];
@@ -174,6 +189,7 @@ pub fn branch(seed: u64, name: &str, n_points: usize) -> Branch {
         events,
         ends,
         profiles,
+        of: Solutions::Cycles,
     }
 }
 
@@ -194,6 +210,7 @@ pub fn all_bits(branch: &Branch) -> Vec<u64> {
         all.extend([p.value, p.period, p.distance, p.trivial_defect, p.liouville_defect, p.profile_error]);
         all.extend(p.maxima.iter().chain(&p.minima).chain(&p.means).chain(&p.spreads));
         all.extend(p.multipliers.iter().flat_map(|m| [m.log_modulus, m.angle]));
+        all.extend(p.eigenvalues.iter().flat_map(|value| [value.re, value.im]));
         all.extend(p.unresolved.iter().flat_map(|u| [u.below, u.log_sum]));
     }
     for e in &branch.events {
