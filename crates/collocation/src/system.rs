@@ -111,7 +111,7 @@ impl From<Singular> for Fault {
     }
 }
 
-/// A variation (v, S) of a cycle and the multipliers psi of the rows: what the gradient of a test function needs.
+/// A variation (v, S, q) of a cycle and the multipliers psi of the rows: what the gradient of a test function needs.
 #[derive(Clone, Copy, Debug)]
 pub struct Variation<'a> {
     /// Left vector over all interval rows, N R numbers.
@@ -120,6 +120,8 @@ pub struct Variation<'a> {
     pub nodes: &'a [f64],
     /// Variation of the period.
     pub period: f64,
+    /// Variation of the free parameter.
+    pub parameter: f64,
 }
 
 /// The discretised problem on one mesh. Life cycle: [`System::set_mesh`], then [`System::linearise`] at an
@@ -444,8 +446,8 @@ impl System {
         }
     }
 
-    /// Row of `-d/dz (psi^T M_z (v, S))` at the last linearisation, M (v, S) being the rows
-    /// `Sum L'_j v_j - h T A v - h S f`: the exact derivative of a bordered test function (Govaerts 2000, SIAM,
+    /// Row of `-d/dz (psi^T M_z (v, S, q))` at the last linearisation, M (v, S, q) being the rows
+    /// `Sum L'_j v_j - h T A v - h S f - h T q f_p`: the exact derivative of a bordered test function (Govaerts 2000, SIAM,
     /// sec. 4.3) by one reverse sweep of the field.
     pub fn variation_gradient(&mut self, variation: Variation<'_>, out: &mut Row) {
         let (n, m, points) = (self.n(), self.tables.degree, self.points());
@@ -456,7 +458,8 @@ impl System {
             }
         }
         let batch = Batch { len: points, time: &[], states: &self.states, parameters: &self.spec.parameters };
-        let direction = Direction { states: &self.variation_points, columns: &[] };
+        let along = vec![variation.parameter; if variation.parameter == 0.0 { 0 } else { points }];
+        let direction = Direction { states: &self.variation_points, columns: &along };
         let gradient = Gradient { states: &mut self.gradient_states, columns: &mut self.gradient_columns };
         self.evaluator.second_gradient(batch, &self.psi_points, direction, gradient);
         out.nodes.fill(0.0);
@@ -477,7 +480,9 @@ impl System {
             }
             for a in 0..n {
                 let psi = self.psi_points[a * points + point];
-                out.parameter += h * variation.period * psi * self.free_column[a * points + point];
+                let product = h * psi * self.free_column[a * points + point];
+                out.parameter += variation.period * product;
+                out.period += variation.parameter * product;
             }
             for j in 0..size {
                 let value = self.tables.value[k * size + j];
@@ -512,6 +517,25 @@ impl System {
         let at = Batch { len, time: &[], states: &self.states, parameters: &self.spec.parameters };
         let v = Direction { states: &self.variation_points, columns: &[] };
         self.evaluator.third(at, [v, v, v], &mut self.gradient_states)?;
+        by_point(n, &self.gradient_states, out);
+        Ok(())
+    }
+
+    /// `D^3 f[u, v, w]` at all Gauss points, as [`System::quadratic`].
+    ///
+    /// # Errors
+    /// [`NotProvided`] by a field without third derivatives.
+    pub fn trilinear(&mut self, [u, v, w]: [&[f64]; 3], out: &mut [f64]) -> Result<(), NotProvided> {
+        let (n, len) = (self.n(), self.points());
+        to_points(self.tables, n, u, &mut self.psi_points);
+        to_points(self.tables, n, v, &mut self.variation_points);
+        // Asked at located events only, so the third direction may have storage of its own.
+        let mut third = vec![0.0; n * len];
+        to_points(self.tables, n, w, &mut third);
+        let at = Batch { len, time: &[], states: &self.states, parameters: &self.spec.parameters };
+        let along = |states| Direction { states, columns: &[] };
+        let directions = [along(&self.psi_points[..]), along(&self.variation_points[..]), along(&third[..])];
+        self.evaluator.third(at, directions, &mut self.gradient_states)?;
         by_point(n, &self.gradient_states, out);
         Ok(())
     }

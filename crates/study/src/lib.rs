@@ -22,8 +22,11 @@
 
 mod ahead;
 mod approach;
+mod beyond;
 mod branch;
 mod cascade;
+mod crossing_event;
+mod crossings;
 mod ends;
 mod equilibrium_births;
 mod equilibrium_branch;
@@ -45,11 +48,13 @@ mod settings;
 mod start;
 mod step_events;
 mod study;
+mod torus_event;
 mod trace;
 mod valley;
 mod walk;
 mod words;
 
+pub use beyond::beyond;
 pub use error::{ErrorClass, StudyError};
 pub use file::{DEFAULT_ACCURACY, Follow, MeshOverride, Pursue, Start, StrideOverride, StudyFile, Values};
 pub use progress::{Observer, Progress, Silent};

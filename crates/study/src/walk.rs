@@ -8,6 +8,7 @@ use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_FOLD};
 
 use crate::ahead::Ahead;
 use crate::approach::{Approach, Known, Past, approach, approach_of_stuck, orbit_stands, resolved};
+use crate::crossing_event::mirror_image;
 use crate::ends::{
     Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short, stuck_at_rest,
 };
@@ -196,7 +197,8 @@ impl Walker<'_, '_> {
 
     /// Whether a shorter stride may tell more of what happens in a step.
     fn is_doubtful(&mut self, before: &CycleStation, after: &CycleStation) -> bool {
-        let explained = !is_sure(after) || Change::between(&self.account, after).is_explained();
+        let change = Change::between(&self.account, after);
+        let explained = !is_sure(after) || change.is_explained() || change.may_cross();
         !explained
             || self.may_hide(before, after)
             || leaps(before, after, self.foretold(before, after))
@@ -234,7 +236,7 @@ impl Walker<'_, '_> {
     fn judge(&mut self, step: &Step, after: CycleStation) -> Taken {
         let (problem, _, _) = self.follower.parts();
         let sure = is_sure(&after);
-        let on_edge = matches!(step.landing, Some(Landing::Edge(_))) && !sure && is_off_folds(&after);
+        let on_edge = matches!(step.landing, Some(Landing::Edge(_))) && is_off_folds(&after);
         let mut found = Vec::new();
         if sure || on_edge {
             let findings = events_of_step(problem, (&self.account, &after), self.earlier.as_ref(), self.plan);
@@ -314,8 +316,12 @@ impl Walker<'_, '_> {
         let doubles = found.iter().any(|event| event.kind == EventKind::Doubling);
         let (problem, _, _) = self.follower.parts();
         for event in found {
+            let mirror = mirror_image(self.plan.study, &event);
             self.sink.event(problem, &event);
             self.walk.events.push(event);
+            if let Some(ended) = mirror {
+                return Taken::Ended(ended);
+            }
         }
         let Ok(mut point) = problem.describe(&after.point, self.plan.turns, self.plan.sign * after.distance) else {
             return Taken::NoMultipliers;
