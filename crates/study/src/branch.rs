@@ -19,6 +19,7 @@ use crate::ends::{end, short};
 use crate::equilibrium_branch;
 use crate::error::StudyError;
 use crate::joins::{Atlas, Followed};
+use crate::late_folds::tell;
 use crate::prediction::{Estimate, next_doubling};
 use crate::progress::{Observer, Progress};
 use crate::settings::follow_settings;
@@ -351,6 +352,7 @@ pub(crate) fn finish(
         .collect();
     let (points, cycles): (Vec<Point>, _) = walked.into_iter().map(|walked| (walked.point, walked.cycle)).unzip();
     let followed = Followed::of(&lineage.name, &points, cycles);
+    tell(&mut events, &points, run.study.range.1 - run.study.range.0);
     run.observer.notice(Progress::Finished { name: &lineage.name, points: points.len() });
     let branch = branch_record(run.study, lineage, Parts { points, events, ends, profiles });
     Ok(Finished { branch, births, followed, problem: Parent::Cycles(Box::new(problem)) })

@@ -39,6 +39,7 @@ mod file;
 mod guards;
 mod hidden;
 mod joins;
+mod late_folds;
 mod ledger;
 mod near_miss;
 mod prediction;

@@ -10,6 +10,7 @@ use armilla_stability::{
 use crate::crossing_event::{self, Looked, Met};
 use crate::guards::smooth_values;
 use crate::hidden::beside;
+use crate::late_folds::PASSES_ONE;
 use crate::ledger::{Change, Part, Whole, narrowed, parts, stands_on};
 use crate::torus_event::{self, REAL};
 use crate::valley::valley;
@@ -188,7 +189,12 @@ fn events_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, 
     let change = part.change;
     if change.may_cross() {
         match crossing_event::between(problem, (&part.before, &part.after), plan) {
-            Looked::Found(found) => return findings.found.push(*found),
+            Looked::Found(found) => {
+                // The parameter goes on at such a crossing: where it turns all the same, a fold lies beside.
+                let beside = change.turns && found.kind == EventKind::Transcritical;
+                findings.found.extend(beside.then(|| fold_beside(problem, part, &found.point, plan)).flatten());
+                return findings.found.push(*found);
+            }
             Looked::Gap => {
                 findings.jumped = true;
                 return;
@@ -202,6 +208,24 @@ fn events_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, 
         return;
     }
     rest_of_part(problem, part, plan, findings);
+}
+
+/// The fold of a part in which another branch crosses, too, at a given cycle; none where the two are too near to be told apart.
+fn fold_beside(problem: &mut CycleProblem, part: &Part, crossing: &CyclePoint, plan: &WalkPlan<'_>) -> Option<Found> {
+    /// Halvings of the part until the crossing lies outside: they take any stride to what cycles are known to.
+    const HALVINGS: usize = 40;
+    let (mut low, mut high) = (part.before.clone(), part.after.clone());
+    let fold = |station: &CycleStation| station.watch.values[WATCH_FOLD].value;
+    for _ in 0..HALVINGS {
+        let share = problem.share_of((&low, &high), crossing);
+        if !(0.0..=1.0).contains(&share) {
+            let change = Change::between(&low, &high);
+            return Some(located(problem, CriticalKind::Fold, &Part { before: low, after: high, change }, plan));
+        }
+        let middle = problem.between(&low, &high, 0.5)?;
+        if fold(&middle) * fold(&low) < 0.0 { high = middle } else { low = middle }
+    }
+    None
 }
 
 /// The events of a part but crossings that are located.
@@ -388,11 +412,7 @@ fn remaining_change(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>
         Some(mu) if change == 2 && is_pair(mu.angle) => {
             (EventKind::Torus, Some(mu.angle.abs()), "located by bisection of the unstable count")
         }
-        Some(mu) if change == 1 && mu.angle == 0.0 => (
-            EventKind::Branching,
-            Some(0.0),
-            "a multiplier passes +1 without a fold; located by bisection, kind not decided, crossing branch not followed",
-        ),
+        Some(mu) if change == 1 && mu.angle == 0.0 => (EventKind::Branching, Some(0.0), PASSES_ONE),
         Some(mu) if change == 2 => (
             EventKind::Unresolved,
             Some(if mu.angle.abs() < 1.0 { 0.0 } else { std::f64::consts::PI }),
