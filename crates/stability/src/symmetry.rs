@@ -35,6 +35,8 @@ pub struct Parity {
 
 /// Pairings tried at most: states that cannot be told from each other have exponentially many.
 const CANDIDATES: usize = 64;
+/// States up to which all signed involutions are tried: six have 1383.
+const MOST_STATES: usize = 6;
 /// Samples of a cycle over its period, for courses to be compared.
 const SAMPLES: usize = 64;
 /// Relative difference of two courses beyond which they are not the same: cycles are known much better.
@@ -45,6 +47,16 @@ const TRIALS: usize = 8;
 const ROUNDOFF: f64 = 1e-10;
 
 impl Symmetry {
+    /// The cycle that a cycle is carried to, at the same parameter value.
+    pub fn image_of(&self, cycle: &CyclePoint) -> CyclePoint {
+        let mut image = cycle.clone();
+        let n = self.image.len();
+        for (out, x) in image.unknowns.nodes.chunks_exact_mut(n).zip(cycle.unknowns.nodes.chunks_exact(n)) {
+            self.apply(x, out);
+        }
+        image
+    }
+
     /// State i of `S x`.
     fn apply(&self, x: &[f64], out: &mut [f64]) {
         for (out, (index, sign)) in out.iter_mut().zip(&self.image) {
@@ -59,17 +71,36 @@ impl CycleProblem {
         self.symmetries(point).next()
     }
 
+    /// Signed permutations of order two that carry solutions of the model into solutions, whether they leave any cycle as it
+    /// is or not. Up to [`MOST_STATES`] states all are tried, beyond that only the change of every sign.
+    pub fn mirrors(&self, point: &CyclePoint) -> Vec<Symmetry> {
+        let n = self.metric.scales.len();
+        let candidates = if n <= MOST_STATES {
+            Pairing::all(&vec![vec![[true; 2]; n]; n], usize::MAX)
+        } else {
+            vec![(0..n).map(|i| (i, -1.0)).collect()]
+        };
+        let (parameters, states_of) = (self.parameters_at(point), self.box_of_states(point));
+        let symmetries = candidates.into_iter().map(|image| Symmetry { image, half_period: false });
+        symmetries.filter(|s| is_equivariant(self.spec.field.as_ref(), &parameters, &states_of, s)).collect()
+    }
+
+    /// Means and sizes of the states.
+    fn box_of_states(&self, point: &CyclePoint) -> Vec<(f64, f64)> {
+        self.profile(point).means().into_iter().zip(self.metric.scales.iter().copied()).collect()
+    }
+
     /// All symmetries found.
     fn symmetries(&self, point: &CyclePoint) -> impl Iterator<Item = Symmetry> {
         let parameters = self.parameters_at(point);
         let found = [true, false].into_iter().flat_map(move |half_period| {
             let alike = self.courses(point, if half_period { 0.5 } else { 0.0 });
-            let candidates = Pairing::all(&alike).into_iter().map(move |image| Symmetry { image, half_period });
+            let candidates =
+                Pairing::all(&alike, CANDIDATES).into_iter().map(move |image| Symmetry { image, half_period });
             candidates.collect::<Vec<_>>()
         });
         let field = self.spec.field.clone();
-        let means = self.profile(point).means();
-        let box_of_states: Vec<(f64, f64)> = means.into_iter().zip(self.metric.scales.iter().copied()).collect();
+        let box_of_states = self.box_of_states(point);
         found.filter(move |symmetry| is_equivariant(field.as_ref(), &parameters, &box_of_states, symmetry))
     }
 
@@ -133,18 +164,19 @@ struct Pairing<'a> {
     alike: &'a [Vec<[bool; 2]>],
     image: Vec<Option<(usize, f64)>>,
     found: Vec<Vec<(usize, f64)>>,
+    most: usize,
 }
 
 impl<'a> Pairing<'a> {
-    /// All involutions but the identity that the courses allow, up to [`CANDIDATES`].
-    fn all(alike: &'a [Vec<[bool; 2]>]) -> Vec<Vec<(usize, f64)>> {
-        let mut pairing = Pairing { alike, image: vec![None; alike.len()], found: Vec::new() };
+    /// All involutions but the identity that the courses allow, up to `most`.
+    fn all(alike: &'a [Vec<[bool; 2]>], most: usize) -> Vec<Vec<(usize, f64)>> {
+        let mut pairing = Pairing { alike, image: vec![None; alike.len()], found: Vec::new(), most };
         pairing.complete(0);
         pairing.found
     }
 
     fn complete(&mut self, from: usize) {
-        if self.found.len() >= CANDIDATES {
+        if self.found.len() >= self.most {
             return;
         }
         let Some(i) = (from..self.image.len()).find(|i| self.image[*i].is_none()) else {
@@ -219,13 +251,15 @@ mod tests {
     fn pairings_are_involutions() {
         let no = [false; 2];
         let lorenz = vec![vec![[false, true], no, no], vec![no, [false, true], no], vec![no, no, [true, false]]];
-        assert_eq!(Pairing::all(&lorenz), [vec![(0, -1.0), (1, -1.0), (2, 1.0)]]);
+        assert_eq!(Pairing::all(&lorenz, CANDIDATES), [vec![(0, -1.0), (1, -1.0), (2, 1.0)]]);
         let at_rest = vec![vec![[true, false], no], vec![no, [true, true]]];
-        assert_eq!(Pairing::all(&at_rest), [vec![(0, 1.0), (1, -1.0)]]);
+        assert_eq!(Pairing::all(&at_rest, CANDIDATES), [vec![(0, 1.0), (1, -1.0)]]);
         let twins = vec![vec![[true, false]; 2]; 2];
-        assert_eq!(Pairing::all(&twins), [vec![(1, 1.0), (0, 1.0)]]);
+        assert_eq!(Pairing::all(&twins, CANDIDATES), [vec![(1, 1.0), (0, 1.0)]]);
+        // Signed involutions of six letters without the identity: 2^6 + 15 2^5 + 45 2^4 + 15 2^3 - 1.
+        assert_eq!(Pairing::all(&vec![vec![[true, true]; 6]; 6], usize::MAX).len(), 1383);
         // Many states that cannot be told from each other do not take for ever.
         let many = vec![vec![[true, true]; 50]; 50];
-        assert_eq!(Pairing::all(&many).len(), CANDIDATES);
+        assert_eq!(Pairing::all(&many, CANDIDATES).len(), CANDIDATES);
     }
 }

@@ -112,7 +112,9 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         };
         points_left = run.points_left;
         leave_out_known(&mut finished, &traced.branches, &mut queue);
-        atlas.add(std::mem::take(&mut finished.followed));
+        if let Parent::Cycles(problem) = &finished.problem {
+            atlas.add(std::mem::take(&mut finished.followed), problem);
+        }
         drop_other_end(study, &lineage, &mut finished.branch, &mut queue);
         drop_born_here(study, &mut finished.branch, &mut queue);
         let met = crossings.sift(study, &mut finished);

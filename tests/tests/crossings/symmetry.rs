@@ -1,6 +1,6 @@
 //! Symmetries of order two found on cycles.
 
-use armilla_record::EventKind;
+use armilla_record::{Branch, EndReason, EventKind};
 use armilla_tests::{branch, job};
 
 fn start_note(model: &str, fields: &str) -> String {
@@ -45,4 +45,31 @@ fn nothing_is_called_symmetric_that_is_not() {
     ] {
         assert_eq!(start_note(model, fields), "", "{model}");
     }
+}
+
+/// Exact: Lorenz's equations are unchanged by (x, y, z) -> (-x, -y, z), which exchanges the two arms of the pitchfork at
+/// r = 1, their Hopf points at r = 470/19 and the cycles born there.
+#[test]
+fn mirror_images_of_cycles_are_computed_once() {
+    let traced = job(
+        "lorenz",
+        r#"set: {"r": 0.8}, start: Equilibrium(near: {"x": 0.0, "y": 0.0, "z": 0.0}), follow: (parameter: "r", from: 0.5, to: 30.0)"#,
+    );
+    assert!(traced.shortfalls.is_empty(), "{:?}", traced.shortfalls);
+    let twins: Vec<&Branch> =
+        traced.branches.iter().filter(|branch| branch.name.starts_with("a.pitchfork1.hopf")).collect();
+    let joins = |branch: &&&Branch| matches!(&branch.ends.1.reason, EndReason::Joins { .. });
+    assert_eq!(twins.len(), 2);
+    let (short, long) =
+        (twins.iter().find(joins).expect("one joins"), twins.iter().find(|b| !joins(b)).expect("one does not"));
+    assert_eq!(short.ends.1.reason, EndReason::Joins { branch: long.name.clone() });
+    assert!(
+        short
+            .ends
+            .1
+            .words
+            .starts_with(&format!("joins the mirror image (x -> -x, y -> -y) of `{}` at r = ", long.name))
+    );
+    assert!(short.points.len() <= 5 && long.points.len() > 20, "{} and {}", short.points.len(), long.points.len());
+    assert_eq!(long.ends.1.reason, EndReason::PeriodBlowUp, "{}", long.ends.1.words);
 }
