@@ -66,6 +66,8 @@ enum Claim {
     Value(&'static str, &'static str, Source),
     /// The period at an event.
     Period(Place, &'static str, Source),
+    /// The angle of rotation at a torus point.
+    Angle(&'static str, &'static str, Source),
     /// A cycle of a branch; the curve is that of a point.
     Cycle(&'static str, Kept, Box<dyn Fn(&Point) -> Curve>, Source),
     /// The cycle of a branch at an edge of the range, by the same study with [`FINEST`].
@@ -103,6 +105,11 @@ impl Run {
     /// The period at an event.
     fn period(self, event: &'static str, digits: &'static str, source: Source) -> Self {
         self.claim(Claim::Period(Place::Named(event), digits, source))
+    }
+
+    /// The angle at a torus point.
+    fn angle(self, event: &'static str, digits: &'static str, source: Source) -> Self {
+        self.claim(Claim::Angle(event, digits, source))
     }
 
     /// The period on a branch at a value.
@@ -146,6 +153,11 @@ impl Run {
                 let event = found(traced, *place, self.case);
                 let row = self.number(event.period, digits, *source);
                 Row { number: format!("period at {}", named(event)), reported: event.period_error, ..row }
+            }
+            Claim::Angle(name, digits, source) => {
+                let event = found(traced, Place::Named(name), self.case);
+                let row = self.number(event.angle.expect("an angle"), digits, *source);
+                Row { number: format!("angle at {}", named(event)), reported: angle_error(event), ..row }
             }
             Claim::Cycle(name, which, curve, source) => {
                 let (point, profile) = kept(crate::branch(traced, name), *which);
@@ -201,6 +213,12 @@ fn named(event: &Event) -> String {
         EventKind::Start | EventKind::Target | EventKind::Edge => format!("{} ({})", event.name, event.value),
         _ => event.name.clone(),
     }
+}
+
+/// The error of an angle, which stands in the note.
+fn angle_error(event: &Event) -> Option<f64> {
+    let (error, _) = event.note.strip_prefix("angle known to ")?.split_once(';')?;
+    error.parse().ok()
 }
 
 fn found<'a>(traced: &'a Traced, place: Place, case: &str) -> &'a Event {

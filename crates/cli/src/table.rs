@@ -77,6 +77,9 @@ pub fn closing(branches: &[Branch]) -> String {
         let points = branch.points.len();
         text.push_str(&format!("branch {}{what}: {points} points, {stable} of them stable\n", branch.name));
         text.push_str(&format!("  one end: {}\n  other end: {}\n", branch.ends.0.words, branch.ends.1.words));
+        for (event, sentence) in armilla_study::beyond(branch) {
+            text.push_str(&format!("  beyond {event}: {sentence}\n"));
+        }
         text.extend(not_resolved(branch));
     }
     text

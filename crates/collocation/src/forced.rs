@@ -15,8 +15,9 @@ pub struct Forced {
 }
 
 impl System {
-    /// Period of the cycles and its slope in the free parameter, for a value of that; none without a forcing.
-    pub fn forced_period(&self, parameter: f64) -> Option<[f64; 2]> {
+    /// Period of the cycles and its first two derivatives in the free parameter, for a value of that; none without a
+    /// forcing.
+    pub fn forced_period(&self, parameter: f64) -> Option<[f64; 3]> {
         let forced = self.forced()?;
         let spec = self.spec();
         let mut parameters = spec.parameters.clone();
@@ -30,23 +31,30 @@ impl System {
     pub fn phase_corner(&self) -> [f64; 2] {
         let spec = self.spec();
         match self.forced_period(spec.parameters[spec.free]) {
-            Some([_, slope]) => [1.0, -slope].map(|entry| entry / spec.metric.period_scale),
+            Some([_, slope, _]) => [1.0, -slope].map(|entry| entry / spec.metric.period_scale),
             None => [0.0; 2],
         }
+    }
+
+    /// Derivative of the second entry of [`System::phase_corner`] in the parameter, with the sign turned: `k P''/T0`.
+    pub fn phase_bend(&self) -> f64 {
+        let spec = self.spec();
+        let period = self.forced_period(spec.parameters[spec.free]);
+        period.map_or(0.0, |[_, _, bend]| bend / spec.metric.period_scale)
     }
 
     /// What the row that fixes the phase lacks at an iterate: `Int <r - u, W r'> dt` for the phase row and the reference r,
     /// `(k P(p) - T) / T0` under a forcing.
     pub fn phase_gap(&self, at: &Iterate, (row, reference): (&[f64], &[f64])) -> f64 {
         match self.forced_period(at.parameter) {
-            Some([period, _]) => (period - at.period) / self.spec().metric.period_scale,
+            Some([period, ..]) => (period - at.period) / self.spec().metric.period_scale,
             None => row.iter().zip(at.nodes.iter().zip(reference)).map(|(p, (u, r))| p * (r - u)).sum(),
         }
     }
 
     /// Gives an iterate the period that the forcing has at its parameter: no rounding of a correction is left in it.
     pub fn keep_time(&self, at: &mut Iterate) {
-        if let Some([period, _]) = self.forced_period(at.parameter) {
+        if let Some([period, ..]) = self.forced_period(at.parameter) {
             at.period = period;
         }
     }

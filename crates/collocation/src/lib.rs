@@ -57,8 +57,8 @@ pub use mesh::{
 };
 pub use metric::Metric;
 pub use newton::{
-    Closing, Failure, Iteration, LinearClosing, NewtonSettings, Report, Scalar, Task, Workspace, correct, correct_with,
-    roundoff,
+    Closing, Failure, Iteration, LinearClosing, NewtonSettings, Report, Scalar, Task, Verdict, Workspace, correct,
+    correct_with, judge, roundoff,
 };
 pub use system::{Fault, Iterate, Row, System, SystemSpec, Variation};
 pub use tables::{DEGREES, Tables};

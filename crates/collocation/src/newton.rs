@@ -146,6 +146,15 @@ pub fn correct(
 /// state far from zero that hardly moves cannot be had to more digits. A conditioning of a hundred is allowed for.
 const FLOOR_UNITS: f64 = 100.0;
 
+impl NewtonSettings {
+    /// The same with a floor that allows for the rounding of these node values.
+    #[must_use]
+    pub fn for_nodes(self, system: &System, nodes: &[f64]) -> Self {
+        let floor = FLOOR_UNITS * f64::EPSILON * system.spec().metric.largest(nodes);
+        Self { floor: self.floor.max(floor), ..self }
+    }
+}
+
 /// What [`correct_with`] is to do.
 pub struct Task<'a> {
     /// Node values of the phase condition.
@@ -166,8 +175,7 @@ pub fn correct_with(
     at: &mut Iterate,
     task: Task<'_>,
 ) -> Result<Report, Failure> {
-    let mut settings = task.settings;
-    settings.floor = settings.floor.max(FLOOR_UNITS * f64::EPSILON * system.spec().metric.largest(&at.nodes));
+    let settings = task.settings.for_nodes(system, &at.nodes);
     workspace.fit(system);
     system.phase_row(task.reference, &mut workspace.phase);
     let mut report = Report { floor: settings.floor, ..Report::default() };
@@ -207,7 +215,9 @@ pub struct Iteration {
     pub closing_residual: f64,
 }
 
-enum Verdict {
+/// What is to become of a correction.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Verdict {
     /// Apply and go on.
     Go,
     /// Apply: the error left is below the tolerance.
@@ -223,7 +233,8 @@ enum Verdict {
 /// more often.
 const CURVATURE: f64 = 10.0;
 
-fn judge(size: f64, before: Option<f64>, settings: NewtonSettings) -> Verdict {
+/// Judges a correction by its scaled size and that of the one before; for callers with a loop of their own.
+pub fn judge(size: f64, before: Option<f64>, settings: NewtonSettings) -> Verdict {
     /// A correction that shrinks by less than this is no convergence.
     const SLOWEST: f64 = 0.9;
     if !size.is_finite() {
@@ -263,8 +274,14 @@ pub enum Scalar {
 /// system's last factors.
 pub fn roundoff(bordered: &mut Bordered, system: &System, scalar: Scalar, closing: f64) -> f64 {
     let asked = if scalar == Scalar::Period { [1.0, 0.0] } else { [0.0, 1.0] };
+    roundoff_of(bordered, system, (&[], asked), closing)
+}
+
+/// [`roundoff`] of a linear functional of the unknowns: its part over the nodes (empty for none), and over period and
+/// parameter.
+fn roundoff_of(bordered: &mut Bordered, system: &System, (nodes, scalars): (&[f64], [f64; 2]), closing: f64) -> f64 {
     let (mut psi, mut chi) = (vec![0.0; system.shape().core_len()], [0.0; 2]);
-    bordered.solve_transposed(system.cyclic(), &[], &asked, &mut psi, &mut chi);
+    bordered.solve_transposed(system.cyclic(), nodes, &scalars, &mut psi, &mut chi);
     let mut sizes = vec![0.0; psi.len()];
     system.row_sizes(&mut sizes);
     let sum: f64 = psi.iter().zip(&sizes).map(|(psi, size)| (psi * size).powi(2)).sum();
@@ -275,6 +292,12 @@ impl Workspace {
     /// [`roundoff`] after [`correct_with`] has converged on the system's mesh; 0 before any correction.
     pub fn roundoff(&mut self, system: &System, scalar: Scalar, closing: f64) -> f64 {
         self.bordered.as_mut().map_or(0.0, |bordered| roundoff(bordered, system, scalar, closing))
+    }
+
+    /// Roundoff of a linear functional of the unknowns, as [`Workspace::roundoff`].
+    pub fn roundoff_along(&mut self, system: &System, row: &Row, closing: f64) -> f64 {
+        let asked = (&row.nodes[..], [row.period, row.parameter]);
+        self.bordered.as_mut().map_or(0.0, |bordered| roundoff_of(bordered, system, asked, closing))
     }
 
     /// One Newton iteration with a full step, applied to `at` whatever its size; no allocation once sized. For callers

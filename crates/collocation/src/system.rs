@@ -115,7 +115,7 @@ impl From<Singular> for Fault {
     }
 }
 
-/// A variation (v, S) of a cycle and the multipliers psi of the rows: what the gradient of a test function needs.
+/// A variation (v, S, q) of a cycle and the multipliers psi of the rows: what the gradient of a test function needs.
 #[derive(Clone, Copy, Debug)]
 pub struct Variation<'a> {
     /// Left vector over all interval rows, N R numbers.
@@ -124,6 +124,8 @@ pub struct Variation<'a> {
     pub nodes: &'a [f64],
     /// Variation of the period.
     pub period: f64,
+    /// Variation of the free parameter.
+    pub parameter: f64,
 }
 
 /// The discretised problem on one mesh. Life cycle: [`System::set_mesh`], then [`System::linearise`] at an
@@ -508,8 +510,22 @@ impl System {
         }
     }
 
-    /// Row of `-d/dz (psi^T M_z (v, S))` at the last linearisation, M (v, S) being the rows
-    /// `Sum L'_j v_j - h T A v - h S f`: the exact derivative of a bordered test function (Govaerts 2000, SIAM,
+    /// Part of a variation along the columns of the evaluator at all Gauss points: the parameter, and under a forcing the
+    /// time `S tau`, which the period moves. Empty where there is none.
+    fn along_columns(&self, variation: Variation<'_>) -> Vec<f64> {
+        let points = self.points();
+        if variation.parameter == 0.0 && (self.forced.is_none() || variation.period == 0.0) {
+            return Vec::new();
+        }
+        let mut along = vec![variation.parameter; points];
+        if self.spec.field.is_forced() {
+            along.extend(self.times.iter().map(|time| variation.period * time / self.period));
+        }
+        along
+    }
+
+    /// Row of `-d/dz (psi^T M_z (v, S, q))` at the last linearisation, M (v, S, q) being the rows
+    /// `Sum L'_j v_j - h T A v - h S f - h T q f_p`: the exact derivative of a bordered test function (Govaerts 2000, SIAM,
     /// sec. 4.3) by one reverse sweep of the field.
     pub fn variation_gradient(&mut self, variation: Variation<'_>, out: &mut Row) {
         let (n, m, points) = (self.n(), self.tables.degree, self.points());
@@ -520,7 +536,8 @@ impl System {
             }
         }
         let batch = Batch { len: points, time: &self.times, states: &self.states, parameters: &self.spec.parameters };
-        let direction = Direction { states: &self.variation_points, columns: &[] };
+        let along = self.along_columns(variation);
+        let direction = Direction { states: &self.variation_points, columns: &along };
         let gradient = Gradient { states: &mut self.gradient_states, columns: &mut self.gradient_columns };
         self.evaluator.second_gradient(batch, &self.psi_points, direction, gradient);
         out.nodes.fill(0.0);
@@ -545,7 +562,15 @@ impl System {
             }
             for a in 0..n {
                 let psi = self.psi_points[a * points + point];
-                out.parameter += h * variation.period * psi * self.free_column[a * points + point];
+                let product = h * psi * self.free_column[a * points + point];
+                out.parameter += variation.period * product;
+                out.period += variation.parameter * product;
+                if self.forced.is_some() {
+                    // From the rate and from its factor T: `h S tau f_t` each.
+                    let share = self.times[point] / self.period;
+                    let by_time = h * psi * self.free_column[(n + a) * points + point];
+                    out.period += 2.0 * variation.period * share * by_time;
+                }
             }
             for j in 0..size {
                 let value = self.tables.value[k * size + j];
@@ -584,6 +609,25 @@ impl System {
         Ok(())
     }
 
+    /// `D^3 f[u, v, w]` at all Gauss points, as [`System::quadratic`].
+    ///
+    /// # Errors
+    /// [`NotProvided`] by a field without third derivatives.
+    pub fn trilinear(&mut self, [u, v, w]: [&[f64]; 3], out: &mut [f64]) -> Result<(), NotProvided> {
+        let (n, len) = (self.n(), self.points());
+        to_points(self.tables, n, u, &mut self.psi_points);
+        to_points(self.tables, n, v, &mut self.variation_points);
+        // Asked at located events only, so the third direction may have storage of its own.
+        let mut third = vec![0.0; n * len];
+        to_points(self.tables, n, w, &mut third);
+        let at = Batch { len, time: &self.times, states: &self.states, parameters: &self.spec.parameters };
+        let along = |states| Direction { states, columns: &[] };
+        let directions = [along(&self.psi_points[..]), along(&self.variation_points[..]), along(&third[..])];
+        self.evaluator.third(at, directions, &mut self.gradient_states)?;
+        by_point(n, &self.gradient_states, out);
+        Ok(())
+    }
+
     /// `A v` at all Gauss points, as [`System::quadratic`].
     pub fn linear(&mut self, v: &[f64], out: &mut [f64]) {
         let (n, len) = (self.n(), self.points());
@@ -612,7 +656,7 @@ impl System {
     /// what the change of its period does, `f_p + (f + t f_t) T_p / T`.
     pub fn parameter_rates(&self, out: &mut [f64]) {
         by_point(self.n(), &self.free_column[..self.rates.len()], out);
-        let Some([_, slope]) = self.forced_period(self.spec.parameters[self.spec.free]) else { return };
+        let Some([_, slope, _]) = self.forced_period(self.spec.parameters[self.spec.free]) else { return };
         let (n, points) = (self.n(), self.points());
         for point in 0..points {
             for a in 0..n {

@@ -2,7 +2,8 @@
 //!
 //! One elimination serves everything the cycle problem asks except its spectrum: [`Cyclic`] condenses
 //! each interval and reduces the chain, [`Bordered`] closes it with a factor sigma and k border rows and
-//! columns, and solves or solves transposed as often as asked. The spectrum comes from the sequence of
+//! columns, and solves or solves transposed as often as asked; [`ComplexBordered`] does so with a
+//! complex sigma. The spectrum comes from the sequence of
 //! interval maps, [`PeriodicSchur`]. States of rest ask for [`eigenvalues()`] and for systems of fixed sparsity,
 //! [`Patterned`]. This crate does not know where matrices come from.
 //!
@@ -28,6 +29,7 @@
 
 mod bordered;
 mod chain;
+mod complex;
 mod cyclic;
 mod dense;
 mod eigenvalues;
@@ -37,8 +39,10 @@ mod patterned;
 mod periodic;
 
 pub use bordered::{Bordered, DeterminantSign, Right};
+pub use complex::{ComplexBordered, ComplexVector};
 pub use cyclic::{Cyclic, Shape, Singular};
 pub use dense::Lu;
 pub use eigenvalues::{Eigenvalue, Eigenvalues, eigenvalues};
+pub use nalgebra::Complex;
 pub use patterned::Patterned;
 pub use periodic::{NotConverged, PeriodicSchur, ScaledMultiplier};

@@ -6,7 +6,7 @@
 //! can write.
 
 use nalgebra_sparse::pattern::SparsityPattern;
-use num_dual::{Dual64, DualNum, HyperDual64, HyperHyperDual64};
+use num_dual::{Dual2_64, Dual64, DualNum, HyperDual64, HyperHyperDual64};
 use std::sync::Arc;
 
 use crate::compiled::check_columns;
@@ -78,11 +78,11 @@ impl<R: DualRates> VectorField for CodedField<R> {
         self.rates.is_forced()
     }
 
-    fn forcing_period(&self, parameters: &[f64], along: usize) -> Option<[f64; 2]> {
+    fn forcing_period(&self, parameters: &[f64], along: usize) -> Option<[f64; 3]> {
         let slope = |index: usize| if index == along { 1.0 } else { 0.0 };
-        let numbers = parameters.iter().enumerate().map(|(index, value)| Dual64::new(*value, slope(index)));
+        let numbers = parameters.iter().enumerate().map(|(index, value)| Dual2_64::new(*value, slope(index), 0.0));
         let period = self.rates.forcing_period(&numbers.collect::<Vec<_>>()).filter(|_| self.is_forced())?;
-        Some([period.re, period.eps])
+        Some([period.re, period.v1, period.v2])
     }
 
     fn pattern(&self) -> &SparsityPattern {

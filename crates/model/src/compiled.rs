@@ -10,7 +10,7 @@ use std::sync::{Arc, Mutex, PoisonError};
 
 use nalgebra_sparse::pattern::SparsityPattern;
 
-use num_dual::Dual64;
+use num_dual::Dual2_64;
 
 use crate::derivative::{directional, gradients, reverse_gradient};
 use crate::evaluate::evaluate;
@@ -143,17 +143,17 @@ impl VectorField for CompiledField {
         self.shared.is_forced
     }
 
-    fn forcing_period(&self, parameters: &[f64], along: usize) -> Option<[f64; 2]> {
+    fn forcing_period(&self, parameters: &[f64], along: usize) -> Option<[f64; 3]> {
         let period = self.shared.forcing.filter(|_| self.shared.is_forced)?;
         let value = |variable| match variable {
             Variable::Parameter(index) => {
                 let slope = if index as usize == along { 1.0 } else { 0.0 };
-                Dual64::new(parameters[index as usize], slope)
+                Dual2_64::new(parameters[index as usize], slope, 0.0)
             }
-            _ => Dual64::from(f64::NAN),
+            _ => Dual2_64::from(f64::NAN),
         };
         let found = evaluate(&self.shared.formulas, &[period], value)[0];
-        Some([found.re, found.eps])
+        Some([found.re, found.v1, found.v2])
     }
 
     fn pattern(&self) -> &SparsityPattern {

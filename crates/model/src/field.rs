@@ -83,9 +83,9 @@ pub trait VectorField: Send + Sync {
     fn n_parameters(&self) -> usize;
     /// Whether the rates use the time.
     fn is_forced(&self) -> bool;
-    /// Period P of the forcing for these parameters, and its derivative in the parameter with index `along`; none where
-    /// the rates do not use the time.
-    fn forcing_period(&self, _parameters: &[f64], _along: usize) -> Option<[f64; 2]> {
+    /// Period P of the forcing for these parameters, and its first two derivatives in the parameter with index `along`;
+    /// none where the rates do not use the time.
+    fn forcing_period(&self, _parameters: &[f64], _along: usize) -> Option<[f64; 3]> {
         None
     }
     /// Sparsity of the Jacobian in the states: n rows, n columns, compressed rows.

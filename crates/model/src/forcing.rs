@@ -86,7 +86,7 @@ impl Model {
     /// # Panics
     /// If the number of parameters is not that of the model.
     pub fn check_forcing(&self, parameters: &[f64]) -> Result<(), ForcingFault> {
-        let Some([period, _]) = self.field.forcing_period(parameters, 0) else { return Ok(()) };
+        let Some([period, ..]) = self.field.forcing_period(parameters, 0) else { return Ok(()) };
         if !(period.is_finite() && period > 0.0) {
             return Err(ForcingFault::Period { period });
         }

@@ -162,11 +162,20 @@ fn end_text(pen: &mut Pen<'_>, end: &End) -> io::Result<()> {
     pen.raw("(")?;
     pen.name("reason")?;
     pen.variant(end.reason.word())?;
-    if let EndReason::Equilibrium { value } = end.reason {
-        pen.raw("(")?;
-        pen.name("value")?;
-        pen.float(value)?;
-        pen.raw(")")?;
+    match &end.reason {
+        EndReason::Equilibrium { value } => {
+            pen.raw("(")?;
+            pen.name("value")?;
+            pen.float(*value)?;
+            pen.raw(")")?;
+        }
+        EndReason::Joins { branch } => {
+            pen.raw("(")?;
+            pen.name("branch")?;
+            pen.text(branch)?;
+            pen.raw(")")?;
+        }
+        _ => {}
     }
     pen.raw(", ")?;
     pen.name("value")?;

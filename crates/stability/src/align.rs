@@ -18,6 +18,12 @@ const SECTIONS: usize = 40;
 const GOLDEN: f64 = 0.618_033_988_749_894_8;
 
 impl CycleProblem {
+    /// Whether two cycles with their parameter values are within a distance of each other in some phase.
+    pub fn is_same_cycle(&self, (a, at): (&Profile, f64), (b, there): (&Profile, f64), within: f64) -> bool {
+        let (a, b) = (CyclePoint::from_profile(a, at), CyclePoint::from_profile(b, there));
+        self.shifted_towards(&a, &b, within).is_some()
+    }
+
     /// `point` shifted in time so that it lies nearest to `to`, on the mesh of `to`; none where they are farther apart than
     /// `within` in any phase.
     pub(crate) fn shifted_towards(&self, point: &CyclePoint, to: &CyclePoint, within: f64) -> Option<CyclePoint> {

@@ -52,6 +52,6 @@ pub(crate) fn forcing_periods(
     if !field.is_forced() {
         return Ok(None);
     }
-    let [forcing, _] = field.forcing_period(parameters, free).ok_or(StartFault::NoForcingPeriod)?;
+    let [forcing, ..] = field.forcing_period(parameters, free).ok_or(StartFault::NoForcingPeriod)?;
     Ok(Some(((period / forcing).round() as usize).max(1)))
 }

@@ -41,6 +41,9 @@
 mod agreement;
 mod align;
 mod copies;
+mod cross;
+mod crossing;
+mod crossing_system;
 mod degenerate;
 mod dip;
 mod equilibrium;
@@ -56,9 +59,14 @@ mod rough;
 mod scale;
 mod spectrum;
 mod switch;
+mod symmetry;
 mod test_function;
+mod torus;
+mod torus_function;
 
 pub use armilla_collocation::{Fault, MapsFault, TooStiff};
+pub use cross::{Crossed, CrossedWay};
+pub use crossing::{CycleCrossing, Estimated, Meeting};
 pub use degenerate::{Degeneracy, Term, degeneracy};
 pub use dip::Dip;
 pub use equilibrium::{
@@ -74,4 +82,7 @@ pub use problem::{
 };
 pub use spectrum::{Spectrum, SpectrumFault, SpectrumSolver};
 pub use switch::{Born, SplitChange, SwitchFault};
+pub use symmetry::{Parity, Symmetry};
 pub use test_function::{CriticalKind, NullVectors, TestFunction};
+pub use torus::{LocatedTorus, TorusForm};
+pub use torus_function::ComplexVectors;

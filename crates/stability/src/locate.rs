@@ -42,7 +42,7 @@ pub struct LocateFault {
 }
 
 /// Halvings of the bracket: 40 take any stride to the shortest.
-const HALVINGS: usize = 40;
+pub(crate) const HALVINGS: usize = 40;
 
 type CycleStation = Station<CyclePoint, CycleTangent>;
 
@@ -88,12 +88,12 @@ impl CycleProblem {
         Some(Located { kind, point, error, period_error, vectors, report, share: 1.0, halvings: 0 })
     }
 
-    fn share(&self, before: &CycleStation, point: &CyclePoint, total: f64) -> f64 {
+    pub(crate) fn share(&self, before: &CycleStation, point: &CyclePoint, total: f64) -> f64 {
         if total > 0.0 { (self.distance(&before.point, point) / total).clamp(0.0, 1.0) } else { 0.0 }
     }
 
     /// Linear interpolation of the stations at the zero of the secant.
-    fn secant_point(&self, index: usize, low: &CycleStation, high: &CycleStation) -> CyclePoint {
+    pub(crate) fn secant_point(&self, index: usize, low: &CycleStation, high: &CycleStation) -> CyclePoint {
         let (a, b) = (low.watch.values[index].value, high.watch.values[index].value);
         let share = if a == b { 0.5 } else { (a / (a - b)).clamp(0.05, 0.95) };
         let first = low.point.on_mesh(high.point.degree, &high.point.mesh);
@@ -117,13 +117,17 @@ impl CycleProblem {
     ) -> Option<(CyclePoint, Report)> {
         let mut point = guess.clone();
         let report = self.augmented(kind, &mut point).ok()?.0;
-        // Between the planes through both stations normal to their tangents: a second event beyond one of them may attract
-        // Newton's method from here.
+        self.is_in_bracket(&point, low, high).then_some((point, report))
+    }
+
+    /// Whether a point found by Newton's method is the event that two stations bracket: between the planes through both
+    /// normal to their tangents, since a second event beyond one of them may attract Newton's method, and near.
+    pub(crate) fn is_in_bracket(&self, point: &CyclePoint, low: &CycleStation, high: &CycleStation) -> bool {
         let length = self.distance(&low.point, &high.point);
         // A chord is shorter than the branch between its ends; twice its length still excludes other branches.
         let near =
-            self.distance(&low.point, &point) <= 2.0 * length && self.distance(&high.point, &point) <= 2.0 * length;
-        (near && self.lies_between(&point, low, high)).then_some((point, report))
+            self.distance(&low.point, point) <= 2.0 * length && self.distance(&high.point, point) <= 2.0 * length;
+        near && self.lies_between(point, low, high)
     }
 
     /// Whether a point lies ahead of one station and behind another, so that it is the event they bracket and not a
@@ -198,8 +202,7 @@ impl CycleProblem {
         let (report, function) = self.augmented(kind, &mut fine)?;
         let size = function.size(&mut self.system);
         // Roundoff first: it refers to what was solved last.
-        let value_rounding = self.rounding(Scalar::Parameter, fine.unknowns.parameter, size);
-        let period_rounding = self.rounding(Scalar::Period, fine.unknowns.period, size);
+        let (value_rounding, period_rounding) = self.rounding_of_scalars(&fine, size);
         let left = self.left_over(coarse, &fine);
         let to_correct = to_correct(&report);
         let value_error = left * (coarse.unknowns.parameter - fine.unknowns.parameter).abs()
@@ -224,6 +227,17 @@ impl CycleProblem {
         let gain = self.estimate(fine).error / before;
         // Written so that NaN leaves all.
         if gain * CANCELLING < 1.0 { gain * CANCELLING } else { 1.0 }
+    }
+
+    /// Roundoff of the parameter and of the period of the last corrected point, `size` as in [`CycleProblem::rounding`].
+    pub(crate) fn rounding_of_scalars(&mut self, point: &CyclePoint, size: f64) -> (f64, f64) {
+        let Iterate { period, parameter, .. } = point.unknowns;
+        (self.rounding(Scalar::Parameter, parameter, size), self.rounding(Scalar::Period, period, size))
+    }
+
+    /// Roundoff of a linear functional of the last corrected point.
+    pub(crate) fn rounding_along(&mut self, row: &Row, closing: f64) -> f64 {
+        ROUNDOFF_MARGIN * self.newton.roundoff_along(&self.system, row, closing)
     }
 
     /// Roundoff of a scalar of the last corrected point: that of the rows and of a closing with terms of size `closing`
@@ -320,17 +334,17 @@ impl CycleProblem {
 /// Both the coarse and the fine value carry roundoff of the estimated size as a standard deviation; four of them cover
 /// the difference and the truth if rows round independently. Twice that, since they need not: on X3 the doubling was
 /// found a little beyond four from its exact place.
-const ROUNDOFF_MARGIN: f64 = 8.0;
+pub(crate) const ROUNDOFF_MARGIN: f64 = 8.0;
 /// Margin of the share that is left of a difference: parts of the error on the coarse mesh may cancel each other, and the
 /// difference is smaller by such a factor then.
 const CANCELLING: f64 = 2.0;
 /// Units in the last place, of the value or of the range of its parameter, for rounding that acts on every row alike and
 /// that the sum of independent errors leaves out: the basis tables are correct to a few units each.
-const COHERENT_UNITS: f64 = 16.0;
+pub(crate) const COHERENT_UNITS: f64 = 16.0;
 
 /// Scaled size of what Newton's method left to correct: nothing to speak of where it went on falling, the last correction
 /// where it had come to stand still, as beside a second event.
-fn to_correct(report: &Report) -> f64 {
+pub(crate) fn to_correct(report: &Report) -> f64 {
     match report.corrections[..] {
         [.., before, last] => last * (last / before).powi(2).min(1.0),
         _ => 0.0,

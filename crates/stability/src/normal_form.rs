@@ -104,12 +104,7 @@ impl CycleProblem {
         system.cubic(&nodes, &mut cvvv).ok()?;
         let periodic = Periodic::new(system, &phase)?;
         let (h, a, phi) = periodic.second_order(system, &bvv, period);
-        // The part of h along the flow is fixed by Int <phi*, h> = 0.
-        let mut h_values = column();
-        system.values(&h, &mut h_values);
-        let along = period * system.pair(&phi, &h_values);
-        let flow = flow_nodes(system, &located.point.unknowns.nodes, period);
-        let h: Vec<f64> = h.iter().zip(&flow).map(|(h, f)| h - along * f).collect();
+        let h = without_flow(system, &h, (&phi, &located.point.unknowns.nodes), period);
         system.quadratic(&nodes, &h, &mut bvh);
         let integrand: Vec<f64> = (0..len).map(|k| cvvv[k] + 3.0 * bvh[k] - 6.0 * a * av[k]).collect();
         let c = period * system.pair(&raw.psi, &integrand) / (6.0 * pairing);
@@ -137,7 +132,8 @@ fn exponent_slope(system: &mut System, located: &Located, phase: &[f64]) -> Opti
     system.values(&raw.nodes, &mut v);
     let by_exponent = located.point.unknowns.period * system.pair(&raw.psi, &v);
     let mut row = Row::zero(phase.len());
-    system.variation_gradient(Variation { psi: &raw.psi, nodes: &raw.nodes, period: 0.0 }, &mut row);
+    let variation = Variation { psi: &raw.psi, nodes: &raw.nodes, period: 0.0, parameter: 0.0 };
+    system.variation_gradient(variation, &mut row);
     let mut bordered = Bordered::new(system.shape(), 2);
     system.period_column(bordered.column_mut(0));
     system.parameter_column(bordered.column_mut(1));
@@ -153,15 +149,24 @@ fn exponent_slope(system: &mut System, located: &Located, phase: &[f64]) -> Opti
     Some(total / by_exponent)
 }
 
+/// h without its part along the flow, fixed by `Int <phi*, h> = 0`; `orbit` are the nodes of the cycle.
+pub(crate) fn without_flow(system: &mut System, h: &[f64], (phi, orbit): (&[f64], &[f64]), period: f64) -> Vec<f64> {
+    let mut values = vec![0.0; system.residual().len()];
+    system.values(h, &mut values);
+    let along = period * system.pair(phi, &values);
+    let flow = flow_nodes(system, orbit, period);
+    h.iter().zip(&flow).map(|(h, f)| h - along * f).collect()
+}
+
 /// The periodic problem bordered by the flow column and the phase row: regular away from folds.
-struct Periodic {
+pub(crate) struct Periodic {
     bordered: Bordered,
     /// Adjoint of the flow times Gauss weights, scaled to `Int <phi*, f> dt = 1` up to the period.
     psi: Vec<f64>,
 }
 
 impl Periodic {
-    fn new(system: &System, phase: &[f64]) -> Option<Self> {
+    pub(crate) fn new(system: &System, phase: &[f64]) -> Option<Self> {
         let shape = system.shape();
         let mut bordered = Bordered::new(shape, 1);
         system.period_column(bordered.column_mut(0));
@@ -174,7 +179,7 @@ impl Periodic {
     }
 
     /// Solves `h' - A h + 2 a f = B`, returns h at the nodes, a, and the scaled adjoint of the flow.
-    fn second_order(mut self, system: &System, b: &[f64], period: f64) -> (Vec<f64>, f64, Vec<f64>) {
+    pub(crate) fn second_order(mut self, system: &System, b: &[f64], period: f64) -> (Vec<f64>, f64, Vec<f64>) {
         let mut right = b.to_vec();
         system.weigh_rows(period, &mut right);
         let mut h = vec![0.0; system.shape().nodes_len()];

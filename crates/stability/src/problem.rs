@@ -396,8 +396,11 @@ impl CycleProblem {
         let ranges = profile.node_ranges();
         self.largest.iter_mut().zip(&ranges).for_each(|(size, range)| *size = size.max(*range));
         // Scales never fall far below the largest size seen: a cycle that shrinks to an equilibrium must get there.
-        let wanted = ranges.iter().zip(&self.largest).map(|(range, largest)| range.max(SHRINK_TO * largest));
-        let wanted: Vec<f64> = wanted.zip(&self.metric.scales).map(|(w, now)| if w > 0.0 { w } else { *now }).collect();
+        // What does not move at all keeps its size: it may move off its place as a whole, as beyond a pitchfork.
+        let scale = |((range, largest), now): ((&f64, &f64), &f64)| {
+            if *range > STILL * largest { range.max(SHRINK_TO * largest) } else { *now }
+        };
+        let wanted: Vec<f64> = ranges.iter().zip(&self.largest).zip(&self.metric.scales).map(scale).collect();
         let far = |now: f64, wanted: f64| now > OUT_OF_SCALE * wanted || wanted > OUT_OF_SCALE * now;
         let changed = far(self.metric.period_scale, profile.period)
             || self.metric.scales.iter().zip(&wanted).any(|(now, wanted)| far(*now, *wanted));

@@ -39,13 +39,13 @@ pub enum SplitChange {
     Gone,
 }
 
-/// Why no doubled cycle was found.
+/// Why no cycle of a new branch was found.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct SwitchFault;
 
 impl std::fmt::Display for SwitchFault {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
-        write!(f, "no doubled cycle was found near the doubling at any amplitude tried")
+        write!(f, "no cycle of the branch born there was found at any amplitude tried")
     }
 }
 
@@ -112,7 +112,7 @@ impl CycleProblem {
 
     /// `fine` carried to a mesh that holds it to the accuracy with less work, if there is one. Each round the estimate comes
     /// from a better mesh, the values from the fine one.
-    fn own_mesh(&mut self, fine: &CyclePoint) -> Option<CyclePoint> {
+    pub(crate) fn own_mesh(&mut self, fine: &CyclePoint) -> Option<CyclePoint> {
         const ROUNDS: usize = 8;
         let mut own: Option<CyclePoint> = None;
         for _ in 0..ROUNDS {

@@ -175,7 +175,8 @@ impl TestFunction {
 impl Closing for TestFunction {
     fn fill(&mut self, system: &mut System, _at: &Iterate, row: &mut Row) -> Result<f64, Fault> {
         self.solve(system)?;
-        let variation = Variation { psi: &self.vectors.psi, nodes: &self.vectors.nodes, period: self.vectors.period };
+        let NullVectors { nodes, period, psi, .. } = &self.vectors;
+        let variation = Variation { psi, nodes, period: *period, parameter: 0.0 };
         system.variation_gradient(variation, row);
         Ok(self.vectors.value)
     }

@@ -145,6 +145,9 @@ pub(crate) fn approach(history: &[Past], known: Known) -> Option<Approach> {
     told.or(Some(Approach { law: Law::Logarithm, limit: last.value, error }))
 }
 
+/// Share of the largest range, over all states, below which what a state does is roundoff in a plane that the cycle lies in.
+const IN_PLANE: f64 = 1e-12;
+
 /// Whether the orbit stands still over the last points while its period grows.
 pub(crate) fn orbit_stands(points: &[Walked]) -> bool {
     let Some(start) = points.len().checked_sub(WINDOW) else { return false };
@@ -152,7 +155,8 @@ pub(crate) fn orbit_stands(points: &[Walked]) -> bool {
     let range = |k: usize| last.maxima[k] - last.minima[k];
     let moved = |k: usize| (last.maxima[k] - first.maxima[k]).abs().max((last.minima[k] - first.minima[k]).abs());
     let allowed = SHAPE * (last.period / first.period).ln();
-    (0..last.maxima.len()).all(|k| moved(k) <= allowed * range(k))
+    let largest = (0..last.maxima.len()).map(range).fold(0.0, f64::max);
+    (0..last.maxima.len()).all(|k| moved(k) <= allowed * range(k).max(IN_PLANE * largest))
 }
 
 /// The points whose parameters still differ by much more than their error.

@@ -8,15 +8,18 @@ use armilla_record::{
     BRANCH_FORMAT, Branch, End, EndReason, Event, EventKind, Point, Quantity, Solutions, StoredProfile,
 };
 use armilla_stability::{
-    Born, BranchingForm, CyclePoint, CycleProblem, CycleTangent, DoublingForm, EquilibriumPoint, EquilibriumProblem,
-    HopfForm, Located, LocatedRest, Measures,
+    Born, BranchingForm, Crossed, CyclePoint, CycleProblem, CycleTangent, DoublingForm, EquilibriumPoint,
+    EquilibriumProblem, HopfForm, Located, LocatedRest, Measures,
 };
 
 use crate::ahead::Ahead;
+use crate::crossing_event::{Met, symmetry_words};
+use crate::crossings::both_sides;
 use crate::ends::{end, short};
 use crate::equilibrium_branch;
 use crate::error::StudyError;
 use crate::joins::{Atlas, Followed};
+use crate::late_folds::tell;
 use crate::prediction::{Estimate, next_doubling};
 use crate::progress::{Observer, Progress};
 use crate::settings::follow_settings;
@@ -38,7 +41,7 @@ pub(crate) struct Lineage {
     pub born_at: Option<String>,
     pub doublings: usize,
     pub turns: usize,
-    /// Thresholds of the doublings it descends from, its own birth last.
+    /// Thresholds of the doublings in a row that it descends from, its own birth last.
     pub line: Vec<Estimate>,
 }
 
@@ -57,6 +60,8 @@ pub(crate) enum Way {
     Hopf { located: Box<LocatedRest>, form: Option<Box<HopfForm>> },
     /// As equilibria that cross others.
     Crossing { located: Box<LocatedRest>, form: Box<BranchingForm> },
+    /// Where it crosses this one.
+    CyclesCross(Box<Met>),
 }
 
 impl Way {
@@ -65,6 +70,9 @@ impl Way {
         match self {
             Self::Doubling { located, .. } => {
                 Estimate { value: located.point.unknowns.parameter, error: located.error }
+            }
+            Self::CyclesCross(met) => {
+                Estimate { value: met.crossing.point.unknowns.parameter, error: met.crossing.error }
             }
             Self::Hopf { located, .. } | Self::Crossing { located, .. } => {
                 Estimate { value: located.point.parameter, error: located.error }
@@ -100,6 +108,8 @@ pub(crate) enum Entry {
     Equilibrium(Box<EquilibriumProblem>, Box<EquilibriumPoint>),
     /// A branching of equilibria; the branch goes both ways along a direction.
     Crossing(Box<EquilibriumProblem>, Box<equilibrium_branch::Start>),
+    /// A crossing of cycles; the branch goes both ways from it.
+    CyclesCross(Box<Crossed>),
 }
 
 /// What every branch of a run shares.
@@ -118,9 +128,9 @@ pub(crate) struct Run<'a> {
 }
 
 /// Collects what a walk finds, names events, and passes the news on.
-struct Collector<'r, 'a> {
-    run: &'r mut Run<'a>,
-    lineage: &'r Lineage,
+pub(crate) struct Collector<'r, 'a> {
+    pub(crate) run: &'r mut Run<'a>,
+    pub(crate) lineage: &'r Lineage,
     numbers: HashMap<EventKind, usize>,
     events: Vec<Event>,
     births: Vec<Switchable>,
@@ -151,6 +161,9 @@ impl WalkSink for Collector<'_, '_> {
         if let (EventKind::Doubling, Some(located), false) = (found.kind, &found.located, stands) {
             let way = Way::Doubling { located: Box::new(located.clone()), form: found.form };
             self.births.push(Switchable { event: event.name.clone(), way });
+        }
+        if let Some(met) = &found.crossing {
+            self.births.push(Switchable { event: event.name.clone(), way: Way::CyclesCross(met.clone()) });
         }
         if event.kind.is_threshold() {
             self.run.observer.notice(Progress::Event { name: &event.name, value: event.value });
@@ -194,17 +207,18 @@ pub(crate) fn follow_branch(run: &mut Run<'_>, lineage: &Lineage, entry: Entry) 
         Entry::Hopf(born, birth) => outwards(run, lineage, *born, Some(*birth)),
         Entry::Equilibrium(problem, point) => equilibrium_branch::both_ways(run, lineage, *problem, *point),
         Entry::Crossing(problem, from) => equilibrium_branch::through_branching(run, lineage, *problem, *from),
+        Entry::CyclesCross(crossed) => both_sides(run, lineage, *crossed),
     }
 }
 
-fn plan<'a>(run: &Run<'a>, lineage: &Lineage, sign: f64) -> WalkPlan<'a> {
+pub(crate) fn plan<'a>(run: &Run<'a>, lineage: &Lineage, sign: f64) -> WalkPlan<'a> {
     let mut settings = follow_settings(run.study);
     settings.points = run.points_left;
     WalkPlan {
         study: run.study,
         settings,
         turns: lineage.turns,
-        doubled: lineage.doublings > 0,
+        doubled: !lineage.line.is_empty(),
         sign,
         abort: run.abort,
         atlas: run.atlas,
@@ -226,7 +240,10 @@ fn both_ways(
     let mut collector = collector(run, lineage);
     collector.point(&first);
     let plans = (plan(collector.run, lineage, 1.0), -1.0);
-    let found = at_parameter(&mut problem, EventKind::Start, &start, 0.0);
+    let mut found = at_parameter(&mut problem, EventKind::Start, &start, 0.0);
+    if let Some(symmetry) = problem.symmetry(&start) {
+        found.note = format!("symmetric: {}", symmetry_words(&symmetry, &collector.run.study.model));
+    }
     collector.event(&problem, &found);
     if plans.0.settings.targets.contains(&start.unknowns.parameter) {
         let target = Found { kind: EventKind::Target, ..at_parameter(&mut problem, EventKind::Target, &start, 0.0) };
@@ -298,7 +315,7 @@ fn run_parameter(plan: &WalkPlan<'_>) -> String {
 }
 
 /// A walk whose distances count from the birth instead of from its first cycle.
-fn walk_shifted(
+pub(crate) fn walk_shifted(
     problem: &mut CycleProblem,
     first: (CyclePoint, CycleTangent),
     plan: &WalkPlan<'_>,
@@ -312,11 +329,11 @@ fn walk_shifted(
     walk
 }
 
-fn collector<'r, 'a>(run: &'r mut Run<'a>, lineage: &'r Lineage) -> Collector<'r, 'a> {
+pub(crate) fn collector<'r, 'a>(run: &'r mut Run<'a>, lineage: &'r Lineage) -> Collector<'r, 'a> {
     Collector { run, lineage, numbers: HashMap::new(), events: Vec::new(), births: Vec::new(), points: 0, fault: None }
 }
 
-fn finish(
+pub(crate) fn finish(
     collector: Collector<'_, '_>,
     problem: CycleProblem,
     walked: Vec<Walked>,
@@ -337,6 +354,7 @@ fn finish(
         .collect();
     let (points, cycles): (Vec<Point>, _) = walked.into_iter().map(|walked| (walked.point, walked.cycle)).unzip();
     let followed = Followed::of(&lineage.name, &points, cycles);
+    tell(&mut events, &points, run.study.range.1 - run.study.range.0);
     run.observer.notice(Progress::Finished { name: &lineage.name, points: points.len() });
     let branch = branch_record(run.study, lineage, Parts { points, events, ends, profiles });
     Ok(Finished { branch, births, followed, problem: Parent::Cycles(Box::new(problem)) })

@@ -4,8 +4,7 @@ use armilla_record::{Branch, CascadeRow, Event, EventKind};
 
 use crate::prediction::{Estimate, accumulation, next_doubling};
 
-/// The longest line of first doublings that starts at a branch without a parent: `a/doubling1`, `a.doubling1/doubling1`,
-/// and so on, each with what was predicted of it, and the extrapolated limit as the last row. Empty where fewer than three
+/// The longest line of first doublings, wherever it starts: `a/doubling1`, `a.doubling1/doubling1`, and so on, each with what was predicted of it, and the extrapolated limit as the last row. Empty where fewer than three
 /// doublings follow each other.
 pub(crate) fn cascade(branches: &[Branch]) -> Vec<CascadeRow> {
     let Some(events) = longest_line(branches).filter(|line| line.len() >= 3) else { return Vec::new() };
@@ -49,8 +48,8 @@ fn row(event: &Event, line: &[Estimate]) -> CascadeRow {
 
 /// The chain of events with the most members.
 fn longest_line(branches: &[Branch]) -> Option<Vec<&Event>> {
-    let roots = branches.iter().filter(|branch| branch.born_at.is_none());
-    let doublings = roots.flat_map(doublings_of);
+    // A line that starts inside another one is shorter.
+    let doublings = branches.iter().flat_map(doublings_of);
     doublings.map(|event| line_from(branches, event)).max_by_key(Vec::len)
 }
 

@@ -160,7 +160,7 @@ fn known(plan: &WalkPlan<'_>, (value, error): (f64, f64)) -> String {
 }
 
 /// A positive number in one digit, rounded up.
-fn rounded_up(number: f64) -> String {
+pub(crate) fn rounded_up(number: f64) -> String {
     let near = format!("{number:.0e}");
     if near.parse::<f64>().is_ok_and(|near| near >= number) {
         return near;
@@ -173,7 +173,12 @@ fn rounded_up(number: f64) -> String {
 
 /// A number for a sentence: ten digits, and 0 where it is 0 to the roundoff of the asked range.
 pub(crate) fn short(study: &Study, value: f64) -> String {
-    let scale = (study.range.1 - study.range.0).max(study.range.0.abs()).max(study.range.1.abs());
+    shown(study.range, value)
+}
+
+/// [`short`] for an asked range.
+pub(crate) fn shown(range: (f64, f64), value: f64) -> String {
+    let scale = (range.1 - range.0).max(range.0.abs()).max(range.1.abs());
     let rounded = if value.abs() < 1e-11 * scale { 0.0 } else { value };
     let shown = format!("{rounded:.9e}").parse::<f64>().unwrap_or(rounded);
     format!("{shown}")

@@ -86,7 +86,7 @@ pub(crate) fn enter(study: &Study, parent: &EquilibriumProblem, way: &Way) -> Re
             let from = Start { birth, direction, state_error: located.state_error };
             Ok(Entry::Crossing(Box::new(parent.sibling()), Box::new(from)))
         }
-        Way::Doubling { .. } => Err("equilibria do not double".into()),
+        Way::Doubling { .. } | Way::CyclesCross(_) => Err("an event of cycles does not happen to equilibria".into()),
     }
 }
 

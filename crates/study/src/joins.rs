@@ -5,7 +5,7 @@
 //! shared too. So two points in a row count.
 
 use armilla_record::Point;
-use armilla_stability::{CyclePoint, CycleProblem};
+use armilla_stability::{CyclePoint, CycleProblem, Symmetry};
 
 /// Numbers of node values kept of all branches together: 160 MB. Branches beyond are followed without being known again.
 const KEPT: usize = 20_000_000;
@@ -37,11 +37,25 @@ pub(crate) struct Followed {
 pub(crate) struct Atlas {
     followed: Vec<Followed>,
     kept: usize,
+    /// Symmetries of the model, once there is a cycle to look for them about.
+    mirrors: Option<Vec<Symmetry>>,
+}
+
+/// A branch met again.
+#[derive(Clone, Debug, PartialEq)]
+pub(crate) struct MetAgain {
+    pub branch: String,
+    /// The symmetry whose image of the branch it is, if not the branch itself.
+    pub mirror: Option<Symmetry>,
 }
 
 impl Atlas {
-    /// Adds a finished branch.
-    pub(crate) fn add(&mut self, followed: Followed) {
+    /// Adds a finished branch and, from the first one, the symmetries of its model.
+    pub(crate) fn add(&mut self, followed: Followed, problem: &CycleProblem) {
+        let cycle = followed.seen.last().map(|seen| &seen.cycle);
+        if let (None, Some(cycle)) = (&self.mirrors, cycle) {
+            self.mirrors = Some(problem.mirrors(cycle));
+        }
         let size: usize = followed.seen.iter().map(|seen| seen.cycle.unknowns.nodes.len()).sum();
         if self.kept + size <= KEPT {
             self.kept += size;
@@ -50,9 +64,29 @@ impl Atlas {
     }
 
     /// The branch that a cycle lies on, if it has been followed.
-    pub(crate) fn branch_of(&self, problem: &mut CycleProblem, point: &Point, cycle: &CyclePoint) -> Option<&str> {
-        self.followed.iter().find(|branch| branch.holds(problem, point, cycle)).map(|branch| branch.name.as_str())
+    pub(crate) fn branch_of(&self, problem: &mut CycleProblem, point: &Point, cycle: &CyclePoint) -> Option<MetAgain> {
+        let mut holder = |point: &Point, cycle: &CyclePoint| {
+            self.followed.iter().find(|branch| branch.holds(problem, point, cycle)).map(|branch| branch.name.clone())
+        };
+        if let Some(branch) = holder(point, cycle) {
+            return Some(MetAgain { branch, mirror: None });
+        }
+        self.mirrors.iter().flatten().find_map(|symmetry| {
+            let branch = holder(&image_of(point, symmetry), &symmetry.image_of(cycle))?;
+            Some(MetAgain { branch, mirror: Some(symmetry.clone()) })
+        })
     }
+}
+
+/// The looks of a point's image.
+fn image_of(point: &Point, symmetry: &Symmetry) -> Point {
+    let (mut maxima, mut minima) = (Vec::new(), Vec::new());
+    for (index, sign) in &symmetry.image {
+        let (high, low) = (sign * point.maxima[*index], sign * point.minima[*index]);
+        maxima.push(high.max(low));
+        minima.push(high.min(low));
+    }
+    Point { maxima, minima, ..point.clone() }
 }
 
 impl Followed {

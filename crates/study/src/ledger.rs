@@ -51,6 +51,12 @@ impl Change {
         self == Self { turns: true, ..Self::NONE }
     }
 
+    /// Nothing but what a branch that crosses explains: a multiplier passes +1 and the parameter goes on, or the parameter
+    /// turns back and no multiplier changes side.
+    pub(crate) fn may_cross(self) -> bool {
+        self.only_turns() || self == Self { passes_one: true, count: 1, ..Self::NONE }
+    }
+
     /// A multiplier passes +1 and the parameter goes on.
     pub(crate) fn loses_orientation(self) -> bool {
         self.turns != self.passes_one
@@ -118,9 +124,21 @@ const RESOLUTION: f64 = 1e-11;
 /// Halvings of a step: they take any stride to the resolution.
 const HALVINGS: usize = 40;
 
-/// Cuts a step into parts whose changes are explained or that are as short as the problem resolves. Parts in which nothing
-/// changes are left out.
-pub(crate) fn parts(problem: &mut CycleProblem, before: &CycleStation, after: &CycleStation) -> Vec<Part> {
+/// What is not cut any further.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) enum Whole {
+    /// What folds, doublings and torus points explain.
+    Explained,
+    /// That, and what a branch that crosses may explain.
+    Crossings,
+}
+
+/// Cuts a step into parts that are whole or as short as the problem resolves. Parts in which nothing changes are left out.
+pub(crate) fn parts(
+    problem: &mut CycleProblem,
+    (before, after): (&CycleStation, &CycleStation),
+    whole_are: Whole,
+) -> Vec<Part> {
     let mut done = Vec::new();
     let mut waiting = vec![(before.clone(), after.clone(), 0)];
     while let Some((before, after, depth)) = waiting.pop() {
@@ -128,7 +146,8 @@ pub(crate) fn parts(problem: &mut CycleProblem, before: &CycleStation, after: &C
         if change.is_none() {
             continue;
         }
-        let whole = change.is_explained() || change.only_turns() || depth >= HALVINGS;
+        let crosses = whole_are == Whole::Crossings && change.may_cross();
+        let whole = change.is_explained() || change.only_turns() || crosses || depth >= HALVINGS;
         let middle = if whole { None } else { middle(problem, &before, &after) };
         match middle {
             // The later half first, since the last one in is the next one out.

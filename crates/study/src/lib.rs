@@ -22,8 +22,11 @@
 
 mod ahead;
 mod approach;
+mod beyond;
 mod branch;
 mod cascade;
+mod crossing_event;
+mod crossings;
 mod ends;
 mod equilibrium_births;
 mod equilibrium_branch;
@@ -36,6 +39,7 @@ mod file;
 mod guards;
 mod hidden;
 mod joins;
+mod late_folds;
 mod ledger;
 mod near_miss;
 mod prediction;
@@ -48,11 +52,13 @@ mod smoothing;
 mod start;
 mod step_events;
 mod study;
+mod torus_event;
 mod trace;
 mod valley;
 mod walk;
 mod words;
 
+pub use beyond::beyond;
 pub use error::{ErrorClass, StudyError};
 pub use file::{DEFAULT_ACCURACY, Follow, MeshOverride, Pursue, Start, StrideOverride, StudyFile, Values};
 pub use progress::{Observer, Progress, Silent};

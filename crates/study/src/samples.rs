@@ -142,7 +142,7 @@ impl Table<'_> {
     fn period(&self, given: Option<f64>) -> Result<(f64, Option<usize>), StudyError> {
         let n = self.study.model.states().len();
         let field = self.study.model.field();
-        if let Some([forcing, _]) = field.forcing_period(&self.study.start_parameters, self.study.free) {
+        if let Some([forcing, ..]) = field.forcing_period(&self.study.start_parameters, self.study.free) {
             let periods = self.periods(given, forcing)?;
             return Ok((periods as f64 * forcing, Some(periods)));
         }

@@ -56,7 +56,7 @@ pub(crate) fn settled(
 ) -> Result<First, StudyError> {
     observer.notice(Progress::Settling);
     let field = study.model.field();
-    let forcing_period = field.forcing_period(&study.start_parameters, study.free).map(|[period, _]| period);
+    let forcing_period = field.forcing_period(&study.start_parameters, study.free).map(|[period, ..]| period);
     let options = SettleOptions { transient, forcing_period, abort, ..SettleOptions::default() };
     let settled = settle(field.as_ref(), &study.start_parameters, begin, &options)
         .map_err(|error| StudyError::Settling { words: settling_words(&error, &study.model), error })?;

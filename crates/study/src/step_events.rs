@@ -7,9 +7,12 @@ use armilla_stability::{
     WATCH_TORUS,
 };
 
+use crate::crossing_event::{self, Looked, Met};
 use crate::guards::smooth_values;
 use crate::hidden::beside;
-use crate::ledger::{Change, Part, narrowed, parts, stands_on};
+use crate::late_folds::PASSES_ONE;
+use crate::ledger::{Change, Part, Whole, narrowed, parts, stands_on};
+use crate::torus_event::{self, REAL};
 use crate::valley::valley;
 use crate::walk::{CycleStation, WalkPlan};
 
@@ -27,6 +30,8 @@ pub(crate) struct Found {
     pub located: Option<Located>,
     /// Normal form of a doubling.
     pub form: Option<DoublingForm>,
+    /// Where another branch crosses.
+    pub crossing: Option<Box<Met>>,
 }
 
 /// What a step brings.
@@ -47,7 +52,8 @@ pub(crate) fn events_of_step(
     let mut findings = Findings { found: Vec::new(), jumped: false };
     let mut between = Vec::new();
     // What does not add up is cut into parts anyway; its values dip to zero because of what is found there.
-    let explained = Change::between(ends.0, ends.1).is_explained();
+    let change = Change::between(ends.0, ends.1);
+    let explained = change.is_explained() || change.may_cross();
     for (dip, angle) in explained.then(|| dips(problem, ends, earlier)).into_iter().flatten() {
         match dip {
             Dip::Clear => {}
@@ -79,10 +85,21 @@ pub(crate) fn events_on_edge(
     let bracketed =
         [(WATCH_TORUS, EventKind::Torus, change.pair), (WATCH_BRANCHING, EventKind::Branching, change.passes_one)];
     for (index, kind, seen) in bracketed {
-        if stands_on(after, index) && !seen {
-            let width = plan.study.range.1 - plan.study.range.0;
+        if seen || after.watch.values[index].value.abs() > NEARLY_ON {
+            continue;
+        }
+        let located = match kind {
+            EventKind::Torus => torus_event::at(problem, after, plan),
+            _ => crossing_event::at(problem, after, plan),
+        };
+        let edge = after.point.unknowns.parameter;
+        let width = plan.study.range.1 - plan.study.range.0;
+        let slack = |event: &Found| event.error.unwrap_or(0.0) + f64::EPSILON * width.max(edge.abs());
+        if let Some(event) = located.filter(|event| (event.point.unknowns.parameter - edge).abs() <= slack(event)) {
+            found.push(event);
+        } else if stands_on(after, index) {
             let note = "on the edge of the range to within what the multipliers tell";
-            let mut event = unresolved(after, (after.point.unknowns.parameter, EDGE * width), note.into(), plan);
+            let mut event = unresolved(after, (edge, EDGE * width), note.into(), plan);
             (event.kind, event.angle) = (kind, critical_angle(problem, after));
             found.push(event);
         }
@@ -90,6 +107,8 @@ pub(crate) fn events_on_edge(
     found
 }
 
+/// Watched value under which an event is looked for on the edge of the range: multipliers are known to less in any case.
+const NEARLY_ON: f64 = 1e-6;
 /// Share of the range within which an event on the edge is not located further: multipliers there are 1 to 1e-10.
 const EDGE: f64 = 1e-9;
 
@@ -148,7 +167,7 @@ fn events_between(
 ) {
     /// Cuts between events in all: a step with more is no step of this branch.
     const CUTS: usize = 30;
-    let mut waiting = parts(problem, ends.0, ends.1);
+    let mut waiting = parts(problem, ends, Whole::Crossings);
     let mut cuts = 0;
     while let Some(part) = waiting.pop() {
         let mut own = Findings { found: Vec::new(), jumped: false };
@@ -157,7 +176,7 @@ fn events_between(
         if !between.is_empty() {
             cuts += 1;
             for pair in in_order(&part.before, between, &part.after).windows(2) {
-                waiting.extend(parts(problem, &pair[0], &pair[1]));
+                waiting.extend(parts(problem, (&pair[0], &pair[1]), Whole::Crossings));
             }
             continue;
         }
@@ -168,6 +187,50 @@ fn events_between(
 
 fn events_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, findings: &mut Findings) {
     let change = part.change;
+    if change.may_cross() {
+        match crossing_event::between(problem, (&part.before, &part.after), plan) {
+            Looked::Found(found) => {
+                // The parameter goes on at such a crossing: where it turns all the same, a fold lies beside.
+                let beside = change.turns && found.kind == EventKind::Transcritical;
+                findings.found.extend(beside.then(|| fold_beside(problem, part, &found.point, plan)).flatten());
+                return findings.found.push(*found);
+            }
+            Looked::Gap => {
+                findings.jumped = true;
+                return;
+            }
+            Looked::NotLocated => {}
+        }
+        // Cut further, as far as cycles can be told from each other.
+        for part in parts(problem, (&part.before, &part.after), Whole::Explained) {
+            rest_of_part(problem, &part, plan, findings);
+        }
+        return;
+    }
+    rest_of_part(problem, part, plan, findings);
+}
+
+/// The fold of a part in which another branch crosses, too, at a given cycle; none where the two are too near to be told apart.
+fn fold_beside(problem: &mut CycleProblem, part: &Part, crossing: &CyclePoint, plan: &WalkPlan<'_>) -> Option<Found> {
+    /// Halvings of the part until the crossing lies outside: they take any stride to what cycles are known to.
+    const HALVINGS: usize = 40;
+    let (mut low, mut high) = (part.before.clone(), part.after.clone());
+    let fold = |station: &CycleStation| station.watch.values[WATCH_FOLD].value;
+    for _ in 0..HALVINGS {
+        let share = problem.share_of((&low, &high), crossing);
+        if !(0.0..=1.0).contains(&share) {
+            let change = Change::between(&low, &high);
+            return Some(located(problem, CriticalKind::Fold, &Part { before: low, after: high, change }, plan));
+        }
+        let middle = problem.between(&low, &high, 0.5)?;
+        if fold(&middle) * fold(&low) < 0.0 { high = middle } else { low = middle }
+    }
+    None
+}
+
+/// The events of a part but crossings that are located.
+fn rest_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, findings: &mut Findings) {
+    let change = part.change;
     if change.turns {
         findings.found.extend(turning(problem, part, plan));
     }
@@ -177,7 +240,8 @@ fn events_of_part(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>, 
     if change.passes_one && !change.turns && is_gap(problem, part) {
         findings.jumped = true;
     } else if !change.is_explained() && !change.turns || change.pair && change.count > 0 {
-        findings.found.push(remaining_change(problem, part, plan));
+        let torus = if change.pair { torus_event::between(problem, (&part.before, &part.after), plan) } else { None };
+        findings.found.push(torus.unwrap_or_else(|| remaining_change(problem, part, plan)));
     }
 }
 
@@ -325,6 +389,7 @@ fn located_event(
         note: note.unwrap_or_default(),
         located: Some(located),
         form,
+        crossing: None,
     }
 }
 
@@ -353,11 +418,7 @@ fn remaining_change(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>
         Some(mu) if change == 2 && is_pair(mu.angle) => {
             (EventKind::Torus, Some(mu.angle.abs()), "located by bisection of the unstable count")
         }
-        Some(mu) if change == 1 && mu.angle == 0.0 => (
-            EventKind::Branching,
-            Some(0.0),
-            "a multiplier passes +1 without a fold; located by bisection, kind not decided, crossing branch not followed",
-        ),
+        Some(mu) if change == 1 && mu.angle == 0.0 => (EventKind::Branching, Some(0.0), PASSES_ONE),
         Some(mu) if change == 2 => (
             EventKind::Unresolved,
             Some(if mu.angle.abs() < 1.0 { 0.0 } else { std::f64::consts::PI }),
@@ -403,9 +464,6 @@ fn period_error_between(problem: &mut CycleProblem, low: &CycleStation, high: &C
     (high.point.unknowns.period - period).abs() + own
 }
 
-/// Angle from the real axis within which a pair may be two real multipliers that the accuracy does not tell apart.
-const REAL: f64 = 1e-4;
-
 /// An event that is known by an interval of the parameter; its period is that of the station, known to its profile's
 /// accuracy only.
 pub(crate) fn unresolved(
@@ -428,6 +486,7 @@ pub(crate) fn unresolved(
         note,
         located: None,
         form: None,
+        crossing: None,
     }
 }
 
@@ -461,6 +520,7 @@ pub(crate) fn at_parameter(problem: &mut CycleProblem, kind: EventKind, point: &
         note: String::new(),
         located: None,
         form: None,
+        crossing: None,
     }
 }
 

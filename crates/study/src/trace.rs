@@ -6,10 +6,11 @@ use std::sync::atomic::{AtomicBool, Ordering};
 
 use armilla_figure::Figure;
 use armilla_record::{Branch, CascadeRow, EndReason, EventKind, Reached, RecordError, Results, Threshold};
-use armilla_stability::Born;
+use armilla_stability::{Born, CycleProblem, SwitchFault};
 
 use crate::branch::{Entry, Finished, Lineage, Parent, Run, Switchable, Way, follow_branch};
 use crate::cascade::cascade;
+use crate::crossings::leave_out_known;
 use crate::equilibrium_births::{Crossings, ends_where_born, enter};
 use crate::error::StudyError;
 use crate::joins::Atlas;
@@ -48,8 +49,8 @@ pub struct Traced {
 }
 
 /// A branch waiting to be followed.
-struct Waiting {
-    lineage: Lineage,
+pub(crate) struct Waiting {
+    pub lineage: Lineage,
     entry: Entry,
 }
 
@@ -61,6 +62,7 @@ impl Waiting {
             Entry::Birth(born) | Entry::Hopf(born, _) => born.birth.unknowns.parameter,
             Entry::Equilibrium(_, point) => point.parameter,
             Entry::Crossing(_, from) => from.birth.parameter,
+            Entry::CyclesCross(crossed) => crossed.birth.unknowns.parameter,
         }
     }
 }
@@ -109,7 +111,10 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
             Err(fault) => return Err(fault),
         };
         points_left = run.points_left;
-        atlas.add(std::mem::take(&mut finished.followed));
+        leave_out_known(&mut finished, &traced.branches, &mut queue);
+        if let Parent::Cycles(problem) = &finished.problem {
+            atlas.add(std::mem::take(&mut finished.followed), problem);
+        }
         drop_other_end(study, &lineage, &mut finished.branch, &mut queue);
         drop_born_here(study, &mut finished.branch, &mut queue);
         let met = crossings.sift(study, &mut finished);
@@ -194,13 +199,9 @@ fn children(
             ));
             continue;
         }
-        let entry = match (way, &finished.problem) {
-            (Way::Doubling { located, form }, Parent::Cycles(problem)) => problem
-                .double(located, form.as_ref())
-                .map(|born| Entry::Birth(Box::new(born)))
-                .map_err(|fault| fault.to_string()),
-            (way, Parent::Equilibria(problem)) => enter(study, problem, way),
-            (_, Parent::Cycles(_)) => continue,
+        let entry = match &finished.problem {
+            Parent::Cycles(problem) => enter_from_cycles(problem, way).map_err(|fault| fault.to_string()),
+            Parent::Equilibria(problem) => enter(study, problem, way),
         };
         match entry {
             Err(fault) => shortfalls.push(format!("at {event} {fault}")),
@@ -210,6 +211,18 @@ fn children(
         }
     }
     children
+}
+
+/// The way onto what is born at an event of cycles.
+fn enter_from_cycles(problem: &CycleProblem, way: &Way) -> Result<Entry, SwitchFault> {
+    Ok(match way {
+        Way::Doubling { located, form } => Entry::Birth(Box::new(problem.double(located, form.as_ref())?)),
+        Way::CyclesCross(met) if met.both => Entry::CyclesCross(Box::new(problem.cross(&met.crossing)?)),
+        // The other side is the mirror image.
+        Way::CyclesCross(met) => Entry::Birth(Box::new(problem.cross(&met.crossing)?.born())),
+        // Events of equilibria are met on branches of equilibria.
+        Way::Hopf { .. } | Way::Crossing { .. } => return Err(SwitchFault),
+    })
 }
 
 /// Whether a branch begins outside the asked range though it is born on its edge.
@@ -229,6 +242,9 @@ fn child_lineage(parent: &Lineage, event: &str, way: &Way) -> Lineage {
             turns: 2 * parent.turns,
             line: parent.line.iter().copied().chain([way.threshold()]).collect(),
         },
+        Way::CyclesCross(_) => {
+            Lineage { name, born_at, doublings: parent.doublings, turns: parent.turns, line: Vec::new() }
+        }
         Way::Hopf { .. } | Way::Crossing { .. } => Lineage { name, born_at, doublings: 0, turns: 1, line: Vec::new() },
     }
 }

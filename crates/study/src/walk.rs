@@ -8,11 +8,12 @@ use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_FOLD};
 
 use crate::ahead::Ahead;
 use crate::approach::{Approach, Known, Past, approach, approach_of_stuck, orbit_stands, resolved};
+use crate::crossing_event::{mirror_image, symmetry_words};
 use crate::ends::{
     Passage, birth_of_cycle, blown_up, end, end_of_follower, passed_through, resolution_lost, short, stuck_at_rest,
 };
 use crate::guards::{bends, falls_on_shorter, leaps};
-use crate::joins::Atlas;
+use crate::joins::{Atlas, MetAgain};
 use crate::ledger::{Change, is_off_folds, is_sure};
 use crate::near_miss::near_miss_by_mean;
 use crate::rest::{Motion, Rest, push};
@@ -114,7 +115,7 @@ struct Walker<'w, 'p> {
     /// Distance up to which the last doubt reaches.
     doubt_until: f64,
     /// The branch followed before that the last point lies on.
-    met: Option<String>,
+    met: Option<MetAgain>,
 }
 
 impl Walker<'_, '_> {
@@ -196,7 +197,8 @@ impl Walker<'_, '_> {
 
     /// Whether a shorter stride may tell more of what happens in a step.
     fn is_doubtful(&mut self, before: &CycleStation, after: &CycleStation) -> bool {
-        let explained = !is_sure(after) || Change::between(&self.account, after).is_explained();
+        let change = Change::between(&self.account, after);
+        let explained = !is_sure(after) || change.is_explained() || change.may_cross();
         !explained
             || self.may_hide(before, after)
             || leaps(before, after, self.foretold(before, after))
@@ -234,7 +236,7 @@ impl Walker<'_, '_> {
     fn judge(&mut self, step: &Step, after: CycleStation) -> Taken {
         let (problem, _, _) = self.follower.parts();
         let sure = is_sure(&after);
-        let on_edge = matches!(step.landing, Some(Landing::Edge(_))) && !sure && is_off_folds(&after);
+        let on_edge = matches!(step.landing, Some(Landing::Edge(_))) && is_off_folds(&after);
         let mut found = Vec::new();
         if sure || on_edge {
             let findings = events_of_step(problem, (&self.account, &after), self.earlier.as_ref(), self.plan);
@@ -314,8 +316,12 @@ impl Walker<'_, '_> {
         let doubles = found.iter().any(|event| event.kind == EventKind::Doubling);
         let (problem, _, _) = self.follower.parts();
         for event in found {
+            let mirror = mirror_image(self.plan.study, &event);
             self.sink.event(problem, &event);
             self.walk.events.push(event);
+            if let Some(ended) = mirror {
+                return Taken::Ended(ended);
+            }
         }
         let Ok(mut point) = problem.describe(&after.point, self.plan.turns, self.plan.sign * after.distance) else {
             return Taken::NoMultipliers;
@@ -347,12 +353,19 @@ impl Walker<'_, '_> {
     fn joined(&mut self) -> Option<End> {
         let last = self.walk.points.last()?;
         let (problem, _, _) = self.follower.parts();
-        let met = self.plan.atlas.branch_of(problem, &last.point, &last.cycle).map(str::to_string);
+        let met = self.plan.atlas.branch_of(problem, &last.point, &last.cycle);
         let before = std::mem::replace(&mut self.met, met.clone());
-        let branch = met.filter(|met| before.as_ref() == Some(met))?;
+        let MetAgain { branch, mirror } = met.filter(|met| before.as_ref() == Some(met))?;
         let value = last.point.value;
         let here = short(self.plan.study, value);
-        let words = format!("joins `{branch}` at {} = {here}", self.plan.study.file.follow.parameter);
+        let name = &self.plan.study.file.follow.parameter;
+        let words = match mirror {
+            None => format!("joins `{branch}` at {name} = {here}"),
+            Some(symmetry) => format!(
+                "joins the mirror image ({}) of `{branch}` at {name} = {here}, which is not computed twice",
+                symmetry_words(&symmetry, &self.plan.study.model)
+            ),
+        };
         Some(end(EndReason::Joins { branch }, value, words))
     }
 

@@ -17,8 +17,9 @@ const ACCURACIES: [f64; 3] = [1e-6, 1e-9, 1e-12];
 
 pub(super) fn runs() -> Vec<Run> {
     let cases = [hopf, fold, twisted_band, supercritical, subcritical, transcritical, pitchfork, torus];
+    let more = [turning_pair, bent_transcritical, bent_pitchfork];
     let mut runs: Vec<Run> =
-        cases.into_iter().flat_map(|case| ACCURACIES.map(|accuracy| case().accuracy(accuracy))).collect();
+        cases.into_iter().chain(more).flat_map(|case| ACCURACIES.map(|accuracy| case().accuracy(accuracy))).collect();
     runs.push(saddle_loop());
     runs.extend(births());
     runs
@@ -119,7 +120,8 @@ fn transcritical() -> Run {
         "x12",
         r#"start: Settle(at: {"mu": 0.2}), follow: (parameter: "mu", from: -0.1, to: 0.5)"#,
     )
-    .value("a/branching1", "0.0", Exact)
+    .value("a/transcritical1", "0.0", Exact)
+    .period("a/transcritical1", "4.1887902047863909846168578", Exact)
     .period_at("a", 0.2, "4.1887902047863909846168578", Exact)
     .cycle("a", Kept::Near(0.2), |point| branched(1, (point.value, 0.7, 1.5)))
     .cycle("a", Kept::Near(0.5), |point| branched(1, (point.value, 0.7, 1.5)))
@@ -130,8 +132,10 @@ fn pitchfork() -> Run {
     Run::new(
         "X13, pitchfork",
         "x13",
-        r#"start: Settle(at: {"mu": 0.2}), follow: (parameter: "mu", from: 0.1, to: 0.5)"#,
+        r#"start: Settle(at: {"mu": 0.2}), follow: (parameter: "mu", from: -0.1, to: 0.5)"#,
     )
+    .value("a/pitchfork1", "0.0", Exact)
+    .period("a/pitchfork1", "4.1887902047863909846168578", Exact)
     .period_at("a", 0.2, "4.1887902047863909846168578", Exact)
     .cycle("a", Kept::Near(0.2), |point| branched(2, (point.value, 0.7, 1.5)))
     .cycle("a", Kept::Near(0.5), |point| branched(2, (point.value, 0.7, 1.5)))
@@ -156,8 +160,40 @@ fn torus() -> Run {
     .cycle("a", Kept::Near(2.2), curve)
     .value("a/torus1", "2.0", Exact)
     .period("a/torus1", PERIOD, Exact)
+    .angle("a/torus1", "2.398797377099941013114758", Exact)
     .value("a/hopf1", "1.6833752096446001662310434", Exact)
     .period("a/hopf1", PERIOD, Exact)
+}
+
+/// A pair that turns about a circle of period 2 pi by 2 pi W, W = 0.37, through the unit circle at l = 0.
+fn turning_pair() -> Run {
+    Run::new(
+        "pair that turns about a circle",
+        "turning_pair",
+        r#"set: {"al": 0.8, "be": 0.5, "ga": 0.9, "de": -0.6}, start: Settle(at: {"l": -0.1}), follow: (parameter: "l", from: -0.2, to: 0.2)"#,
+    )
+    .value("a/torus1", "0.0", Exact)
+    .period("a/torus1", TURN, Exact)
+    .angle("a/torus1", "2.3247785636564469965", Exact)
+}
+
+/// A transcritical crossing and a pitchfork at mu = 0 in a bent coordinate, where no mesh keeps the cycle that is crossed.
+fn bent(case: &'static str, set: &str, event: &'static str) -> Run {
+    let fields =
+        format!(r#"set: {{{set}}}, start: Settle(at: {{"mu": -0.2}}), follow: (parameter: "mu", from: -0.3, to: 0.5)"#);
+    Run::new(case, "bent_crossing", &fields).value(event, "0.0", Exact).period(
+        event,
+        "4.1887902047863909846168578",
+        Exact,
+    )
+}
+
+fn bent_transcritical() -> Run {
+    bent("bent transcritical", r#""q": 1.0"#, "a/transcritical1")
+}
+
+fn bent_pitchfork() -> Run {
+    bent("bent pitchfork", r#""q": 0.0, "c": 1.0"#, "a/pitchfork1")
 }
 
 /// X14, eps = 1. T = 2 sqrt 2 K(m)/x1; the loop through the saddle at h = 0.

@@ -17,6 +17,7 @@ pub(super) fn runs() -> Vec<Run> {
         roessler_window(),
         lorenz_window(),
         lorenz_symmetric(),
+        lorenz_pair(),
         brusselator(),
         cell_cycle(),
         membrane(),
@@ -108,6 +109,21 @@ fn lorenz_symmetric() -> Run {
     )
     .period_at("a", 28.0, "1.5586522107161747275678702", Independent)
     .finer("a", 28.0)
+}
+
+/// The symmetric cycle of large r breaks its symmetry and the pair doubles. Source: single shooting with a Taylor series of
+/// order 28 and 30 decimals, the first also of order 34 and 36.
+fn lorenz_pair() -> Run {
+    Run::new(
+        "Lorenz, a symmetry that breaks",
+        "lorenz",
+        r#"start: Settle(at: {"r": 350}), follow: (parameter: "r", from: 200, to: 360), pursue: (doublings: 0)"#,
+    )
+    .value("a/pitchfork1", "312.973532984161612863", Independent)
+    .period("a/pitchfork1", "0.411166056121265551964", Independent)
+    .value("a.pitchfork1/doubling1", "229.406708561443450438", Independent)
+    .period("a.pitchfork1/doubling1", "0.480866820311095173443", Independent)
+    .finer("a.pitchfork1", 200.0)
 }
 
 fn brusselator() -> Run {

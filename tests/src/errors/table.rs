@@ -34,12 +34,10 @@ an error cancel, the true one may be smaller than its size by luck: one number i
 
 How each error is estimated:
 
-- `period_error` at starts, targets and edges, `error` and `period_error` of a fold or a doubling: the number is
-  computed again on a mesh with every interval halved, and that is what is printed. Its error is a share of the
+- `period_error` at starts, targets and edges, `error` and `period_error` of a fold, a doubling, a torus point or a crossing,
+  and the error of a torus point's angle: the number is computed again on a mesh with every interval halved, and that is what is printed. Its error is a share of the
   difference, twice the factor by which the error of the profile fell from the one mesh to the other (numbers converge
   faster than profiles), plus the roundoff of both solutions carried through the linear system.
-- `error` of an event found by bisection (`torus`, `branching`): half the width of the bracket; its `period_error`: the
-  change of the period over the bracket, and the error at its end.
 - `hopf`: parameter and period of the last ten cycles, on halved meshes, are extrapolated in the square of the
   amplitude; the error is what the last point used changes, plus the errors of all enlarged by their weights.
 - `period-blow-up`: how far the limit moves when a point is left out.

@@ -76,6 +76,6 @@ fn two_hundred_models_nobody_chose() {
         drop(place);
     }
     eprintln!("{traced_count} of {MODELS} followed, {points} points, {events} thresholds");
-    assert!(2 * traced_count > MODELS, "{traced_count} of {MODELS} only: the drawing is at fault");
+    assert!(10 * traced_count >= 9 * MODELS, "{traced_count} of {MODELS} only: the drawing is at fault");
     assert!(events > traced_count, "{events} thresholds only");
 }

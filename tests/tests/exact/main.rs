@@ -9,3 +9,4 @@ mod liouville; // X10: multipliers against the divergence, several models
 mod saddle_loop; // X14: a period that grows without bound
 mod scales; // X2, X3 in other units
 mod torus; // X5: a circle that loses to a torus
+mod turning; // a pair about a circle with known coefficients, strong resonances

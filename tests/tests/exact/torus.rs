@@ -5,7 +5,7 @@
 //! `r0^2 = lam z0 - z0^2` and period 2 pi/c; exponents the eigenvalues of `[[0, r0 (1 - 2 d z0)], [-2 r0, lam - 2 z0]]`. Their sum
 //! vanishes where lam = 2 z0, at lam = 2: torus, rotation 2 pi sqrt(det)/c; r0 = 0 where 2 lam - b + d (1 - lam^2) = 0.
 
-use std::f64::consts::{PI, TAU};
+use std::f64::consts::TAU;
 
 use armilla_record::{EndReason, EventKind};
 use armilla_tests::{absolute, branch, event, job, relative};
@@ -41,10 +41,10 @@ fn multipliers_torus_and_birth_are_exact() {
     let torus = event(&traced, "a/torus1");
     assert_eq!(torus.kind, EventKind::Torus);
     assert!((torus.value - 2.0).abs() <= torus.error.expect("an error"), "{torus:?}");
-    absolute("torus", torus.value, 2.0, 1e-9);
-    // By the formula, to 24 digits; the bracket of 1e-10 moves it by some 1e-9.
-    absolute("rotation", torus.angle.expect("an angle"), 2.398_797_377_099_941_013_114_758, 1e-8);
-    assert!(PI - torus.angle.expect("an angle") > 0.1);
+    absolute("torus", torus.value, 2.0, 1e-12);
+    // By the formula, to 24 digits.
+    absolute("rotation", torus.angle.expect("an angle"), 2.398_797_377_099_941_013_114_758, 1e-11);
+    absolute("period", torus.period, TAU / c, 1e-12);
     let hopf = event(&traced, "a/hopf1");
     // By the formula, to 24 digits.
     relative("birth", hopf.value, 1.683_375_209_644_600_166_231_04, 1e-11);

@@ -22,7 +22,7 @@ pub fn thresholds(branch: &Branch) -> Vec<EventKind> {
 }
 
 /// Every change of the unstable count between neighbouring points of a branch has events between them that make it up:
-/// one each for folds, doublings and branchings, two for torus points.
+/// one each for folds, doublings and crossings, two for torus points.
 pub fn adds_up(branch: &Branch) {
     for pair in branch.points.windows(2) {
         let (from, to) = (&pair[0], &pair[1]);
@@ -34,7 +34,11 @@ pub fn adds_up(branch: &Branch) {
         let (mut least, mut most, mut unresolved) = (0i64, 0i64, false);
         for event in branch.events.iter().filter(between) {
             let size = match event.kind {
-                EventKind::Fold | EventKind::Doubling | EventKind::Branching => 1,
+                EventKind::Fold
+                | EventKind::Doubling
+                | EventKind::Branching
+                | EventKind::Pitchfork
+                | EventKind::Transcritical => 1,
                 EventKind::Torus => 2,
                 EventKind::Unresolved => {
                     unresolved = true;

@@ -119,14 +119,14 @@ fn two_torus_points_inside_one_stride_are_both_found() {
             );
             let traced = job("product", &fields);
             let exact = [c - 0.5 * w, c + 0.5 * w];
-            near(&format!("{share} at {place}"), &values(&traced, "a", EventKind::Torus), &exact, 1e-7);
+            near(&format!("{share} at {place}"), &values(&traced, "a", EventKind::Torus), &exact, 1e-10);
             assert_eq!(thresholds(branch(&traced, "a")).len(), 2);
             adds_up(branch(&traced, "a"));
         }
     }
 }
 
-/// Exact: multiplier exp(2 pi c(p)) passes +1 and comes back: two branchings that cancel.
+/// Exact: multiplier exp(2 pi c(p)) passes +1 and comes back, c' = c (c(p) - c^2): two pitchforks that cancel.
 #[test]
 fn two_branchings_inside_one_stride_are_both_found() {
     for share in [0.3, 0.1] {
@@ -138,7 +138,7 @@ fn two_branchings_inside_one_stride_are_both_found() {
             );
             let traced = job("product", &fields);
             let exact = [c - 0.5 * w, c + 0.5 * w];
-            near(&format!("{share} at {place}"), &values(&traced, "a", EventKind::Branching), &exact, 1e-7);
+            near(&format!("{share} at {place}"), &values(&traced, "a", EventKind::Pitchfork), &exact, 1e-10);
             assert_eq!(thresholds(branch(&traced, "a")).len(), 2);
             adds_up(branch(&traced, "a"));
         }

@@ -118,7 +118,7 @@ fn a_doubling_on_a_fold_is_told() {
 fn neutral_saddles_are_no_torus_points() {
     let follow = r#"follow: (parameter: "p", from: -0.5, to: 0.7), pursue: (doublings: 0)"#;
     let both_signs = [
-        ("product", r#"set: {"c0": 0.0, "c1": 1.0, "d0": -0.3}"#, EventKind::Branching),
+        ("product", r#"set: {"c0": 0.0, "c1": 1.0, "d0": -0.3}"#, EventKind::Pitchfork),
         ("band", r#"set: {"m0": -0.3}"#, EventKind::Doubling),
     ];
     for (model, set, kind) in both_signs {
