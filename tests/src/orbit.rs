@@ -3,10 +3,13 @@
 
 use crate::Random;
 
+/// Writes the rates at a time and a state.
+pub type Rates<'a> = dyn Fn(f64, &[f64], &mut [f64]) + 'a;
+
 /// A table of samples in the making.
 pub struct Motion<'a> {
-    /// Writes the rates at a time and a state.
-    pub rates: &'a dyn Fn(f64, &[f64], &mut [f64]),
+    /// The rates.
+    pub rates: &'a Rates<'a>,
     /// Steps per unit of time.
     pub steps: f64,
 }

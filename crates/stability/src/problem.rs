@@ -16,6 +16,7 @@ use crate::forced::forcing_periods;
 use crate::measure::Measures;
 use crate::point::{CyclePoint, CycleTangent};
 use crate::resolution::Resolution;
+use crate::rough::within_degrees;
 use crate::scale::{STILL, STILL_AT_FIRST, first_metric, metric_under_forcing, natural_sizes};
 use crate::spectrum::{Spectrum, SpectrumFault, SpectrumSolver};
 
@@ -582,20 +583,4 @@ impl Problem for CycleProblem {
         });
         self.renew_mesh(point, tangents, adapted)
     }
-}
-
-/// The profile itself where its degree is allowed, or the same cycle with the nearest allowed one.
-pub(crate) fn within_degrees(profile: &Profile, (low, high): (usize, usize)) -> Profile {
-    let degree = profile.degree.clamp(low, high);
-    if degree == profile.degree {
-        return profile.clone();
-    }
-    let mut guess = Profile { degree, values: Vec::new(), ..profile.clone() };
-    let mut evaluator = profile.evaluator();
-    let mut state = vec![0.0; profile.n_states];
-    for time in guess.node_times() {
-        evaluator.at(time, &mut state);
-        guess.values.extend(&state);
-    }
-    guess
 }

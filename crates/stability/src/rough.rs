@@ -4,7 +4,7 @@ use armilla_collocation::{LinearClosing, Row, Task, approach};
 use armilla_record::Profile;
 
 use crate::point::CyclePoint;
-use crate::problem::{CycleProblem, CycleSettings, CycleSpec, Sizes, StartFault, within_degrees};
+use crate::problem::{CycleProblem, CycleSettings, CycleSpec, Sizes, StartFault};
 use crate::scale::STILL_AT_FIRST;
 
 impl CycleProblem {
@@ -31,4 +31,20 @@ impl CycleProblem {
         problem.correct_at(&mut point, parameter).map_err(StartFault::Newton)?;
         problem.with_own_sizes(point, parameter)
     }
+}
+
+/// The profile itself where its degree is allowed, or the same cycle with the nearest allowed one.
+pub(crate) fn within_degrees(profile: &Profile, (low, high): (usize, usize)) -> Profile {
+    let degree = profile.degree.clamp(low, high);
+    if degree == profile.degree {
+        return profile.clone();
+    }
+    let mut guess = Profile { degree, values: Vec::new(), ..profile.clone() };
+    let mut evaluator = profile.evaluator();
+    let mut state = vec![0.0; profile.n_states];
+    for time in guess.node_times() {
+        evaluator.at(time, &mut state);
+        guess.values.extend(&state);
+    }
+    guess
 }

@@ -157,7 +157,7 @@ fn best_in(samples: &Samples, n: usize, (middle, step): (f64, f64)) -> f64 {
     let cutoffs = fold(samples, n, middle).smooth(1.0).cutoffs;
     let score = |period: f64| fold(samples, n, period).smooth_at(&cutoffs).score;
     let near = (-CLOSER..=CLOSER).map(|k| middle + step * f64::from(k) / f64::from(CLOSER));
-    let best = lowest_of(near, &score).unwrap_or(middle);
+    let best = lowest_of(near, score).unwrap_or(middle);
     let closer = step / f64::from(CLOSER);
     let better = lowest(score, (best - closer, best + closer));
     if score(better) < score(best) { better } else { best }

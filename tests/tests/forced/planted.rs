@@ -120,10 +120,53 @@ fn a_torus_point() {
     absolute("torus point", torus.value, 0.0, 1e-10);
     assert!(torus.value.abs() <= torus.error.expect("an error"), "{torus:?}");
     absolute("angle", torus.angle.expect("an angle"), 0.6 * PI, 1e-8);
+    // `Int <v, v> dt = 1`: |v|^2 = 1/P over two states, d = -2/P for the cubic term -|z|^2 z of z = u + i v.
+    assert_eq!(torus.criticality, Some(Criticality::Supercritical));
+    assert!(torus.note.contains("d = -3.183099e-1"), "{}", torus.note);
     for point in &branch(&traced, "a").points {
         for mu in &point.multipliers {
             absolute("log-modulus", mu.log_modulus, TAU * point.value, 1e-9);
             absolute("angle", mu.angle.abs(), 0.6 * PI, 1e-9);
         }
+    }
+}
+
+fn crossing(s: f64) -> Traced {
+    job(
+        "forced_crossing",
+        &format!(
+            r#"set: {{"s": {s:?}}}, start: Settle(at: {{"mu": -0.2}}), follow: (parameter: "mu", from: -0.3, to: 0.4), accuracy: 1e-10"#
+        ),
+    )
+}
+
+/// Exact: q' = mu q - s q^2 - (1 - s) q^3 under a forcing of frequency 1 + mu, the parameter followed, so that the period
+/// changes along both branches. s = 1: the cycles q = 0 and q = mu cross at mu = 0 and exchange stability, multipliers
+/// exp(±mu P). s = 0: the pair q = ±sqrt(mu) is born at mu = 0, multiplier exp(-2 mu P); half a forcing period later a
+/// cycle is the negative of the other, and the one with q = 0 of itself.
+#[test]
+fn crossings_where_the_forcing_depends_on_the_parameter() {
+    let traced = crossing(1.0);
+    assert!(traced.shortfalls.is_empty(), "{:?}", traced.shortfalls);
+    let met = event(&traced, "a/transcritical1");
+    absolute("crossing", met.value, 0.0, 1e-11);
+    assert!(met.value.abs() <= met.error.expect("an error"), "{met:?}");
+    absolute("period", met.period, TAU, 1e-10);
+    for point in &branch(&traced, "a.transcritical1").points {
+        absolute(&format!("mean at mu = {}", point.value), point.means[0], point.value, 1e-9);
+        let exact = -point.value * TAU / (1.0 + point.value);
+        absolute("multiplier", point.multipliers[0].log_modulus, exact, 1e-8);
+    }
+    let traced = crossing(0.0);
+    assert!(traced.shortfalls.is_empty(), "{:?}", traced.shortfalls);
+    let met = event(&traced, "a/pitchfork1");
+    absolute("crossing", met.value, 0.0, 1e-11);
+    assert!(met.value.abs() <= met.error.expect("an error"), "{met:?}");
+    assert_eq!(met.criticality, Some(Criticality::Supercritical));
+    assert!(met.note.contains("x -> -x half a period later"), "{}", met.note);
+    for point in branch(&traced, "a.pitchfork1").points.iter().skip(1) {
+        absolute(&format!("mean at mu = {}", point.value), point.means[0].abs(), point.value.sqrt(), 1e-9);
+        let exact = -2.0 * point.value * TAU / (1.0 + point.value);
+        absolute("multiplier", point.multipliers[0].log_modulus, exact, 1e-8);
     }
 }
