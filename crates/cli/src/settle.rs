@@ -47,6 +47,11 @@ pub fn run(args: &Args) -> ExitCode {
         hint("    help: begin elsewhere (`begin` in the model file) or change the parameters (`--set`)");
         return Exit::Input.into();
     }
+    if let Err(fault) = model.check_forcing(&parameters) {
+        say(&fault);
+        hint(&format!("    help: {}", fault.help()));
+        return Exit::Input.into();
+    }
     let _ = ctrlc::set_handler(|| STOP.store(true, Ordering::Relaxed));
     let forcing_period = model.forcing().map(|forcing| forcing.period(&parameters));
     let options = SettleOptions { transient: args.transient, forcing_period, abort: &STOP, ..SettleOptions::default() };

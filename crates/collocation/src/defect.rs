@@ -23,6 +23,8 @@ struct Stations {
     value: Vec<f64>,
     /// Its derivative there.
     slope: Vec<f64>,
+    /// Where they are.
+    places: Vec<f64>,
     /// `integral[l * (m+1) + k]`: weight of the defect of station k in E at Gauss point l.
     integral: Vec<f64>,
 }
@@ -42,7 +44,7 @@ impl Stations {
             lagrange_at(&tables.nodes, &weights, place, &mut value[of.clone()]);
             lagrange_slopes(&tables.nodes, &weights, &value[of.clone()], &mut slope[of]);
         }
-        Self { len, value, slope, integral: integrals(points, &places) }
+        Self { len, value, slope, integral: integrals(points, &places), places }
     }
 }
 
@@ -85,6 +87,7 @@ pub struct Defects {
     stations: Vec<Option<Stations>>,
     states: Vec<f64>,
     rates: Vec<f64>,
+    times: Vec<f64>,
 }
 
 /// Intervals evaluated together: enough to fill batches, few enough to stay in the cache.
@@ -99,6 +102,7 @@ impl Defects {
             stations: Vec::new(),
             states: Vec::new(),
             rates: Vec::new(),
+            times: Vec::new(),
         }
     }
 
@@ -127,7 +131,10 @@ impl Defects {
         let (n, len) = (self.n, block.len() * stations.len);
         self.states.resize(n * len, 0.0);
         self.rates.resize(n * len, 0.0);
+        self.times.clear();
         for (place, interval) in block.enumerate() {
+            let (from, h) = (cycle.mesh[interval], cycle.mesh[interval + 1] - cycle.mesh[interval]);
+            self.times.extend(stations.places.iter().map(|s| cycle.period * (from + h * s)));
             let nodes = &cycle.nodes[interval * m * n..(interval * m + m + 1) * n];
             for k in 0..stations.len {
                 let basis = &stations.value[k * stations.len..(k + 1) * stations.len];
@@ -137,7 +144,7 @@ impl Defects {
                 }
             }
         }
-        let at = Batch { len, time: &[], states: &self.states, parameters: cycle.parameters };
+        let at = Batch { len, time: &self.times, states: &self.states, parameters: cycle.parameters };
         self.evaluator.rates(at, &mut self.rates);
     }
 

@@ -34,8 +34,10 @@
 //! assert!(before.error > 1e-9 && after.error < 1e-9, "{} {}", before.error, after.error);
 //! ```
 
+mod damped;
 mod defect;
 mod direction;
+mod forced;
 mod gauss;
 mod linear_mesh;
 mod mesh;
@@ -45,7 +47,9 @@ mod system;
 mod tables;
 mod variational;
 
+pub use damped::approach;
 pub use defect::{Collocated, Defects};
+pub use forced::Forced;
 pub use gauss::{gauss, radau};
 pub use linear_mesh::TooStiff;
 pub use mesh::{

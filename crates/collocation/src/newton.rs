@@ -1,7 +1,7 @@
 //! Newton's method on the bordered cycle problem.
 //!
 //! Unknowns (u, T, p); equations: collocation, closure u(1) = u(0), the integral phase condition relative to a
-//! reference on the same mesh, and one [`Closing`]. Full steps; the contraction of the first two corrections is
+//! reference on the same mesh (under a forcing, its period instead), and one [`Closing`]. Full steps; the contraction of the first two corrections is
 //! reported, since stride control lives on it (Deuflhard 2004, Newton Methods for Nonlinear Problems, sec. 5.1).
 
 use armilla_linalg::{Bordered, Right, Shape};
@@ -121,9 +121,9 @@ pub struct Workspace {
     core: Vec<f64>,
     /// What everything here is sized for.
     shape: Option<Shape>,
-    step: Option<Row>,
+    pub(crate) step: Option<Row>,
     row: Option<Row>,
-    phase: Vec<f64>,
+    pub(crate) phase: Vec<f64>,
     gap: Vec<f64>,
 }
 
@@ -194,6 +194,7 @@ pub fn correct_with(
             Verdict::Go | Verdict::Last => {}
         }
         at.add(1.0, workspace.step.as_ref().expect("fitted above"));
+        system.keep_time(at);
         if !(at.period > 0.0) {
             return Err(Failure::NegativePeriod);
         }
@@ -316,16 +317,17 @@ impl Workspace {
         let closing_residual = self.step(system, at, reference, closing)?;
         let step = self.step.as_ref().expect("fitted above");
         at.add(1.0, step);
+        system.keep_time(at);
         Ok(Iteration { correction: self.size(system), closing_residual })
     }
 
     /// Scaled size of the last step.
-    fn size(&self, system: &System) -> f64 {
+    pub(crate) fn size(&self, system: &System) -> f64 {
         let step = self.step.as_ref().expect("fitted before");
         system.spec().metric.inner(system.tables(), system.mesh(), step, step).sqrt()
     }
 
-    fn fit(&mut self, system: &System) {
+    pub(crate) fn fit(&mut self, system: &System) {
         let shape = system.shape();
         let len = shape.nodes_len();
         if self.shape == Some(shape) {
@@ -341,7 +343,7 @@ impl Workspace {
     }
 
     /// Linearises at the iterate and leaves the Newton correction in `self.step`; returns the closing's residual.
-    fn step(
+    pub(crate) fn step(
         &mut self,
         system: &mut System,
         at: &Iterate,
@@ -356,7 +358,8 @@ impl Workspace {
         system.parameter_column(bordered.column_mut(1));
         bordered.row_mut(0).copy_from_slice(&self.phase);
         bordered.row_mut(1).copy_from_slice(&row.nodes);
-        bordered.corner_mut().copy_from_slice(&[0.0, 0.0, row.period, row.parameter]);
+        let [by_period, by_parameter] = system.phase_corner();
+        bordered.corner_mut().copy_from_slice(&[by_period, by_parameter, row.period, row.parameter]);
         self.core.iter_mut().zip(system.residual()).for_each(|(c, r)| *c = -r);
         let n = system.n();
         let len = at.nodes.len();
@@ -365,7 +368,7 @@ impl Workspace {
         for (a, value) in self.gap.iter_mut().enumerate() {
             *value = at.nodes[a] - at.nodes[len - n + a];
         }
-        let phase: f64 = self.phase.iter().zip(at.nodes.iter().zip(reference)).map(|(p, (u, r))| p * (r - u)).sum();
+        let phase = system.phase_gap(at, (&self.phase, reference));
         let mut scalars = [0.0; 2];
         let right = Right { core: &self.core, closing: &self.gap, border: &[phase, -residual] };
         bordered.prepare_and_solve(system.cyclic(), 1.0, right, (&mut step.nodes, &mut scalars))?;

@@ -4,12 +4,16 @@
 //! so a residual is an increment of the state over the interval. Blocks go to [`armilla_linalg::Cyclic`]; the
 //! columns of the period and of the parameter are `-h_i f` and `-h_i T f_p`.
 //! Batches run over all Gauss points at once, point i m + k, structure of arrays.
+//!
+//! Under a forcing the rates are taken at the real time `t = T tau`. The column of the period gains `-h_i t f_t`, and what
+//! fixes the phase is not a row over the nodes but `(T - k P(p)) / T0 = 0`, k forcing periods P: see [`crate::Forced`].
 
 use std::sync::Arc;
 
 use armilla_linalg::{Cyclic, Shape, Singular};
 use armilla_model::{Batch, Column, Direction, Evaluator, Gradient, Linearisation, NotProvided, VectorField};
 
+use crate::forced::Forced;
 use crate::metric::Metric;
 use crate::tables::Tables;
 
@@ -139,6 +143,12 @@ pub struct System {
     rates: Vec<f64>,
     jacobian: Vec<f64>,
     free_column: Vec<f64>,
+    /// The forcing; none where the rates do not use the time.
+    forced: Option<Forced>,
+    /// Times of the Gauss points; empty without a forcing.
+    times: Vec<f64>,
+    /// Column of the period per unit of h, `f + t f_t`; empty without a forcing.
+    period_rates: Vec<f64>,
     residual: Vec<f64>,
     psi_points: Vec<f64>,
     variation_points: Vec<f64>,
@@ -152,7 +162,8 @@ pub struct System {
 impl System {
     /// A system for degree `degree` (one of [`crate::DEGREES`]) on `mesh` (N+1 points ascending from 0 to 1).
     pub fn new(spec: SystemSpec, degree: usize, mesh: &[f64]) -> Self {
-        let evaluator = spec.field.evaluator(&[Column::Parameter(spec.free)]);
+        let columns = [Column::Parameter(spec.free), Column::Time];
+        let evaluator = spec.field.evaluator(if spec.field.is_forced() { &columns } else { &columns[..1] });
         let pattern = spec.field.pattern();
         let entries: Vec<(usize, usize)> = pattern.entries().collect();
         let shape = Shape { n: spec.field.n_states(), inner: 0, intervals: 1 };
@@ -168,6 +179,9 @@ impl System {
             rates: Vec::new(),
             jacobian: Vec::new(),
             free_column: Vec::new(),
+            forced: None,
+            times: Vec::new(),
+            period_rates: Vec::new(),
             residual: Vec::new(),
             psi_points: Vec::new(),
             variation_points: Vec::new(),
@@ -198,12 +212,13 @@ impl System {
         self.states.resize(n * points, 0.0);
         self.rates.resize(n * points, 0.0);
         self.jacobian.resize(self.entries.len() * points, 0.0);
-        self.free_column.resize(n * points, 0.0);
+        let columns = if self.spec.field.is_forced() { 2 } else { 1 };
+        self.free_column.resize(columns * n * points, 0.0);
         self.residual.resize(shape.core_len(), 0.0);
         self.psi_points.resize(n * points, 0.0);
         self.variation_points.resize(n * points, 0.0);
         self.gradient_states.resize(n * points, 0.0);
-        self.gradient_columns.resize(points, 0.0);
+        self.gradient_columns.resize(columns * points, 0.0);
     }
 
     /// Number of states.
@@ -217,6 +232,15 @@ impl System {
     /// Changes the metric of scaled norms and of the phase condition.
     pub fn set_metric(&mut self, metric: Metric) {
         self.spec.metric = metric;
+    }
+    /// Makes the cycles of this system last `periods` forcing periods each: to be said before anything else where the rates
+    /// use the time.
+    pub fn set_forcing(&mut self, periods: usize) {
+        self.forced = self.spec.field.is_forced().then_some(Forced { periods });
+    }
+    /// The forcing, where there is one.
+    pub fn forced(&self) -> Option<Forced> {
+        self.forced
     }
     /// Basis tables.
     pub fn tables(&self) -> &'static Tables {
@@ -277,11 +301,35 @@ impl System {
         self.nodes.clear();
         self.nodes.extend_from_slice(&at.nodes);
         to_points(self.tables, self.spec.metric.scales.len(), &at.nodes, &mut self.states);
-        let batch = Batch { len: points, time: &[], states: &self.states, parameters: &self.spec.parameters };
+        if self.spec.field.is_forced() {
+            self.set_times();
+        }
+        let batch = Batch { len: points, time: &self.times, states: &self.states, parameters: &self.spec.parameters };
         let out =
             Linearisation { rates: &mut self.rates, jacobian: &mut self.jacobian, columns: &mut self.free_column };
         self.evaluator.linearise(batch, out);
+        if self.spec.field.is_forced() {
+            self.set_period_rates();
+        }
         self.find_not_finite()
+    }
+
+    fn set_times(&mut self) {
+        self.times.clear();
+        for pair in self.mesh.windows(2) {
+            let (from, h) = (pair[0], pair[1] - pair[0]);
+            self.times.extend(self.tables.points.iter().map(|c| self.period * (from + h * c)));
+        }
+    }
+
+    /// `f + t f_t`: what the period moves, the times with it.
+    fn set_period_rates(&mut self) {
+        let points = self.points();
+        self.period_rates.clear();
+        let slopes = &self.free_column[self.n() * points..];
+        self.period_rates.extend(
+            self.rates.iter().zip(slopes).enumerate().map(|(k, (rate, slope))| rate + self.times[k % points] * slope),
+        );
     }
 
     fn find_not_finite(&self) -> Result<(), Fault> {
@@ -289,7 +337,7 @@ impl System {
         let bad = |values: &[f64]| values.iter().position(|value| !value.is_finite());
         let found = bad(&self.rates)
             .or_else(|| bad(&self.free_column))
-            .map(|place| (place / points, place % points))
+            .map(|place| (place / points % self.n(), place % points))
             .or_else(|| bad(&self.jacobian).map(|place| (self.entries[place / points].0, place % points)));
         let Some((state, point)) = found else { return Ok(()) };
         let (i, k) = (point / self.tables.degree, point % self.tables.degree);
@@ -369,6 +417,18 @@ impl System {
             }
         }
         self.add_jacobian_sizes(&self.states, out);
+        self.add_time_sizes(out);
+    }
+
+    /// Adds `h T |t f_t|` to all rows under a forcing: the rate is taken at a rounded time.
+    fn add_time_sizes(&self, out: &mut [f64]) {
+        let (n, m, points) = (self.n(), self.tables.degree, self.points());
+        for (point, time) in self.times.iter().enumerate() {
+            let step = self.h(point / m) * self.period * time;
+            for a in 0..n {
+                out[point * n + a] += (step * self.free_column[(n + a) * points + point]).abs();
+            }
+        }
     }
 
     /// Adds `h T Sum_b |A_ab v_b|` to all rows, v given at the Gauss points.
@@ -401,9 +461,9 @@ impl System {
         self.add_jacobian_sizes(&self.variation_points, out);
     }
 
-    /// Writes the column of the period, `-h_i f`, over all interval rows.
+    /// Writes the column of the period, `-h_i f`, or `-h_i (f + t f_t)` under a forcing, over all interval rows.
     pub fn period_column(&self, out: &mut [f64]) {
-        self.spread(&self.rates, 1.0, out);
+        self.spread(if self.forced.is_some() { &self.period_rates } else { &self.rates }, 1.0, out);
     }
 
     /// Writes the column of the free parameter, `-h_i T f_p`.
@@ -424,11 +484,15 @@ impl System {
         }
     }
 
-    /// The phase row `Int <u, W r'> dt` over the nodes, r the reference on the same mesh, W = 1/scale^2.
+    /// The phase row `Int <u, W r'> dt` over the nodes, r the reference on the same mesh, W = 1/scale^2; zero under a
+    /// forcing, whose row has its entries in [`System::phase_corner`] alone.
     pub fn phase_row(&self, reference: &[f64], out: &mut [f64]) {
         let (n, m) = (self.n(), self.tables.degree);
         let size = m + 1;
         out.fill(0.0);
+        if self.forced.is_some() {
+            return;
+        }
         for i in 0..self.mesh.len() - 1 {
             let nodes = &reference[i * m * n..(i * m + size) * n];
             for k in 0..m {
@@ -446,6 +510,20 @@ impl System {
         }
     }
 
+    /// Part of a variation along the columns of the evaluator at all Gauss points: the parameter, and under a forcing the
+    /// time `S tau`, which the period moves. Empty where there is none.
+    fn along_columns(&self, variation: Variation<'_>) -> Vec<f64> {
+        let points = self.points();
+        if variation.parameter == 0.0 && (self.forced.is_none() || variation.period == 0.0) {
+            return Vec::new();
+        }
+        let mut along = vec![variation.parameter; points];
+        if self.spec.field.is_forced() {
+            along.extend(self.times.iter().map(|time| variation.period * time / self.period));
+        }
+        along
+    }
+
     /// Row of `-d/dz (psi^T M_z (v, S, q))` at the last linearisation, M (v, S, q) being the rows
     /// `Sum L'_j v_j - h T A v - h S f - h T q f_p`: the exact derivative of a bordered test function (Govaerts 2000, SIAM,
     /// sec. 4.3) by one reverse sweep of the field.
@@ -457,8 +535,8 @@ impl System {
                 self.psi_points[a * points + point] = variation.psi[point * n + a];
             }
         }
-        let batch = Batch { len: points, time: &[], states: &self.states, parameters: &self.spec.parameters };
-        let along = vec![variation.parameter; if variation.parameter == 0.0 { 0 } else { points }];
+        let batch = Batch { len: points, time: &self.times, states: &self.states, parameters: &self.spec.parameters };
+        let along = self.along_columns(variation);
         let direction = Direction { states: &self.variation_points, columns: &along };
         let gradient = Gradient { states: &mut self.gradient_states, columns: &mut self.gradient_columns };
         self.evaluator.second_gradient(batch, &self.psi_points, direction, gradient);
@@ -473,6 +551,10 @@ impl System {
                 *value = h * self.period * self.gradient_states[a * points + point];
             }
             out.parameter += h * self.period * self.gradient_columns[point];
+            if self.forced.is_some() {
+                // The times move with the period: `h T tau d/dt (psi^T A v)`.
+                out.period += h * self.times[point] * self.gradient_columns[points + point];
+            }
             for (entry, &(a, b)) in self.entries.iter().enumerate() {
                 let product = h * self.psi_points[a * points + point] * self.jacobian[entry * points + point];
                 covector[b] += variation.period * product;
@@ -483,6 +565,12 @@ impl System {
                 let product = h * psi * self.free_column[a * points + point];
                 out.parameter += variation.period * product;
                 out.period += variation.parameter * product;
+                if self.forced.is_some() {
+                    // From the rate and from its factor T: `h S tau f_t` each.
+                    let share = self.times[point] / self.period;
+                    let by_time = h * psi * self.free_column[(n + a) * points + point];
+                    out.period += 2.0 * variation.period * share * by_time;
+                }
             }
             for j in 0..size {
                 let value = self.tables.value[k * size + j];
@@ -500,7 +588,7 @@ impl System {
         let (n, len) = (self.n(), self.points());
         to_points(self.tables, n, u, &mut self.psi_points);
         to_points(self.tables, n, v, &mut self.variation_points);
-        let at = Batch { len, time: &[], states: &self.states, parameters: &self.spec.parameters };
+        let at = Batch { len, time: &self.times, states: &self.states, parameters: &self.spec.parameters };
         let u = Direction { states: &self.psi_points, columns: &[] };
         let v = Direction { states: &self.variation_points, columns: &[] };
         self.evaluator.second(at, u, v, &mut self.gradient_states);
@@ -514,7 +602,7 @@ impl System {
     pub fn cubic(&mut self, v: &[f64], out: &mut [f64]) -> Result<(), NotProvided> {
         let (n, len) = (self.n(), self.points());
         to_points(self.tables, n, v, &mut self.variation_points);
-        let at = Batch { len, time: &[], states: &self.states, parameters: &self.spec.parameters };
+        let at = Batch { len, time: &self.times, states: &self.states, parameters: &self.spec.parameters };
         let v = Direction { states: &self.variation_points, columns: &[] };
         self.evaluator.third(at, [v, v, v], &mut self.gradient_states)?;
         by_point(n, &self.gradient_states, out);
@@ -532,7 +620,7 @@ impl System {
         // Asked at located events only, so the third direction may have storage of its own.
         let mut third = vec![0.0; n * len];
         to_points(self.tables, n, w, &mut third);
-        let at = Batch { len, time: &[], states: &self.states, parameters: &self.spec.parameters };
+        let at = Batch { len, time: &self.times, states: &self.states, parameters: &self.spec.parameters };
         let along = |states| Direction { states, columns: &[] };
         let directions = [along(&self.psi_points[..]), along(&self.variation_points[..]), along(&third[..])];
         self.evaluator.third(at, directions, &mut self.gradient_states)?;
@@ -564,9 +652,17 @@ impl System {
         by_point(self.n(), &self.rates, out);
     }
 
-    /// Derivatives of the rates in the free parameter at all Gauss points, as [`System::quadratic`].
+    /// Derivatives of the rates in the free parameter at all Gauss points, as [`System::quadratic`]; under a forcing with
+    /// what the change of its period does, `f_p + (f + t f_t) T_p / T`.
     pub fn parameter_rates(&self, out: &mut [f64]) {
-        by_point(self.n(), &self.free_column, out);
+        by_point(self.n(), &self.free_column[..self.rates.len()], out);
+        let Some([_, slope, _]) = self.forced_period(self.spec.parameters[self.spec.free]) else { return };
+        let (n, points) = (self.n(), self.points());
+        for point in 0..points {
+            for a in 0..n {
+                out[point * n + a] += slope / self.period * self.period_rates[a * points + point];
+            }
+        }
     }
 
     /// `Sum_i h_i Sum_k x_ik . y_ik`: with x a left vector of the rows (adjoint values times Gauss weights) it is the

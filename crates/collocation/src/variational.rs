@@ -23,7 +23,7 @@ pub struct VariationalMaps {
     /// The maps, n x n row-major, in the order of time.
     pub maps: Vec<f64>,
     /// Direction of the trivial multiplier at the start of each map, n numbers each: the rates at mesh points, carried on
-    /// inside.
+    /// inside. Under a forcing no multiplier is trivial and these are mere rates.
     pub flow: Vec<f64>,
     /// Integral of the divergence over one period.
     pub divergence: f64,
@@ -102,6 +102,7 @@ pub struct Variational {
     evaluator: Box<dyn Evaluator>,
     entries: Vec<(usize, usize)>,
     n: usize,
+    is_forced: bool,
     accurate: Scheme,
     damping: Scheme,
     repelling: Scheme,
@@ -111,6 +112,7 @@ pub struct Variational {
     jacobian: Vec<f64>,
     stages: Lu,
     right: Vec<f64>,
+    times: Vec<f64>,
     places: Vec<(usize, f64)>,
 }
 
@@ -131,6 +133,7 @@ impl Variational {
             evaluator: field.evaluator(&[]),
             entries: field.pattern().entries().collect(),
             n,
+            is_forced: field.is_forced(),
             accurate: Scheme::new(gauss(degree).0),
             damping: Scheme::new(radau(degree)),
             repelling: Scheme::new(radau(degree).iter().rev().map(|c| 1.0 - c).collect()),
@@ -140,6 +143,7 @@ impl Variational {
             jacobian: Vec::new(),
             stages: Lu::new(degree * n),
             right: Vec::new(),
+            times: Vec::new(),
             places: Vec::new(),
         }
     }
@@ -196,8 +200,10 @@ impl Variational {
             }
         }
         self.pass(profile, parameters, &batch, &mut out)?;
-        let directions = Directions { maps: &out.maps, scales };
-        directions.carry(&mut out.flow, plan.cuts.iter().map(|cut| cut.pieces));
+        if !self.is_forced {
+            let directions = Directions { maps: &out.maps, scales };
+            directions.carry(&mut out.flow, plan.cuts.iter().map(|cut| cut.pieces));
+        }
         Ok(out)
     }
 
@@ -241,13 +247,16 @@ impl Variational {
         self.jacobian.resize(self.entries.len() * points, 0.0);
         let mut evaluator = profile.evaluator();
         let mut state = vec![0.0; n];
+        self.times.clear();
         for (point, &(interval, local)) in self.places.iter().enumerate() {
+            let (from, to) = (profile.mesh[interval], profile.mesh[interval + 1]);
+            self.times.push(profile.period * (from + local * (to - from)));
             evaluator.in_interval(interval, local, &mut state);
             for a in 0..n {
                 self.states[a * points + point] = state[a];
             }
         }
-        let batch = Batch { len: points, time: &[], states: &self.states, parameters };
+        let batch = Batch { len: points, time: &self.times, states: &self.states, parameters };
         let out = Linearisation { rates: &mut self.rates, jacobian: &mut self.jacobian, columns: &mut [] };
         self.evaluator.linearise(batch, out);
     }

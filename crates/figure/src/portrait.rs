@@ -6,7 +6,7 @@ use crate::canvas::{Canvas, Pen};
 use crate::caption;
 use crate::error::FigureError;
 use crate::geometry::{Place, at_fraction, length};
-use crate::legend::{Entry, NUMBER_RADIUS, Sample, numbered};
+use crate::legend::{Entry, NUMBER_RADIUS, Sample, dot, numbered};
 use crate::measure::{find, sound};
 use crate::page::{Page, Scale, points};
 use crate::palette::{Ink, ink, lettering};
@@ -42,7 +42,11 @@ pub(crate) fn draw(portrait: &Portrait, branches: &[Branch]) -> Result<String, F
     let mut orbits = chosen(all, &portrait.orbits)?;
     orbits.iter_mut().for_each(|orbit| orbit.line = line(orbit.profile, states));
     let lines: Vec<Vec<Place>> = orbits.iter().map(|orbit| orbit.line.clone()).collect();
-    let window = asked.window(&lines, &[]).ok_or_else(|| nothing_inside(portrait, &lines))?;
+    let window = asked.window(&lines, &[]);
+    // Where nothing moves, as with the zero solution of a linear equation under a forcing, each orbit is a place.
+    let still: Vec<Place> =
+        if window.is_some() { Vec::new() } else { lines.iter().filter_map(|line| place(line)).collect() };
+    let window = window.or_else(|| asked.window(&[], &still)).ok_or_else(|| nothing_inside(portrait, &lines))?;
     let cut: Vec<Line> = orbits
         .iter()
         .enumerate()
@@ -55,10 +59,18 @@ pub(crate) fn draw(portrait: &Portrait, branches: &[Branch]) -> Result<String, F
         unit: first.states[state].unit.clone(),
     };
     let (x, y) = (scale(states.0, (window.left, window.right)), scale(states.1, (window.top, window.bottom)));
-    let page = Page::new(width, &x, &y, legend(&orbits, &cut, left_out));
+    let mut entries = legend(&orbits, &cut, left_out);
+    let black = Ink { color: crate::palette::BLACK, weight: 1.0 };
+    if !still.is_empty() {
+        entries.push(Entry::new(Sample::Dot { ink: black, hollow: false }, "orbits that do not move"));
+    }
+    let page = Page::new(width, &x, &y, entries);
     let mut canvas = page.canvas();
     let strokes: Vec<Stroke> = cut.iter().map(|line| line.on_page(&page, ink(line.owner))).collect();
     stroke::draw(&mut canvas, &strokes);
+    if !still.is_empty() {
+        canvas.group("class=\"dots\"", |pen| still.iter().for_each(|at| dot(pen, black, false, page.place(*at))));
+    }
     canvas.group("class=\"arrows\"", |pen| strokes.iter().for_each(|stroke| arrow(pen, stroke)));
     page.draw(&mut canvas);
     name_orbits(&mut canvas, &page, &strokes, &orbits);
@@ -134,6 +146,12 @@ fn line(profile: &Profile, (right, up): (usize, usize)) -> Vec<Place> {
     }
     line.retain(|(x, y)| sound(x) && sound(y));
     line
+}
+
+/// Where an orbit stays that does not move; none for one that does.
+fn place(line: &[Place]) -> Option<Place> {
+    let first = *line.first()?;
+    line.iter().all(|place| *place == first).then_some(first)
 }
 
 fn legend(orbits: &[Orbit], cut: &[Line], left_out: usize) -> Vec<Entry> {

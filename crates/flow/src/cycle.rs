@@ -49,45 +49,56 @@ impl Cycle {
     /// The cycle on `intervals` mesh intervals with pieces of degree `degree`, the mesh dense where the orbit
     /// moves or bends fast. Both numbers must be at least 1.
     pub fn profile(&self, degree: usize, intervals: usize) -> Profile {
-        let (degree, intervals) = (degree.max(1), intervals.max(1));
-        let mut profile = Profile {
-            n_states: self.orbit.n_states,
-            degree,
-            period: self.orbit.period,
-            mesh: self.mesh(intervals),
-            values: Vec::new(),
-        };
-        let times = profile.node_times();
-        let mut values = vec![0.0; times.len() * profile.n_states];
-        let mut evaluator = self.orbit.evaluator();
-        for (time, chunk) in times.iter().zip(values.chunks_exact_mut(profile.n_states)) {
-            evaluator.at(*time, chunk);
-        }
-        profile.values = values;
-        profile
+        on_mesh_of_motion(&self.orbit, degree, intervals)
     }
+}
 
-    /// Mesh that gives every interval the same share of the three measures.
-    fn mesh(&self, intervals: usize) -> Vec<f64> {
-        let times = self.orbit.node_times();
-        let length = path_length(&self.orbit);
-        let last = times.len() - 1;
-        let total = if length[last] > 0.0 { length[last] } else { 1.0 };
-        let share = |k: usize| BY_LENGTH * length[k] / total + BY_STEPS * k as f64 / last as f64 + BY_TIME * times[k];
-        let whole = share(last);
-        let mut mesh = vec![0.0];
-        let mut k = 0;
-        for i in 1..intervals {
-            let wanted = whole * i as f64 / intervals as f64;
-            while share(k + 1) < wanted {
-                k += 1;
-            }
-            let (low, high) = (share(k), share(k + 1));
-            mesh.push(times[k] + (times[k + 1] - times[k]) * (wanted - low) / (high - low));
-        }
-        mesh.push(1.0);
-        mesh
+/// An orbit on `intervals` mesh intervals with pieces of degree `degree`, the mesh dense where the orbit moves or bends
+/// fast. Both numbers must be at least 1.
+pub fn on_mesh_of_motion(orbit: &Profile, degree: usize, intervals: usize) -> Profile {
+    let (degree, intervals) = (degree.max(1), intervals.max(1));
+    let mut profile = Profile {
+        n_states: orbit.n_states,
+        degree,
+        period: orbit.period,
+        mesh: mesh_of_motion(orbit, intervals),
+        values: Vec::new(),
+    };
+    let times = profile.node_times();
+    let mut values = vec![0.0; times.len() * profile.n_states];
+    let mut evaluator = orbit.evaluator();
+    for (time, chunk) in times.iter().zip(values.chunks_exact_mut(profile.n_states)) {
+        evaluator.at(*time, chunk);
     }
+    profile.values = values;
+    profile
+}
+
+/// Mesh that gives every interval the same share of the three measures.
+fn mesh_of_motion(orbit: &Profile, intervals: usize) -> Vec<f64> {
+    let times = orbit.node_times();
+    let length = path_length(orbit);
+    let last = times.len() - 1;
+    let total = if length[last] > 0.0 { length[last] } else { 1.0 };
+    let share = |k: usize| BY_LENGTH * length[k] / total + BY_STEPS * k as f64 / last as f64 + BY_TIME * times[k];
+    let whole = share(last);
+    let mut mesh = vec![0.0];
+    let mut k = 0;
+    for i in 1..intervals {
+        let wanted = whole * i as f64 / intervals as f64;
+        while share(k + 1) < wanted {
+            k += 1;
+        }
+        let (low, high) = (share(k), share(k + 1));
+        mesh.push(times[k] + (times[k + 1] - times[k]) * (wanted - low) / (high - low));
+    }
+    mesh.push(1.0);
+    mesh
+}
+
+/// Upward crossings of its own mean by the state with the largest relative range over one period: the turns of a cycle.
+pub fn turns_of(orbit: &Profile) -> usize {
+    turns(orbit, &vec![0.0; orbit.n_states]).1
 }
 
 /// Cumulative length of the polygon through the nodes, each state in units of its range.

@@ -101,6 +101,8 @@ pub struct Integrator<'a> {
     previous_state: Vec<f64>,
     previous_slope: Vec<f64>,
     step: f64,
+    /// No step is longer.
+    longest: f64,
     /// At most 1, smaller where Newton's iteration was slow: the next step is shortened by it.
     newton_speed: f64,
     /// Whether the last Jacobian evaluated is that at the state reached.
@@ -146,6 +148,7 @@ impl<'a> Integrator<'a> {
             previous_state: start.1.to_vec(),
             previous_slope: zeros.clone(),
             step: 0.0,
+            longest: f64::INFINITY,
             newton_speed: 1.0,
             has_fresh_jacobian: false,
             end: zeros.clone(),
@@ -185,6 +188,11 @@ impl<'a> Integrator<'a> {
         check_tolerance(&tolerance, self.rates.n())?;
         self.tolerance = tolerance;
         Ok(())
+    }
+
+    /// Longest step from now on: what a motion at rest cannot tell, the times at which a forcing acts.
+    pub fn set_longest_step(&mut self, longest: f64) {
+        self.longest = longest;
     }
 
     /// Time reached.
@@ -271,6 +279,7 @@ impl<'a> Integrator<'a> {
         let mut shrink_only = false;
         loop {
             self.check_limits()?;
+            self.step = self.step.min(self.longest);
             let (error, order) = self.attempt();
             let factor = (SAFETY * self.newton_speed * error.powf(-1.0 / order)).clamp(SHRINKING, GROWTH);
             if error <= 1.0 {

@@ -89,7 +89,7 @@ mod tangent;
 mod test_models;
 mod verdict;
 
-pub use cycle::Cycle;
+pub use cycle::{Cycle, on_mesh_of_motion, turns_of};
 pub use equilibrium::Equilibrium;
 pub use error::FlowError;
 pub use integrator::{Integrator, Limits, Method, Stats, Tolerance};

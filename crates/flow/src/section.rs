@@ -123,10 +123,11 @@ fn land_on_level(integrator: &mut Integrator<'_>, place: f64, state_index: usize
 
 fn multiples(integrator: &mut Integrator<'_>, period: f64, found: &mut Vec<Return>) {
     let (start, end) = (integrator.previous_time(), integrator.time());
-    let first = (start / period).floor() as i64 + 1;
-    let last = (end / period).floor() as i64;
-    for k in first..=last {
-        let time = k as f64 * period;
+    // Quotients round: a step that begins on a multiple has none there, and none is told twice.
+    let first = (start / period).floor() as i64 - 1;
+    let last = (end / period).floor() as i64 + 1;
+    let times = (first..=last).map(|k| k as f64 * period).filter(|time| *time > start && *time <= end);
+    for time in times {
         let mut state = vec![0.0; integrator.state().len()];
         integrator.land(((time - start) / (end - start)).clamp(0.0, 1.0), &mut state);
         found.push(Return { time, state });
@@ -186,6 +187,34 @@ mod tests {
         for (k, crossing) in found.iter().enumerate() {
             let exact = 2.0 * std::f64::consts::PI * (k + 1) as f64;
             assert!((crossing.time - exact).abs() < 1e-9, "{} {exact}", crossing.time);
+        }
+    }
+
+    /// By hand: steps that end and begin on multiples of the period, whatever the quotients round to.
+    #[test]
+    fn every_multiple_of_a_period_is_met_once() {
+        let field = TestField::new(1, 0, |t, _, _, f, j| {
+            f[0] = t.cos();
+            j[0] = 0.0;
+        })
+        .forced();
+        let abort = AtomicBool::new(false);
+        for number in 1..400 {
+            let period = 60.0 / (250.0 + f64::from(number));
+            let limits = Limits { steps: 100_000, abort: &abort, bound: 1e12 };
+            let start = f64::from(number) * period;
+            let tolerance = Tolerance::uniform(1, 1e-6, 1e-6);
+            let mut integrator =
+                Integrator::new(&field, &[], (start, &[0.0]), tolerance, limits).expect("a good start");
+            integrator.set_longest_step(0.3 * period);
+            let mut found = Vec::new();
+            while integrator.time() < start + 5.5 * period {
+                integrator.advance().expect("nothing stops it");
+                Section::Period { period }.returns(&mut integrator, &mut found);
+            }
+            let times: Vec<f64> = found.iter().map(|found| found.time).collect();
+            let exact: Vec<f64> = (1..=5).map(|k| f64::from(number + k) * period).collect();
+            assert_eq!(times, exact, "{number}");
         }
     }
 }

@@ -29,6 +29,9 @@ const STEP_PART: f64 = 0.01;
 const ROUNDOFF: f64 = 1e-13;
 /// A state whose range is below this part of its size does not move: what is seen of it is roundoff.
 const MOVES: f64 = 1e-10;
+/// Longest step as a share of the forcing period: where the motion rests for the moment, error estimates do not see what
+/// the forcing does next.
+const OF_FORCING: f64 = 0.125;
 /// A state that grows by this factor beyond all states at the start is taken for divergent: far more than
 /// units can differ by, and reached soon where growth is exponential.
 const BOUND: f64 = 1e30;
@@ -72,6 +75,9 @@ pub fn settle(
     let absolute = sizes.iter().map(|size| part * size).collect();
     integrator.set_tolerance(Tolerance { absolute, relative: vec![part; state.len()] })?;
     integrator.restart(0.0, state)?;
+    if let Some(period) = options.forcing_period {
+        integrator.set_longest_step(OF_FORCING * period);
+    }
     let mut settling = Settling::new(integrator, options);
     let verdict = settling.run()?;
     Ok(Settled {

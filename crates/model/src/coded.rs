@@ -6,7 +6,7 @@
 //! can write.
 
 use nalgebra_sparse::pattern::SparsityPattern;
-use num_dual::{Dual64, DualNum, HyperDual64, HyperHyperDual64};
+use num_dual::{Dual2_64, Dual64, DualNum, HyperDual64, HyperHyperDual64};
 use std::sync::Arc;
 
 use crate::compiled::check_columns;
@@ -23,6 +23,11 @@ pub trait DualRates: Send + Sync + 'static {
     /// Whether the rates use the time.
     fn is_forced(&self) -> bool {
         false
+    }
+
+    /// Period of the forcing of rates that use the time.
+    fn forcing_period<D: DualNum<Primitive = f64> + Copy>(&self, _p: &[D]) -> Option<D> {
+        None
     }
 
     /// Entries of the Jacobian that can differ from zero; none stands for all.
@@ -71,6 +76,13 @@ impl<R: DualRates> VectorField for CodedField<R> {
 
     fn is_forced(&self) -> bool {
         self.rates.is_forced()
+    }
+
+    fn forcing_period(&self, parameters: &[f64], along: usize) -> Option<[f64; 3]> {
+        let slope = |index: usize| if index == along { 1.0 } else { 0.0 };
+        let numbers = parameters.iter().enumerate().map(|(index, value)| Dual2_64::new(*value, slope(index), 0.0));
+        let period = self.rates.forcing_period(&numbers.collect::<Vec<_>>()).filter(|_| self.is_forced())?;
+        Some([period.re, period.v1, period.v2])
     }
 
     fn pattern(&self) -> &SparsityPattern {

@@ -10,7 +10,10 @@ use std::sync::{Arc, Mutex, PoisonError};
 
 use nalgebra_sparse::pattern::SparsityPattern;
 
+use num_dual::Dual2_64;
+
 use crate::derivative::{directional, gradients, reverse_gradient};
+use crate::evaluate::evaluate;
 use crate::field::{Batch, Column, Direction, Evaluator, Gradient, Linearisation, NotProvided, VectorField};
 use crate::graph::{Graph, Node, NodeId, Variable};
 use crate::lower::{Origin, lower};
@@ -41,6 +44,8 @@ struct Shared {
     rates: Vec<NodeId>,
     n_parameters: usize,
     is_forced: bool,
+    /// Period of the forcing, a formula of the parameters.
+    forcing: Option<NodeId>,
     pattern: SparsityPattern,
     maker: Mutex<Maker>,
 }
@@ -81,6 +86,11 @@ enum Sharing {
 impl CompiledField {
     /// Compiles the field whose rates are `rates`, one per state.
     pub fn new(graph: Graph, rates: Vec<NodeId>, n_parameters: usize) -> Self {
+        Self::forced(graph, rates, n_parameters, None)
+    }
+
+    /// The same with the period of the forcing, a formula of the parameters.
+    pub fn forced(graph: Graph, rates: Vec<NodeId>, n_parameters: usize, forcing: Option<NodeId>) -> Self {
         let mut grown = graph.clone();
         let is_state = |variable| matches!(variable, Variable::State(_));
         let mut offsets = vec![0];
@@ -100,7 +110,7 @@ impl CompiledField {
             .expect("gradients are sorted by variable and name states only");
         let is_forced = graph.reachable(&rates).iter().any(|id| graph.node(*id) == Node::Variable(Variable::Time));
         let maker = Mutex::new(Maker { graph: grown, jacobian, programs: HashMap::new() });
-        let shared = Shared { formulas: graph, rates, n_parameters, is_forced, pattern, maker };
+        let shared = Shared { formulas: graph, rates, n_parameters, is_forced, forcing, pattern, maker };
         Self { shared: Arc::new(shared) }
     }
 
@@ -131,6 +141,19 @@ impl VectorField for CompiledField {
 
     fn is_forced(&self) -> bool {
         self.shared.is_forced
+    }
+
+    fn forcing_period(&self, parameters: &[f64], along: usize) -> Option<[f64; 3]> {
+        let period = self.shared.forcing.filter(|_| self.shared.is_forced)?;
+        let value = |variable| match variable {
+            Variable::Parameter(index) => {
+                let slope = if index as usize == along { 1.0 } else { 0.0 };
+                Dual2_64::new(parameters[index as usize], slope, 0.0)
+            }
+            _ => Dual2_64::from(f64::NAN),
+        };
+        let found = evaluate(&self.shared.formulas, &[period], value)[0];
+        Some([found.re, found.v1, found.v2])
     }
 
     fn pattern(&self) -> &SparsityPattern {

@@ -83,6 +83,11 @@ pub trait VectorField: Send + Sync {
     fn n_parameters(&self) -> usize;
     /// Whether the rates use the time.
     fn is_forced(&self) -> bool;
+    /// Period P of the forcing for these parameters, and its first two derivatives in the parameter with index `along`;
+    /// none where the rates do not use the time.
+    fn forcing_period(&self, _parameters: &[f64], _along: usize) -> Option<[f64; 3]> {
+        None
+    }
     /// Sparsity of the Jacobian in the states: n rows, n columns, compressed rows.
     fn pattern(&self) -> &SparsityPattern;
     /// A workspace-owning evaluator whose columns are `columns`, in that order.

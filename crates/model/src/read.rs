@@ -45,11 +45,13 @@ pub(crate) fn read_model(source: Source<'_>) -> Result<Model, Diagnostic> {
     }
 
     let graph = Arc::new(reader.graph);
-    let compiled = Arc::new(CompiledField::new((*graph).clone(), rate_nodes, parameters.len()));
+    let period = forcing.as_ref().map(|(node, _)| *node);
+    let compiled = Arc::new(CompiledField::forced((*graph).clone(), rate_nodes, parameters.len(), period));
     let text_of = |entry: &FormulaEntry| Formula { name: entry.name.text.clone(), text: entry.formula.text.clone() };
     let rate_index = by_name(&rates);
     let rate_text = |state: &State| rate_index.get(state.name.as_str()).map(|at| text_of(&rates[*at]));
-    Ok(Model {
+    let place = forcing.as_ref().map(|(_, located)| located.whole());
+    let model = Model {
         title: file.title,
         note: file.note,
         rates: states.iter().filter_map(rate_text).collect(),
@@ -62,7 +64,11 @@ pub(crate) fn read_model(source: Source<'_>) -> Result<Model, Diagnostic> {
         field: compiled.clone(),
         compiled: Some(compiled),
         named,
-    })
+    };
+    match (model.check_forcing(&model.values()), place) {
+        (Err(fault), Some(place)) => Err(Diagnostic::new(source, place, fault.to_string()).with_help(fault.help())),
+        _ => Ok(model),
+    }
 }
 
 /// A formula of the file with the name that it defines.

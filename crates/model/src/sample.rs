@@ -90,7 +90,7 @@ pub(crate) struct Random(pub u64);
 
 impl Random {
     /// Uniform in [-1, 1).
-    fn symmetric(&mut self) -> f64 {
+    pub(crate) fn symmetric(&mut self) -> f64 {
         self.0 = self.0.wrapping_add(0x9e37_79b9_7f4a_7c15);
         let mut z = self.0;
         z = (z ^ (z >> 30)).wrapping_mul(0xbf58_476d_1ce4_e5b9);

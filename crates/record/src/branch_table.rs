@@ -64,7 +64,7 @@ fn table(out: &mut dyn Write, branch: &Branch) -> io::Result<()> {
     writer.write_record(branch_columns(branch))?;
     let (n_states, n_multipliers, n_eigenvalues) = (branch.states.len(), n_multipliers(branch), n_eigenvalues(branch));
     for (k, point) in branch.points.iter().enumerate() {
-        let cells = first_cells(k, point).into_iter();
+        let cells = first_cells(k, point, n_states).into_iter();
         let states = (0..n_states).flat_map(|i| [&point.maxima, &point.minima, &point.means].map(|all| all.get(i)));
         let multipliers = (0..n_multipliers).flat_map(|i| {
             let multiplier = point.multipliers.get(i);
@@ -80,7 +80,12 @@ fn table(out: &mut dyn Write, branch: &Branch) -> io::Result<()> {
     writer.flush()
 }
 
-fn first_cells(k: usize, point: &Point) -> [String; FIRST_COLUMNS.len()] {
+/// Under a forcing as many multipliers as states are there, and none is trivial.
+fn has_trivial_multiplier(point: &Point, n_states: usize) -> bool {
+    point.multipliers.len() + point.unresolved.map_or(0, |unresolved| unresolved.count) < n_states
+}
+
+fn first_cells(k: usize, point: &Point, n_states: usize) -> [String; FIRST_COLUMNS.len()] {
     [
         k.to_string(),
         cell(Some(point.value)),
@@ -88,7 +93,7 @@ fn first_cells(k: usize, point: &Point) -> [String; FIRST_COLUMNS.len()] {
         point.turns.to_string(),
         point.is_stable().to_string(),
         point.unstable_count.to_string(),
-        cell(Some(point.trivial_defect)),
+        cell(has_trivial_multiplier(point, n_states).then_some(point.trivial_defect)),
         cell(Some(point.liouville_defect)),
         cell(Some(point.profile_error)),
     ]

@@ -7,7 +7,8 @@
 //! results that are to be replaced last until new ones are complete.
 //!
 //! This crate does not know how any number arose: no model, no solver, no figure. It does not know
-//! what a study asks either; `study.ron` is text to it. It is the one writer of files of the project.
+//! what a study asks either; `study.ron` is text to it. It is the one writer of files of the project, and the reader of tables
+//! of samples ([`read_samples`]).
 //!
 //! # Example
 //!
@@ -92,6 +93,7 @@ mod point;
 mod profile;
 mod results;
 mod results_read;
+mod samples;
 mod seal;
 mod threshold;
 
@@ -109,4 +111,5 @@ pub use journal::{Journal, JournalContent, JournalEntry};
 pub use point::{Eigenvalue, MeshReason, Multiplier, Point, Reached, Unresolved};
 pub use profile::{Evaluator, Profile, ProfileFault, barycentric_weights, lagrange_at, node_quadrature, nodes};
 pub use results::Results;
+pub use samples::{Samples, SamplesError, parse_samples, read_samples};
 pub use threshold::{THRESHOLD_COLUMNS, Threshold, parse_threshold_table, write_threshold_table};

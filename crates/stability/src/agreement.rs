@@ -13,9 +13,9 @@ use armilla_record::{Multiplier, Unresolved};
 /// What one linear mesh gives.
 #[derive(Clone, Debug)]
 pub(crate) struct Reading {
-    /// The n-1 multipliers besides the trivial one, largest modulus first.
+    /// The multipliers besides the trivial one, largest modulus first.
     pub multipliers: Vec<Multiplier>,
-    /// Logarithm of the trivial one.
+    /// Logarithm of the trivial one, 0 where there is none.
     pub trivial: f64,
     /// Integral of the divergence.
     pub divergence: f64,

@@ -2,7 +2,7 @@
 //!
 //! The phase of each cycle of a branch is that nearest to its neighbour's. Round a closed branch these shifts need not add
 //! up to none, as a vector carried round a loop on a sphere does not come back as it left: a cycle met again may begin
-//! elsewhere on the same orbit. The shift is looked for on equidistant samples of both, then by golden section.
+//! elsewhere on the same orbit. Under a forcing whole forcing periods are the only shifts. The shift is looked for on equidistant samples of both, then by golden section.
 
 use armilla_collocation::Iterate;
 use armilla_record::Profile;
@@ -34,7 +34,10 @@ impl CycleProblem {
             return None;
         }
         let (profile, wanted) = (self.profile(point), self.profile(to));
-        let shift = self.best_shift(&profile, &wanted);
+        let shift = match self.system.forced() {
+            Some(_) => self.best_of_shifts(&profile, &wanted, self.periods_of(point)),
+            None => self.best_shift(&profile, &wanted),
+        };
         let mut evaluator = profile.evaluator();
         let mut nodes = vec![0.0; wanted.values.len()];
         for (node, time) in nodes.chunks_exact_mut(profile.n_states).zip(wanted.node_times()) {
@@ -65,6 +68,13 @@ impl CycleProblem {
             if exactly(a) < exactly(b) { high = b } else { low = a }
         }
         0.5 * (low + high)
+    }
+
+    /// Sum of squared distances of a profile, shifted, from another one at equidistant times.
+    pub(crate) fn apart(&self, profile: &Profile, wanted: &Profile, shift: f64) -> f64 {
+        let count = (2 * wanted.intervals()).clamp(SAMPLES.0, SAMPLES.1);
+        let (here, there) = (self.samples(profile, shift, count), self.samples(wanted, 0.0, count));
+        here.iter().zip(&there).map(|(a, b)| (a - b).powi(2)).sum()
     }
 
     /// States at equidistant times from a shift on, each in units of its scale.

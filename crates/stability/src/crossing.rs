@@ -154,6 +154,7 @@ impl CycleProblem {
             let verdict = judge(size, before, settings);
             if matches!(verdict, Verdict::Go | Verdict::Last) {
                 point.unknowns.add(1.0, &step);
+                self.system.keep_time(&mut point.unknowns);
                 unfolding += change;
             }
             if verdict == Verdict::Lost {

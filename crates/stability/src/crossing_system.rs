@@ -24,6 +24,8 @@ pub(crate) struct CrossingSystem {
     /// phi_1, phi_2.
     directions: [Row; 2],
     psi: Vec<f64>,
+    /// Left multiplier of the row that fixes the phase.
+    psi_phase: f64,
     /// g_1, g_2.
     values: [f64; 2],
     gradients: [Row; 2],
@@ -58,6 +60,7 @@ impl CrossingSystem {
             border_column: vec![0.0; shape.core_len()],
             directions: [row(), row()],
             psi: vec![0.0; shape.core_len()],
+            psi_phase: 0.0,
             values: [0.0; 2],
             gradients: [row(), row()],
         };
@@ -143,12 +146,13 @@ impl CrossingSystem {
         }
         let mut chi = [0.0; 3];
         self.bordered.solve_transposed(system.cyclic(), &[], &[0.0, 0.0, 1.0], &mut self.psi, &mut chi);
+        self.psi_phase = chi[0];
         Ok(())
     }
 
     /// `-psi^T H_zz phi` of a direction as a row.
     pub(crate) fn gradient_along(&self, system: &mut System, direction: &Row, out: &mut Row) {
-        gradient_along(system, &self.psi, direction, out);
+        gradient_along(system, (&self.psi, self.psi_phase), direction, out);
     }
 
     /// The Newton correction of (z, beta) at the system's last linearisation, which was at `at`.
@@ -160,14 +164,14 @@ impl CrossingSystem {
     ) -> Result<Correction, Fault> {
         self.solve(system)?;
         for (direction, gradient) in self.directions.iter().zip(&mut self.gradients) {
-            gradient_along(system, &self.psi, direction, gradient);
+            gradient_along(system, (&self.psi, self.psi_phase), direction, gradient);
         }
         prepare(&mut self.newton, (&self.phase, &self.border_column, &self.gradients), system)?;
         let core: Vec<f64> =
             system.residual().iter().zip(&self.border_column).map(|(r, b)| -(r + unfolding * b)).collect();
         let (n, len) = (system.n(), at.nodes.len());
         let gap: Vec<f64> = (0..n).map(|a| at.nodes[a] - at.nodes[len - n + a]).collect();
-        let phase: f64 = self.phase.iter().zip(at.nodes.iter().zip(reference)).map(|(p, (u, r))| p * (r - u)).sum();
+        let phase = system.phase_gap(at, (&self.phase, reference));
         let border = [phase, -self.values[0], -self.values[1]];
         let mut step = Row::zero(len);
         let mut scalars = [0.0; 3];
@@ -198,9 +202,11 @@ impl CrossingSystem {
     }
 }
 
-fn gradient_along(system: &mut System, psi: &[f64], direction: &Row, out: &mut Row) {
+fn gradient_along(system: &mut System, (psi, phase): (&[f64], f64), direction: &Row, out: &mut Row) {
     let Row { nodes, period, parameter } = direction;
     system.variation_gradient(Variation { psi, nodes, period: *period, parameter: *parameter }, out);
+    // The row that fixes the phase bends where the period of a forcing does.
+    out.parameter += phase * system.phase_bend() * parameter;
 }
 
 /// Factors the cycle's equations bordered by the unfolding column, the phase row and two more rows.
@@ -214,6 +220,7 @@ fn prepare(
     bordered.column_mut(UNFOLDING).copy_from_slice(column);
     bordered.row_mut(0).copy_from_slice(phase);
     bordered.corner_mut().fill(0.0);
+    bordered.corner_mut()[..2].copy_from_slice(&system.phase_corner());
     for (j, row) in rows.iter().enumerate() {
         bordered.row_mut(1 + j).copy_from_slice(&row.nodes);
         bordered.corner_mut()[3 * (1 + j)..3 * (1 + j) + 2].copy_from_slice(&[row.period, row.parameter]);

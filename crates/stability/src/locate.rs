@@ -165,8 +165,34 @@ impl CycleProblem {
         Ok((report, function))
     }
 
-    /// The event again with every interval halved: the better value, and the difference as the error of it.
+    /// The event on finer and finer meshes until its value has the wanted accuracy. Once is enough as a rule; the mesh of a
+    /// cycle that hardly moves is chosen by that, and its critical motion may ask for more.
     fn refine_event(
+        &mut self,
+        kind: CriticalKind,
+        coarse: &CyclePoint,
+    ) -> Result<(CyclePoint, f64, f64, NullVectors), NewtonFailure> {
+        /// Halvings of every interval.
+        const ROUNDS: usize = 6;
+        /// Share of its error that a threshold must lose with a finer mesh, or roundoff is reached.
+        const GAIN: f64 = 0.5;
+        let mut best = self.refine_event_once(kind, coarse)?;
+        for _ in 1..ROUNDS {
+            let (point, error) = (best.0.clone(), best.1);
+            let wanted = self.settings.mesh.accuracy * point.unknowns.parameter.abs().max(self.metric.parameter_scale);
+            if error <= wanted || 2 * point.intervals() > self.settings.mesh.most {
+                break;
+            }
+            match self.refine_event_once(kind, &point) {
+                Ok(finer) if finer.1 < GAIN * error => best = finer,
+                _ => break,
+            }
+        }
+        Ok(best)
+    }
+
+    /// The event again with every interval halved: the better value, and the difference as the error of it.
+    fn refine_event_once(
         &mut self,
         kind: CriticalKind,
         coarse: &CyclePoint,
@@ -193,7 +219,12 @@ impl CycleProblem {
     /// Numbers converge at least as fast as the profile, mostly with twice its order, and how fast the profile converges
     /// is measured on these two meshes; `CANCELLING` is the margin. Where the profile gains nothing, all of it.
     pub fn left_over(&mut self, coarse: &CyclePoint, fine: &CyclePoint) -> f64 {
-        let gain = self.estimate(fine).error / self.estimate(coarse).error;
+        let before = self.estimate(coarse).error;
+        // What is no larger than rounding tells of no convergence: a motion that does not move is exact on every mesh.
+        if before <= self.left_by_newton(coarse) {
+            return 1.0;
+        }
+        let gain = self.estimate(fine).error / before;
         // Written so that NaN leaves all.
         if gain * CANCELLING < 1.0 { gain * CANCELLING } else { 1.0 }
     }

@@ -31,7 +31,7 @@ impl CycleProblem {
             return false;
         }
         let mut corrected = guess;
-        if self.correct_at(&mut corrected, cycle.unknowns.parameter).is_err() {
+        if self.correct_foreign(&mut corrected, cycle.unknowns.parameter).is_err() {
             return false;
         }
         let Some(count) = copies(cycle.unknowns.period / corrected.unknowns.period) else { return false };

@@ -7,6 +7,10 @@
 //!   `Int <phi*,h> = 0`, `c = 1/6 Int <v*, C(v,v,v) + 3 B(v,h) - 6 a A v>`, v and v* antiperiodic, `Int <v,v> = 1`,
 //!   `Int <v*,v> = 1`. c < 0: the doubled cycle is born stable (supercritical).
 //!
+//! Under a forcing there is no shift in time to split off: phi* = 0, a = 0, S = 0, and the flow direction is no null vector,
+//! so that h is what it is (the normal form of the period map; Kuznetsov 2004, Elements of Applied Bifurcation Theory,
+//! sec. 5.4). The linear systems give this by themselves, bordered by the column of the period and the row that holds it.
+//!
 //! Source: Kuznetsov, Govaerts, Doedel & Dhooge 2005 (SIAM J. Numer. Anal. 43:1407); Iooss 1988 (J. Differential
 //! Equations 76:47). Left vectors of the collocation rows are adjoint values times Gauss weights, so every integral
 //! with an adjoint is a plain sum over rows.
@@ -59,7 +63,8 @@ impl CycleProblem {
         let (mut f, mut v, mut av, mut bvv) = (vec![0.0; len], vec![0.0; len], vec![0.0; len], vec![0.0; len]);
         system.rates(&mut f);
         // Node data of the flow direction, to shift v along the orbit until it is orthogonal to f.
-        let nodes = orthogonal_to_flow(system, &located.vectors.nodes, period)?;
+        let raw = &located.vectors.nodes;
+        let nodes = if system.forced().is_some() { raw.clone() } else { orthogonal_to_flow(system, raw, period)? };
         system.values(&nodes, &mut v);
         let size = period * system.integral(&v, &v);
         let psi = &located.vectors.psi;
@@ -133,7 +138,8 @@ fn exponent_slope(system: &mut System, located: &Located, phase: &[f64]) -> Opti
     system.period_column(bordered.column_mut(0));
     system.parameter_column(bordered.column_mut(1));
     bordered.row_mut(0).copy_from_slice(phase);
-    bordered.corner_mut()[3] = 1.0;
+    let [by_period, by_parameter] = system.phase_corner();
+    bordered.corner_mut().copy_from_slice(&[by_period, by_parameter, 0.0, 1.0]);
     bordered.prepare(system.cyclic(), 1.0).ok()?;
     let (mut nodes, mut scalars) = (vec![0.0; phase.len()], [0.0; 2]);
     let right = Right { core: &[], closing: &[], border: &[0.0, 1.0] };
@@ -165,6 +171,7 @@ impl Periodic {
         let mut bordered = Bordered::new(shape, 1);
         system.period_column(bordered.column_mut(0));
         bordered.row_mut(0).copy_from_slice(phase);
+        bordered.corner_mut()[0] = system.phase_corner()[0];
         bordered.prepare(system.cyclic(), 1.0).ok()?;
         let mut psi = vec![0.0; shape.core_len()];
         bordered.solve_transposed(system.cyclic(), &[], &[1.0], &mut psi, &mut [0.0]);

@@ -12,10 +12,11 @@ use armilla_linalg::{Bordered, Right, Shape};
 use armilla_model::VectorField;
 use armilla_record::{MeshReason, Point, Profile, Reached};
 
+use crate::forced::forcing_periods;
 use crate::measure::Measures;
 use crate::point::{CyclePoint, CycleTangent};
 use crate::resolution::Resolution;
-use crate::scale::{STILL, STILL_AT_FIRST, first_metric, natural_sizes};
+use crate::scale::{STILL, STILL_AT_FIRST, first_metric, metric_under_forcing, natural_sizes};
 use crate::spectrum::{Spectrum, SpectrumFault, SpectrumSolver};
 
 /// Index of the fold function in the watch list: the parameter's component of the tangent.
@@ -95,6 +96,8 @@ pub enum StartFault {
     Newton(NewtonFailure),
     /// The profile has no extent: it is an equilibrium.
     NoExtent,
+    /// The rates use the time, and the model states no period of its forcing.
+    NoForcingPeriod,
 }
 
 impl std::fmt::Display for StartFault {
@@ -102,6 +105,7 @@ impl std::fmt::Display for StartFault {
         match self {
             Self::Newton(failure) => failure.fmt(f),
             Self::NoExtent => write!(f, "the start does not move: it is an equilibrium, not a cycle"),
+            Self::NoForcingPeriod => write!(f, "the rates use the time, but the model states no period of its forcing"),
         }
     }
 }
@@ -158,6 +162,17 @@ impl CycleProblem {
         let mut problem = Self::with_metric(spec, settings, Sizes::Natural(STILL_AT_FIRST), &guess, parameter)?;
         let mut point = CyclePoint::from_profile(&guess, parameter);
         problem.correct_at(&mut point, parameter).map_err(StartFault::Newton)?;
+        problem.with_own_sizes(point, parameter)
+    }
+
+    /// A first cycle with the sizes of states read from itself, on a mesh chosen for the accuracy.
+    pub(crate) fn with_own_sizes(
+        self,
+        mut point: CyclePoint,
+        parameter: f64,
+    ) -> Result<(Self, CyclePoint), StartFault> {
+        let settings = self.settings;
+        let mut problem = self;
         // The given profile carries the errors of its origin, the corrected one those of its mesh, the last one next to
         // none: sizes are read anew each time, and what is no larger than the error is no motion.
         for _ in 0..READINGS {
@@ -185,14 +200,20 @@ impl CycleProblem {
                 (natural_sizes(spec.field.as_ref(), &parameters, profile, (&spec.typical, still)), still)
             }
         };
-        let metric = first_metric(profile, (&sizes, still), spec.parameter_scale).ok_or(StartFault::NoExtent)?;
+        let forcing = forcing_periods(spec.field.as_ref(), (&parameters, spec.free), profile.period)?;
+        let metric = if forcing.is_some() {
+            metric_under_forcing(profile, (&sizes, still), spec.parameter_scale)
+        } else {
+            first_metric(profile, (&sizes, still), spec.parameter_scale).ok_or(StartFault::NoExtent)?
+        };
         let system_spec = SystemSpec {
             field: spec.field.clone(),
             parameters: spec.parameters.clone(),
             free: spec.free,
             metric: metric.clone(),
         };
-        let system = System::new(system_spec, profile.degree, &profile.mesh);
+        let mut system = System::new(system_spec, profile.degree, &profile.mesh);
+        system.set_forcing(forcing.unwrap_or(0));
         let defects = Defects::new(spec.field.as_ref());
         Ok(Self {
             spec,
@@ -352,6 +373,7 @@ impl CycleProblem {
         let report = self.newton(point, &reference, &mut closing)?;
         // The linear row meets the value up to rounding; the user asked for the value.
         point.unknowns.parameter = parameter;
+        self.system.keep_time(&mut point.unknowns);
         Ok(report)
     }
 
@@ -500,7 +522,8 @@ impl Problem for CycleProblem {
         self.system.parameter_column(bordered.column_mut(1));
         self.system.phase_row(&point.unknowns.nodes, bordered.row_mut(0));
         bordered.row_mut(1).copy_from_slice(&row.nodes);
-        bordered.corner_mut().copy_from_slice(&[0.0, 0.0, row.period, row.parameter]);
+        let [by_period, by_parameter] = self.system.phase_corner();
+        bordered.corner_mut().copy_from_slice(&[by_period, by_parameter, row.period, row.parameter]);
         bordered.prepare(self.system.cyclic(), 1.0).map_err(|_| Failure::NotConverged)?;
         let mut scalars = [0.0; 2];
         let right = Right { core: &[], closing: &[], border: &[0.0, 1.0] };
@@ -562,7 +585,7 @@ impl Problem for CycleProblem {
 }
 
 /// The profile itself where its degree is allowed, or the same cycle with the nearest allowed one.
-fn within_degrees(profile: &Profile, (low, high): (usize, usize)) -> Profile {
+pub(crate) fn within_degrees(profile: &Profile, (low, high): (usize, usize)) -> Profile {
     let degree = profile.degree.clamp(low, high);
     if degree == profile.degree {
         return profile.clone();

@@ -244,7 +244,8 @@ impl CycleProblem {
     /// fail.
     fn liouville_excess(&mut self, point: &CyclePoint) -> Option<f64> {
         let accuracy = self.settings.mesh.accuracy;
-        if self.system.n() == 2 {
+        // A single multiplier is Liouville's formula itself.
+        if self.system.n() == if self.is_forced() { 1 } else { 2 } {
             return None;
         }
         let spectrum = self.known_spectrum(point).ok()?;

@@ -2,10 +2,11 @@
 //!
 //! A state's size is its range over the cycle. A state that does not move (a plane of symmetry, a variable at rest)
 //! has only roundoff for a range; its size is then what its rate could move it by over a period, `T Sum_b |df_a/dx_b|
-//! range_b`, which has the right unit.
+//! range_b`, which has the right unit, and what it could at second order, `T |D^2 f_a[range, range]|`: a state that others move
+//! by their squares has no slope where they rest.
 
 use armilla_collocation::Metric;
-use armilla_model::{Batch, Linearisation, VectorField};
+use armilla_model::{Batch, Direction, Linearisation, VectorField};
 use armilla_record::Profile;
 
 /// A range below this share of the size is roundoff, not motion: Newton's method leaves about 1e-13.
@@ -33,10 +34,18 @@ pub(crate) fn natural_sizes(
         node.iter().enumerate().for_each(|(a, value)| states[a * points + point] = *value);
     }
     let (mut rates, mut jacobian) = (vec![0.0; n * points], vec![0.0; field.pattern().nnz() * points]);
-    let batch = Batch { len: points, time: &[], states: &states, parameters };
+    let time: Vec<f64> = profile.node_times().iter().map(|share| share * profile.period).collect();
+    let batch = Batch { len: points, time: &time, states: &states, parameters };
     let out = Linearisation { rates: &mut rates, jacobian: &mut jacobian, columns: &mut [] };
-    field.evaluator(&[]).linearise(batch, out);
-    let mut sizes = vec![0.0; n];
+    let mut evaluator = field.evaluator(&[]);
+    evaluator.linearise(batch, out);
+    let mut bends = rates;
+    let displaced: Vec<f64> = ranges.iter().flat_map(|range| std::iter::repeat_n(*range, points)).collect();
+    let direction = Direction { states: &displaced, columns: &[] };
+    evaluator.second(batch, direction, direction, &mut bends);
+    let finite =
+        |values: &[f64]| values.iter().filter(|value| value.is_finite()).fold(0.0f64, |most, x| most.max(x.abs()));
+    let mut sizes: Vec<f64> = bends.chunks_exact(points).map(|bends| profile.period * finite(bends)).collect();
     for ((a, b), values) in field.pattern().entries().zip(jacobian.chunks_exact(points)) {
         let largest = values.iter().fold(0.0f64, |largest, value| largest.max(value.abs()));
         if a != b && largest.is_finite() {
@@ -58,6 +67,17 @@ pub(crate) fn natural_sizes(
 
 fn ranges(profile: &Profile) -> Vec<f64> {
     profile.extremes().into_iter().map(|(low, high)| high - low).collect()
+}
+
+/// The metric of a branch under a forcing, whose cycles need not move: a state that neither moves nor has any size is
+/// measured in units, as in an equation that is linear and has no size of its own.
+pub(crate) fn metric_under_forcing(profile: &Profile, (sizes, still): (&[f64], f64), parameter_scale: f64) -> Metric {
+    let known: Vec<f64> = sizes.iter().map(|size| if *size > 0.0 { *size } else { 1.0 }).collect();
+    first_metric(profile, (&known, still), parameter_scale).unwrap_or(Metric {
+        scales: known,
+        period_scale: profile.period,
+        parameter_scale,
+    })
 }
 
 /// The metric of a branch: ranges of `profile`, or `sizes` for states that do not move. None where nothing moves.

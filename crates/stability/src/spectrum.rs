@@ -1,7 +1,7 @@
 //! Floquet multipliers of a cycle from its interval maps.
 //!
 //! The trivial multiplier is taken out by its known vector, the rate at each mesh point: in the orthogonal basis
-//! whose first vector is the (scaled) rate, every interval map is block triangular, and the remaining (n-1) x
+//! whose first vector is the (scaled) rate, every interval map of a free cycle is block triangular, and the remaining (n-1) x
 //! (n-1) blocks go to the periodic Schur form (Fairgrieve & Jepson 1991, SIAM J. Numer. Anal. 28:1446, on why
 //! from the sequence; Bojanczyk, Golub & Van Dooren 1992, Proc. SPIE 1770:31). Two audits come along: how far the
 //! deflated multiplier is from 1, and how far the sum of all log-moduli is from the integral of the divergence
@@ -17,9 +17,10 @@ use crate::agreement::{Reading, Resolved, SideUnknown};
 /// Multipliers of a cycle with their audits.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Spectrum {
-    /// The n-1 multipliers besides the trivial one and those that are not resolved, largest modulus first.
+    /// The multipliers besides the trivial one and those that are not resolved, largest modulus first: n-1 in all, n under a
+    /// forcing, where none is trivial.
     pub multipliers: Vec<Multiplier>,
-    /// |trivial multiplier - 1|.
+    /// |trivial multiplier - 1|, 0 under a forcing.
     pub trivial_defect: f64,
     /// |sum of log-moduli - integral of the divergence|. Where a multiplier is given by that integral: by how much it
     /// may be off, from the trivial multiplier and from how far two linear meshes agree on the others.
@@ -108,6 +109,7 @@ fn distance_to_unit(mu: Multiplier, at: f64) -> f64 {
 /// Computes spectra; owns its workspace.
 pub struct SpectrumSolver {
     variational: Variational,
+    is_forced: bool,
     schur: PeriodicSchur,
     found: Vec<ScaledMultiplier>,
     reduced: Vec<f64>,
@@ -118,13 +120,14 @@ impl SpectrumSolver {
     pub fn new(field: &dyn VectorField, degree: usize) -> Self {
         Self {
             variational: Variational::new(field, degree),
+            is_forced: field.is_forced(),
             schur: PeriodicSchur::new(),
             found: Vec::new(),
             reduced: Vec::new(),
         }
     }
 
-    /// Spectrum of the cycle `profile` of an autonomous field; `scales` are the sizes of the states, `accuracy` the wanted
+    /// Spectrum of the cycle `profile`; `scales` are the sizes of the states, `accuracy` the wanted
     /// agreement with Liouville's formula relative to the sum of all |log mu|, or of two linear meshes: the linear mesh
     /// is refined until it holds.
     ///
@@ -141,7 +144,7 @@ impl SpectrumSolver {
         let mut on = |refinement: f64| self.reading(profile, parameters, (scales, enough * refinement));
         let coarse = on(FINENESS[0])?;
         match () {
-            () if profile.n_states == 2 => Ok(planar(&coarse)),
+            () if coarse.multipliers.len() == 1 => Ok(single(&coarse)),
             () if coarse.dropped == 0 => by_formula(coarse, on, accuracy),
             () => by_comparison(coarse, on, accuracy),
         }
@@ -155,8 +158,13 @@ impl SpectrumSolver {
         (scales, fineness): (&[f64], f64),
     ) -> Result<Reading, SpectrumFault> {
         let maps = self.variational.maps(profile, parameters, scales, fineness).map_err(SpectrumFault::Maps)?;
-        let trivial = deflate(&maps, scales, &mut self.reduced)?;
-        self.schur.multipliers(maps.n - 1, &self.reduced, &mut self.found).map_err(SpectrumFault::NotConverged)?;
+        let (trivial, size) = if self.is_forced {
+            scale_maps(&maps, scales, &mut self.reduced);
+            (0.0, maps.n)
+        } else {
+            (deflate(&maps, scales, &mut self.reduced)?, maps.n - 1)
+        };
+        self.schur.multipliers(size, &self.reduced, &mut self.found).map_err(SpectrumFault::NotConverged)?;
         let multiplier = |mu: &ScaledMultiplier| Multiplier { log_modulus: mu.log_modulus, angle: mu.angle };
         Ok(Reading {
             multipliers: self.found.iter().map(multiplier).collect(),
@@ -168,9 +176,10 @@ impl SpectrumSolver {
     }
 }
 
-/// In the plane Liouville's formula is the multiplier itself, and it is positive: the flow keeps orientation. The audit
+/// A single multiplier (of a free cycle in the plane, or of one state under a forcing) is Liouville's formula itself, and it
+/// is positive: the flow keeps orientation. The audit
 /// then tells how far the interval maps are from it, unless an L-stable scheme is not meant to be near.
-fn planar(reading: &Reading) -> Spectrum {
+fn single(reading: &Reading) -> Spectrum {
     let liouville_defect = if reading.dropped > 0 { reading.trivial.abs() } else { reading.defect() };
     Spectrum {
         multipliers: vec![Multiplier { log_modulus: reading.divergence, angle: 0.0 }],
@@ -242,6 +251,13 @@ fn by_comparison(
 
 /// Refinements of the linear mesh tried in turn.
 const FINENESS: [f64; 4] = [1.0, 2.0, 4.0, 8.0];
+
+/// The maps in units of the states.
+fn scale_maps(maps: &VariationalMaps, scales: &[f64], scaled: &mut Vec<f64>) {
+    let n = maps.n;
+    scaled.clear();
+    scaled.extend(maps.maps.iter().enumerate().map(|(k, entry)| entry * scales[k % n] / scales[k / n % n]));
+}
 
 /// Splits the flow direction off every map. Writes the (n-1) x (n-1) blocks to `reduced`, returns the logarithm of
 /// the trivial multiplier.

@@ -133,6 +133,9 @@ impl CycleProblem {
 
     /// What became of the part that tells one half of the period from the other between two neighbouring points.
     pub fn split_between(&self, before: &CyclePoint, after: &CyclePoint) -> SplitChange {
+        if !self.may_have_halves() {
+            return SplitChange::None;
+        }
         /// Share of the part that no step leaves of it but by chance; Newton's method leaves far less where it has met the
         /// shorter cycle told twice.
         const GONE: f64 = 1e-3;
@@ -152,6 +155,10 @@ impl CycleProblem {
     /// Whether a branch went through an equilibrium between two neighbouring points: the motion about its mean has
     /// changed its sign.
     pub fn passed_equilibrium(&self, before: &CyclePoint, after: &CyclePoint) -> bool {
+        // Under a forcing a motion may turn into its opposite, as where the amplitude of the forcing changes sign.
+        if self.is_forced() {
+            return false;
+        }
         let before = before.on_mesh(after.degree, &after.mesh);
         let (a, b) = (self.motion_nodes(&before), self.motion_nodes(after));
         self.metric.nodes_inner(after.tables(), &after.mesh, &a, &b) < 0.0

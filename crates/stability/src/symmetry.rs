@@ -1,4 +1,5 @@
 //! Linear symmetries of order two: signed permutations S of the states with `S f(x) = f(S x)`, and cycles that have them.
+//! Under a forcing `S f(t, x) = f(t', S x)`, t' = t + T/2 where the image is reached half a period later.
 //!
 //! A cycle is symmetric if half a period later it is its own image, `u(t + T/2) = S u(t)`, or if every state of it is,
 //! `S u(t) = u(t)`. Candidates are read off the cycle: state i may go to state j with a sign where the one's course is the
@@ -82,7 +83,8 @@ impl CycleProblem {
         };
         let (parameters, states_of) = (self.parameters_at(point), self.box_of_states(point));
         let symmetries = candidates.into_iter().map(|image| Symmetry { image, half_period: false });
-        symmetries.filter(|s| is_equivariant(self.spec.field.as_ref(), &parameters, &states_of, s)).collect()
+        let period = point.unknowns.period;
+        symmetries.filter(|s| is_equivariant(self.spec.field.as_ref(), (&parameters, period), &states_of, s)).collect()
     }
 
     /// Means and sizes of the states.
@@ -100,8 +102,8 @@ impl CycleProblem {
             candidates.collect::<Vec<_>>()
         });
         let field = self.spec.field.clone();
-        let box_of_states = self.box_of_states(point);
-        found.filter(move |symmetry| is_equivariant(field.as_ref(), &parameters, &box_of_states, symmetry))
+        let (box_of_states, period) = (self.box_of_states(point), point.unknowns.period);
+        found.filter(move |symmetry| is_equivariant(field.as_ref(), (&parameters, period), &box_of_states, symmetry))
     }
 
     /// The symmetry of a cycle that a direction with mu = 1 breaks.
@@ -202,15 +204,21 @@ impl<'a> Pairing<'a> {
     }
 }
 
-/// Whether `f(S x) = S f(x)` at random states about as far out as the cycle goes: means and sizes of the states.
-fn is_equivariant(field: &dyn VectorField, parameters: &[f64], states_of: &[(f64, f64)], symmetry: &Symmetry) -> bool {
+/// Whether `f(t', S x) = S f(t, x)` at random states about as far out as the cycle goes, means and sizes of the states, and at
+/// random times of its period.
+fn is_equivariant(
+    field: &dyn VectorField,
+    (parameters, period): (&[f64], f64),
+    states_of: &[(f64, f64)],
+    symmetry: &Symmetry,
+) -> bool {
     let n = states_of.len();
     let mut states = vec![0.0; n];
     let (mut image, mut wanted) = (vec![0.0; n], vec![0.0; n]);
     let mut evaluator = field.evaluator(&[]);
-    let mut rates = |x: &[f64]| {
+    let mut rates = |time: f64, x: &[f64]| {
         let mut out = vec![0.0; n];
-        evaluator.rates(Batch { len: 1, time: &[], states: x, parameters }, &mut out);
+        evaluator.rates(Batch { len: 1, time: &[time], states: x, parameters }, &mut out);
         out
     };
     let (mut sizes, mut apart) = (vec![0.0f64; n], vec![0.0f64; n]);
@@ -219,7 +227,9 @@ fn is_equivariant(field: &dyn VectorField, parameters: &[f64], states_of: &[(f64
             *x = mean + size * (fraction(trial * n + a) - 0.5);
         }
         symmetry.apply(&states, &mut image);
-        let (here, there) = (rates(&states), rates(&image));
+        let time = fraction(TRIALS * n + trial) * period;
+        let later = if symmetry.half_period { time + 0.5 * period } else { time };
+        let (here, there) = (rates(time, &states), rates(later, &image));
         symmetry.apply(&here, &mut wanted);
         for a in 0..n {
             sizes[a] = sizes[a].max(there[a].abs()).max(wanted[a].abs());

@@ -8,7 +8,7 @@
 //! ```
 //! G vanishes exactly where M is singular, and its derivative costs one reverse sweep (Govaerts 2000, Numerical
 //! Methods for Bifurcations of Dynamical Equilibria, SIAM, ch. 4; Doedel, Govaerts & Kuznetsov 2003, SIAM J. Numer.
-//! Anal. 41:401). As a [`Closing`] it completes the minimally augmented system.
+//! Anal. 41:401). Under a forcing the phase row holds the period alone, and v has no part in it. As a [`Closing`] it completes the minimally augmented system.
 
 use armilla_collocation::{Closing, Fault, Iterate, Row, System, Variation};
 use armilla_linalg::{Bordered, Right};
@@ -155,6 +155,7 @@ impl TestFunction {
         let corner = self.bordered.corner_mut();
         corner.fill(0.0);
         if self.kind == CriticalKind::Fold {
+            corner[0] = system.phase_corner()[0];
             corner[k] = self.border_row.period;
         }
         self.bordered.prepare(system.cyclic(), self.kind.closing_factor())?;

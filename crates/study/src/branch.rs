@@ -156,7 +156,9 @@ impl WalkSink for Collector<'_, '_> {
 
     fn event(&mut self, problem: &CycleProblem, found: &Found) {
         let event = event_record(problem, found, self.name(found.kind), self.lineage.turns);
-        if let (EventKind::Doubling, Some(located)) = (found.kind, &found.located) {
+        // Without a cubic term the branch stands on one parameter value.
+        let stands = found.form.is_some_and(|form| form.c == 0.0);
+        if let (EventKind::Doubling, Some(located), false) = (found.kind, &found.located, stands) {
             let way = Way::Doubling { located: Box::new(located.clone()), form: found.form };
             self.births.push(Switchable { event: event.name.clone(), way });
         }

@@ -308,7 +308,8 @@ pub(crate) fn end_of_follower(
     let value = follower.current().point.unknowns.parameter;
     let name = with_unit_name(plan);
     let here = short(plan.study, value);
-    let shrunk = has_shrunk(motions);
+    // A motion under a forcing has no state of rest to shrink to.
+    let shrunk = !follower.parts().0.is_forced() && has_shrunk(motions);
     match follower.end() {
         Some(FollowEnd::Edge(edge)) => {
             end(EndReason::Edge, *edge, format!("reaches the edge of the asked range, {name} = {edge}"))

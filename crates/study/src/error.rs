@@ -4,7 +4,7 @@ use std::path::PathBuf;
 
 use armilla_flow::FlowError;
 use armilla_model::{Diagnostic, ModelError};
-use armilla_record::RecordError;
+use armilla_record::{RecordError, SamplesError};
 
 use crate::words::{digits, listed};
 
@@ -57,6 +57,13 @@ pub enum StudyError {
         /// Why.
         reason: String,
     },
+    /// The samples to start from are wrong.
+    Samples(SamplesError),
+    /// No cycle of the model was found near the samples.
+    NoCycleInSamples {
+        /// Why.
+        reason: String,
+    },
     /// No equilibrium was found, or it cannot be followed.
     NoEquilibrium {
         /// Why.
@@ -96,7 +103,7 @@ impl StudyError {
     pub fn class(&self) -> ErrorClass {
         match self {
             Self::Invalid(_) | Self::RateAtStart { .. } | Self::NotInThisVersion { .. } => ErrorClass::Input,
-            Self::Unreadable { .. } | Self::Model(_) | Self::Families { .. } => ErrorClass::Input,
+            Self::Unreadable { .. } | Self::Model(_) | Self::Samples(_) | Self::Families { .. } => ErrorClass::Input,
             Self::Record(error) if error.is_machine_fault() => ErrorClass::Machine,
             Self::Record(_) => ErrorClass::Input,
             Self::Settling { error: FlowError::Aborted { .. }, .. } | Self::Interrupted => ErrorClass::NotReached,
@@ -104,7 +111,7 @@ impl StudyError {
                 ErrorClass::Input
             }
             Self::Settling { .. } | Self::SettlesAtRest { .. } | Self::DidNotSettle { .. } => ErrorClass::NotReached,
-            Self::NoCycle { .. } | Self::NoEquilibrium { .. } => ErrorClass::NotReached,
+            Self::NoCycle { .. } | Self::NoCycleInSamples { .. } | Self::NoEquilibrium { .. } => ErrorClass::NotReached,
         }
     }
 }
@@ -153,6 +160,12 @@ impl std::fmt::Display for StudyError {
                 "no cycle was found from the settled motion: {reason}\n    help: start at parameter values where the \
                  cycle attracts more strongly, or allow a longer `transient`"
             ),
+            Self::Samples(fault) => fault.fmt(f),
+            Self::NoCycleInSamples { reason } => write!(
+                f,
+                "no cycle of the model was found near the samples: {reason}\n    help: check that the parameters (`set`) are \
+                 those of the samples and their units those of the model, and state the `period` where it is known"
+            ),
             Self::NoEquilibrium { reason } => write!(
                 f,
                 "no equilibrium to follow: {reason}\n    help: give states nearer to one, `start: Equilibrium(near: {{ ... \
@@ -179,6 +192,11 @@ impl From<Diagnostic> for StudyError {
 impl From<ModelError> for StudyError {
     fn from(error: ModelError) -> Self {
         Self::Model(error)
+    }
+}
+impl From<SamplesError> for StudyError {
+    fn from(error: SamplesError) -> Self {
+        Self::Samples(error)
     }
 }
 impl From<RecordError> for StudyError {

@@ -27,7 +27,7 @@ pub(crate) struct First {
 }
 
 /// Intervals per turn of the first guess; the mesh is then chosen from the accuracy.
-const FIRST_INTERVALS: usize = 40;
+pub(crate) const FIRST_INTERVALS: usize = 40;
 
 /// |log mu| of a second multiplier at 1 on a cycle of a family, as far as a badly conditioned cycle tells.
 const OF_A_FAMILY: f64 = 1e-4;
@@ -40,25 +40,25 @@ pub(crate) fn first_solution(
 ) -> Result<First, StudyError> {
     let transient = match &study.file.start {
         Start::Settle { transient, .. } => *transient,
+        Start::Samples { period, .. } => return crate::samples::first_from_samples(study, *period, (abort, observer)),
         Start::Equilibrium { near } => return first_equilibrium(study, near),
-        Start::Samples { .. } => {
-            return Err(StudyError::NotInThisVersion {
-                what: "a start from samples",
-                instead: "start on a stable cycle: start: Settle(at: { ... })",
-            });
-        }
     };
-    if study.model.forcing().is_some() {
-        return Err(StudyError::NotInThisVersion {
-            what: "following the cycles of a forced model",
-            instead: "`armilla settle` shows what the motion settles on; following needs rates without the time `t`",
-        });
-    }
     check_rates(study)?;
+    settled(study, &study.model.begin(), transient, (abort, observer))
+}
+
+/// The cycle that the motion settles on from a state at time 0.
+pub(crate) fn settled(
+    study: &Study,
+    begin: &[f64],
+    transient: Option<f64>,
+    (abort, observer): (&AtomicBool, &mut dyn Observer),
+) -> Result<First, StudyError> {
     observer.notice(Progress::Settling);
-    let options = SettleOptions { transient, abort, ..SettleOptions::default() };
     let field = study.model.field();
-    let settled = settle(field.as_ref(), &study.start_parameters, &study.model.begin(), &options)
+    let forcing_period = field.forcing_period(&study.start_parameters, study.free).map(|[period, ..]| period);
+    let options = SettleOptions { transient, forcing_period, abort, ..SettleOptions::default() };
+    let settled = settle(field.as_ref(), &study.start_parameters, begin, &options)
         .map_err(|error| StudyError::Settling { words: settling_words(&error, &study.model), error })?;
     let notes: Vec<String> = settled.pushes.iter().map(|push| push_note(study, push)).collect();
     notes.iter().for_each(|note| observer.notice(Progress::Note(note)));
@@ -78,13 +78,7 @@ pub(crate) fn first_solution(
     let settings = cycle_settings(study, turns);
     let intervals = settings.mesh.fixed.unwrap_or(FIRST_INTERVALS * turns);
     let profile = part(&cycle.profile(settings.degree, intervals * copies), copies);
-    let spec = CycleSpec {
-        field,
-        parameters: study.parameters.clone(),
-        free: study.free,
-        typical: study.model.begin().iter().map(|value| value.abs()).collect(),
-        parameter_scale: study.range.1 - study.range.0,
-    };
+    let spec = cycle_spec(study);
     let value = study.start_parameters[study.free];
     let (mut problem, point) = CycleProblem::start(spec, settings, &profile, value).map_err(|fault| {
         let no_cycle = || StudyError::NoCycle { reason: fault.to_string() };
@@ -112,9 +106,20 @@ fn first_equilibrium(study: &Study, near: &Values) -> Result<First, StudyError> 
     Ok(First { entry, turns: 1, notes: Vec::new() })
 }
 
+/// The model as the cycle problem needs it.
+pub(crate) fn cycle_spec(study: &Study) -> CycleSpec {
+    CycleSpec {
+        field: study.model.field(),
+        parameters: study.parameters.clone(),
+        free: study.free,
+        typical: study.model.begin().iter().map(|value| value.abs()).collect(),
+        parameter_scale: study.range.1 - study.range.0,
+    }
+}
+
 /// How many copies of one cycle a settled motion is: 1 as a rule, more where something beside the cycle itself (a state
 /// that dies out) kept it from closing earlier.
-fn copies(orbit: &Profile, turns: usize) -> usize {
+pub(crate) fn copies(orbit: &Profile, turns: usize) -> usize {
     /// Distance of shifted copies, relative to the range of each state that moves, that tells them apart: a doubled
     /// cycle nearer than that to its threshold could not have settled.
     const SAME: f64 = 1e-6;
@@ -139,7 +144,7 @@ fn copies(orbit: &Profile, turns: usize) -> usize {
 }
 
 /// The first of `copies` equal parts of a profile, with its mesh.
-fn part(profile: &Profile, copies: usize) -> Profile {
+pub(crate) fn part(profile: &Profile, copies: usize) -> Profile {
     if copies == 1 {
         return profile.clone();
     }
@@ -165,7 +170,7 @@ pub(crate) fn named(study: &Study, values: &[f64]) -> Vec<(String, f64)> {
     study.model.states().iter().map(|state| state.name.clone()).zip(values.iter().copied()).collect()
 }
 
-fn check_rates(study: &Study) -> Result<(), StudyError> {
+pub(crate) fn check_rates(study: &Study) -> Result<(), StudyError> {
     let begin = study.model.begin();
     let mut rates = vec![0.0; begin.len()];
     let batch = Batch { len: 1, time: &[0.0], states: &begin, parameters: &study.start_parameters };

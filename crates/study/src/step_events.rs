@@ -366,10 +366,12 @@ fn located_event(
         CriticalKind::Doubling => match problem.doubling_form(&located) {
             Some(found) => {
                 form = Some(found);
-                let (side, note) = if found.certain {
-                    (Some(criticality(found.c)), format!("normal form coefficient c = {:.6e}", found.c))
-                } else {
-                    (None, "normal form coefficient c = 0 to roundoff: no side is claimed".into())
+                let (side, note) = match found.c {
+                    0.0 => (None, NO_SIDE.to_string()),
+                    _ if !found.certain => {
+                        (None, "normal form coefficient c = 0 to roundoff: no side is claimed".into())
+                    }
+                    c => (Some(criticality(c)), format!("normal form coefficient c = {c:.6e}")),
                 };
                 (EventKind::Doubling, std::f64::consts::PI, side, Some(note))
             }
@@ -391,6 +393,10 @@ fn located_event(
     }
 }
 
+/// Note of a doubling whose normal form has no cubic term.
+const NO_SIDE: &str = "normal form coefficient c = 0: as in a linear equation, doubled motions of every size exist at this \
+                       very value; not followed";
+
 fn criticality(c: f64) -> Criticality {
     if c < 0.0 { Criticality::Supercritical } else { Criticality::Subcritical }
 }
@@ -403,7 +409,7 @@ fn remaining_change(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>
     // The count itself hangs on multipliers of profiles with their own error.
     let resolution = SUPERCONVERGENCE * problem.profile_error(&high.point);
     let scale = (plan.study.range.1 - plan.study.range.0).max(a.abs());
-    let half_width = 0.5 * (a - b).abs() + (resolution + f64::EPSILON) * scale;
+    let half_width = 0.5 * (a - b).abs() + (resolution + f64::EPSILON) * scale + noise_of_multipliers(problem, part);
     let critical = problem.spectrum(&high.point).ok().and_then(|spectrum| {
         spectrum.multipliers.into_iter().min_by(|x, y| x.log_modulus.abs().total_cmp(&y.log_modulus.abs()))
     });
@@ -424,6 +430,27 @@ fn remaining_change(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>
     (event.kind, event.angle) = (kind, angle);
     event.period_error = Some(period_error_between(problem, &low, &high));
     event
+}
+
+/// Stretch of the parameter over which the multipliers of a cycle that does not move are as uncertain as the linear mesh
+/// leaves them: such a cycle is known on every mesh, and its own error tells nothing of them. 0 for others.
+fn noise_of_multipliers(problem: &mut CycleProblem, part: &Part) -> f64 {
+    /// Motion, in the metric, that is none.
+    const STILL: f64 = 1e-9;
+    if problem.motion(&part.after.point) > STILL {
+        return 0.0;
+    }
+    let index = if part.change.passes_one { WATCH_BRANCHING } else { WATCH_TORUS };
+    let value = |station: &CycleStation| station.watch.values[index].value;
+    let parameter = |station: &CycleStation| station.point.unknowns.parameter;
+    let slope = (value(&part.after) - value(&part.before)) / (parameter(&part.after) - parameter(&part.before));
+    // They agree with Liouville's formula to the accuracy times their sum.
+    let sum = problem.spectrum(&part.after.point).map_or(1.0, |spectrum| {
+        let logs = spectrum.multipliers.iter().map(|mu| mu.log_modulus.abs());
+        logs.filter(|log| log.is_finite()).sum::<f64>().max(1.0)
+    });
+    let noise = problem.settings().mesh.accuracy * sum / slope.abs();
+    if noise.is_finite() { noise } else { 0.0 }
 }
 
 /// Error of the period at the lower end of an interval for one anywhere inside: the change over the interval, and the error

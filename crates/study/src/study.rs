@@ -5,6 +5,7 @@ use std::path::{Path, PathBuf};
 
 use armilla_figure::{Figure, Measure};
 use armilla_model::{Diagnostic, Model, Source, nearest_name};
+use armilla_record::{Samples, read_samples};
 use ron::extensions::Extensions;
 
 use crate::error::StudyError;
@@ -34,6 +35,8 @@ pub struct Study {
     pub free: usize,
     /// The asked range, ascending.
     pub range: (f64, f64),
+    /// The samples to start from, where the study does.
+    pub samples: Option<Samples>,
 }
 
 impl Study {
@@ -88,12 +91,14 @@ impl Study {
         }
         let range = (file.follow.from.min(file.follow.to), file.follow.from.max(file.follow.to));
         place.start_in_range(&file, start_parameters[free], range)?;
+        place.forcing(&model, &file, (&parameters, free), range)?;
+        let samples = samples(&file, &path, &model)?;
         if file.figures.is_empty() {
             file.figures.push(Figure::diagram(Measure::Max(model.states()[0].name.clone())));
         }
         place.figures(&model, &file.figures)?;
         place.targets(&file, range)?;
-        Ok(Self { file, path, model, parameters, start_parameters, free, range })
+        Ok(Self { file, path, model, parameters, start_parameters, free, range, samples })
     }
 
     /// Name of the results folder beside the study.
@@ -114,6 +119,14 @@ impl Study {
             self.model.fingerprint()
         )
     }
+}
+
+/// The samples a study starts from; none where it starts otherwise.
+fn samples(file: &StudyFile, path: &Path, model: &Model) -> Result<Option<Samples>, StudyError> {
+    let Start::Samples { file: table, .. } = &file.start else { return Ok(None) };
+    let names: Vec<&str> = model.states().iter().map(|state| state.name.as_str()).collect();
+    let path = path.parent().unwrap_or(Path::new("")).join(table);
+    Ok(Some(read_samples(&path, &names)?))
 }
 
 /// Reads the text of a study file.
@@ -227,6 +240,12 @@ impl Place<'_> {
         {
             return Err(self.error("transient", "", "the transient must be a finite time, 0 or more"));
         }
+        if let Start::Samples { period: Some(period), .. } = file.start
+            && !(period.is_finite() && period > 0.0)
+        {
+            let help = "leave it out to have it estimated from the samples";
+            return Err(self.error("period", "", "the period must be a finite time above 0").with_help(help));
+        }
         if file.pursue.branches == 0 || file.pursue.points == 0 {
             return Err(self.error("pursue", "", "`branches` and `points` must be at least 1"));
         }
@@ -259,10 +278,40 @@ impl Place<'_> {
         let name = &file.follow.parameter;
         let message = format!("the start has `{name}` = {value}, outside the asked range from {low} to {high}");
         let help = match &file.start {
-            Start::Equilibrium { .. } => format!("widen `follow`, or start inside it: set: {{ \"{name}\": ... }}"),
-            _ => format!("widen `follow`, or start inside it: start: Settle(at: {{ \"{name}\": ... }})"),
+            Start::Settle { .. } => {
+                format!("widen `follow`, or start inside it: start: Settle(at: {{ \"{name}\": ... }})")
+            }
+            _ => format!("widen `follow`, or give the value of the start: set: {{ \"{name}\": ... }}"),
         };
         Err(self.error("follow", "from", message).with_help(help))
+    }
+
+    /// The rates must repeat with the period of the forcing wherever the study goes.
+    fn forcing(
+        &self,
+        model: &Model,
+        file: &StudyFile,
+        (parameters, free): (&[f64], usize),
+        (low, high): (f64, f64),
+    ) -> Result<(), Diagnostic> {
+        /// Shares of the range looked at: both ends, and places between that no whole numbers relate.
+        const SHARES: [f64; 5] = [0.0, 1.0, 0.618_033_988_749_894_8, 0.236_067_977_499_789_7, 0.854_101_966_249_684_5];
+        if model.forcing().is_none() {
+            return Ok(());
+        }
+        if let Start::Equilibrium { .. } = file.start {
+            let help = "start on its motion: start: Settle(at: { ... })";
+            return Err(self.error("start", "Equilibrium", "a forced model has no states of rest").with_help(help));
+        }
+        for share in SHARES {
+            let mut parameters = parameters.to_vec();
+            parameters[free] = low + share * (high - low);
+            if let Err(fault) = model.check_forcing(&parameters) {
+                let message = format!("at `{}` = {}: {fault}", file.follow.parameter, parameters[free]);
+                return Err(self.error("follow", &file.follow.parameter, message).with_help(fault.help()));
+            }
+        }
+        Ok(())
     }
 
     fn targets(&self, file: &StudyFile, (low, high): (f64, f64)) -> Result<(), Diagnostic> {

@@ -397,6 +397,10 @@ impl Walker<'_, '_> {
         }
         let width = self.plan.width();
         let (problem, _, _) = self.follower.parts();
+        // The period of a forcing grows because it is told to.
+        if problem.is_forced() {
+            return None;
+        }
         let known = Known { width, parameter: problem.parameter_roundoff() };
         let seen = approach(&self.seen.periods, known)?;
         // Asked once on a walk, so that the better periods may cost what they cost.

@@ -1,0 +1,8 @@
+//! Cycles under a forcing.
+
+mod duffing;
+mod ends;
+mod load;
+mod mathieu;
+mod planted;
+mod sieve;
