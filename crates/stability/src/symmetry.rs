@@ -73,7 +73,7 @@ impl CycleProblem {
     }
 
     /// Signed permutations of order two that carry solutions of the model into solutions, whether they leave any cycle as it
-    /// is or not. Up to six states all are tried, beyond that only the change of every sign.
+    /// is or not. Up to `MOST_STATES` states all are tried, beyond that only the change of every sign.
     pub fn mirrors(&self, point: &CyclePoint) -> Vec<Symmetry> {
         let n = self.metric.scales.len();
         let candidates = if n <= MOST_STATES {
