@@ -2,8 +2,8 @@
 //!
 //! A state's size is its range over the cycle. A state that does not move (a plane of symmetry, a variable at rest)
 //! has only roundoff for a range; its size is then what its rate could move it by over a period, `T Sum_b |df_a/dx_b|
-//! range_b`, which has the right unit, and what it could at second order, `T |D^2 f_a[range, range]|`: a state that others move
-//! by their squares has no slope where they rest.
+//! range_b`, which has the right unit, or, where that is nothing but roundoff, at second
+//! order, `T |D^2 f_a[range, range]|`: a state that others move by their squares has no slope where they rest.
 
 use armilla_collocation::Metric;
 use armilla_model::{Batch, Direction, Linearisation, VectorField};
@@ -45,11 +45,17 @@ pub(crate) fn natural_sizes(
     evaluator.second(batch, direction, direction, &mut bends);
     let finite =
         |values: &[f64]| values.iter().filter(|value| value.is_finite()).fold(0.0f64, |most, x| most.max(x.abs()));
-    let mut sizes: Vec<f64> = bends.chunks_exact(points).map(|bends| profile.period * finite(bends)).collect();
+    let mut sizes = vec![0.0; n];
     for ((a, b), values) in field.pattern().entries().zip(jacobian.chunks_exact(points)) {
         let largest = values.iter().fold(0.0f64, |largest, value| largest.max(value.abs()));
         if a != b && largest.is_finite() {
             sizes[a] += profile.period * largest * ranges[b];
+        }
+    }
+    for (size, bends) in sizes.iter_mut().zip(bends.chunks_exact(points)) {
+        let second = profile.period * finite(bends);
+        if *size < still * second {
+            *size = second;
         }
     }
     let largest = ranges.iter().copied().fold(0.0, f64::max);
