@@ -106,9 +106,7 @@ impl Sampler<'_> {
         let rows: Vec<Vec<f64>> = samples.iter().flat_map(|sample| sample.commutators(&basis)).collect();
         let sideways = |factors: &Vec<f64>| self.moves_sideways(factors, &basis);
         let factors = null_vectors(&rows).into_iter().find(sideways)?;
-        let largest = factors.iter().fold(0.0f64, |largest, factor| largest.max(factor.abs()));
-        let scaled: Vec<f64> = factors.iter().map(|factor| factor / largest).collect();
-        Some(scaled.chunks_exact(n + 1).map(|row| large_terms(row, &basis)).collect())
+        Some(normalised(&factors).chunks_exact(n + 1).map(|row| large_terms(row, &basis)).collect())
     }
 
     fn moves_sideways(&self, factors: &[f64], basis: &[Term]) -> bool {
@@ -240,9 +238,14 @@ const SWEEPS: usize = 60;
 
 /// The terms that count, the largest factor 1.
 fn terms(factors: &[f64], basis: &[Term]) -> Vec<(f64, Term)> {
-    let largest = factors.iter().copied().fold(0.0f64, |a, b| if b.abs() > a.abs() { b } else { a });
-    let scaled: Vec<f64> = factors.iter().map(|factor| factor / largest).collect();
-    large_terms(&scaled, basis)
+    large_terms(&normalised(factors), basis)
+}
+
+/// The same direction with 1 for the size of the largest factor and the first one that counts positive.
+fn normalised(factors: &[f64]) -> Vec<f64> {
+    let largest = factors.iter().fold(0.0f64, |largest, factor| largest.max(factor.abs()));
+    let first = factors.iter().find(|factor| factor.abs() > NO_FACTOR * largest).copied().unwrap_or(1.0);
+    factors.iter().map(|factor| factor / largest * first.signum()).collect()
 }
 
 fn large_terms(factors: &[f64], basis: &[Term]) -> Vec<(f64, Term)> {

@@ -149,7 +149,9 @@ impl Search<'_> {
         let kinds = [RestEvent::Hopf, RestEvent::Branching, RestEvent::Fold];
         let found = kinds.into_iter().filter(|event| *event != RestEvent::Hopf || frequency > 0.0).find_map(|event| {
             let located = problem.solve(event, station.point.clone(), frequency)?;
-            (problem.distance(&located.point, &station.point) <= ON).then_some(located)
+            // On every point of a conservative model's branch a pair stands on the axis: no value of the parameter is told.
+            let isolated = located.error < self.study.range.1 - self.study.range.0;
+            (isolated && problem.distance(&located.point, &station.point) <= ON).then_some(located)
         });
         if let Some(mut located) = found {
             located.share = 1.0;

@@ -3,6 +3,7 @@
 use armilla_stability::{EquilibriumPoint, EquilibriumProblem, EquilibriumSpec, RestFault};
 
 use crate::error::StudyError;
+use crate::families::family_at_rest;
 use crate::file::Values;
 use crate::start::named;
 use crate::study::Study;
@@ -47,11 +48,11 @@ pub(crate) fn equilibrium_at(
                 ),
             }
         }
-        RestFault::Singular { states } => StudyError::NoEquilibrium {
+        RestFault::Singular { states } => family_at_rest(study, &states).unwrap_or_else(|| StudyError::NoEquilibrium {
             reason: format!(
                 "the Jacobian is singular at {}: equilibria are not isolated there, as where something is conserved",
                 listed(&named(study, &states))
             ),
-        },
+        }),
     })
 }

@@ -173,7 +173,7 @@ impl std::fmt::Display for StudyError {
             ),
             Self::Families { reason, instead } => write!(
                 f,
-                "the cycles of this model come in families: {reason}; the parameters single out none of them\n    help: {instead}"
+                "the solutions of this model come in families: {reason}; the parameters single out none of them\n    help: {instead}"
             ),
             Self::NotInThisVersion { what, instead } => {
                 write!(f, "{what} is not built in this version\n    help: {instead}")

@@ -11,6 +11,28 @@ const PARAMETER_OF_ITS_VALUE: &str =
     "make its value a parameter of the model and leave out a state that follows from it";
 const DAMPED_AND_DRIVEN: &str = "add to the model the damping and driving that single out one cycle";
 
+/// Why the solutions about a state of rest come in families, if the model says so.
+pub(crate) fn family_at_rest(study: &Study, state: &[f64]) -> Option<StudyError> {
+    /// Size of the loop about it, in the sizes of the states.
+    const SIZE: f64 = 0.3;
+    let typical = study.model.begin();
+    let sizes =
+        state.iter().zip(&typical).map(|(x, y)| SIZE * if *x != 0.0 || *y != 0.0 { x.abs().max(y.abs()) } else { 1.0 });
+    let sizes: Vec<f64> = sizes.collect();
+    let mesh = (0..=INTERVALS).map(|i| i as f64 / INTERVALS as f64).collect();
+    let mut around = Profile { n_states: state.len(), degree: DEGREE, period: 1.0, mesh, values: Vec::new() };
+    for time in around.node_times() {
+        let at = |(k, (x, size)): (usize, (&f64, &f64))| x + size * (std::f64::consts::TAU * time + k as f64).cos();
+        around.values.extend(state.iter().zip(&sizes).enumerate().map(at));
+    }
+    family(study, &around, false)
+}
+
+/// Mesh of a loop that only serves to scatter states about.
+const INTERVALS: usize = 20;
+/// Its degree.
+const DEGREE: usize = 3;
+
 /// Why cycles near a profile come in families, if the model says so; `neutral` where the divergence integrates to zero over
 /// the motion.
 pub(crate) fn family(study: &Study, profile: &Profile, neutral: bool) -> Option<StudyError> {

@@ -10,7 +10,7 @@ use armilla_stability::{CycleProblem, CycleSpec};
 use crate::branch::Entry;
 use crate::equilibrium_start::{equilibrium_at, near_states};
 use crate::error::StudyError;
-use crate::families::family;
+use crate::families::{family, family_at_rest};
 use crate::file::{Start, Values};
 use crate::progress::{Observer, Progress};
 use crate::settings::cycle_settings;
@@ -102,8 +102,14 @@ fn first_equilibrium(study: &Study, near: &Values) -> Result<First, StudyError> 
         });
     }
     let (problem, point) = equilibrium_at(study, &near_states(study, near))?;
+    let notes = match family_at_rest(study, &point.state) {
+        Some(StudyError::Families { reason, .. }) => {
+            vec![format!("cycles of this model come in families ({reason}) and none is followed")]
+        }
+        _ => Vec::new(),
+    };
     let entry = Entry::Equilibrium(Box::new(problem), Box::new(point));
-    Ok(First { entry, turns: 1, notes: Vec::new() })
+    Ok(First { entry, turns: 1, notes })
 }
 
 /// The model as the cycle problem needs it.

@@ -306,9 +306,12 @@ pub(crate) fn any_sign(k: usize) -> f64 {
     if (k.wrapping_mul(0x9E37_79B9) >> 7) & 1 == 0 { 1.0 } else { -1.0 }
 }
 
-/// Number of eigenvalues to the right of the imaginary axis.
+/// Number of eigenvalues to the right of the imaginary axis by more than rounding: those of a conservative model stay on it.
 pub(crate) fn unstable_count(spectrum: &Eigenvalues) -> usize {
-    spectrum.values.iter().filter(|value| value.re > 0.0).count()
+    /// Rounding of an eigenvalue, in units of the last place of the largest, for each state.
+    const UNITS: f64 = 4.0;
+    let rounding = UNITS * spectrum.values.len() as f64 * f64::EPSILON * spectrum.norm;
+    spectrum.values.iter().filter(|value| value.re > rounding).count()
 }
 
 impl Problem for EquilibriumProblem {
