@@ -24,7 +24,8 @@ fn found(model: &str, set: &str, kind: EventKind) -> Vec<(f64, f64)> {
 fn are(what: &str, found: &[(f64, f64)], exact: &[f64]) {
     assert_eq!(found.len(), exact.len(), "{what}: {found:?} for {exact:?}");
     for ((value, error), exact) in found.iter().zip(exact) {
-        assert!((value - exact).abs() <= *error && *error < 1e-9, "{what}: {value} ± {error:e} for {exact}");
+        // Of three within 0.002 the growth's slope is 1e-5, and the place of its zero that much less certain.
+        assert!((value - exact).abs() <= *error && *error < 3e-9, "{what}: {value} ± {error:e} for {exact}");
     }
 }
 
