@@ -37,6 +37,8 @@ pub enum Term {
 
 /// States up to which products and symmetries are looked for: the work grows with the sixth power.
 const MOST_STATES: usize = 10;
+/// States up to which sums are looked for: the work grows with the cube, the memory too.
+const MOST_IN_SUMS: usize = 60;
 /// Share of the largest singular value below which the smallest is zero: roundoff of the rates, with room.
 const ZERO: f64 = 1e-11;
 /// Share of the largest factor below which another is zero.
@@ -83,6 +85,9 @@ impl Sampler<'_> {
 
     fn conserved(&self) -> Option<Vec<(f64, Term)>> {
         let n = self.n();
+        if n > MOST_IN_SUMS {
+            return None;
+        }
         let extremes = self.profile.extremes();
         let states: Vec<Term> = (0..n).map(Term::State).collect();
         let positive = extremes.iter().all(|(low, _)| *low > 0.0);
