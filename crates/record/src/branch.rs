@@ -27,6 +27,8 @@ pub enum EndReason {
         /// Name of that branch.
         branch: String,
     },
+    /// Its cycles fill a continuum at one value of the parameter.
+    Continuum,
     /// The asked accuracy cannot be held on the largest mesh allowed.
     ResolutionLost,
     /// The corrector failed even at the shortest stride.
@@ -51,6 +53,7 @@ impl EndReason {
             Self::PeriodBlowUp => "period-blow-up",
             Self::ReturnsToParent => "returns-to-parent",
             Self::Joins { .. } => "joins",
+            Self::Continuum => "continuum",
             Self::ResolutionLost => "resolution-lost",
             Self::Stuck => "stuck",
             Self::Budget => "budget",

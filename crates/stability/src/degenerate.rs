@@ -43,6 +43,8 @@ const ZERO: f64 = 1e-11;
 const NO_FACTOR: f64 = 1e-7;
 /// Scatter of the states about the cycle, in its ranges, or relative where all states are positive.
 const SCATTER: f64 = 0.2;
+/// Range of a state, relative to its size, that is no motion.
+const STILL: f64 = 1e-6;
 /// Share of a cycle's own motion by which a symmetry must move it sideways.
 const SIDEWAYS: f64 = 1e-6;
 
@@ -50,6 +52,14 @@ const SIDEWAYS: f64 = 1e-6;
 pub fn degeneracy(field: &dyn VectorField, parameters: &[f64], profile: &Profile) -> Option<Degeneracy> {
     let sampler = Sampler { field, parameters, profile };
     sampler.conserved().map(Degeneracy::Conserved).or_else(|| sampler.symmetric().map(Degeneracy::Symmetric))
+}
+
+/// Whether the divergence of the rates vanishes everywhere about `profile`: what flows keeps its volume.
+pub fn keeps_volume(field: &dyn VectorField, parameters: &[f64], profile: &Profile) -> bool {
+    let sampler = Sampler { field, parameters, profile };
+    let samples = sampler.samples(2 * profile.n_states + MOST_STATES);
+    let vanishes = |sample: &Sample| sample.jacobian.trace().abs() <= ZERO * sample.jacobian.norm();
+    samples.is_some_and(|samples| samples.iter().all(vanishes))
 }
 
 /// States about a cycle, with the rates there.
@@ -131,12 +141,17 @@ impl Sampler<'_> {
         let extremes = self.profile.extremes();
         let positive = extremes.iter().all(|(low, _)| *low > 0.0);
         let nodes = self.profile.n_nodes();
+        // A state that does not move here is tried as far off as those that move least, lest it seem to stay everywhere.
+        let least =
+            extremes.iter().map(|(low, high)| high - low).filter(|range| *range > 0.0).fold(f64::INFINITY, f64::min);
+        let still = if least.is_finite() { least } else { 1.0 };
         let mut states = Vec::with_capacity(count * n);
         for k in 0..count {
             let node = self.profile.node(k * nodes / count);
             for (i, (value, (low, high))) in node.iter().zip(&extremes).enumerate() {
                 let shift = SCATTER * (2.0 * spread(k, i) - 1.0);
-                let size = (high - low).max(f64::EPSILON * value.abs());
+                let moves = high - low > STILL * value.abs();
+                let size = if moves { high - low } else { value.abs().max(still) };
                 states.push(if positive { value * (1.0 + shift) } else { value + shift * size });
             }
         }

@@ -67,7 +67,7 @@ mod torus_function;
 pub use armilla_collocation::{Fault, MapsFault, TooStiff};
 pub use cross::{Crossed, CrossedWay};
 pub use crossing::{CycleCrossing, Estimated, Meeting};
-pub use degenerate::{Degeneracy, Term, degeneracy};
+pub use degenerate::{Degeneracy, Term, degeneracy, keeps_volume};
 pub use dip::Dip;
 pub use equilibrium::{
     BranchingForm, CriticalSlope, Crossing, EquilibriumPoint, EquilibriumProblem, EquilibriumSpec, EquilibriumTangent,

@@ -36,6 +36,8 @@ pub struct DoublingForm {
     pub certain: bool,
 }
 
+/// Pairing of the left and the right critical vector, over their lengths, that is rounding.
+const ORTHOGONAL: f64 = 1e-12;
 /// Change of a log multiplier, by the cubic term at an amplitude as large as the cycle, below which the coefficient is
 /// roundoff: that of sums over a cycle, with room.
 const NEGLIGIBLE: f64 = 1e-9;
@@ -69,6 +71,11 @@ impl CycleProblem {
         let size = period * system.integral(&v, &v);
         let psi = &located.vectors.psi;
         let pairing = period * system.pair(psi, &v);
+        // Where a third multiplier is 1, as at every fold of a conservative model, the form is another one.
+        let length = |x: &[f64]| x.iter().map(|x| x * x).sum::<f64>().sqrt();
+        if !(pairing.abs() > ORTHOGONAL * period * length(psi) * length(&v)) {
+            return None;
+        }
         system.linear(&nodes, &mut av);
         system.quadratic(&nodes, &nodes, &mut bvv);
         let quadratic = period * system.pair(psi, &bvv);
@@ -110,7 +117,9 @@ impl CycleProblem {
         let c = period * system.pair(&raw.psi, &integrand) / (6.0 * pairing);
         let slope = exponent_slope(system, located, &phase)?;
         let spreads = Measures::of(&located.point.profile()).spreads;
-        let square = period * spreads.iter().map(|spread| spread * spread).sum::<f64>();
+        // A motion that does not move, as under a parametric forcing, has its natural sizes.
+        let sizes = spreads.iter().zip(&self.metric.scales).map(|(spread, scale)| spread.max(*scale));
+        let square = period * sizes.map(|size| size * size).sum::<f64>();
         let certain = (c * square * period).abs() > NEGLIGIBLE;
         (a.is_finite() && c.is_finite()).then_some(DoublingForm { a, c, slope, certain })
     }

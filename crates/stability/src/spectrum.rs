@@ -60,9 +60,17 @@ impl std::fmt::Display for SpectrumFault {
 impl std::error::Error for SpectrumFault {}
 
 impl Spectrum {
-    /// Number of multipliers outside the unit circle.
+    /// Number of multipliers outside the unit circle, pairs by more than they are known to: those of a conservative model stay
+    /// on it. (Real ones go with the signs of the products below.)
     pub fn unstable_count(&self) -> usize {
-        self.multipliers.iter().filter(|multiplier| multiplier.log_modulus > 0.0).count()
+        /// |log mu| that says no side, whatever the trivial multiplier is off by.
+        const NO_SIDE: f64 = 1e-10;
+        /// Multiple of what the trivial multiplier is off by that another may be.
+        const MARGIN: f64 = 4.0;
+        let side = NO_SIDE.max(MARGIN * self.trivial_defect);
+        let is_real = |mu: &Multiplier| mu.angle == 0.0 || mu.angle == std::f64::consts::PI;
+        let outside = |mu: &&Multiplier| mu.log_modulus > if is_real(mu) { 0.0 } else { side };
+        self.multipliers.iter().filter(outside).count()
     }
 
     /// `Prod (mu + 1)` over the multipliers, each factor scaled to modulus at most about 1: negative real multipliers

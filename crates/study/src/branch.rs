@@ -227,6 +227,15 @@ pub(crate) fn plan<'a>(run: &Run<'a>, lineage: &Lineage, sign: f64) -> WalkPlan<
     }
 }
 
+/// Whether the logarithms of all multipliers add up to nothing though there are several.
+fn keeps_volume_along(point: &Point) -> bool {
+    /// Sum, relative to the largest and at least absolute, that is rounding.
+    const ZERO: f64 = 1e-9;
+    let logs = point.multipliers.iter().map(|mu| mu.log_modulus);
+    let largest = logs.clone().map(f64::abs).fold(1.0, f64::max);
+    point.multipliers.len() > 1 && point.unresolved.is_none() && logs.sum::<f64>().abs() <= ZERO * largest
+}
+
 fn both_ways(
     run: &mut Run<'_>,
     lineage: &Lineage,
@@ -243,6 +252,11 @@ fn both_ways(
     let mut found = at_parameter(&mut problem, EventKind::Start, &start, 0.0);
     if let Some(symmetry) = problem.symmetry(&start) {
         found.note = format!("symmetric: {}", symmetry_words(&symmetry, &collector.run.study.model));
+    }
+    if keeps_volume_along(&first) {
+        let both = if found.note.is_empty() { "" } else { "; " };
+        found.note.push_str(both);
+        found.note.push_str("conservative: the divergence integrates to zero over the cycle");
     }
     collector.event(&problem, &found);
     if plans.0.settings.targets.contains(&start.unknowns.parameter) {

@@ -1,7 +1,7 @@
 //! Models whose cycles come in families: what is said of them, and what to do.
 
 use armilla_record::Profile;
-use armilla_stability::{Degeneracy, Term, degeneracy};
+use armilla_stability::{Degeneracy, Term, degeneracy, keeps_volume};
 
 use crate::error::StudyError;
 use crate::study::Study;
@@ -37,6 +37,9 @@ const DEGREE: usize = 3;
 /// the motion.
 pub(crate) fn family(study: &Study, profile: &Profile, neutral: bool) -> Option<StudyError> {
     let field = study.model.field();
+    // In the plane what keeps area has an energy, and cycles about its every minimum.
+    let plane = study.model.states().len() == 2 && !field.is_forced();
+    let neutral = neutral || plane && keeps_volume(field.as_ref(), &study.start_parameters, profile);
     let (reason, instead) = match degeneracy(field.as_ref(), &study.start_parameters, profile) {
         Some(Degeneracy::Conserved(terms)) => (
             format!("{} keeps its value along every solution", sum(study, &terms)),

@@ -13,6 +13,7 @@ use armilla_stability::{CyclePoint, CycleProblem};
 
 use crate::branch::Entry;
 use crate::error::StudyError;
+use crate::families::family;
 use crate::file::Start;
 use crate::progress::{Observer, Progress};
 use crate::recurrence::{best_of, estimate, fold, refine};
@@ -50,6 +51,9 @@ pub(crate) fn first_from_samples(
     let folded = fold(samples, study.model.states().len(), period);
     table.check_gap(&folded)?;
     let measured = Measured::of(&folded);
+    if let Some(family) = family(study, &folded.smooth(1.0).profile(period), false) {
+        return Err(family);
+    }
     let mut why = String::new();
     for (calm, finer) in ATTEMPTS {
         let smooth = folded.smooth(calm);

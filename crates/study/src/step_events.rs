@@ -85,7 +85,8 @@ pub(crate) fn events_on_edge(
     let bracketed =
         [(WATCH_TORUS, EventKind::Torus, change.pair), (WATCH_BRANCHING, EventKind::Branching, change.passes_one)];
     for (index, kind, seen) in bracketed {
-        if seen || after.watch.values[index].value.abs() > NEARLY_ON {
+        // Where it stands there before, too, it stays: a pair of a conservative model on the circle.
+        if seen || stands_on(ends.0, index) || after.watch.values[index].value.abs() > NEARLY_ON {
             continue;
         }
         let located = match kind {

@@ -322,6 +322,7 @@ fn shortfalls(study: &Study, branches: &[Branch], cascade_only: bool) -> Vec<Str
                     | EndReason::Equilibrium { .. }
                     | EndReason::ReturnsToParent
                     | EndReason::Joins { .. }
+                    | EndReason::Continuum
                     | EndReason::Unbounded
                     | EndReason::PeriodBlowUp
             );

@@ -4,7 +4,7 @@ use std::sync::atomic::{AtomicBool, Ordering};
 
 use armilla_follow::{FollowEnd, Follower, Landing, Outcome, Problem, Settings, Station, Step};
 use armilla_record::{End, EndReason, EventKind, Point};
-use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_FOLD};
+use armilla_stability::{CyclePoint, CycleProblem, CycleTangent, WATCH_DOUBLING, WATCH_FOLD};
 
 use crate::ahead::Ahead;
 use crate::approach::{Approach, Known, Past, approach, approach_of_stuck, orbit_stands, resolved};
@@ -17,7 +17,7 @@ use crate::joins::{Atlas, MetAgain};
 use crate::ledger::{Change, is_off_folds, is_sure};
 use crate::near_miss::near_miss_by_mean;
 use crate::rest::{Motion, Rest, push};
-use crate::step_events::{Found, SUPERCONVERGENCE, events_of_step, events_on_edge, landing_event};
+use crate::step_events::{Found, SUPERCONVERGENCE, events_of_step, events_on_edge, landing_event, unresolved};
 use crate::study::Study;
 
 pub(crate) type CycleStation = Station<CyclePoint, CycleTangent>;
@@ -182,6 +182,13 @@ impl Walker<'_, '_> {
         match passage {
             Passage::Fell(ended) => return if self.retry() { Taken::On } else { Taken::Ended(ended) },
             Passage::End(ended, rest) => {
+                if rest.is_none() && before.watch.values[WATCH_DOUBLING].value < 0.0 {
+                    // Where it is born no multiplier of a doubled cycle is negative: one passes -1 on the way there.
+                    if self.retry() {
+                        return Taken::On;
+                    }
+                    self.doubling_before_birth(&before, ended.value);
+                }
                 if let Some(rest) = rest {
                     self.come_to_rest(&before, rest);
                 }
@@ -311,6 +318,36 @@ impl Walker<'_, '_> {
         self.walk.events.push(event);
     }
 
+    /// Tells of a doubling between a station and the birth that the walk ends at.
+    fn doubling_before_birth(&mut self, before: &CycleStation, birth: f64) {
+        let value = before.point.unknowns.parameter;
+        let interval = (0.5 * (value + birth), 0.5 * (value - birth).abs());
+        let note = "a period doubling lies between the last cycle and the birth of the branch, but was not located";
+        let event = unresolved(before, interval, note.into(), self.plan);
+        let (problem, _, _) = self.follower.parts();
+        self.sink.event(problem, &event);
+        self.walk.events.push(event);
+    }
+
+    /// The end of a walk whose every cycle has one value of the parameter: nothing but the amplitude tells them apart.
+    fn continuum(&self) -> Option<End> {
+        /// Cycles that show it.
+        const CYCLES: usize = 12;
+        /// Units in the last place of the parameter, or of the range, within which it is one value.
+        const UNITS: f64 = 64.0;
+        let points = &self.walk.points;
+        if points.len() != CYCLES {
+            return None;
+        }
+        let value = points[0].point.value;
+        let same = UNITS * f64::EPSILON * value.abs().max(self.plan.width());
+        points.iter().all(|walked| (walked.point.value - value).abs() <= same).then(|| {
+            let name = &self.plan.study.file.follow.parameter;
+            let words = format!("cycles fill a continuum at the one value {name} = {}", short(self.plan.study, value));
+            end(EndReason::Continuum, value, words)
+        })
+    }
+
     /// Passes on what a good step brought, and looks whether the walk ends with it.
     fn keep(&mut self, found: Vec<Found>, after: CycleStation, unstable_count: usize) -> Taken {
         let doubles = found.iter().any(|event| event.kind == EventKind::Doubling);
@@ -340,6 +377,9 @@ impl Walker<'_, '_> {
         }
         let past = past(&mut self.follower, self.plan.width());
         self.seen.periods.push(past);
+        if let Some(continuum) = self.continuum() {
+            return Taken::Ended(continuum);
+        }
         if let Some(joined) = self.joined() {
             return Taken::Ended(joined);
         }

@@ -157,6 +157,7 @@ pub fn branch(seed: u64, name: &str, n_points: usize) -> Branch {
         EndReason::Equilibrium { value: bits.finite() },
         EndReason::PeriodBlowUp,
         EndReason::ReturnsToParent,
+        EndReason::Continuum,
         EndReason::Joins { branch: "a.doubling1".into() },
         EndReason::ResolutionLost,
         EndReason::Stuck,
