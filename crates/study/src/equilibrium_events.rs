@@ -96,20 +96,24 @@ pub(crate) fn neutral(problem: &mut EquilibriumProblem, station: &RestStation) -
     if is_known { problem.neutral_count(&station.point) } else { None }
 }
 
-/// Change of the parameter in which an eigenvalue that passes the axis between two stations is on it as far as rounding
-/// tells, if it moves no slower than the one nearest to the axis would.
-fn blur(problem: &mut EquilibriumProblem, before: &RestStation, after: &RestStation) -> f64 {
+/// Change of the parameter by that of the real part of an eigenvalue that passes the axis between two stations, if it moves
+/// no slower than the one nearest to the axis would.
+fn pace(problem: &mut EquilibriumProblem, before: &RestStation, after: &RestStation) -> f64 {
     let mut off_axis = |station: &RestStation| {
         let spectrum = problem.spectrum(&station.point).ok()?;
         let off = spectrum.values.iter().map(|value| value.re.abs()).filter(|re| *re > SIDE * spectrum.norm);
-        Some((off.reduce(f64::min)?, spectrum.norm))
+        off.reduce(f64::min)
     };
-    let ends: Vec<(f64, f64)> = [before, after].into_iter().filter_map(&mut off_axis).collect();
-    let moved: f64 = ends.iter().map(|end| end.0).sum();
-    let norm = ends.iter().map(|end| end.1).fold(0.0, f64::max);
+    let moved: f64 = [before, after].into_iter().filter_map(&mut off_axis).sum();
     let width = (after.point.parameter - before.point.parameter).abs();
-    // Off the axis by twice what counts as on it: one SIDE each way, and as much for rounding.
-    if moved > 0.0 { 4.0 * SIDE * norm / moved * width } else { 0.0 }
+    if moved > 0.0 { width / moved } else { 0.0 }
+}
+
+/// Real part, at two neighbouring stations, within which an eigenvalue counts as on the axis: one SIDE each way, and as much
+/// for rounding.
+fn band(problem: &mut EquilibriumProblem, ends: (&RestStation, &RestStation)) -> f64 {
+    let norms = [ends.0, ends.1].map(|station| problem.spectrum(&station.point).map_or(0.0, |spectrum| spectrum.norm));
+    4.0 * SIDE * norms[0].max(norms[1])
 }
 
 /// Whether two imaginary pairs of one station meet between it and the other and leave the axis to both sides.
@@ -123,19 +127,19 @@ fn pairs_meet(problem: &mut EquilibriumProblem, change: Change, ends: (&RestStat
 pub(crate) struct Search<'a> {
     pub study: &'a Study,
     pub found: Vec<RestFound>,
-    /// Change of the parameter within which an eigenvalue passes what counts as the axis.
-    blur: f64,
+    /// Change of the parameter by that of the real part that passes the axis.
+    pace: f64,
 }
 
 impl<'a> Search<'a> {
     /// Nothing found yet.
     pub(crate) fn new(study: &'a Study) -> Self {
-        Self { study, found: Vec::new(), blur: 0.0 }
+        Self { study, found: Vec::new(), pace: 0.0 }
     }
 
     /// Finds the events between two stations, in no order.
     pub(crate) fn between(&mut self, problem: &mut EquilibriumProblem, before: &RestStation, after: &RestStation) {
-        self.blur = blur(problem, before, after);
+        self.pace = pace(problem, before, after);
         self.part(problem, (before, after), (0, 0));
     }
 
@@ -172,7 +176,10 @@ impl<'a> Search<'a> {
                 self.part(problem, (before, &middle), (cuts + 1, near_cuts));
                 self.part(problem, (&middle, after), (cuts + 1, near_cuts));
             }
-            None => self.unresolved((change, meeting), before, after),
+            None => {
+                let blur = self.pace * band(problem, (before, after));
+                self.unresolved((change, meeting, blur), before, after);
+            }
         }
     }
 
@@ -238,11 +245,11 @@ impl<'a> Search<'a> {
         self.found.push(found);
     }
 
-    fn unresolved(&mut self, (change, meeting): (Change, bool), before: &RestStation, after: &RestStation) {
+    fn unresolved(&mut self, (change, meeting, blur): (Change, bool, f64), before: &RestStation, after: &RestStation) {
         let (p, q) = (before.point.parameter, after.point.parameter);
         let (low, high) = self.study.range;
         let scale = (high - low).max(p.abs());
-        let error = 0.5 * (p - q).abs() + self.blur + 1e2 * f64::EPSILON * scale;
+        let error = 0.5 * (p - q).abs() + blur + 1e2 * f64::EPSILON * scale;
         let tight = error <= self.study.file.accuracy * scale;
         let kind = match change.event() {
             Some(RestEvent::Fold) if tight => EventKind::Fold,
