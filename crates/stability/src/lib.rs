@@ -71,7 +71,7 @@ pub use degenerate::{Degeneracy, Term, degeneracy, keeps_volume};
 pub use dip::Dip;
 pub use equilibrium::{
     BranchingForm, CriticalSlope, Crossing, EquilibriumPoint, EquilibriumProblem, EquilibriumSpec, EquilibriumTangent,
-    HopfForm, LocatedRest, RestEvent, RestFault, WATCH_CROSSING, WATCH_TURN, birth_row,
+    HopfForm, LocatedRest, RestEvent, RestFault, SIDE, WATCH_CROSSING, WATCH_TURN, birth_row,
 };
 pub use locate::{LocateFault, Located};
 pub use measure::Measures;

@@ -7,7 +7,7 @@ use armilla_record::{Branch, End, EndReason, Event, EventKind, Point, Solutions}
 use armilla_stability::{EquilibriumPoint, EquilibriumProblem, EquilibriumTangent};
 
 use crate::branch::{Finished, Lineage, Parent, Parts, Run, Switchable, Way, branch_record};
-use crate::equilibrium_events::{RestBirth, RestFound, Search, is_sure};
+use crate::equilibrium_events::{RestBirth, RestFound, Search, neutral};
 use crate::equilibrium_walk::{RestPlan, RestSink, RestWalk, at_parameter, walk};
 use crate::error::StudyError;
 use crate::joins::Followed;
@@ -132,10 +132,10 @@ fn events_at_start(
 ) {
     let Ok(watch) = problem.watch(start, tangent) else { return };
     let station = Station { point: start.clone(), tangent: tangent.clone(), watch, distance: 0.0 };
-    if is_sure(problem, &station) {
+    if neutral(problem, &station) == Some(0) {
         return;
     }
-    let mut search = Search { study: collector.run.study, found: Vec::new() };
+    let mut search = Search::new(collector.run.study);
     search.at(problem, &station);
     search.found.into_iter().for_each(|found| collector.event(found));
 }

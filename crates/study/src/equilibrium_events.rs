@@ -10,7 +10,7 @@ use armilla_follow::{Hermite, Problem, Station};
 use armilla_record::{Criticality, EventKind};
 use armilla_stability::{
     BranchingForm, CriticalSlope, Crossing, EquilibriumPoint, EquilibriumProblem, EquilibriumTangent, HopfForm,
-    LocatedRest, RestEvent, WATCH_CROSSING, WATCH_TURN,
+    LocatedRest, RestEvent, SIDE, WATCH_CROSSING, WATCH_TURN,
 };
 
 use crate::near_miss::near_miss_by_mean;
@@ -73,8 +73,6 @@ impl Change {
     }
 }
 
-/// Real part of an eigenvalue, over the norm of the balanced Jacobian, below which its side is roundoff's.
-const SIDE: f64 = 1e-11;
 /// Parameter component of the tangent below which its sign is not relied on.
 const TURN: f64 = 1e-9;
 /// Cuts of a part that does not add up; each halves it.
@@ -85,25 +83,63 @@ const NEAR_CUTS: usize = 8;
 const NEAR: f64 = 0.1;
 /// Length of a part that is cut no further.
 const SHORTEST: f64 = 1e-11;
+/// Length of a part in which two imaginary pairs meet that is cut no further: where they meet rounding moves eigenvalues by its
+/// square root, and this far off they still tell their side.
+const MEETING: f64 = 1e-8;
 /// Distance from a station within which an event is the one it stands on.
 const ON: f64 = 1e-7;
 
-/// Whether the side of every eigenvalue and of the parameter is known at a station.
-pub(crate) fn is_sure(problem: &mut EquilibriumProblem, station: &RestStation) -> bool {
-    let turns = station.watch.values[WATCH_TURN].value.abs() > TURN;
-    let Ok(spectrum) = problem.spectrum(&station.point) else { return false };
-    turns && spectrum.values.iter().all(|value| value.re.abs() > SIDE * spectrum.norm)
+/// Number of eigenvalues on the imaginary axis at a station; none where they or the side of the parameter are not known. On
+/// an event it differs from that of the stations beside it; where something is conserved it does not.
+pub(crate) fn neutral(problem: &mut EquilibriumProblem, station: &RestStation) -> Option<usize> {
+    let is_known = station.watch.values[WATCH_TURN].value.abs() > TURN;
+    if is_known { problem.neutral_count(&station.point) } else { None }
+}
+
+/// Change of the parameter by that of the real part of an eigenvalue that passes the axis between two stations, if it moves
+/// no slower than the one nearest to the axis would.
+fn pace(problem: &mut EquilibriumProblem, before: &RestStation, after: &RestStation) -> f64 {
+    let mut off_axis = |station: &RestStation| {
+        let spectrum = problem.spectrum(&station.point).ok()?;
+        let off = spectrum.values.iter().map(|value| value.re.abs()).filter(|re| *re > SIDE * spectrum.norm);
+        off.reduce(f64::min)
+    };
+    let moved: f64 = [before, after].into_iter().filter_map(&mut off_axis).sum();
+    let width = (after.point.parameter - before.point.parameter).abs();
+    if moved > 0.0 { width / moved } else { 0.0 }
+}
+
+/// Real part, at two neighbouring stations, within which an eigenvalue counts as on the axis: one SIDE each way, and as much
+/// for rounding.
+fn band(problem: &mut EquilibriumProblem, ends: (&RestStation, &RestStation)) -> f64 {
+    let norms = [ends.0, ends.1].map(|station| problem.spectrum(&station.point).map_or(0.0, |spectrum| spectrum.norm));
+    4.0 * SIDE * norms[0].max(norms[1])
+}
+
+/// Whether two imaginary pairs of one station meet between it and the other and leave the axis to both sides.
+fn pairs_meet(problem: &mut EquilibriumProblem, change: Change, ends: (&RestStation, &RestStation)) -> bool {
+    let counts = (problem.neutral_count(&ends.0.point), problem.neutral_count(&ends.1.point));
+    let (Some(before), Some(after)) = counts else { return false };
+    change.event() == Some(RestEvent::Hopf) && before.abs_diff(after) >= 4
 }
 
 /// The search for events between two stations.
 pub(crate) struct Search<'a> {
     pub study: &'a Study,
     pub found: Vec<RestFound>,
+    /// Change of the parameter by that of the real part that passes the axis.
+    pace: f64,
 }
 
-impl Search<'_> {
+impl<'a> Search<'a> {
+    /// Nothing found yet.
+    pub(crate) fn new(study: &'a Study) -> Self {
+        Self { study, found: Vec::new(), pace: 0.0 }
+    }
+
     /// Finds the events between two stations, in no order.
     pub(crate) fn between(&mut self, problem: &mut EquilibriumProblem, before: &RestStation, after: &RestStation) {
+        self.pace = pace(problem, before, after);
         self.part(problem, (before, after), (0, 0));
     }
 
@@ -125,32 +161,40 @@ impl Search<'_> {
             }
             return;
         }
-        if let Some(event) = change.event()
+        let meeting = pairs_meet(problem, change, (before, after));
+        if let Some(event) = change.event().filter(|_| !meeting)
             && let Some(located) = locate(problem, event, before, after)
         {
             self.located(problem, located, (before, after));
             return;
         }
-        let middle = (cuts < CUTS && length > SHORTEST).then(|| problem.between(before, after)).flatten();
+        let middle = (cuts < CUTS && length > if meeting { MEETING } else { SHORTEST })
+            .then(|| problem.between(before, after))
+            .flatten();
         match middle {
             Some(middle) => {
                 self.part(problem, (before, &middle), (cuts + 1, near_cuts));
                 self.part(problem, (&middle, after), (cuts + 1, near_cuts));
             }
-            None => self.unresolved(change, before, after),
+            None => {
+                let blur = self.pace * band(problem, (before, after));
+                self.unresolved((change, meeting, blur), before, after);
+            }
         }
     }
 
     /// Events that a station stands on, so that neither side shows them.
     pub(crate) fn at(&mut self, problem: &mut EquilibriumProblem, station: &RestStation) {
         let Ok(spectrum) = problem.spectrum(&station.point) else { return };
-        let pair = spectrum.values.iter().filter(|value| value.im > 0.0);
-        let frequency = pair.min_by(|a, b| a.re.abs().total_cmp(&b.re.abs())).map_or(0.0, |value| value.im);
-        let kinds = [RestEvent::Hopf, RestEvent::Branching, RestEvent::Fold];
-        let found = kinds.into_iter().filter(|event| *event != RestEvent::Hopf || frequency > 0.0).find_map(|event| {
+        let mut pairs: Vec<_> = spectrum.values.iter().filter(|value| value.im > 0.0).collect();
+        pairs.sort_by(|a, b| a.re.abs().total_cmp(&b.re.abs()));
+        // Another pair may stand on the axis all along.
+        let on_axis = pairs.iter().filter(|value| value.re.abs() <= SIDE * spectrum.norm).count().max(1);
+        let hopf = pairs.iter().take(on_axis).map(|value| (RestEvent::Hopf, value.im));
+        let mut kinds = hopf.chain([(RestEvent::Branching, 0.0), (RestEvent::Fold, 0.0)]);
+        let found = kinds.find_map(|(event, frequency)| {
             let located = problem.solve(event, station.point.clone(), frequency)?;
-            // On every point of a conservative model's branch a pair stands on the axis: no value of the parameter is told.
-            let isolated = located.error < self.study.range.1 - self.study.range.0;
+            let isolated = problem.is_isolated(&located);
             (isolated && problem.distance(&located.point, &station.point) <= ON).then_some(located)
         });
         if let Some(mut located) = found {
@@ -201,11 +245,11 @@ impl Search<'_> {
         self.found.push(found);
     }
 
-    fn unresolved(&mut self, change: Change, before: &RestStation, after: &RestStation) {
+    fn unresolved(&mut self, (change, meeting, blur): (Change, bool, f64), before: &RestStation, after: &RestStation) {
         let (p, q) = (before.point.parameter, after.point.parameter);
         let (low, high) = self.study.range;
         let scale = (high - low).max(p.abs());
-        let error = 0.5 * (p - q).abs() + 1e2 * f64::EPSILON * scale;
+        let error = 0.5 * (p - q).abs() + blur + 1e2 * f64::EPSILON * scale;
         let tight = error <= self.study.file.accuracy * scale;
         let kind = match change.event() {
             Some(RestEvent::Fold) if tight => EventKind::Fold,
@@ -215,6 +259,9 @@ impl Search<'_> {
         };
         let note = match change.event() {
             Some(_) if tight && kind != EventKind::Unresolved => LOCATED_BY_BRACKET.to_string(),
+            _ if meeting => {
+                "two imaginary pairs of eigenvalues meet here and leave the imaginary axis to both sides".into()
+            }
             Some(RestEvent::Hopf) => "two eigenvalues pass the imaginary axis here, but no Hopf point was found".into(),
             _ => "several eigenvalues pass the imaginary axis at one place, as far as rounding tells".into(),
         };

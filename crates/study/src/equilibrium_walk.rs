@@ -7,7 +7,7 @@ use armilla_record::{End, EndReason, EventKind, Point};
 use armilla_stability::{EquilibriumPoint, EquilibriumProblem, EquilibriumTangent};
 
 use crate::ends::{end, fault_words, short};
-use crate::equilibrium_events::{RestFound, RestStation, Search, is_sure};
+use crate::equilibrium_events::{RestFound, RestStation, Search, neutral};
 use crate::study::Study;
 use crate::words::digits;
 
@@ -47,8 +47,9 @@ pub(crate) fn walk(
             let (problem, _, station) = follower.parts();
             let station = station.clone();
             let sizes = problem.sizes().to_vec();
-            let account = is_sure(problem, &station).then_some(station);
-            Walker { follower, plan, sink, account, points: Vec::new(), sizes }.run()
+            let on_axis = neutral(problem, &station);
+            let account = (on_axis == Some(0)).then(|| station.clone());
+            Walker { follower, plan, sink, account, last: (station, on_axis), points: Vec::new(), sizes }.run()
         }
         Err(_) => {
             let words = "the eigenvalues at its first equilibrium could not be computed".into();
@@ -62,8 +63,11 @@ struct Walker<'w, 'p> {
     follower: Follower<'w, EquilibriumProblem>,
     plan: &'w RestPlan<'p>,
     sink: &'w mut dyn RestSink,
-    /// The last station at which the side of every eigenvalue was known: from there on changes are accounted for.
+    /// The last station at which the side of every eigenvalue was known, or that it stays on the axis: from there on changes
+    /// are accounted for.
     account: Option<RestStation>,
+    /// The last station, and how many eigenvalues stand on the axis there.
+    last: (RestStation, Option<usize>),
     points: Vec<Point>,
     /// Sizes of the states at the start.
     sizes: Vec<f64>,
@@ -97,8 +101,17 @@ impl Walker<'_, '_> {
     fn take(&mut self, step: &Step) -> bool {
         let (problem, _, after) = self.follower.parts();
         let after = after.clone();
-        let sure = is_sure(problem, &after);
-        let mut search = Search { study: self.plan.study, found: Vec::new() };
+        let on_axis = neutral(problem, &after);
+        // As many as at the station before: they stay there.
+        let stays = on_axis.is_some() && on_axis == self.last.1;
+        let mut sure = stays || on_axis == Some(0);
+        if stays && self.account.is_none() {
+            self.account = Some(self.last.0.clone());
+        }
+        if stays && let Some(last) = self.points.last_mut() {
+            last.unstable_count = self.last.0.watch.unstable_count;
+        }
+        let mut search = Search::new(self.plan.study);
         let mut count = after.watch.unstable_count;
         match &self.account {
             Some(account) if sure => search.between(problem, account, &after),
@@ -107,6 +120,11 @@ impl Walker<'_, '_> {
                 count = account.watch.unstable_count;
                 if matches!(step.landing, Some(Landing::Edge(_))) {
                     search.at(problem, &after);
+                    if search.found.is_empty() && on_axis.is_some() {
+                        sure = true;
+                        count = after.watch.unstable_count;
+                        search.between(problem, account, &after);
+                    }
                 }
             }
             None => {}
@@ -121,8 +139,9 @@ impl Walker<'_, '_> {
         if let Some(landing) = step.landing {
             self.sink.event(landed(landing, &after.point, distance(after.distance)));
         }
+        self.last = (after, on_axis);
         if sure {
-            self.account = Some(after);
+            self.account = Some(self.last.0.clone());
         }
         let Ok(mut point) = described else { return false };
         point.unstable_count = count;

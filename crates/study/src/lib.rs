@@ -42,6 +42,7 @@ mod joins;
 mod late_folds;
 mod ledger;
 mod near_miss;
+mod neutral;
 mod prediction;
 mod progress;
 mod recurrence;

@@ -14,6 +14,7 @@ use crate::crossings::leave_out_known;
 use crate::equilibrium_births::{Crossings, ends_where_born, enter};
 use crate::error::StudyError;
 use crate::joins::Atlas;
+use crate::neutral::neutral_note;
 use crate::progress::Observer;
 use crate::start::first_solution;
 use crate::step_events::LOCATED_BY_BRACKET;
@@ -137,6 +138,7 @@ pub fn trace(study: &Study, options: &TraceOptions<'_>, observer: &mut dyn Obser
         let why = if traced.interrupted { "the run was stopped" } else { "all points allowed by `pursue` were used" };
         traced.shortfalls.push(format!("branch {} was not followed: {why}", waiting.lineage.name));
     }
+    traced.notes.extend(neutral_note(&traced.branches));
     conclude(study, results, traced, options.cascade)
 }
 

@@ -12,11 +12,12 @@
 //! left.
 
 use armilla_follow::{Closing, Orientation, Problem, Station};
+use armilla_linalg::Eigenvalues;
 
 use super::local::Along;
 use super::null::{BorderSizes, ComplexNull, RealNull};
 use super::point::{EquilibriumPoint, EquilibriumTangent};
-use super::problem::{Course, EquilibriumProblem, any_sign};
+use super::problem::{Course, EquilibriumProblem, any_sign, is_neutral};
 use super::systems::Complex;
 
 /// What happens to the eigenvalues at an event of equilibria.
@@ -97,6 +98,8 @@ const UNITS: f64 = 8.0;
 const HALVINGS: usize = 40;
 /// Frequency of a Hopf point, over the norm of the Jacobian, below which it is no pair: two zero eigenvalues.
 const SLOWEST: f64 = 1e-8;
+/// Share of the range of the parameter that the error of an isolated event stays below.
+const ISOLATED: f64 = 1e-3;
 
 impl EquilibriumProblem {
     /// Locates an event that lies between two stations. `is_beyond` tells whether the event has been passed where a
@@ -122,12 +125,36 @@ impl EquilibriumProblem {
     }
 
     fn locate_between(&mut self, event: RestEvent, low: &RestStation, high: &RestStation) -> Option<LocatedRest> {
-        let (from, to) = (self.critical_part(event, low)?, self.critical_part(event, high)?);
+        let crossing = if event == RestEvent::Hopf { self.crossing_pair(low, high) } else { None };
+        let (from, to) = match crossing {
+            Some(pair) => pair,
+            None => (self.critical_part(event, low)?, self.critical_part(event, high)?),
+        };
         let share = (from.0 / (from.0 - to.0)).clamp(0.05, 0.95);
         let share = if share.is_finite() { share } else { 0.5 };
         let guess = low.point.plus(share, &high.point.minus(&low.point));
         let located = self.solve(event, guess, from.1 + share * (to.1 - from.1))?;
-        self.lies_between(&located.point, low, high).then_some(located)
+        (self.is_isolated(&located) && self.lies_between(&located.point, low, high)).then_some(located)
+    }
+
+    /// Whether an event stands at one value of the parameter. Where a pair stays on the imaginary axis every point of the
+    /// branch solves the equations of a Hopf point, and the error says so.
+    pub fn is_isolated(&self, located: &LocatedRest) -> bool {
+        located.error < ISOLATED * self.metric.parameter_scale
+    }
+
+    /// The pair whose real part changes its sign between two stations: real part and frequency at both. One that stays on
+    /// the axis all along may be nearer to it.
+    fn crossing_pair(&mut self, low: &RestStation, high: &RestStation) -> Option<((f64, f64), (f64, f64))> {
+        let (from, to) = (self.spectrum(&low.point).ok()?, self.spectrum(&high.point).ok()?);
+        let pairs = |spectrum: &Eigenvalues| -> Vec<(f64, f64)> {
+            let off = spectrum.values.iter().filter(|value| value.im > 0.0 && !is_neutral(value.re, spectrum.norm));
+            off.map(|value| (value.re, value.im)).collect()
+        };
+        let (from, to) = (pairs(&from), pairs(&to));
+        let both = from.iter().flat_map(|a| to.iter().map(move |b| (*a, *b))).filter(|(a, b)| a.0 * b.0 < 0.0);
+        let apart = |((a, v), (b, w)): &((f64, f64), (f64, f64))| (a - b).abs() + (v - w).abs();
+        both.min_by(|x, y| apart(x).total_cmp(&apart(y)))
     }
 
     /// Whether a point lies ahead of one station and behind another and not far from both, so that it is the event they

@@ -18,6 +18,6 @@ pub use branching::{BranchingForm, Crossing};
 pub use hopf::HopfForm;
 pub use locate::{LocatedRest, RestEvent};
 pub use point::{EquilibriumPoint, EquilibriumTangent};
-pub use problem::{EquilibriumProblem, EquilibriumSpec, WATCH_CROSSING, WATCH_TURN};
+pub use problem::{EquilibriumProblem, EquilibriumSpec, SIDE, WATCH_CROSSING, WATCH_TURN};
 pub use slope::CriticalSlope;
 pub use start::RestFault;

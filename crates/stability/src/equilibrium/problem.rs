@@ -21,6 +21,10 @@ pub const WATCH_TURN: usize = 0;
 /// Index of the branching function: `Prod lambda` over the parameter's component, by its sign and the nearest eigenvalue.
 pub const WATCH_CROSSING: usize = 1;
 
+/// Real part of an eigenvalue, over the norm of the balanced Jacobian, up to which its side of the imaginary axis is
+/// roundoff's: gyroscopic pairs of a hundred states stay within it, and no event moves by more than roundoff through it.
+pub const SIDE: f64 = 1e-11;
+
 /// The model as the equilibrium problem needs it.
 #[derive(Clone)]
 pub struct EquilibriumSpec {
@@ -182,6 +186,12 @@ impl EquilibriumProblem {
         Ok(found)
     }
 
+    /// Number of eigenvalues on the imaginary axis, as far as rounding tells; none where they could not be computed.
+    pub fn neutral_count(&mut self, point: &EquilibriumPoint) -> Option<usize> {
+        let spectrum = self.spectrum(point).ok()?;
+        Some(spectrum.values.iter().filter(|value| is_neutral(value.re, spectrum.norm)).count())
+    }
+
     /// Sizes for borders at the last point linearised.
     pub(crate) fn border_sizes(&self) -> BorderSizes {
         BorderSizes::new(&self.metric.scales, self.norm())
@@ -306,12 +316,14 @@ pub(crate) fn any_sign(k: usize) -> f64 {
     if (k.wrapping_mul(0x9E37_79B9) >> 7) & 1 == 0 { 1.0 } else { -1.0 }
 }
 
+/// Whether an eigenvalue stands on the imaginary axis as far as rounding tells.
+pub(crate) fn is_neutral(re: f64, norm: f64) -> bool {
+    re.abs() <= SIDE * norm
+}
+
 /// Number of eigenvalues to the right of the imaginary axis by more than rounding: those of a conservative model stay on it.
 pub(crate) fn unstable_count(spectrum: &Eigenvalues) -> usize {
-    /// Rounding of an eigenvalue, in units of the last place of the largest, for each state.
-    const UNITS: f64 = 4.0;
-    let rounding = UNITS * spectrum.values.len() as f64 * f64::EPSILON * spectrum.norm;
-    spectrum.values.iter().filter(|value| value.re > rounding).count()
+    spectrum.values.iter().filter(|value| value.re > 0.0 && !is_neutral(value.re, spectrum.norm)).count()
 }
 
 impl Problem for EquilibriumProblem {
@@ -381,9 +393,12 @@ impl Problem for EquilibriumProblem {
         let turn = tangent.parameter / self.metric.parameter_scale;
         let turn = if turn.abs() < TURNING_NOISE { 0.0 } else { turn };
         let real = || spectrum.values.iter().filter(|value| value.im == 0.0).map(|value| value.re);
+        let is_neutral = |re: f64| is_neutral(re, spectrum.norm);
+        // One that is 0 all along has no sign of its own; the unstable count leaves it out, as those below 0.
+        let side = |re: f64| if re > 0.0 && !is_neutral(re) { 1.0 } else { -1.0 };
         // det A = det [A, f_p; t] t_p by Cramer's rule: the sign of the bordered determinant, up to that of the tangent.
-        let sign = real().fold(1.0, |sign: f64, value| sign * value.signum()) * turn.signum();
-        let nearest = real().map(f64::abs).fold(spectrum.norm, f64::min);
+        let sign = real().map(side).product::<f64>() * turn.signum();
+        let nearest = real().filter(|re| !is_neutral(*re)).map(f64::abs).fold(spectrum.norm, f64::min);
         let value = |value: f64| Watched { value, slope: None };
         let crossing = if turn == 0.0 { 0.0 } else { sign * nearest };
         Ok(Watch { values: vec![value(turn), value(crossing)], unstable_count: unstable_count(&spectrum) })

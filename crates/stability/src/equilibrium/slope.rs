@@ -6,7 +6,7 @@
 use super::local::Along;
 use super::locate::RestStation;
 use super::null::{ComplexNull, RealNull};
-use super::problem::EquilibriumProblem;
+use super::problem::{EquilibriumProblem, is_neutral};
 use super::systems::Complex;
 
 /// An eigenvalue with the slope of its real part.
@@ -28,7 +28,9 @@ impl EquilibriumProblem {
     /// double one, are left out.
     pub fn critical_slopes(&mut self, station: &RestStation) -> Vec<CriticalSlope> {
         let Ok(spectrum) = self.spectrum(&station.point) else { return Vec::new() };
-        let mut nearest: Vec<_> = spectrum.values.iter().filter(|value| value.im >= 0.0).copied().collect();
+        // On the axis all along they have no side to change.
+        let is_critical = |value: &armilla_linalg::Eigenvalue| value.im >= 0.0 && !is_neutral(value.re, spectrum.norm);
+        let mut nearest: Vec<_> = spectrum.values.iter().filter(|value| is_critical(value)).copied().collect();
         nearest.sort_by(|a, b| a.re.abs().total_cmp(&b.re.abs()));
         nearest.truncate(LOOKED_AT);
         let slope = |value: &armilla_linalg::Eigenvalue| {

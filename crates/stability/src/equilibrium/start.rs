@@ -27,10 +27,12 @@ pub enum RestFault {
         /// Scaled length of the correction that it still asked for.
         correction: f64,
     },
-    /// The Jacobian is singular all along: equilibria are not isolated here.
+    /// The Jacobian is singular where the iteration stands.
     Singular {
         /// The states it stopped at.
         states: Vec<f64>,
+        /// Whether that is an equilibrium: one on a fold or a branching, or not isolated, or degenerate.
+        is_at_rest: bool,
     },
 }
 
@@ -90,7 +92,7 @@ impl EquilibriumProblem {
             let solved = self.systems.single(&jacobian, 0.0, &border).map(|system| system.solve(&mut step));
             last = self.metric.largest(&step[..n], 0.0);
             if solved.is_none() || !last.is_finite() {
-                return Err(RestFault::Singular { states: point.state });
+                return Err(RestFault::Singular { is_at_rest: self.rests(&point), states: point.state });
             }
             if last <= NEAR {
                 return Ok(point);
@@ -110,6 +112,14 @@ impl EquilibriumProblem {
             }
         }
         Err(RestFault::NotConverged { states: point.state, correction: last })
+    }
+
+    /// Whether the rates at the point linearised last are rounding of their terms.
+    fn rests(&mut self, point: &EquilibriumPoint) -> bool {
+        /// Units in the last place of the terms of a rate.
+        const UNITS: f64 = 4.0;
+        let sizes = self.terms.of_rates(&self.local, point);
+        self.local.rates.iter().zip(&sizes).all(|(rate, size)| rate.abs() <= UNITS * f64::EPSILON * size)
     }
 
     /// Whether the correction asked for at a trial point, by the Jacobian of the point before, is shorter than that before.
