@@ -22,6 +22,9 @@ pub enum Crossing {
     Transcritical,
 }
 
+/// Product of the left and the right critical vector, over their lengths, that is rounding.
+const ORTHOGONAL: f64 = 1e-9;
+
 /// A simple branching, decided.
 #[derive(Clone, Debug)]
 pub struct BranchingForm {
@@ -123,8 +126,10 @@ impl EquilibriumProblem {
         let terms = [product(psi, &cubic), 3.0 * product(psi, &mixed)];
         let c = terms[0] + terms[1];
         let sure = c.abs() > ROUNDING * (terms[0].abs() + terms[1].abs());
+        // Orthogonal critical vectors belong to a double eigenvalue 0, as in a model with an energy: no side goes with c then.
         let length = product(psi, v);
-        sure.then_some(c * length < 0.0)
+        let simple = length.abs() > ORTHOGONAL * (product(psi, psi) * product(v, v)).sqrt();
+        (sure && simple).then_some(c * length < 0.0)
     }
 
     /// The first equilibrium of a branch beside the branching it goes through, at about this distance in `direction`, with
