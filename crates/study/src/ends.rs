@@ -2,7 +2,7 @@
 
 use armilla_follow::{FollowEnd, Follower};
 use armilla_record::{End, EndReason, EventKind, Point};
-use armilla_stability::{CyclePoint, CycleProblem, Fault, SplitChange};
+use armilla_stability::{CyclePoint, CycleProblem, Fault, SplitChange, WATCH_FOLD};
 
 use crate::approach::Approach;
 use crate::rest::{Motion, Rest, birth, guess};
@@ -299,12 +299,26 @@ pub(crate) fn fault_words(study: &Study, fault: &Fault) -> String {
 /// Motion, relative to the largest along the walk, below which a walk that is stuck has shrunk to an equilibrium.
 const NEARLY_AT_REST: f64 = 0.02;
 
+/// Words for a second multiplier that is 1 where a walk is stuck.
+fn second_multiplier_at_one(follower: &mut Follower<'_, CycleProblem>) -> &'static str {
+    /// |log mu| that no fold on the way leaves at a shortest stride.
+    const NEAR: f64 = 1e-4;
+    /// Parameter component of the tangent that a fold leaves none of.
+    const MOVES: f64 = 1e-3;
+    let (problem, _, current) = follower.parts();
+    let moves = current.watch.values[WATCH_FOLD].value.abs() > MOVES;
+    let (point, near) = (current.point.clone(), |log: f64| log.abs() < NEAR);
+    let at_one = problem.spectrum(&point).ok().and_then(|spectrum| spectrum.nearest_to_one()).is_some_and(near);
+    if moves && at_one { "; a second multiplier comes to 1 there, as where cycles fill a continuum" } else { "" }
+}
+
 pub(crate) fn end_of_follower(
     follower: &mut Follower<'_, CycleProblem>,
     plan: &WalkPlan<'_>,
     motions: &[Motion],
 ) -> End {
     let no_multipliers = follower.parts().0.spectrum_fault().map(ToString::to_string);
+    let beside_one = second_multiplier_at_one(follower);
     let value = follower.current().point.unknowns.parameter;
     let name = with_unit_name(plan);
     let here = short(plan.study, value);
@@ -330,7 +344,9 @@ pub(crate) fn end_of_follower(
         Some(FollowEnd::Stuck) | None => {
             let words = match no_multipliers {
                 Some(why) => format!("the multipliers could not be computed beyond {name} = {here}: {why}"),
-                None => format!("resolution limit: the corrector fails at the shortest stride at {name} = {here}"),
+                None => format!(
+                    "resolution limit: the corrector fails at the shortest stride at {name} = {here}{beside_one}"
+                ),
             };
             end(EndReason::Stuck, value, words)
         }

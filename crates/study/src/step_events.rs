@@ -86,7 +86,8 @@ pub(crate) fn events_on_edge(
         [(WATCH_TORUS, EventKind::Torus, change.pair), (WATCH_BRANCHING, EventKind::Branching, change.passes_one)];
     for (index, kind, seen) in bracketed {
         // Where it stands there before, too, it stays: a pair of a conservative model on the circle.
-        if seen || stands_on(ends.0, index) || after.watch.values[index].value.abs() > NEARLY_ON {
+        let nearly = |station: &CycleStation| station.watch.values[index].value.abs() <= NEARLY_ON;
+        if seen || nearly(ends.0) || !nearly(after) {
             continue;
         }
         let located = match kind {
