@@ -403,6 +403,10 @@ fn criticality(c: f64) -> Criticality {
     if c < 0.0 { Criticality::Supercritical } else { Criticality::Subcritical }
 }
 
+/// Note of an event at which two multipliers pass the circle together.
+const TWO_AT_ONCE: &str = "two multipliers pass +1 or -1 at one place: a pair in strong resonance (1:1 or 1:2), or two events \
+                           closer to each other than the accuracy tells";
+
 /// A change of the unstable count that is neither fold nor doubling: narrowed by bisection and told as what crosses.
 fn remaining_change(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>) -> Found {
     let Part { before: low, after: high, .. } = narrowed(problem, part);
@@ -421,11 +425,13 @@ fn remaining_change(problem: &mut CycleProblem, part: &Part, plan: &WalkPlan<'_>
             (EventKind::Torus, Some(mu.angle.abs()), "located by bisection of the unstable count")
         }
         Some(mu) if change == 1 && mu.angle == 0.0 => (EventKind::Branching, Some(0.0), PASSES_ONE),
-        Some(mu) if change == 2 => (
-            EventKind::Unresolved,
-            Some(if mu.angle.abs() < 1.0 { 0.0 } else { std::f64::consts::PI }),
-            "two multipliers leave the unit circle at one place: two events closer to each other than the accuracy tells",
-        ),
+        Some(mu) if change == 2 => {
+            (EventKind::Unresolved, Some(if mu.angle.abs() < 1.0 { 0.0 } else { std::f64::consts::PI }), TWO_AT_ONCE)
+        }
+        // Beside such a place both are so near the circle that neither has a side.
+        Some(mu) if part.change.count == 2 && !is_pair(mu.angle) => {
+            (EventKind::Unresolved, Some(if mu.angle.abs() < 1.0 { 0.0 } else { std::f64::consts::PI }), TWO_AT_ONCE)
+        }
         _ => (EventKind::Unresolved, None, "the number of unstable multipliers changes here for a reason not resolved"),
     };
     let mut event = unresolved(&low, (0.5 * (a + b), half_width), note.into(), plan);
