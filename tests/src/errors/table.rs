@@ -29,8 +29,7 @@ which runs the main job on each case and compares. The same comparison is a test
 
 What is claimed: the true error is at most the reported one, and the reported one is at most {WIDEST} times the true
 one, or {WIDEST} times the roundoff unit of the number where the true error is smaller than that by luck. The unit is
-2.2e-16 times the size of the number, for a parameter times the width of the asked range if that is larger. Where parts of
-an error cancel, the true one may be smaller than its size by luck: one number in a hundred may be up to ten times wider.
+2.2e-16 times the size of the number, for a parameter times the width of the asked range if that is larger.
 
 How each error is estimated:
 

@@ -24,7 +24,7 @@ fn two_doublings_as_near_as_a_billionth_of_the_range() {
         for (event, exact) in found.iter().zip([0.0, d]) {
             let off = (event.value - exact).abs();
             assert!(
-                off <= event.error.expect("an error") && off < 1e-12,
+                off <= event.error.expect("an error") && off < 1e-13,
                 "{d}: {} for {exact}, {:?}",
                 event.value,
                 event.error
