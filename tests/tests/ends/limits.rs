@@ -58,3 +58,13 @@ fn a_stride_that_may_not_shrink_gets_stuck() {
     assert!(a.ends.1.words.starts_with("resolution limit: the corrector fails at the shortest stride at p = "));
     assert!(!traced.shortfalls.is_empty());
 }
+
+/// Exact: at mu = 0 the model is a pendulum; the cycles born there all belong to that one value.
+#[test]
+fn a_continuum_of_cycles_ends_a_walk() {
+    let traced = job("centre", r#"start: Settle(at: {"mu": -0.3}), follow: (parameter: "mu", from: -1.0, to: 1.0)"#);
+    let cycles = branch(&traced, "a.hopf1");
+    assert_eq!(cycles.ends.1.reason, EndReason::Continuum, "{}", cycles.ends.1.words);
+    assert_eq!(cycles.ends.1.words, "cycles fill a continuum at the one value mu = 0");
+    assert!(cycles.points.len() < 20, "{}", cycles.points.len());
+}

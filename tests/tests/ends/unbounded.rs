@@ -81,3 +81,28 @@ fn towards_a_saddle_node_on_a_loop() {
     }
     check_ratios("saddle-node on a loop", ratios, 1000.0);
 }
+
+/// Exact to first order in e: energy is lost and gained alike over the separatrix of the two wells at b = 4/5 (Melnikov
+/// 1963, Transactions of the Moscow Mathematical Society 12:1: the integrals are 16/15 and 4/3), and the next order is e^2,
+/// since b is even in e (time reversed). So (b - 4/5) / e^2 of two small e agree to their square.
+#[test]
+fn towards_a_loop_through_weak_damping() {
+    let limits = [0.1, 0.3].map(|e: f64| {
+        let traced = job(
+            "soft_loop",
+            &format!(
+                r#"set: {{"e": {e:?}}}, start: Settle(at: {{"b": 0.9}}), follow: (parameter: "b", from: 0.5, to: 1.2)"#
+            ),
+        );
+        let a = branch(&traced, "a");
+        let ends = [&a.ends.0, &a.ends.1];
+        let end =
+            ends.iter().find(|end| end.reason == EndReason::PeriodBlowUp).unwrap_or_else(|| panic!("e {e}: {ends:?}"));
+        assert!(end.words.ends_with("(as towards a saddle loop, like the logarithm of the distance)"), "{}", end.words);
+        let event = a.events.iter().find(|event| event.kind == EventKind::PeriodBlowUp).expect("the limit");
+        assert!(event.error.expect("an error") < 1e-9 && event.period_error.is_none(), "{event:?}");
+        (event.value - 0.8) / (e * e)
+    });
+    assert!((limits[0] - limits[1]).abs() < 0.09 * limits[0].abs(), "{limits:?}");
+    assert!((0.01..0.02).contains(&limits[0]), "{limits:?}");
+}
