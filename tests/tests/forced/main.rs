@@ -6,3 +6,4 @@ mod load;
 mod mathieu;
 mod planted;
 mod sieve;
+mod still;

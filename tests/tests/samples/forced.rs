@@ -2,6 +2,7 @@
 
 use std::f64::consts::TAU;
 
+use armilla_record::EventKind;
 use armilla_tests::{Motion, branch, relative, sampled_job};
 
 /// The hardening spring of `models/duffing` at omega = 1.4, where two stable answers are there: the samples tell which is
@@ -85,5 +86,30 @@ fn two_forcing_periods_are_found() {
         );
         let fault = sampled_job("forced_band", &table, &fields).expect_err("a refusal").to_string();
         assert!(fault.contains(words) && fault.contains("help:"), "{fault}");
+    }
+}
+
+/// Exact: without damping the divergence is 0, so the two multipliers of every cycle have the product 1. As a pair they lie on
+/// the unit circle, where they pass nothing. Samples from one harmonic, `(1 - omega^2) A + 3/4 A^3 = F`.
+#[test]
+fn a_pair_that_stays_on_the_circle_is_no_torus_point() {
+    let (omega, drive): (f64, f64) = (1.4, 0.1);
+    let amplitude = (0..50).fold(0.0f64, |a, _| (drive - 0.75 * a.powi(3)) / (1.0 - omega * omega));
+    let mut table = String::from("t,x,v\n");
+    for k in 0..60 {
+        let t = TAU / omega * f64::from(k) / 60.0;
+        let (sine, cosine) = (omega * t).sin_cos();
+        table.push_str(&format!("{t},{},{}\n", amplitude * cosine, -omega * amplitude * sine));
+    }
+    let fields = r#"start: Samples(file: "cycle.csv"), follow: (parameter: "F", from: 0.01, to: 1.0)"#;
+    let traced = sampled_job("undamped", &table, fields).unwrap_or_else(|fault| panic!("{fault}"));
+    let a = branch(&traced, "a");
+    let kinds: Vec<EventKind> = a.events.iter().map(|event| event.kind).filter(|kind| kind.is_threshold()).collect();
+    assert_eq!(kinds, [EventKind::Fold], "{:?}", a.events.iter().map(|event| &event.name).collect::<Vec<_>>());
+    let start = a.events.iter().find(|event| event.kind == EventKind::Start).expect("a start");
+    assert!(start.note.contains("conservative"), "{}", start.note);
+    for point in &a.points {
+        let sum: f64 = point.multipliers.iter().map(|mu| mu.log_modulus).sum();
+        assert!(sum.abs() < 1e-9, "{sum:e} at {}", point.value);
     }
 }
