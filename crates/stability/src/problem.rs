@@ -159,11 +159,21 @@ impl CycleProblem {
         profile: &Profile,
         parameter: f64,
     ) -> Result<(Self, CyclePoint), StartFault> {
-        let guess = within_degrees(profile, settings.mesh.degrees);
-        let mut problem = Self::with_metric(spec, settings, Sizes::Natural(STILL_AT_FIRST), &guess, parameter)?;
-        let mut point = CyclePoint::from_profile(&guess, parameter);
+        let (mut problem, mut point) = Self::guessed(spec, settings, profile, parameter)?;
         problem.correct_at(&mut point, parameter).map_err(StartFault::Newton)?;
         problem.with_own_sizes(point, parameter)
+    }
+
+    /// A problem whose metric is that of a guess, with the guess, not corrected yet.
+    pub(crate) fn guessed(
+        spec: CycleSpec,
+        settings: CycleSettings,
+        profile: &Profile,
+        parameter: f64,
+    ) -> Result<(Self, CyclePoint), StartFault> {
+        let guess = within_degrees(profile, settings.mesh.degrees);
+        let problem = Self::with_metric(spec, settings, Sizes::Natural(STILL_AT_FIRST), &guess, parameter)?;
+        Ok((problem, CyclePoint::from_profile(&guess, parameter)))
     }
 
     /// A first cycle with the sizes of states read from itself, on a mesh chosen for the accuracy.

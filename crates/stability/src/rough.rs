@@ -4,8 +4,7 @@ use armilla_collocation::{LinearClosing, Row, Task, approach};
 use armilla_record::Profile;
 
 use crate::point::CyclePoint;
-use crate::problem::{CycleProblem, CycleSettings, CycleSpec, Sizes, StartFault};
-use crate::scale::STILL_AT_FIRST;
+use crate::problem::{CycleProblem, CycleSettings, CycleSpec, StartFault};
 
 impl CycleProblem {
     /// [`CycleProblem::start`] from a profile that may be off by a good part of its size: Newton's method is damped until it
@@ -19,9 +18,7 @@ impl CycleProblem {
         profile: &Profile,
         parameter: f64,
     ) -> Result<(Self, CyclePoint), StartFault> {
-        let guess = within_degrees(profile, settings.mesh.degrees);
-        let mut problem = Self::with_metric(spec, settings, Sizes::Natural(STILL_AT_FIRST), &guess, parameter)?;
-        let mut point = CyclePoint::from_profile(&guess, parameter);
+        let (mut problem, mut point) = Self::guessed(spec, settings, profile, parameter)?;
         problem.system.set_mesh(point.degree, &point.mesh);
         let row = Row { parameter: 1.0, ..Row::zero(point.unknowns.nodes.len()) };
         let mut closing = LinearClosing { row, target: parameter };
